@@ -1,0 +1,392 @@
+"""The resolved spec: numbers instead of text, in N, mm, MPa, tonne, s and K.
+
+A `Part` says what was *declared*, and nothing that has to be worked out: no outline, no interpolated
+dimension, no area, no load resultant. The solid model and the beam model each work those out alone.
+
+Axes. Global axes are right-handed. A member has its own: x from `Member.start` to `Member.end`, z is
+the direction of the section's depth (towards `Member.up`), y = z cross x. A section is drawn in (y, z)
+with y to the right and z up, as seen looking against x (from the far end back to the start).
+Angles are in radian. A positive rotation or moment turns by the right-hand rule about its axis.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from typing import Literal
+
+from geometry.outline import Outline
+
+Vector = tuple[float, float, float]
+
+Shape = Literal["rectangle", "round", "tube", "box", "I", "channel", "angle", "tee", "outline"]
+"""Dimensions of each shape (all in mm; those with a default may be left out in the spec):
+
+rectangle  depth, width, corner_radius = 0
+round      diameter
+tube       diameter (outside), wall
+box        depth, width (outside), wall, corner_radius = 0 (outside), inner_radius = corner_radius - wall or 0
+I          depth, width (top), web, flange (top), root_radius = 0, bottom_width = width, bottom_flange = flange
+channel    depth, width, web, flange, root_radius = 0        web on the left, flanges point to +y
+angle      depth, width, thickness, root_radius = 0, toe_radius = 0   upright leg on the left, other leg at the bottom
+tee        depth, width, web, flange, root_radius = 0        flange on top
+
+Each is drawn about its own origin: z = 0 at half the depth; y = 0 in the plane of symmetry, or at the
+back of the web (channel) or of the upright leg (angle). An `outline` keeps the origin of its points.
+"""
+
+Anchor = Literal["top", "centre", "bottom"]
+"""What stays straight when the depth varies: the upper side, half the depth, or the lower side."""
+
+
+@dataclass(frozen=True, slots=True)
+class Section:
+    """Section at the start of a member: its shape, dimensions (mm) and, for `outline`, its loops."""
+
+    shape: Shape
+    dims: Mapping[str, float] = field(default_factory=dict)
+    outline: Outline | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Station:
+    """Dimensions declared at a distance `at` (mm) from the start of the member.
+
+    A dimension varies linearly from the last place that names it to the next place that names it
+    (the section itself names all of them at 0) and stays constant after the last one. Two stations
+    at one place are a step: the first one ends the stretch before, the second begins the next.
+    `shoulder_fillet` is the radius at such a step (0: sharp), kept on the second of the two.
+    """
+
+    at: float
+    dims: Mapping[str, float]
+    shoulder_fillet: float = 0.0
+
+
+CutKind = Literal["hole", "slot", "opening", "notch"]
+Through = Literal[
+    "all", "web", "flanges", "top flange", "bottom flange", "left wall", "right wall", "top wall", "bottom wall",
+    "upright leg", "bottom leg",
+]
+
+
+@dataclass(frozen=True, slots=True)
+class Cut:
+    """One cut, its axis across the member.
+
+    Attributes
+    ----------
+    name
+        Name of the region left on its inner faces, without the member: ``hole1``, ``pivot.2``.
+    group
+        Name shared by the cuts of one row or grid: ``pivot``.
+    kind
+        hole (round), slot (two half circles), opening (rectangular, corner radius), notch (from an
+        edge inwards: a half-round-ended or square one, see `length`, `depth` and `corner_radius`).
+    axis
+        Direction in which the tool passes: member ``y`` or ``z``.
+    through
+        Which wall of the section it passes; ``all`` for the whole section.
+    at
+        Distance of its middle from the member's start, mm.
+    offset
+        Coordinate of its middle across the member, from the member's line, mm (along z for axis y,
+        along y for axis z). Not used by a notch.
+    length, depth
+        Size along the member and across it, mm. Hole: both the diameter. Slot: overall length along
+        its own direction and its width. Notch: length along the member, depth from the edge inwards.
+    corner_radius
+        Radius of the inner corners of an opening or a notch. A notch whose radius is half its length
+        ends in a half circle.
+    turned
+        Angle from the member's x to the long side of a slot or opening, rad.
+    edge
+        For a notch: the side it starts from, ``top``/``bottom`` (axis y) or ``left``/``right`` (axis z).
+    """
+
+    name: str
+    group: str
+    kind: CutKind
+    axis: Literal["y", "z"]
+    through: Through
+    at: float
+    offset: float
+    length: float
+    depth: float
+    corner_radius: float = 0.0
+    turned: float = 0.0
+    edge: Literal["", "top", "bottom", "left", "right"] = ""
+
+
+@dataclass(frozen=True, slots=True)
+class EdgeRadius:
+    """A radius on named edges.
+
+    `edges`: ``top left``, ``top right``, ``bottom left``, ``bottom right`` (outer edges along the
+    member), ``start`` or ``end`` (rim of that end face), or the name of a cut or row (its two rims).
+    """
+
+    edges: str
+    radius: float
+
+
+@dataclass(frozen=True, slots=True)
+class Patch:
+    """A part of a face, between two stations (mm), over the full width of the face or part of it.
+
+    `across` is the range of y (top, bottom) or z (left, right) in member axes from the line, mm.
+    """
+
+    name: str
+    face: str
+    start: float
+    end: float
+    across: tuple[float, float] | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Member:
+    """A straight member.
+
+    Attributes
+    ----------
+    start, end
+        Ends of the declared line, global, mm.
+    up
+        Global direction towards which the section's depth points (made square to the line).
+    roll
+        Further turn about x, rad.
+    line_at
+        Point of the start section that lies on the declared line: ``origin`` (see `Shape`),
+        ``centroid``, ``top``, ``bottom``, ``left``, ``right`` (middle of that side of the bounding
+        rectangle, in line with the section's origin), ``web`` (middle of the web's thickness, half the depth),
+        or a corner of the bounding rectangle such as ``top left``.
+    anchor
+        What stays straight when the depth varies.
+    """
+
+    name: str
+    start: Vector
+    end: Vector
+    up: Vector
+    roll: float
+    section: Section
+    line_at: str = "centroid"
+    anchor: Anchor = "centre"
+    stations: tuple[Station, ...] = ()
+    cuts: tuple[Cut, ...] = ()
+    edge_radii: tuple[EdgeRadius, ...] = ()
+    patches: tuple[Patch, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Material:
+    """E, yield and ultimate strength in MPa, density in t/mm^3, expansion in 1/K.
+
+    `kind` says what the strength is: characteristic, minimum, typical or declared.
+    """
+
+    name: str
+    E: float
+    nu: float
+    density: float
+    expansion: float
+    yield_strength: float | None
+    ultimate: float | None
+    kind: str
+    source: str
+
+
+Coupling = Literal["surface", "rigid", "average"]
+"""How a region is held or loaded.
+
+surface   point by point: every point is held alike; a force is an even traction.
+rigid     the region moves as one rigid body; its six freedoms are held or loaded.
+average   the area-weighted mean displacement and rotation is held or loaded; the region may deform
+          (a force-distributing coupling).
+"""
+
+Freedom = Literal["x", "y", "z", "rx", "ry", "rz", "normal"]
+
+
+@dataclass(frozen=True, slots=True)
+class Support:
+    """Held freedoms of a region.
+
+    `held` maps a freedom to its prescribed displacement (mm) or rotation (rad), mostly 0.
+    ``normal`` (plane faces, `surface` only) is the direction of the outward normal; rotations are
+    allowed for `rigid` and `average` only. `axes`: which axes x, y, z mean. Prescribed values act in
+    every case with factor 1.
+    """
+
+    name: str
+    on: str
+    held: Mapping[Freedom, float]
+    coupling: Coupling = "surface"
+    axes: Literal["global", "member"] = "global"
+
+
+@dataclass(frozen=True, slots=True)
+class RegionLoad:
+    """Force (N) and moment (N mm) on a region, global components, moment about the region's centroid.
+
+    `surface`: the force is an even traction and the moment a traction linear over the region's area.
+    """
+
+    name: str
+    on: str
+    force: Vector = (0.0, 0.0, 0.0)
+    moment: Vector = (0.0, 0.0, 0.0)
+    coupling: Coupling = "surface"
+
+
+@dataclass(frozen=True, slots=True)
+class Pressure:
+    """Pressure (MPa) on a region, positive when it pushes into the part."""
+
+    name: str
+    on: str
+    value: float
+
+
+@dataclass(frozen=True, slots=True)
+class BearingLoad:
+    """Force (N, global) of a pin in a hole: radial pressure, cosine over the half that is pushed.
+
+    The force must be square to the hole's axis.
+    """
+
+    name: str
+    on: str
+    force: Vector
+
+
+@dataclass(frozen=True, slots=True)
+class LineLoad:
+    """Force per length (N/mm, global) on one face of a member between two stations (mm).
+
+    Varies linearly from `first` to `last`. In the solid it is a traction on that stretch of the face,
+    even across its width; in the beam it acts at the middle of that width.
+    """
+
+    name: str
+    on: str
+    start: float
+    end: float
+    first: Vector
+    last: Vector
+
+
+@dataclass(frozen=True, slots=True)
+class RemotePoint:
+    """A point off the part, coupled to a region, with force, moment, mass (t) and inertia (t mm^2).
+
+    `inertia` is about the point: xx, yy, zz, xy, yz, zx (global). Under acceleration (and
+    self-weight) the mass gives a force at the point.
+    """
+
+    name: str
+    on: str
+    point: Vector
+    coupling: Literal["rigid", "average"]
+    force: Vector = (0.0, 0.0, 0.0)
+    moment: Vector = (0.0, 0.0, 0.0)
+    mass: float = 0.0
+    inertia: tuple[float, float, float, float, float, float] = (0.0,) * 6
+
+
+@dataclass(frozen=True, slots=True)
+class BodyLoad:
+    """Acceleration *of the part's weight*: force per mass (mm/s^2, global) on everything that has mass.
+
+    Self-weight is the body load ``self_weight`` with the gravity vector; a part that is accelerated
+    by `a` carries the body load ``-a`` (the spec's `acceleration` is turned round when it is read).
+    """
+
+    name: str
+    force_per_mass: Vector
+
+
+@dataclass(frozen=True, slots=True)
+class TemperatureLoad:
+    """Uniform temperature change, K."""
+
+    name: str
+    change: float
+
+
+Load = RegionLoad | Pressure | BearingLoad | LineLoad | RemotePoint | BodyLoad | TemperatureLoad
+
+
+@dataclass(frozen=True, slots=True)
+class Case:
+    """Load case: factor of each load by name. Loads that are not named do not act.
+
+    The mass of a remote point acts with the factors of the body loads.
+    """
+
+    name: str
+    factors: Mapping[str, float]
+
+
+@dataclass(frozen=True, slots=True)
+class Place:
+    """A named station of the member where section means are reported."""
+
+    name: str
+    member: str
+    at: float
+
+
+@dataclass(frozen=True, slots=True)
+class Limit:
+    """Largest (or, for a factor, least) allowed value of one quantity.
+
+    Attributes
+    ----------
+    quantity
+        deflection (size of the section's mean displacement, mm), displacement (one component of it),
+        rotation (rad, size or component), relative_displacement (between `at` and `relative_to`),
+        stress (MPa, see `basis`), yield_factor, mass (t), reaction (N, size of the force at a support).
+    at
+        Place, region or support; empty: anywhere.
+    component
+        ``x``, ``y``, ``z`` (global) or empty for the size.
+    basis
+        Strength limits: ``nominal`` (net section, beam formula), ``edge`` (stress extrapolated to the
+        edge) or ``local`` (converged local first yield).
+    cases
+        Cases it is judged in; empty: all.
+    """
+
+    name: str
+    quantity: str
+    value: float
+    at: str = ""
+    relative_to: str = ""
+    component: str = ""
+    basis: Literal["nominal", "edge", "local"] = "local"
+    cases: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Part:
+    """The resolved spec of one part, with the text it came from.
+
+    Regions are named ``member.region``: ``start``, ``end``; outer faces ``top``, ``bottom``, ``left``,
+    ``right``; ``surface`` (round, tube); ``bore`` (tube, box); ``web_left``, ``web_right`` (I, tee,
+    channel: the sides of the web); each cut and each group of cuts; each patch. A line load makes a
+    region named ``member.load:NAME``.
+    """
+
+    title: str
+    material: Material
+    members: tuple[Member, ...]
+    supports: tuple[Support, ...]
+    loads: tuple[Load, ...]
+    cases: tuple[Case, ...]
+    limits: tuple[Limit, ...] = ()
+    places: tuple[Place, ...] = ()
+    accuracy: float = 0.02
+    parameters: Mapping[str, float] = field(default_factory=dict)
+    source_text: str = ""
