@@ -1,0 +1,213 @@
+"""`CheckResult`: everything one checked run found. It *is* ``result.json``.
+
+Layout of ``result.json`` (version ``haunch-result/1``): one JSON object whose members are the attributes
+of `CheckResult` by name, nested objects being the attributes of the dataclasses below by name. Tuples are
+arrays, mappings are objects, "no value" is ``null``; there is no NaN and no infinity. A `FigureKey` is an
+object ``{case, place, quantity, component, axes}``. Every value is in the unit that stands beside it
+(N, mm, MPa, t, s, rad, K); section forces act on the face with outward normal +x. See `CheckResult.to_json`.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from typing import Any, Literal, NamedTuple
+
+from fem.figure import Figure, FigureKey
+
+FORMAT = "haunch-result/1"
+
+JudgementWord = Literal["agrees", "explained", "suspicious", "load check", "no beam value"]
+LimitWord = Literal["met", "missed", "not established"]
+
+
+class Cause(NamedTuple):
+    """A reason from the spec why the two models differ, and the signed difference it predicts.
+
+    `predicted` is in the unit of the pair, solid minus beam.
+    """
+
+    text: str
+    predicted: float
+
+
+@dataclass(frozen=True, slots=True)
+class Pair:
+    """One figure from both models.
+
+    Attributes
+    ----------
+    solid, beam
+        The two values; None where that model has none.
+    difference
+        solid - beam, in `unit`; None when one of them is missing.
+    scale
+        What `difference` and `band` are measured against (largest value of its kind in the case), in `unit`.
+    band
+        Allowed remainder after the causes, in `unit`.
+    causes
+        Why a difference is expected, with its predicted signed size.
+    look_at
+        Where the likely slip is, for a suspicious pair.
+    """
+
+    key: FigureKey
+    solid: float | None
+    beam: float | None
+    unit: str
+    difference: float | None
+    scale: float
+    band: float
+    causes: tuple[Cause, ...]
+    judgement: JudgementWord
+    look_at: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class LimitVerdict:
+    """One limit of the spec, held against its worst case.
+
+    `found` is None when it could not be established; `reason` then says why.
+    """
+
+    name: str
+    quantity: str
+    given: float
+    found: float | None
+    unit: str
+    case: str
+    place: str
+    verdict: LimitWord
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class IndependentCheck:
+    """A check that needs only one model, or that holds it against something else (balance, volume, slices)."""
+
+    name: str
+    value: float
+    allowed: float
+    ok: bool
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class PeakPlace:
+    """A place where the solid model's stress is largest.
+
+    Attributes
+    ----------
+    kind
+        ``surface``, ``support``, ``load`` or ``sharp`` (a re-entrant corner).
+    point
+        Global, mm.
+    stress, error
+        Von Mises stress and its stated error (None: not stated), MPa.
+    has_limit
+        False where the stress has no converged value (a sharp corner, the rim of a support).
+    """
+
+    case: str
+    place: str
+    kind: str
+    point: tuple[float, float, float]
+    stress: float
+    error: float | None
+    has_limit: bool
+    text: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Stage:
+    """One stage of the run and the wall-clock seconds that it took."""
+
+    name: str
+    seconds: float
+
+
+@dataclass(frozen=True, slots=True)
+class MeshSummary:
+    """The mesh in numbers; replaying `recipe` gives it again."""
+
+    nodes: int
+    tets: int
+    unknowns: int
+    least_quality: float
+    volume: float
+    """mm^3"""
+    recipe: Mapping[str, Any] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class CheckResult:
+    """One checked run.
+
+    Attributes
+    ----------
+    title, spec_text, parameters
+        From the part; `parameters` in N, mm, MPa, t, s, rad, K.
+    spec_name
+        File name of the spec, without folders.
+    accuracy
+        Requested relative accuracy. Requested only: the run does not verify it.
+    material
+        Name and numbers of the material.
+    cases
+        Factor of each load, by case.
+    solid_figures, beam_figures
+        Every figure of each model.
+    pairs, limits, checks, peaks, cautions
+        What the judge made of them. `cautions` are sentences.
+    started
+        UTC, ISO 8601, seconds.
+    files
+        Names of the files of the run folder.
+    """
+
+    title: str
+    spec_name: str
+    spec_text: str
+    parameters: Mapping[str, float]
+    accuracy: float
+    material: Mapping[str, Any]
+    cases: Mapping[str, Mapping[str, float]]
+    solid_figures: tuple[Figure, ...]
+    beam_figures: tuple[Figure, ...]
+    pairs: tuple[Pair, ...]
+    limits: tuple[LimitVerdict, ...]
+    checks: tuple[IndependentCheck, ...]
+    peaks: tuple[PeakPlace, ...]
+    cautions: tuple[str, ...]
+    mesh: MeshSummary
+    stages: tuple[Stage, ...]
+    versions: Mapping[str, str]
+    started: str
+    files: tuple[str, ...] = ()
+    format: str = FORMAT
+
+    @property
+    def judgement(self) -> JudgementWord:
+        """The worst word of the pairs and checks: ``suspicious``, ``explained`` or ``agrees``."""
+        words = {pair.judgement for pair in self.pairs}
+        if "suspicious" in words or not all(check.ok for check in self.checks):
+            return "suspicious"
+        return "explained" if "explained" in words else "agrees"
+
+    @property
+    def fine(self) -> bool:
+        """True when nothing is suspicious and every limit is met."""
+        return self.judgement != "suspicious" and all(limit.verdict == "met" for limit in self.limits)
+
+    def to_json(self) -> str:
+        """JSON text, keys in the order of the attributes. Raises `RunError` (write) on NaN or infinity."""
+        from studies.check.codec import dumps
+
+        return dumps(self)
+
+    @classmethod
+    def from_json(cls, text: str) -> CheckResult:
+        """Read what `to_json` wrote. Raises `ResultFormatError` on another or newer version, or a wrong layout."""
+        from studies.check.codec import loads
+
+        return loads(text)
