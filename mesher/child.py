@@ -1,0 +1,172 @@
+"""One meshing job in a fresh child process, bounded in time and memory.
+
+The mesh kernel is a process-wide singleton that can crash, hang or eat the memory. Each job therefore has a
+process of its own, started afresh (never forked), so that nothing of an earlier job, not even the state of a
+random generator, reaches the next one. The job goes in as JSON and raw bytes, arrays come back as `.npz`
+without pickle, all in a temporary folder.
+"""
+
+from __future__ import annotations
+
+import json
+import os
+import signal
+import subprocess
+import sys
+import tempfile
+import time
+from collections.abc import Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any, Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+Ending = Literal["refused", "time", "memory", "crash"]
+
+_ADDRESS_SPACE_MARGIN = 1024
+"""MiB of address space allowed above the memory limit: libraries map far more than they touch."""
+
+
+class ChildFailure(Exception):
+    """The child gave no result.
+
+    ``ending``: ``refused`` (the kernel or a check raised an exception), ``time``, ``memory`` or ``crash``.
+    ``kind`` is the name of the child's exception, ``facts`` what it told about it, ``log`` the kernel's output.
+    """
+
+    def __init__(
+        self, ending: Ending, message: str, log: str, kind: str = "", facts: Mapping[str, Any] | None = None
+    ) -> None:
+        super().__init__(message)
+        self.ending: Ending = ending
+        self.log = log
+        self.kind = kind
+        self.facts = dict(facts or {})
+
+
+@dataclass(frozen=True, slots=True)
+class ChildResult:
+    """Answer (JSON), arrays, the kernel's output, and the seconds and peak MiB it took."""
+
+    answer: dict[str, Any]
+    arrays: dict[str, NDArray[Any]]
+    log: str
+    seconds: float
+    peak_memory: float
+
+
+def run_child(
+    job: Mapping[str, Any], seconds: float, memory: float, files: Mapping[str, bytes] | None = None
+) -> ChildResult:
+    """Run one job of `mesher._worker` and wait for it.
+
+    Parameters
+    ----------
+    job
+        JSON-like; ``job["task"]`` names the task (see `mesher._worker`).
+    seconds
+        Wall-clock limit. When it is over, the child and whatever it started are killed.
+    memory
+        Limit of the child's resident memory, MiB.
+    files
+        Further files for the child's folder, by name.
+
+    Raises
+    ------
+    ChildFailure
+        No result: exception in the child, time limit, memory limit, or a crash.
+    """
+    with tempfile.TemporaryDirectory(prefix="haunch-mesh-") as folder:
+        room = Path(folder)
+        for name, content in (files or {}).items():
+            (room / name).write_bytes(content)
+        limits = {"address_space": int(memory) + _ADDRESS_SPACE_MARGIN}
+        (room / "job.json").write_text(json.dumps({**job, "limits": limits}), encoding="utf-8")
+        started = time.monotonic()
+        process = _start(room)
+        try:
+            ending, peak = _watch(process, started + seconds, memory)
+        finally:
+            _kill(process)
+        return _collect(room, process.returncode, ending, time.monotonic() - started, peak, seconds, memory)
+
+
+def _start(room: Path) -> subprocess.Popen[bytes]:
+    root = str(Path(__file__).resolve().parent.parent)
+    path = os.pathsep.join(p for p in (root, os.environ.get("PYTHONPATH", "")) if p)
+    # One thread: the parallel mesh algorithms do not give the same mesh twice.
+    env = {**os.environ, "PYTHONPATH": path, "OMP_NUM_THREADS": "1", "OPENBLAS_NUM_THREADS": "1"}
+    return subprocess.Popen(
+        [sys.executable, "-P", "-m", "mesher._worker", str(room)],
+        stdin=subprocess.PIPE,  # held open, never written: its end tells the child that we are gone
+        stdout=subprocess.DEVNULL,
+        stderr=subprocess.DEVNULL,
+        cwd=room,
+        env=env,
+        start_new_session=True,
+    )
+
+
+def _watch(process: subprocess.Popen[bytes], deadline: float, memory: float) -> tuple[Ending | None, float]:
+    """Wait for the end; returns why it must be killed (None: it ended by itself) and the peak MiB seen."""
+    peak = 0.0
+    while True:
+        try:
+            process.wait(timeout=0.02)
+            return None, peak
+        except subprocess.TimeoutExpired:
+            pass
+        resident = _resident(process.pid)
+        peak = max(peak, resident)
+        if resident > memory:
+            return "memory", peak
+        if time.monotonic() > deadline:
+            return "time", peak
+
+
+def _resident(pid: int) -> float:
+    """Resident memory of a process, MiB; 0 where the system does not tell (the address limit still holds)."""
+    try:
+        with open(f"/proc/{pid}/statm", encoding="ascii") as stat:
+            return int(stat.read().split()[1]) * os.sysconf("SC_PAGE_SIZE") / 2**20
+    except (OSError, IndexError, ValueError):
+        return 0.0
+
+
+def _kill(process: subprocess.Popen[bytes]) -> None:
+    """End the child's whole session, then reap the child."""
+    if process.poll() is None:
+        try:
+            os.killpg(process.pid, signal.SIGKILL)
+        except ProcessLookupError:
+            pass
+    if process.stdin is not None:
+        process.stdin.close()
+    process.wait()
+
+
+def _collect(
+    room: Path, code: int, ending: Ending | None, spent: float, peak: float, seconds: float, memory: float
+) -> ChildResult:
+    log_file = room / "log.txt"
+    log = log_file.read_text(encoding="utf-8", errors="replace") if log_file.exists() else ""
+    if ending == "time":
+        raise ChildFailure("time", f"stopped at its time limit of {seconds:.4g} s", log)
+    if ending == "memory":
+        raise ChildFailure("memory", f"stopped at its memory limit of {memory:.4g} MiB ({peak:.4g} MiB in use)", log)
+    answer_file = room / "answer.json"
+    if code != 0 or not answer_file.exists():
+        how = f"signal {signal.Signals(-code).name}" if code < 0 else f"exit code {code}"
+        raise ChildFailure("crash", f"the mesh process crashed ({how})", log)
+    answer = json.loads(answer_file.read_text(encoding="utf-8"))
+    if "error" in answer:
+        error = answer["error"]
+        out_of_memory = error["kind"] == "MemoryError" or "bad_alloc" in error["message"]
+        raise ChildFailure(
+            "memory" if out_of_memory else "refused", error["message"], log, error["kind"], error["facts"]
+        )
+    with np.load(room / "arrays.npz", allow_pickle=False) as stored:
+        arrays = {name: stored[name] for name in stored.files}
+    return ChildResult(answer, arrays, log, spent, max(peak, answer.get("peak_memory", 0.0)))

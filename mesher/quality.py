@@ -1,0 +1,63 @@
+"""Quality of curved 10-node tetrahedra.
+
+The Jacobian determinant of such an element is a cubic polynomial, so its 20 Bezier coefficients bound it from
+below (Johnen, Remacle, Geuzaine, J. Comput. Phys. 233 (2013) 359-372). An element is called valid only when
+that bound is positive.
+"""
+
+from __future__ import annotations
+
+from functools import cache
+from math import factorial
+
+import numpy as np
+from numpy.typing import NDArray
+
+from mesher.measure import tetrahedron_gradients
+from mesher.numbering import TET_EDGES
+
+Ints = NDArray[np.int64]
+Floats = NDArray[np.float64]
+
+_CORNER_EDGES = ((0, 2, 3), (0, 1, 4), (1, 2, 5), (3, 4, 5))
+"""The three edges (in the order of `TET_EDGES`) that meet at each corner."""
+
+
+@cache
+def _lattice() -> tuple[Floats, Floats]:
+    """The 20 points of the cubic lattice, (3, 20), and the matrix from values there to Bezier coefficients."""
+    powers = [(i, j, k, 3 - i - j - k) for i in range(4) for j in range(4 - i) for k in range(4 - i - j)]
+    points = np.array([p[:3] for p in powers]).T / 3.0
+    barycentric = np.array([*points, 1 - points.sum(axis=0)])
+    bernstein = np.array([
+        factorial(3) / np.prod([factorial(n) for n in p]) * np.prod(barycentric.T ** np.array(p), axis=1)
+        for p in powers
+    ])
+    return points, np.linalg.inv(bernstein)
+
+
+def scaled_jacobian(nodes: Floats, tets: Ints, chunk: int = 20000) -> Floats:
+    """(m,) least scaled Jacobian of each curved element: 1 for the regular one, <= 0 when it may be inverted.
+
+    At each of the 20 lattice points the determinant is divided by the largest product of three edge lengths
+    that meet at a corner of the tangent element there, times sqrt 2; the least value is returned. Where the
+    Bezier bound is not positive, the bound (scaled alike) is returned instead, so that no inverted element passes
+    between the points. `nodes` (3, n), `tets` (10, m).
+    """
+    parts = [_scaled_jacobian(nodes, tets[:, i : i + chunk]) for i in range(0, tets.shape[1], chunk)]
+    return np.concatenate(parts) if parts else np.empty(0)
+
+
+def _scaled_jacobian(nodes: Floats, tets: Ints) -> Floats:
+    X, to_bezier = _lattice()
+    F = np.einsum("cim,idq->dcmq", nodes[:, tets], tetrahedron_gradients(X))
+    determinant = np.einsum("cmq,cmq->mq", np.cross(F[0], F[1], axis=0), F[2])
+    corner = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0, 0, 1]])
+    lengths = []
+    for a, b in TET_EDGES:
+        edge = np.einsum("d,dcmq->cmq", (corner[b] - corner[a]).astype(float), F)
+        lengths.append(np.sqrt((edge**2).sum(axis=0)))
+    scale = np.max([lengths[i] * lengths[j] * lengths[k] for i, j, k in _CORNER_EDGES], axis=0)
+    least = np.min(np.sqrt(2.0) * determinant / scale, axis=1)
+    bound = np.min(determinant @ to_bezier, axis=1) * np.sqrt(2.0) / scale.mean(axis=1)
+    return np.where(bound > 0, least, np.minimum(least, bound))
