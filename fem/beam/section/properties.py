@@ -44,6 +44,8 @@ class SectionProperties:
         Largest Saint-Venant shear stress for a unit torque, 1/mm^3.
     warping
         (4,) warping function about the shear centre (zero mean) at `extremes`, mm^2.
+    error
+        Estimated relative error of J and the shear compliance (change between quadratic and cubic elements).
     """
 
     area: float
@@ -68,3 +70,4 @@ class SectionProperties:
     W_right: float
     torsion_stress: float
     warping: NDArray[np.float64]
+    error: float = 0.0

@@ -1,0 +1,137 @@
+"""Area, centroid, second moments and extreme points of an outline, from its boundary alone."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from geometry.outline import Arc, Edge, Outline, Point
+
+_LINE = np.polynomial.legendre.leggauss(3)
+_ARC = np.polynomial.legendre.leggauss(24)
+
+
+@dataclass(frozen=True, slots=True)
+class OutlineIntegrals:
+    """Exact integrals over an outline (or several), mm.
+
+    ``Iyy`` = int z^2 dA, ``Izz`` = int y^2 dA, ``Iyz`` = int y z dA, all about the centroid.
+    `extremes`: (4, 2) the points top, bottom, left, right; the moduli are Iyy / |z - zc| at the first two
+    and Izz / |y - yc| at the last two, mm^3.
+    """
+
+    area: float
+    yc: float
+    zc: float
+    Iyy: float
+    Izz: float
+    Iyz: float
+    I1: float
+    I2: float
+    principal_angle: float
+    extremes: NDArray[np.float64]
+    W_top: float
+    W_bottom: float
+    W_left: float
+    W_right: float
+
+
+def outline_integrals(outline: Outline | Sequence[Outline]) -> OutlineIntegrals:
+    """Integrals of one outline, or of several disjoint ones taken as one section.
+
+    Green's theorem turns each area integral into one along the boundary. The integrands are polynomials
+    on a line (three Gauss points are exact) and trigonometric polynomials of order 4 on an arc (24 points
+    over at most a full turn: rounding error only). Shifting the origin to a point of the outline first
+    keeps the digits of a section drawn far from its origin.
+    """
+    outlines = [outline] if isinstance(outline, Outline) else list(outline)
+    origin = outlines[0].outer[0].start
+    m = np.zeros(6)
+    for edge in _edges(outlines):
+        m += _moments(edge, origin)
+    area, sy, sz, syy, syz, szz = (float(v) for v in m)
+    y, z = sy / area, sz / area
+    Izz, Iyz, Iyy = syy - area * y * y, syz - area * y * z, szz - area * z * z
+    yc, zc = y + origin[0], z + origin[1]
+    I1, I2, angle = principal_moments(Iyy, Izz, Iyz)
+    points = extreme_points(outlines)
+    reach = [float(abs(v)) for v in (points[0, 1] - zc, points[1, 1] - zc, points[2, 0] - yc, points[3, 0] - yc)]
+    return OutlineIntegrals(area, yc, zc, Iyy, Izz, Iyz, I1, I2, angle, points,
+                            Iyy / reach[0], Iyy / reach[1], Izz / reach[2], Izz / reach[3])
+
+
+def principal_moments(Iyy: float, Izz: float, Iyz: float) -> tuple[float, float, float]:
+    """I1 >= I2 and the angle (rad, -pi/2 to pi/2) from y to the axis about which I1 is taken."""
+    mean, half = (Iyy + Izz) / 2, (Iyy - Izz) / 2
+    radius = math.hypot(half, Iyz)
+    # about an axis at angle a from y: I(a) = mean + half cos 2a - Iyz sin 2a; rounding must not
+    # turn the axes of a symmetric section
+    angle = 0.0 if radius <= 1e-12 * mean else 0.5 * math.atan2(-Iyz, half)
+    return mean + radius, mean - radius, angle
+
+
+def _edges(outlines: Sequence[Outline]) -> Iterator[Edge]:
+    for outline in outlines:
+        for loop in (outline.outer, *outline.inner):
+            yield from loop
+
+
+def sweep(arc: Arc) -> tuple[float, float, float]:
+    """Radius, start angle and signed angle turned through, rad (never zero: coincident ends are a full turn)."""
+    cy, cz = arc.centre
+    first = math.atan2(arc.start[1] - cz, arc.start[0] - cy)
+    last = math.atan2(arc.end[1] - cz, arc.end[0] - cy)
+    turn = (last - first) % (2 * math.pi) if arc.ccw else -((first - last) % (2 * math.pi))
+    if abs(turn) < 1e-12:
+        turn = 2 * math.pi if arc.ccw else -2 * math.pi
+    return math.hypot(arc.start[0] - cy, arc.start[1] - cz), first, turn
+
+
+def _moments(edge: Edge, origin: Point) -> NDArray[np.float64]:
+    """(6,) share of one edge in A, int y, int z, int y^2, int y z, int z^2 about `origin`."""
+    if isinstance(edge, Arc):
+        radius, first, turn = sweep(edge)
+        t, w = _ARC
+        angle = first + 0.5 * turn * (t + 1)
+        y = edge.centre[0] - origin[0] + radius * np.cos(angle)
+        z = edge.centre[1] - origin[1] + radius * np.sin(angle)
+        dz = w * 0.5 * turn * radius * np.cos(angle)
+    else:
+        t, w = _LINE
+        s = 0.5 * (t + 1)
+        y = edge.start[0] - origin[0] + s * (edge.end[0] - edge.start[0])
+        z = edge.start[1] - origin[1] + s * (edge.end[1] - edge.start[1])
+        dz = 0.5 * w * (edge.end[1] - edge.start[1])
+    return np.array([y @ dz, y * y @ dz / 2, y * z @ dz, y**3 @ dz / 3, y * y * z @ dz / 2, y * z * z @ dz])
+
+
+def extreme_points(outlines: Sequence[Outline]) -> NDArray[np.float64]:
+    """(4, 2) points top, bottom, left, right of the outlines (see `SectionProperties.extremes`)."""
+    edges = list(_edges(outlines))
+    size = max(abs(v) for e in edges for p in (e.start, e.end) for v in p) or 1.0
+    return np.array([_extreme(edges, axis, sign, 1e-9 * size) for axis, sign in ((1, 1), (1, -1), (0, -1), (0, 1))])
+
+
+def _extreme(edges: Sequence[Edge], axis: int, sign: int, tol: float) -> Point:
+    """Farthest point along +-axis; the middle of the side when flat; of several the upper one, then the left one."""
+    direction = (math.pi / 2 if axis else 0.0) + (0.0 if sign > 0 else math.pi)
+    spots: list[tuple[Point, bool]] = []
+    for e in edges:
+        spots += [(e.start, False), (e.end, False)]
+        if isinstance(e, Arc):
+            radius, first, turn = sweep(e)
+            ahead = (direction - first) % (2 * math.pi) if turn > 0 else -((first - direction) % (2 * math.pi))
+            if abs(ahead) <= abs(turn):
+                spots.append(((e.centre[0] + radius * math.cos(direction), e.centre[1] + radius * math.sin(direction)),
+                              False))
+        elif abs(e.start[axis] - e.end[axis]) <= tol:
+            spots.append((((e.start[0] + e.end[0]) / 2, (e.start[1] + e.end[1]) / 2), True))
+    far = max(sign * p[axis] for p, _ in spots)
+    level = [(p, flat) for p, flat in spots if sign * p[axis] >= far - tol]
+    if any(flat for _, flat in level):
+        level = [(p, flat) for p, flat in level if flat]
+    return max((p for p, _ in level), key=lambda p: (round(p[1] / tol), -p[0]))
