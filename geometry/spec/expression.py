@@ -1,0 +1,312 @@
+"""The arithmetic of the spec: ``"reach / 2 - 3 mm"``.
+
+Grammar, read left to right and never handed to Python::
+
+    sum     = product { ("+" | "-") product }
+    product = signed { ("*" | "/") signed }
+    signed  = ["+" | "-"] signed | power
+    power   = atom [ ("^" | "**") whole number from 0 to 4 ]
+    atom    = number [unit] | parameter | "sqrt" | "min" | "max" | "abs" "(" sum {"," sum} ")" | "(" sum ")"
+
+A unit may follow only a number, and is the longest spelling on the list that fits there; a unit is
+written without spaces about its slash, so ``"10 N / m"`` divides by the parameter ``m`` while
+``"10 N/m"`` is a unit. Length, nesting and exponents are bounded, so that no text takes long.
+"""
+
+from __future__ import annotations
+
+import difflib
+import math
+import re
+from collections.abc import Mapping
+from typing import NamedTuple
+
+from geometry.spec.quantity import ANGLE, NUMBER, UNITS, Dimension, Kind, Quantity, name_of
+
+LONGEST = 300
+DEEPEST = 24
+GREATEST_POWER = 4
+FUNCTIONS = ("sqrt", "min", "max", "abs")
+NAME = re.compile(r"[A-Za-z_][A-Za-z0-9_]*")
+
+_NUMBER = re.compile(r"(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
+_COMMA = re.compile(r"[0-9],[0-9]")
+_OPERATOR = re.compile(r"\*\*|[-+*/^(),]")
+# Longest first, and not within a longer word: "Mm" is not "M" followed by something.
+_UNIT = re.compile(
+    "(?:" + "|".join(re.escape(u) for u in sorted(UNITS, key=len, reverse=True)) + r")(?![A-Za-z0-9_^%°µ])"
+)
+_UNIT_LIKE = re.compile(r"[A-Za-zµ°%][A-Za-z0-9µ°%^/]*")
+_LOOK_ALIKES = str.maketrans({
+    "\u2212": "-", "\u00a0": " ", "\u202f": " ", "\u03bc": "µ", "\u00d7": "*", "\u00b7": " ",
+})  # fmt: skip
+_RAISED = {"\u00b2": "^2", "\u00b3": "^3", "\u2074": "^4"}
+
+
+class ExpressionError(ValueError):
+    """A text is not a quantity. Carries the parts of a `Problem` apart from the path."""
+
+    def __init__(self, allowed: str, fix: str = "") -> None:
+        self.allowed = allowed
+        self.fix = fix
+        super().__init__(f"{allowed}. {fix}" if fix else allowed)
+
+
+class Token(NamedTuple):
+    """One word of an expression: ``number``, ``name``, ``operator`` or ``end``."""
+
+    sort: str
+    text: str
+    value: Quantity | None = None
+    unit: str = ""
+
+
+def nearest(word: str, known: Mapping[str, object] | tuple[str, ...] | list[str]) -> str:
+    """The known word nearest to `word`, or an empty text."""
+    names = list(known)
+    exact = [n for n in names if n.lower() == word.lower()]
+    found = exact or difflib.get_close_matches(word, names, n=1, cutoff=0.5)
+    return found[0] if found else ""
+
+
+def tokens_of(text: str) -> list[Token]:
+    """Split `text` into tokens; raise `ExpressionError` where that cannot be done."""
+    if len(text) > LONGEST:
+        raise ExpressionError(f"at most {LONGEST} characters", "Split it over several parameters")
+    text = text.translate(_LOOK_ALIKES)
+    for raised, plain in _RAISED.items():
+        text = text.replace(raised, plain)
+    if found := _COMMA.search(text):
+        fixed = text.replace(",", ".")
+        also = " (between two values of min or max put a space after the comma)" if "(" in text else ""
+        raise ExpressionError("a decimal point, no decimal comma", f'Write "{fixed}" for "{text}"{also}')
+    tokens: list[Token] = []
+    at = 0
+    while at < len(text):
+        if text[at].isspace():
+            at += 1
+        elif found := _NUMBER.match(text, at):
+            token, at = _number(text, found)
+            tokens.append(token)
+        elif found := NAME.match(text, at):
+            tokens.append(Token("name", found.group()))
+            at = found.end()
+        elif found := _OPERATOR.match(text, at):
+            tokens.append(Token("operator", found.group()))
+            at = found.end()
+        else:
+            raise ExpressionError(
+                "numbers with units, parameters, + - * / ^ and parentheses", f"Remove the character {text[at]!r}"
+            )
+    tokens.append(Token("end", "the end"))
+    return tokens
+
+
+def _number(text: str, found: re.Match[str]) -> tuple[Token, int]:
+    """A number and the unit behind it."""
+    value = float(found.group())
+    if not math.isfinite(value):
+        raise ExpressionError("a finite number", f"{found.group()} is too large")
+    at = found.end()
+    behind = at + len(text[at:]) - len(text[at:].lstrip(" "))
+    if unit := _UNIT.match(text, behind):
+        size = UNITS[unit.group()]
+        return Token("number", found.group(), Quantity(value * size.value, size.dimension), unit.group()), unit.end()
+    if word := _UNIT_LIKE.match(text, behind):
+        raise _unknown_unit(found.group(), word.group())
+    if _NUMBER.match(text, behind):
+        raise ExpressionError("one number before a unit", "Write digits without gaps: 1000 mm, not 1 000 mm")
+    return Token("number", found.group(), Quantity(value)), at
+
+
+def _unknown_unit(number: str, word: str) -> ExpressionError:
+    if word in ("degC", "°C", "C", "degF", "°F"):
+        return ExpressionError("a temperature difference in K", f'Write "{number} K" when {number} is a difference in K')
+    near = nearest(word, UNITS)
+    known = "a known unit: " + ", ".join(UNITS)
+    return ExpressionError(known, f'"{word}" is no known unit' + (f'; did you mean "{number} {near}"?' if near else ""))
+
+
+def names_in(text: str) -> tuple[str, ...]:
+    """Names of the parameters that `text` uses."""
+    return tuple(dict.fromkeys(t.text for t in tokens_of(text) if t.sort == "name" and t.text not in FUNCTIONS))
+
+
+def evaluate(text: str, scope: Mapping[str, Quantity]) -> Quantity:
+    """Value of `text`, with parameters taken from `scope`.
+
+    Raises
+    ------
+    ExpressionError
+        For anything that is not a quantity: unknown units and names, dimensions that do not fit, results
+        that are not finite.
+    """
+    reader = _Reader(tokens_of(text), scope)
+    value = reader.sum(0)
+    if reader.now.sort != "end":
+        raise reader.unexpected()
+    if not math.isfinite(value.value):
+        raise ExpressionError("a finite value", "The result is too large")
+    return value
+
+
+def evaluate_as(text: str, kind: Kind, scope: Mapping[str, Quantity]) -> float:
+    """Value of `text` in the base unit of `kind`; raise `ExpressionError` when it is of another kind."""
+    value = evaluate(text, scope)
+    if value.dimension == kind.dimension:
+        return value.value
+    allowed = f'a {kind.word}, such as "{kind.example}"'
+    if value.dimension == NUMBER:
+        near = f"{text.strip()} {kind.example.split(' ', 1)[-1]}"
+        fix = f'Add the unit: "{near}"' if _NUMBER.fullmatch(text.strip().lstrip("+-")) else "It has no unit"
+        raise ExpressionError(allowed, fix)
+    raise ExpressionError(allowed, f"It is a {name_of(value.dimension)}")
+
+
+class _Reader:
+    """Reads tokens left to right and evaluates as it goes."""
+
+    def __init__(self, tokens: list[Token], scope: Mapping[str, Quantity]) -> None:
+        self.tokens = tokens
+        self.scope = scope
+        self.at = 0
+
+    @property
+    def now(self) -> Token:
+        return self.tokens[self.at]
+
+    def take(self, *operators: str) -> str:
+        """The operator that stands here, if it is one of these, else an empty text."""
+        token = self.now
+        if token.sort == "operator" and token.text in operators:
+            self.at += 1
+            return token.text
+        return ""
+
+    def unexpected(self) -> ExpressionError:
+        return ExpressionError("numbers with units, parameters, + - * / ^ and parentheses",
+                               f'"{self.now.text}" is not expected here')  # fmt: skip
+
+    def sum(self, depth: int) -> Quantity:
+        value = self.product(depth)
+        while sign := self.take("+", "-"):
+            other = self.product(depth)
+            if other.dimension != value.dimension:
+                raise _unlike("added to" if sign == "+" else "subtracted from", other.dimension, value.dimension)
+            value = Quantity(value.value + other.value if sign == "+" else value.value - other.value, value.dimension)
+        return value
+
+    def product(self, depth: int) -> Quantity:
+        value = self.signed(depth)
+        while sign := self.take("*", "/"):
+            other = self.signed(depth)
+            if sign == "/" and other.value == 0.0:
+                raise ExpressionError("a divisor other than 0", "It divides by zero")
+            number = value.value * other.value if sign == "*" else value.value / other.value
+            value = Quantity(number, value.dimension.times(other.dimension, 1 if sign == "*" else -1))
+        return value
+
+    def signed(self, depth: int) -> Quantity:
+        negative = False
+        while sign := self.take("+", "-"):
+            negative ^= sign == "-"
+        value = self.power(depth)
+        return Quantity(-value.value, value.dimension) if negative else value
+
+    def power(self, depth: int) -> Quantity:
+        unit = self.now.unit
+        value = self.atom(depth)
+        if not self.take("^", "**"):
+            return value
+        if unit:
+            raise ExpressionError("a power of a parameter or of something in parentheses", "Put it in parentheses")
+        exponent = self.now
+        whole = exponent.value.value if exponent.value is not None and not exponent.unit else math.nan
+        if not (0 <= whole <= GREATEST_POWER and whole == int(whole)):
+            raise ExpressionError(f"a power from 0 to {GREATEST_POWER}", "Write a small whole number behind ^")
+        self.at += 1
+        if self.now.text in ("^", "**"):
+            raise ExpressionError("one power", "Put it in parentheses")
+        try:
+            return Quantity(value.value ** int(whole), value.dimension.power(int(whole)))
+        except OverflowError:
+            raise ExpressionError("a finite value", "The result is too large") from None
+
+    def atom(self, depth: int) -> Quantity:
+        if depth > DEEPEST:
+            raise ExpressionError(f"at most {DEEPEST} nested parentheses", "Split it over several parameters")
+        token = self.now
+        if token.value is not None:
+            self.at += 1
+            self._not_ambiguous(token)
+            return token.value
+        if token.sort == "name":
+            self.at += 1
+            return self._function(token.text, depth) if token.text in FUNCTIONS else self._parameter(token.text)
+        if self.take("("):
+            value = self.sum(depth + 1)
+            if not self.take(")"):
+                raise ExpressionError("a closing parenthesis for every opening one")
+            return value
+        raise self.unexpected()
+
+    def _not_ambiguous(self, token: Token) -> None:
+        head, slash, tail = token.unit.partition("/")
+        symbol = tail.partition("^")[0]
+        if slash and symbol in self.scope:
+            raise ExpressionError(
+                "a unit that cannot be taken for a parameter",
+                f'"{token.unit}" may be the unit, or {head} divided by the parameter {symbol}: rename the parameter '
+                f'or write "{token.text} {head} / {symbol}"',
+            )
+
+    def _parameter(self, name: str) -> Quantity:
+        if name in self.scope:
+            return self.scope[name]
+        near = nearest(name, self.scope)
+        known = ", ".join(self.scope) or "none are declared"
+        if near:
+            fix = f"Did you mean {near}?"
+        elif name in UNITS:
+            fix = f'A unit follows a number directly: "10 {name}"; a unit with a slash has no spaces: "2 N/mm"'
+        else:
+            fix = f'Declare it: {name} = "..." under [parameters]'
+        raise ExpressionError(f"a parameter ({known})", f'"{name}" is not declared. {fix}')
+
+    def _function(self, name: str, depth: int) -> Quantity:
+        if not self.take("("):
+            raise ExpressionError(f"{name}(...)", f"{name} is a function, and no name for a parameter")
+        values = [self.sum(depth + 1)]
+        while self.take(","):
+            values.append(self.sum(depth + 1))
+        if not self.take(")"):
+            raise ExpressionError("a closing parenthesis for every opening one")
+        first = values[0]
+        if name in ("sqrt", "abs") and len(values) != 1:
+            raise ExpressionError(f"one value in {name}(...)")
+        if name == "abs":
+            return Quantity(abs(first.value), first.dimension)
+        if name == "sqrt":
+            return _square_root(first)
+        for other in values[1:]:
+            if other.dimension != first.dimension:
+                raise _unlike("compared with", other.dimension, first.dimension)
+        pick = min if name == "min" else max
+        return Quantity(pick(v.value for v in values), first.dimension)
+
+
+def _square_root(of: Quantity) -> Quantity:
+    if of.value < 0.0:
+        raise ExpressionError("the square root of something positive")
+    if any(e % 2 for e in of.dimension):
+        raise ExpressionError("the square root of a plain number, an area or a second moment",
+                              f"It is a {name_of(of.dimension)}")  # fmt: skip
+    return Quantity(math.sqrt(of.value), Dimension(*(e // 2 for e in of.dimension)))
+
+
+def _unlike(what: str, other: Dimension, first: Dimension) -> ExpressionError:
+    one, two = name_of(other), name_of(first)
+    fix = "Give both a unit" if NUMBER in (other, first) else ""
+    if ANGLE in (other, first):
+        fix = "An angle is a quantity of its own, in deg or rad"
+    return ExpressionError("quantities of one kind", f"A {one} is {what} a {two}. {fix}".strip())

@@ -1,0 +1,72 @@
+"""Specs from files and text."""
+
+from __future__ import annotations
+
+import tomllib
+from collections.abc import Mapping
+from pathlib import Path
+from typing import Any
+
+from pydantic import ValidationError
+
+from geometry.part import Part
+from geometry.problem import Problem, SpecError
+from geometry.spec.model import PartSpec
+
+LARGEST_FILE = 1_000_000  # bytes: a spec is a page or two of text
+
+
+def read_part(path: str | Path) -> Part:
+    """The part that a TOML file describes; raise `SpecError` with every mistake found."""
+    file = Path(path)
+    try:
+        size = file.stat().st_size
+        if file.is_dir():
+            raise _file_problem(file, "a folder", "a TOML file", "Name the file in it")
+        if size > LARGEST_FILE:
+            raise _file_problem(file, f"{size} bytes", f"at most {LARGEST_FILE} bytes", "Is it a spec at all?")
+        with file.open("rb") as stream:
+            data = stream.read(LARGEST_FILE + 1)
+    except FileNotFoundError:
+        raise _file_problem(file, "no such file", "a TOML file", "Look at the spelling and at the folder") from None
+    except (OSError, ValueError) as error:
+        reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
+        raise _file_problem(file, reason, "a file that can be read") from None
+    try:
+        text = data.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        line = data[: error.start].count(b"\n") + 1
+        raise _file_problem(file, f"a byte on line {line} that is not UTF-8", "UTF-8 text", "Save it as UTF-8") from None
+    return part_from_text(text, file.name)
+
+
+def part_from_text(text: str, name: str = "part.toml") -> Part:
+    """The part that a TOML text describes; raise `SpecError` with every mistake found."""
+    return part_from_data(data_from_text(text, name), text)
+
+
+def _file_problem(file: Path, given: str, allowed: str, fix: str = "") -> SpecError:
+    return SpecError([Problem(file.name or str(file), given, allowed, fix)])
+
+
+def data_from_text(text: str, name: str) -> dict[str, Any]:
+    """The tables of a TOML text."""
+    if len(text) > LARGEST_FILE:
+        raise SpecError([Problem(name, f"{len(text)} characters", f"at most {LARGEST_FILE} characters")])
+    try:
+        return tomllib.loads(text)
+    except tomllib.TOMLDecodeError as error:
+        raise SpecError([Problem(name, str(error), "TOML", "")]) from None
+    except RecursionError:
+        raise SpecError([Problem(name, "brackets nested too deeply", "TOML of a few levels")]) from None
+
+
+def part_from_data(data: Mapping[str, Any], text: str = "") -> Part:
+    """The part that plain data (the tables of a TOML file) describes."""
+    try:
+        spec = PartSpec.model_validate(data)
+    except ValidationError as error:
+        raise SpecError(
+            [Problem(".".join(map(str, e["loc"])), str(e.get("input")), e["msg"]) for e in error.errors()]
+        ) from None
+    return spec.resolve(text)
