@@ -11,7 +11,14 @@ from fem.figure import Figure, FigureKey
 from geometry.problem import RunError
 from studies.check.codec import ResultFormatError
 from studies.check.result import (
-    Cause, CheckResult, IndependentCheck, LimitVerdict, MeshSummary, Pair, PeakPlace, Stage,
+    Cause,
+    CheckResult,
+    IndependentCheck,
+    LimitVerdict,
+    MeshSummary,
+    Pair,
+    PeakPlace,
+    Stage,
 )
 
 KEY = FigureKey("carrying", "arm.end", "displacement", "z")

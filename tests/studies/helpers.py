@@ -1,0 +1,101 @@
+"""Fabricated parts, meshes and results for the tests of `studies` (no CAD kernel, no mesher, no solver)."""
+
+from __future__ import annotations
+
+from typing import Literal
+
+import numpy as np
+
+from fem.figure import Figure, FigureKey, Quantity, station_place
+from geometry.part import (
+    BodyLoad,
+    Case,
+    Limit,
+    Material,
+    Member,
+    Part,
+    Place,
+    RegionLoad,
+    RemotePoint,
+    Section,
+    Support,
+)
+from mesher.named_mesh import NamedMesh
+
+Axes = Literal["global", "member"]
+L, WIDTH, DEPTH = 200.0, 20.0, 30.0
+
+
+def make_part() -> Part:
+    """A rectangular cantilever along x with a tip force and its own weight."""
+    member = Member("arm", (0.0, 0.0, 0.0), (L, 0.0, 0.0), (0.0, 0.0, 1.0), 0.0,
+                    Section("rectangle", {"depth": DEPTH, "width": WIDTH}))
+    steel = Material("steel", 210000.0, 0.3, 7.85e-9, 1.2e-5, 355.0, 470.0, "minimum", "from memory")
+    return Part(
+        title="Test cantilever", material=steel, members=(member,),
+        supports=(Support("wall", "arm.start", {"x": 0.0, "y": 0.0, "z": 0.0}),),
+        loads=(RegionLoad("tip", "arm.end", (0.0, 0.0, -500.0)), BodyLoad("self_weight", (0.0, 0.0, -9806.65)),
+               RemotePoint("lamp", "arm.end", (L + 60.0, 0.0, 40.0), "rigid", force=(0.0, 30.0, 0.0), mass=1e-3)),
+        cases=(Case("carrying", {"tip": 1.0, "self_weight": 1.0}),),
+        limits=(Limit("deflection", "deflection", 0.5, "arm.end"),), places=(Place("middle", "arm", L / 2),),
+        source_text='title = "Test cantilever"\n',
+    )
+
+
+def make_mesh(n: tuple[int, int, int] = (20, 2, 3)) -> NamedMesh:
+    """A block of straight 10-node tetrahedra over the cantilever, its six faces named."""
+    from skfem import MeshTet, MeshTet2
+
+    grids = [np.linspace(0.0, L, n[0] + 1), np.linspace(-WIDTH / 2, WIDTH / 2, n[1] + 1),
+             np.linspace(-DEPTH / 2, DEPTH / 2, n[2] + 1)]
+    mesh = MeshTet2.from_mesh(MeshTet.init_tensor(*grids))
+    nodes, facets = mesh.doflocs, mesh.boundary_facets()
+    of_facet, of_edge = mesh.facets[:, facets], {tuple(e): i for i, e in enumerate(mesh.edges.T)}
+    middles = mesh.dofs.edge_dofs[0]
+    boundary = np.empty((6, len(facets)), dtype=np.int64)
+    centre = np.array([L / 2, 0.0, 0.0])
+    for k, corners in enumerate(of_facet.T):
+        a, b, c = nodes[:, corners].T
+        if np.cross(b - a, c - a) @ ((a + b + c) / 3 - centre) < 0:
+            corners = corners[[0, 2, 1]]
+        pairs = [(0, 1), (1, 2), (0, 2)]
+        mids = [middles[of_edge[tuple(sorted((int(corners[i]), int(corners[j]))))]] for i, j in pairs]
+        boundary[:, k] = [*corners, *mids]
+    mean = nodes[:, boundary[:3]].mean(axis=1)
+    sides = [np.isclose(mean[0], 0), np.isclose(mean[0], L), np.isclose(mean[1], -WIDTH / 2),
+             np.isclose(mean[1], WIDTH / 2), np.isclose(mean[2], -DEPTH / 2), np.isclose(mean[2], DEPTH / 2)]
+    names = ["start", "end", "left", "right", "bottom", "top"]
+    face = np.select(sides, list(range(6)), -1)
+    tets = np.vstack([mesh.t, middles[mesh.t2e]])
+    area = {"start": WIDTH * DEPTH, "end": WIDTH * DEPTH, "left": L * DEPTH, "right": L * DEPTH, "bottom": L * WIDTH,
+            "top": L * WIDTH}
+    named = {f"arm.{name}": value for name, value in area.items()}
+    return NamedMesh(nodes, tets, {f"arm.{name}": boundary[:, side] for name, side in zip(names, sides, strict=True)},
+                     boundary, face.astype(np.int64), np.full(tets.shape[1], 0.5), L * WIDTH * DEPTH, named, named,
+                     {"algorithm": "block"})
+
+
+def fabricated_figures(part: Part, tip: float = -0.2, wobble: float = 0.0) -> tuple[Figure, ...]:
+    """Figures of the cantilever in the shape that both models give; `wobble` makes one model differ."""
+    member, case = part.members[0].name, part.cases[0].name
+    figures: list[Figure] = []
+
+    def add(place: str, quantity: Quantity, component: str, value: float, unit: str, axes: Axes = "global") -> None:
+        figures.append(Figure(FigureKey(case, place, quantity, component, axes), value * (1 + wobble), unit))
+
+    force = -tip * 2500.0
+    for k in range(21):
+        x = k * L / 20
+        place = station_place(member, x)
+        for component, value in zip("xyz", (0.0, 0.0, tip * (1.5 * (x / L) ** 2 - 0.5 * (x / L) ** 3)), strict=True):
+            add(place, "displacement", component, value, "mm")
+        for component, value in {"N": 0.0, "Vy": 0.0, "Vz": -force}.items():
+            add(place, "section_force", component, value, "N", "member")
+        for component, value in {"T": 0.0, "My": force * (L - x), "Mz": 0.0}.items():
+            add(place, "section_moment", component, value, "N mm", "member")
+        stress = force * (L - x) * 6 / (WIDTH * DEPTH**2)
+        for side, value in {"top": stress, "bottom": -stress, "left": 0.0, "right": 0.0}.items():
+            add(place, "nominal_stress", f"xx@{side}", value, "MPa", "member")
+    add(f"{member}.end", "displacement", "z", tip, "mm")
+    add("wall", "reaction_force", "z", force, "N")
+    return (*figures, Figure(FigureKey("", "", "mass", ""), L * WIDTH * DEPTH * 7.85e-9 * (1 + wobble), "t"))
