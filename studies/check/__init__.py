@@ -5,8 +5,10 @@ imported here because it loads both models.
 """
 
 from studies.check.result import (
+    CaseStress,
     Cause,
     CheckResult,
+    Denting,
     IndependentCheck,
     LimitVerdict,
     MeshSummary,
@@ -15,4 +17,4 @@ from studies.check.result import (
     Stage,
 )
 
-__all__ = ["Cause", "CheckResult", "IndependentCheck", "LimitVerdict", "MeshSummary", "Pair", "PeakPlace", "Stage"]
+__all__ = ["CaseStress", "Cause", "CheckResult", "Denting", "IndependentCheck", "LimitVerdict", "MeshSummary", "Pair", "PeakPlace", "Stage"]

@@ -94,28 +94,54 @@ class IndependentCheck:
 
 @dataclass(frozen=True, slots=True)
 class PeakPlace:
-    """A place where the solid model's stress is largest.
+    """A place where the solid model's von Mises stress has a local maximum.
 
     Attributes
     ----------
-    kind
-        ``surface``, ``support``, ``load`` or ``sharp`` (a re-entrant corner).
+    place
+        Regions that meet there; empty when none does.
     point
         Global, mm.
-    stress, error
-        Von Mises stress and its stated error (None: not stated), MPa.
+    stress, spread
+        Von Mises stress and the spread of the element stresses about it, MPa.
+    principal
+        Principal stress of the largest size, signed, MPa.
     has_limit
-        False where the stress has no converged value (a sharp corner, the rim of a support).
+        False where the stress has no converged value (a sharp corner, the rim of a support); `reason` says why.
     """
 
     case: str
     place: str
-    kind: str
     point: tuple[float, float, float]
     stress: float
-    error: float | None
+    spread: float
+    principal: float
     has_limit: bool
-    text: str = ""
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class CaseStress:
+    """Largest von Mises stress of the solid (MPa) and factor against first yield in one case.
+
+    `established` looks only where the stress has a converged value, `everywhere` at all places. The factors
+    are None where the material has no yield strength or there is no stress.
+    """
+
+    case: str
+    established: float
+    everywhere: float
+    yield_factor_established: float | None
+    yield_factor_everywhere: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Denting:
+    """Largest displacement (mm) of a loaded region relative to the section behind it: local, not of the beam."""
+
+    case: str
+    region: str
+    value: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -146,7 +172,7 @@ class CheckResult:
     Attributes
     ----------
     title, spec_text, parameters
-        From the part; `parameters` in N, mm, MPa, t, s, rad, K.
+        From the part; the text is the spec as it was written; `parameters` in N, mm, MPa, t, s, rad, K.
     spec_name
         File name of the spec, without folders.
     accuracy
@@ -157,8 +183,10 @@ class CheckResult:
         Factor of each load, by case.
     solid_figures, beam_figures
         Every figure of each model.
-    pairs, limits, checks, peaks, cautions
+    pairs, limits, checks, cautions
         What the judge made of them. `cautions` are sentences.
+    peaks, case_stress, denting
+        What only the solid model gives.
     started
         UTC, ISO 8601, seconds.
     files
@@ -178,6 +206,8 @@ class CheckResult:
     limits: tuple[LimitVerdict, ...]
     checks: tuple[IndependentCheck, ...]
     peaks: tuple[PeakPlace, ...]
+    case_stress: tuple[CaseStress, ...]
+    denting: tuple[Denting, ...]
     cautions: tuple[str, ...]
     mesh: MeshSummary
     stages: tuple[Stage, ...]

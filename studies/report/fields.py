@@ -90,7 +90,7 @@ def stress_picture(path: Path, part: Part, mesh: NamedMesh, case: str, von_mises
 def _mark(axes: object, canvas: Canvas, spot: Floats, text: str) -> None:
     """Number a point, if it is not hidden."""
     column, row, depth = canvas.to_pixels(spot[None])[0]
-    r, c = int(round(row)), int(round(column))
+    r, c = round(float(row)), round(float(column))
     near = canvas.depth[max(r - 3, 0):r + 4, max(c - 3, 0):c + 4]
     near = near[np.isfinite(near)]
     if near.size == 0 or depth > near.max() + 4 * canvas.pixel:

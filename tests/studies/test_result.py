@@ -11,8 +11,10 @@ from fem.figure import Figure, FigureKey
 from geometry.problem import RunError
 from studies.check.codec import ResultFormatError
 from studies.check.result import (
+    CaseStress,
     Cause,
     CheckResult,
+    Denting,
     IndependentCheck,
     LimitVerdict,
     MeshSummary,
@@ -37,9 +39,11 @@ def sample(**changes: object) -> CheckResult:
         limits=(LimitVerdict("deflection", "deflection", 0.5, None, "mm", "carrying", "arm.end",
                              "not established", "no such place"),),
         checks=(IndependentCheck("balance", 1e-9, 1e-6, True, "forces"),),
-        peaks=(PeakPlace("carrying", "arm.hole1", "surface", (1.0, 2.0, 3.0), 55.0, None, False, "rim"),),
+        peaks=(PeakPlace("carrying", "arm.hole1", (1.0, 2.0, 3.0), 55.0, 0.6, -56.0, False, "rim"),),
+        case_stress=(CaseStress("carrying", 55.5, 77.7, 6.4, None),), denting=(Denting("carrying", "arm.end", 3e-3),),
         cautions=("linear only",), mesh=MeshSummary(9, 2, 27, 0.35, 12.5, {"size": 2.0, "tries": ["a", 1]}),
-        stages=(Stage("solid", 0.75),), versions={"numpy": "2.4"}, started="2026-12-01T11:30:00Z", files=("summary.md",),
+        stages=(Stage("solid", 0.75),), versions={"numpy": "2.4"}, started="2026-12-01T11:30:00Z",
+        files=("summary.md",),
     )
     return dataclasses.replace(result, **changes)  # type: ignore[arg-type]
 
