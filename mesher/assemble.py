@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
@@ -19,28 +18,85 @@ Ints = NDArray[np.int64]
 Floats = NDArray[np.float64]
 
 
-def assemble(result: ChildResult, solid: NamedSolid, recipe: Mapping[str, Any]) -> NamedMesh:
-    """The named mesh from the arrays of one attempt.
+LEAST_QUALITY = 0.02
+"""Floor of the least scaled Jacobian. Usual meshes of these parts reach 0.1 or more; slivers lie far below."""
+
+STRAIGHT_TOLERANCE = 1e-9
+CURVED_TOLERANCE = 2e-3
+"""Relative to the area of a face: plane with straight edges, or any other (a quarter turn in one curved element
+is off by 1.6e-3 along its arc)."""
+
+VOLUME_TOLERANCE = 1e-3
+
+
+class MeshRefused(Exception):
+    """A gate refused the mesh of one attempt."""
+
+
+def assemble(result: ChildResult, solid: NamedSolid, recipe: dict[str, Any]) -> NamedMesh:
+    """The named mesh from the arrays of one attempt; `recipe` becomes its recipe.
 
     Raises
     ------
-    ValueError
-        The arrays do not fit together (elements missing, boundary not covered by the faces).
+    MeshRefused
+        Elements missing, inverted or too bad; a face, region or the volume that is not that of the solid.
     """
     arrays = result.arrays
-    nodes, tets, index = from_gmsh(arrays["tags"], arrays["points"], arrays["tets"])
-    boundary = boundary_facets(tets)
-    face_index = _owners(boundary, index[arrays["triangles"].T], arrays["owner"])
-    areas = facet_areas(nodes, boundary)
-    facets, area, area_cad = {}, {}, {}
-    for name, faces in solid.regions.items():
-        mine = np.isin(face_index, faces)
-        facets[name] = np.ascontiguousarray(boundary[:, mine])
-        area[name] = float(areas[mine].sum())
-        area_cad[name] = float(sum(solid.faces[i].area for i in faces))
-    volume = float(tetrahedron_volumes(nodes, tets).sum())
+    try:
+        nodes, tets, index = from_gmsh(arrays["tags"], arrays["points"], arrays["tets"])
+        boundary = boundary_facets(tets)
+        face_index = _owners(boundary, index[arrays["triangles"].T], arrays["owner"])
+    except ValueError as error:
+        raise MeshRefused(str(error)) from error
     quality = scaled_jacobian(nodes, tets)
-    return NamedMesh(nodes, tets, facets, boundary, face_index, quality, volume, area, area_cad, dict(recipe))
+    check_quality(quality, nodes, tets)
+    areas = facet_areas(nodes, boundary)
+    face_area = np.bincount(face_index, weights=areas, minlength=len(solid.faces))
+    _check_faces(face_area, arrays["straight"], solid)
+    volume = float(tetrahedron_volumes(nodes, tets).sum())
+    if abs(volume - solid.volume) > VOLUME_TOLERANCE * solid.volume:
+        raise MeshRefused(f"volume of the mesh {volume:.8g} mm^3, of the solid {solid.volume:.8g} mm^3")
+    facets = {name: boundary[:, np.isin(face_index, faces)] for name, faces in solid.regions.items()}
+    return NamedMesh(
+        nodes=nodes,
+        tets=tets,
+        facets=facets,
+        boundary=boundary,
+        face_index=face_index,
+        quality=quality,
+        volume=volume,
+        region_area={name: float(face_area[list(faces)].sum()) for name, faces in solid.regions.items()},
+        region_area_cad={name: sum(solid.faces[i].area for i in faces) for name, faces in solid.regions.items()},
+        recipe=recipe,
+    )
+
+
+def check_quality(quality: Floats, nodes: Floats, tets: Ints) -> None:
+    """Refuse inverted elements and slivers: one alone can spoil a factorisation without an error."""
+    bad = int((quality < LEAST_QUALITY).sum())
+    if bad:
+        worst = int(np.argmin(quality))
+        place = nodes[:, tets[:4, worst]].mean(axis=1)
+        raise MeshRefused(
+            f"{bad} of {len(quality)} elements have a scaled Jacobian below {LEAST_QUALITY} ({int((quality <= 0).sum())}"
+            f" of them may be inverted); the worst has {quality[worst]:.3g}, near"
+            f" ({place[0]:.4g}, {place[1]:.4g}, {place[2]:.4g}) mm"
+        )
+
+
+def _check_faces(face_area: Floats, straight: NDArray[np.bool_], solid: NamedSolid) -> None:
+    """Every face must be meshed, with its area; the message names the region."""
+    cad = np.array([face.area for face in solid.faces])
+    off = np.abs(face_area - cad) / cad
+    wrong = np.flatnonzero(off > np.where(straight, STRAIGHT_TOLERANCE, CURVED_TOLERANCE))
+    if len(wrong):
+        i = int(wrong[np.argmax(off[wrong])])
+        names = [name for name, faces in solid.regions.items() if i in faces]
+        region = f"region {', '.join(names)}" if names else "no named region"
+        raise MeshRefused(
+            f"face {i} ({region}): area on the mesh {face_area[i]:.8g} mm^2, on the solid {cad[i]:.8g} mm^2"
+            f" (off by {off[i]:.2g} of it); {len(wrong)} of {len(cad)} faces are off"
+        )
 
 
 def boundary_facets(tets: Ints) -> Ints:

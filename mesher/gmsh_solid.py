@@ -8,38 +8,87 @@ from typing import Any
 import gmsh
 import numpy as np
 
+from mesher.estimate import estimated_nodes, node_integrals
+from mesher.face_samples import sample_faces
 from mesher.gmsh_session import kernel_version, session
 from mesher.matching import match_faces
+from mesher.size_field import build_field
+from mesher.sizes import Sizes
+
+
+class WrongKernel(ValueError):
+    """The recipe was made with another version of the mesh kernel."""
+
+
+class OverBudget(ValueError):
+    """The mesh would have too many nodes; `facts` holds ``nodes``, the estimate."""
+
+    def __init__(self, nodes: int) -> None:
+        self.facts = {"nodes": nodes}
+        super().__init__(f"about {nodes} nodes expected")
 
 
 def mesh_brep(job: dict[str, Any], path: Path) -> tuple[dict[str, Any], dict[str, Any]]:
     """One attempt at the solid in `path`.
 
-    ``job["options"]`` are gmsh options by name; ``job["marks"]`` the face fingerprints (area, centroid, box).
+    The job holds ``options`` (gmsh options by name), ``marks`` (the face fingerprints: area, centroid, box),
+    ``extent`` (mm), ``sizes``, ``most_nodes``, and ``version`` (the kernel that a recipe asks for, or empty).
     """
     with session():
+        version = kernel_version()
+        if job["version"] and job["version"] != version:
+            raise WrongKernel(f"the recipe is for gmsh {job['version']}, this is gmsh {version}")
         volumes = gmsh.model.occ.importShapes(str(path), highestDimOnly=True, format="brep")
         gmsh.model.occ.synchronize()
         if [dim for dim, _ in volumes] != [3]:
             raise ValueError(f"the file holds {len(volumes)} shapes; one solid is needed")
         faces = match_faces(job["marks"], _face_marks(), job["extent"])
+        volume = gmsh.model.occ.getMass(3, volumes[0][1])
+        integrals = _set_size_field(job, faces, volume, path.parent)
+        nodes = estimated_nodes(*integrals)
+        if nodes > job["most_nodes"]:
+            raise OverBudget(nodes)
         for name, value in job["options"].items():
             gmsh.option.setNumber(name, value)
         gmsh.model.mesh.generate(3)
-        answer = {"version": kernel_version(), "volume": gmsh.model.occ.getMass(3, volumes[0][1])}
-        return answer, _arrays(faces)
+        answer = {"version": version, "volume": volume, "estimated_nodes": nodes, "integrals": integrals}
+        return answer, {**_arrays(faces), "straight": np.array([_straight(tag) for tag in faces])}
 
 
 def _face_marks() -> list[dict[str, Any]]:
-    marks = []
-    for _, tag in gmsh.model.getEntities(2):
-        marks.append({
+    return [
+        {
             "tag": tag,
             "area": gmsh.model.occ.getMass(2, tag),
             "centroid": list(gmsh.model.occ.getCenterOfMass(2, tag)),
             "box": list(gmsh.model.occ.getBoundingBox(2, tag)),
-        })
-    return marks
+        }
+        for _, tag in gmsh.model.getEntities(2)
+    ]
+
+
+def _set_size_field(job: dict[str, Any], faces: list[int], volume: float, folder: Path) -> tuple[float, float]:
+    """Make the background field; returns the integrals for the estimate of the number of nodes."""
+    sizes = Sizes.from_json(job["sizes"])
+    areas = [mark["area"] for mark in job["marks"]]
+    samples = sample_faces(faces, areas, sizes)
+    fine = [s for s in samples if s.size < sizes.bulk]
+    points = np.concatenate([s.points for s in fine]) if fine else np.empty((0, 3))
+    wanted = np.concatenate([np.full(len(s.points), s.size) for s in fine]) if fine else np.empty(0)
+    box = np.array(gmsh.model.getBoundingBox(-1, -1)).reshape(2, 3)
+    grid = build_field(box[0], box[1], sizes.bulk, sizes.slope, points, wanted)
+    grid.write(folder / "sizes.bin")
+    field = gmsh.model.mesh.field.add("Structured")
+    gmsh.model.mesh.field.setString(field, "FileName", str(folder / "sizes.bin"))
+    gmsh.model.mesh.field.setNumber(field, "TextFormat", 0)
+    gmsh.model.mesh.field.setAsBackgroundMesh(field)
+    return node_integrals(areas, [grid.at(s.points) for s in samples], volume)
+
+
+def _straight(tag: int) -> bool:
+    """Whether a face is plane with straight edges: then its mesh has exactly its area."""
+    edges = gmsh.model.getBoundary([(2, tag)], oriented=False)
+    return gmsh.model.getType(2, tag) == "Plane" and all(gmsh.model.getType(1, e) == "Line" for _, e in edges)
 
 
 def _arrays(faces: list[int]) -> dict[str, Any]:
@@ -51,6 +100,8 @@ def _arrays(faces: list[int]) -> dict[str, Any]:
         _, cells = gmsh.model.mesh.getElementsByType(9, tag)
         triangles.append(cells.astype(np.int64).reshape(-1, 6))
         owner.append(np.full(len(triangles[-1]), index, dtype=np.int64))
+    if len(tets) == 0:
+        raise ValueError("the kernel made no tetrahedra")
     return {
         "tags": tags.astype(np.int64),
         "points": coords.reshape(-1, 3),
