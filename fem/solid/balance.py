@@ -1,0 +1,94 @@
+"""Checks of the solution: load resultants, balance of reactions, work against energy, size of the motion."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from fem.solid.factor import GAUGE_ALLOWED, RESIDUAL_ALLOWED
+from fem.solid.model import LEAST_QUALITY, SolidModel
+from fem.solid.reaction import Reactions
+from fem.solid.result import Check
+from fem.solid.shape import Array
+from fem.solid.stiffness import stresses
+from fem.solid.system import Solution
+
+BALANCE_ALLOWED = 1e-6
+ENERGY_ALLOWED = 1e-8
+LARGE_MOTION = 0.05
+"""Largest displacement over length up to which small-displacement theory is taken for granted: common practice, no
+source."""
+
+
+def _check(name: str, value: float, allowed: float, note: str = "") -> Check:
+    return Check(name, float(value), allowed, bool(value <= allowed), note)
+
+
+def strain_energies(model: SolidModel, u: Array) -> tuple[Array, Array]:
+    """(c,) elastic energy from the stresses, and (c,) int sigma : thermal strain dV; both N mm. u (c, 3, n)."""
+    material = model.part.material
+    energy, thermal = np.zeros(u.shape[0]), np.zeros(u.shape[0])
+    expansion = material.expansion * model.change
+    for group in model.groups:
+        ue = u[:, :, model.mesh.tets[:, group.elements]].transpose(0, 3, 2, 1)
+        s = stresses(group.gradients, ue, material.E, material.nu, expansion)
+        trace = s[:, :, :3].sum(axis=2)
+        squares = (s[:, :, :3] ** 2).sum(axis=2) + 2 * (s[:, :, 3:] ** 2).sum(axis=2)
+        density = ((1 + material.nu) * squares - material.nu * trace**2) / (2 * material.E)
+        energy += (density * group.weights).sum(axis=(1, 2))
+        thermal += expansion * (trace * group.weights).sum(axis=(1, 2))
+    return energy, thermal
+
+
+def load_checks(model: SolidModel) -> Iterator[Check]:
+    """Resultant force and moment of each load vector against the declared one."""
+    x = model.mesh.nodes.T
+    for load, vector in zip(model.loads.values(), model.load_vectors, strict=True):
+        force, moment = vector.sum(axis=0), np.cross(x, vector).sum(axis=0)
+        if load.force_per_mass.any():
+            remote = [p for p in model.part.loads if getattr(p, "mass", 0.0) > 0]
+            declared = (model.mass + sum(p.mass for p in remote)) * load.force_per_mass
+            about = np.cross(model.mass * model.centre_of_mass, load.force_per_mass) + sum(
+                (np.cross(p.mass * np.array(p.point), load.force_per_mass) for p in remote), np.zeros(3))
+            arm = float(np.ptp(x, axis=0).max())
+        elif load.force is None:
+            continue
+        else:
+            declared, about, arm = load.force, load.moment, load.arm
+        scale = float(max(np.linalg.norm(declared), np.linalg.norm(about) / arm if about is not None else 0.0))
+        scale = scale if scale > 0 else max(float(np.abs(vector).sum()), 1e-300)
+        yield _check(f"load {load.name}: force", np.linalg.norm(force - declared) / scale, 1e-9)
+        if about is not None:
+            yield _check(f"load {load.name}: moment", np.linalg.norm(moment - about) / (scale * arm), load.allowed)
+
+
+def balance_checks(model: SolidModel, u: Array, reactions: Reactions, energy: Array, thermal: Array,
+                   solution: Solution) -> Iterator[Check]:
+    """Reactions against loads, work against energy, residual, gauge, quality, size of the motion."""
+    x = model.mesh.nodes.T - model.mesh.nodes.mean(axis=1)
+    length = float(np.ptp(x, axis=0).max())
+    for k, case in enumerate(model.part.cases):
+        applied = model.mechanical[k]
+        push = np.abs(applied).sum() + np.abs(reactions.nodal[k]).sum()
+        scale = max(float(push), 1e-300)
+        force = applied.sum(axis=0) + sum((f[k] for f in reactions.force.values()), np.zeros(3))
+        moment = np.cross(x, applied).sum(axis=0)
+        for name, m in reactions.moment.items():
+            arm = reactions.centre[name] - model.mesh.nodes.mean(axis=1)
+            moment = moment + m[k] + np.cross(arm, reactions.force[name][k])
+        yield _check(f"case {case.name}: reactions balance the loads (force)", np.linalg.norm(force) / scale,
+                     BALANCE_ALLOWED)
+        yield _check(f"case {case.name}: reactions balance the loads (moment)",
+                     np.linalg.norm(moment) / (scale * length), BALANCE_ALLOWED)
+        work = float((applied * u[k].T).sum() + (reactions.nodal[k] * u[k].T).sum())
+        gap = abs(work - thermal[k] - 2 * energy[k])
+        size = max(2 * energy[k], abs(work), abs(thermal[k]), 1e-300)
+        yield _check(f"case {case.name}: work is twice the energy", gap / size, ENERGY_ALLOWED)
+        yield _check(f"case {case.name}: largest displacement over length",
+                     np.linalg.norm(u[k], axis=0).max() / length, LARGE_MOTION,
+                     "small displacements are assumed")
+    yield _check("residual of the equations over the load", solution.residual, RESIDUAL_ALLOWED)
+    yield _check("error of a known bending field", solution.gauge, GAUGE_ALLOWED)
+    least = float(model.mesh.quality.min())
+    yield Check("least element quality", least, LEAST_QUALITY, least >= LEAST_QUALITY, "must be above")

@@ -1,0 +1,123 @@
+"""Symmetric positive definite sparse systems: one factorisation, every right-hand side at once.
+
+The only place that touches MKL PARDISO. It is given the upper triangle (a full matrix with ``mtype = 2`` takes
+the process down). Without MKL the same calls go to scipy's sparse LU in symmetric mode.
+"""
+
+from __future__ import annotations
+
+import ctypes
+from typing import Any
+
+import numpy as np
+import scipy.sparse as sp
+import scipy.sparse.linalg as spla
+
+from fem.solid.shape import Array
+from geometry.budget import Budget
+from geometry.problem import SolveError
+
+RESIDUAL_ALLOWED = 1e-9
+GAUGE_ALLOWED = 1e-6
+
+
+class NotPositive(Exception):
+    """The matrix has a pivot that is not positive."""
+
+
+def pardiso_available() -> bool:
+    """Whether pypardiso and MKL can be loaded."""
+    try:
+        from pypardiso import PyPardisoSolver
+
+        PyPardisoSolver(mtype=2)
+    except (ImportError, OSError, AttributeError):
+        return False
+    return True
+
+
+class Cholesky:
+    """Factor of a symmetric positive definite matrix (n, n) in CSR form.
+
+    Raises
+    ------
+    NotPositive
+        When a pivot is not positive.
+    SolveError
+        When the factor would not fit the memory of the budget.
+    """
+
+    def __init__(self, matrix: sp.csr_matrix, budget: Budget, backend: str = "auto") -> None:
+        if backend == "auto":
+            backend = "pardiso" if pardiso_available() else "lu"
+        self.backend = backend
+        self.size = matrix.shape[0]
+        if (matrix.diagonal() <= 0).any():
+            raise NotPositive
+        self._factor = {"pardiso": _Pardiso, "lu": _Lu}[backend](matrix, budget)
+
+    def solve(self, rhs: Array) -> Array:
+        """(n, k) solutions of all right-hand sides (n, k)."""
+        return self._factor.solve(np.asarray(rhs, dtype=float).reshape(self.size, -1))
+
+    def close(self) -> None:
+        """Give the factor's memory back."""
+        self._factor.close()
+
+
+class _Pardiso:
+    def __init__(self, matrix: sp.csr_matrix, budget: Budget) -> None:
+        from pypardiso import PyPardisoSolver
+
+        self.upper = sp.triu(matrix, format="csr")
+        self.upper.sort_indices()
+        self.solver: Any = PyPardisoSolver(mtype=2, size_limit_storage=0)
+        self.solver.libmkl.MKL_Set_Num_Threads(ctypes.c_int(budget.threads))
+        iparm = self.solver.iparm
+        iparm[0], iparm[1], iparm[7] = 1, 2, 2  # own settings, nested dissection, at most 2 refinement steps
+        empty = np.zeros((self.upper.shape[0], 1), order="F")
+        self._call(11, empty)
+        need = max(int(iparm[14]), int(iparm[15]) + int(iparm[16])) / 1024
+        if need > budget.memory:
+            self.close()
+            raise SolveError(
+                f"The factor of {self.upper.shape[0]} unknowns needs about {need:.0f} MiB and the budget is "
+                f"{budget.memory} MiB. Raise the memory, or ask for a coarser accuracy."
+            )
+        self._call(22, empty)
+
+    def _call(self, phase: int, rhs: Array) -> Array:
+        self.solver.set_phase(phase)
+        try:
+            return np.asarray(self.solver._call_pardiso(self.upper, rhs))
+        except Exception as error:  # the wrapper's only error type is not exported
+            code = getattr(error, "value", None)
+            if code in (-4, -7):
+                self.close()
+                raise NotPositive from error
+            raise SolveError(f"The direct solver stopped in phase {phase} with code {code}.") from error
+
+    def solve(self, rhs: Array) -> Array:
+        return self._call(33, np.asfortranarray(rhs)).reshape(rhs.shape)
+
+    def close(self) -> None:
+        self.solver.free_memory(everything=True)
+
+
+class _Lu:
+    def __init__(self, matrix: sp.csr_matrix, budget: Budget) -> None:
+        try:
+            self.factor = spla.splu(
+                matrix.tocsc(), permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True}
+            )
+        except RuntimeError as error:
+            raise NotPositive from error
+        # with the diagonal as pivots, the signs on U's diagonal are the signs of the pivots
+        if (self.factor.U.diagonal() <= 0).any():
+            raise NotPositive
+
+    def solve(self, rhs: Array) -> Array:
+        return np.asarray(self.factor.solve(rhs))
+
+    def close(self) -> None:
+        del self.factor
