@@ -17,4 +17,7 @@ from studies.check.result import (
     Stage,
 )
 
-__all__ = ["CaseStress", "Cause", "CheckResult", "Denting", "IndependentCheck", "LimitVerdict", "MeshSummary", "Pair", "PeakPlace", "Stage"]
+__all__ = [
+    "CaseStress", "Cause", "CheckResult", "Denting", "IndependentCheck", "LimitVerdict", "MeshSummary", "Pair",
+    "PeakPlace", "Stage",
+]  # fmt: skip

@@ -98,26 +98,24 @@ class PeakPlace:
 
     Attributes
     ----------
-    place
-        Regions that meet there; empty when none does.
+    kind
+        ``surface``, ``support``, ``load`` or ``sharp`` (a re-entrant corner).
     point
         Global, mm.
-    stress, spread
-        Von Mises stress and the spread of the element stresses about it, MPa.
-    principal
-        Principal stress of the largest size, signed, MPa.
+    stress, error
+        Von Mises stress and its stated error (None: not stated), MPa.
     has_limit
-        False where the stress has no converged value (a sharp corner, the rim of a support); `reason` says why.
+        False where the stress has no converged value (a sharp corner, the rim of a support); `text` says why.
     """
 
     case: str
     place: str
+    kind: str
     point: tuple[float, float, float]
     stress: float
-    spread: float
-    principal: float
+    error: float | None
     has_limit: bool
-    reason: str = ""
+    text: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -183,9 +181,9 @@ class CheckResult:
         Factor of each load, by case.
     solid_figures, beam_figures
         Every figure of each model.
-    pairs, limits, checks, cautions
+    pairs, limits, checks, peaks, cautions
         What the judge made of them. `cautions` are sentences.
-    peaks, case_stress, denting
+    case_stress, denting
         What only the solid model gives.
     started
         UTC, ISO 8601, seconds.

@@ -7,6 +7,7 @@ over pipes between the two processes; nothing is written to a file.
 
 from __future__ import annotations
 
+import contextlib
 import os
 import pickle
 import signal
@@ -48,21 +49,17 @@ class SolidChild:
 
     def __exit__(self, *_: object) -> None:
         if self._process.poll() is None:
-            try:
+            with contextlib.suppress(ProcessLookupError):
                 os.killpg(self._process.pid, signal.SIGKILL)
-            except ProcessLookupError:
-                pass
         self._process.wait()
         self._talk.join(timeout=10)
 
     def _converse(self, question: bytes) -> None:
         assert self._process.stdin is not None and self._process.stdout is not None
-        try:
+        with contextlib.suppress(OSError):  # the child is gone: `result` says so
             self._process.stdin.write(len(question).to_bytes(8, "big") + question)
             self._process.stdin.flush()  # left open: its end tells the child that we are gone
             self._answer = self._process.stdout.read()
-        except OSError:
-            pass  # the child is gone: `result` says so
 
     def result(self) -> tuple[NamedSolid, float]:
         """Wait for the solid; returns it with the seconds it took.

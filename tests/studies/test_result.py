@@ -31,7 +31,7 @@ def sample(**changes: object) -> CheckResult:
     figure = Figure(KEY, -0.1 - 0.2, "mm", 1e-3, "net")
     result = CheckResult(
         title="Arm µ", spec_name="arm.toml", spec_text='title = "x"\n', parameters={"reach": 360.0}, accuracy=0.021,
-        material={"name": "steel", "E": 210000.5, "yield_strength": None}, cases={"carrying": {"camera": 1.25}},
+        material={"name": "steel", "E": 210000.5, "nu": 0.3, "yield_strength": None}, cases={"carrying": {"camera": 1.25}},
         solid_figures=(figure,), beam_figures=(dataclasses.replace(figure, value=-0.31, error=None, note=""),),
         pairs=(Pair(KEY, -0.3, -0.31, "mm", 0.01, 0.32, 0.005, (Cause("hole", 0.007),), "explained", "hole1"),
                Pair(KEY._replace(place="", quantity="mass", axes="member"), 1.5, None, "t", None, 1.6, 0.1, (),
@@ -39,7 +39,7 @@ def sample(**changes: object) -> CheckResult:
         limits=(LimitVerdict("deflection", "deflection", 0.5, None, "mm", "carrying", "arm.end",
                              "not established", "no such place"),),
         checks=(IndependentCheck("balance", 1e-9, 1e-6, True, "forces"),),
-        peaks=(PeakPlace("carrying", "arm.hole1", (1.0, 2.0, 3.0), 55.0, 0.6, -56.0, False, "rim"),),
+        peaks=(PeakPlace("carrying", "arm.hole1", "surface", (1.0, 2.0, 3.0), 55.0, None, False, "rim"),),
         case_stress=(CaseStress("carrying", 55.5, 77.7, 6.4, None),), denting=(Denting("carrying", "arm.end", 3e-3),),
         cautions=("linear only",), mesh=MeshSummary(9, 2, 27, 0.35, 12.5, {"size": 2.0, "tries": ["a", 1]}),
         stages=(Stage("solid", 0.75),), versions={"numpy": "2.4"}, started="2026-12-01T11:30:00Z",

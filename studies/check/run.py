@@ -1,0 +1,174 @@
+"""One checked run: spec, solid, mesh, beam, solve, compare, write."""
+
+from __future__ import annotations
+
+import dataclasses
+import sys
+from collections.abc import Mapping
+from contextlib import ExitStack
+from datetime import UTC, datetime
+from importlib.metadata import PackageNotFoundError, version
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from geometry.budget import Budget
+from geometry.named_solid import NamedSolid
+from geometry.part import Part
+from studies.check.folder import RESULT, refuse_existing, run_folder
+from studies.check.result import CaseStress, CheckResult, Denting, MeshSummary
+from studies.check.solid_child import SolidChild
+from studies.check.stages import Clock, Event, Listener, blamed_on
+
+if TYPE_CHECKING:
+    from fem.beam import BeamResult
+    from fem.solid.result import SolidResult
+    from mesher.named_mesh import NamedMesh
+    from studies.judge import Judgement
+
+PACKAGES = ("haunch", "cadquery", "cadquery-ocp", "gmsh", "scikit-fem", "numpy", "scipy", "pypardiso", "meshio",
+            "matplotlib")
+
+
+@dataclasses.dataclass(frozen=True, slots=True)
+class Models:
+    """Both models of one part, solved."""
+
+    part: Part
+    named_solid: NamedSolid
+    mesh: NamedMesh
+    beam: BeamResult
+    solid: SolidResult
+
+
+def check(part: Part | str | Path, out: str | Path, budget: Budget | None = None, listener: Listener | None = None, *,
+          replace: bool = False, pictures: bool = True) -> CheckResult:
+    """Build both models of a part, compare them, and write the run folder `out`.
+
+    Parameters
+    ----------
+    part
+        A resolved part, or the path of a spec.
+    out
+        The run folder. It appears whole at the end, or not at all.
+    budget
+        Threads, memory and time that may be used.
+    listener
+        Hears each `Event`.
+    replace
+        Overwrite a finished run of that name.
+    pictures
+        Draw the PNG pictures.
+
+    Raises
+    ------
+    SpecError
+        The spec is wrong.
+    RunError
+        A stage failed, or `out` exists; `RunError.stage` says which. An unforeseen exception is its cause.
+    """
+    out, budget, clock = Path(out), budget or Budget(), Clock(listener)
+    started = datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
+    refuse_existing(out, replace)
+    with clock.stage("spec"):
+        name, resolved = _read(part)
+    models = build_models(resolved, budget, clock)
+    with clock.stage("compare"):
+        result = _compare(models, name, started, clock)
+    with clock.stage("write"), run_folder(out, replace) as room:
+        result = write_run(room, result, models, clock, pictures)
+    return dataclasses.replace(result, stages=clock.times())
+
+
+def _read(part: Part | str | Path) -> tuple[str, Part]:
+    if isinstance(part, Part):
+        return "part.toml", part
+    from geometry.spec import read_part
+
+    return Path(part).name, read_part(part)
+
+
+def build_models(part: Part, budget: Budget, clock: Clock) -> Models:
+    """Solve both models. The CAD solid is built in a child process while the beam model is solved here."""
+    with ExitStack() as stack:
+        clock.tell(Event("solid", "start"))
+        with blamed_on("solid"):
+            child = stack.enter_context(SolidChild(part, budget))
+        with clock.stage("beam"):
+            from fem.beam import solve_beam
+
+            beam = solve_beam(part, budget)
+        with blamed_on("solid"):
+            named_solid, seconds = child.result()
+        clock.finish("solid", seconds, f"{len(named_solid.faces)} faces, {named_solid.volume:.6g} mm^3")
+    with clock.stage("mesh"):
+        from mesher import mesh_solid
+
+        mesh = mesh_solid(named_solid, part.accuracy, budget)
+        clock.note("mesh", f"{mesh.tets.shape[1]} tetrahedra, {mesh.nodes.shape[1]} nodes")
+    with clock.stage("solve"):
+        from fem.solid import solve_solid
+
+        solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text))
+    return Models(part, named_solid, mesh, beam, solid)
+
+
+def _compare(models: Models, name: str, started: str, clock: Clock) -> CheckResult:
+    from studies.judge import judge
+
+    verdict = judge(models.part, models.named_solid, models.mesh, models.solid, models.beam)
+    return make_result(models, verdict, name, started, clock)
+
+
+def make_result(models: Models, verdict: Judgement, name: str, started: str, clock: Clock) -> CheckResult:
+    """The record of a run, without its files."""
+    part, mesh, solid = models.part, models.mesh, models.solid
+    return CheckResult(
+        title=part.title, spec_name=name, spec_text=part.source_text, parameters=dict(part.parameters),
+        accuracy=part.accuracy, material=dataclasses.asdict(part.material),
+        cases={case.name: dict(case.factors) for case in part.cases},
+        solid_figures=tuple(solid.figures), beam_figures=tuple(models.beam.figures),
+        pairs=tuple(verdict.pairs), limits=tuple(verdict.limits), checks=tuple(verdict.checks),
+        peaks=tuple(verdict.peaks), case_stress=_case_stress(solid), denting=_denting(solid),
+        cautions=tuple(verdict.cautions),
+        mesh=MeshSummary(mesh.nodes.shape[1], mesh.tets.shape[1], mesh.nodes.size, float(mesh.quality.min()),
+                         mesh.volume, dict(mesh.recipe)),
+        stages=clock.times(), versions=versions(), started=started,
+    )
+
+
+def _case_stress(solid: SolidResult) -> tuple[CaseStress, ...]:
+    return tuple(CaseStress(c.case, c.established, c.everywhere, c.yield_factor_established,
+                            c.yield_factor_everywhere) for c in solid.case_stress)
+
+
+def _denting(solid: SolidResult) -> tuple[Denting, ...]:
+    return tuple(Denting(d.case, d.region, d.value) for d in solid.denting)
+
+
+def versions() -> Mapping[str, str]:
+    """Version of Python and of each package that a number can depend on."""
+    found = {"python": ".".join(map(str, sys.version_info[:3]))}
+    for package in PACKAGES:
+        try:
+            found[package] = version(package)
+        except PackageNotFoundError:
+            found[package] = "not installed"
+    return found
+
+
+def write_run(room: Path, result: CheckResult, models: Models, clock: Clock, pictures: bool) -> CheckResult:
+    """Write every file of a run into the folder `room`; returns the result that names them."""
+    from studies.check.fields import write_fields
+    from studies.report.summary import summary
+
+    (room / "part.step").write_bytes(models.named_solid.step)
+    write_fields(room / "solid.vtu", models.mesh, models.solid)
+    if pictures:
+        from studies.report.pictures import draw_pictures
+
+        draw_pictures(room, models.part, models.mesh, models.solid, result, lambda text: clock.note("write", text))
+    names = sorted(p.name for p in room.iterdir())
+    result = dataclasses.replace(result, files=("summary.md", RESULT, *names), stages=clock.times())
+    (room / "summary.md").write_text(summary(result), encoding="utf-8")
+    (room / RESULT).write_text(result.to_json(), encoding="utf-8")
+    return result
