@@ -1,0 +1,153 @@
+"""Section properties along one member: smooth pieces between stations, and what cuts leave of them.
+
+Area, centroid and second moments are exact integrals at Chebyshev points of each piece (they are polynomials in x
+there). Torsion constant, shear compliance, shear centre and warping constant come from finite-element section
+analyses: one for a prismatic piece, five for a tapered one, all meshed together. J and C are interpolated as multiples
+of A^4/I_p and 1/A, which vary little.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.polynomial import chebyshev
+from numpy.typing import NDArray
+
+from fem.beam.cuts import NetEffect, net_effects
+from fem.beam.law import LineProperties
+from fem.beam.outlines import dims_slope, member_outline
+from fem.beam.section import OutlineIntegrals, SectionProperties, outline_integrals, sections_properties
+from geometry.outline import Outline
+from geometry.part import Member
+
+Array = NDArray[np.float64]
+SectionSolver = Callable[[Sequence[Outline], float], Sequence[SectionProperties]]
+EXACT_POINTS, SOLVED_POINTS = 9, 5
+
+
+@dataclass(frozen=True, slots=True)
+class Piece:
+    """Smooth piece of the member from `start` to `end`, mm; tables of Chebyshev coefficients, first axis the degree.
+
+    `exact`: A, yc, zc, Iyy, Izz, Iyz. `solved`: J Ip / A^4, C A (yy, yz, zz), ys - yc, zs - zc, Iw, warping (4).
+    """
+
+    start: float
+    end: float
+    constant: bool
+    exact: Array
+    solved: Array
+    open_thin: bool
+
+    def _t(self, x: Array) -> Array:
+        return (2.0 * x - self.start - self.end) / (self.end - self.start)
+
+    def exact_at(self, x: Array) -> Array:
+        """(6, m)"""
+        return np.asarray(chebyshev.chebval(self._t(x), self.exact))
+
+    def solved_at(self, x: Array) -> Array:
+        """(11, m)"""
+        return np.asarray(chebyshev.chebval(self._t(x), self.solved))
+
+
+def chebyshev_points(start: float, end: float, count: int) -> Array:
+    """Interior Chebyshev points of an interval."""
+    t = np.cos(np.pi * (np.arange(count) + 0.5) / count)[::-1]
+    return np.asarray(0.5 * (start + end) + 0.5 * (end - start) * t)
+
+
+def fitted(start: float, end: float, points: Array, values: Array) -> Array:
+    """Chebyshev coefficients of the polynomial through values (k, q) at its Chebyshev points."""
+    t = (2.0 * points - start - end) / (end - start)
+    return np.asarray(chebyshev.chebfit(t, values, len(points) - 1))
+
+
+class Sections:
+    """Properties at any x of a member.
+
+    Parameters
+    ----------
+    length
+        Length of the member, mm.
+    nu
+        Poisson's ratio (the shear compliance depends on it).
+    solver
+        Section analysis of many outlines at once.
+    """
+
+    def __init__(self, member: Member, length: float, nu: float, solver: SectionSolver = sections_properties) -> None:
+        self.member, self.length = member, length
+        cuts = sorted({0.0, length, *(s.at for s in member.stations if 0.0 < s.at < length)})
+        spans = list(zip(cuts[:-1], cuts[1:], strict=True))
+        constant = [not any(dims_slope(member, 0.5 * (a + b)).values()) for a, b in spans]
+        points = [np.array([0.5 * (a + b)]) if c else chebyshev_points(a, b, SOLVED_POINTS)
+                  for (a, b), c in zip(spans, constant, strict=True)]
+        results = iter(solver([member_outline(member, float(x)) for p in points for x in p], nu))
+        solved = [[next(results) for _ in p] for p in points]
+        self.solved = tuple(s for group in solved for s in group)
+        self.pieces = tuple(self._piece(a, b, c, p, s)
+                            for (a, b), c, p, s in zip(spans, constant, points, solved, strict=True))
+        self.effects: tuple[NetEffect, ...] = net_effects(member, self.integrals)
+
+    def _piece(self, a: float, b: float, constant: bool, points: Array, solved: list[SectionProperties]) -> Piece:
+        if constant:
+            at = points
+        else:
+            at = chebyshev_points(a, b, EXACT_POINTS)
+        exact = [outline_integrals(member_outline(self.member, float(x))) for x in at]
+        table = np.array([[o.area, o.yc, o.zc, o.Iyy, o.Izz, o.Iyz] for o in exact])
+        rows = []
+        for s in solved:
+            C = s.shear_compliance * s.area
+            rows.append([s.J * (s.Iyy + s.Izz) / s.area**4, C[0, 0], C[0, 1], C[1, 1], s.ys - s.yc, s.zs - s.zc, s.Iw,
+                         *s.warping])
+        return Piece(a, b, constant, fitted(a, b, at, table), fitted(a, b, points, np.array(rows)),
+                     any(s.open_thin for s in solved))
+
+    def piece(self, x: float, side: str = "after") -> Piece:
+        """The piece that holds `x`."""
+        for piece in self.pieces:
+            if x < piece.end or (x == piece.end and side == "before"):
+                return piece
+        return self.pieces[-1]
+
+    def outline(self, x: float) -> Outline:
+        """Outline without cuts, member axes from the line."""
+        return member_outline(self.member, x)
+
+    def integrals(self, x: float) -> OutlineIntegrals:
+        """Exact integrals of the outline without cuts."""
+        return outline_integrals(self.outline(x))
+
+    def gross(self, x: Array, side: str = "after") -> LineProperties:
+        """Properties without cuts at points x (m,)."""
+        x = np.atleast_1d(np.asarray(x, dtype=float))
+        which = np.array([self.pieces.index(self.piece(float(v), side)) for v in x])
+        exact, solved = np.zeros((6, len(x))), np.zeros((11, len(x)))
+        for k in np.unique(which):
+            here = which == k
+            exact[:, here] = self.pieces[k].exact_at(x[here])
+            solved[:, here] = self.pieces[k].solved_at(x[here])
+        A, yc, zc, Iyy, Izz, Iyz = exact
+        shear = np.zeros((len(x), 5, 5))
+        shear[:, 0, 0], shear[:, 1, 1] = solved[1] / A, solved[3] / A
+        shear[:, 0, 1] = shear[:, 1, 0] = solved[2] / A
+        return LineProperties(A, yc, zc, Iyy, Izz, Iyz, yc + solved[4], zc + solved[5],
+                              solved[0] * A**4 / (Iyy + Izz), solved[6], shear)
+
+    def warping_at_extremes(self, x: float, side: str = "after") -> Array:
+        """(4,) warping function at the extreme points, mm^2."""
+        return self.piece(x, side).solved_at(np.array([x]))[7:, 0]
+
+    def net(self, x: Array, side: str = "after") -> LineProperties:
+        """Properties with cuts taken off at points x (m,)."""
+        p = self.gross(x, side)
+        x = np.atleast_1d(np.asarray(x, dtype=float))
+        for effect in self.effects:
+            here = np.flatnonzero((x > effect.start) & (x < effect.end))
+            if len(here):
+                p = effect.apply(p, x, here)
+        return p

@@ -1,0 +1,56 @@
+"""Transfer matrices of short lengths of the member.
+
+The equations of `fem.beam.law` are integrated by Magnus' method with two Gauss points (order 4; S. Blanes,
+F. Casas, J. A. Oteo and J. Ros, Phys. Rep. 470 (2009) 151-238): exact where the section is constant, distributed
+loads and restrained warping included.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.linalg import expm
+
+from fem.beam.law import LineProperties, system_matrices
+
+Array = NDArray[np.float64]
+GAUSS = 0.5 + np.array([-0.5, 0.5]) / np.sqrt(3.0)
+
+
+def transfer_matrices(
+    ends: Array, properties: Callable[[Array], LineProperties], E: float, G: float, warping: bool
+) -> Array:
+    """Transfer matrix of each length.
+
+    Parameters
+    ----------
+    ends
+        (m, 2) start and end of each length, mm.
+    properties
+        Gives the properties at given points; `points` come as one flat array, length by length, two each.
+
+    Returns
+    -------
+    (m, 2n + 13, 2n + 13) matrices that carry the state of `system_matrices` from start to end.
+    """
+    h = ends[:, 1] - ends[:, 0]
+    points = ends[:, :1] + h[:, None] * GAUSS
+    p = properties(points.ravel())
+    A = system_matrices(p, E, G, warping).reshape(len(h), 2, *(2 * [2 * (7 if warping else 6) + 13]))
+    scale = _scale(h, E * p.area.reshape(-1, 2).mean(axis=1), warping)
+    A = A * (h[:, None, None] * scale[:, None, :] / scale[:, :, None])[:, None]
+    a, b = A[:, 0], A[:, 1]
+    M = expm(0.5 * (a + b) + np.sqrt(3.0) / 12.0 * (b @ a - a @ b))
+    return M * scale[:, :, None] / scale[:, None, :]
+
+
+def _scale(h: Array, EA: Array, warping: bool) -> Array:
+    """(m, 2n + 13) sizes of the state's entries: exponentials of badly scaled matrices lose digits."""
+    one = np.ones_like(h)
+    d = [h] * 3 + [one] * 3 + ([1.0 / h] if warping else [])
+    f = [EA] * 3 + [EA * h] * 3 + ([EA * h**2] if warping else [])
+    load = [EA / h] * 3 + [EA] * 3
+    growth = [q / h for q in load]
+    return np.stack(d + f + load + growth + [one], axis=1)

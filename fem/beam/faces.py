@@ -1,0 +1,109 @@
+"""Which edges of an outline make up a named face, and what they show at one station."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fem.beam.regions import Strip
+from geometry.outline import Arc, Edge, Line, Outline
+from geometry.problem import RunError
+
+Array = NDArray[np.float64]
+_LINE = np.polynomial.legendre.leggauss(3)
+_ARC = np.polynomial.legendre.leggauss(16)
+OUTWARD = {"top": (0.0, 1.0), "bottom": (0.0, -1.0), "left": (-1.0, 0.0), "right": (1.0, 0.0)}
+FACES = (*OUTWARD, "surface", "bore", "web_left", "web_right")
+
+
+def face_edges(outline: Outline, face: str) -> list[tuple[int, int]]:
+    """(loop, edge) of each edge of a face; loop 0 is the outer one.
+
+    ``top``: the straight edges at the highest z whose outward normal points up, and so on; ``surface``: the whole
+    outer loop; ``bore``: the inner loops; ``web_left``, ``web_right``: the longest straight upright edge that looks
+    that way and does not lie at the section's extreme, or, where there is none (the back of a channel), at it.
+    """
+    loops = (outline.outer, *outline.inner)
+    if face == "surface":
+        return [(0, i) for i in range(len(loops[0]))]
+    if face == "bore":
+        return [(k, i) for k, loop in enumerate(loops) if k for i in range(len(loop))]
+    points = np.array([e.start for e in outline.outer])
+    size = float(np.ptp(points, axis=0).max())
+    if face in OUTWARD:
+        n = np.array(OUTWARD[face])
+        extreme = float((points @ n).max())
+        return [(0, i) for i, e in enumerate(outline.outer)
+                if isinstance(e, Line) and _normal(e) @ n > 0.999 and abs(np.array(e.start) @ n - extreme) < 1e-6 * size]
+    n = np.array((-1.0, 0.0) if face == "web_left" else (1.0, 0.0))
+    upright = [(i, e) for i, e in enumerate(outline.outer) if isinstance(e, Line) and _normal(e) @ n > 0.999]
+    inside = [(i, e) for i, e in upright if abs(np.array(e.start) @ n - float((points @ n).max())) > 1e-6 * size]
+    found = sorted(inside or upright, key=lambda p: math.dist(p[1].start, p[1].end))
+    return [(0, found[-1][0])] if found else []
+
+
+def strip(
+    x: float, here: Outline, before: Outline, after: Outline, step: float, edges: list[tuple[int, int]],
+    across: tuple[int, float, float] | None = None,
+) -> Strip:
+    """What `edges` show at `x`.
+
+    `before` and `after` are outlines a distance `step` apart (their difference gives the inclination); `across` keeps
+    only the part of straight edges whose coordinate 0 (y) or 1 (z) lies in a range.
+    """
+    points, normals = [], []
+    for loop, i in edges:
+        edge = _loop(here, loop)[i]
+        first, last = (0.0, 1.0) if across is None else _clip(edge, *across)
+        if last <= first:
+            continue
+        t, w = _ARC if isinstance(edge, Arc) else _LINE
+        t = first + (last - first) * (t + 1.0) / 2.0
+        w = w * (last - first) / 2.0
+        r, rt = _curve(edge, t)
+        rx = (_curve(_loop(after, loop)[i], t)[0] - _curve(_loop(before, loop)[i], t)[0]) / step
+        # material lies to the left of the edge: the outward area vector of r(t, x)
+        n = np.stack([rx[:, 1] * rt[:, 0] - rx[:, 0] * rt[:, 1], rt[:, 1], -rt[:, 0]], axis=1)
+        points.append(np.column_stack([np.full(len(t), x), r]))
+        normals.append(n * w[:, None])
+    if not points:
+        raise RunError("beam", f"a region has no width at x = {x:.6g} mm; check the patch's range across the face")
+    normal = np.vstack(normals)
+    return Strip(np.vstack(points), np.linalg.norm(normal, axis=1), normal)
+
+
+def _loop(outline: Outline, k: int) -> tuple[Edge, ...]:
+    return outline.outer if k == 0 else outline.inner[k - 1]
+
+
+def _normal(edge: Line) -> Array:
+    ty, tz = edge.end[0] - edge.start[0], edge.end[1] - edge.start[1]
+    return np.array([tz, -ty]) / math.hypot(ty, tz)
+
+
+def _clip(edge: Edge, axis: int, low: float, high: float) -> tuple[float, float]:
+    a, b = edge.start[axis], edge.end[axis]
+    if isinstance(edge, Arc) or a == b:
+        return (0.0, 1.0) if low <= a <= high else (0.0, 0.0)
+    t = sorted(((low - a) / (b - a), (high - a) / (b - a)))
+    return max(t[0], 0.0), min(t[1], 1.0)
+
+
+def _curve(edge: Edge, t: Array) -> tuple[Array, Array]:
+    """Points (k, 2) and their derivative by t in [0, 1]."""
+    a, b = np.array(edge.start), np.array(edge.end)
+    if isinstance(edge, Line):
+        return a + t[:, None] * (b - a), np.tile(b - a, (len(t), 1))
+    c = np.array(edge.centre)
+    first = math.atan2(*(a - c)[::-1])
+    turn = (math.atan2(*(b - c)[::-1]) - first) % (2.0 * math.pi)
+    if turn < 1e-12:
+        turn = 2.0 * math.pi
+    if not edge.ccw:
+        turn -= 2.0 * math.pi
+    angle = first + turn * t
+    r = float(np.hypot(*(a - c)))
+    unit = np.column_stack([np.cos(angle), np.sin(angle)])
+    return c + r * unit, r * turn * np.column_stack([-unit[:, 1], unit[:, 0]])

@@ -1,0 +1,192 @@
+"""From the states of the line to figures."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fem.beam.actions import Actions
+from fem.beam.equations import Row, States
+from fem.beam.law import section_flexibility
+from fem.beam.mesh import BeamMesh
+from fem.beam.result import Diagram
+from fem.beam.section import outline_integrals
+from fem.figure import Figure, FigureKey, station_place
+
+Array = NDArray[np.float64]
+XYZ = ("x", "y", "z")
+STATIONS = 20
+
+
+@dataclass(frozen=True, slots=True)
+class Solved:
+    """Everything that the figures are made from; loads and temperature changes by case (last axis)."""
+
+    mesh: BeamMesh
+    actions: Actions
+    rows: list[Row]
+    nodal: Array
+    lengths: Array
+    change: Array
+    states: States
+
+
+def station_values(mesh: BeamMesh) -> Array:
+    """(21,) stations at which both models report, mm."""
+    return np.arange(STATIONS + 1) * mesh.length / STATIONS
+
+
+def all_figures(s: Solved) -> tuple[list[Figure], list[str]]:
+    """Every figure of the beam model, and notes on those that it withholds."""
+    from fem.beam.stress import nominal_stresses
+
+    figures: list[Figure] = []
+    for k, case in enumerate(s.mesh.part.cases):
+        figures += _displacements(s, k, case.name)
+        figures += _reactions(s, k, case.name)
+        figures += _section_forces(s, k, case.name)
+        figures += nominal_stresses(s, k, case.name)
+        figures.append(Figure(FigureKey(case.name, "", "strain_energy", ""), float(sum(energies(s, k))), "N mm"))
+    figures += _mass(s.mesh)
+    return figures, []
+
+
+def places(mesh: BeamMesh) -> Iterator[tuple[str, float]]:
+    """Name and x of each place at which displacements are reported."""
+    name = mesh.member.name
+    yield f"{name}.start", 0.0
+    yield f"{name}.end", mesh.length
+    for place in mesh.part.places:
+        if place.member == name:
+            yield place.name, place.at
+    for x in station_values(mesh):
+        yield station_place(name, float(x)), float(x)
+
+
+def forces_at(s: Solved, x: float, case: int) -> Array:
+    """(7,) N, Vy, Vz, T, My, Mz, B at `x`; at an inner jump the mean of both sides."""
+    k = s.mesh.node(x)
+    m = len(s.mesh.x) - 1
+    sides = []
+    if k > 0:
+        sides.append(s.states.end[k - 1, 7:, case])
+    if k < m:
+        sides.append(s.states.start[k, 7:, case])
+    return np.asarray(np.mean(sides, axis=0))
+
+
+def _displacements(s: Solved, case: int, name: str) -> Iterator[Figure]:
+    R = s.mesh.axes
+    for place, x in places(s.mesh):
+        k = s.mesh.node(x)
+        d = s.states.freedoms[7 * k:7 * k + 6, case]
+        p = s.mesh.sections.net(np.array([x]), "after" if x < s.mesh.length else "before")
+        r = np.array([0.0, p.yc[0], p.zc[0]])
+        # the section's mean is that of its centroid; free expansion moves it across the member as well
+        u = d[:3] + np.cross(d[3:6], r) + s.mesh.part.material.expansion * s.change[case] * r
+        for i, (value, turn) in enumerate(zip(R.T @ u, R.T @ d[3:6], strict=True)):
+            yield Figure(FigureKey(name, place, "displacement", XYZ[i]), float(value), "mm")
+            yield Figure(FigureKey(name, place, "rotation", XYZ[i]), float(turn), "rad")
+
+
+def reaction(s: Solved, support: str, case: int) -> tuple[Array, Array]:
+    """Force and moment about its region's centroid (member axes) that a support exerts on the part."""
+    on = next(v.on for v in s.mesh.part.supports if v.name == support)
+    centre = s.actions.region(on).centroid
+    total = np.zeros(s.actions.freedoms)
+    for row, value in zip(s.rows, s.states.reactions[:, case], strict=True):
+        if row.owner == support:
+            total += value * row.vector
+    points = [np.array([x, 0.0, 0.0]) for x in s.mesh.x]
+    blocks = [total[7 * i:7 * i + 6] for i in range(len(points))]
+    points += s.actions.rigid_points
+    blocks += list(total[7 * len(s.mesh.x):].reshape(-1, 6))
+    F, M = np.zeros(3), np.zeros(3)
+    for point, w in zip(points, blocks, strict=True):
+        F += w[:3]
+        M += w[3:] + np.cross(point - centre, w[:3])
+    return F, M
+
+
+def _reactions(s: Solved, case: int, name: str) -> Iterator[Figure]:
+    for support in s.mesh.part.supports:
+        force, moment = (s.mesh.axes.T @ v for v in reaction(s, support.name, case))
+        for i in range(3):
+            yield Figure(FigureKey(name, support.name, "reaction_force", XYZ[i]), float(force[i]), "N")
+            yield Figure(FigureKey(name, support.name, "reaction_moment", XYZ[i]), float(moment[i]), "N mm")
+
+
+def _section_forces(s: Solved, case: int, name: str) -> Iterator[Figure]:
+    for x in station_values(s.mesh):
+        f = forces_at(s, float(x), case)
+        place = station_place(s.mesh.member.name, float(x))
+        for i, component in enumerate(("N", "Vy", "Vz")):
+            yield Figure(FigureKey(name, place, "section_force", component, "member"), float(f[i]), "N")
+        for i, component in enumerate(("T", "My", "Mz")):
+            yield Figure(FigureKey(name, place, "section_moment", component, "member"), float(f[3 + i]), "N mm")
+
+
+def energies(s: Solved, case: int) -> tuple[float, float]:
+    """Elastic energy without shear, and of shear, N mm (Simpson's rule on each length)."""
+    mesh, material = s.mesh, s.mesh.part.material
+    E, G = material.E, material.E / (2.0 * (1.0 + material.nu))
+    x = mesh.x
+    h = np.diff(x)
+    inset = 1e-7 * h
+    parts = np.zeros(2)
+    for at, states, w in ((x[:-1] + inset, s.states.start, 1.0), (0.5 * (x[:-1] + x[1:]), s.states.middle, 4.0),
+                          (x[1:] - inset, s.states.end, 1.0)):
+        p = mesh.stiffness(at)
+        f = states[:, 7:13, case]
+        whole = np.einsum("mi,mij,mj->m", f, section_flexibility(p, E, G), f)
+        shear = p.shear.copy()
+        p.shear[:] = 0.0
+        bending = np.einsum("mi,mij,mj->m", f, section_flexibility(p, E, G), f)
+        p.shear[:] = shear
+        torque = f[:, 3] + p.zs * f[:, 1] - p.ys * f[:, 2]
+        chi, B = states[:, 6, case], states[:, 13, case]
+        free = ~mesh.line.warping
+        twist = np.where(free, torque**2 / (G * p.J), G * p.J * chi**2 + B**2 / (E * np.maximum(p.Iw, 1e-300)))
+        parts += w * np.array([((bending + twist) * h).sum(), ((whole - bending) * h).sum()]) / 12.0
+    return float(parts[0]), float(parts[1])
+
+
+def shear_share(s: Solved, case: int) -> float:
+    """Share of the strain energy that is shear."""
+    rest, shear = energies(s, case)
+    return shear / (rest + shear) if rest + shear > 0.0 else 0.0
+
+
+def _mass(mesh: BeamMesh) -> Iterator[Figure]:
+    t, w = np.polynomial.legendre.leggauss(4)
+    h = np.diff(mesh.x)
+    x = (mesh.x[:-1, None] + h[:, None] * 0.5 * (t + 1.0)).ravel()
+    p = mesh.sections.net(x)
+    dm = mesh.part.material.density * p.area * (h[:, None] * 0.5 * w).ravel()
+    mass = float(dm.sum())
+    centre = np.array([dm @ x, dm @ p.yc, dm @ p.zc]) / mass
+    yield Figure(FigureKey("", "", "mass", ""), mass, "t")
+    for i, value in enumerate(mesh.axes.T @ centre + np.array(mesh.member.start)):
+        yield Figure(FigureKey("", "", "centre_of_mass", XYZ[i]), float(value), "mm")
+
+
+def properties_table(mesh: BeamMesh) -> Array:
+    """(21, 7) x, A, yc, zc, Iyy, Izz, Iyz of the net section at the stations."""
+    from fem.beam.outlines import net_section
+
+    rows = []
+    for x in station_values(mesh):
+        at = min(max(float(x), 1e-9 * mesh.length), (1.0 - 1e-9) * mesh.length)
+        o = outline_integrals(net_section(mesh.member, at))
+        rows.append([x, o.area, o.yc, o.zc, o.Iyy, o.Izz, o.Iyz])
+    return np.array(rows)
+
+
+def diagram(s: Solved, case: int) -> Diagram:
+    """Diagrams of one case."""
+    both = np.stack([s.states.start[..., case], s.states.end[..., case]], axis=1).reshape(-1, 14)
+    x = np.stack([s.mesh.x[:-1], s.mesh.x[1:]], axis=1).ravel()
+    return Diagram(x, *(both[:, 7 + i] for i in range(6)), both[:, 13], both[:, :3], both[:, 3:6])

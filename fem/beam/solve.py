@@ -1,0 +1,130 @@
+"""The beam model of a part, start to end."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fem.beam.actions import Actions
+from fem.beam.along import SectionSolver
+from fem.beam.equations import Row, present, solve_line
+from fem.beam.figures import Solved, all_figures, diagram, properties_table, shear_share
+from fem.beam.mesh import BeamMesh
+from fem.beam.result import BeamResult
+from fem.beam.section import sections_properties
+from geometry.budget import Budget
+from geometry.part import Part, RemotePoint
+from geometry.problem import RunError, SolveError
+
+Array = NDArray[np.float64]
+
+
+def solve_beam(
+    part: Part,
+    budget: Budget | None = None,
+    *,
+    shear: bool = True,
+    section_solver: SectionSolver = sections_properties,
+) -> BeamResult:
+    """Solve every case of a part with the beam model.
+
+    Parameters
+    ----------
+    budget
+        Not needed: the beam model is small.
+    shear
+        False leaves the shear flexibility out (for comparison with Euler-Bernoulli formulas).
+    section_solver
+        Section analysis of many outlines (see `fem.beam.section.sections_properties`).
+
+    Raises
+    ------
+    RunError
+        Stage ``beam``: what the beam model cannot represent, or a region that does not exist.
+    SolveError
+        The supports leave a motion free or contradict one another.
+    """
+    clock = time.perf_counter()
+    mesh = BeamMesh.of(part, section_solver, shear)
+    built = time.perf_counter()
+    solved = solve_cases(mesh)
+    figures, notes = all_figures(solved)
+    depth = max(float(np.ptp(s.extremes[:2, 1])) for s in mesh.sections.solved)
+    mass = next(f.value for f in figures if f.key.quantity == "mass")
+    return BeamResult(
+        figures=tuple(figures),
+        diagrams={case.name: diagram(solved, k) for k, case in enumerate(part.cases)},
+        properties=properties_table(mesh),
+        mass=mass,
+        shear_share={case.name: shear_share(solved, k) for k, case in enumerate(part.cases)},
+        slenderness=mesh.length / depth,
+        notes=tuple(notes),
+        seconds={"sections": built - clock, "solve": time.perf_counter() - built},
+    )
+
+
+def solve_cases(mesh: BeamMesh) -> Solved:
+    """All cases of a part: loads combined here, one factorisation."""
+    part = mesh.part
+    actions = Actions(mesh)
+    loads = {load.name: load for load in part.loads}
+    n, m, cases = actions.freedoms, len(mesh.x) - 1, len(part.cases)
+    nodal, lengths, change = np.zeros((n, cases)), np.zeros((m, 13, cases)), np.zeros(cases)
+    single = {name: actions.forces(load) for name, load in loads.items()
+              if any(name in case.factors for case in part.cases)}
+    for k, case in enumerate(part.cases):
+        for name, factor in case.factors.items():
+            if name not in loads:
+                raise RunError("beam", f"case {case.name} names the load {name}, which does not exist")
+            nodal[:, k] += factor * single[name].freedoms
+            lengths[:, :12, k] += factor * single[name].lengths
+            change[k] += factor * single[name].change
+    lengths[:, 12, :] = part.material.expansion * change
+    rows = [*actions.ties, *(row for s in part.supports for row in actions.rows(s, change))]
+    line = replace(mesh.line, extra=6 * len(actions.rigid_points))
+    there = present(line)  # a row that stops warping says nothing where the section is free of it
+    rows = independent([row for row in rows if row.vector[there].any()], len(mesh.x), cases)
+    states = solve_line(line, rows, nodal, lengths, actions.rigid_motions(), f"member {mesh.member.name}")
+    return Solved(mesh, actions, rows, nodal, lengths, change, states)
+
+
+def independent(rows: Sequence[Row], nodes: int, cases: int) -> list[Row]:
+    """The rows without those that repeat, at one node, what earlier rows hold there.
+
+    Raises
+    ------
+    SolveError
+        Two supports prescribe different values of the same motion of one section.
+    """
+    kept: list[Row] = []
+    base: dict[int, list[tuple[Array, Array, str]]] = {}
+    for row in rows:
+        used = np.flatnonzero(row.vector)
+        node = int(used[0]) // 7
+        if used[-1] // 7 != node or node >= nodes:
+            kept.append(row)
+            continue
+        v = row.vector[7 * node:7 * node + 7].copy()
+        size = np.linalg.norm(v)
+        v /= size
+        value = np.broadcast_to(row.value, (cases,)) / size
+        owners = []
+        for b, b_value, owner in base.setdefault(node, []):
+            share = float(b @ v)
+            if abs(share) > 1e-12:
+                owners.append(owner)
+            v, value = v - share * b, value - share * b_value
+        left = np.linalg.norm(v)
+        if left > 1e-7:
+            base[node].append((v / left, value / left, row.owner))
+            kept.append(row)
+        elif np.abs(value).max(initial=0.0) > 1e-9:
+            raise SolveError(f"supports {row.owner} and {', '.join(sorted(set(owners)))} prescribe different values of "
+                             f"the same motion (difference {np.abs(value).max():.3g}); remove one of them")
+    return kept
+
+
