@@ -31,7 +31,8 @@ def sample(**changes: object) -> CheckResult:
     figure = Figure(KEY, -0.1 - 0.2, "mm", 1e-3, "net")
     result = CheckResult(
         title="Arm µ", spec_name="arm.toml", spec_text='title = "x"\n', parameters={"reach": 360.0}, accuracy=0.021,
-        material={"name": "steel", "E": 210000.5, "nu": 0.3, "yield_strength": None}, cases={"carrying": {"camera": 1.25}},
+        material={"name": "steel", "E": 210000.5, "nu": 0.3, "yield_strength": None},
+        cases={"carrying": {"camera": 1.25}},
         solid_figures=(figure,), beam_figures=(dataclasses.replace(figure, value=-0.31, error=None, note=""),),
         pairs=(Pair(KEY, -0.3, -0.31, "mm", 0.01, 0.32, 0.005, (Cause("hole", 0.007),), "explained", "hole1"),
                Pair(KEY._replace(place="", quantity="mass", axes="member"), 1.5, None, "t", None, 1.6, 0.1, (),

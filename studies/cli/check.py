@@ -1,0 +1,24 @@
+"""``haunch check``."""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+
+from geometry.budget import Budget
+
+
+def run_check(part: str, out: str | None, replace: bool, pictures: bool, threads: int, memory: int) -> int:
+    """Check one part and print what was found; 0 when it is fine, else 1."""
+    for name in ("OMP_NUM_THREADS", "MKL_NUM_THREADS", "OPENBLAS_NUM_THREADS", "NUMBA_NUM_THREADS"):
+        os.environ.setdefault(name, str(threads))  # read once, when the libraries are loaded
+    from studies.check.run import check
+    from studies.cli.screen import StageView, make_console, print_result
+
+    folder = Path(out) if out else Path(f"{Path(part).stem}.run")
+    console = make_console()
+    with StageView(console) as view:
+        result = check(part, folder, Budget(threads=threads, memory=memory), view, replace=replace, pictures=pictures)
+    print_result(console, result)
+    console.print(f"Everything is in [bold]{folder}[/]: start with summary.md", soft_wrap=True)
+    return 0 if result.fine else 1

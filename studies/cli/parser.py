@@ -1,0 +1,117 @@
+"""Words of the command line."""
+
+from __future__ import annotations
+
+import argparse
+from importlib.metadata import PackageNotFoundError, version
+
+DESCRIPTION = """\
+Check a beam-like part twice: as a solid model (second-order tetrahedra) and as a beam model of the same spec.
+Every figure that both give is compared, and the difference is judged against what is expected for this part."""
+
+EPILOG = """\
+exit status
+  0    fine: nothing is suspicious and every limit is met
+  1    something is suspicious, a check failed, or a limit is missed or not established
+  2    the spec or the command line is wrong; every mistake is listed
+  3    the run failed; nothing was written
+  130  stopped by Ctrl-C; nothing was written
+
+cautions
+  Linear elastic material, small displacements, perfect geometry. No yielding, no buckling, no fatigue, no contact.
+  The requested accuracy steers the mesh and is not verified. Both models share the spec: a wrong load or support
+  in it goes unseen. Local codes and the judgement of a licensed engineer decide."""
+
+
+class _Version(argparse.Action):
+    """Looks the version up only when asked."""
+
+    def __call__(self, parser: argparse.ArgumentParser, *_: object) -> None:
+        try:
+            print(f"haunch {version('haunch')}")
+        except PackageNotFoundError:
+            print("haunch (not installed: run from its folder)")
+        parser.exit()
+
+
+def make_parser() -> argparse.ArgumentParser:
+    """The parser; each command leaves its function in ``run``."""
+    parser = argparse.ArgumentParser("haunch", description=DESCRIPTION, epilog=EPILOG, allow_abbrev=False,
+                                     formatter_class=argparse.RawDescriptionHelpFormatter)
+    parser.add_argument("--version", action=_Version, nargs=0, help="print the version and stop")
+    commands = parser.add_subparsers(title="commands", metavar="COMMAND", required=True)
+    _add_check(commands)
+    show = _command(commands, "show", "print the tables of a finished run", _show)
+    show.add_argument("folder", metavar="RUN_FOLDER", help="folder that `haunch check` wrote")
+    _command(commands, "schema", "print the JSON Schema of a spec, for editors that complete and check TOML", _schema)
+    _command(commands, "reference", "print every word of a spec with its meaning (Markdown)", _reference)
+    _command(commands, "materials", "print the table of materials with its sources", _materials)
+    return parser
+
+
+def _command(commands: argparse._SubParsersAction[argparse.ArgumentParser], name: str, text: str,
+             run: object) -> argparse.ArgumentParser:
+    command = commands.add_parser(name, help=text, description=text[0].upper() + text[1:] + ".", allow_abbrev=False,
+                                  formatter_class=argparse.RawDescriptionHelpFormatter)
+    command.set_defaults(run=run)
+    return command
+
+
+def _add_check(commands: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
+    check = _command(commands, "check", "build both models of a part, compare and judge them, write a run folder",
+                     _check)
+    check.epilog = EPILOG
+    check.add_argument("part", metavar="PART.toml", help="the spec (see `haunch reference`)")
+    check.add_argument("--out", metavar="DIR", help="run folder to write; PART.run in the current folder if left out")
+    check.add_argument("--replace", action="store_true", help="overwrite a finished run of that name")
+    check.add_argument("--no-pictures", dest="pictures", action="store_false", help="draw no PNG pictures")
+    check.add_argument("--threads", metavar="N", type=_whole(1, 1024), default=2, help="threads to use (2)")
+    check.add_argument("--memory", metavar="MiB", type=_whole(256, 10**8), default=4096,
+                       help="memory that meshing and solving may take (4096)")
+
+
+def _whole(least: int, most: int):  # type: ignore[no-untyped-def]
+    def read(text: str) -> int:
+        try:
+            value = int(text)
+        except ValueError:
+            value = least - 1
+        if not least <= value <= most:
+            raise argparse.ArgumentTypeError(f"given {text!r}; allowed: a whole number from {least} to {most}")
+        return value
+
+    return read
+
+
+def _check(options: argparse.Namespace) -> int:
+    from studies.cli.check import run_check
+
+    return run_check(options.part, options.out, options.replace, options.pictures, options.threads, options.memory)
+
+
+def _show(options: argparse.Namespace) -> int:
+    from studies.cli.show import run_show
+
+    return run_show(options.folder)
+
+
+def _schema(_: argparse.Namespace) -> int:
+    import json
+
+    from geometry.spec import json_schema
+
+    print(json.dumps(json_schema(), indent=2))
+    return 0
+
+
+def _reference(_: argparse.Namespace) -> int:
+    from geometry.spec import spec_reference
+
+    print(spec_reference())
+    return 0
+
+
+def _materials(_: argparse.Namespace) -> int:
+    from studies.cli.materials import run_materials
+
+    return run_materials()
