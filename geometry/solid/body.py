@@ -7,10 +7,15 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from geometry.outline import Arc, Edge, Line, Outline, Point
+from OCP.BRepAlgoAPI import BRepAlgoAPI_Fuse
+from OCP.ShapeUpgrade import ShapeUpgrade_UnifySameDomain
+from OCP.TopTools import TopTools_ListOfShape
+
+from geometry.outline import Arc, Edge, Line, Point
 from geometry.part import Member
 from geometry.problem import SolidError
 from geometry.solid.integrals import section_integrals
+from geometry.solid.kernel import one_solid
 from geometry.solid.lofts import lofted, radius_of, sweep_of
 from geometry.solid.profile import Dims, Profile, Side, profile_of
 from geometry.solid.stretches import Stretch
@@ -23,6 +28,38 @@ class Piece:
     stretch: Stretch
     first: Profile
     last: Profile
+    origin_first: Point
+    origin_last: Point
+
+    def fraction(self, x: float) -> float:
+        """How far along the stretch `x` lies, 0 to 1."""
+        return (x - self.stretch.start) / (self.stretch.end - self.stretch.start)
+
+    def profile(self, x: float) -> Profile:
+        """The placed section at `x` (mm from the start of the member)."""
+        t = self.fraction(x)
+        outer, *inner = (
+            tuple(Side(between(a.edge, b.edge, t), a.labels, a.wall) for a, b in zip(la, lb, strict=True))
+            for la, lb in zip(self.first.loops, self.last.loops, strict=True)
+        )
+        return Profile(outer, tuple(inner))
+
+    def origin(self, x: float) -> Point:
+        """Place (y, z) of the shape's own origin at `x`, mm from the declared line."""
+        t = self.fraction(x)
+        a, b = self.origin_first, self.origin_last
+        return ((1.0 - t) * a[0] + t * b[0], (1.0 - t) * a[1] + t * b[1])
+
+
+def between(a: Edge, b: Edge, t: float) -> Edge:
+    """The side a fraction `t` of the way from `a` to `b` (exact: all corners and centres move on straight lines)."""
+
+    def mix(p: Point, q: Point) -> Point:
+        return ((1.0 - t) * p[0] + t * q[0], (1.0 - t) * p[1] + t * q[1])
+
+    if isinstance(a, Arc) and isinstance(b, Arc):
+        return Arc(mix(a.start, b.start), mix(a.end, b.end), mix(a.centre, b.centre), a.ccw)
+    return Line(mix(a.start, b.start), mix(a.end, b.end))
 
 
 def moved(profile: Profile, dy: float, dz: float) -> Profile:
@@ -107,29 +144,13 @@ def pieces_of(member: Member, stretches: Sequence[Stretch]) -> list[Piece]:
     y0, z0 = line_point(member, at_start, profile_of(shape, at_start, outline))
     sign = {"top": 0.5, "centre": 0.0, "bottom": -0.5}[member.anchor]
 
+    def origin(dims: Dims) -> Point:
+        return (-y0, sign * (_depth(shape, at_start) - _depth(shape, dims)) - z0)
+
     def placed(dims: Dims) -> Profile:
-        shift = sign * (_depth(shape, at_start) - _depth(shape, dims))
-        return moved(profile_of(shape, dims, outline), -y0, shift - z0)
+        return moved(profile_of(shape, dims, outline), *origin(dims))
 
-    return [Piece(s, *_labelled(placed(s.first), placed(s.last))) for s in stretches]
-
-
-def _labelled(first: Profile, last: Profile) -> tuple[Profile, Profile]:
-    """Settle the doubtful sides: a flange tip is the part's left or right only where it is the outermost."""
-    lows, highs = zip(*(bounds(p) for p in (first, last)), strict=True)
-
-    def outermost(a: Side, b: Side, label: str) -> bool:
-        limits = lows if label == "left" else highs
-        return all(abs(s.edge.start[0] - limit[0]) <= 1e-9 * max(1.0, abs(limit[0])) for s, limit in zip((a, b), limits, strict=True))
-
-    def settle(p: Profile) -> Profile:
-        sides = []
-        for side, a, b in zip(p.outer, first.outer, last.outer, strict=True):
-            names = tuple(n.rstrip("?") for n in side.labels if not n.endswith("?") or outermost(a, b, n.rstrip("?")))
-            sides.append(Side(side.edge, names, side.wall))
-        return Profile(tuple(sides), p.inner)
-
-    return settle(first), settle(last)
+    return [Piece(s, placed(s.first), placed(s.last), origin(s.first), origin(s.last)) for s in stretches]
 
 
 def runs_of(pieces: Sequence[Piece]) -> list[list[Piece]]:
@@ -146,3 +167,34 @@ def run_body(run: Sequence[Piece], what: str) -> Any:
     """The solid of the pieces between two steps, in member axes."""
     sections = [(run[0].stretch.start, run[0].first)] + [(p.stretch.end, p.last) for p in run]
     return lofted(sections, what)
+
+
+def joined(pieces: Sequence[Piece], what: str) -> Any:
+    """The whole body: the runs between steps fused, faces that lie in one surface merged.
+
+    Raises
+    ------
+    SolidError
+        The runs do not join to one solid (the sections on the two sides of a step do not overlap).
+    """
+    bodies = [run_body(run, what) for run in runs_of(pieces)]
+    if len(bodies) == 1:
+        return bodies[0]
+    fuse = BRepAlgoAPI_Fuse()
+    first, rest = TopTools_ListOfShape(), TopTools_ListOfShape()
+    first.Append(bodies[0])
+    for body in bodies[1:]:
+        rest.Append(body)
+    fuse.SetArguments(first)
+    fuse.SetTools(rest)
+    fuse.SetRunParallel(False)
+    fuse.Build()
+    whole = one_solid(fuse.Shape(), what, "the sections on the two sides of a step do not overlap")
+    merge = ShapeUpgrade_UnifySameDomain(whole, True, True, False)
+    merge.Build()
+    return one_solid(merge.Shape(), what)
+
+
+def piece_at(pieces: Sequence[Piece], x: float) -> Piece:
+    """The piece that `x` lies in (the later one at a boundary)."""
+    return next((p for p in reversed(pieces) if x >= p.stretch.start), pieces[0])

@@ -4,8 +4,6 @@ from __future__ import annotations
 
 import io
 import re
-import tempfile
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -21,6 +19,7 @@ from OCP.gp import gp_Trsf
 from OCP.GProp import GProp_GProps
 from OCP.IFSelect import IFSelect_RetDone
 from OCP.Interface import Interface_Static
+from OCP.Message import Message
 from OCP.STEPControl import STEPControl_AsIs, STEPControl_Writer
 from OCP.TopAbs import TopAbs_EDGE, TopAbs_FACE, TopAbs_SOLID
 from OCP.TopExp import TopExp
@@ -140,16 +139,26 @@ def step_bytes(shape: TopoDS_Shape, title: str) -> bytes:
     SolidError
         The kernel could not write it.
     """
+    printers = Message.DefaultMessenger_s().ChangePrinters()
+    kept = list(printers)
+    printers.Clear()  # the writer would talk to standard output
+    try:
+        return _step_text(shape, title)
+    finally:
+        for printer in kept:
+            printers.Append(printer)
+
+
+def _step_text(shape: TopoDS_Shape, title: str) -> bytes:
     writer = STEPControl_Writer()
     Interface_Static.SetCVal_s("write.step.unit", "MM")
     Interface_Static.SetCVal_s("write.step.product.name", "part")
     if writer.Transfer(shape, STEPControl_AsIs) != IFSelect_RetDone:
         raise SolidError("the geometry kernel could not turn the solid into STEP.")
-    with tempfile.TemporaryDirectory() as folder:
-        path = Path(folder) / "part.step"
-        if writer.Write(str(path)) != IFSelect_RetDone:
-            raise SolidError("the geometry kernel could not write STEP.")
-        text = path.read_bytes().decode("latin-1")
+    stream = io.BytesIO()
+    if writer.WriteStream(stream) != IFSelect_RetDone:
+        raise SolidError("the geometry kernel could not write STEP.")
+    text = stream.getvalue().decode("latin-1")
     name = re.sub(r"[^ -~]", "?", title).replace("'", "''").replace("\\", "/") or "part"
     header = f"FILE_NAME('{name}','1970-01-01T00:00:00',(''),(''),'','','');"
     text = re.sub(r"FILE_NAME\(.*?\);", lambda _: header, text, count=1, flags=re.S)

@@ -143,10 +143,10 @@ def _i(d: Dims) -> Profile:
     zt, zb = z - d["flange"], -z + d.get("bottom_flange", d["flange"])
     root = "root fillet"
     return Profile(rounded([
-        Corner(-low, -z, 0.0, ("bottom",)), Corner(low, -z, 0.0, ("right?",)), Corner(low, zb),
-        Corner(t, zb, r, ("web_right",), root), Corner(t, zt, r, (), root), Corner(top, zt, 0.0, ("right?",)),
-        Corner(top, z, 0.0, ("top",)), Corner(-top, z, 0.0, ("left?",)), Corner(-top, zt),
-        Corner(-t, zt, r, ("web_left",), root), Corner(-t, zb, r, (), root), Corner(-low, zb, 0.0, ("left?",)),
+        Corner(-low, -z, 0.0, ("bottom",)), Corner(low, -z, 0.0, ("right",)), Corner(low, zb),
+        Corner(t, zb, r, ("web_right",), root), Corner(t, zt, r, (), root), Corner(top, zt, 0.0, ("right",)),
+        Corner(top, z, 0.0, ("top",)), Corner(-top, z, 0.0, ("left",)), Corner(-top, zt),
+        Corner(-t, zt, r, ("web_left",), root), Corner(-t, zb, r, (), root), Corner(-low, zb, 0.0, ("left",)),
     ]))
 
 

@@ -3,15 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
 
 import numpy as np
 
 from geometry.outline import Arc, Edge
-from geometry.part import Member
 from geometry.solid.body import Piece
+from geometry.solid.cuts import Tool
 from geometry.solid.lofts import radius_of, sweep_of
-from geometry.solid.samples import FaceSamples, sample_faces
+from geometry.solid.samples import FaceSamples
 
 TOLERANCE = 1e-4
 """How far (mm) a sample point may lie from the surface that names it."""
@@ -34,46 +33,49 @@ def side_distance(edge: Edge, y: np.ndarray, z: np.ndarray) -> np.ndarray:
     return np.hypot(y - edge.start[0] - t * dy, z - edge.start[1] - t * dz)
 
 
-def between(a: Edge, b: Edge, t: float) -> Edge:
-    """The side a fraction `t` of the way from `a` to `b`."""
+def labels_at(point: np.ndarray, pieces: Sequence[Piece]) -> set[str]:
+    """Labels of the section sides that a point (3,) in member axes lies on.
 
-    def mix(p: tuple[float, float], q: tuple[float, float]) -> tuple[float, float]:
-        return ((1.0 - t) * p[0] + t * q[0], (1.0 - t) * p[1] + t * q[1])
+    Besides region names: ``~side`` on any side, ``~root fillet`` and the like on a corner of that kind.
+    """
+    found: set[str] = set()
+    for piece in pieces:
+        if not piece.stretch.start - TOLERANCE <= point[0] <= piece.stretch.end + TOLERANCE:
+            continue
+        for loop in piece.profile(float(point[0])).loops:
+            for side in loop:
+                if side_distance(side.edge, point[1:2], point[2:3])[0] <= TOLERANCE:
+                    found.update(side.labels, {"~side"}, {f"~{side.wall}"} if side.wall else set())
+    return found
 
-    if isinstance(a, Arc) and isinstance(b, Arc):
-        return Arc(mix(a.start, b.start), mix(a.end, b.end), mix(a.centre, b.centre), a.ccw)
-    return type(a)(mix(a.start, b.start), mix(a.end, b.end))
 
-
-def on_side(s: FaceSamples, piece: Piece, loop: int, index: int) -> bool:
-    """Whether every sample lies on one side of one piece, and is not a wall across the member."""
-    x = s.points[:, 0]
-    a, b = piece.first.loops[loop][index].edge, piece.last.loops[loop][index].edge
-    x0, x1 = piece.stretch.start, piece.stretch.end
-    if np.any(x < x0 - TOLERANCE) or np.any(x > x1 + TOLERANCE):
-        return False
+def side_labels(s: FaceSamples, pieces: Sequence[Piece]) -> set[str]:
+    """Labels that every sample of a face carries; none for a wall across the member (shoulder, end)."""
     if np.all(np.abs(s.normals[:, 0]) > 1.0 - 1e-9):
-        return False
+        return set()
+    common: set[str] | None = None
     for point in s.points:
-        edge = between(a, b, (point[0] - x0) / (x1 - x0))
-        if side_distance(edge, point[1:2], point[2:3])[0] > TOLERANCE:
-            return False
-    return True
+        here = labels_at(point, pieces)
+        common = here if common is None else common & here
+        if not common:
+            return set()
+    return common or set()
 
 
-def name_faces(solid: Any, member: Member, pieces: Sequence[Piece]) -> dict[str, tuple[int, ...]]:
-    """Face indices of every region of `member`; `solid` is in member axes."""
-    samples = sample_faces(solid)
-    found: dict[str, set[int]] = {}
-    length = pieces[-1].stretch.end
-    for i, s in enumerate(samples):
+def end_label(s: FaceSamples, length: float) -> str:
+    """``start`` or ``end`` for a plane face across the member there, else empty."""
+    if np.all(np.abs(s.normals[:, 0]) > 1.0 - 1e-6):
         for name, at in (("start", 0.0), ("end", length)):
-            if np.all(np.abs(s.points[:, 0] - at) < TOLERANCE) and np.all(np.abs(s.normals[:, 0]) > 1.0 - 1e-6):
-                found.setdefault(name, set()).add(i)
-        for piece in pieces:
-            for k, loop in enumerate(piece.first.loops):
-                for j, side in enumerate(loop):
-                    if side.labels and on_side(s, piece, k, j):
-                        for label in side.labels:
-                            found.setdefault(label, set()).add(i)
-    return {f"{member.name}.{name}": tuple(sorted(ids)) for name, ids in sorted(found.items())}
+            if np.all(np.abs(s.points[:, 0] - at) < TOLERANCE):
+                return name
+    return ""
+
+
+def on_tool(s: FaceSamples, tool: Tool) -> bool:
+    """Whether every sample lies on the wall that a tool leaves."""
+    k = 2 if tool.axis == "y" else 1
+    along = s.points[:, 3 - k]
+    if np.any(along < tool.low - TOLERANCE) or np.any(along > tool.high + TOLERANCE):
+        return False
+    distance = np.min([side_distance(e, s.points[:, 0], s.points[:, k]) for e in tool.loop], axis=0)
+    return bool(np.all(distance <= TOLERANCE) and np.all(np.abs(s.normals[:, 3 - k]) < 1e-6))

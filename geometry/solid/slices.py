@@ -1,0 +1,55 @@
+"""Plane cuts of the CAD solid across the member: area, centroid and second moments, for a check of the beam."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+from OCP.BRepAlgoAPI import BRepAlgoAPI_Common
+from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeFace
+from OCP.BRepGProp import BRepGProp
+from OCP.gp import gp_Dir, gp_Pln, gp_Pnt
+from OCP.GProp import GProp_GProps
+
+from geometry.problem import SolidError
+
+COUNT = 9
+"""Slices along a member."""
+
+
+def slice_places(length: float, avoid: Sequence[tuple[float, float]]) -> list[float]:
+    """Places of the slices, mm: spread evenly, moved off the ranges in `avoid` where there is room beside them."""
+    step = length / COUNT
+    found = []
+    for k in range(COUNT):
+        middle = (k + 0.5) * step
+        tries = [middle + sign * j * step / 24.0 for j in range(12) for sign in (1.0, -1.0)]
+        free = (x for x in tries if all(not a - 1e-3 * step <= x <= b + 1e-3 * step for a, b in avoid))
+        found.append(next(free, middle))
+    return found
+
+
+def slices_of(solid: Any, places: Sequence[float], reach: float) -> NDArray[np.float64]:
+    """(n, 7) rows x, A, yc, zc, Iyy, Izz, Iyz of plane cuts of `solid` (member axes; see `NamedSolid.slices`).
+
+    Raises
+    ------
+    SolidError
+        A plane cuts nothing.
+    """
+    rows = []
+    for x in places:
+        sheet = BRepBuilderAPI_MakeFace(gp_Pln(gp_Pnt(x, 0, 0), gp_Dir(1, 0, 0)), -reach, reach, -reach, reach).Face()
+        common = BRepAlgoAPI_Common(solid, sheet).Shape()
+        props = GProp_GProps()
+        BRepGProp.SurfaceProperties_s(common, props)
+        if not props.Mass() > 0.0:
+            raise SolidError(f"slice at {x:g} mm: the plane cuts nothing of the solid.")
+        centre, inertia = props.CentreOfMass(), props.MatrixOfInertia()
+        # The kernel's matrix about the centroid holds int (z^2 + x^2) at (2,2), int (x^2 + y^2) at (3,3), -int y z at (2,3).
+        rows.append(
+            (x, props.Mass(), centre.Y(), centre.Z(), inertia.Value(2, 2), inertia.Value(3, 3), -inertia.Value(2, 3))
+        )
+    return np.array(rows)
