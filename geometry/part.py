@@ -353,8 +353,10 @@ class Limit:
     component
         ``x``, ``y``, ``z`` (global) or empty for the size.
     basis
-        Strength limits: ``nominal`` (net section, beam formula), ``edge`` (stress extrapolated to the
-        edge) or ``local`` (converged local first yield).
+        Strength limits. ``nominal``: longitudinal stress of the net section by the beam formula. ``edge``:
+        local stress of the solid wherever it converges, and at held edges, where it does not, the stress of
+        the outer fibres extrapolated to the edge. ``local``: local stress only, so that a part whose highest
+        stress is at a place with no converged value cannot pass.
     cases
         Cases it is judged in; empty: all.
     """
@@ -365,7 +367,7 @@ class Limit:
     at: str = ""
     relative_to: str = ""
     component: str = ""
-    basis: Literal["nominal", "edge", "local"] = "local"
+    basis: Literal["nominal", "edge", "local"] = "edge"
     cases: tuple[str, ...] = ()
 
 

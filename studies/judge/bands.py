@@ -1,0 +1,142 @@
+"""How far beam and solid may honestly differ: a band made of stated reasons.
+
+Every reason has a size that follows from the part, as a fraction of the scale of the figure (the largest
+value of its kind in the case). The fractions add up: the reasons may act alike. They widen the band and
+never move its centre; a *signed* expectation is a cause, and is subtracted before the band is applied.
+
+Where a coefficient comes from is said beside it. "Set by trial" means that it was set on the plain parts
+of the test suite and awaits the calibration on a large population.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import dataclass
+from typing import NamedTuple
+
+from fem.figure import FigureKey
+from studies.judge.context import Context
+
+
+class Reason(NamedTuple):
+    """One contribution to a band: why, and how much of the scale."""
+
+    text: str
+    fraction: float
+
+
+@dataclass(frozen=True)
+class CaseFacts:
+    """What one case adds to the facts about the part.
+
+    `shear_share`: share of the beam's largest deflection that is shear. `twist_share`: displacement that
+    the largest twist gives at the section's edge, over the largest displacement (at most 1).
+    """
+
+    shear_share: float
+    twist_share: float
+    open_thin: bool
+    thin_walled: bool
+
+
+def mesh_error(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+    # Displacements converge with the square of the stress error (Strang & Fix 1973: twice the order), so a
+    # quarter of the requested stress accuracy is generous.
+    yield Reason("discretisation of the solid", 0.25 * ctx.part.accuracy)
+
+
+def end_effects(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+    # MacNeal & Harder 1985 (straight cantilever): at L/h = 30 the converged clamped solid is 0.18 % stiffer
+    # than the beam, that is 0.053 h/L. Thin walls distort over several depths; ten times as much, set by trial.
+    for zone in ctx.held_zones:
+        short = zone.end - zone.start < 0.05 * ctx.length
+        at_end = zone.start < 1e-6 * ctx.length or zone.end > (1 - 1e-6) * ctx.length
+        factor = 0.06 if short and at_end else 0.5
+        if facts.thin_walled:
+            factor = max(0.5, factor)
+        yield Reason(f"end effect at {zone.what}", factor / ctx.slenderness)
+
+
+def shear_definition(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+    # Cowper 1966, Gruttmann & Wagner 2001 and Hutchinson 2001 differ by up to 10 % for one shape.
+    yield Reason("definition of the shear area", 0.10 * facts.shear_share)
+
+
+def cuts(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+    # A cut weakens its own stretch beyond the net section by a part of the stretch's share (set by trial).
+    width, depth = ctx.size
+    for cut in ctx.member.cuts:
+        across = depth if cut.axis == "y" else width
+        share = min(cut.length / ctx.length, 1.0) * min(cut.depth / across, 1.0)
+        yield Reason(f"cut {cut.name} beyond its net section", share)
+
+
+def taper(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+    # Wedge solution of plane elasticity (Timoshenko & Goodier art. 39): the plain formula errs with the
+    # square of the half angle. The full slope of the depth is taken.
+    stations = ctx.member.stations
+    if stations and not ctx.step_zones:
+        slope = 0.0
+        for name, value in ctx.member.section.dims.items():
+            x0, v0 = 0.0, value
+            for station in stations:
+                if name in station.dims and station.at > x0:
+                    slope = max(slope, abs(station.dims[name] - v0) / (station.at - x0))
+                    x0, v0 = station.at, station.dims[name]
+        if slope > 0:
+            yield Reason("inclined faces of the taper", slope**2)
+
+
+def steps(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+    # At a step the wider part is not at once fully engaged: about a quarter of the step's height of it is
+    # lost on each side (common practice, no source).
+    for zone in ctx.step_zones:
+        yield Reason(f"load path at the {zone.what}", 0.25 * max(ctx.size) / ctx.length)
+
+
+def torsion(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+    if facts.twist_share > 0.01:
+        size = 0.05 if facts.open_thin else 0.02  # set by trial
+        yield Reason("torsion constant and restrained warping", size * facts.twist_share)
+
+
+def local_loads(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+    # A load on a thin wall bends the wall and distorts the section (set by trial).
+    if facts.thin_walled:
+        for zone in ctx.loaded_zones:
+            yield Reason(f"wall bending under {zone.what}", 0.25 / ctx.slenderness)
+
+
+DISPLACEMENT: tuple[Callable[[Context, CaseFacts], Iterator[Reason]], ...] = (
+    mesh_error, end_effects, shear_definition, cuts, taper, steps, torsion, local_loads,
+)
+
+
+def reasons(ctx: Context, facts: CaseFacts, key: FigureKey) -> Sequence[Reason]:
+    """Reasons that widen the band of one figure, as fractions of its scale."""
+    match key.quantity:
+        case "displacement" | "rotation":
+            found = [r for rule in DISPLACEMENT for r in rule(ctx, facts)]
+        case "strain_energy":
+            found = [r for rule in DISPLACEMENT for r in rule(ctx, facts)]
+        case "reaction_force" | "reaction_moment" | "section_force" | "section_moment":
+            if ctx.determinate:
+                # Equilibrium alone decides; the rest is the cut along element faces and rounding.
+                return [Reason("equilibrium of a determinate part", 2e-3)]
+            found = [r for rule in DISPLACEMENT for r in rule(ctx, facts)]
+        case "nominal_stress":
+            # ASME V&V 10.1 style practice: 2 % one depth from supports, loads and steps, plus the stated accuracy.
+            found = [Reason("plane sections", 0.02), Reason("discretisation of the solid", ctx.part.accuracy),
+                     *taper(ctx, facts), *torsion(ctx, facts)]
+            if facts.thin_walled:
+                found.append(Reason("shear lag and wall bending in thin walls", 0.25 / ctx.slenderness))
+        case "notch_stress":
+            found = [Reason("discretisation of the solid", ctx.part.accuracy), Reason("nominal stress", 0.02)]
+        case "mass" | "centre_of_mass":
+            # Beam: integrated areas; rims' radii and cuts in inclined walls are not followed exactly.
+            found = [Reason("integration along the member", 1e-3)]
+            found += [Reason(f"edge radius {r.radius:g} mm", 2e-3) for r in ctx.member.edge_radii]
+            found += [Reason(f"cut {c.name} in a curved or inclined wall", 5e-4) for c in ctx.member.cuts]
+        case _:
+            found = []
+    return found

@@ -1,0 +1,113 @@
+"""One run judged: pairs, limits, independent checks, peak places and cautions."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from fem.beam import BeamResult
+from fem.beam.slices import sections_at
+from fem.figure import FigureKey
+from fem.solid import SolidResult
+from geometry.named_solid import NamedSolid
+from geometry.part import Part
+from mesher.named_mesh import NamedMesh
+from studies.check.result import Cause, IndependentCheck, LimitVerdict, Pair, PeakPlace
+from studies.judge.bands import CaseFacts
+from studies.judge.context import Context
+from studies.judge.independent import independent_checks
+from studies.judge.limits import Evidence, place_text, verdicts
+from studies.judge.pairing import Table, pair_figures, table
+
+OPEN_SHAPES = ("I", "channel", "angle", "tee", "outline")
+
+
+@dataclass(frozen=True, slots=True)
+class Judgement:
+    """What the judge made of one run. See `studies.check.result` for the records."""
+
+    pairs: tuple[Pair, ...]
+    limits: tuple[LimitVerdict, ...]
+    checks: tuple[IndependentCheck, ...]
+    peaks: tuple[PeakPlace, ...]
+    cautions: tuple[str, ...]
+
+
+def judge(part: Part, named: NamedSolid, mesh: NamedMesh, solid: SolidResult, beam: BeamResult) -> Judgement:
+    """Compare every figure that both models give, and hold limits and independent checks.
+
+    Neither model is changed by the other; a band never moves its centre (see `studies.judge.bands`).
+    """
+    ctx = Context(part, mesh)
+    solid_table, beam_table = table(solid.figures), table(beam.figures)
+    facts = {c.name: case_facts(ctx, named, beam, beam_table, c.name) for c in part.cases}
+    pairs = pair_figures(ctx, solid_table, beam_table, facts, signed_causes(beam, beam_table))
+    evidence = Evidence(ctx, solid, solid_table, beam_table, pairs)
+    properties = sections_at(ctx.member, named.slices[:, 0])
+    checks = independent_checks(ctx, named, solid, properties)
+    return Judgement(pairs, verdicts(evidence), checks, peak_places(solid), cautions(ctx, solid, facts))
+
+
+def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, figures: Table, case: str) -> CaseFacts:
+    """What one case adds to the facts about the part (see `CaseFacts`)."""
+    moved = [f.value for k, f in figures.items() if k.case == case and k.quantity == "displacement"]
+    x = ctx._axes[1][0]
+    turned = [abs(float(np.dot(v, x))) for v in _rotations(figures, case)]
+    largest = max(map(abs, moved), default=0.0)
+    thin = named.least_wall < 0.2 * min(ctx.size)
+    twist = 0.5 * max(ctx.size) * max(turned, default=0.0)
+    return CaseFacts(
+        shear_share=abs(beam.shear_share.get(case, 0.0)),
+        twist_share=min(twist / largest, 1.0) if largest > 0 else 0.0,
+        open_thin=thin and ctx.member.section.shape in OPEN_SHAPES,
+        thin_walled=thin,
+    )
+
+
+def _rotations(figures: Table, case: str) -> list[np.ndarray]:
+    places = {k.place for k in figures if k.case == case and k.quantity == "rotation"}
+    keys = ([FigureKey(case, p, "rotation", c) for c in "xyz"] for p in places)
+    return [np.array([figures[k].value for k in row]) for row in keys]
+
+
+def signed_causes(beam: BeamResult, figures: Table) -> dict[FigureKey, list[tuple[Cause, float]]]:
+    """The beam's predicted differences (solid minus beam) with what they leave open, by figure."""
+    found: dict[FigureKey, list[tuple[Cause, float]]] = {}
+    for cause in beam.causes:
+        wanted = (cause.case, cause.place, cause.quantity, cause.component)
+        for key in figures:
+            has = (key.case, key.place, key.quantity, key.component)
+            if all(w in ("", h) for w, h in zip(wanted, has, strict=True)):
+                found.setdefault(key, []).append((Cause(cause.text, cause.difference), cause.band))
+    return found
+
+
+def peak_places(solid: SolidResult) -> tuple[PeakPlace, ...]:
+    """Highest stresses of the solid with what is there."""
+    found = []
+    for peak in solid.peaks:
+        kind = "surface" if peak.converged else ("sharp" if "corner" in peak.reason else "support")
+        error = float(solid.stress_error[solid.cases.index(peak.case), peak.node])
+        found.append(PeakPlace(peak.case, place_text(peak.regions, peak.position), kind, peak.position, peak.value,
+                               error if peak.converged else None, peak.converged, peak.reason))
+    return tuple(found)
+
+
+def cautions(ctx: Context, solid: SolidResult, facts: dict[str, CaseFacts]) -> tuple[str, ...]:
+    """Sentences that stand under every result, and those that this part earns."""
+    found = [
+        "Linear elastic, small displacements, no fatigue, no contact, no buckling; local codes and licensed "
+        "practice decide.",
+        f"Accuracy {100 * ctx.part.accuracy:g} %: requested, not verified.",
+    ]
+    if ctx.slenderness < 5:
+        found.append(f"Length over depth is {ctx.slenderness:.2g}: a stubby part, where the beam model is a rough guide.")
+    dents = [d for d in solid.denting if d.value > 0]
+    if dents:
+        worst = max(dents, key=lambda d: d.value)
+        found.append(f"Denting of the loaded face {worst.region}: up to {worst.value:.3g} mm beyond the section's own "
+                     f"motion (case {worst.case}); the beam cannot show it.")
+    if any(f.open_thin and f.twist_share > 0.2 for f in facts.values()):
+        found.append("A thin open section in torsion: the result depends on whether the ends can warp.")
+    return tuple(found)

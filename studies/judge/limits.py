@@ -1,0 +1,209 @@
+"""The limits of the spec, each held against its worst case and place.
+
+Values are the solid model's, except the `nominal` basis, which is the beam's. A limit whose governing
+figure is suspicious, or has no converged value, is *not established*: it cannot pass.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from fem.figure import FigureKey, Quantity
+from fem.solid import SolidResult
+from geometry.part import Limit
+from studies.check.result import LimitVerdict, LimitWord, Pair
+from studies.judge.context import Context, Zone
+from studies.judge.pairing import Table, station_of
+
+UNITS = {
+    "deflection": "mm", "displacement": "mm", "relative_displacement": "mm", "rotation": "rad", "stress": "MPa",
+    "yield_factor": "1", "mass": "t", "reaction": "N",
+}
+
+
+@dataclass(frozen=True)
+class Found:
+    """A value with where and when it was found; `doubt` says why it is not established."""
+
+    value: float
+    case: str
+    place: str
+    doubt: str = ""
+
+
+@dataclass(frozen=True)
+class Evidence:
+    """Everything that limits are held against."""
+
+    ctx: Context
+    solid: SolidResult
+    solid_table: Table
+    beam_table: Table
+    pairs: Sequence[Pair]
+
+    def cases(self, limit: Limit) -> tuple[str, ...]:
+        return limit.cases or tuple(c.name for c in self.ctx.part.cases)
+
+    def suspicious(self, case: str, quantities: tuple[str, ...], place: str) -> bool:
+        """True when a pair of such a quantity was judged suspicious at the place (empty: anywhere)."""
+        return any(p.judgement == "suspicious" and p.key.case == case and p.key.quantity in quantities
+                   and place in ("", p.key.place) for p in self.pairs)
+
+
+def verdicts(evidence: Evidence) -> tuple[LimitVerdict, ...]:
+    """One verdict for each limit, in the order of the spec."""
+    return tuple(_verdict(evidence, limit) for limit in evidence.ctx.part.limits)
+
+
+def _verdict(evidence: Evidence, limit: Limit) -> LimitVerdict:
+    least = limit.quantity == "yield_factor"
+    found = list(_candidates(evidence, limit))
+    unit = UNITS[limit.quantity]
+    if not found:
+        return LimitVerdict(limit.name, limit.quantity, limit.value, None, unit, "", limit.at, "not established",
+                            "no figure of this kind was found there")
+    worst = min(found, key=lambda f: f.value) if least else max(found, key=lambda f: abs(f.value))
+    doubts = [f for f in found if f.doubt]
+    met = worst.value >= limit.value if least else abs(worst.value) <= limit.value
+    word: LimitWord = "met" if met else "missed"
+    reason = ""
+    if met and doubts:
+        word, reason = "not established", doubts[0].doubt
+    basis = f" ({limit.basis} basis)" if limit.quantity in ("stress", "yield_factor") else ""
+    return LimitVerdict(limit.name, limit.quantity + basis, limit.value, worst.value, unit, worst.case,
+                        worst.place, word, reason)
+
+
+def _candidates(evidence: Evidence, limit: Limit) -> Iterator[Found]:
+    match limit.quantity:
+        case "deflection" | "displacement" | "rotation":
+            quantity: Quantity = "rotation" if limit.quantity == "rotation" else "displacement"
+            yield from _motion(evidence, limit, quantity)
+        case "relative_displacement":
+            yield from _relative(evidence, limit)
+        case "reaction":
+            yield from _reactions(evidence, limit)
+        case "mass":
+            key = FigureKey("", "", "mass", "")
+            if key in evidence.solid_table:
+                doubt = "the two models disagree on the mass" if evidence.suspicious("", ("mass",), "") else ""
+                yield Found(evidence.solid_table[key].value, "", "", doubt)
+        case "stress" | "yield_factor":
+            yield from _strength(evidence, limit)
+
+
+def _vector(table: Table, case: str, place: str, quantity: Quantity) -> np.ndarray | None:
+    keys = [FigureKey(case, place, quantity, c) for c in "xyz"]
+    return np.array([table[k].value for k in keys]) if all(k in table for k in keys) else None
+
+
+def _pick(vector: np.ndarray, component: str) -> float:
+    return float(vector["xyz".index(component)]) if component else float(np.linalg.norm(vector))
+
+
+def _motion(evidence: Evidence, limit: Limit, quantity: Quantity) -> Iterator[Found]:
+    places = {k.place for k in evidence.solid_table if k.quantity == quantity}
+    for case in evidence.cases(limit):
+        for place in sorted(places) if not limit.at else [limit.at]:
+            vector = _vector(evidence.solid_table, case, place, quantity)
+            if vector is not None:
+                bad = evidence.suspicious(case, (quantity,), place)
+                yield Found(_pick(vector, limit.component), case, place,
+                            f"the two models disagree on the {quantity} at {place}" if bad else "")
+
+
+def _relative(evidence: Evidence, limit: Limit) -> Iterator[Found]:
+    for case in evidence.cases(limit):
+        a = _vector(evidence.solid_table, case, limit.at, "displacement")
+        b = _vector(evidence.solid_table, case, limit.relative_to, "displacement")
+        if a is not None and b is not None:
+            bad = [p for p in (limit.at, limit.relative_to) if evidence.suspicious(case, ("displacement",), p)]
+            yield Found(_pick(a - b, limit.component), case, f"{limit.at} against {limit.relative_to}",
+                        f"the two models disagree on the displacement at {bad[0]}" if bad else "")
+
+
+def _reactions(evidence: Evidence, limit: Limit) -> Iterator[Found]:
+    for case in evidence.cases(limit):
+        for support in [limit.at] if limit.at else [s.name for s in evidence.ctx.part.supports]:
+            vector = _vector(evidence.solid_table, case, support, "reaction_force")
+            if vector is not None:
+                bad = evidence.suspicious(case, ("reaction_force", "reaction_moment"), support)
+                yield Found(_pick(vector, limit.component), case, support,
+                            "the two models disagree on this reaction" if bad else "")
+
+
+def _strength(evidence: Evidence, limit: Limit) -> Iterator[Found]:
+    strength = evidence.ctx.part.material.yield_strength
+    for case in evidence.cases(limit):
+        stresses = {"nominal": _nominal, "edge": _edge, "local": _local}[limit.basis](evidence, case)
+        for stress in stresses:
+            if limit.quantity == "stress":
+                yield stress
+            elif strength is not None and stress.value > 0:
+                yield Found(strength / stress.value, stress.case, stress.place, stress.doubt)
+
+
+def _nominal(evidence: Evidence, case: str) -> Iterator[Found]:
+    for key, figure in evidence.beam_table.items():
+        if key.case == case and key.quantity == "nominal_stress":
+            bad = evidence.suspicious(case, ("nominal_stress",), key.place)
+            yield Found(abs(figure.value), case, f"{key.place} {key.component.partition('@')[2]}",
+                        f"the two models disagree on the stress at {key.place}" if bad else "")
+
+
+def _local(evidence: Evidence, case: str) -> Iterator[Found]:
+    for peak in evidence.solid.peaks:
+        if peak.case == case:
+            doubt = "" if peak.converged else f"highest stress at a place with no converged value: {peak.reason}"
+            yield Found(peak.value, case, place_text(peak.regions, peak.position), doubt)
+
+
+def _edge(evidence: Evidence, case: str) -> Iterator[Found]:
+    stress = {s.case: s for s in evidence.solid.case_stress}[case]
+    bad = evidence.suspicious(case, ("nominal_stress", "notch_stress"), "")
+    doubt = "the two models disagree on a stress of this case" if bad else ""
+    best = [p for p in evidence.solid.peaks if p.case == case and p.converged]
+    where = place_text(best[0].regions, best[0].position) if best else "away from held edges"
+    yield Found(stress.established, case, where, doubt)
+    for zone in evidence.ctx.held_zones:
+        value = extrapolated(evidence, case, zone)
+        if value is None:
+            yield Found(0.0, case, zone.what, "no undisturbed stretch from which to extrapolate to "
+                        f"{zone.what}; use basis = \"nominal\" or model the joint")
+        else:
+            yield Found(value, case, f"outer fibre, extrapolated to {zone.what}", doubt)
+
+
+def extrapolated(evidence: Evidence, case: str, zone: Zone) -> float | None:
+    """Largest longitudinal surface stress extrapolated linearly to the edge of a held stretch, MPa.
+
+    From the two nearest stations one section depth or more away from it, on either side (structural
+    stress extrapolation; common practice in fatigue of welds, here with the depth for the thickness).
+    None when no two such stations exist.
+    """
+    reach = evidence.ctx.reach_of_disturbance
+    values: dict[str, list[tuple[float, float]]] = {}
+    for key, figure in evidence.solid_table.items():
+        at = station_of(evidence.ctx, key.place)
+        if key.case == case and key.quantity == "nominal_stress" and at is not None:
+            inside = any(z.distance(at) < 0.25 * reach for z in evidence.ctx.cut_zones + evidence.ctx.step_zones)
+            if zone.distance(at) >= reach and not inside:
+                values.setdefault(key.component, []).append((at, figure.value))
+    found = []
+    for points in values.values():
+        for side in (-1.0, 1.0):
+            edge = zone.start if side < 0 else zone.end
+            near = sorted((abs(x - edge), v) for x, v in points if (x - edge) * side > 0)[:2]
+            if len(near) == 2:
+                (d1, v1), (d2, v2) = near
+                found.append(abs(v1 + (v1 - v2) * d1 / (d2 - d1)))
+    return max(found) if found else None
+
+
+def place_text(regions: Sequence[str], position: Sequence[float]) -> str:
+    """Regions that meet at a point and its coordinates, for a person."""
+    spot = ", ".join(f"{c:.4g}" for c in position)
+    return f"{' / '.join(regions)} ({spot}) mm" if regions else f"({spot}) mm"

@@ -1,0 +1,166 @@
+"""The join of the two models' figures, and a judgement on each pair."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator, Mapping, Sequence
+
+import numpy as np
+
+from fem.figure import Figure, FigureKey
+from studies.check.result import Cause, JudgementWord, Pair
+from studies.judge.bands import CaseFacts, Reason, reasons
+from studies.judge.context import Context
+
+Table = Mapping[FigureKey, Figure]
+
+_LENGTH_LIKE = {"rotation", "section_moment", "reaction_moment"}
+
+
+def table(figures: Iterable[Figure]) -> dict[FigureKey, Figure]:
+    """Figures by key. Raises ValueError when one key stands twice."""
+    found: dict[FigureKey, Figure] = {}
+    for figure in figures:
+        if figure.key in found:
+            raise ValueError(f"two figures have the key {figure.key}")
+        found[figure.key] = figure
+    return found
+
+
+def station_of(ctx: Context, place: str) -> float | None:
+    """Distance of a place from the member's start (mm), None where it is not a station."""
+    name = ctx.member.name
+    if place.startswith(f"{name}@"):
+        return float(place.split("@", 1)[1])
+    if place in (f"{name}.start", f"{name}.end"):
+        return 0.0 if place.endswith("start") else ctx.length
+    for p in ctx.part.places:
+        if p.name == place:
+            return p.at
+    return None
+
+
+class Scales:
+    """Largest value of each kind in each case, over both models: what differences are measured against."""
+
+    def __init__(self, ctx: Context, solid: Table, beam: Table) -> None:
+        self._largest: dict[tuple[str, str], float] = {}
+        for figures in (solid, beam):
+            for vector in _vectors(figures):
+                key, size = vector
+                self._largest[key] = max(self._largest.get(key, 0.0), size)
+        self._span = max(ctx.size)
+        self._length = ctx.length
+
+    def __call__(self, key: FigureKey) -> float:
+        own = self._largest.get((key.case, key.quantity), 0.0)
+        # A moment or rotation that ought to be zero is measured against what the forces or displacements
+        # of the case would make of it over a short arm, so that rounding is not called a difference.
+        match key.quantity:
+            case "section_moment":
+                return max(own, 0.1 * self._span * self._largest.get((key.case, "section_force"), 0.0))
+            case "section_force":
+                return max(own, self._largest.get((key.case, "section_moment"), 0.0) / self._length)
+            case "reaction_moment":
+                return max(own, 0.1 * self._span * self._largest.get((key.case, "reaction_force"), 0.0))
+            case "reaction_force":
+                return max(own, self._largest.get((key.case, "reaction_moment"), 0.0) / self._length)
+            case "rotation":
+                return max(own, self._largest.get((key.case, "displacement"), 0.0) / self._length)
+            case "centre_of_mass":
+                return self._length
+            case _:
+                return own
+
+
+def _vectors(figures: Table) -> Iterator[tuple[tuple[str, str], float]]:
+    """((case, quantity), size) of every vector at every place; scalars and stresses one by one."""
+    sums: dict[tuple[str, str, str], float] = {}
+    for key, figure in figures.items():
+        place = key.place if "stress" not in key.quantity else f"{key.place} {key.component}"
+        slot = (key.case, key.quantity, place)
+        sums[slot] = sums.get(slot, 0.0) + figure.value**2
+    for (case, quantity, _), total in sums.items():
+        yield (case, quantity), float(np.sqrt(total))
+
+
+def not_compared(ctx: Context, key: FigureKey) -> str:
+    """Why two figures with this key are not expected to agree at all (empty: they are)."""
+    at = station_of(ctx, key.place)
+    if at is None:
+        return ""
+    if key.quantity in ("section_force", "section_moment"):
+        inside = ctx.inside(at)
+        tiny = 1e-6 * ctx.length
+        at_edge = [z.what for z in ctx.held_zones + ctx.loaded_zones
+                   if min(abs(z.start - at), abs(z.end - at)) < tiny and tiny < at < ctx.length - tiny]
+        return ", ".join((*inside, *at_edge))
+    if key.quantity == "nominal_stress":
+        return ", ".join(ctx.disturbed_by(at))
+    return ""
+
+
+def pair_figures(ctx: Context, solid: Table, beam: Table, facts: Mapping[str, CaseFacts],
+                 causes: Mapping[FigureKey, Sequence[tuple[Cause, float]]]) -> tuple[Pair, ...]:
+    """Every figure that both models give, in the solid's order, then the beam's that have no partner."""
+    scales = Scales(ctx, solid, beam)
+    pairs = []
+    for key, figure in solid.items():
+        if key.quantity == "peak_stress":
+            continue  # the beam has no such figure; peak places are reported by themselves
+        other = beam.get(key)
+        pairs.append(_judged(ctx, key, figure, other, scales(key), facts, causes.get(key, ())))
+    pairs += [Pair(key, None, f.value, f.unit, None, scales(key), 0.0, (), "no beam value",
+                   "the solid model gives no such figure here")
+              for key, f in beam.items() if key not in solid]
+    return tuple(pairs)
+
+
+def _judged(ctx: Context, key: FigureKey, solid: Figure, beam: Figure | None, scale: float,
+            facts: Mapping[str, CaseFacts], causes: Sequence[tuple[Cause, float]]) -> Pair:
+    if beam is None:
+        return Pair(key, solid.value, None, solid.unit, None, scale, 0.0, (), "no beam value", solid.note)
+    difference = solid.value - beam.value
+    disturbed = not_compared(ctx, key)
+    if disturbed:
+        return Pair(key, solid.value, beam.value, solid.unit, difference, scale, 0.0, (), "no beam value",
+                    f"no plane section here: {disturbed}")
+    case_facts = facts.get(key.case, CaseFacts(0.0, 0.0, False, False))
+    why = list(reasons(ctx, case_facts, key))
+    if key.quantity == "notch_stress" and beam.error is not None:
+        fit = abs(beam.error) / scale if scale > 0 else 0.0
+        why.append(Reason(f"fit of the stress concentration factor ({beam.note})", fit))
+    band = sum(r.fraction for r in why) * scale + sum(left for _, left in causes)
+    listed = (*(c for c, _ in causes), *(Cause(f"{r.text}: band ± {100 * r.fraction:.2g} %", 0.0) for r in why))
+    word = _word(ctx, key, difference, band, sum(c.predicted for c, _ in causes), scale)
+    look = look_at(key, solid.value, beam.value, ctx) if word == "suspicious" else ""
+    return Pair(key, solid.value, beam.value, solid.unit, difference, scale, band, listed, word, look)
+
+
+def _word(ctx: Context, key: FigureKey, difference: float, band: float, predicted: float,
+          scale: float) -> JudgementWord:
+    rounding = 1e-9 * scale
+    if abs(difference) <= band + rounding:
+        balance = key.quantity in ("section_force", "section_moment", "reaction_force", "reaction_moment")
+        return "load check" if balance and ctx.determinate else "agrees"
+    if predicted and abs(difference - predicted) <= band + rounding:
+        return "explained"
+    return "suspicious"
+
+
+def look_at(key: FigureKey, solid: float, beam: float, ctx: Context) -> str:
+    """One sentence: what was seen, and where such a difference usually comes from."""
+    seen = f"solid is {solid / beam:.3g} times the beam" if beam else "beam has none of it"
+    hints = {
+        "displacement": "supports (held more or less than meant?), section turned, length or load in another unit",
+        "rotation": "supports, the load's arm, the section's torsion stiffness",
+        "reaction_force": "a load that acts in one model only, or a support that holds more than meant",
+        "reaction_moment": "the point where a load acts; an arm in another unit",
+        "section_force": "a load that acts in one model only, or a wrong direction",
+        "section_moment": "the point where a load acts, and its arm",
+        "nominal_stress": "section dimensions (turned by 90 degrees?), a cut near this station, a thin wall that bends",
+        "notch_stress": "the cut's size and place, another feature near it, the mesh at its edge",
+        "strain_energy": "loads and supports as a whole",
+        "mass": "dimensions or density; a cut that one model lacks",
+        "centre_of_mass": "placement of the section on the line, direction of the taper",
+    }
+    return f"{seen}; look at: {hints.get(key.quantity, 'the spec')}"
