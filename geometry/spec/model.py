@@ -427,7 +427,7 @@ class PartSpec(Words):
         default_factory=lambda: ["0 m/s^2", "0 m/s^2", "-9.81 m/s^2"],
         description="used by the built-in load self_weight",
     )
-    parameters: dict[str, Real | Text] = Field(default_factory=dict, description="dimensions that may be varied")
+    parameters: dict[str, Annotated[Real | Text, OfKind("quantity")]] = Field(default_factory=dict, description="dimensions that may be varied")
     members: dict[str, MemberSpec] = Field(description="the members, by name; one for now")
     places: dict[str, PlaceSpec] = Field(default_factory=dict, description="stations to report at")
     supports: dict[str, SupportSpec] = Field(description="how the part is held")

@@ -98,6 +98,7 @@ KINDS: dict[str, Kind] = {
         Kind("acceleration", ACCELERATION, "mm/s^2", "9.81 m/s^2"),
         Kind("temperature change", TEMPERATURE, "K", "40 K"),
         Kind("thermal expansion", EXPANSION, "1/K", "12e-6 1/K"),
+        Kind("quantity", NUMBER, "", "12 mm"),  # a parameter: of any dimension
         # Not fields of the spec, but results of arithmetic that messages must be able to name.
         Kind("area", AREA, "mm^2", "120 mm^2"),
         Kind("volume", VOLUME, "mm^3", "800 mm^3"),

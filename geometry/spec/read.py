@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import tomllib
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -11,7 +11,11 @@ from pydantic import ValidationError
 
 from geometry.part import Part
 from geometry.problem import Problem, SpecError
+from geometry.spec.expression import nearest
 from geometry.spec.model import PartSpec
+from geometry.spec.resolve import resolve_and_check
+from geometry.spec.translate import read_leniently
+from geometry.spec.values import shown
 
 LARGEST_FILE = 1_000_000  # bytes: a spec is a page or two of text
 
@@ -62,11 +66,43 @@ def data_from_text(text: str, name: str) -> dict[str, Any]:
 
 
 def part_from_data(data: Mapping[str, Any], text: str = "") -> Part:
-    """The part that plain data (the tables of a TOML file) describes."""
+    """The part that plain data (the tables of a TOML file) describes; raise `SpecError` with every mistake."""
     try:
         spec = PartSpec.model_validate(data)
-    except ValidationError as error:
-        raise SpecError(
-            [Problem(".".join(map(str, e["loc"])), str(e.get("input")), e["msg"]) for e in error.errors()]
-        ) from None
+    except ValidationError:
+        spec_left, problems, removed = read_leniently(data)
+        if spec_left is not None:
+            more = resolve_and_check(spec_left, text, removed, lenient=True)[1]
+            problems += [p for p in more if not _under(p.path, removed)]
+        raise SpecError(problems) from None
     return spec.resolve(text)
+
+
+def _under(path: str, removed: Collection[str]) -> bool:
+    """Whether a message may come from something that was taken out only because it could not be read."""
+    return any(
+        path == gone or path.startswith((gone + ".", gone + "[")) or gone.startswith(path + ".") for gone in removed
+    )
+
+
+def part_from_spec(spec: PartSpec) -> Part:
+    """The part that a spec written in Python describes; raise `SpecError` with every mistake found."""
+    return spec.resolve()
+
+
+def with_parameters(spec: PartSpec | str, values: Mapping[str, str | float]) -> Part:
+    """The part with other values of some of its parameters; raise `SpecError` also for unknown names."""
+    text = spec if isinstance(spec, str) else ""
+    data = data_from_text(spec, "part.toml") if isinstance(spec, str) else spec.model_dump(by_alias=True)
+    known = data.get("parameters")
+    known = dict(known) if isinstance(known, Mapping) else {}
+    unknown = [name for name in values if name not in known]
+    if unknown:
+        raise SpecError(
+            Problem(f"parameters.{name}", name, f"a parameter of the spec: {', '.join(known) or 'none'}",
+                    f"Did you mean {near}?" if (near := nearest(name, known)) else "")
+            for name in unknown
+        )  # fmt: skip
+    changed = ", ".join(f"{name} = {shown(value)}" for name, value in values.items())
+    text = f"# Parameters changed afterwards: {changed}\n{text}" if text and values else text
+    return part_from_data({**data, "parameters": {**known, **values}}, text)

@@ -30,14 +30,14 @@ def resolve(spec: PartSpec, source_text: str = "") -> Part:
 
 
 def resolve_and_check(
-    spec: PartSpec, source_text: str = "", removed: Collection[str] = ()
+    spec: PartSpec, source_text: str = "", removed: Collection[str] = (), lenient: bool = False
 ) -> tuple[Part | None, list[Problem]]:
     """The part as far as it can be read, and the mistakes.
 
     `removed` names the tables from which something unreadable was taken out before (``supports.wall``);
-    what depends on all of them is not judged then.
+    what depends on all of them is not judged then. `lenient`: quantities may be `UNREADABLE`.
     """
-    values = Values(spec.parameters)
+    values = Values(spec.parameters, lenient)
     members = {name: resolve_member(values, name, member) for name, member in spec.members.items()}
     loads: list[Load] = []
     for name, load_spec in spec.loads.items():

@@ -14,10 +14,12 @@ from geometry.part import Vector
 from geometry.problem import Problem
 from geometry.spec.expression import FUNCTIONS, NAME, ExpressionError, evaluate, evaluate_as, names_in, nearest
 from geometry.spec.model import OfKind
-from geometry.spec.quantity import KINDS, Quantity
+from geometry.spec.quantity import Quantity
 
 LONGEST_GIVEN = 80
 MOST_PARAMETERS = 500
+UNREADABLE = "\0unreadable"
+"""Stands for a quantity whose mistake has been reported already; reads as NaN in a lenient pass only."""
 
 
 def shown(value: Any) -> str:
@@ -42,7 +44,8 @@ class Values:
         The parameters that could be evaluated.
     """
 
-    def __init__(self, parameters: Mapping[str, Any]) -> None:
+    def __init__(self, parameters: Mapping[str, Any], lenient: bool = False) -> None:
+        self.lenient = lenient
         self.problems: list[Problem] = []
         self.scope: dict[str, Quantity] = {}
         self._broken: set[str] = set()
@@ -62,6 +65,8 @@ class Values:
     def number(self, path: str, text: Any, mark: OfKind | str) -> float:
         """Value of `text` in the base unit of its kind, or NaN after keeping a problem."""
         mark = OfKind(mark) if isinstance(mark, str) else mark
+        if self.lenient and text == UNREADABLE:
+            return math.nan
         if isinstance(text, bool) or not isinstance(text, (str, float, int)):
             self.problem(path, text, f'a {mark.word}, such as "{mark.kind.example}"')
             return math.nan
@@ -117,6 +122,9 @@ class Values:
         needs: dict[str, tuple[str, ...]] = {}
         for name, text in parameters.items():
             path = f"parameters.{name}"
+            if self.lenient and text == UNREADABLE:
+                self._broken.add(name)
+                continue
             if not NAME.fullmatch(name) or name in FUNCTIONS:
                 self.problem(path, name, "a name of letters, digits and _, not starting with a digit",
                              f"{name} is a function" if name in FUNCTIONS else "")  # fmt: skip
@@ -183,6 +191,3 @@ def _with_value(text: Any, value: float, unit: str) -> str:
     if isinstance(text, str) and any(c in text for c in "+-*/(") or (isinstance(text, str) and NAME.match(text)):
         return f"{text} = {value:.6g} {unit}".rstrip()
     return str(text)
-
-
-EXAMPLES = {word: kind.example for word, kind in KINDS.items()}

@@ -1,0 +1,167 @@
+"""Whether the supports hold the part against every motion as a rigid body.
+
+Rows of a small matrix say what each support holds of the motion u = t + w x p, for a handful of points p of
+its region; a motion that no row sees is free. Only the rank matters, so the points are those of the bounding
+rectangle of the section (of a hole: of its axis and rim), with no claim to exactness.
+"""
+
+from __future__ import annotations
+
+import math
+
+from geometry.part import Member, Part, Support, Vector
+from geometry.spec.checks_section import axes_known
+from geometry.spec.frame import axes_of, cross, dot, plus, scaled, size
+from geometry.spec.profile import Profile, dims_at, length_of, profile_of
+from geometry.spec.values import Values
+
+Row = list[float]
+GLOBAL: tuple[Vector, Vector, Vector] = ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0))
+ZERO_PIVOT = 1e-7
+
+
+def check_held(values: Values, part: Part) -> None:
+    """Keep one problem that names every rigid motion left free."""
+    members = {member.name: member for member in part.members}
+    if not part.supports or not all(_usable(member) for member in part.members):
+        return
+    scale = max((length_of(member) for member in part.members), default=1.0)
+    centre = scaled(plus(part.members[0].start, part.members[0].end), 0.5)
+    rows: list[Row] = []
+    for support in part.supports:
+        name, _, region = support.on.partition(".")
+        if name not in members:
+            return  # reported as an unknown region
+        rows += _rows(support, members[name], region, centre, scale)
+    free = _free_motions(rows)
+    if free:
+        where = ", ".join(f"{c + 0.0:.4g}" for c in centre)
+        words = [m if m.startswith("translation") else f"{m} (through {where} mm, or an axis beside it)" for m in free]
+        values.problem("supports", "; ".join(words) + (" is" if len(free) == 1 else " are") + " free",
+                       "supports that hold the part against every rigid motion",
+                       "Hold another freedom, or another region")  # fmt: skip
+
+
+def _usable(member: Member) -> bool:
+    dims = (*member.section.dims.values(), length_of(member), member.roll)
+    if member.section.shape == "outline" and (member.section.outline is None or not member.section.outline.outer):
+        return False
+    return not any(math.isnan(v) for v in dims) and length_of(member) > 0.0 and axes_known(member)
+
+
+def _rows(support: Support, member: Member, region: str, centre: Vector, scale: float) -> list[Row]:
+    axes = axes_of(member) if support.axes == "member" else GLOBAL
+    points, normal = _points(member, region)
+    arms = [scaled(plus(p, scaled(centre, -1.0)), 1.0 / scale) for p in points]
+    if support.coupling != "surface":
+        mean = scaled(plus((0.0, 0.0, 0.0), _sum(arms)), 1.0 / len(arms))
+        arms = [mean]
+    rows = []
+    for freedom in support.held:
+        if freedom in ("rx", "ry", "rz"):
+            rows.append([0.0, 0.0, 0.0, *axes[("rx", "ry", "rz").index(freedom)]])
+            continue
+        direction = normal if freedom == "normal" else axes[("x", "y", "z").index(freedom)]
+        rows += [[*direction, *cross(arm, direction)] for arm in arms]
+    return rows
+
+
+def _sum(vectors: list[Vector]) -> Vector:
+    return (sum(v[0] for v in vectors), sum(v[1] for v in vectors), sum(v[2] for v in vectors))
+
+
+def _points(member: Member, region: str) -> tuple[list[Vector], Vector]:
+    """Points of a region (global, mm), and its outward normal when it is plane."""
+    profile, axes, length = profile_of(member), axes_of(member), length_of(member)
+    cuts = [cut for cut in member.cuts if region in (cut.name, cut.group)]
+    patch = next((p for p in member.patches if p.name == region), None)
+    if cuts:
+        local = [p for cut in cuts for p in _cut_points(profile, cut)]
+        return [_placed(member, axes, p) for p in local], axes[0]
+    if region in ("start", "end"):
+        x = 0.0 if region == "start" else length
+        local = [(x, y, z) for y, z in _corners(profile.box(dims_at(member, x, x > 0.0)))]
+        return [_placed(member, axes, p) for p in local], scaled(axes[0], -1.0 if region == "start" else 1.0)
+    face = patch.face if patch else region
+    low, high = (patch.start, patch.end) if patch else (0.0, length)
+    normal = scaled(axes[1 if face in ("left", "right", "web_left", "web_right") else 2],
+                    -1.0 if face in ("left", "web_left", "bottom") else 1.0)  # fmt: skip
+    across = patch.across if patch else None
+    local = [(x, y, z) for x in (low, high) for y, z in _side(profile.box(dims_at(member, x)), face, across)]
+    return [_placed(member, axes, p) for p in local], normal
+
+
+def _cut_points(profile: Profile, cut: object) -> list[Vector]:
+    from geometry.part import Cut
+
+    assert isinstance(cut, Cut)
+    low_y, high_y, low_z, high_z = profile.box(dims_at(profile.member, cut.at))
+    r = cut.depth / 2.0
+    points = []
+    for dx, ds in ((r, 0.0), (-r, 0.0), (0.0, r), (0.0, -r)):
+        x, s = cut.at + dx, cut.offset + ds
+        points += [(x, low_y, s), (x, high_y, s)] if cut.axis == "y" else [(x, s, low_z), (x, s, high_z)]
+    return points
+
+
+def _corners(box: tuple[float, float, float, float]) -> list[tuple[float, float]]:
+    return [(y, z) for y in box[:2] for z in box[2:]]
+
+
+def _side(
+    box: tuple[float, float, float, float], face: str, across: tuple[float, float] | None
+) -> list[tuple[float, float]]:
+    """Two points of a face in a section (all corners of a round one)."""
+    low_y, high_y, low_z, high_z = box
+    if face in ("top", "bottom"):
+        z = high_z if face == "top" else low_z
+        return [(y, z) for y in across or (low_y, high_y)]
+    if face in ("left", "right", "web_left", "web_right"):
+        y = low_y if face in ("left", "web_left") else high_y
+        return [(y, z) for z in across or (low_z, high_z)]
+    return _corners(box)
+
+
+def _placed(member: Member, axes: tuple[Vector, Vector, Vector], p: Vector) -> Vector:
+    point = member.start
+    for axis, distance in zip(axes, p, strict=True):
+        point = plus(point, scaled(axis, distance))
+    return point
+
+
+def _rank(rows: list[Row]) -> int:
+    """Rank by elimination with full row pivoting, of rows of size about 1."""
+    rows = [list(row) for row in rows]
+    rank = 0
+    for column in range(len(rows[0]) if rows else 0):
+        pivot = max(range(rank, len(rows)), key=lambda r: abs(rows[r][column]), default=None)
+        if pivot is None or abs(rows[pivot][column]) < ZERO_PIVOT:
+            continue
+        rows[rank], rows[pivot] = rows[pivot], rows[rank]
+        for r in range(rank + 1, len(rows)):
+            factor = rows[r][column] / rows[rank][column]
+            rows[r] = [a - factor * b for a, b in zip(rows[r], rows[rank], strict=True)]
+        rank += 1
+    return rank
+
+
+def _free_motions(rows: list[Row]) -> list[str]:
+    """Names of the rigid motions that no row sees."""
+    missing = 6 - _rank(rows)
+    if missing <= 0:
+        return []
+    moves = [row[:3] for row in rows]
+    free_moves = 3 - _rank(moves)
+    names = [f"translation along {axis}" for k, axis in enumerate("xyz") if all(abs(m[k]) < ZERO_PIVOT for m in moves)]
+    names = names[:free_moves] + ["translation along a direction askew"] * (free_moves - len(names))
+    # A rotation about an axis is free when some translation makes up for it in every row.
+    turns = []
+    for k, axis in enumerate("xyz"):
+        seen = [[*row[:3], row[3 + k]] for row in rows]
+        if _rank(seen) == _rank(moves):
+            turns.append(f"rotation about {axis}")
+    free_turns = missing - free_moves
+    return names + turns[:free_turns] + ["rotation about an axis askew"] * (free_turns - len(turns))
+
+
+__all__ = ["check_held", "dot", "size"]
