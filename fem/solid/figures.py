@@ -4,13 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-import numpy as np
-
 from fem.figure import Figure, FigureKey, Quantity, station_place
-from fem.solid.cut import Cut, Cutter, section_means
-from fem.solid.frame import Frame, member_frame, stations
+from fem.solid.cut import Cut, section_means
+from fem.solid.frame import member_frame, stations
 from fem.solid.model import SolidModel
 from fem.solid.reaction import Reactions
+from fem.solid.sections import section_places
 from fem.solid.shape import Array
 
 _XYZ = ("x", "y", "z")
@@ -23,23 +22,7 @@ def vector_figures(cases: tuple[str, ...], place: str, quantity: Quantity, value
             yield Figure(FigureKey(case, place, quantity, component), float(value), unit)
 
 
-def section_places(model: SolidModel) -> dict[str, dict[float, list[str]]]:
-    """Names of the places of each member by station: ends, named places, and the 21 stations."""
-    out: dict[str, dict[float, list[str]]] = {}
-    for member in model.part.members:
-        length = member_frame(member).length
-        places = {float(x): [station_place(member.name, float(x))] for x in stations(length)}
-        places[0.0].append(f"{member.name}.start")
-        places[max(places)].append(f"{member.name}.end")
-        for place in model.part.places:
-            if place.member == member.name:
-                places.setdefault(place.at, []).append(place.name)
-        out[member.name] = dict(sorted(places.items()))
-    return out
-
-
-def displacement_figures(model: SolidModel, cutter: Cutter, u: Array,
-                         sections: dict[str, dict[float, Cut]]) -> Iterator[Figure]:
+def displacement_figures(model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]]) -> Iterator[Figure]:
     """Mean displacement (mm) and rotation (rad) of every section; u (c, 3, n)."""
     cases = tuple(case.name for case in model.part.cases)
     places = section_places(model)
@@ -69,4 +52,14 @@ def scalar_figures(model: SolidModel, energy: Array) -> Iterator[Figure]:
         yield Figure(FigureKey("", "", "centre_of_mass", component), float(value), "mm")
 
 
-__all__ = ["Frame", "displacement_figures", "np", "reaction_figures", "scalar_figures", "section_places"]
+
+def section_force_figures(model: SolidModel, forces: dict[str, Array]) -> Iterator[Figure]:
+    """N, Vy, Vz (N) and T, My, Mz (N mm) of each member at the 21 stations, forces (21, c, 6)."""
+    for member in model.part.members:
+        for at, values in zip(stations(member_frame(member).length), forces[member.name], strict=True):
+            place = station_place(member.name, float(at))
+            for case, row in zip(model.part.cases, values, strict=True):
+                for k, component in enumerate(("N", "Vy", "Vz", "T", "My", "Mz")):
+                    quantity: Quantity = "section_force" if k < 3 else "section_moment"
+                    yield Figure(FigureKey(case.name, place, quantity, component, "member"), float(row[k]),
+                                 "N" if k < 3 else "N mm")

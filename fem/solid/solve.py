@@ -2,18 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from time import perf_counter
 
 import numpy as np
 
 from fem.solid.balance import balance_checks, load_checks, strain_energies
 from fem.solid.cut import Cutter
-from fem.solid.figures import displacement_figures, reaction_figures, scalar_figures, section_places
-from fem.solid.frame import member_frame
+from fem.solid.denting import denting
+from fem.solid.edge_stress import nominal_figures, notch_figures
+from fem.solid.figures import displacement_figures, reaction_figures, scalar_figures, section_force_figures
 from fem.solid.model import build_model
+from fem.solid.peak import case_stresses, node_sizes, peak_places, singular_nodes, singular_places
 from fem.solid.reaction import reactions
 from fem.solid.result import SolidResult
+from fem.solid.sections import member_sections, section_forces
+from fem.solid.shape import Array
+from fem.solid.stress import nodal_stress, principal_stresses, von_mises
 from fem.solid.system import solve_system
 from geometry.budget import Budget
 from geometry.part import Part
@@ -21,7 +26,7 @@ from mesher.named_mesh import NamedMesh
 
 
 def solve_solid(part: Part, mesh: NamedMesh, budget: Budget, progress: Callable[[str], None] | None = None,
-                backend: str = "auto") -> SolidResult:
+                backend: str = "auto", sharp_edges: Sequence[tuple[str, Array]] = ()) -> SolidResult:
     """Solve every case of the part on its mesh.
 
     Parameters
@@ -30,6 +35,8 @@ def solve_solid(part: Part, mesh: NamedMesh, budget: Budget, progress: Callable[
         Called with the name of each stage as it begins.
     backend
         ``auto`` (PARDISO where it is installed), ``pardiso`` or ``lu``.
+    sharp_edges
+        (label, points (k, 3) in mm) of re-entrant edges without a radius: peaks near them are marked.
 
     Raises
     ------
@@ -60,20 +67,33 @@ def solve_solid(part: Part, mesh: NamedMesh, budget: Budget, progress: Callable[
     reacting = reactions(model, solution.u, solution.mean_forces)
     energy, thermal_part = strain_energies(model, u)
     checks = [*load_checks(model), *balance_checks(model, u, reacting, energy, thermal_part, solution)]
+    stage("stress")
+    stress, spread = nodal_stress(model, u)
+    mises, principal = von_mises(stress, axis=1), principal_stresses(stress)
     stage("sections")
     cutter = Cutter(mesh)
-    sections = {
-        member.name: {at: cutter.cut(member_frame(member), at) for at in section_places(model)[member.name]}
-        for member in part.members
-    }
-    figures = [
-        *displacement_figures(model, cutter, u, sections),
+    sections = member_sections(model, cutter)
+    forces, gap = section_forces(model, u, reacting, sections)
+    stage("figures")
+    figures = (
+        *displacement_figures(model, u, sections),
         *reaction_figures(model, reacting),
+        *section_force_figures(model, forces),
+        *nominal_figures(model, stress, spread),
+        *notch_figures(model, stress, spread),
         *scalar_figures(model, energy),
-    ]
+    )
+    sizes = node_sizes(mesh)
+    places = singular_places(model, sharp_edges)
+    near = singular_nodes(mesh, places, sizes)
+    result = SolidResult(
+        cases=cases, mesh=mesh, u=u, stress=stress, stress_error=spread, von_mises=mises,
+        tresca=principal[:, 0] - principal[:, 2], principal=principal, figures=figures,
+        peaks=tuple(peak_places(model, mises, principal, places, near, sizes)),
+        case_stress=tuple(case_stresses(model, mises, near)),
+        denting=tuple(denting(model, u, sections)), section_gap=gap, mass=model.mass,
+        centre_of_mass=model.centre_of_mass, external_work=np.einsum("cni,cin->c", model.mechanical, u) / 2,
+        strain_energy=energy, checks=tuple(checks), timings=timings, backend=solution.backend,
+    )
     stage("")
-    work = np.einsum("cni,cin->c", model.mechanical, u) / 2
-    empty, flat = np.zeros((len(cases), 0, n)), np.zeros((len(cases), n))
-    return SolidResult(cases, mesh, u, empty, flat, flat, flat, empty, tuple(figures), (), (), (),
-                       np.zeros((0, 0, len(cases), 6)), model.mass, model.centre_of_mass, work, energy,
-                       tuple(checks), timings, solution.backend)
+    return result

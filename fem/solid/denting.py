@@ -1,0 +1,48 @@
+"""Local deformation of loaded faces: displacement relative to the member's sections."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+from scipy.interpolate import CubicSpline
+
+from fem.solid.cut import Cut, section_means
+from fem.solid.frame import member_frame
+from fem.solid.model import SolidModel
+from fem.solid.result import Denting
+from fem.solid.shape import Array
+
+
+def denting(model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]]) -> Iterator[Denting]:
+    """Largest displacement of each loaded region relative to the rigid motion of the section at each point's station.
+
+    The sections' mean displacement and rotation are splined over the stations. Regions on no member are left out.
+    """
+    mesh = model.mesh
+    motion = {}
+    for member in model.part.members:
+        frame = member_frame(member)
+        cuts = [cut for cut in sections[member.name].values() if cut.weights.size]
+        rows = []
+        for cut in cuts:
+            mean, turn = section_means(cut, u, mesh.tets, frame)
+            rows.append(np.concatenate([mean, turn], axis=1))
+        at = np.array([cut.at for cut in cuts])
+        centres = np.array([cut.centroid for cut in cuts])
+        motion[member.name] = (frame, CubicSpline(at, np.array(rows)), CubicSpline(at, centres))
+    for load in model.part.loads:
+        on = getattr(load, "on", "")
+        name = on.partition(".")[0]
+        if name not in motion or on not in mesh.facets:
+            continue
+        frame, spline, centre = motion[name]
+        nodes = np.unique(mesh.facets[on])
+        local = frame.local(mesh.nodes[:, nodes])
+        at = np.clip(local[0], spline.x[0], spline.x[-1])
+        values, arms = spline(at), (local.T - centre(at)) @ frame.axes  # (k, c, 6), (k, 3)
+        for k, case in enumerate(model.part.cases):
+            if case.factors.get(load.name, 0.0):
+                rigid = values[:, k, :3] + np.cross(values[:, k, 3:], arms)
+                off = np.linalg.norm(u[k][:, nodes].T - rigid, axis=1)
+                yield Denting(case.name, on, float(off.max()))

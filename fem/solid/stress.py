@@ -1,0 +1,83 @@
+"""Nodal stress by volume-weighted averaging of the elements' own stresses, and its invariants.
+
+In a straight quadratic tetrahedron the stress is linear: its values at the element's nodes are taken as they are (the
+same as extrapolating from the four integration points) and averaged over the elements at a node with their volumes
+as weights. The spread of the elements' values about that average is kept as a measure of the discretisation error
+(Zienkiewicz and Zhu 1987).
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from fem.solid.model import SolidModel
+from fem.solid.shape import TET_EDGES, Array
+from fem.solid.stiffness import element_gradients, stresses
+
+_CHUNK = 8192
+TENSOR = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2]])
+
+NODE_BARY = np.vstack([np.eye(4), (np.eye(4)[TET_EDGES[:, 0]] + np.eye(4)[TET_EDGES[:, 1]]) / 2]).T
+"""(4, 10) barycentric coordinates of an element's nodes."""
+
+
+def nodal_stress(model: SolidModel, u: Array) -> tuple[Array, Array]:
+    """(c, 6, n) averaged stress and (c, n) spread (von Mises of the deviation, root mean square), MPa."""
+    mesh, material = model.mesh, model.part.material
+    c, n = u.shape[0], mesh.nodes.shape[1]
+    expansion = material.expansion * model.change
+    total, squares, weight = np.zeros((c, 6, n)), np.zeros((c, n)), np.zeros(n)
+    kept = []
+    for start in range(0, mesh.tets.shape[1], _CHUNK):
+        tets = mesh.tets[:, start : start + _CHUNK]
+        gradients, det = element_gradients(mesh.nodes, tets, NODE_BARY)
+        volume = np.repeat(det[:, :4].mean(axis=1), 10)
+        ue = u[:, :, tets].transpose(0, 3, 2, 1)
+        s = stresses(gradients, ue, material.E, material.nu, expansion)  # (c, m, 6, 10)
+        index = tets.T.ravel()
+        weight += np.bincount(index, weights=volume, minlength=n)
+        for k in range(c):
+            for i in range(6):
+                total[k, i] += np.bincount(index, weights=s[k, :, i].ravel() * volume, minlength=n)
+        kept.append((index, volume, s))
+    mean = total / weight
+    for index, volume, s in kept:
+        for k in range(c):
+            off = s[k].transpose(1, 0, 2).reshape(6, -1) - mean[k][:, index]
+            squares[k] += np.bincount(index, weights=von_mises(off) ** 2 * volume, minlength=n)
+    return mean, np.sqrt(squares / weight)
+
+
+def von_mises(s: Array, axis: int = 0) -> Array:
+    """Von Mises stress of components along `axis`."""
+    xx, yy, zz, xy, yz, zx = np.moveaxis(s, axis, 0)
+    return np.asarray(np.sqrt(
+        ((xx - yy) ** 2 + (yy - zz) ** 2 + (zz - xx) ** 2) / 2 + 3 * (xy**2 + yz**2 + zx**2)
+    ))
+
+
+def principal_stresses(s: Array) -> Array:
+    """(c, 3, n) principal stresses, greatest first, of (c, 6, n)."""
+    tensor = s[:, TENSOR].transpose(0, 3, 1, 2)
+    return np.ascontiguousarray(np.linalg.eigvalsh(tensor)[..., ::-1].transpose(0, 2, 1))
+
+
+def along(s: Array, direction: Array) -> Array:
+    """(..., n) normal stress in a unit direction, of s (..., 6, n)."""
+    a, b, c = direction
+    weights = np.array([a * a, b * b, c * c, 2 * a * b, 2 * b * c, 2 * c * a])
+    return np.asarray(np.tensordot(weights, s, axes=(0, -2)))
+
+
+def point_stress(model: SolidModel, u: Array, elements: np.ndarray, bary: Array) -> Array:
+    """(c, 6, p) raw stress at barycentric points (4, p) of elements (p,), MPa."""
+    from fem.solid.shape import tet_gradients
+
+    mesh, material = model.mesh, model.part.material
+    dN = tet_gradients(bary).transpose(2, 0, 1)  # (p, 10, 3)
+    nodes = mesh.tets[:, elements]
+    x = mesh.nodes[:, nodes].transpose(2, 0, 1)  # (p, 3, 10)
+    g = dN @ np.linalg.inv(x @ dN)
+    ue = u[:, :, nodes].transpose(0, 3, 2, 1)
+    s = stresses(g.reshape(-1, 30, 1), ue, material.E, material.nu, material.expansion * model.change)
+    return s[..., 0].transpose(0, 2, 1)
