@@ -69,9 +69,11 @@ def build_solid(part: Part) -> NamedSolid:
     _cut(work)
     work.add_radii(*edge_radii(work.solid, member, work.pieces, work.tools, on_cuts=True))
     _check_volume(work)
+    # Sliced before the patches are drawn: the same solid with fewer faces.
+    slices = slices_of(work.solid, slice_places(work.length, _avoid(work)), work.reach)
     strips = strips_of(part, member, frame.length)
     work.solid = imprinted(work.solid, strips, work.pieces, work.reach)
-    return _named(part, work, frame, strips)
+    return _named(part, work, frame, strips, slices)
 
 
 def _body(member: Member, frame: Frame) -> _Work:
@@ -133,7 +135,7 @@ def _check_volume(work: _Work) -> None:
         )
 
 
-def _named(part: Part, work: _Work, frame: Frame, strips: Sequence[Strip]) -> NamedSolid:
+def _named(part: Part, work: _Work, frame: Frame, strips: Sequence[Strip], slices: kernel.Array) -> NamedSolid:
     member, pieces, solid = work.member, work.pieces, work.solid
     samples = sample_faces(solid)
     names = [side_labels(s, pieces) for s in samples]
@@ -146,14 +148,13 @@ def _named(part: Part, work: _Work, frame: Frame, strips: Sequence[Strip]) -> Na
     marks = tuple(kernel.face_mark(f) for f in kernel.faces_of(again))
     _check_order(solid, marks, frame)
     volume, c = kernel.volume_of(again)
-    avoid = _avoid(work)
     return NamedSolid(
         brep=data, step=kernel.step_bytes(world, part.title), faces=marks, regions=regions, volume=volume,
         area=kernel.area_of(again)[0], centroid=(float(c[0]), float(c[1]), float(c[2])), volume_estimate=work.estimate,
         hints=tuple(size_hints(member, pieces, samples, names, tool_faces, work.radii)),
         sharp_edges=tuple(sharp_edges(solid, frame, member, pieces, names, tool_faces)),
         least_wall=least_wall(member, pieces),
-        slices=slices_of(solid, slice_places(work.length, avoid), work.reach),
+        slices=slices,
     )
 
 

@@ -28,6 +28,7 @@ MARGIN = 1.0
 """How far (mm) a tool runs past an outer face."""
 TOLERANCE = 0.01
 """Largest part of a cut's estimated volume by which the kernel's may differ."""
+_GAUSS = np.polynomial.legendre.leggauss(6)
 
 
 @dataclass(frozen=True, slots=True)
@@ -205,7 +206,6 @@ def tool_volume(tool: Tool, pieces: Sequence[Piece]) -> float:
     x0, x1, _, _ = tool.box
     length = pieces[-1].stretch.end
     fixed = 1 if tool.axis == "y" else 0
-    nodes, weights = np.polynomial.legendre.leggauss(8)
     total = 0.0
     breaks = {max(x0, 0.0), min(x1, length), *(p.stretch.start for p in pieces), *(q[0] for e in tool.loop for q in (e.start, e.end))}
     marks = sorted(b for b in breaks if max(x0, 0.0) <= b <= min(x1, length))
@@ -214,7 +214,7 @@ def tool_volume(tool: Tool, pieces: Sequence[Piece]) -> float:
             continue
         cells = np.linspace(a, b, 5)
         for c0, c1 in zip(cells[:-1], cells[1:], strict=True):
-            for node, weight in zip(nodes, weights, strict=True):
+            for node, weight in zip(*_GAUSS, strict=True):
                 x = 0.5 * (c0 + c1) + 0.5 * (c1 - c0) * node
                 total += 0.5 * (c1 - c0) * weight * _removed_area(tool, pieces, float(x), fixed)
     return float(total)
@@ -223,14 +223,13 @@ def tool_volume(tool: Tool, pieces: Sequence[Piece]) -> float:
 def _removed_area(tool: Tool, pieces: Sequence[Piece], x: float, fixed: int) -> float:
     edges = [s.edge for loop in piece_at(pieces, x).profile(x).loops for s in loop]
     corners = sorted({q[fixed] for e in edges for q in (e.start, e.end)})
-    nodes, weights = np.polynomial.legendre.leggauss(6)
     area = 0.0
     for low, high in inside(tool.loop, 0, x):
         marks = [low, *(c for c in corners if low < c < high), high]
         for a, b in zip(marks[:-1], marks[1:], strict=True):
             if b - a <= 1e-9:
                 continue
-            for node, weight in zip(nodes, weights, strict=True):
+            for node, weight in zip(*_GAUSS, strict=True):
                 c = 0.5 * (a + b) + 0.5 * (b - a) * node
                 area += 0.5 * (b - a) * weight * length_within(inside(edges, fixed, float(c)), tool.low, tool.high)
     return float(area)

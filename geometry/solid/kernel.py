@@ -161,5 +161,6 @@ def _step_text(shape: TopoDS_Shape, title: str) -> bytes:
     text = stream.getvalue().decode("latin-1")
     name = re.sub(r"[^ -~]", "?", title).replace("'", "''").replace("\\", "/") or "part"
     header = f"FILE_NAME('{name}','1970-01-01T00:00:00',(''),(''),'','','');"
+    text = re.sub(r"PRODUCT\('part \d+','part \d+'", "PRODUCT('part','part'", text, count=1)
     text = re.sub(r"FILE_NAME\(.*?\);", lambda _: header, text, count=1, flags=re.S)
     return text.encode("latin-1")
