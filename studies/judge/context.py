@@ -8,6 +8,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -62,6 +63,11 @@ class Context:
     @property
     def length(self) -> float:
         return self._axes[2]
+
+    @property
+    def x_axis(self) -> Array:
+        """(3,) direction of the member, global."""
+        return self._axes[1][0]
 
     def local(self, points: Array) -> Array:
         """(n, 3) points in member axes from (3, n) global ones."""
@@ -120,7 +126,7 @@ class Context:
     @cached_property
     def step_zones(self) -> tuple[Zone, ...]:
         stations = self.member.stations
-        pairs = zip(stations, stations[1:], strict=False)
+        pairs = pairwise(stations)
         return tuple(Zone(a.at, a.at, f"step at {a.at:g} mm") for a, b in pairs if abs(a.at - b.at) < 1e-9)
 
     def disturbed_by(self, at: float, reach: float | None = None) -> tuple[str, ...]:

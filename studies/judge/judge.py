@@ -52,7 +52,7 @@ def judge(part: Part, named: NamedSolid, mesh: NamedMesh, solid: SolidResult, be
 def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, figures: Table, case: str) -> CaseFacts:
     """What one case adds to the facts about the part (see `CaseFacts`)."""
     moved = [f.value for k, f in figures.items() if k.case == case and k.quantity == "displacement"]
-    x = ctx._axes[1][0]
+    x = ctx.x_axis
     turned = [abs(float(np.dot(v, x))) for v in _rotations(figures, case)]
     largest = max(map(abs, moved), default=0.0)
     thin = named.least_wall < 0.2 * min(ctx.size)
@@ -102,7 +102,7 @@ def cautions(ctx: Context, solid: SolidResult, facts: dict[str, CaseFacts]) -> t
         f"Accuracy {100 * ctx.part.accuracy:g} %: requested, not verified.",
     ]
     if ctx.slenderness < 5:
-        found.append(f"Length over depth is {ctx.slenderness:.2g}: a stubby part, where the beam model is a rough guide.")
+        found.append(f"Length over depth is {ctx.slenderness:.2g}: stubby, so the beam model is a rough guide.")
     dents = [d for d in solid.denting if d.value > 0]
     if dents:
         worst = max(dents, key=lambda d: d.value)

@@ -15,8 +15,9 @@ from fem.figure import FigureKey, Quantity
 from fem.solid import SolidResult
 from geometry.part import Limit
 from studies.check.result import LimitVerdict, LimitWord, Pair
-from studies.judge.context import Context, Zone
-from studies.judge.pairing import Table, station_of
+from studies.judge.context import Context
+from studies.judge.edge_stress import extrapolated
+from studies.judge.pairing import Table
 
 UNITS = {
     "deflection": "mm", "displacement": "mm", "relative_displacement": "mm", "rotation": "rad", "stress": "MPa",
@@ -169,38 +170,9 @@ def _edge(evidence: Evidence, case: str) -> Iterator[Found]:
     where = place_text(best[0].regions, best[0].position) if best else "away from held edges"
     yield Found(stress.established, case, where, doubt)
     for zone in evidence.ctx.held_zones:
-        value = extrapolated(evidence, case, zone)
-        if value is None:
-            yield Found(0.0, case, zone.what, "no undisturbed stretch from which to extrapolate to "
-                        f"{zone.what}; use basis = \"nominal\" or model the joint")
-        else:
-            yield Found(value, case, f"outer fibre, extrapolated to {zone.what}", doubt)
-
-
-def extrapolated(evidence: Evidence, case: str, zone: Zone) -> float | None:
-    """Largest longitudinal surface stress extrapolated linearly to the edge of a held stretch, MPa.
-
-    From the two nearest stations one section depth or more away from it, on either side (structural
-    stress extrapolation; common practice in fatigue of welds, here with the depth for the thickness).
-    None when no two such stations exist.
-    """
-    reach = evidence.ctx.reach_of_disturbance
-    values: dict[str, list[tuple[float, float]]] = {}
-    for key, figure in evidence.solid_table.items():
-        at = station_of(evidence.ctx, key.place)
-        if key.case == case and key.quantity == "nominal_stress" and at is not None:
-            inside = any(z.distance(at) < 0.25 * reach for z in evidence.ctx.cut_zones + evidence.ctx.step_zones)
-            if zone.distance(at) >= reach and not inside:
-                values.setdefault(key.component, []).append((at, figure.value))
-    found = []
-    for points in values.values():
-        for side in (-1.0, 1.0):
-            edge = zone.start if side < 0 else zone.end
-            near = sorted((abs(x - edge), v) for x, v in points if (x - edge) * side > 0)[:2]
-            if len(near) == 2:
-                (d1, v1), (d2, v2) = near
-                found.append(abs(v1 + (v1 - v2) * d1 / (d2 - d1)))
-    return max(found) if found else None
+        value, why_not = extrapolated(evidence.ctx, evidence.solid, case, zone)
+        where = f"outer fibre, extrapolated to {zone.what}"
+        yield Found(value, case, where, why_not or doubt)
 
 
 def place_text(regions: Sequence[str], position: Sequence[float]) -> str:

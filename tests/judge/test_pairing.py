@@ -1,0 +1,74 @@
+"""The rules of the join: words, scales, what is not compared."""
+
+from __future__ import annotations
+
+import dataclasses
+
+import pytest
+from bar import LENGTH, TIP, WALL, bar, mesh, sound
+
+from fem.figure import Figure, FigureKey
+from geometry.part import Support
+from studies.check.result import Cause
+from studies.judge.context import Context
+from studies.judge.pairing import pair_figures, table
+
+KEY = FigureKey("lifting", "arm.end", "displacement", "z")
+
+
+def _pair(solid: float, beam: float, cause: tuple[Cause, float] | None = None) -> str:
+    ctx = Context(bar(), mesh())
+    causes = {KEY: [cause]} if cause else {}
+    (pair,) = pair_figures(ctx, table([Figure(KEY, solid, "mm")]), table([Figure(KEY, beam, "mm")]), {}, causes)
+    return pair.judgement
+
+
+def test_words() -> None:
+    assert _pair(-1.0, -1.001) == "agrees"
+    assert _pair(-1.0, -1.2) == "suspicious"
+    assert _pair(-1.0, -1.2, (Cause("why", 0.2), 0.0)) == "explained"
+    assert _pair(-1.0, -1.2, (Cause("why, with the wrong sign", -0.2), 0.0)) == "suspicious"
+    assert _pair(-1.0, -1.2, (Cause("why, too small", 0.1), 0.0)) == "suspicious"
+
+
+def test_a_figure_given_twice_is_an_error() -> None:
+    with pytest.raises(ValueError, match="two figures"):
+        table([Figure(KEY, 1.0, "mm"), Figure(KEY, 1.0, "mm")])
+
+
+def test_a_figure_of_one_model_only_is_kept_and_says_so() -> None:
+    ctx = Context(bar(), mesh())
+    (only,) = pair_figures(ctx, {}, table([Figure(KEY, 1.0, "mm")]), {}, {})
+    assert (only.judgement, only.solid, only.beam) == ("no beam value", None, 1.0)
+
+
+def test_differences_are_scaled_by_the_largest_of_the_case() -> None:
+    part, _, m, solid, beam = sound()
+    pairs = pair_figures(Context(part, m), table(solid.figures), table(beam.figures), {}, {})
+    scales = {p.scale for p in pairs if p.key.quantity == "displacement" and p.key.case == "lifting"}
+    assert len(scales) == 1
+    (scale,) = scales
+    # tip of a cantilever, both directions: P L^3 / 3 E I (Gere & Goodno, appendix of beam deflections)
+    z = 100 * LENGTH**3 / (3 * 210000 * 10 * 20**3 / 12)
+    y = 10 * LENGTH**3 / (3 * 210000 * 20 * 10**3 / 12)
+    assert scale == pytest.approx((z**2 + y**2) ** 0.5, rel=0.005)
+
+
+def test_stress_near_the_wall_is_not_compared() -> None:
+    part, _, m, solid, beam = sound()
+    pairs = pair_figures(Context(part, m), table(solid.figures), table(beam.figures), {}, {})
+    stress = {p.key.place: p.judgement for p in pairs if p.key.quantity == "nominal_stress"}
+    assert stress["arm@0"] == "no beam value"
+    assert stress["arm@200"] == "agrees"
+
+
+ROLLER = Support("roller", "arm.end", {"z": 0.0}, coupling="average")
+PIN = Support("pin", "arm.start", {"x": 0.0, "y": 0.0, "z": 0.0, "rx": 0.0, "rz": 0.0}, coupling="average")
+
+
+@pytest.mark.parametrize(("supports", "determinate"), [
+    ((WALL,), True), ((WALL, ROLLER), False), ((PIN, ROLLER), True),
+    ((dataclasses.replace(PIN, held={"x": 0.0, "y": 0.0, "z": 0.0}), ROLLER), False),
+])
+def test_determinate_parts_are_told_from_the_others(supports: tuple[Support, ...], determinate: bool) -> None:
+    assert Context(bar(supports=supports, loads=(TIP,)), mesh()).determinate is determinate
