@@ -83,7 +83,7 @@ def _check_bearing(values: Values, load: BearingLoad, members: dict[str, Member]
     if total == 0.0:
         values.problem(f"{path}.bearing", "0 N", "a force", "A bearing force of nothing has no direction")
     if axes_known(member):
-        x, y, z = axes_of(member)
+        _, y, z = axes_of(member)
         along = dot(load.force, y if holes[0].axis == "y" else z)
         if abs(along) > SQUARE * total:
             values.problem(f"{path}.bearing", f"{along:.6g} N along the hole's axis",
@@ -94,7 +94,9 @@ def _check_bearing(values: Values, load: BearingLoad, members: dict[str, Member]
 def _check_inertia(values: Values, load: RemotePoint) -> None:
     xx, yy, zz = load.inertia[:3]
     if min(xx, yy, zz) < 0.0:
-        values.problem(f"loads.{load.name}.inertia", f"{min(xx, yy, zz):.6g} t mm^2", "moments of inertia of at least 0")
+        values.problem(
+            f"loads.{load.name}.inertia", f"{min(xx, yy, zz):.6g} t mm^2", "moments of inertia of at least 0"
+        )
     elif max(xx, yy, zz) > (xx + yy + zz - max(xx, yy, zz)) * (1.0 + 1e-9) and max(xx, yy, zz) > 0.0:
         values.problem(f"loads.{load.name}.inertia", f"{xx:.6g}, {yy:.6g}, {zz:.6g} t mm^2",
                        "moments of inertia of which none is larger than the other two together",

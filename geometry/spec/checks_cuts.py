@@ -30,8 +30,8 @@ def check_cuts(values: Values, member: Member, paths: dict[str, str]) -> None:
         shape_is_right = _check_shape(values, path, cut)
         if shape_is_right and _check_place(values, path, profile, cut):
             good.append(cut)
-    _check_apart(values, paths, good)
-    _check_whole(values, paths, profile, good)
+    if _check_apart(values, paths, good):
+        _check_whole(values, paths, profile, good)
 
 
 def _check_shape(values: Values, path: str, cut: Cut) -> bool:
@@ -174,8 +174,9 @@ def _passes_same_wall(a: Cut, b: Cut) -> bool:
     return "flanges" in (a.through, b.through) and "web" not in (a.through, b.through)
 
 
-def _check_apart(values: Values, paths: dict[str, str], cuts: list[Cut]) -> None:
-    """Keep pairs of cuts in one wall that run into one another (notches are compared in `_check_whole`)."""
+def _check_apart(values: Values, paths: dict[str, str], cuts: list[Cut]) -> bool:
+    """Keep one pair of cuts of each two tables that run into one another (notches: see `_check_whole`)."""
+    told: set[tuple[str, str]] = set()
     boxes = []
     for cut in cuts:
         points = rim(cut)
@@ -184,13 +185,15 @@ def _check_apart(values: Values, paths: dict[str, str], cuts: list[Cut]) -> None
     for i, a in enumerate(cuts):
         for j in range(i):
             b = cuts[j]
-            if "notch" in (a.kind, b.kind) or not _passes_same_wall(a, b):
+            if "notch" in (a.kind, b.kind) or (a.group, b.group) in told or not _passes_same_wall(a, b):
                 continue
             p, q = boxes[i], boxes[j]
             if p[0] < q[1] and q[0] < p[1] and p[2] < q[3] and q[2] < p[3] and _meet(a, b):
+                told.add((a.group, b.group))
                 gap = math.hypot(a.at - b.at, a.offset - b.offset)
                 values.problem(paths[a.group], f"{a.name}, {gap:.6g} mm from {b.name}", "cuts that do not overlap",
                                "Move one, or make one cut of the two")  # fmt: skip
+    return not told
 
 
 def _meet(a: Cut, b: Cut) -> bool:
@@ -218,19 +221,22 @@ def _check_whole(values: Values, paths: dict[str, str], profile: Profile, cuts: 
         ends = [(cut.at - cut.length / 2.0, cut.at + cut.length / 2.0) for cut in through]
         stations.update((max(a[0], b[0]) + min(a[1], b[1])) / 2.0 for a in ends for b in ends
                         if max(a[0], b[0]) < min(a[1], b[1]))  # fmt: skip
-        for x in sorted(stations):
-            _check_station(values, paths, profile, through, axis, x)
+        # One message is enough: the stations of one mistake lie side by side.
+        any(not _check_station(values, paths, profile, through, axis, x) for x in sorted(stations))
 
 
 def _check_station(
     values: Values, paths: dict[str, str], profile: Profile, cuts: list[Cut], axis: str, x: float
-) -> None:
+) -> bool:
+    """Whether the cuts at a station keep apart and leave some of the section."""
     low_y, high_y, low_z, high_z = profile.box(dims_at(profile.member, x))
     low, high = (low_z, high_z) if axis == "y" else (low_y, high_y)
     removed = []
     for cut in cuts:
         if cut.kind == "notch" and abs(x - cut.at) < cut.length / 2.0:
-            removed.append((high - cut.depth, high, cut) if cut.edge in ("top", "right") else (low, low + cut.depth, cut))
+            removed.append(
+                (high - cut.depth, high, cut) if cut.edge in ("top", "right") else (low, low + cut.depth, cut)
+            )
         elif cut.kind != "notch" and (span := _span(cut, x)):
             removed.append((*span, cut))
     removed.sort(key=lambda r: r[:2])
@@ -238,12 +244,14 @@ def _check_station(
     for first, last, cut in removed:
         if first < last_end - 1e-9:
             values.problem(paths[cut.group], f"{cut.name} at {x:.6g} mm", "cuts that do not run into one another")
-            return
+            return False
         last_end = last
         reach = last if first <= reach + 1e-9 else reach
-    if removed and reach >= high - 1e-9:
-        values.problem(paths[removed[-1][2].group], f"{' and '.join(r[2].name for r in removed)} at {x:.6g} mm",
-                       "cuts that leave some of the section", "They would cut the part in two")  # fmt: skip
+    if not removed or reach < high - 1e-9:
+        return True
+    values.problem(paths[removed[-1][2].group], f"{' and '.join(r[2].name for r in removed)} at {x:.6g} mm",
+                   "cuts that leave some of the section", "They would cut the part in two")  # fmt: skip
+    return False
 
 
 def _span(cut: Cut, x: float) -> Interval | None:

@@ -9,9 +9,9 @@ from __future__ import annotations
 
 import math
 
-from geometry.part import Member, Part, Support, Vector
+from geometry.part import Cut, Member, Part, Support, Vector
 from geometry.spec.checks_section import axes_known
-from geometry.spec.frame import axes_of, cross, dot, plus, scaled, size
+from geometry.spec.frame import axes_of, cross, plus, scaled
 from geometry.spec.profile import Profile, dims_at, length_of, profile_of
 from geometry.spec.values import Values
 
@@ -33,13 +33,14 @@ def check_held(values: Values, part: Part) -> None:
         if name not in members:
             return  # reported as an unknown region
         rows += _rows(support, members[name], region, centre, scale)
-    free = _free_motions(rows)
+    free = _free_motions(rows, centre, scale)
     if free:
-        where = ", ".join(f"{c + 0.0:.4g}" for c in centre)
-        words = [m if m.startswith("translation") else f"{m} (through {where} mm, or an axis beside it)" for m in free]
-        values.problem("supports", "; ".join(words) + (" is" if len(free) == 1 else " are") + " free",
-                       "supports that hold the part against every rigid motion",
-                       "Hold another freedom, or another region")  # fmt: skip
+        values.problem(
+            "supports",
+            "these motions are free: " + "; ".join(free),
+            "supports that hold the part against every rigid motion",
+            "Hold another freedom, or another region",
+        )
 
 
 def _usable(member: Member) -> bool:
@@ -91,10 +92,7 @@ def _points(member: Member, region: str) -> tuple[list[Vector], Vector]:
     return [_placed(member, axes, p) for p in local], normal
 
 
-def _cut_points(profile: Profile, cut: object) -> list[Vector]:
-    from geometry.part import Cut
-
-    assert isinstance(cut, Cut)
+def _cut_points(profile: Profile, cut: Cut) -> list[Vector]:
     low_y, high_y, low_z, high_z = profile.box(dims_at(profile.member, cut.at))
     r = cut.depth / 2.0
     points = []
@@ -129,39 +127,48 @@ def _placed(member: Member, axes: tuple[Vector, Vector, Vector], p: Vector) -> V
     return point
 
 
-def _rank(rows: list[Row]) -> int:
-    """Rank by elimination with full row pivoting, of rows of size about 1."""
+def _eliminate(rows: list[Row], columns: int) -> tuple[list[Row], list[int]]:
+    """Reduced rows (elimination with row pivoting over the first `columns`) and their pivot columns."""
     rows = [list(row) for row in rows]
-    rank = 0
-    for column in range(len(rows[0]) if rows else 0):
-        pivot = max(range(rank, len(rows)), key=lambda r: abs(rows[r][column]), default=None)
+    pivots: list[int] = []
+    for column in range(columns):
+        done = len(pivots)
+        pivot = max(range(done, len(rows)), key=lambda r: abs(rows[r][column]), default=None)
         if pivot is None or abs(rows[pivot][column]) < ZERO_PIVOT:
             continue
-        rows[rank], rows[pivot] = rows[pivot], rows[rank]
-        for r in range(rank + 1, len(rows)):
-            factor = rows[r][column] / rows[rank][column]
-            rows[r] = [a - factor * b for a, b in zip(rows[r], rows[rank], strict=True)]
-        rank += 1
-    return rank
+        rows[done], rows[pivot] = rows[pivot], rows[done]
+        rows[done] = [a / rows[done][column] for a in rows[done]]
+        for r in range(len(rows)):
+            if r != done:
+                factor = rows[r][column]
+                rows[r] = [a - factor * b for a, b in zip(rows[r], rows[done], strict=True)]
+        pivots.append(column)
+    return rows, pivots
 
 
-def _free_motions(rows: list[Row]) -> list[str]:
+def _free_motions(rows: list[Row], centre: Vector, scale: float) -> list[str]:
     """Names of the rigid motions that no row sees."""
-    missing = 6 - _rank(rows)
+    missing = 6 - len(_eliminate(rows, 6)[1])
     if missing <= 0:
         return []
     moves = [row[:3] for row in rows]
-    free_moves = 3 - _rank(moves)
+    free_moves = 3 - len(_eliminate(moves, 3)[1])
     names = [f"translation along {axis}" for k, axis in enumerate("xyz") if all(abs(m[k]) < ZERO_PIVOT for m in moves)]
     names = names[:free_moves] + ["translation along a direction askew"] * (free_moves - len(names))
-    # A rotation about an axis is free when some translation makes up for it in every row.
-    turns = []
-    for k, axis in enumerate("xyz"):
-        seen = [[*row[:3], row[3 + k]] for row in rows]
-        if _rank(seen) == _rank(moves):
-            turns.append(f"rotation about {axis}")
+    turns = [turn for k in range(3) if (turn := _free_turn(rows, k, centre, scale))]
     free_turns = missing - free_moves
     return names + turns[:free_turns] + ["rotation about an axis askew"] * (free_turns - len(turns))
 
 
-__all__ = ["check_held", "dot", "size"]
+def _free_turn(rows: list[Row], k: int, centre: Vector, scale: float) -> str:
+    """Name of the rotation about the global axis `k`, if some translation makes up for it in every row."""
+    solved, pivots = _eliminate([[*row[:3], -row[3 + k]] for row in rows], 3)
+    if any(abs(row[3]) > ZERO_PIVOT for row in solved[len(pivots) :]):
+        return ""
+    shift = [0.0, 0.0, 0.0]
+    for row, column in zip(solved, pivots, strict=False):
+        shift[column] = row[3]
+    # u = shift + e x (p - centre) / scale vanishes on the axis through centre + scale (e x shift).
+    through = plus(centre, scaled(cross(GLOBAL[k], (shift[0], shift[1], shift[2])), scale))
+    point = ", ".join(f"{round(c, 6) + 0.0:.6g}" for c in through)
+    return f"rotation about {'xyz'[k]} through ({point}) mm"

@@ -5,9 +5,10 @@ from __future__ import annotations
 import re
 from collections.abc import Collection, Iterable
 
-from geometry.part import BearingLoad, Limit, LineLoad, Member, Part, RegionLoad, RemotePoint
+from geometry.part import Limit, LineLoad, Member, Part
 from geometry.spec.expression import nearest
 from geometry.spec.model import PartSpec
+from geometry.spec.profile import length_of
 from geometry.spec.regions import faces_of, is_flat, regions_of
 from geometry.spec.values import Values, listed
 
@@ -125,8 +126,6 @@ def _lost(removed: Collection[str], *tables: str) -> bool:
 
 def check_faces(values: Values, part: Part) -> None:
     """Keep patches and line loads on what is no face along the member, or beyond its ends."""
-    from geometry.spec.profile import length_of
-
     for member in part.members:
         faces, length = faces_of(member), length_of(member)
         for patch in member.patches:
@@ -157,6 +156,3 @@ def _check_stretch(values: Values, path: str, start: float, end: float, length: 
         values.problem(f"{path}.from", f"{start:.6g} mm", f"from 0 to less than {length:.6g} mm")
     if end <= start or end > length * (1.0 + 1e-9):
         values.problem(f"{path}.to", f"{end:.6g} mm", f"more than {start:.6g} mm, up to {length:.6g} mm")
-
-
-LOADS_ON_REGIONS = (RegionLoad, BearingLoad, RemotePoint)

@@ -39,7 +39,9 @@ def check_member(values: Values, member: Member) -> None:
 
 def _check_size(values: Values, path: str, size: float) -> None:
     if size < LEAST_LENGTH or size > GREATEST_LENGTH:
-        values.problem(path, f"{size:.6g} mm", f"from {LEAST_LENGTH:g} mm to {GREATEST_LENGTH:g} mm", "Look at the unit")
+        values.problem(
+            path, f"{size:.6g} mm", f"from {LEAST_LENGTH:g} mm to {GREATEST_LENGTH:g} mm", "Look at the unit"
+        )
 
 
 def _check_line(values: Values, path: str, member: Member) -> None:
@@ -131,7 +133,9 @@ def _check_stations(values: Values, path: str, member: Member) -> None:
             values.problem(where, f"{station.at:.6g} mm, a third time", "two stations at one place make a step")
         is_step = i > 1 and station.at == declared[i - 2].at
         if is_step and station.at >= length * (1.0 - 1e-9):
-            values.problem(where, "a step at the far end", f"a step before {length:.6g} mm", "Is there a taper as well?")
+            values.problem(
+                where, "a step at the far end", f"a step before {length:.6g} mm", "Is there a taper as well?"
+            )
         if station.shoulder_fillet > 0.0:
             _check_shoulder(values, f"{path}.stations[{i}].shoulder_fillet", member, i - 1, is_step)
 

@@ -6,7 +6,8 @@ import math
 from collections.abc import Sequence
 
 from geometry.outline import Arc, Edge, Line, Outline, Point
-from geometry.spec.model import OfKind, OutlineSection
+from geometry.spec.model_fields import OfKind
+from geometry.spec.model_member import OutlineSection
 from geometry.spec.values import Values
 
 Corner = tuple[float, float, float]

@@ -18,7 +18,7 @@ from __future__ import annotations
 import difflib
 import math
 import re
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from typing import NamedTuple
 
 from geometry.spec.quantity import ANGLE, NUMBER, UNITS, Dimension, Kind, Quantity, name_of
@@ -26,6 +26,24 @@ from geometry.spec.quantity import ANGLE, NUMBER, UNITS, Dimension, Kind, Quanti
 LONGEST = 300
 DEEPEST = 24
 GREATEST_POWER = 4
+COMMON_UNITS = (
+    "mm",
+    "cm",
+    "m",
+    "in",
+    "N",
+    "kN",
+    "N m",
+    "kN m",
+    "MPa",
+    "GPa",
+    "N/mm",
+    "deg",
+    "kg",
+    "kg/m^3",
+    "m/s^2",
+    "K",
+)
 FUNCTIONS = ("sqrt", "min", "max", "abs")
 NAME = re.compile(r"[A-Za-z_][A-Za-z0-9_]*")
 
@@ -59,6 +77,11 @@ class Token(NamedTuple):
     text: str
     value: Quantity | None = None
     unit: str = ""
+
+
+def with_article(word: str) -> str:
+    """ "a length", "an angle"."""
+    return ("an " if word[:1] in "aeiou" else "a ") + word
 
 
 def nearest(word: str, known: Mapping[str, object] | tuple[str, ...] | list[str]) -> str:
@@ -119,12 +142,22 @@ def _number(text: str, found: re.Match[str]) -> tuple[Token, int]:
     return Token("number", found.group(), Quantity(value)), at
 
 
+class UnknownUnitError(ExpressionError):
+    """A word behind a number is no unit of the list."""
+
+    def __init__(self, number: str, word: str, known: Iterable[str]) -> None:
+        near = nearest(word, list(known)) or nearest(word, UNITS)
+        self.number, self.word = number, word
+        fix = f'"{word}" is no known unit' + (f'; did you mean "{number} {near}"?' if near else "")
+        super().__init__("a known unit: " + ", ".join(known), fix)
+
+
 def _unknown_unit(number: str, word: str) -> ExpressionError:
     if word in ("degC", "°C", "C", "degF", "°F"):
-        return ExpressionError("a temperature difference in K", f'Write "{number} K" when {number} is a difference in K')
-    near = nearest(word, UNITS)
-    known = "a known unit: " + ", ".join(UNITS)
-    return ExpressionError(known, f'"{word}" is no known unit' + (f'; did you mean "{number} {near}"?' if near else ""))
+        return ExpressionError(
+            "a temperature difference in K", f'Write "{number} K" when {number} is a difference in K'
+        )
+    return UnknownUnitError(number, word, COMMON_UNITS)
 
 
 def names_in(text: str) -> tuple[str, ...]:
@@ -155,12 +188,12 @@ def evaluate_as(text: str, kind: Kind, scope: Mapping[str, Quantity]) -> float:
     value = evaluate(text, scope)
     if value.dimension == kind.dimension:
         return value.value
-    allowed = f'a {kind.word}, such as "{kind.example}"'
+    allowed = f'{with_article(kind.word)}, such as "{kind.example}"'
     if value.dimension == NUMBER:
         near = f"{text.strip()} {kind.example.split(' ', 1)[-1]}"
         fix = f'Add the unit: "{near}"' if _NUMBER.fullmatch(text.strip().lstrip("+-")) else "It has no unit"
         raise ExpressionError(allowed, fix)
-    raise ExpressionError(allowed, f"It is a {name_of(value.dimension)}")
+    raise ExpressionError(allowed, f"It is {with_article(name_of(value.dimension))}")
 
 
 class _Reader:
@@ -300,7 +333,7 @@ def _square_root(of: Quantity) -> Quantity:
         raise ExpressionError("the square root of something positive")
     if any(e % 2 for e in of.dimension):
         raise ExpressionError("the square root of a plain number, an area or a second moment",
-                              f"It is a {name_of(of.dimension)}")  # fmt: skip
+                              f"It is {with_article(name_of(of.dimension))}")  # fmt: skip
     return Quantity(math.sqrt(of.value), Dimension(*(e // 2 for e in of.dimension)))
 
 
@@ -309,4 +342,6 @@ def _unlike(what: str, other: Dimension, first: Dimension) -> ExpressionError:
     fix = "Give both a unit" if NUMBER in (other, first) else ""
     if ANGLE in (other, first):
         fix = "An angle is a quantity of its own, in deg or rad"
-    return ExpressionError("quantities of one kind", f"A {one} is {what} a {two}. {fix}".strip())
+    return ExpressionError(
+        "quantities of one kind", f"{with_article(one).capitalize()} is {what} {with_article(two)}. {fix}".strip()
+    )

@@ -83,7 +83,7 @@ GRADES: dict[str, Grade] = {
         _steel("S355", (40.0, 355.0, 490.0), (80.0, 335.0, 470.0)),
         _aluminium("EN AW-6082 T6", (5.0, 250.0, 290.0), (15.0, 260.0, 310.0), note="profile, bar", checked=False),
         _aluminium("EN AW-6061 T6", (20.0, 240.0, 260.0)),
-        _aluminium("EN AW-6005A T6", (5.0, 225.0, 270.0), (10.0, 215.0, 260.0), (25.0, 200.0, 250.0), note="open profile"),
+        _aluminium("EN AW-6005A T6", (5.0, 225.0, 270.0), (10.0, 215.0, 260.0), (25.0, 200.0, 250.0), note="open"),
         _aluminium("EN AW-6060 T6", (15.0, 140.0, 170.0)),
         _aluminium("EN AW-6063 T6", (25.0, 160.0, 195.0)),
         _aluminium("EN AW-5083 H111", (200.0, 110.0, 270.0), note="extruded"),

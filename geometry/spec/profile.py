@@ -103,7 +103,9 @@ def polygon_of(edge: Edge) -> Iterator[tuple[float, float]]:
 def centroid(section: Section) -> tuple[float, float]:
     """Centroid of the section from its plates and root radii, about the shape's origin."""
     if section.outline is not None:
-        loops = [[p for edge in loop for p in polygon_of(edge)] for loop in (section.outline.outer, *section.outline.inner)]
+        loops = [
+            [p for edge in loop for p in polygon_of(edge)] for loop in (section.outline.outer, *section.outline.inner)
+        ]
         return _weighted([_polygon(loop) for loop in loops if len(loop) > 2])
     d = dict(section.dims)
     pieces = [((b - a) * (e - c), (a + b) / 2.0, (c + e) / 2.0) for a, b, c, e in plates(section.shape, d)]

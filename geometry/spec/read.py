@@ -14,6 +14,7 @@ from geometry.problem import Problem, SpecError
 from geometry.spec.expression import nearest
 from geometry.spec.model import PartSpec
 from geometry.spec.resolve import resolve_and_check
+from geometry.spec.toml_errors import not_toml
 from geometry.spec.translate import read_leniently
 from geometry.spec.values import shown
 
@@ -40,7 +41,8 @@ def read_part(path: str | Path) -> Part:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
         line = data[: error.start].count(b"\n") + 1
-        raise _file_problem(file, f"a byte on line {line} that is not UTF-8", "UTF-8 text", "Save it as UTF-8") from None
+        given = f"a byte on line {line} that is not UTF-8"
+        raise _file_problem(file, given, "UTF-8 text", "Save it as UTF-8") from None
     return part_from_text(text, file.name)
 
 
@@ -60,7 +62,9 @@ def data_from_text(text: str, name: str) -> dict[str, Any]:
     try:
         return tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
-        raise SpecError([Problem(name, str(error), "TOML", "")]) from None
+        raise SpecError([not_toml(text, name, error)]) from None
+    except ValueError as error:  # a whole number of thousands of digits
+        raise SpecError([Problem(name, str(error).partition(";")[0], "numbers of ordinary size")]) from None
     except RecursionError:
         raise SpecError([Problem(name, "brackets nested too deeply", "TOML of a few levels")]) from None
 

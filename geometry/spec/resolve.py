@@ -92,8 +92,12 @@ def _at_thickness(values: Values, grade: Grade, thickness: float) -> Material:
         return grade.at(thickness)
     except ValueError:
         if thickness > grade.thickest:  # not NaN
-            values.problem("material", grade.name, f"a thickest plate of at most {grade.thickest:g} mm",
-                           f"The thickest plate is {thickness:.6g} mm: declare the material with values of its own")  # fmt: skip
+            values.problem(
+                "material",
+                grade.name,
+                f"a thickest plate of at most {grade.thickest:g} mm",
+                f"The thickest plate is {thickness:.6g} mm: declare the material by values of its own",
+            )
         return grade.at(grade.thickest)
 
 

@@ -22,7 +22,8 @@ from geometry.part import (
     Vector,
 )
 from geometry.spec.frame import line_direction, scaled
-from geometry.spec.model import LimitSpec, LimitsSpec, LoadSpec, OfKind, PartSpec, SupportSpec
+from geometry.spec.model import LimitSpec, LimitsSpec, LoadSpec, PartSpec, SupportSpec
+from geometry.spec.model_fields import OfKind
 from geometry.spec.resolve_member import Table, mark_of
 from geometry.spec.values import Values
 
@@ -131,7 +132,9 @@ def _line_load(table: Table, name: str, on: str, members: Mapping[str, Member]) 
 def _remote_point(table: Table, name: str, on: str) -> RemotePoint:
     spec: Any = table.spec
     if spec.coupling == "surface":
-        table.values.problem(table.at("coupling"), "surface", "rigid or average", "A point off the part needs a coupling")
+        table.values.problem(
+            table.at("coupling"), "surface", "rigid or average", "A point off the part needs a coupling"
+        )
     inertia = [0.0] * 6
     for i, text in enumerate(spec.inertia or ()):
         inertia[i] = table.values.number(f"{table.at('inertia')}[{i + 1}]", text, "mass moment of inertia")

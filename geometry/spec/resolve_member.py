@@ -10,12 +10,12 @@ from pydantic import BaseModel
 
 from geometry.part import Cut, EdgeRadius, Member, Patch, Section, Station
 from geometry.spec.drawn import outline_of
-from geometry.spec.model import (
+from geometry.spec.model_fields import OfKind
+from geometry.spec.model_member import (
     AcrossSpec,
     HoleSpec,
     MemberSpec,
     NotchSpec,
-    OfKind,
     OpeningSpec,
     OutlineSection,
     SlotSpec,
@@ -247,6 +247,7 @@ def _size(table: Table) -> tuple[float, float, float]:
 def _through_and_axis(table: Table, shape: str) -> tuple[Any, Any]:
     spec: Any = table.spec
     walls = WALLS[shape]
+    through: str
     if isinstance(spec, NotchSpec):
         follows = "y" if spec.edge in ("top", "bottom") else "z"
         through = spec.through or "all"

@@ -7,11 +7,12 @@ from __future__ import annotations
 
 import types
 from collections.abc import Iterator, Mapping, Sequence
-from typing import Annotated, Any, Literal, Union, get_args, get_origin
+from typing import Annotated, Any, Literal, Union, get_args, get_origin, get_type_hints
 
 from pydantic import BaseModel
 
-from geometry.spec.model import OfKind
+from geometry.spec.expression import with_article
+from geometry.spec.model_fields import OfKind
 
 Path = tuple[str | int, ...]
 """Keys and list indices (from 0) from the top of the spec."""
@@ -77,8 +78,7 @@ def step_into(annotation: Any, value: Any, step: str | int) -> Any:
         found = field_annotation(model, step)
         if found is not None:
             return found
-        extra = model.__dict__.get("__annotations__", {}).get("__pydantic_extra__")
-        return None if extra is None else extra_annotation(model)
+        return extra_annotation(model)
     wanted: type = list if isinstance(step, int) else dict
     for option in alternatives(annotation):
         if get_origin(option) is wanted:
@@ -88,8 +88,6 @@ def step_into(annotation: Any, value: Any, step: str | int) -> Any:
 
 def extra_annotation(model: type[BaseModel]) -> Any:
     """What the free words of a table hold, or None."""
-    from typing import get_type_hints
-
     if model.model_config.get("extra") != "allow":
         return None
     return get_args(get_type_hints(model, include_extras=True)["__pydantic_extra__"])[-1]
@@ -119,7 +117,7 @@ def described(annotation: Any) -> str:
     if mark is not None:
         limits = f" {mark.range}" if mark.range else ""
         if mark.kind.unit:
-            return f'a {mark.word}{limits} with its unit, as text: "{mark.kind.example}"'
+            return f'{with_article(mark.word)}{limits} with its unit, as text: "{mark.kind.example}"'
         return f"a number{limits}"
     return " or ".join(dict.fromkeys(filter(None, map(_described_type, alternatives(annotation)))))
 
@@ -131,9 +129,12 @@ def _described_type(option: Any) -> str:
     if origin is list:
         item = get_args(option)[0]
         mark = mark_in(item)
-        return f'a list of {mark.word} values, such as ["{mark.kind.example}", ...]' if mark else "a list"
+        if mark:
+            return f'a list of {mark.word} values, such as ["{mark.kind.example}", ...]'
+        return f"a list of {', '.join(get_args(item))}" if get_origin(item) is Literal else "a list"
     if origin is dict:
-        return "a table"
+        key = get_args(option)[0]
+        return f"a table of {', '.join(get_args(key))} = value" if get_origin(key) is Literal else "a table"
     if isinstance(option, type) and issubclass(option, BaseModel):
         return "a table of " + ", ".join(words_of(option))
     return {str: "text", float: "a number", int: "a whole number"}.get(option, "")

@@ -12,8 +12,20 @@ from typing import Any
 
 from geometry.part import Vector
 from geometry.problem import Problem
-from geometry.spec.expression import FUNCTIONS, NAME, ExpressionError, evaluate, evaluate_as, names_in, nearest
-from geometry.spec.model import OfKind
+from geometry.spec.expression import (
+    COMMON_UNITS,
+    FUNCTIONS,
+    NAME,
+    ExpressionError,
+    UnknownUnitError,
+    evaluate,
+    evaluate_as,
+    names_in,
+    nearest,
+    tokens_of,
+    with_article,
+)
+from geometry.spec.model_fields import OfKind
 from geometry.spec.quantity import Quantity
 
 LONGEST_GIVEN = 80
@@ -51,16 +63,16 @@ class Values:
         self._broken: set[str] = set()
         self._read_parameters(parameters)
 
-    def problem(self, path: str, given: Any, allowed: str, fix: str = "") -> None:
-        """Keep one mistake (once)."""
-        found = Problem(path, shown(given), allowed, fix)
+    def problem(self, path: str, given: str, allowed: str, fix: str = "") -> None:
+        """Keep one mistake (once). `given` is in words; quote what was written with `shown`."""
+        found = Problem(path, given, allowed, fix)
         if found not in self.problems:
             self.problems.append(found)
 
     def unknown(self, path: str, given: str, known: Sequence[str] | Mapping[str, object], what: str) -> None:
         """Keep the mistake of a name that does not exist."""
         near = nearest(given, list(known))
-        self.problem(path, given, f"{what}: {listed(known)}", f'Did you mean "{near}"?' if near else "")
+        self.problem(path, shown(given), f"{what}: {listed(known)}", f'Did you mean "{near}"?' if near else "")
 
     def number(self, path: str, text: Any, mark: OfKind | str) -> float:
         """Value of `text` in the base unit of its kind, or NaN after keeping a problem."""
@@ -68,17 +80,17 @@ class Values:
         if self.lenient and text == UNREADABLE:
             return math.nan
         if isinstance(text, bool) or not isinstance(text, (str, float, int)):
-            self.problem(path, text, f'a {mark.word}, such as "{mark.kind.example}"')
+            self.problem(path, shown(text), f'{with_article(mark.word)}, such as "{mark.kind.example}"')
             return math.nan
         if isinstance(text, str):
             value = self._evaluate(path, text, mark)
         elif mark.word == "number":
             value = _as_float(text)
             if not math.isfinite(value):
-                self.problem(path, text, "a finite number")
+                self.problem(path, shown(text), "a finite number")
         else:
             unit = mark.kind.unit
-            self.problem(path, text, f'a {mark.word} with its unit, as text: "{mark.kind.example}"',
+            self.problem(path, shown(text), f'{with_article(mark.word)} with its unit, as text: "{mark.kind.example}"',
                          f'Add the unit: "{text} {unit}"')  # fmt: skip
             return math.nan
         outside = (
@@ -87,7 +99,7 @@ class Values:
             or (mark.most is not None and value > mark.most)
         )
         if outside:
-            self.problem(path, _with_value(text, value, mark.kind.unit), f"a {mark.word} {mark.range}")
+            self.problem(path, _with_value(text, value, mark.kind.unit), f"{with_article(mark.word)} {mark.range}")
             return math.nan
         return value if math.isfinite(value) else math.nan
 
@@ -111,8 +123,11 @@ class Values:
             if self._broken.intersection(names_in(text)):
                 return math.nan  # the parameter's own problem has been kept already
             return evaluate_as(text, mark.kind, self.scope)
+        except UnknownUnitError as error:
+            error = UnknownUnitError(error.number, error.word, mark.kind.units or COMMON_UNITS)
+            self.problem(path, shown(text), error.allowed, error.fix)
         except ExpressionError as error:
-            self.problem(path, text, error.allowed, error.fix)
+            self.problem(path, shown(text), error.allowed, error.fix)
         return math.nan
 
     def _read_parameters(self, parameters: Mapping[str, Any]) -> None:
@@ -126,13 +141,13 @@ class Values:
                 self._broken.add(name)
                 continue
             if not NAME.fullmatch(name) or name in FUNCTIONS:
-                self.problem(path, name, "a name of letters, digits and _, not starting with a digit",
+                self.problem(path, shown(name), "a name of letters, digits and _, not starting with a digit",
                              f"{name} is a function" if name in FUNCTIONS else "")  # fmt: skip
                 self._broken.add(name)
             try:
                 needs[name] = names_in(text) if isinstance(text, str) else ()
             except ExpressionError as error:
-                self.problem(path, text, error.allowed, error.fix)
+                self.problem(path, shown(text), error.allowed, error.fix)
                 self._broken.add(name)
         for name in needs:
             self._read_parameter(name, parameters, needs)
@@ -148,8 +163,8 @@ class Values:
             waiting = [n for n in needs[top] if n in needs and n not in self.scope and n not in self._broken]
             again = [n for n in waiting if n in stack]
             if again:
-                ring = stack[stack.index(again[0]):]
-                self.problem(f"parameters.{top}", texts[top], "parameters that do not depend on themselves",
+                ring = stack[stack.index(again[0]) :]
+                self.problem(f"parameters.{top}", shown(texts[top]), "parameters that do not depend on themselves",
                              "They go round: " + " -> ".join([*ring, again[0]]))  # fmt: skip
                 self._broken.update(ring)
             elif waiting:
@@ -167,7 +182,7 @@ class Values:
             if math.isfinite(value) and not isinstance(text, bool):
                 self.scope[name] = Quantity(value)
                 return
-            self.problem(path, text, 'a finite number, or a quantity as text: "12 mm"')
+            self.problem(path, shown(text), 'a finite number, or a quantity as text: "12 mm"')
         else:
             try:
                 self.scope[name] = evaluate(text, self.scope)
@@ -175,7 +190,7 @@ class Values:
             except ExpressionError as error:
                 unknown = [n for n in names_in(text) if n not in known]
                 near = nearest(unknown[0], [n for n in known if n != name]) if unknown else ""
-                self.problem(path, text, error.allowed, f"Did you mean {near}?" if near else error.fix)
+                self.problem(path, shown(text), error.allowed, f"Did you mean {near}?" if near else error.fix)
         self._broken.add(name)
 
 
@@ -187,7 +202,7 @@ def _as_float(value: float | int) -> float:
 
 
 def _with_value(text: Any, value: float, unit: str) -> str:
-    """What was given, and what it comes to when that is not plain."""
-    if isinstance(text, str) and any(c in text for c in "+-*/(") or (isinstance(text, str) and NAME.match(text)):
-        return f"{text} = {value:.6g} {unit}".rstrip()
-    return str(text)
+    """What was given, and what it comes to when that is arithmetic."""
+    if isinstance(text, str) and any(t.sort == "name" for t in tokens_of(text)):
+        return f"{shown(text)}, which is {value:.6g} {unit}".rstrip()
+    return shown(text)
