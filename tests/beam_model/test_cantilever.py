@@ -53,7 +53,8 @@ def test_shear_share_of_the_energy(part, solve):
 
 def test_two_directions(part, solve):
     """B24: 1000 N at 30 degrees from the strong plane, L 1000."""
-    r = solve(part(length=1000.0, loads=[RegionLoad("tip", "arm.end", force=(0.0, 500.0, -866.0254037844))]), shear=False)
+    tip = RegionLoad("tip", "arm.end", force=(0.0, 500.0, -866.0254037844))
+    r = solve(part(length=1000.0, loads=[tip]), shear=False)
     assert r("arm.end", "displacement", "z") == pytest.approx(-0.329914, rel=2e-6)
     assert r("arm.end", "displacement", "y") == pytest.approx(0.761905, rel=2e-6)
     # the corner: 22.3923 = top + the share of the side
