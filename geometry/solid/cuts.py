@@ -116,9 +116,9 @@ def tools_of(cut: Cut, member: Member, pieces: Sequence[Piece]) -> list[Tool]:
         return [whole]
     x0, x1, _, _ = whole.box
     places = _places(pieces, max(x0, 0.0), min(x1, length))
-    found = []
+    found: list[Tool] = []
     for k, first in enumerate(walls_through(shape, places[0][0].stretch.at(places[0][1]), cut.through, cut.axis, what)):
-        lows, highs, thick = [], [], []
+        lows, highs, thick, past_free = [], [], [], 0.0
         for piece, x in places:
             wall = walls_through(shape, piece.stretch.at(x), cut.through, cut.axis, what)[k]
             oy, oz = piece.origin(x)
@@ -127,7 +127,13 @@ def tools_of(cut: Cut, member: Member, pieces: Sequence[Piece]) -> list[Tool]:
             highs.append(wall.high + shift)
             thick.append(wall.thickness)
             for a, b in inside(loop, 0, min(max(x, x0 + 1e-6), x1 - 1e-6)):
-                _check_room(what, cut, wall.name, (a - across, b - across), wall.free, wall.barred)
+                past_free = max(past_free, wall.free[0] - (a - across), (b - across) - wall.free[1])
+                _check_behind(what, wall.name, (a - across, b - across), wall.barred)
+        if past_free > 1e-6:
+            raise SolidError(
+                f"{what}: it reaches {past_free:.3g} mm past the {first.name} into the wall beside it; make it smaller, "
+                "move it, or cut through all."
+            )
         past = 1e-3 * min(thick)
         found.append(Tool(cut, first.name, cut.axis, loop, min(lows) - past, max(highs) + past, float(np.mean(thick))))
     return found
@@ -147,17 +153,8 @@ def _places(pieces: Sequence[Piece], x0: float, x1: float) -> list[tuple[Piece, 
     return found
 
 
-def _check_room(
-    what: str, cut: Cut, wall: str, span: tuple[float, float], free: tuple[float, float], barred: tuple[float, float] | None
-) -> None:
-    tiny = 1e-9
-    if span[0] < free[0] - tiny or span[1] > free[1] + tiny:
-        short = max(free[0] - span[0], span[1] - free[1])
-        raise SolidError(
-            f"{what}: it reaches {short:.4g} mm past the {wall} into the wall beside it; make it smaller, move it, "
-            "or cut through all."
-        )
-    if barred is not None and span[0] < barred[1] - tiny and span[1] > barred[0] + tiny:
+def _check_behind(what: str, wall: str, span: tuple[float, float], barred: tuple[float, float] | None) -> None:
+    if barred is not None and span[0] < barred[1] - 1e-6 and span[1] > barred[0] + 1e-6:
         raise SolidError(f"{what}: it meets the wall that stands behind the {wall}; move it aside or cut through all.")
 
 

@@ -11,6 +11,7 @@ import math
 from collections.abc import Sequence
 from typing import Any
 
+from OCP.BRep import BRep_Builder
 from OCP.BRepBuilderAPI import (
     BRepBuilderAPI_MakeEdge,
     BRepBuilderAPI_MakeFace,
@@ -20,16 +21,15 @@ from OCP.BRepBuilderAPI import (
     BRepBuilderAPI_Sewing,
 )
 from OCP.BRepFill import BRepFill
-from OCP.BRepLib import BRepLib
 from OCP.BRepPrimAPI import BRepPrimAPI_MakePrism, BRepPrimAPI_MakeRevol
 from OCP.gp import gp_Ax1, gp_Ax2, gp_Circ, gp_Dir, gp_Pln, gp_Pnt, gp_Vec
 from OCP.TopAbs import TopAbs_SHELL
 from OCP.TopExp import TopExp_Explorer
-from OCP.TopoDS import TopoDS
+from OCP.TopoDS import TopoDS, TopoDS_Shell
 
 from geometry.outline import Arc, Edge, Line, Point
 from geometry.problem import SolidError
-from geometry.solid.kernel import one_solid
+from geometry.solid.kernel import faces_of, one_solid, volume_of
 from geometry.solid.profile import Profile, Side
 
 TINY = 1e-7
@@ -152,7 +152,8 @@ def lofted(sections: Sequence[tuple[float, Profile]], what: str) -> Any:
         The sides do not match, or the faces do not close to one valid solid.
     """
     sewing = BRepBuilderAPI_Sewing(1e-6)
-    sewing.Add(section_face(sections[0][1], sections[0][0]))
+    # The first cap looks outwards (-x); sewing turns the other faces to agree with it.
+    sewing.Add(section_face(sections[0][1], sections[0][0]).Reversed())
     for (xa, pa), (xb, pb) in zip(sections[:-1], sections[1:], strict=True):
         for loop_a, loop_b in zip(pa.loops, pb.loops, strict=True):
             for a, b in _matched(loop_a, loop_b, xa, xb):
@@ -164,9 +165,20 @@ def lofted(sections: Sequence[tuple[float, Profile]], what: str) -> Any:
     explorer = TopExp_Explorer(sewing.SewedShape(), TopAbs_SHELL)
     if not explorer.More() or sewing.NbFreeEdges():
         raise SolidError(f"{what}: its faces do not close ({sewing.NbFreeEdges()} free edges).")
-    solid = BRepBuilderAPI_MakeSolid(TopoDS.Shell_s(explorer.Current())).Solid()
-    BRepLib.OrientClosedSolid_s(solid)
-    return one_solid(solid, what)
+    return one_solid(_outward(explorer.Current()), what)
+
+
+def _outward(shell: Any) -> Any:
+    """A solid of `shell` with its faces turned outwards one by one: the fillet maker fails on a reversed solid."""
+    solid = BRepBuilderAPI_MakeSolid(TopoDS.Shell_s(shell)).Solid()
+    if volume_of(solid)[0] > 0.0:
+        return solid
+    turned, builder = TopoDS_Shell(), BRep_Builder()
+    builder.MakeShell(turned)
+    for face in faces_of(shell):
+        builder.Add(turned, face.Reversed())
+    turned.Closed(True)
+    return BRepBuilderAPI_MakeSolid(turned).Solid()
 
 
 def _matched(a: tuple[Side, ...], b: tuple[Side, ...], xa: float, xb: float) -> list[tuple[Side, Side]]:
