@@ -66,7 +66,7 @@ def test_no_file_names(what: str) -> None:
 
 
 def test_every_folder_of_code_is_a_package() -> None:
-    """A folder without `__init__.py` would be left out of the distribution, without a word."""
+    """Without `__init__.py`, Python would look for further halves of the package everywhere on its path."""
     folders = {p.parent for name in PACKAGES for p in (ROOT / name).rglob("*.py")}
     packages = folders | {g for f in folders for g in f.parents if ROOT in g.parents}
     assert sorted(str(f.relative_to(ROOT)) for f in packages if not (f / "__init__.py").exists()) == []
