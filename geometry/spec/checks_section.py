@@ -11,7 +11,7 @@ from geometry.spec.profile import bounds, dims_at, knots, length_of
 from geometry.spec.values import Values
 
 Dims = dict[str, float]
-LEAST_LENGTH, GREATEST_LENGTH = 1e-3, 1e6  # mm: a micrometre to a kilometre, beyond that a unit has slipped
+LEAST_LENGTH = 1e-3  # mm; less is a slip of a unit
 LEAST_ANGLE = 1e-3  # rad between `up` and the line; less makes the axes arbitrary
 
 
@@ -32,16 +32,6 @@ def check_member(values: Values, member: Member) -> None:
                         f"{where}.{name}", f"{dims[name]:.6g} mm", f"less than {limit}: {max(most, 0.0):.6g} mm here",
                         why.format(most=max(most, 0.0)),
                     )  # fmt: skip
-            for name in dims:
-                if name not in ("corner_radius", "inner_radius", "root_radius", "toe_radius"):
-                    _check_size(values, f"{where}.{name}", dims[name])
-
-
-def _check_size(values: Values, path: str, size: float) -> None:
-    if size < LEAST_LENGTH or size > GREATEST_LENGTH:
-        values.problem(
-            path, f"{size:.6g} mm", f"from {LEAST_LENGTH:g} mm to {GREATEST_LENGTH:g} mm", "Look at the unit"
-        )
 
 
 def _check_line(values: Values, path: str, member: Member) -> None:
@@ -51,7 +41,10 @@ def _check_line(values: Values, path: str, member: Member) -> None:
         return
     if math.isnan(length):
         return
-    _check_size(values, f"{path}.to", length)
+    if length < LEAST_LENGTH:
+        values.problem(
+            f"{path}.to", f"a length of {length:.6g} mm", f"at least {LEAST_LENGTH:g} mm", "Look at the unit"
+        )
     up = math.sqrt(sum(c * c for c in member.up))
     if up == 0.0:
         values.problem(f"{path}.up", "0, 0, 0", "a direction")

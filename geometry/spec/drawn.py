@@ -6,7 +6,7 @@ import math
 from collections.abc import Sequence
 
 from geometry.outline import Arc, Edge, Line, Outline, Point
-from geometry.spec.model_fields import OfKind
+from geometry.spec.model_fields import RADIUS, SIZE
 from geometry.spec.model_member import OutlineSection
 from geometry.spec.values import Values
 
@@ -22,7 +22,7 @@ def outline_of(values: Values, path: str, spec: OutlineSection) -> Outline | Non
     for i, circle in enumerate(spec.circles, 1):
         at = f"{path}.circles[{i}]"
         y, z = values.number(f"{at}.y", circle.y, "length"), values.number(f"{at}.z", circle.z, "length")
-        radius = values.number(f"{at}.diameter", circle.diameter, OfKind("length", above=0.0)) / 2.0
+        radius = values.number(f"{at}.diameter", circle.diameter, SIZE) / 2.0
         left, right = (y - radius, z), (y + radius, z)
         inner.append((Arc(left, right, (y, z), ccw=False), Arc(right, left, (y, z), ccw=False)))
     return Outline(outer, tuple(inner)) if len(values.problems) == before else None
@@ -32,7 +32,7 @@ def _loop(values: Values, path: str, texts: Sequence[Sequence[str]], ccw: bool) 
     corners: list[Corner] = []
     for i, text in enumerate(texts, 1):
         y, z = (values.number(f"{path}[{i}][{j}]", t, "length") for j, t in enumerate(text[:2], 1))
-        radius = values.number(f"{path}[{i}][3]", text[2], OfKind("length", least=0.0)) if len(text) > 2 else 0.0
+        radius = values.number(f"{path}[{i}][3]", text[2], RADIUS) if len(text) > 2 else 0.0
         corners.append((y, z, radius))
     if any(math.isnan(v) for corner in corners for v in corner):
         return ()

@@ -18,6 +18,8 @@ class OfKind:
     above: float | None = None
     least: float | None = None
     most: float | None = None
+    finest: float = 0.0
+    """Least size other than 0; smaller ones are slips of a unit, and break geometry kernels."""
 
     @property
     def kind(self) -> Kind:
@@ -37,11 +39,14 @@ class OfKind:
         return " and ".join(words)
 
 
+SIZE = OfKind("length", above=0.0, finest=1e-3)
+RADIUS = OfKind("length", least=0.0, finest=1e-3)
+
 Text = Annotated[str, Strict()]
 Real = Annotated[float, Strict()]
 Length = Annotated[Text, OfKind("length")]
-Size = Annotated[Text, OfKind("length", above=0.0)]
-Radius = Annotated[Text, OfKind("length", least=0.0)]
+Size = Annotated[Text, SIZE]
+Radius = Annotated[Text, RADIUS]
 Angle = Annotated[Text, OfKind("angle")]
 Force = Annotated[Text, OfKind("force")]
 Moment = Annotated[Text, OfKind("moment")]

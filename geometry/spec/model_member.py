@@ -12,7 +12,7 @@ from geometry.spec.model_fields import Angle, Count, DirectionVector, Length, Of
 class RectangleSection(Words):
     """Solid rectangle."""
 
-    shape: Literal["rectangle"]
+    shape: Literal["rectangle"] = Field(description="the shape")
     depth: Size = Field(description="along z")
     width: Size = Field(description="along y")
     corner_radius: Radius = Field("0 mm", description="radius of its four corners")
@@ -21,14 +21,14 @@ class RectangleSection(Words):
 class RoundSection(Words):
     """Solid round bar."""
 
-    shape: Literal["round"]
+    shape: Literal["round"] = Field(description="the shape")
     diameter: Size = Field(description="diameter")
 
 
 class TubeSection(Words):
     """Round tube."""
 
-    shape: Literal["tube"]
+    shape: Literal["tube"] = Field(description="the shape")
     diameter: Size = Field(description="outside diameter")
     wall: Size = Field(description="wall thickness")
 
@@ -36,7 +36,7 @@ class TubeSection(Words):
 class BoxSection(Words):
     """Rectangular tube."""
 
-    shape: Literal["box"]
+    shape: Literal["box"] = Field(description="the shape")
     depth: Size = Field(description="outside, along z")
     width: Size = Field(description="outside, along y")
     wall: Size = Field(description="wall thickness")
@@ -47,7 +47,7 @@ class BoxSection(Words):
 class ISection(Words):
     """I section, with equal or unequal flanges."""
 
-    shape: Literal["I"]
+    shape: Literal["I"] = Field(description="the shape")
     depth: Size = Field(description="overall, along z")
     width: Size = Field(description="of the top flange, along y")
     web: Size = Field(description="web thickness")
@@ -60,7 +60,7 @@ class ISection(Words):
 class ChannelSection(Words):
     """Channel: web on the left, flanges towards +y."""
 
-    shape: Literal["channel"]
+    shape: Literal["channel"] = Field(description="the shape")
     depth: Size = Field(description="overall, along z")
     width: Size = Field(description="of the flanges, along y, from the back of the web")
     web: Size = Field(description="web thickness")
@@ -71,7 +71,7 @@ class ChannelSection(Words):
 class AngleSection(Words):
     """Angle: upright leg on the left, the other leg at the bottom."""
 
-    shape: Literal["angle"]
+    shape: Literal["angle"] = Field(description="the shape")
     depth: Size = Field(description="of the upright leg, along z")
     width: Size = Field(description="of the bottom leg, along y")
     thickness: Size = Field(description="of both legs")
@@ -82,7 +82,7 @@ class AngleSection(Words):
 class TeeSection(Words):
     """Tee: flange on top."""
 
-    shape: Literal["tee"]
+    shape: Literal["tee"] = Field(description="the shape")
     depth: Size = Field(description="overall, along z")
     width: Size = Field(description="of the flange, along y")
     web: Size = Field(description="web thickness")
@@ -104,7 +104,7 @@ class Circle(Words):
 class OutlineSection(Words):
     """A section drawn by its corners: each ``[y, z]``, or ``[y, z, radius]`` for a rounded one."""
 
-    shape: Literal["outline"]
+    shape: Literal["outline"] = Field(description="the shape")
     outer: Annotated[list[Corner], Field(min_length=3, max_length=500)] = Field(
         description="corners of the outer loop, in order, either way round"
     )

@@ -30,7 +30,7 @@ def plate_thickness(section: Section) -> float:
             return max(d["web"], d["flange"])
         case "angle":
             return d["thickness"]
-    if section.outline is None:
+    if section.outline is None or not section.outline.outer:
         return float("nan")
     points = [edge.start for edge in section.outline.outer]
     return min(max(p[k] for p in points) - min(p[k] for p in points) for k in (0, 1))

@@ -84,7 +84,8 @@ def resolve_load(values: Values, name: str, spec: LoadSpec, members: Mapping[str
         return None
     on = spec.on or ""
     if kind == "acceleration":
-        return BodyLoad(name, scaled(table.vector("acceleration"), -1.0))
+        x, y, z = table.vector("acceleration")
+        return BodyLoad(name, (0.0 - x, 0.0 - y, 0.0 - z))
     if kind == "temperature_change":
         return TemperatureLoad(name, table.number("temperature_change"))
     if kind == "pressure":

@@ -4,15 +4,17 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
+from dataclasses import replace
 from typing import Any
 
 from pydantic import BaseModel
 
 from geometry.part import Cut, EdgeRadius, Member, Patch, Section, Station
 from geometry.spec.drawn import outline_of
-from geometry.spec.model_fields import OfKind
+from geometry.spec.model_fields import RADIUS, SIZE, OfKind
 from geometry.spec.model_member import (
     AcrossSpec,
+    BoxSection,
     HoleSpec,
     MemberSpec,
     NotchSpec,
@@ -20,6 +22,7 @@ from geometry.spec.model_member import (
     OutlineSection,
     SlotSpec,
 )
+from geometry.spec.profile import dims_at
 from geometry.spec.values import Values
 
 DIMS: dict[str, tuple[str, ...]] = {
@@ -102,7 +105,7 @@ def resolve_member(values: Values, name: str, spec: MemberSpec) -> Member:
     start, end = table.vector("start"), table.vector("end")
     length = math.dist(start, end)
     section = _section(values, table.at("section"), spec)
-    return Member(
+    member = Member(
         name=name,
         start=start,
         end=end,
@@ -119,6 +122,23 @@ def resolve_member(values: Values, name: str, spec: MemberSpec) -> Member:
         ),
         patches=tuple(_patch(values, f"{table.path}.patches.{key}", key, spec) for key in spec.patches),
     )
+    follows = isinstance(spec.section, BoxSection) and spec.section.inner_radius is None
+    return _with_inner_radii(member) if follows else member
+
+
+def _with_inner_radii(member: Member) -> Member:
+    """The member with the inner radius of a box that follows wall and outer radius at every station that names them."""
+    if any("inner_radius" in station.dims for station in member.stations):
+        return member
+    stations = []
+    for i, station in enumerate(member.stations):
+        dims = dict(station.dims)
+        if {"wall", "corner_radius"} & set(dims):
+            first_of_step = i + 1 < len(member.stations) and member.stations[i + 1].at == station.at
+            there = dims_at(member, station.at, before=first_of_step)
+            dims["inner_radius"] = max(there["corner_radius"] - there["wall"], 0.0)
+        stations.append(replace(station, dims=dims))
+    return replace(member, stations=tuple(stations))
 
 
 def _default_up(start: tuple[float, ...], end: tuple[float, ...]) -> tuple[float, float, float]:
@@ -153,17 +173,13 @@ def _dims(values: Values, path: str, shape: str, texts: dict[str, Any]) -> dict[
         if name not in DIMS[shape]:
             values.unknown(f"{path}.{name}", name, DIMS[shape], f"a dimension of the shape {shape}")
             continue
-        mark = OfKind("length", least=0.0) if name in RADII else OfKind("length", above=0.0)
+        mark = RADIUS if name in RADII else SIZE
         dims[name] = values.number(f"{path}.{name}", text, mark)
     return dims
 
 
 def _follow(shape: str, section: Any, named: set[str], dims: dict[str, float]) -> None:
-    """Dimensions that follow another by default follow it at the other stations too.
-
-    An I section whose bottom flange is not named has equal flanges all along; a box whose inner radius
-    is not named keeps ``corner_radius - wall``.
-    """
+    """An I section whose bottom flange is not named has equal flanges at the other stations too."""
     if shape == "I":
         for bottom, top in (("bottom_width", "width"), ("bottom_flange", "flange")):
             if getattr(section, bottom) is None and bottom not in named and top in dims:

@@ -71,7 +71,9 @@ def _by_path(errors: list[ErrorDetails], data: Any) -> dict[Path, list[ErrorDeta
             elif last and error["type"] == "missing":
                 path.append(step)
         found.setdefault(tuple(path), []).append(error)
-    return found
+    # A list of freedoms with a wrong word is also "no table" to the model: only what lies deeper is the mistake.
+    above = {path[:k] for path in found for k in range(len(path))}
+    return {path: errors for path, errors in found.items() if path not in above}
 
 
 def _problem(path: Path, errors: list[ErrorDetails], data: Any) -> Problem:
@@ -188,8 +190,8 @@ def _repair(data: Any, path: Path, errors: list[ErrorDetails], removed: set[str]
         removed.add(str(last))
     elif "missing" in kinds or isinstance(last, int):
         _leave_out(data, path[:-1], removed)
-    else:
-        del parent[last]
+    elif isinstance(parent, dict):
+        parent.pop(last, None)
         removed.add(written(path[:-1]) if "extra_forbidden" in kinds else written(path))
 
 

@@ -30,6 +30,8 @@ from geometry.spec.quantity import Quantity
 
 LONGEST_GIVEN = 80
 MOST_PARAMETERS = 500
+GREATEST = {"length": 1e6, "angle": 1e3}
+"""Greatest size in base units (a kilometre); of all other kinds 1e30, which no arithmetic here overflows."""
 UNREADABLE = "\0unreadable"
 """Stands for a quantity whose mistake has been reported already; reads as NaN in a lenient pass only."""
 
@@ -100,6 +102,22 @@ class Values:
         )
         if outside:
             self.problem(path, _with_value(text, value, mark.kind.unit), f"{with_article(mark.word)} {mark.range}")
+            return math.nan
+        if 0.0 < abs(value) < mark.finest:
+            self.problem(
+                path,
+                _with_value(text, value, mark.kind.unit),
+                f"at least {mark.finest:g} {mark.kind.unit}",
+                "Look at the unit",
+            )
+            return math.nan
+        if abs(value) > GREATEST.get(mark.word, 1e30):
+            self.problem(
+                path,
+                _with_value(text, value, mark.kind.unit),
+                f"at most {GREATEST.get(mark.word, 1e30):g} {mark.kind.unit}".rstrip(),
+                "Look at the unit",
+            )
             return math.nan
         return value if math.isfinite(value) else math.nan
 
