@@ -80,7 +80,7 @@ def _finish(axes: Any, text: str, largest: float, factor: float, scale: float) -
     axes.axhline(0.0, color="#888888", lw=0.8, zorder=1)
     axes.set_title(text, loc="left", fontsize=11)
     axes.margins(x=0.02, y=0.12)
-    if scale > 0 and largest < 1e-3 * scale:
+    if scale > 0 and largest < 3e-3 * scale:
         axes.set_ylim(-0.02 * factor * scale, 0.02 * factor * scale)
         axes.text(0.5, 0.8, "next to nothing", transform=axes.transAxes, ha="center", color=frame.NEUTRAL, fontsize=10)
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
@@ -87,7 +88,7 @@ def stress_picture(path: Path, part: Part, mesh: NamedMesh, case: str, von_mises
         frame.save(figure, path)
 
 
-def _mark(axes: object, canvas: Canvas, spot: Floats, text: str) -> None:
+def _mark(axes: Any, canvas: Canvas, spot: Floats, text: str) -> None:
     """Number a point, if it is not hidden."""
     column, row, depth = canvas.to_pixels(spot[None])[0]
     r, c = round(float(row)), round(float(column))
@@ -95,7 +96,10 @@ def _mark(axes: object, canvas: Canvas, spot: Floats, text: str) -> None:
     near = near[np.isfinite(near)]
     if near.size == 0 or depth > near.max() + 4 * canvas.pixel:
         return
-    axes.annotate(  # type: ignore[attr-defined]
+    from matplotlib.patheffects import withStroke
+
+    axes.annotate(
         text, spot[:2], (14, 14), textcoords="offset points", fontsize=10, ha="center", va="center", zorder=6,
         bbox={"boxstyle": "circle,pad=0.25", "fc": "white", "ec": "#222222", "lw": 0.9},
-        arrowprops={"arrowstyle": "-", "color": "#222222", "lw": 0.9, "shrinkB": 0})
+        arrowprops={"arrowstyle": "-", "color": "#222222", "lw": 0.9, "shrinkB": 0,
+                    "path_effects": [withStroke(linewidth=2.5, foreground="white")]})

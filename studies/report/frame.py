@@ -25,7 +25,7 @@ STYLE = {
     "svg.hashsalt": "haunch",
 }
 
-PIXELS = 1700
+PIXELS = 1500
 DPI = 150
 
 

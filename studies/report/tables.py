@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from fem.figure import FigureKey
@@ -15,7 +15,7 @@ MARKS: dict[str, str] = {
 }
 """A mark beside each word, for those who skim."""
 
-READABLE = {"N mm": (1e-3, "N m"), "t": (1e3, "kg"), "rad": (1e3, "mrad")}
+READABLE = {"N mm": (1e-3, "N m"), "t": (1e3, "kg"), "rad": (1e3, "mrad"), "1": (1.0, "")}
 """Units of the result -> factor and the unit a person reads."""
 
 ORDER: tuple[JudgementWord, ...] = ("suspicious", "explained", "load check", "no beam value", "agrees")
@@ -99,28 +99,26 @@ def headlines(result: CheckResult, case: str) -> list[Pair]:
     with the largest value of each section force, moment and stress.
     """
     ours = [pair for pair in result.pairs if pair.key.case == case]
+    largest: dict[str, float] = {}
+    for pair in ours:
+        largest[pair.key.quantity] = max(largest.get(pair.key.quantity, 0.0), _size(pair))
     rows = [pair for pair in ours if "@" not in pair.key.place or pair.key.quantity == "notch_stress"]
     for quantity in SECTION_KINDS:
-        rows += _largest(pair for pair in ours if pair.key.quantity == quantity)
-    return [pair for pair in rows if _matters(pair)]
+        rows += _largest([pair for pair in ours if pair.key.quantity == quantity])
+    return [pair for pair in rows if pair.judgement in ("suspicious", "explained")
+            or _size(pair) > 1e-3 * largest[pair.key.quantity]]
 
 
-def _largest(pairs: Iterable[Pair]) -> list[Pair]:
+def _largest(pairs: Sequence[Pair]) -> list[Pair]:
+    """The largest pair of each component, of those that the judge could compare when there are any."""
     best: dict[str, Pair] = {}
-    for pair in pairs:
-        size = _size(pair)
-        known = best.get(pair.key.component)
-        if known is None or size > _size(known):
-            best[pair.key.component] = pair
+    for pair in sorted(pairs, key=lambda pair: (pair.judgement == "no beam value", -_size(pair))):
+        best.setdefault(pair.key.component, pair)
     return list(best.values())
 
 
 def _size(pair: Pair) -> float:
     return max(abs(value) for value in (pair.solid, pair.beam, 0.0) if value is not None)
-
-
-def _matters(pair: Pair) -> bool:
-    return pair.judgement in ("suspicious", "explained") or _size(pair) > 1e-3 * pair.scale
 
 
 def suspicious(result: CheckResult) -> list[Pair]:

@@ -2,11 +2,15 @@
 
 from __future__ import annotations
 
+from types import SimpleNamespace
 from typing import Literal
 
 import numpy as np
 
 from fem.figure import Figure, FigureKey, Quantity, station_place
+from fem.solid import result as solid_result
+from fem.solid.result import SolidResult
+from geometry.named_solid import FaceMark, NamedSolid
 from geometry.part import (
     BodyLoad,
     Case,
@@ -21,6 +25,8 @@ from geometry.part import (
     Support,
 )
 from mesher.named_mesh import NamedMesh
+from studies.check.result import IndependentCheck, JudgementWord, LimitVerdict, Pair, PeakPlace
+from studies.check.run import Models
 
 Axes = Literal["global", "member"]
 L, WIDTH, DEPTH = 200.0, 20.0, 30.0
@@ -99,3 +105,47 @@ def fabricated_figures(part: Part, tip: float = -0.2, wobble: float = 0.0) -> tu
     add(f"{member}.end", "displacement", "z", tip, "mm")
     add("wall", "reaction_force", "z", force, "N")
     return (*figures, Figure(FigureKey("", "", "mass", ""), L * WIDTH * DEPTH * 7.85e-9 * (1 + wobble), "t"))
+
+
+def make_models(wobble: float = 0.001) -> Models:
+    """Both models of the cantilever, fabricated: a plausible field and figures, no solver."""
+    part, mesh = make_part(), make_mesh()
+    x, _, z = mesh.nodes
+    u = np.zeros((1, 3, mesh.nodes.shape[1]))
+    u[0, 2], u[0, 0] = -0.3 * (x / L) ** 2, 0.6 * x / L**2 * z
+    stress = np.zeros((1, 6, mesh.nodes.shape[1]))
+    stress[0, 0] = z * (L - x) / 100
+    von_mises = np.abs(stress[:, 0])
+    node = int(von_mises[0].argmax())
+    spot = (float(mesh.nodes[0, node]), float(mesh.nodes[1, node]), float(mesh.nodes[2, node]))
+    case = part.cases[0].name
+    value = float(von_mises.max())
+    solid = SolidResult(
+        (case,), mesh, u, stress, 0.01 * von_mises, von_mises, von_mises, stress[:, :3],
+        fabricated_figures(part, wobble=wobble),
+        (solid_result.PeakPlace(case, value, spot, node, ("arm.start",), (0,), False, "rim of a support", value),),
+        (solid_result.CaseStress(case, 0.9 * value, value, 355 / (0.9 * value), 355 / value),),
+        (solid_result.Denting(case, "arm.end", 1e-4),), np.zeros((1, 21, 1, 6)), L * WIDTH * DEPTH * 7.85e-9,
+        np.array([L / 2, 0.0, 0.0]), np.array([1.0]), np.array([1.0]),
+        (solid_result.Check("balance", 1e-12, 1e-6, True),),
+    )
+    marks = (FaceMark(1.0, (0.0, 0.0, 0.0), (0.0,) * 6),)
+    named = NamedSolid(b"brep", b"ISO-10303-21;", marks, {}, mesh.volume, 1.0, (0.0, 0.0, 0.0), mesh.volume)
+    return Models(part, named, mesh, SimpleNamespace(figures=fabricated_figures(part)), solid)  # type: ignore[arg-type]
+
+
+def make_judgement(models: Models) -> SimpleNamespace:
+    """A plain judgement: 2 % of the value for everything, one limit met."""
+    beam = {figure.key: figure.value for figure in models.beam.figures}
+    pairs = []
+    for figure in models.solid.figures:
+        difference = figure.value - beam[figure.key]
+        band = 0.02 * abs(beam[figure.key]) + 1e-12
+        word: JudgementWord = "agrees" if abs(difference) <= band else "suspicious"
+        pairs.append(Pair(figure.key, figure.value, beam[figure.key], figure.unit, difference, abs(figure.value), band,
+                          (), word, "" if word == "agrees" else "the load"))
+    limit = LimitVerdict("deflection", "deflection", 0.5, 0.2, "mm", "carrying", "arm.end", "met")
+    peaks = tuple(PeakPlace(p.case, "arm.start", "support", p.position, p.value, None, False, p.reason)
+                  for p in models.solid.peaks)
+    return SimpleNamespace(pairs=tuple(pairs), limits=(limit,), checks=(IndependentCheck("b", 0.0, 1.0, True, "t"),),
+                           peaks=peaks, cautions=("A test.",))
