@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import importlib.util
+import json
 import re
 import shlex
 import subprocess
@@ -132,11 +133,9 @@ def reference_writer() -> ModuleType:
 
 def test_the_reference_has_not_drifted() -> None:
     """Write it anew with ``python tests/repo/write_reference.py``."""
-    import geometry.spec
+    from geometry.spec import spec_reference
 
-    if not hasattr(geometry.spec, "spec_reference"):
-        pytest.skip("geometry.spec.spec_reference is not there yet")
-    assert reference_writer().with_reference(README, geometry.spec.spec_reference()) == README
+    assert reference_writer().with_reference(README, spec_reference()) == README
 
 
 def test_the_reference_writer_moves_headings_but_not_code() -> None:
@@ -147,6 +146,10 @@ def test_the_reference_writer_moves_headings_but_not_code() -> None:
 @pytest.mark.parametrize("example", sorted((ROOT / "studies" / "examples").rglob("*.toml")), ids=lambda p: p.name)
 def test_an_example_names_its_schema(example: Path) -> None:
     """An editor that knows the `#:schema` line then completes and checks the words of the spec."""
+    from geometry.spec import json_schema
+
     first = example.read_text(encoding="utf-8").splitlines()[0]
     assert first.startswith("#:schema "), first
-    assert (example.parent / first.removeprefix("#:schema ").strip()).resolve().is_file(), first
+    schema = example.parent / first.removeprefix("#:schema ").strip()
+    assert schema.is_file(), f"{first}: not there; haunch schema makes it"
+    assert json.loads(schema.read_text(encoding="utf-8")) == json_schema(), "drifted; haunch schema makes it anew"
