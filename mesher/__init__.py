@@ -15,6 +15,7 @@ _HOME = {
     "mesh_outlines": "mesher.outline_mesher",
     "mesh_solid": "mesher.solid_mesher",
     "outline_to_skfem": "mesher.skfem_mesh",
+    "read_vtu": "mesher.vtu",
     "to_skfem": "mesher.skfem_mesh",
     "write_vtu": "mesher.vtu",
 }
@@ -25,6 +26,7 @@ __all__ = [
     "mesh_outlines",
     "mesh_solid",
     "outline_to_skfem",
+    "read_vtu",
     "to_skfem",
     "write_vtu",
 ]

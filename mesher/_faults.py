@@ -8,20 +8,22 @@ import time
 from typing import Any
 
 
-def provoke(fault: str) -> tuple[dict[str, Any], dict[str, Any]]:
-    """Hang, hang with a grandchild, crash, eat memory, or fail; anything else is an unknown task."""
+def provoke(job: dict[str, Any]) -> tuple[dict[str, Any], dict[str, Any]]:
+    """Hang, crash, eat memory, or fail, as ``job["task"]`` says; anything else is an unknown task."""
+    fault = job["task"]
     if fault == "fault:hang":
         while True:
             time.sleep(0.1)
-    if fault == "fault:hang in C":
-        with subprocess.Popen(["sleep", "600"]) as grandchild:
+    if fault == "fault:hang with grandchild":
+        with subprocess.Popen(["sleep", job["sleep"]]) as grandchild:
+            os.write(2, f"grandchild {grandchild.pid}\n".encode())
             grandchild.wait()
     if fault == "fault:crash":
         os.abort()
     if fault == "fault:memory":
         hoard = []
         while True:
-            hoard.append(bytes(8 * 2**20))
+            hoard.append(bytearray(b"x") * (8 * 2**20))
             time.sleep(0.002)
     if fault == "fault:log":
         os.write(2, b"Error   : the kernel said so\n")

@@ -57,7 +57,7 @@ def _do(job: dict[str, Any], room: Path) -> tuple[dict[str, Any], dict[str, Any]
         return mesh_brep(job, room / "solid.brep")
     from mesher._faults import provoke
 
-    return provoke(task)
+    return provoke(job)
 
 
 def main(folder: str) -> int:

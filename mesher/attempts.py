@@ -59,6 +59,10 @@ def gmsh_options(attempt: Attempt) -> dict[str, float]:
         "Mesh.Algorithm3D": attempt.volume,
         "Mesh.ElementOrder": 2,
         "Mesh.SecondOrderLinear": 0,
+        # One element of the wall's thickness leaves slivers that the plain optimisation cannot reach.
+        "Mesh.Optimize": 1,
+        "Mesh.OptimizeThreshold": 0.5,
+        "Mesh.OptimizeNetgen": 1,
         "Mesh.HighOrderOptimize": attempt.optimise,
         "Mesh.HighOrderThresholdMin": 0.1,
         # The size field says it all: gmsh's own sources of sizes would be hidden settings.

@@ -9,8 +9,10 @@ from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
 
-VOLUME_COEFFICIENT = 12.0
-SURFACE_COEFFICIENT = 6.0
+VOLUME_COEFFICIENT = 1.5
+SURFACE_COEFFICIENT = 7.9
+"""Fitted to 18 meshes (bar, plate with a hole, round bar, tube, shouldered shaft, tapered I with holes; accuracy 5, 2
+and 1 %): every one of them within 22 %."""
 
 
 def node_integrals(areas: Sequence[float], sizes: Sequence[Floats], volume: float) -> tuple[float, float]:

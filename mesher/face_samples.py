@@ -36,10 +36,11 @@ def sample_faces(faces: list[int], areas: list[float], sizes: Sizes) -> list[Fac
 def _curvature_size(tag: int, sizes: Sizes) -> float:
     """Size that a curved face needs for its shape alone, mm.
 
-    `sizes.turn` elements to the full turn; small roundings are let off with half the bulk size, as long as a
-    quarter turn still has an element of its own.
+    `sizes.turn` elements to the full turn, two thirds of that on a rounding (less than 135 degrees). Small
+    roundings are let off with a third of the bulk size, as long as a quarter turn still has an element of its own.
     """
-    if gmsh.model.getType(2, tag) == "Plane":
+    kind = gmsh.model.getType(2, tag)
+    if kind == "Plane":
         return sizes.bulk
     low, high = (np.array(b) for b in gmsh.model.getParametrizationBounds(2, tag))
     middle = low + (high - low) * np.array([[0.3, 0.4], [0.5, 0.5], [0.7, 0.6]])
@@ -47,7 +48,9 @@ def _curvature_size(tag: int, sizes: Sizes) -> float:
     if not np.isfinite(bend) or bend <= 0:
         return sizes.bulk
     radius = 1.0 / bend
-    return min(sizes.bulk, max(2 * pi * radius / sizes.turn, min(0.5 * sizes.bulk, pi * radius / 2)))
+    rounding = kind in ("Cylinder", "Cone") and high[0] - low[0] < 0.75 * pi
+    turn = sizes.turn * (2 / 3 if rounding else 1)
+    return min(sizes.bulk, max(2 * pi * radius / turn, min(sizes.bulk / 3, pi * radius / 2)))
 
 
 def _sample(tag: int, area: float, size: float) -> FaceSamples:

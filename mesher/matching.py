@@ -6,11 +6,15 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 _AREA = 1e-5
 _PLACE = 1e-5
-_BOX = 1e-2
-"""Relative to the area, and to the solid's extent. Kernels pad boxes of curved faces, hence the wide last one."""
+"""Relative to the area, and to the solid's extent."""
+
+_BOX_RATIO = 10.0
+"""Kernels pad the boxes of curved faces differently, so boxes only decide between faces of equal area and
+centroid, and only when the best one fits this many times better than the next."""
 
 
 class FaceMismatch(ValueError):
@@ -43,8 +47,9 @@ def match_faces(wanted: Sequence[Mapping[str, Any]], found: Sequence[Mapping[str
     for number, mark in enumerate(wanted):
         fits = np.abs(area - mark["area"]) <= _AREA * mark["area"]
         fits &= np.abs(centroid - mark["centroid"]).max(axis=1) <= _PLACE * extent
-        fits &= np.abs(box - mark["box"]).max(axis=1) <= _BOX * extent
         partners = np.flatnonzero(fits)
+        if len(partners) > 1:
+            partners = _by_box(partners, np.abs(box[partners] - mark["box"]).max(axis=1), extent)
         if len(partners) != 1:
             what = "no partner" if len(partners) == 0 else f"{len(partners)} partners that cannot be told apart"
             raise FaceMismatch(
@@ -55,3 +60,11 @@ def match_faces(wanted: Sequence[Mapping[str, Any]], found: Sequence[Mapping[str
     if len(set(chosen)) != len(chosen):
         raise FaceMismatch("two faces of the solid have the same partner among the mesh kernel's faces")
     return [int(found[i]["tag"]) for i in chosen]
+
+
+def _by_box(partners: NDArray[np.int64], off: NDArray[np.float64], extent: float) -> NDArray[np.int64]:
+    """The partner whose box fits by far the best, or all of them."""
+    order = np.argsort(off)
+    if off[order[0]] + 1e-6 * extent <= off[order[1]] / _BOX_RATIO:
+        return partners[order[:1]]
+    return partners

@@ -13,6 +13,8 @@ from dataclasses import asdict, dataclass
 from math import pi
 from typing import Any
 
+from numpy import interp
+
 from geometry.named_solid import NamedSolid, SizeHint
 from geometry.problem import MeshError
 
@@ -34,7 +36,7 @@ class Sizes:
     slope
         Growth of the size for each mm away from a place that asks for less.
     turn
-        Elements around a full turn of a curved face that raises no stress.
+        Elements around a full turn of a curved face that raises no stress; a rounding gets two thirds of that.
     faces
         Size at a face, by its index.
     """
@@ -62,7 +64,7 @@ def elements_around(accuracy: float) -> float:
 
 def bulk_factor(accuracy: float) -> float:
     """Sizes away from stress raisers, as a factor on those for 2 %."""
-    return min(max((accuracy / REFERENCE_ACCURACY) ** (1.0 / 3.0), 0.3), 1.6)
+    return min(max((accuracy / REFERENCE_ACCURACY) ** (1.0 / 3.0), 0.3), 1.2)
 
 
 def sizes_for(solid: NamedSolid, accuracy: float, factor: float = 1.0) -> Sizes:
@@ -78,7 +80,9 @@ def sizes_for(solid: NamedSolid, accuracy: float, factor: float = 1.0) -> Sizes:
     around, coarse = elements_around(accuracy), bulk_factor(accuracy)
     # 2 V / A is the thickness of a plate, half the side of a square bar, half the diameter of a round one.
     thickness = 2.0 * solid.volume / solid.area
-    bulk = 1.05 * thickness * coarse
+    # Walls: one layer. A compact section, whose least dimension is well above 2 V / A: three elements across.
+    share = interp(solid.least_wall / thickness, [1.2, 1.67], [1.2, 0.6])
+    bulk = float(share) * thickness * coarse
     if solid.least_wall > 0 and not any(h.kind == "wall" for h in solid.hints):
         bulk = min(bulk, 1.6 * solid.least_wall * coarse)
     faces: dict[int, float] = {}
@@ -88,7 +92,7 @@ def sizes_for(solid: NamedSolid, accuracy: float, factor: float = 1.0) -> Sizes:
             if not 0 <= face < len(solid.faces):
                 raise MeshError(f"size hint {hint.label!r} names face {face}; the solid has {len(solid.faces)} faces")
             faces[face] = min(size, bulk, faces.get(face, bulk))
-    return Sizes(bulk * factor, 0.35, 12.0, {k: v * factor for k, v in sorted(faces.items())})
+    return Sizes(bulk * factor, 0.4, 12.0, {k: v * factor for k, v in sorted(faces.items())})
 
 
 def _hint_size(hint: SizeHint, around: float, coarse: float) -> float:
