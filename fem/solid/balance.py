@@ -67,11 +67,13 @@ def balance_checks(model: SolidModel, u: Array, reactions: Reactions, energy: Ar
                    solution: Solution) -> Iterator[Check]:
     """Reactions against loads, work against energy, residual, gauge, quality, size of the motion."""
     x = model.mesh.nodes.T - model.mesh.nodes.mean(axis=1)
-    length = float(np.ptp(x, axis=0).max())
+    length, diagonal = float(np.ptp(x, axis=0).max()), model.K.diagonal()
     for k, case in enumerate(model.part.cases):
         applied = model.mechanical[k]
-        push = np.abs(applied).sum() + np.abs(reactions.nodal[k]).sum()
-        scale = max(float(push), 1e-300)
+        push = np.abs(applied).sum() + np.abs(reactions.nodal[k]).sum() + np.abs(model.thermal[k]).sum()
+        stiff = np.abs(u[k].T).ravel() * diagonal if not applied.any() else np.zeros(1)
+        # without loads a motion may be rigid: the forces are then rounding of stiffness times motion
+        scale = max(float(push), 1e-8 * float(stiff.sum()), 1e-300)
         force = applied.sum(axis=0) + sum((f[k] for f in reactions.force.values()), np.zeros(3))
         moment = np.cross(x, applied).sum(axis=0)
         for name, m in reactions.moment.items():
@@ -83,7 +85,8 @@ def balance_checks(model: SolidModel, u: Array, reactions: Reactions, energy: Ar
                      np.linalg.norm(moment) / (scale * length), BALANCE_ALLOWED)
         work = float((applied * u[k].T).sum() + (reactions.nodal[k] * u[k].T).sum())
         gap = abs(work - thermal[k] - 2 * energy[k])
-        size = max(2 * energy[k], abs(work), abs(thermal[k]), 1e-300)
+        size = max(2 * energy[k], abs(work), abs(thermal[k]), abs(float((model.thermal[k] * u[k].T).sum())),
+                   1e-6 * float((stiff * np.abs(u[k].T).ravel()).sum()), 1e-300)
         yield _check(f"case {case.name}: work is twice the energy", gap / size, ENERGY_ALLOWED)
         yield _check(f"case {case.name}: largest displacement over length",
                      np.linalg.norm(u[k], axis=0).max() / length, LARGE_MOTION,

@@ -130,7 +130,8 @@ def section_force(model: SolidModel, loads: ElementLoads, reaction: Array, frame
     tets, n = mesh.tets, mesh.nodes.shape[1]
     local = frame.local(mesh.nodes)
     tolerance = 1e-9 * frame.length
-    near = local[0][tets[:4]].mean(axis=0) < at
+    beyond = local[0] >= at - tolerance
+    near = local[0][tets[:4]].mean(axis=0) < at - tolerance
     touched = np.zeros((2, n), dtype=bool)
     touched[0, tets[:, near & inside]] = True
     touched[1, tets[:, ~near & inside]] = True
@@ -139,7 +140,8 @@ def section_force(model: SolidModel, loads: ElementLoads, reaction: Array, frame
     if start or end:  # an end of the part: the face itself is the interface
         face = local[0] <= at + tolerance if start else local[0] >= at - tolerance
         interface = face & touched.any(axis=0)
-    by_near = interface & ~(local[0] < at - tolerance) & ~start if not end else interface
+    # a reaction at an interface node belongs to the side of the plane on which the node lies
+    by_near = interface if end else interface & beyond & (not start)
     by_far = interface & ~by_near
     force, moment = np.zeros((reaction.shape[0], 3)), np.zeros((reaction.shape[0], 3))
     point = frame.point(at)
@@ -158,7 +160,7 @@ def section_force(model: SolidModel, loads: ElementLoads, reaction: Array, frame
         force += sign * f
         moment += sign * m
     free = ~interface
-    for chosen, sign in ((free & touched[0] & (local[0] >= at), 1.0), (free & touched[1] & (local[0] < at), -1.0)):
+    for chosen, sign in ((free & touched[0] & beyond, 1.0), (free & touched[1] & ~beyond, -1.0)):
         if chosen.any():
             r = reaction[:, chosen]
             force += sign * r.sum(axis=1)
