@@ -94,7 +94,12 @@ def line_point(member: Member, dims: Dims, profile: Profile) -> Point:
         whole = section_integrals(profile)
         return (whole.y, whole.z)
     if word == "web":
-        middle = {"I": 0.0, "tee": 0.0, "channel": 0.5 * dims.get("web", 0.0), "angle": 0.5 * dims.get("thickness", 0.0)}
+        middle = {
+            "I": 0.0,
+            "tee": 0.0,
+            "channel": 0.5 * dims.get("web", 0.0),
+            "angle": 0.5 * dims.get("thickness", 0.0),
+        }
         if shape not in middle:
             raise SolidError(f"members.{member.name}.line_at: a {shape} has no web; use origin or centroid.")
         return (middle[shape], 0.0)

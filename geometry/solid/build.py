@@ -129,9 +129,9 @@ def _check_volume(work: _Work) -> None:
     volume, _ = kernel.volume_of(work.solid)
     if abs(volume - work.estimate) > work.slack:
         raise SolidError(
-            f"members.{work.member.name}: the solid's volume is {volume:.8g} mm^3 but its sections, cuts and radii give "
-            f"{work.estimate:.8g} mm^3 (allowed difference {work.slack:.3g} mm^3); the geometry kernel made a wrong solid: "
-            "change a radius or the place of a cut slightly."
+            f"members.{work.member.name}: the solid's volume is {volume:.8g} mm^3 but sections, cuts and radii give "
+            f"{work.estimate:.8g} mm^3 (allowed difference {work.slack:.3g} mm^3); the geometry kernel "
+            "made a wrong solid: change a radius or the place of a cut slightly."
         )
 
 
@@ -149,8 +149,14 @@ def _named(part: Part, work: _Work, frame: Frame, strips: Sequence[Strip], slice
     _check_order(solid, marks, frame)
     volume, c = kernel.volume_of(again)
     return NamedSolid(
-        brep=data, step=kernel.step_bytes(world, part.title), faces=marks, regions=regions, volume=volume,
-        area=kernel.area_of(again)[0], centroid=(float(c[0]), float(c[1]), float(c[2])), volume_estimate=work.estimate,
+        brep=data,
+        step=kernel.step_bytes(world, part.title),
+        faces=marks,
+        regions=regions,
+        volume=volume,
+        area=kernel.area_of(again)[0],
+        centroid=(float(c[0]), float(c[1]), float(c[2])),
+        volume_estimate=work.estimate,
         hints=tuple(size_hints(member, pieces, samples, names, tool_faces, work.radii)),
         sharp_edges=tuple(sharp_edges(solid, frame, member, pieces, names, tool_faces)),
         least_wall=least_wall(member, pieces),
@@ -165,13 +171,19 @@ def _avoid(work: _Work) -> list[tuple[float, float]]:
     for made in work.radii:
         for line in made.lines:
             if np.ptp(line[:, 0]) < 0.5 * work.length:
-                ranges.append((float(line[:, 0].min() - 1.5 * made.radius), float(line[:, 0].max() + 1.5 * made.radius)))
+                ranges.append(
+                    (float(line[:, 0].min() - 1.5 * made.radius), float(line[:, 0].max() + 1.5 * made.radius))
+                )
     return ranges
 
 
 def _regions(
-    member: Member, length: float, samples: Sequence[FaceSamples], names: Sequence[set[str]],
-    tool_faces: Sequence[tuple[Tool, Sequence[int]]], strips: Sequence[Strip],
+    member: Member,
+    length: float,
+    samples: Sequence[FaceSamples],
+    names: Sequence[set[str]],
+    tool_faces: Sequence[tuple[Tool, Sequence[int]]],
+    strips: Sequence[Strip],
 ) -> dict[str, tuple[int, ...]]:
     found: dict[str, set[int]] = {}
     for i, s in enumerate(samples):
@@ -195,8 +207,7 @@ def _check_regions(part: Part, member: Member, regions: dict[str, tuple[int, ...
             raise SolidError(f"region {name}: it has no face on the solid; check the place and size of what makes it.")
     wanted = [(f"supports.{s.name}", s.on) for s in part.supports]
     wanted += [
-        (f"loads.{load.name}", load.on) for load in part.loads
-        if not isinstance(load, BodyLoad | TemperatureLoad)
+        (f"loads.{load.name}", load.on) for load in part.loads if not isinstance(load, BodyLoad | TemperatureLoad)
     ]
     for where, region in wanted:
         if region.startswith(f"{member.name}.") and region not in regions:

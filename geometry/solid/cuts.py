@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -56,7 +57,8 @@ class Tool:
                 first = math.atan2(e.start[1] - c[1], e.start[0] - c[0])
                 angles = (0.5 * math.pi * k for k in range(4))
                 points += [
-                    (c[0] + r * math.cos(a), c[1] + r * math.sin(a)) for a in angles
+                    (c[0] + r * math.cos(a), c[1] + r * math.sin(a))
+                    for a in angles
                     if ((a - first) if e.ccw else (first - a)) % (2.0 * math.pi) <= turn
                 ]
         xs, cs = [p[0] for p in points], [p[1] for p in points]
@@ -131,8 +133,8 @@ def tools_of(cut: Cut, member: Member, pieces: Sequence[Piece]) -> list[Tool]:
                 _check_behind(what, wall.name, (a - across, b - across), wall.barred)
         if past_free > 1e-6:
             raise SolidError(
-                f"{what}: it reaches {past_free:.3g} mm past the {first.name} into the wall beside it; make it smaller, "
-                "move it, or cut through all."
+                f"{what}: it reaches {past_free:.3g} mm past the {first.name} into the wall beside it; make it "
+                "smaller, move it, or cut through all."
             )
         past = 1e-3 * min(thick)
         found.append(Tool(cut, first.name, cut.axis, loop, min(lows) - past, max(highs) + past, float(np.mean(thick))))
@@ -204,13 +206,18 @@ def tool_volume(tool: Tool, pieces: Sequence[Piece]) -> float:
     length = pieces[-1].stretch.end
     fixed = 1 if tool.axis == "y" else 0
     total = 0.0
-    breaks = {max(x0, 0.0), min(x1, length), *(p.stretch.start for p in pieces), *(q[0] for e in tool.loop for q in (e.start, e.end))}
+    breaks = {
+        max(x0, 0.0),
+        min(x1, length),
+        *(p.stretch.start for p in pieces),
+        *(q[0] for e in tool.loop for q in (e.start, e.end)),
+    }
     marks = sorted(b for b in breaks if max(x0, 0.0) <= b <= min(x1, length))
-    for a, b in zip(marks[:-1], marks[1:], strict=True):
+    for a, b in itertools.pairwise(marks):
         if b - a <= 1e-9:
             continue
         cells = np.linspace(a, b, 5)
-        for c0, c1 in zip(cells[:-1], cells[1:], strict=True):
+        for c0, c1 in itertools.pairwise(cells):
             for node, weight in zip(*_GAUSS, strict=True):
                 x = 0.5 * (c0 + c1) + 0.5 * (c1 - c0) * node
                 total += 0.5 * (c1 - c0) * weight * _removed_area(tool, pieces, float(x), fixed)
@@ -223,7 +230,7 @@ def _removed_area(tool: Tool, pieces: Sequence[Piece], x: float, fixed: int) -> 
     area = 0.0
     for low, high in inside(tool.loop, 0, x):
         marks = [low, *(c for c in corners if low < c < high), high]
-        for a, b in zip(marks[:-1], marks[1:], strict=True):
+        for a, b in itertools.pairwise(marks):
             if b - a <= 1e-9:
                 continue
             for node, weight in zip(*_GAUSS, strict=True):

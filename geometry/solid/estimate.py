@@ -34,12 +34,20 @@ _AREAS: dict[str, Callable[[Dims], float]] = {
     "tube": lambda d: math.pi * d["wall"] * (d["diameter"] - d["wall"]),
     "box": _box,
     "I": _i,
-    "channel": lambda d: 2.0 * d["width"] * d["flange"] + (d["depth"] - 2.0 * d["flange"]) * d["web"]
-    + 2.0 * _CORNER * d.get("root_radius", 0.0) ** 2,
-    "angle": lambda d: d["thickness"] * (d["depth"] + d["width"] - d["thickness"])
-    + _CORNER * (d.get("root_radius", 0.0) ** 2 - 2.0 * d.get("toe_radius", 0.0) ** 2),
-    "tee": lambda d: d["width"] * d["flange"] + (d["depth"] - d["flange"]) * d["web"]
-    + 2.0 * _CORNER * d.get("root_radius", 0.0) ** 2,
+    "channel": lambda d: (
+        2.0 * d["width"] * d["flange"]
+        + (d["depth"] - 2.0 * d["flange"]) * d["web"]
+        + 2.0 * _CORNER * d.get("root_radius", 0.0) ** 2
+    ),
+    "angle": lambda d: (
+        d["thickness"] * (d["depth"] + d["width"] - d["thickness"])
+        + _CORNER * (d.get("root_radius", 0.0) ** 2 - 2.0 * d.get("toe_radius", 0.0) ** 2)
+    ),
+    "tee": lambda d: (
+        d["width"] * d["flange"]
+        + (d["depth"] - d["flange"]) * d["web"]
+        + 2.0 * _CORNER * d.get("root_radius", 0.0) ** 2
+    ),
 }
 
 

@@ -48,7 +48,9 @@ def filleted(solid: Any, marks: Sequence[EdgeMark], radius: float, what: str) ->
         for m in marks[:3]
     ) + (f" and {len(marks) - 3} more" if len(marks) > 3 else "")
     advice = f"the largest that fits is about {fits:.3g} mm" if fits > 0.0 else "no smaller radius was found that fits"
-    raise SolidError(f"{what}: a radius of {radius:g} mm does not fit on {len(marks)} edges, {where} (member axes, mm); {advice}.")
+    raise SolidError(
+        f"{what}: a radius of {radius:g} mm does not fit on {len(marks)} edges, {where} (member axes, mm); {advice}."
+    )
 
 
 def _attempt(solid: Any, marks: Sequence[EdgeMark], radius: float) -> tuple[Any, float] | None:

@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from geometry.named_solid import SharpEdge, SizeHint
+from geometry.outline import Arc, Line
 from geometry.part import Member
 from geometry.solid.body import Piece, piece_at
 from geometry.solid.chords import inside
@@ -21,10 +22,9 @@ from geometry.solid.radii import Radius
 from geometry.solid.regions import TOLERANCE
 from geometry.solid.samples import FaceSamples
 from geometry.solid.walls import walls_of
-from geometry.outline import Arc, Line
 
 SHARP = math.radians(5.0)
-"""Least angle by which the normal must turn at a re-entrant edge for it to count as sharp (common practice, no source)."""
+"""Least angle (rad) between the normals at a re-entrant edge that counts as sharp (common practice, no source)."""
 
 Names = Sequence[set[str]]
 
@@ -61,13 +61,17 @@ def _depth_behind(line: Line, edges: Sequence[Line | Arc]) -> float:
         return (y * cos + z * sin, -y * sin + z * cos)
 
     turned: list[Line | Arc] = [
-        Line(turn(e.start), turn(e.end)) if isinstance(e, Line) else Arc(turn(e.start), turn(e.end), turn(e.centre), e.ccw)
+        Line(turn(e.start), turn(e.end))
+        if isinstance(e, Line)
+        else Arc(turn(e.start), turn(e.end), turn(e.centre), e.ccw)
         for e in edges
     ]
     return next((b - a for a, b in inside(turned, 0, 0.0) if abs(a) < 1e-6 * size + 1e-9), 0.0)
 
 
-def _wall_hints(member: Member, pieces: Sequence[Piece], samples: Sequence[FaceSamples], names: Names) -> list[SizeHint]:
+def _wall_hints(
+    member: Member, pieces: Sequence[Piece], samples: Sequence[FaceSamples], names: Names
+) -> list[SizeHint]:
     shape = member.section.shape
     by_name: dict[str, tuple[float, list[int]]] = {}
     if shape == "tube":
@@ -77,7 +81,11 @@ def _wall_hints(member: Member, pieces: Sequence[Piece], samples: Sequence[FaceS
         by_name[first.name] = (math.inf, [])
     for name, (_, faces) in by_name.items():
         thick = [
-            w.thickness for p in pieces for d in (p.stretch.first, p.stretch.last) for w in walls_of(shape, d) if w.name == name
+            w.thickness
+            for p in pieces
+            for d in (p.stretch.first, p.stretch.last)
+            for w in walls_of(shape, d)
+            if w.name == name
         ]
         faces += [i for i, s in enumerate(samples) if "~side" in names[i] and _in_wall(s, shape, name, pieces)]
         by_name[name] = (min(thick), faces)
@@ -113,8 +121,12 @@ def _to_line(point: NDArray[np.float64], line: NDArray[np.float64]) -> float:
 
 
 def size_hints(
-    member: Member, pieces: Sequence[Piece], samples: Sequence[FaceSamples], names: Names,
-    tool_faces: Sequence[tuple[Tool, Sequence[int]]], radii: Sequence[Radius],
+    member: Member,
+    pieces: Sequence[Piece],
+    samples: Sequence[FaceSamples],
+    names: Names,
+    tool_faces: Sequence[tuple[Tool, Sequence[int]]],
+    radii: Sequence[Radius],
 ) -> list[SizeHint]:
     """Every place that must be meshed finely, then one hint for each wall."""
     thin = least_wall(member, pieces)
@@ -123,11 +135,17 @@ def size_hints(
         arcs = [radius_of(e) for e in tool.loop if isinstance(e, Arc)]
         round_faces = [i for i in faces if _curved(samples[i])]
         if arcs and round_faces:
-            hints.append(SizeHint("hole", f"{tool.cut.kind} {tool.cut.name}", tuple(round_faces), min(arcs), tool.thickness))
+            hints.append(
+                SizeHint("hole", f"{tool.cut.kind} {tool.cut.name}", tuple(round_faces), min(arcs), tool.thickness)
+            )
     root = [i for i, n in enumerate(names) if "~root fillet" in n]
     if root:
         radius = min(
-            radius_of(s.edge) for p in pieces for q in (p.first, p.last) for loop in q.loops for s in loop
+            radius_of(s.edge)
+            for p in pieces
+            for q in (p.first, p.last)
+            for loop in q.loops
+            for s in loop
             if s.wall == "root fillet" and isinstance(s.edge, Arc)
         )
         hints.append(SizeHint("fillet", "root fillet", tuple(root), radius, thin))
@@ -151,7 +169,11 @@ def _curved(s: FaceSamples) -> bool:
 
 
 def sharp_edges(
-    solid: Any, frame: Frame, member: Member, pieces: Sequence[Piece], names: Names,
+    solid: Any,
+    frame: Frame,
+    member: Member,
+    pieces: Sequence[Piece],
+    names: Names,
     tool_faces: Sequence[tuple[Tool, Sequence[int]]],
 ) -> list[SharpEdge]:
     """Re-entrant edges of the final solid (member axes), each with a label and points in global axes."""

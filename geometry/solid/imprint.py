@@ -57,12 +57,15 @@ def strips_of(part: Part, member: Member, length: float) -> list[Strip]:
     strips = [Strip(p.name, p.face.removeprefix(prefix), p.start, p.end, p.across) for p in member.patches]
     strips += [
         Strip(f"load:{load.name}", load.on.removeprefix(prefix), load.start, load.end, None)
-        for load in part.loads if isinstance(load, LineLoad) and load.on.startswith(prefix)
+        for load in part.loads
+        if isinstance(load, LineLoad) and load.on.startswith(prefix)
     ]
     for s in strips:
         what, tiny = f"region {prefix}{s.name}", 1e-9 * length
         if not -tiny <= s.start < s.end <= length + tiny:
-            raise SolidError(f"{what}: from {s.start:g} to {s.end:g} mm is no stretch of the member (0 to {length:g} mm).")
+            raise SolidError(
+                f"{what}: from {s.start:g} to {s.end:g} mm is no stretch of the member (0 to {length:g} mm)."
+            )
         if s.across is not None and (s.face not in _ACROSS or not s.across[0] < s.across[1]):
             raise SolidError(
                 f"{what}: across = {s.across} cannot be used on {s.face!r}; give a low and a high value on "
@@ -89,7 +92,8 @@ def _sheets(strip: Strip, length: float, reach: float) -> list[Any]:
 
     sheets = [
         _sheet([corner(x, c, o) for c, o in ((low, -reach), (high, -reach), (high, reach), (low, reach))])
-        for x in (strip.start, strip.end) if TOLERANCE < x < length - TOLERANCE
+        for x in (strip.start, strip.end)
+        if TOLERANCE < x < length - TOLERANCE
     ]
     if strip.across is not None:
         x0, x1 = strip.start, strip.end

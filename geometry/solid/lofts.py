@@ -7,6 +7,7 @@ a ruled face. Generic lofts are never used: they give B-spline faces that mesh b
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Sequence
 from typing import Any
@@ -154,7 +155,7 @@ def lofted(sections: Sequence[tuple[float, Profile]], what: str) -> Any:
     sewing = BRepBuilderAPI_Sewing(1e-6)
     # The first cap looks outwards (-x); sewing turns the other faces to agree with it.
     sewing.Add(section_face(sections[0][1], sections[0][0]).Reversed())
-    for (xa, pa), (xb, pb) in zip(sections[:-1], sections[1:], strict=True):
+    for (xa, pa), (xb, pb) in itertools.pairwise(sections):
         for loop_a, loop_b in zip(pa.loops, pb.loops, strict=True):
             for a, b in _matched(loop_a, loop_b, xa, xb):
                 face = side_face(a.edge, b.edge, xa, xb)

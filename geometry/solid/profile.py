@@ -71,10 +71,14 @@ def rounded(corners: list[Corner]) -> tuple[Side, ...]:
         reach, depth = c.radius / math.tan(half), c.radius / math.sin(half)
         w = _unit(u[0] + v[0], u[1] + v[1])
         ccw = u[0] * v[1] - u[1] * v[0] < 0.0
-        tangents.append((
-            (c.y + reach * u[0], c.z + reach * u[1]), (c.y + reach * v[0], c.z + reach * v[1]),
-            (c.y + depth * w[0], c.z + depth * w[1]), ccw,
-        ))
+        tangents.append(
+            (
+                (c.y + reach * u[0], c.z + reach * u[1]),
+                (c.y + reach * v[0], c.z + reach * v[1]),
+                (c.y + depth * w[0], c.z + depth * w[1]),
+                ccw,
+            )
+        )
     sides: list[Side] = []
     for i, c in enumerate(corners):
         after = corners[(i + 1) % n]
@@ -115,8 +119,10 @@ def _rectangle(d: Dims) -> Profile:
 def _box_corners(depth: float, width: float, r: float) -> list[Corner]:
     z, y = 0.5 * depth, 0.5 * width
     return [
-        Corner(-y, -z, r, ("bottom",)), Corner(y, -z, r, ("right",)),
-        Corner(y, z, r, ("top",)), Corner(-y, z, r, ("left",)),
+        Corner(-y, -z, r, ("bottom",)),
+        Corner(y, -z, r, ("right",)),
+        Corner(y, z, r, ("top",)),
+        Corner(-y, z, r, ("left",)),
     ]
 
 
@@ -130,8 +136,10 @@ def _box(d: Dims) -> Profile:
     z, y = 0.5 * d["depth"] - t, 0.5 * d["width"] - t
     bore = ("bore",)
     inner = [
-        Corner(-y, -z, r, bore, "root fillet"), Corner(-y, z, r, bore, "root fillet"),
-        Corner(y, z, r, bore, "root fillet"), Corner(y, -z, r, bore, "root fillet"),
+        Corner(-y, -z, r, bore, "root fillet"),
+        Corner(-y, z, r, bore, "root fillet"),
+        Corner(y, z, r, bore, "root fillet"),
+        Corner(y, -z, r, bore, "root fillet"),
     ]
     void = tuple(Side(s.edge, bore, s.wall) for s in rounded(inner))
     return Profile(_rectangle(d).outer, (void,))
@@ -142,42 +150,79 @@ def _i(d: Dims) -> Profile:
     top, low = 0.5 * d["width"], 0.5 * d.get("bottom_width", d["width"])
     zt, zb = z - d["flange"], -z + d.get("bottom_flange", d["flange"])
     root = "root fillet"
-    return Profile(rounded([
-        Corner(-low, -z, 0.0, ("bottom",)), Corner(low, -z, 0.0, ("right",)), Corner(low, zb),
-        Corner(t, zb, r, ("web_right",), root), Corner(t, zt, r, (), root), Corner(top, zt, 0.0, ("right",)),
-        Corner(top, z, 0.0, ("top",)), Corner(-top, z, 0.0, ("left",)), Corner(-top, zt),
-        Corner(-t, zt, r, ("web_left",), root), Corner(-t, zb, r, (), root), Corner(-low, zb, 0.0, ("left",)),
-    ]))
+    return Profile(
+        rounded(
+            [
+                Corner(-low, -z, 0.0, ("bottom",)),
+                Corner(low, -z, 0.0, ("right",)),
+                Corner(low, zb),
+                Corner(t, zb, r, ("web_right",), root),
+                Corner(t, zt, r, (), root),
+                Corner(top, zt, 0.0, ("right",)),
+                Corner(top, z, 0.0, ("top",)),
+                Corner(-top, z, 0.0, ("left",)),
+                Corner(-top, zt),
+                Corner(-t, zt, r, ("web_left",), root),
+                Corner(-t, zb, r, (), root),
+                Corner(-low, zb, 0.0, ("left",)),
+            ]
+        )
+    )
 
 
 def _channel(d: Dims) -> Profile:
     z, b, r, t, f = 0.5 * d["depth"], d["width"], d.get("root_radius", 0.0), d["web"], d["flange"]
     root = "root fillet"
-    return Profile(rounded([
-        Corner(0.0, -z, 0.0, ("bottom",)), Corner(b, -z, 0.0, ("right",)), Corner(b, -z + f),
-        Corner(t, -z + f, r, ("web_right",), root), Corner(t, z - f, r, (), root), Corner(b, z - f, 0.0, ("right",)),
-        Corner(b, z, 0.0, ("top",)), Corner(0.0, z, 0.0, ("left", "web_left")),
-    ]))
+    return Profile(
+        rounded(
+            [
+                Corner(0.0, -z, 0.0, ("bottom",)),
+                Corner(b, -z, 0.0, ("right",)),
+                Corner(b, -z + f),
+                Corner(t, -z + f, r, ("web_right",), root),
+                Corner(t, z - f, r, (), root),
+                Corner(b, z - f, 0.0, ("right",)),
+                Corner(b, z, 0.0, ("top",)),
+                Corner(0.0, z, 0.0, ("left", "web_left")),
+            ]
+        )
+    )
 
 
 def _angle(d: Dims) -> Profile:
     z, b, t = 0.5 * d["depth"], d["width"], d["thickness"]
     r, toe = d.get("root_radius", 0.0), d.get("toe_radius", 0.0)
-    return Profile(rounded([
-        Corner(0.0, -z, 0.0, ("bottom",)), Corner(b, -z, 0.0, ("right",)), Corner(b, -z + t, toe, (), "toe"),
-        Corner(t, -z + t, r, (), "root fillet"), Corner(t, z, toe, ("top",), "toe"),
-        Corner(0.0, z, 0.0, ("left",)),
-    ]))
+    return Profile(
+        rounded(
+            [
+                Corner(0.0, -z, 0.0, ("bottom",)),
+                Corner(b, -z, 0.0, ("right",)),
+                Corner(b, -z + t, toe, (), "toe"),
+                Corner(t, -z + t, r, (), "root fillet"),
+                Corner(t, z, toe, ("top",), "toe"),
+                Corner(0.0, z, 0.0, ("left",)),
+            ]
+        )
+    )
 
 
 def _tee(d: Dims) -> Profile:
     z, b, t, f, r = 0.5 * d["depth"], 0.5 * d["width"], 0.5 * d["web"], d["flange"], d.get("root_radius", 0.0)
     root = "root fillet"
-    return Profile(rounded([
-        Corner(-t, -z, 0.0, ("bottom",)), Corner(t, -z, 0.0, ("web_right",)), Corner(t, z - f, r, (), root),
-        Corner(b, z - f, 0.0, ("right",)), Corner(b, z, 0.0, ("top",)), Corner(-b, z, 0.0, ("left",)),
-        Corner(-b, z - f), Corner(-t, z - f, r, ("web_left",), root),
-    ]))
+    return Profile(
+        rounded(
+            [
+                Corner(-t, -z, 0.0, ("bottom",)),
+                Corner(t, -z, 0.0, ("web_right",)),
+                Corner(t, z - f, r, (), root),
+                Corner(b, z - f, 0.0, ("right",)),
+                Corner(b, z, 0.0, ("top",)),
+                Corner(-b, z, 0.0, ("left",)),
+                Corner(-b, z - f),
+                Corner(-t, z - f, r, ("web_left",), root),
+            ]
+        )
+    )
 
 
 def _round(d: Dims) -> Profile:
@@ -191,8 +236,14 @@ def _tube(d: Dims) -> Profile:
 
 
 _SHAPES: dict[str, Callable[[Dims], Profile]] = {
-    "rectangle": _rectangle, "round": _round, "tube": _tube, "box": _box, "I": _i, "channel": _channel,
-    "angle": _angle, "tee": _tee,
+    "rectangle": _rectangle,
+    "round": _round,
+    "tube": _tube,
+    "box": _box,
+    "I": _i,
+    "channel": _channel,
+    "angle": _angle,
+    "tee": _tee,
 }
 
 
@@ -207,7 +258,8 @@ def free_profile(outline: Outline) -> Profile:
             return Side(edge)
         tests = {"left": (0, lows), "right": (0, highs), "bottom": (1, lows), "top": (1, highs)}
         on = tuple(
-            name for name, (k, limit) in tests.items()
+            name
+            for name, (k, limit) in tests.items()
             if abs(edge.start[k] - limit[k]) <= tiny and abs(edge.end[k] - limit[k]) <= tiny
         )
         return Side(edge, on)

@@ -14,7 +14,7 @@ from geometry.problem import SolidError
 from geometry.solid.body import Piece
 from geometry.solid.cuts import Tool
 from geometry.solid.edges import SMOOTH, EdgeMark, edge_marks
-from geometry.solid.fillets import fillet_area, filleted, fillet_volume
+from geometry.solid.fillets import fillet_area, fillet_volume, filleted
 from geometry.solid.regions import TOLERANCE, end_label, on_tool, side_labels
 from geometry.solid.samples import sample_faces
 
@@ -37,7 +37,9 @@ class Radius:
     size: float
 
 
-def _built(solid: Any, marks: Sequence[EdgeMark], radius: float, what: str, label: str, kind: str) -> tuple[Any, Radius]:
+def _built(
+    solid: Any, marks: Sequence[EdgeMark], radius: float, what: str, label: str, kind: str
+) -> tuple[Any, Radius]:
     made, gain = filleted(solid, marks, radius, what)
     size = sum(fillet_area(m.angle, radius) * m.length for m in marks)
     lines = tuple(m.points for m in marks)
@@ -51,9 +53,7 @@ def shoulder_fillets(solid: Any, member: Member, pieces: Sequence[Piece]) -> tup
         x, radius = piece.stretch.start, piece.stretch.shoulder
         if not piece.stretch.step or radius <= 0.0:
             continue
-        marks = [
-            m for m in edge_marks(solid) if m.angle < -SMOOTH and np.all(np.abs(m.points[:, 0] - x) < TOLERANCE)
-        ]
+        marks = [m for m in edge_marks(solid) if m.angle < -SMOOTH and np.all(np.abs(m.points[:, 0] - x) < TOLERANCE)]
         label = f"shoulder at {x:g} mm"
         solid, radius_made = _built(solid, marks, radius, f"members.{member.name}: {label}", label, "fillet")
         done.append(radius_made)

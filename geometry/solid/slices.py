@@ -48,7 +48,7 @@ def slices_of(solid: Any, places: Sequence[float], reach: float) -> NDArray[np.f
         if not props.Mass() > 0.0:
             raise SolidError(f"slice at {x:g} mm: the plane cuts nothing of the solid.")
         centre, inertia = props.CentreOfMass(), props.MatrixOfInertia()
-        # The kernel's matrix about the centroid holds int (z^2 + x^2) at (2,2), int (x^2 + y^2) at (3,3), -int y z at (2,3).
+        # The kernel's matrix about the centroid, x = 0 there: int z^2 at (2,2), int y^2 at (3,3), -int y z at (2,3).
         rows.append(
             (x, props.Mass(), centre.Y(), centre.Z(), inertia.Value(2, 2), inertia.Value(3, 3), -inertia.Value(2, 3))
         )

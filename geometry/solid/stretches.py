@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Mapping
 from dataclasses import dataclass
 
@@ -44,7 +45,9 @@ def _grouped(member: Member, length: float) -> list[tuple[float, list[Station]]]
     groups: list[tuple[float, list[Station]]] = []
     for station in sorted(member.stations, key=lambda s: s.at):
         if not -1e-9 * length <= station.at <= length * (1 + 1e-9):
-            raise SolidError(f"members.{member.name}: a station at {station.at:g} mm lies off the member (0 to {length:g} mm).")
+            raise SolidError(
+                f"members.{member.name}: a station at {station.at:g} mm lies off the member (0 to {length:g} mm)."
+            )
         if groups and abs(station.at - groups[-1][0]) <= 1e-9 * length:
             groups[-1][1].append(station)
         else:
@@ -68,15 +71,20 @@ def stretches_of(member: Member, length: float) -> list[Stretch]:
     """
     base = dict(member.section.dims)
     groups = _grouped(member, length)
+    unknown = {name for _, group in groups for station in group for name in station.dims} - set(base)
+    if unknown:
+        raise SolidError(
+            f"members.{member.name}: stations vary {', '.join(sorted(unknown))}, which the {member.section.shape} "
+            "section does not name; name it in the section too (a free outline cannot vary)."
+        )
     # Knots of each dimension: (place, value arriving, value leaving).
     knots: dict[str, list[tuple[float, float, float]]] = {name: [(0.0, v, v)] for name, v in base.items()}
     for at, group in groups:
         for name in {**group[0].dims, **group[-1].dims}:
-            known = knots.setdefault(name, [])
-            last = known[-1][2] if known else group[-1].dims.get(name, group[0].dims.get(name, 0.0))
-            arriving = group[0].dims.get(name, last)
+            known = knots[name]
+            arriving = group[0].dims.get(name, known[-1][2])
             leaving = group[-1].dims.get(name, arriving)
-            if known and at <= known[-1][0] + 1e-9 * length:
+            if at <= known[-1][0] + 1e-9 * length:
                 known[-1] = (known[-1][0], arriving, leaving)
             else:
                 known.append((at, arriving, leaving))
@@ -84,12 +92,14 @@ def stretches_of(member: Member, length: float) -> list[Stretch]:
     steps = {at: group[1].shoulder_fillet for at, group in groups if len(group) == 2 and 0.0 < at < length}
     return [
         Stretch(
-            a, b,
+            a,
+            b,
             {name: _value(ks, a, length, leaving=True) for name, ks in knots.items()},
             {name: _value(ks, b, length, leaving=False) for name, ks in knots.items()},
-            a in steps, steps.get(a, 0.0),
+            a in steps,
+            steps.get(a, 0.0),
         )
-        for a, b in zip(places[:-1], places[1:], strict=True)
+        for a, b in itertools.pairwise(places)
     ]
 
 

@@ -80,8 +80,10 @@ def walls_of(shape: str, d: Mapping[str, float]) -> list[Wall]:
         r, t = 0.5 * d["diameter"], d["wall"]
         over = (-r + t, r - t)
         return [
-            Wall("left wall", "y", -r, 0.0, t, (-r, -r + t), over), Wall("right wall", "y", 0.0, r, t, (r - t, r), over),
-            Wall("top wall", "z", 0.0, r, t, (r - t, r), over), Wall("bottom wall", "z", -r, 0.0, t, (-r, -r + t), over),
+            Wall("left wall", "y", -r, 0.0, t, (-r, -r + t), over),
+            Wall("right wall", "y", 0.0, r, t, (r - t, r), over),
+            Wall("top wall", "z", 0.0, r, t, (r - t, r), over),
+            Wall("bottom wall", "z", -r, 0.0, t, (-r, -r + t), over),
         ]
     return []
 

@@ -24,7 +24,17 @@ def make_part(shape: str, dims: dict[str, float], length: float = 500.0, **more:
     return Part("test part", STEEL, (member,), (), loads, ())
 
 
-def cut(name: str, kind: str, axis: str, through: str, at: float, offset: float, length: float, depth: float = 0.0, **more: Any) -> Cut:
+def cut(
+    name: str,
+    kind: str,
+    axis: str,
+    through: str,
+    at: float,
+    offset: float,
+    length: float,
+    depth: float = 0.0,
+    **more: Any,
+) -> Cut:
     """A cut with its own name as its group, unless `more` says otherwise; a hole needs its diameter only."""
     group = more.pop("group", name)
     return Cut(name, group, kind, axis, through, at, offset, length, depth or length, **more)  # type: ignore[arg-type]

@@ -1,4 +1,4 @@
-"""The whole of it at once: a tapered I-arm with root radius, cuts, patches and a line load, in seconds and repeatable."""
+"""The whole of it at once: a tapered I-arm with root radius, cuts, patches and a line load; quick and repeatable."""
 
 from __future__ import annotations
 
@@ -18,19 +18,32 @@ from geometry.solid import build_solid
 def combined_part() -> Part:
     """A camera arm that carries every kind of feature."""
     cuts = (
-        cut("pivot", "hole", "y", "web", 180, 0, 14), cut("slot", "slot", "y", "web", 250, 0, 28, 8, turned=0.1),
+        cut("pivot", "hole", "y", "web", 180, 0, 14),
+        cut("slot", "slot", "y", "web", 250, 0, 28, 8, turned=0.1),
         cut("window", "opening", "y", "web", 100, 0, 30, 16, corner_radius=3),
-        *(cut(f"bolts.{k}", "hole", "z", "top flange", 40 + 25 * (k // 2), (-15, 15)[k % 2], 6, group="bolts") for k in range(4)),
+        *(
+            cut(f"bolts.{k}", "hole", "z", "top flange", 40 + 25 * (k // 2), (-15, 15)[k % 2], 6, group="bolts")
+            for k in range(4)
+        ),
         cut("foot", "hole", "z", "bottom flange", 40, 14, 6),
     )
     patches = (
-        Patch("p1", "top", 150, 200), Patch("p2", "top", 160, 230, (-5, 5)), Patch("p3", "bottom", 300, 360),
-        Patch("p4", "left", 20, 40), Patch("p5", "web_left", 300, 320, (-3, 3)), Patch("p6", "top", 200, 240, (0, 10)),
-        Patch("p7", "right", 20, 40), Patch("p8", "web_right", 300, 320, (-3, 3)),
+        Patch("p1", "top", 150, 200),
+        Patch("p2", "top", 160, 230, (-5, 5)),
+        Patch("p3", "bottom", 300, 360),
+        Patch("p4", "left", 20, 40),
+        Patch("p5", "web_left", 300, 320, (-3, 3)),
+        Patch("p6", "top", 200, 240, (0, 10)),
+        Patch("p7", "right", 20, 40),
+        Patch("p8", "web_right", 300, 320, (-3, 3)),
     )
     return make_part(
-        "I", {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0}, 360.0,
-        stations=[(360.0, {"depth": 32.0, "width": 30.0})], cuts=cuts, patches=patches,
+        "I",
+        {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0},
+        360.0,
+        stations=[(360.0, {"depth": 32.0, "width": 30.0})],
+        cuts=cuts,
+        patches=patches,
         loads=(LineLoad("rail", "arm.top", 100, 300, (0, 0, -1), (0, 0, -1)),),
     )
 
@@ -64,11 +77,18 @@ def test_patch_areas_on_sloping_faces(built: tuple[NamedSolid, float]) -> None:
         return 46 - 16 * x / 360
 
     wanted = {
-        "arm.p1": 50 * slope * width(175), "arm.p2": 700 * slope, "arm.p3": 60 * slope * width(330), "arm.p4": 2 * 20 * 8 * tip,
-        "arm.p5": 120.0, "arm.p6": 400 * slope, "arm.p7": 2 * 20 * 8 * tip, "arm.p8": 120.0,
+        "arm.p1": 50 * slope * width(175),
+        "arm.p2": 700 * slope,
+        "arm.p3": 60 * slope * width(330),
+        "arm.p4": 2 * 20 * 8 * tip,
+        "arm.p5": 120.0,
+        "arm.p6": 400 * slope,
+        "arm.p7": 2 * 20 * 8 * tip,
+        "arm.p8": 120.0,
         "arm.load:rail": 200 * slope * width(200),
         "arm.top": (360 * width(180) - 4 * math.pi * 9) * slope,
-        "arm.pivot": math.pi * 14 * 6, "arm.window": (60 - 12 + 32 - 12 + 6 * math.pi) * 6,
+        "arm.pivot": math.pi * 14 * 6,
+        "arm.window": (60 - 12 + 32 - 12 + 6 * math.pi) * 6,
         "arm.slot": (40 + 8 * math.pi) * 6,
     }
     assert {n: region_area(solid, n) for n in wanted} == pytest.approx(wanted, rel=1e-6)
@@ -93,7 +113,9 @@ def test_two_builds_are_identical(built: tuple[NamedSolid, float]) -> None:
         assert np.array_equal(first, second) if name == "slices" else first == second, name
 
 
-def test_step_is_readable_and_carries_no_time(built: tuple[NamedSolid, float], tmp_path_factory: pytest.TempPathFactory) -> None:
+def test_step_is_readable_and_carries_no_time(
+    built: tuple[NamedSolid, float], tmp_path_factory: pytest.TempPathFactory
+) -> None:
     from OCP.STEPControl import STEPControl_Reader
 
     from geometry.solid.kernel import one_solid, volume_of

@@ -39,10 +39,17 @@ def test_hole_axis_lies_where_it_was_put() -> None:
     assert boxes[:, 3:].max(axis=0) == pytest.approx((157, 3, 9), abs=1e-6)
 
 
-@pytest.mark.parametrize(("through", "axis", "offset", "thickness"), [
-    ("left wall", "y", 3.0, 5.0), ("right wall", "y", 3.0, 5.0), ("top wall", "z", 3.0, 5.0), ("bottom wall", "z", 3.0, 5.0),
-    ("all", "y", 3.0, 10.0), ("all", "z", -3.0, 10.0),
-])
+@pytest.mark.parametrize(
+    ("through", "axis", "offset", "thickness"),
+    [
+        ("left wall", "y", 3.0, 5.0),
+        ("right wall", "y", 3.0, 5.0),
+        ("top wall", "z", 3.0, 5.0),
+        ("bottom wall", "z", 3.0, 5.0),
+        ("all", "y", 3.0, 10.0),
+        ("all", "z", -3.0, 10.0),
+    ],
+)
 def test_box_is_cut_through_the_named_wall(through: str, axis: str, offset: float, thickness: float) -> None:
     gone, solid = removed("box", BOX, cut("h", "hole", axis, through, 100, offset, 10))
     assert gone == pytest.approx(math.pi * 25 * thickness, rel=1e-9)
@@ -53,7 +60,8 @@ def test_box_is_cut_through_the_named_wall(through: str, axis: str, offset: floa
 
 def test_flange_hole_grid_is_one_group() -> None:
     grid = [
-        cut(f"bolts.{k}", "hole", "z", "top flange", 60 + 40 * (k // 2), (-15, 15)[k % 2], 7, group="bolts") for k in range(6)
+        cut(f"bolts.{k}", "hole", "z", "top flange", 60 + 40 * (k // 2), (-15, 15)[k % 2], 7, group="bolts")
+        for k in range(6)
     ]
     gone, solid = removed("I", I_DIMS, *grid)
     assert gone == pytest.approx(6 * math.pi * 12.25 * 8, rel=1e-9)
@@ -86,7 +94,9 @@ def test_hole_across_a_round_bar_is_the_known_integral() -> None:
     assert solid.volume_estimate == pytest.approx(solid.volume, rel=1e-4)
 
 
-@pytest.mark.parametrize(("edge", "axis", "wide"), [("top", "y", 40), ("bottom", "y", 40), ("left", "z", 60), ("right", "z", 60)])
+@pytest.mark.parametrize(
+    ("edge", "axis", "wide"), [("top", "y", 40), ("bottom", "y", 40), ("left", "z", 60), ("right", "z", 60)]
+)
 def test_half_round_and_square_notches(edge: str, axis: str, wide: float) -> None:
     gone, solid = removed("rectangle", BAR, cut("n", "notch", axis, "all", 150, 0, 10, 5, corner_radius=5, edge=edge))
     assert gone == pytest.approx(wide * math.pi * 12.5, rel=1e-9)
@@ -99,7 +109,9 @@ def test_half_round_and_square_notches(edge: str, axis: str, wide: float) -> Non
 
 def test_crossing_holes_share_their_volume() -> None:
     """Holes of one diameter that cross at right angles share 16 r^3 / 3."""
-    gone, _ = removed("rectangle", BAR, cut("a", "hole", "y", "all", 150, 0, 12), cut("b", "hole", "z", "all", 150, 0, 12))
+    gone, _ = removed(
+        "rectangle", BAR, cut("a", "hole", "y", "all", 150, 0, 12), cut("b", "hole", "z", "all", 150, 0, 12)
+    )
     assert gone == pytest.approx(math.pi * 36 * 100 - 16 * 216 / 3, rel=1e-5)
 
 
@@ -109,18 +121,21 @@ def test_web_hole_in_the_fillet_takes_the_fillet_too() -> None:
     assert solid.volume_estimate == pytest.approx(solid.volume, rel=1e-5)
 
 
-@pytest.mark.parametrize(("shape", "dims", "bad", "message"), [
-    ("rectangle", BAR, cut("h", "opening", "y", "all", 150, 0, 20, 80), "arm.h: the cut severs the part"),
-    ("rectangle", BAR, cut("h", "hole", "y", "all", 150, 90, 10), "meets no material"),
-    ("rectangle", BAR, cut("h", "hole", "y", "all", 350, 0, 10), "lies off the member"),
-    ("rectangle", BAR, cut("h", "hole", "y", "web", 150, 0, 10), "has no 'web'"),
-    ("I", I_DIMS, cut("h", "hole", "z", "web", 150, 0, 10), "axis must be y"),
-    ("I", I_DIMS, cut("h", "hole", "y", "web", 150, 20, 10), "reaches 3 mm past the web"),
-    ("I", I_DIMS, cut("h", "hole", "z", "top flange", 150, 4, 6), "stands behind the top flange"),
-    ("box", BOX, cut("h", "hole", "y", "left wall", 150, 22, 10), "reaches 2 mm past the left wall"),
-    ("rectangle", BAR, cut("h", "slot", "y", "all", 150, 0, 10, 20), "cannot be 20 mm wide"),
-    ("rectangle", BAR, cut("h", "opening", "y", "all", 150, 0, 10, 20, corner_radius=6), "do not fit"),
-])
+@pytest.mark.parametrize(
+    ("shape", "dims", "bad", "message"),
+    [
+        ("rectangle", BAR, cut("h", "opening", "y", "all", 150, 0, 20, 80), "arm.h: the cut severs the part"),
+        ("rectangle", BAR, cut("h", "hole", "y", "all", 150, 90, 10), "meets no material"),
+        ("rectangle", BAR, cut("h", "hole", "y", "all", 350, 0, 10), "lies off the member"),
+        ("rectangle", BAR, cut("h", "hole", "y", "web", 150, 0, 10), "has no 'web'"),
+        ("I", I_DIMS, cut("h", "hole", "z", "web", 150, 0, 10), "axis must be y"),
+        ("I", I_DIMS, cut("h", "hole", "y", "web", 150, 20, 10), "reaches 3 mm past the web"),
+        ("I", I_DIMS, cut("h", "hole", "z", "top flange", 150, 4, 6), "stands behind the top flange"),
+        ("box", BOX, cut("h", "hole", "y", "left wall", 150, 22, 10), "reaches 2 mm past the left wall"),
+        ("rectangle", BAR, cut("h", "slot", "y", "all", 150, 0, 10, 20), "cannot be 20 mm wide"),
+        ("rectangle", BAR, cut("h", "opening", "y", "all", 150, 0, 10, 20, corner_radius=6), "do not fit"),
+    ],
+)
 def test_bad_cuts_are_refused_with_the_reason(shape: str, dims: dict[str, float], bad: Any, message: str) -> None:
     with pytest.raises(SolidError, match=message):
         build_solid(make_part(shape, dims, 300.0, cuts=(bad,)))

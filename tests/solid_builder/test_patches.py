@@ -21,7 +21,11 @@ def line_load(on: str, start: float, end: float) -> LineLoad:
 
 
 def test_patches_on_a_bar_have_their_areas_and_places() -> None:
-    patches = (Patch("pad", "top", 50, 80), Patch("spot", "top", 100, 120, (-5, 10)), Patch("side", "left", 10, 30, (0, 20)))
+    patches = (
+        Patch("pad", "top", 50, 80),
+        Patch("spot", "top", 100, 120, (-5, 10)),
+        Patch("side", "left", 10, 30, (0, 20)),
+    )
     solid = build_solid(make_part("rectangle", BAR, 300.0, patches=patches))
     assert region_area(solid, "arm.pad") == pytest.approx(30 * 40, rel=1e-9)
     assert region_area(solid, "arm.spot") == pytest.approx(20 * 15, rel=1e-9)
@@ -33,7 +37,9 @@ def test_patches_on_a_bar_have_their_areas_and_places() -> None:
 
 
 def test_patch_to_the_very_end_and_over_the_whole_face() -> None:
-    solid = build_solid(make_part("rectangle", BAR, 300.0, patches=(Patch("a", "top", 200, 300), Patch("b", "bottom", 0, 300))))
+    solid = build_solid(
+        make_part("rectangle", BAR, 300.0, patches=(Patch("a", "top", 200, 300), Patch("b", "bottom", 0, 300)))
+    )
     assert region_area(solid, "arm.a") == pytest.approx(4000)
     assert solid.regions["arm.b"] == solid.regions["arm.bottom"]
 
@@ -51,7 +57,13 @@ def test_line_load_on_a_taper_goes_over_two_stretches_and_a_hole() -> None:
     stations = (Station(150, {"depth": 40}), Station(300, {"depth": 40, "width": 20}))
     hole = cut("h", "hole", "z", "all", 100, 0, 12)
     part = make_part(
-        "rectangle", BAR, 300.0, stations=stations, cuts=(hole,), loads=(line_load("arm.top", 50, 250),), line_at="origin"
+        "rectangle",
+        BAR,
+        300.0,
+        stations=stations,
+        cuts=(hole,),
+        loads=(line_load("arm.top", 50, 250),),
+        line_at="origin",
     )
     solid = build_solid(part)
 
@@ -83,13 +95,16 @@ def test_patches_on_both_sides_of_the_web() -> None:
     assert region_centroid(solid, "arm.l")[1] == pytest.approx(-3)
 
 
-@pytest.mark.parametrize(("patch", "message"), [
-    (Patch("p", "bore", 50, 100), "no face 'bore'"),
-    (Patch("p", "top", 100, 100), "no stretch of the member"),
-    (Patch("p", "top", 250, 350), "no stretch of the member"),
-    (Patch("p", "top", 50, 100, (30, 40)), "region arm.p: it has no face"),
-    (Patch("p", "top", 50, 100, (5, -5)), "low and a high value"),
-])
+@pytest.mark.parametrize(
+    ("patch", "message"),
+    [
+        (Patch("p", "bore", 50, 100), "no face 'bore'"),
+        (Patch("p", "top", 100, 100), "no stretch of the member"),
+        (Patch("p", "top", 250, 350), "no stretch of the member"),
+        (Patch("p", "top", 50, 100, (30, 40)), "region arm.p: it has no face"),
+        (Patch("p", "top", 50, 100, (5, -5)), "low and a high value"),
+    ],
+)
 def test_bad_patches_are_refused_by_name(patch: Patch, message: str) -> None:
     with pytest.raises(SolidError, match=message):
         build_solid(make_part("rectangle", BAR, 300.0, patches=(patch,)))
@@ -99,6 +114,8 @@ def test_bad_patches_are_refused_by_name(patch: Patch, message: str) -> None:
 def test_a_support_or_load_on_a_missing_region_is_refused(field: str) -> None:
     plain = make_part("rectangle", BAR, 300.0)
     wrong: Any = Support("wall", "arm.bore", {"x": 0.0}) if field == "supports" else RegionLoad("pull", "arm.bore")
-    part = Part(plain.title, plain.material, plain.members, *(((wrong,), ()) if field == "supports" else ((), (wrong,))), ())
+    part = Part(
+        plain.title, plain.material, plain.members, *(((wrong,), ()) if field == "supports" else ((), (wrong,))), ()
+    )
     with pytest.raises(SolidError, match=f"{field}.{wrong.name}: region arm.bore has no face"):
         build_solid(part)

@@ -36,7 +36,9 @@ def test_flat_shoulder_has_the_exact_volume_and_named_faces() -> None:
 
 
 def test_shaft_shoulder_is_a_torus_with_the_volume_of_pappus() -> None:
-    solid = build_solid(make_part("round", {"diameter": 60.0}, 500.0, stations=step(200, {"diameter": 60}, {"diameter": 40}, 4.0)))
+    solid = build_solid(
+        make_part("round", {"diameter": 60.0}, 500.0, stations=step(200, {"diameter": 60}, {"diameter": 40}, 4.0))
+    )
     plain = math.pi * (900 * 200 + 400 * 300)
     # Square r x r less the quarter circle, both turned about the axis: centroids r/2 and r - 4r/3pi from the shaft.
     r, a = 4.0, 20.0
@@ -48,7 +50,9 @@ def test_shaft_shoulder_is_a_torus_with_the_volume_of_pappus() -> None:
 
 
 def test_sharp_step_is_a_hint_and_a_sharp_edge() -> None:
-    solid = build_solid(make_part("rectangle", BAR, 500.0, stations=step(200, {"depth": 60}, {"depth": 40, "width": 30}, 0.0)))
+    solid = build_solid(
+        make_part("rectangle", BAR, 500.0, stations=step(200, {"depth": 60}, {"depth": 40, "width": 30}, 0.0))
+    )
     assert {e.label for e in solid.sharp_edges} == {"sharp step at 200 mm"}
     assert len(solid.sharp_edges) == 4
     (hint,) = [h for h in solid.hints if h.kind == "step"]
@@ -59,7 +63,7 @@ def test_sharp_step_is_a_hint_and_a_sharp_edge() -> None:
 def test_step_in_depth_and_width_with_a_radius_all_round() -> None:
     stations = (*step(200, {"depth": 60}, {"depth": 40, "width": 30}, 3.0), Station(500, {"depth": 30}))
     solid = build_solid(make_part("rectangle", BAR, 500.0, stations=stations))
-    assert len([h for h in solid.hints if h.label == "shoulder at 200 mm"][0].faces) == 4
+    assert len(next(h for h in solid.hints if h.label == "shoulder at 200 mm").faces) == 4
     assert solid.sharp_edges == ()
 
 

@@ -26,7 +26,9 @@ TABLE = [
 
 
 @pytest.mark.parametrize(("shape", "dims", "area", "printed"), TABLE)
-def test_volume_is_the_published_area_times_length(shape: str, dims: dict[str, float], area: float, printed: float) -> None:
+def test_volume_is_the_published_area_times_length(
+    shape: str, dims: dict[str, float], area: float, printed: float
+) -> None:
     solid = build_solid(make_part(shape, dims, 400.0))
     assert solid.volume / 400.0 / 100.0 == pytest.approx(area, abs=printed)
     assert solid.volume_estimate == pytest.approx(solid.volume, rel=1e-9)
@@ -39,10 +41,17 @@ def test_rectangular_cantilever_is_exact() -> None:
     assert solid.area == pytest.approx(2 * (60 * 40 + 60 * 500 + 40 * 500), rel=1e-12)
     assert solid.centroid == pytest.approx((250.0, 0.0, 0.0), abs=1e-9)
     areas = {name: region_area(solid, name) for name in solid.regions}
-    assert areas == pytest.approx({
-        "arm.start": 2400.0, "arm.end": 2400.0, "arm.top": 20000.0, "arm.bottom": 20000.0,
-        "arm.left": 30000.0, "arm.right": 30000.0,
-    }, rel=1e-12)
+    assert areas == pytest.approx(
+        {
+            "arm.start": 2400.0,
+            "arm.end": 2400.0,
+            "arm.top": 20000.0,
+            "arm.bottom": 20000.0,
+            "arm.left": 30000.0,
+            "arm.right": 30000.0,
+        },
+        rel=1e-12,
+    )
     assert solid.faces[solid.regions["arm.top"][0]].centroid == pytest.approx((250.0, 0.0, 30.0), abs=1e-9)
     assert solid.faces[solid.regions["arm.left"][0]].centroid == pytest.approx((250.0, -20.0, 0.0), abs=1e-9)
     assert solid.faces[solid.regions["arm.top"][0]].box == pytest.approx((0, -20, 30, 500, 20, 30), abs=1e-6)
@@ -53,19 +62,27 @@ def test_regions_of_an_i_section_have_their_areas() -> None:
     dims = {"depth": 300, "width": 150, "web": 7.1, "flange": 10.7, "root_radius": 15}
     solid = build_solid(make_part("I", dims, 100.0))
     wanted = {
-        "arm.top": 15000.0, "arm.bottom": 15000.0, "arm.left": 2140.0, "arm.right": 2140.0,
-        "arm.web_left": (300 - 2 * 25.7) * 100, "arm.web_right": (300 - 2 * 25.7) * 100,
+        "arm.top": 15000.0,
+        "arm.bottom": 15000.0,
+        "arm.left": 2140.0,
+        "arm.right": 2140.0,
+        "arm.web_left": (300 - 2 * 25.7) * 100,
+        "arm.web_right": (300 - 2 * 25.7) * 100,
     }
     assert {n: region_area(solid, n) for n in wanted} == pytest.approx(wanted, rel=1e-12)
 
 
 def test_channel_angle_tee_name_their_faces() -> None:
-    channel = build_solid(make_part("channel", {"depth": 200, "width": 80, "web": 6, "flange": 11, "root_radius": 13}, 100.0))
+    channel = build_solid(
+        make_part("channel", {"depth": 200, "width": 80, "web": 6, "flange": 11, "root_radius": 13}, 100.0)
+    )
     assert region_area(channel, "arm.left") == pytest.approx(20000.0)
     assert channel.regions["arm.left"] == channel.regions["arm.web_left"]
     assert region_area(channel, "arm.web_right") == pytest.approx((200 - 2 * 24) * 100)
     assert region_area(channel, "arm.right") == pytest.approx(2200.0)
-    angle = build_solid(make_part("angle", {"depth": 100, "width": 80, "thickness": 10, "root_radius": 12, "toe_radius": 6}, 100.0))
+    angle = build_solid(
+        make_part("angle", {"depth": 100, "width": 80, "thickness": 10, "root_radius": 12, "toe_radius": 6}, 100.0)
+    )
     wanted = {"arm.left": 1e4, "arm.bottom": 8e3, "arm.top": 400.0, "arm.right": 400.0}
     assert {n: region_area(angle, n) for n in wanted} == pytest.approx(wanted)
     tee = build_solid(make_part("tee", {"depth": 100, "width": 80, "web": 8, "flange": 10, "root_radius": 6}, 100.0))
@@ -84,8 +101,10 @@ def test_round_and_tube_surface_and_bore() -> None:
 def test_free_outline_with_arcs_and_a_void() -> None:
     # A stadium 40 x 20 with a round void of radius 5 about (-8, 0).
     outer = (
-        Line((-10.0, -10.0), (10.0, -10.0)), Arc((10.0, -10.0), (10.0, 10.0), (10.0, 0.0), True),
-        Line((10.0, 10.0), (-10.0, 10.0)), Arc((-10.0, 10.0), (-10.0, -10.0), (-10.0, 0.0), True),
+        Line((-10.0, -10.0), (10.0, -10.0)),
+        Arc((10.0, -10.0), (10.0, 10.0), (10.0, 0.0), True),
+        Line((10.0, 10.0), (-10.0, 10.0)),
+        Arc((-10.0, 10.0), (-10.0, -10.0), (-10.0, 0.0), True),
     )
     void = (Arc((-3.0, 0.0), (-13.0, 0.0), (-8.0, 0.0), False), Arc((-13.0, 0.0), (-3.0, 0.0), (-8.0, 0.0), False))
     part = make_part("outline", {}, 200.0, outline=Outline(outer, (void,)), line_at="origin")

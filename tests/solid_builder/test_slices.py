@@ -12,7 +12,14 @@ from geometry.solid import build_solid
 
 
 def test_slices_of_a_tapered_rectangle_are_exact() -> None:
-    part = make_part("rectangle", {"depth": 60, "width": 40}, 300.0, stations=[(300.0, {"depth": 30, "width": 10})], line_at="top", anchor="top")
+    part = make_part(
+        "rectangle",
+        {"depth": 60, "width": 40},
+        300.0,
+        stations=[(300.0, {"depth": 30, "width": 10})],
+        line_at="top",
+        anchor="top",
+    )
     x, *rest = build_solid(part).slices.T
     d, w = 60 - 30 * x / 300, 40 - 30 * x / 300
     assert len(x) >= 7
@@ -29,9 +36,15 @@ def test_slices_of_a_sharp_angle_have_the_product_of_inertia() -> None:
 
 def test_slices_keep_off_cuts_and_steps() -> None:
     stations = (Station(150, {"depth": 60}), Station(150, {"depth": 40}, 4.0))
-    solid = build_solid(make_part(
-        "rectangle", {"depth": 60, "width": 40}, 300.0, stations=stations, cuts=(cut("h", "hole", "y", "all", 50, 0, 30),)
-    ))
+    solid = build_solid(
+        make_part(
+            "rectangle",
+            {"depth": 60, "width": 40},
+            300.0,
+            stations=stations,
+            cuts=(cut("h", "hole", "y", "all", 50, 0, 30),),
+        )
+    )
     for x, area, *_ in solid.slices:
         assert not 35 < x < 65 and not 149 < x < 156
         assert area == pytest.approx(2400 if x < 150 else 1600, rel=1e-9)
@@ -40,14 +53,17 @@ def test_slices_keep_off_cuts_and_steps() -> None:
 def test_a_turned_and_moved_member_is_the_same_part() -> None:
     dims = {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0}
     more = {
-        "stations": [(300.0, {"depth": 40.0})], "cuts": (cut("h", "hole", "y", "web", 150, 3, 14),),
+        "stations": [(300.0, {"depth": 40.0})],
+        "cuts": (cut("h", "hole", "y", "web", 150, 3, 14),),
         "patches": (Patch("p", "top", 50, 80, (0, 10)),),
     }
     plain = build_solid(make_part("I", dims, 300.0, **more))
     x = np.array([2.0, 1.0, -2.0]) / 3.0
     start = np.array([100.0, -50.0, 30.0])
     up, roll = np.array([0.3, 0.2, 1.0]), 0.7
-    turned = build_solid(make_part("I", dims, start=tuple(start), end=tuple(start + 300 * x), up=tuple(up), roll=roll, **more))
+    turned = build_solid(
+        make_part("I", dims, start=tuple(start), end=tuple(start + 300 * x), up=tuple(up), roll=roll, **more)
+    )
     z = up - (up @ x) * x
     z /= np.linalg.norm(z)
     z = z * np.cos(roll) + np.cross(x, z) * np.sin(roll)
@@ -73,11 +89,16 @@ def test_up_along_the_member_and_no_length_are_refused() -> None:
         build_solid(make_part("rectangle", {"depth": 60, "width": 40}, 0.0))
 
 
-@pytest.mark.parametrize(("shape", "dims", "count"), [
-    ("I", {"depth": 60, "width": 46, "web": 6, "flange": 8}, 4), ("channel", {"depth": 60, "width": 46, "web": 6, "flange": 8}, 2),
-    ("tee", {"depth": 60, "width": 46, "web": 6, "flange": 8}, 2), ("angle", {"depth": 60, "width": 46, "thickness": 6}, 1),
-    ("box", {"depth": 60, "width": 46, "wall": 6}, 4),
-])
+@pytest.mark.parametrize(
+    ("shape", "dims", "count"),
+    [
+        ("I", {"depth": 60, "width": 46, "web": 6, "flange": 8}, 4),
+        ("channel", {"depth": 60, "width": 46, "web": 6, "flange": 8}, 2),
+        ("tee", {"depth": 60, "width": 46, "web": 6, "flange": 8}, 2),
+        ("angle", {"depth": 60, "width": 46, "thickness": 6}, 1),
+        ("box", {"depth": 60, "width": 46, "wall": 6}, 4),
+    ],
+)
 def test_inner_corners_without_radius_are_sharp_edges(shape: str, dims: dict[str, float], count: int) -> None:
     solid = build_solid(make_part(shape, dims, 300.0))
     assert [e.label for e in solid.sharp_edges] == ["inner corner without radius along arm"] * count
@@ -103,8 +124,12 @@ def test_a_taper_that_turns_inwards_is_a_kink() -> None:
 
 def test_edge_radius_along_a_tapered_i_and_its_patch() -> None:
     part = make_part(
-        "I", {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0}, 300.0,
-        stations=[(300.0, {"depth": 40.0})], edge_radii=(EdgeRadius("top left", 2.0),), patches=(Patch("p", "top", 100, 200),),
+        "I",
+        {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0},
+        300.0,
+        stations=[(300.0, {"depth": 40.0})],
+        edge_radii=(EdgeRadius("top left", 2.0),),
+        patches=(Patch("p", "top", 100, 200),),
     )
     solid = build_solid(part)
     assert region_area(solid, "arm.p") == pytest.approx(100 * 44 * np.hypot(300, 10) / 300, rel=1e-3)
