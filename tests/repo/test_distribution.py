@@ -18,7 +18,7 @@ PACKAGES = ("geometry", "mesher", "fem", "studies")
 def names(tmp_path_factory: pytest.TempPathFactory) -> set[str]:
     """Names of the files in a wheel that is built from a copy of the tree, without the network."""
     source, wheels = tmp_path_factory.mktemp("source"), tmp_path_factory.mktemp("wheels")
-    for name in PACKAGES:
+    for name in (*PACKAGES, "tests"):
         shutil.copytree(ROOT / name, source / name, ignore=shutil.ignore_patterns("__pycache__"))
     for name in ("pyproject.toml", "README.md", "LICENSE"):
         shutil.copy(ROOT / name, source)
