@@ -80,6 +80,8 @@ class Sections:
 
     def __init__(self, member: Member, length: float, nu: float, solver: SectionSolver = sections_properties) -> None:
         self.member, self.length = member, length
+        self._outlines: dict[float, Outline] = {}  # of the constant pieces, by their start
+        self._integrals: dict[float, OutlineIntegrals] = {}
         cuts = sorted({0.0, length, *(s.at for s in member.stations if 0.0 < s.at < length)})
         spans = list(zip(cuts[:-1], cuts[1:], strict=True))
         constant = [not any(dims_slope(member, 0.5 * (a + b)).values()) for a, b in spans]
@@ -90,7 +92,7 @@ class Sections:
         self.solved = tuple(s for group in solved for s in group)
         self.pieces = tuple(self._piece(a, b, c, p, s)
                             for (a, b), c, p, s in zip(spans, constant, points, solved, strict=True))
-        self.effects: tuple[NetEffect, ...] = net_effects(member, self.integrals)
+        self.effects: tuple[NetEffect, ...] = net_effects(member, nu)
 
     def _piece(self, a: float, b: float, constant: bool, points: Array, solved: list[SectionProperties]) -> Piece:
         if constant:
@@ -116,11 +118,21 @@ class Sections:
 
     def outline(self, x: float) -> Outline:
         """Outline without cuts, member axes from the line."""
-        return member_outline(self.member, x)
+        piece = self.piece(x)
+        if not piece.constant:
+            return member_outline(self.member, x)
+        if piece.start not in self._outlines:
+            self._outlines[piece.start] = member_outline(self.member, 0.5 * (piece.start + piece.end))
+        return self._outlines[piece.start]
 
     def integrals(self, x: float) -> OutlineIntegrals:
         """Exact integrals of the outline without cuts."""
-        return outline_integrals(self.outline(x))
+        piece = self.piece(x)
+        if not piece.constant:
+            return outline_integrals(self.outline(x))
+        if piece.start not in self._integrals:
+            self._integrals[piece.start] = outline_integrals(self.outline(x))
+        return self._integrals[piece.start]
 
     def gross(self, x: Array, side: str = "after") -> LineProperties:
         """Properties without cuts at points x (m,)."""

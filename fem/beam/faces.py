@@ -45,25 +45,26 @@ def face_edges(outline: Outline, face: str) -> list[tuple[int, int]]:
 
 
 def strip(
-    x: float, here: Outline, before: Outline, after: Outline, step: float, edges: list[tuple[int, int]],
+    x: float, share: float, before: Outline, after: Outline, step: float, edges: list[tuple[int, int]],
     across: tuple[int, float, float] | None = None,
 ) -> Strip:
     """What `edges` show at `x`.
 
-    `before` and `after` are outlines a distance `step` apart (their difference gives the inclination); `across` keeps
-    only the part of straight edges whose coordinate 0 (y) or 1 (z) lies in a range.
+    `before` and `after` are outlines a distance `step` apart, and `x` lies at `share` of it: between stations every
+    point of an outline moves in a straight line. `across` keeps only the part of straight edges whose coordinate 0 (y)
+    or 1 (z) lies in a range.
     """
     points, normals = [], []
     for loop, i in edges:
-        edge = _loop(here, loop)[i]
+        edge, far = _loop(before, loop)[i], _loop(after, loop)[i]
         first, last = (0.0, 1.0) if across is None else _clip(edge, *across)
         if last <= first:
             continue
         t, w = _ARC if isinstance(edge, Arc) else _LINE
         t = first + (last - first) * (t + 1.0) / 2.0
         w = w * (last - first) / 2.0
-        r, rt = _curve(edge, t)
-        rx = (_curve(_loop(after, loop)[i], t)[0] - _curve(_loop(before, loop)[i], t)[0]) / step
+        (r0, t0), (r1, t1) = curve(edge, t), curve(far, t)
+        r, rt, rx = r0 + share * (r1 - r0), t0 + share * (t1 - t0), (r1 - r0) / step
         # material lies to the left of the edge: the outward area vector of r(t, x)
         n = np.stack([rx[:, 1] * rt[:, 0] - rx[:, 0] * rt[:, 1], rt[:, 1], -rt[:, 0]], axis=1)
         points.append(np.column_stack([np.full(len(t), x), r]))
@@ -91,7 +92,7 @@ def _clip(edge: Edge, axis: int, low: float, high: float) -> tuple[float, float]
     return max(t[0], 0.0), min(t[1], 1.0)
 
 
-def _curve(edge: Edge, t: Array) -> tuple[Array, Array]:
+def curve(edge: Edge, t: Array) -> tuple[Array, Array]:
     """Points (k, 2) and their derivative by t in [0, 1]."""
     a, b = np.array(edge.start), np.array(edge.end)
     if isinstance(edge, Line):

@@ -14,7 +14,7 @@ from fem.beam.cut_faces import cut_faces
 from fem.beam.cuts import extent
 from fem.beam.element import GAUSS, transfer_matrices
 from fem.beam.equations import Line
-from fem.beam.faces import FACES, face_edges, strip
+from fem.beam.faces import FACES, curve, face_edges, strip
 from fem.beam.law import LineProperties
 from fem.beam.regions import EndFace, Face, Region, Strip
 from geometry.part import LineLoad, Member, Part
@@ -117,7 +117,9 @@ class BeamMesh:
         x, k, sign = (0.0, 0, -1.0) if which == "start" else (self.length, len(self.x) - 1, 1.0)
         outline = self._outline(x)
         p = self.sections.integrals(x) if which == "start" else self.sections.integrals(x - 1e-9 * self.length)
-        corners = np.array([(x, *e.start) for loop in (outline.outer, *outline.inner) for e in loop])
+        t = np.array([0.0, 1 / 3, 2 / 3])  # enough to tell a circle from a line
+        yz = np.vstack([curve(e, t)[0] for loop in (outline.outer, *outline.inner) for e in loop])
+        corners = np.column_stack([np.full(len(yz), x), yz])
         return EndFace(name, k, p.area, np.array([x, p.yc, p.zc]), corners, np.array([sign, 0.0, 0.0]))
 
     def _outline(self, x: float):  # type: ignore[no-untyped-def]
@@ -137,14 +139,13 @@ class BeamMesh:
 
     def _strip(self, name: str, face: str, x: float, e: int, across: tuple[int, float, float] | None) -> Strip:
         """Strip at `x`, with outlines taken inside length `e` (one side of a step)."""
-        a, b = self.x[e], self.x[e + 1]
+        a, b = float(self.x[e]), float(self.x[e + 1])
         inset = 1e-6 * (b - a)
-        before, after = self.sections.outline(float(a + inset)), self.sections.outline(float(b - inset))
-        here = self.sections.outline(float(min(max(x, a + inset), b - inset)))
-        edges = face_edges(here, face)
+        before, after = self.sections.outline(a + inset), self.sections.outline(b - inset)
+        edges = face_edges(before, face)
         if not edges:
             raise RunError("beam", f"region {name}: a {self.member.section.shape} has no plane face {face}")
-        return strip(x, here, before, after, float(b - a - 2 * inset), edges, across)
+        return strip(x, (x - a - inset) / (b - a - 2 * inset), before, after, b - a - 2 * inset, edges, across)
 
 
 def _nodes(part: Part, member: Member, length: float) -> Array:
