@@ -83,7 +83,7 @@ def haunch_commands() -> set[str]:
         check=False,
     )
     assert outcome.returncode == 0, outcome.stderr
-    return set(re.findall(r"^    ([a-z]+) +\S", outcome.stdout, re.MULTILINE))
+    return set(re.findall(r"^    ([a-z]+)(?: |$)", outcome.stdout, re.MULTILINE))
 
 
 def test_start_explains_itself_and_refuses_what_it_does_not_know() -> None:
