@@ -50,7 +50,7 @@ def check_part(values: Values, spec: PartSpec, part: Part, removed: Collection[s
 
 
 def _any_of(removed: Collection[str], *tables: str) -> bool:
-    return any(gone.split(".")[0].split("[")[0] in tables for gone in removed)
+    return any(gone.split(".")[0].split("[")[0] in tables and not gone.endswith("?") for gone in removed)
 
 
 def _cut_paths(spec: PartSpec, name: str) -> dict[str, str]:

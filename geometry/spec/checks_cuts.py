@@ -130,8 +130,10 @@ def _misplaced(values: Values, path: str, cut: Cut, wall: str, room: Interval, x
     axis = "z" if cut.axis == "y" else "y"
     where = f"the {wall}, {axis} from {room[0]:.6g} to {room[1]:.6g} mm at {x:.6g} mm along"
     if wide >= room[1] - room[0]:
-        name = {"hole": "diameter", "slot": "width", "opening": "height"}[cut.kind]
-        values.problem(f"{path}.{name}", f"{cut.depth:.6g} mm", f"less than {max(room[1] - room[0], 0.0):.6g} mm",
+        name, size = {"hole": "diameter", "slot": "width", "opening": "height"}[cut.kind], cut.depth
+        if cut.kind != "hole" and abs(math.sin(cut.turned)) * cut.length > cut.depth:
+            name, size = "length", cut.length  # turned, it is its length that lies across
+        values.problem(f"{path}.{name}", f"{size:.6g} mm", f"less than {max(room[1] - room[0], 0.0):.6g} mm",
                        f"It must lie within {where}")  # fmt: skip
     else:
         values.problem(f"{path}.offset", f"{cut.offset:.6g} mm", f"a place that keeps the cut within {where}",

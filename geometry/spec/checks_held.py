@@ -26,7 +26,7 @@ def check_held(values: Values, part: Part) -> None:
     if not part.supports or not all(_usable(member) for member in part.members):
         return
     scale = max((length_of(member) for member in part.members), default=1.0)
-    centre = scaled(plus(part.members[0].start, part.members[0].end), 0.5)
+    centre = part.members[0].start
     rows: list[Row] = []
     for support in part.supports:
         name, _, region = support.on.partition(".")

@@ -69,7 +69,8 @@ def check_region(values: Values, path: str, on: str, part: Part, removed: Collec
     known = [name for member in part.members for name in regions_of(member)]
     if on in known:
         return True
-    if any(gone.startswith("members") for gone in removed):
+    # A word unknown in a section changes no region; one unknown in a cut may have been its name.
+    if any(gone.startswith("members") and not gone.endswith(".section?") for gone in removed):
         return False  # it may well be among what could not be read
     plain = list(dict.fromkeys(name for name in known if not name.rpartition(".")[2].isdigit()))
     member, dot, _ = on.partition(".")
@@ -121,7 +122,7 @@ def _check_limit_words(values: Values, path: str, limit: Limit) -> None:
 
 
 def _lost(removed: Collection[str], *tables: str) -> bool:
-    return any(gone.split(".")[0].split("[")[0] in tables for gone in removed)
+    return any(gone.split(".")[0].split("[")[0] in tables and not gone.endswith("?") for gone in removed)
 
 
 def check_faces(values: Values, part: Part) -> None:

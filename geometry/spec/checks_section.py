@@ -22,9 +22,13 @@ def check_member(values: Values, member: Member) -> None:
     _check_stations(values, path, member)
     if any(math.isnan(v) for v in (length_of(member), *member.section.dims.values())):
         return
+    seen: list[Dims] = []
     for x in knots(member):
         for before in (True, False):
             dims = dims_at(member, x, before)
+            if dims in seen:
+                continue
+            seen.append(dims)
             where = f"{path}.section" if x == 0.0 else f"{path}.stations (at {x:g} mm)"
             for name, limit, most, why in _conditions(member.section.shape, dims):
                 if dims[name] >= most * (1.0 - 1e-9):

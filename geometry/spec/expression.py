@@ -87,7 +87,7 @@ def with_article(word: str) -> str:
 def nearest(word: str, known: Mapping[str, object] | tuple[str, ...] | list[str]) -> str:
     """The known word nearest to `word`, or an empty text."""
     names = list(known)
-    exact = [n for n in names if n.lower() == word.lower()]
+    exact = [n for n in names if n.lower() == word.lower()] or [n for n in names if word in n.split()]
     found = exact or difflib.get_close_matches(word, names, n=1, cutoff=0.5)
     return found[0] if found else ""
 
@@ -298,10 +298,10 @@ class _Reader:
             return self.scope[name]
         near = nearest(name, self.scope)
         known = ", ".join(self.scope) or "none are declared"
-        if near:
-            fix = f"Did you mean {near}?"
-        elif name in UNITS:
+        if name in UNITS:
             fix = f'A unit follows a number directly: "10 {name}"; a unit with a slash has no spaces: "2 N/mm"'
+        elif near:
+            fix = f"Did you mean {near}?"
         else:
             fix = f'Declare it: {name} = "..." under [parameters]'
         raise ExpressionError(f"a parameter ({known})", f'"{name}" is not declared. {fix}')

@@ -15,7 +15,7 @@ from geometry.spec.expression import nearest
 from geometry.spec.model import PartSpec
 from geometry.spec.resolve import resolve_and_check
 from geometry.spec.toml_errors import not_toml
-from geometry.spec.translate import read_leniently
+from geometry.spec.translate import MISSPELT, read_leniently
 from geometry.spec.values import shown
 
 LARGEST_FILE = 1_000_000  # bytes: a spec is a page or two of text
@@ -77,16 +77,23 @@ def part_from_data(data: Mapping[str, Any], text: str = "") -> Part:
         spec_left, problems, removed = read_leniently(data)
         if spec_left is not None:
             more = resolve_and_check(spec_left, text, removed, lenient=True)[1]
-            problems += [p for p in more if not _under(p.path, removed)]
+            problems += [p for p in more if not _follows_from(p, removed)]
         raise SpecError(problems) from None
     return spec.resolve(text)
 
 
-def _under(path: str, removed: Collection[str]) -> bool:
-    """Whether a message may come from something that was taken out only because it could not be read."""
-    return any(
-        path == gone or path.startswith((gone + ".", gone + "[")) or gone.startswith(path + ".") for gone in removed
-    )
+def _follows_from(problem: Problem, removed: Collection[str]) -> bool:
+    """Whether a message may only come from something that was left out because it could not be read."""
+    path = problem.path
+    for gone in removed:
+        table = gone.removesuffix(MISSPELT)
+        within = path.startswith((table + ".", table + "["))
+        if gone.endswith(MISSPELT):
+            if path == table or (within and problem.given == "nothing"):
+                return True
+        elif within or path == table or table.startswith(path + "."):
+            return True
+    return False
 
 
 def part_from_spec(spec: PartSpec) -> Part:

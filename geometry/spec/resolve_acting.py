@@ -21,11 +21,12 @@ from geometry.part import (
     TemperatureLoad,
     Vector,
 )
+from geometry.spec.expression import with_article
 from geometry.spec.frame import line_direction, scaled
 from geometry.spec.model import LimitSpec, LimitsSpec, LoadSpec, PartSpec, SupportSpec
 from geometry.spec.model_fields import OfKind
 from geometry.spec.resolve_member import Table, mark_of
-from geometry.spec.values import Values
+from geometry.spec.values import Values, shown
 
 ZERO: Vector = (0.0, 0.0, 0.0)
 TRANSLATIONS = ("x", "y", "z")
@@ -110,7 +111,7 @@ def _words_fit(table: Table, kind: str) -> bool:
     for word in LoadSpec.model_fields:
         if word not in (kind, *LOAD_WORDS[kind]) and getattr(spec, word) is not None:
             may = ", ".join(LoadSpec.model_fields[w].alias or w for w in LOAD_WORDS[kind]) or "nothing else"
-            table.values.problem(table.at(word), getattr(spec, word), f"beside {kind}: {may}",
+            table.values.problem(table.at(word), shown(getattr(spec, word)), f"beside {kind}: {may}",
                                  "Make two loads of it, and name both in the case")  # fmt: skip
             good = False
     if "on" in LOAD_WORDS[kind] and spec.on is None:
@@ -192,10 +193,11 @@ def _limit(values: Values, name: str, spec: LimitSpec) -> Limit:
     word, other = ("min", "max") if spec.quantity == "yield_factor" else ("max", "min")
     given = getattr(spec, word)
     value = math.nan
-    if given is None:
-        values.problem(f"{path}.{word}", "nothing", f"a {LIMIT_KINDS[spec.quantity]}", f"{spec.quantity} needs {word}")
-    else:
-        value = values.number(f"{path}.{word}", given, OfKind(LIMIT_KINDS[spec.quantity], above=0.0))
     if getattr(spec, other) is not None:
-        values.problem(f"{path}.{other}", getattr(spec, other), f"{word} only, for {spec.quantity}")
+        values.problem(f"{path}.{other}", shown(getattr(spec, other)), f"{word} only, for {spec.quantity}")
+    elif given is None:
+        what = with_article(LIMIT_KINDS[spec.quantity])
+        values.problem(f"{path}.{word}", "nothing", what, f"{spec.quantity} needs {word}")
+    if given is not None:
+        value = values.number(f"{path}.{word}", given, OfKind(LIMIT_KINDS[spec.quantity], above=0.0))
     return Limit(name, spec.quantity, value, spec.at, spec.relative_to, spec.component, spec.basis, tuple(spec.cases))

@@ -84,7 +84,8 @@ class Table:
 
     def at(self, name: str) -> str:
         """Path of a field, in the words of the TOML file."""
-        return f"{self.path}.{type(self.spec).model_fields[name].alias or name}"
+        word = type(self.spec).model_fields[name].alias or name
+        return f"{self.path}.{word}" if self.path else word
 
     def number(self, name: str) -> float:
         return self.values.number(self.at(name), getattr(self.spec, name), mark_of(type(self.spec), name))
@@ -226,14 +227,14 @@ def _pattern(table: Table, kind: Any, group: str, shape: str) -> Iterator[Cut]:
     if count * rows > 1000:
         table.values.problem(table.path, f"{count * rows} cuts", "at most 1000 cuts in one table")
         return
-    at = table.number("at")
+    at = table.number("at") if through else math.nan  # NaN: not judged where the wall is not known
     offset = table.number("offset") if across else 0.0
     turned = table.number("turned") if isinstance(spec, (SlotSpec, OpeningSpec)) else 0.0
     for k in range(count * rows):
         row, place = divmod(k, count)
         yield Cut(
             name=group if count * rows == 1 else f"{group}.{k + 1}",
-            group=group, kind=kind, axis=axis, through=through,
+            group=group, kind=kind, axis=axis, through=through or "all",
             at=at + place * pitch, offset=offset + (row - (rows - 1) / 2.0) * row_pitch,
             length=length, depth=depth, corner_radius=corner, turned=turned,
             edge=spec.edge if isinstance(spec, NotchSpec) else "",
@@ -274,9 +275,10 @@ def _through_and_axis(table: Table, shape: str) -> tuple[Any, Any]:
         why = f"a cut through the {through}"
     if not through:
         table.values.problem(table.at("through"), "nothing", f"what it passes: {', '.join(walls)}", "Give through")
-        return "all", spec.along or "y"
+        return None, spec.along or "y"
     if through not in walls:
         table.values.unknown(table.at("through"), through, walls, f"what a cut passes in the shape {shape}")
+        return None, follows or "y"
     if spec.along and follows and spec.along != follows:
         table.values.problem(table.at("along"), spec.along, f"{follows}, the axis of {why}", "Leave along out")
     axis = spec.along or follows

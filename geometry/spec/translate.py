@@ -33,6 +33,8 @@ from geometry.spec.structure import (
 from geometry.spec.values import UNREADABLE, listed, shown
 
 MOST_ROUNDS = 50
+MISSPELT = "?"
+"""Behind a table's path: it lost only a word that it does not know, which may have been meant for another."""
 
 
 def read_leniently(data: Mapping[str, Any]) -> tuple[PartSpec | None, list[Problem], set[str]]:
@@ -192,7 +194,7 @@ def _repair(data: Any, path: Path, errors: list[ErrorDetails], removed: set[str]
         _leave_out(data, path[:-1], removed)
     elif isinstance(parent, dict):
         parent.pop(last, None)
-        removed.add(written(path[:-1]) if "extra_forbidden" in kinds else written(path))
+        removed.add(written(path[:-1]) + MISSPELT if "extra_forbidden" in kinds else written(path))
 
 
 def _holds_quantities(annotation: Any) -> bool:
