@@ -88,8 +88,8 @@ def test_opening_with_corner_radius():
 @pytest.mark.parametrize("offset_in_section", [0.0, 17.0, 24.0])
 def test_net_section_of_a_tube_against_a_sum_of_rows(line_at, offset_in_section):
     """Rows of the tube, their widths exact, that lie outside the drill."""
-    m = member("tube", {"diameter": 60.0, "wall": 8.0}, hole(100, offset_in_section - (30 if "top" in line_at else 0), 9),
-               line_at=line_at)
+    drill = hole(100, offset_in_section - (30 if "top" in line_at else 0), 9)
+    m = member("tube", {"diameter": 60.0, "wall": 8.0}, drill, line_at=line_at)
     exact = outline_integrals(net_section(m, 101.0))
     n = 400_000
     z = (np.arange(n) + 0.5) / n * 60 - 30

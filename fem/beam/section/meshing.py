@@ -1,9 +1,9 @@
-"""Meshes of outlines that have fillets.
+"""Meshes of outlines that have arcs.
 
-The mesher's curve meshing does not end on loops that mix lines and arcs (its 1D integration of a size that
-jumps between the two); whole circles are safe. Such loops are therefore handed over with each arc as chords
-of less than 5 degrees, which the mesher does not take for corners, and the boundary nodes are then put on
-their arcs: the mesh that comes back is curved like one of the outline itself.
+The mesher's curve meshing may not end on an arc (its 1D integration of a size that jumps where curvature
+takes over). Arcs are therefore handed over as chords, and the boundary nodes are then put on their arcs: the
+mesh that comes back is curved like one of the outline itself. Chords of hollow arcs stay below the 5 degrees
+at which the mesher takes a vertex for a re-entrant corner; round arcs get 16 to the full turn.
 """
 
 from __future__ import annotations
@@ -18,38 +18,39 @@ from fem.beam.section.integrals import sweep
 from geometry.outline import Arc, Edge, Line, Outline
 from mesher import OutlineMesh, mesh_outlines
 
-_CHORD = math.radians(4.8)
+_ROUND, _HOLLOW = math.radians(22.6), math.radians(4.8)
 
 Owners = list[list[Arc | None]]
 
 
 def mesh_sections(outlines: Sequence[Outline], sizes: Sequence[float]) -> list[OutlineMesh]:
     """Curved triangles of each outline, all in one child process; see `mesher.mesh_outlines`."""
-    replaced = [_with_chords(outline) for outline in outlines]
+    replaced = [_with_chords(outline, size) for outline, size in zip(outlines, sizes, strict=True)]
     meshes = mesh_outlines([outline for outline, _ in replaced], sizes)
     return [_on_arcs(mesh, owners) for mesh, (_, owners) in zip(meshes, replaced, strict=True)]
 
 
-def _with_chords(outline: Outline) -> tuple[Outline, Owners]:
-    """The outline with chords in mixed loops, and the arc that each edge of each loop stands for."""
+def _with_chords(outline: Outline, size: float) -> tuple[Outline, Owners]:
+    """The outline with chords, and the arc that each edge of each loop stands for."""
     loops: list[tuple[Edge, ...]] = []
     owners: Owners = []
     for loop in (outline.outer, *outline.inner):
-        mixed = any(isinstance(edge, Line) for edge in loop)
         edges: list[Edge] = []
         arcs: list[Arc | None] = []
         for edge in loop:
-            pieces = _chords(edge) if mixed and isinstance(edge, Arc) else [edge]
+            pieces = _chords(edge, size) if isinstance(edge, Arc) else [edge]
             edges += pieces
-            arcs += [edge if mixed and isinstance(edge, Arc) else None] * len(pieces)
+            arcs += [edge if isinstance(edge, Arc) else None] * len(pieces)
         loops.append(tuple(edges))
         owners.append(arcs)
     return Outline(loops[0], tuple(loops[1:])), owners
 
 
-def _chords(arc: Arc) -> list[Edge]:
+def _chords(arc: Arc, size: float) -> list[Edge]:
     radius, first, turn = sweep(arc)
-    n = math.ceil(abs(turn) / _CHORD)
+    # putting nodes back on the arc moves them by radius angle^2/8: a twentieth of a triangle at the most
+    angle = min(_ROUND if arc.ccw else _HOLLOW, math.sqrt(0.4 * size / radius))
+    n = math.ceil(abs(turn) / angle)
     angles = [first + turn * k / n for k in range(1, n)]
     inner = [(arc.centre[0] + radius * math.cos(a), arc.centre[1] + radius * math.sin(a)) for a in angles]
     stops = [arc.start, *inner, arc.end]
