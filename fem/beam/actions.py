@@ -39,6 +39,8 @@ from geometry.problem import RunError
 
 Array = NDArray[np.float64]
 DIRECTIONS = ("x", "y", "z")
+KNIFE_EDGE = 0.25
+"""A patch shorter than this share of the section's size is held at its middle line only (judgement, no source)."""
 
 
 @dataclass
@@ -240,6 +242,8 @@ class Actions:
             for freedom, value in support.held.items():
                 if freedom.startswith("r"):
                     raise RunError("beam", f"support {support.name}: rotations are held by coupling rigid or average")
+                if freedom == "normal" and isinstance(region, CutFaces):
+                    raise RunError("beam", f"support {support.name}: `normal` is for plane faces")
                 d = normals if freedom == "normal" else np.tile(self._direction(support, freedom), (len(points), 1))
                 vectors.append(np.einsum("ki,kij->kj", d, free))
                 values.append(value - np.outer((d[:, 1:] * points[:, 1:]).sum(axis=1), expansion))
@@ -289,14 +293,34 @@ def _sites(region: Region) -> Sequence[tuple[int, Array, Array]]:
     if isinstance(region, EndFace):
         return [(region.node, region.corners, np.tile(region.outward, (len(region.corners), 1)))]
     if isinstance(region, Face):
-        first = int(region.lengths[0])
-        return [(first + k, s.points, s.normal / np.linalg.norm(s.normal, axis=1, keepdims=True))
-                for k, s in enumerate(region.ends)]
+        return _face_sites(region)
     out = []
     for node in sorted(set(region.nodes)):
         points = region.points[region.nodes == node]
         out.append((int(node), points, np.full((len(points), 3), np.nan)))
     return out
+
+
+def _face_sites(region: Face) -> list[tuple[int, Array, Array]]:
+    """Along a face, each section with a neighbouring point on the face before and behind.
+
+    A face held along its length keeps its slope as well. Only a stretch shorter than a quarter of the section's
+    size across is held like a knife edge, at its middle.
+    """
+    first = int(region.lengths[0])
+    size = max(float(np.ptp(s.points[:, 1:], axis=0).max()) for s in region.ends)
+    short = float(region.h.sum()) < KNIFE_EDGE * max(size, region.depth)
+    which = [len(region.ends) // 2] if short else range(len(region.ends))
+    found = []
+    for k in which:
+        s = region.ends[k]
+        unit = s.normal / np.linalg.norm(s.normal, axis=1, keepdims=True)
+        points, normals = s.points, unit
+        if not short:
+            step = np.array([0.5 * float(region.h.min()), 0.0, 0.0])
+            points, normals = np.vstack([points - step, points + step]), np.vstack([unit, unit])
+        found.append((first + k, points, normals))
+    return found
 
 
 def _reduced(vectors: Array, values: Array, node: int, freedoms: int, owner: str, length: float) -> list[Row]:

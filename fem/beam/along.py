@@ -16,8 +16,9 @@ from numpy.polynomial import chebyshev
 from numpy.typing import NDArray
 
 from fem.beam.cuts import NetEffect, net_effects
+from fem.beam.interpolate import between, loops, points, same_make
 from fem.beam.law import LineProperties
-from fem.beam.outlines import dims_slope, member_outline
+from fem.beam.outlines import dims_slope, member_outline, net_section
 from fem.beam.section import OutlineIntegrals, SectionProperties, outline_integrals, sections_properties
 from geometry.outline import Outline
 from geometry.part import Member
@@ -80,18 +81,19 @@ class Sections:
 
     def __init__(self, member: Member, length: float, nu: float, solver: SectionSolver = sections_properties) -> None:
         self.member, self.length = member, length
-        self._outlines: dict[float, Outline] = {}  # of the constant pieces, by their start
+        self._ends: dict[int, tuple[Outline, Outline] | None] = {}
         self._integrals: dict[float, OutlineIntegrals] = {}
+        self._net: dict[float, OutlineIntegrals] = {}
         cuts = sorted({0.0, length, *(s.at for s in member.stations if 0.0 < s.at < length)})
         spans = list(zip(cuts[:-1], cuts[1:], strict=True))
         constant = [not any(dims_slope(member, 0.5 * (a + b)).values()) for a, b in spans]
-        points = [np.array([0.5 * (a + b)]) if c else chebyshev_points(a, b, SOLVED_POINTS)
+        at = [np.array([0.5 * (a + b)]) if c else chebyshev_points(a, b, SOLVED_POINTS)
                   for (a, b), c in zip(spans, constant, strict=True)]
-        results = iter(solver([member_outline(member, float(x)) for p in points for x in p], nu))
-        solved = [[next(results) for _ in p] for p in points]
+        results = iter(solver([member_outline(member, float(x)) for p in at for x in p], nu))
+        solved = [[next(results) for _ in p] for p in at]
         self.solved = tuple(s for group in solved for s in group)
         self.pieces = tuple(self._piece(a, b, c, p, s)
-                            for (a, b), c, p, s in zip(spans, constant, points, solved, strict=True))
+                            for (a, b), c, p, s in zip(spans, constant, at, solved, strict=True))
         self.effects: tuple[NetEffect, ...] = net_effects(member, nu)
 
     def _piece(self, a: float, b: float, constant: bool, points: Array, solved: list[SectionProperties]) -> Piece:
@@ -118,21 +120,37 @@ class Sections:
 
     def outline(self, x: float) -> Outline:
         """Outline without cuts, member axes from the line."""
-        piece = self.piece(x)
-        if not piece.constant:
+        k = self.pieces.index(self.piece(x))
+        if k not in self._ends:
+            self._ends[k] = self._end_outlines(self.pieces[k])
+        ends = self._ends[k]
+        if ends is None:
             return member_outline(self.member, x)
-        if piece.start not in self._outlines:
-            self._outlines[piece.start] = member_outline(self.member, 0.5 * (piece.start + piece.end))
-        return self._outlines[piece.start]
+        piece = self.pieces[k]
+        return ends[0] if piece.constant else between(*ends, (x - piece.start) / (piece.end - piece.start))
+
+    def _end_outlines(self, piece: Piece) -> tuple[Outline, Outline] | None:
+        """Outlines at both ends of a piece when every point moves straight between them, else None."""
+        ends = member_outline(self.member, piece.start), member_outline(self.member, piece.end, "before")
+        middle = member_outline(self.member, 0.5 * (piece.start + piece.end))
+        if [len(loop) for loop in loops(ends[0])] != [len(loop) for loop in loops(ends[1])]:
+            return None
+        gap = points(between(*ends, 0.5)) - points(middle) if same_make(ends[0], middle) else np.inf
+        return ends if np.max(np.abs(gap)) < 1e-9 * float(np.ptp(points(ends[0]))) else None
 
     def integrals(self, x: float) -> OutlineIntegrals:
         """Exact integrals of the outline without cuts."""
         piece = self.piece(x)
-        if not piece.constant:
-            return outline_integrals(self.outline(x))
-        if piece.start not in self._integrals:
-            self._integrals[piece.start] = outline_integrals(self.outline(x))
-        return self._integrals[piece.start]
+        at = piece.start if piece.constant else x
+        if at not in self._integrals:
+            self._integrals[at] = outline_integrals(self.outline(x))
+        return self._integrals[at]
+
+    def both_integrals(self, x: float) -> tuple[OutlineIntegrals, OutlineIntegrals]:
+        """Exact integrals without and with the cuts taken off."""
+        if x not in self._net:
+            self._net[x] = outline_integrals(net_section(self.member, x))
+        return self.integrals(x), self._net[x]
 
     def gross(self, x: Array, side: str = "after") -> LineProperties:
         """Properties without cuts at points x (m,)."""
@@ -161,5 +179,5 @@ class Sections:
         for effect in self.effects:
             here = np.flatnonzero((x > effect.start) & (x < effect.end))
             if len(here):
-                p = effect.apply(p, x, here)
+                p = effect.apply(p, x, here, self.both_integrals)
         return p

@@ -12,18 +12,20 @@ Area, centroid and second moments of the net section are exact. The rest follows
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from fem.beam.law import LineProperties
-from fem.beam.outlines import member_outline, net_section
+from fem.beam.outlines import net_section
 from fem.beam.outlines.net import chord, notch_depth
-from fem.beam.section import outline_integrals
+from fem.beam.section import OutlineIntegrals, outline_integrals
 from geometry.part import Cut, Member
 
 Array = NDArray[np.float64]
+Integrals = Callable[[float], tuple[OutlineIntegrals, OutlineIntegrals]]
 EQUIVALENT_LENGTH = 0.45
 """Length of the rectangle that stands for a circular opening, over its diameter."""
 
@@ -53,14 +55,18 @@ class NetEffect:
     cuts: tuple[Cut, ...]
     vierendeel: tuple[float, float]
 
-    def apply(self, p: LineProperties, x: Array, here: NDArray[np.int64]) -> LineProperties:
-        """The properties with those at points `here` reduced to the net section."""
+    def apply(self, p: LineProperties, x: Array, here: NDArray[np.int64], at_x: Integrals) -> LineProperties:
+        """The properties with those at points `here` reduced to the net section.
+
+        `at_x` gives the exact integrals without and with the cuts at one x.
+        """
         new = {name: getattr(p, name).copy() for name in ("area", "yc", "zc", "Iyy", "Izz", "Iyz", "J", "Iw", "shear")}
         for k in here:
             at = float(x[k])
-            net = outline_integrals(net_section(self.member, at))
+            gross, net = at_x(at)
             left = net.area / p.area[k]
-            size = extreme_sizes(self.member, at)
+            e = gross.extremes
+            size = (float(e[3, 0] - e[2, 0]), float(e[0, 1] - e[1, 1]))
             new["shear"][k, 0, 1] /= left
             new["shear"][k, 1, 0] /= left
             for along in (0, 1):
@@ -72,12 +78,6 @@ class NetEffect:
             for name in ("area", "yc", "zc", "Iyy", "Izz", "Iyz"):
                 new[name][k] = getattr(net, name)
         return replace(p, **new)
-
-
-def extreme_sizes(member: Member, x: float) -> tuple[float, float]:
-    """Overall width (y) and depth (z) of the section without cuts, mm."""
-    e = outline_integrals(member_outline(member, x)).extremes
-    return float(e[3, 0] - e[2, 0]), float(e[0, 1] - e[1, 1])
 
 
 def _width(cut: Cut, x: float) -> float:

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from fem.beam.actions import Actions
 from fem.beam.equations import Row, States
-from fem.beam.law import section_flexibility
+from fem.beam.law import section_flexibility, torque_row
 from fem.beam.mesh import BeamMesh
 from fem.beam.result import Diagram
 from fem.beam.section import outline_integrals
@@ -44,12 +44,13 @@ def all_figures(s: Solved) -> tuple[list[Figure], list[str]]:
     from fem.beam.stress import nominal_stresses
 
     figures: list[Figure] = []
+    energy = energies(s).sum(axis=0)
     for k, case in enumerate(s.mesh.part.cases):
         figures += _displacements(s, k, case.name)
         figures += _reactions(s, k, case.name)
         figures += _section_forces(s, k, case.name)
         figures += nominal_stresses(s, k, case.name)
-        figures.append(Figure(FigureKey(case.name, "", "strain_energy", ""), float(sum(energies(s, k))), "N mm"))
+        figures.append(Figure(FigureKey(case.name, "", "strain_energy", ""), float(energy[k]), "N mm"))
     figures += _mass(s.mesh)
     return figures, []
 
@@ -129,35 +130,28 @@ def _section_forces(s: Solved, case: int, name: str) -> Iterator[Figure]:
             yield Figure(FigureKey(name, place, "section_moment", component, "member"), float(f[3 + i]), "N mm")
 
 
-def energies(s: Solved, case: int) -> tuple[float, float]:
-    """Elastic energy without shear, and of shear, N mm (Simpson's rule on each length)."""
+def energies(s: Solved) -> Array:
+    """(2, cases) elastic energy without shear, and of shear, N mm (Simpson's rule on each length)."""
     mesh, material = s.mesh, s.mesh.part.material
     E, G = material.E, material.E / (2.0 * (1.0 + material.nu))
     x = mesh.x
     h = np.diff(x)
     inset = 1e-7 * h
-    parts = np.zeros(2)
+    out = np.zeros((2, s.nodal.shape[1]))
     for at, states, w in ((x[:-1] + inset, s.states.start, 1.0), (0.5 * (x[:-1] + x[1:]), s.states.middle, 4.0),
                           (x[1:] - inset, s.states.end, 1.0)):
         p = mesh.stiffness(at)
-        f = states[:, 7:13, case]
-        whole = np.einsum("mi,mij,mj->m", f, section_flexibility(p, E, G), f)
-        shear = p.shear.copy()
+        f = states[:, 7:13]
+        whole = np.einsum("mic,mij,mjc->mc", f, section_flexibility(p, E, G), f)
         p.shear[:] = 0.0
-        bending = np.einsum("mi,mij,mj->m", f, section_flexibility(p, E, G), f)
-        p.shear[:] = shear
-        torque = f[:, 3] + p.zs * f[:, 1] - p.ys * f[:, 2]
-        chi, B = states[:, 6, case], states[:, 13, case]
-        free = ~mesh.line.warping
-        twist = np.where(free, torque**2 / (G * p.J), G * p.J * chi**2 + B**2 / (E * np.maximum(p.Iw, 1e-300)))
-        parts += w * np.array([((bending + twist) * h).sum(), ((whole - bending) * h).sum()]) / 12.0
-    return float(parts[0]), float(parts[1])
-
-
-def shear_share(s: Solved, case: int) -> float:
-    """Share of the strain energy that is shear."""
-    rest, shear = energies(s, case)
-    return shear / (rest + shear) if rest + shear > 0.0 else 0.0
+        bending = np.einsum("mic,mij,mjc->mc", f, section_flexibility(p, E, G), f)
+        torque = np.einsum("mi,mic->mc", torque_row(p), f)
+        chi, B = states[:, 6], states[:, 13]
+        free = torque**2 / (G * p.J)[:, None]
+        held = (G * p.J)[:, None] * chi**2 + B**2 / (E * np.maximum(p.Iw, 1e-300))[:, None]
+        twist = np.where(mesh.line.warping[:, None], held, free)
+        out += w / 12.0 * np.stack([h @ (bending + twist), h @ (whole - bending)])
+    return out
 
 
 def _mass(mesh: BeamMesh) -> Iterator[Figure]:

@@ -135,7 +135,9 @@ class BeamMesh:
         strips = [self._strip(name, face, float(x), e, across)
                   for e, pair in zip(lengths, self.gauss.reshape(-1, 2)[lengths], strict=True) for x in pair]
         ends = [self._strip(name, face, float(self.x[k]), min(k, last - 1), across) for k in range(first, last + 1)]
-        return Face(name, lengths, h, tuple(strips), tuple(ends))
+        e = self.sections.integrals(0.5 * (start + end)).extremes
+        depth = max(float(e[0, 1] - e[1, 1]), float(e[3, 0] - e[2, 0]))
+        return Face(name, lengths, h, tuple(strips), tuple(ends), depth)
 
     def _strip(self, name: str, face: str, x: float, e: int, across: tuple[int, float, float] | None) -> Strip:
         """Strip at `x`, with outlines taken inside length `e` (one side of a step)."""

@@ -44,7 +44,8 @@ class EndFace:
 class Face:
     """A face or patch along lengths `lengths` of the line (indices), sampled at two Gauss points of each.
 
-    `strips` has two entries a length; `ends` gives the strip at the nodes ``lengths[0] .. lengths[-1] + 1``.
+    `strips` has two entries a length; `ends` gives the strip at the nodes ``lengths[0] .. lengths[-1] + 1``; `depth`
+    is the larger overall size of the section.
     """
 
     name: str
@@ -52,6 +53,7 @@ class Face:
     h: Array
     strips: tuple[Strip, ...]
     ends: tuple[Strip, ...]
+    depth: float
 
     def _stacked(self) -> tuple[Array, Array]:
         h = np.repeat(self.h, 2) / 2.0

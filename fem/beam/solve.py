@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from fem.beam.actions import Actions
 from fem.beam.along import SectionSolver
 from fem.beam.equations import Row, present, solve_line
-from fem.beam.figures import Solved, all_figures, diagram, properties_table, shear_share
+from fem.beam.figures import Solved, all_figures, diagram, energies, properties_table
 from fem.beam.mesh import BeamMesh
 from fem.beam.result import BeamResult
 from fem.beam.section import sections_properties
@@ -60,7 +60,8 @@ def solve_beam(
         diagrams={case.name: diagram(solved, k) for k, case in enumerate(part.cases)},
         properties=properties_table(mesh),
         mass=mass,
-        shear_share={case.name: shear_share(solved, k) for k, case in enumerate(part.cases)},
+        shear_share={case.name: float(e[1] / e.sum()) if e.sum() else 0.0
+                     for case, e in zip(part.cases, energies(solved).T, strict=True)},
         slenderness=mesh.length / depth,
         notes=tuple(notes),
         seconds={"sections": built - clock, "solve": time.perf_counter() - built},

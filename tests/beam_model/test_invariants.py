@@ -124,7 +124,7 @@ def test_reciprocity(full, solve):
 
     a = tip(force=(0.0, 1000.0, 0.0))("arm.end", "rotation", "x", "one") * 1e5
     b = tip(moment=(1e5, 0.0, 0.0))("arm.end", "displacement", "y", "one") * 1000.0
-    assert a == pytest.approx(b, rel=1e-9)
+    assert a == pytest.approx(b, rel=1e-8)  # ten times what rounding in the equations left
     assert abs(a) > 1e-3
 
 
@@ -143,7 +143,7 @@ def test_a_turned_part_gives_turned_figures(full, solve):
     loads = [RegionLoad("f", "arm.end", turn((100.0, -50.0, -200.0)), turn((1e3, 2e3, 3e3)))]
     moved = replace(plain, loads=tuple(loads), cases=(Case("c", {"f": 1.0}),), members=(replace(
         m, start=tuple(R @ np.array(m.start) + shift), end=tuple(R @ np.array(m.end) + shift), up=turn(m.up)),))
-    a, b = solve(replace(plain, cases=(Case("tip", {"tip": 1.0}),))), solve(moved)
+    a, b = solve(replace(plain, loads=LOADS[:1], cases=(Case("tip", {"tip": 1.0}),))), solve(moved)
     for quantity in ("displacement", "rotation"):
         want = R @ np.array([a("arm.end", quantity, c, "tip") for c in "xyz"])
         assert np.array([b("arm.end", quantity, c) for c in "xyz"]) == pytest.approx(want, rel=1e-9)
