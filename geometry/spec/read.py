@@ -28,6 +28,8 @@ def read_part(path: str | Path) -> Part:
         size = file.stat().st_size
         if file.is_dir():
             raise _file_problem(file, "a folder", "a TOML file", "Name the file in it")
+        if not file.is_file():
+            raise _file_problem(file, "not an ordinary file", "a TOML file")
         if size > LARGEST_FILE:
             raise _file_problem(file, f"{size} bytes", f"at most {LARGEST_FILE} bytes", "Is it a spec at all?")
         with file.open("rb") as stream:

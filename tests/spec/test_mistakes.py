@@ -68,7 +68,7 @@ I_SECTION = 'shape = "I", depth = "root_depth", width = "46 mm", web = "6 mm", f
         ("force = [", "force_ = [", "loads.camera.force_", 'Did you mean "force"'),
         ('force = ["0 N", "0 N", "-180 N"]', "", "loads.camera", "one of point, force_per_length"),
         ("force = [", 'pressure = "1 MPa"\nforce = [', "loads.camera.force", "two loads"),
-        ("[limits]", '[limits.t]\nquantity = "deflection"\nat = "tpi"\nmax = "1 mm"\n[limits]', "limits.t.at", "arm.end"),
+        ("[limits]", '[limits.t]\nquantity = "deflection"\nat = "tpi"\nmax = "1 mm"\n[limits]', "limits.t.at", "end"),
         # parameters
         ('bore       = "14 mm"', 'bore = "tip_dept / 2"', "parameters.bore", "Did you mean tip_depth"),
         ('bore       = "14 mm"', 'bore = "bore / 2"', "parameters.bore", "bore -> bore"),

@@ -207,7 +207,8 @@ def test_defaults_of_anchor_and_up() -> None:
 def test_limits_with_names_of_their_own() -> None:
     part = part_from_text(
         CANTILEVER + '\n[limits.sag]\nquantity = "relative_displacement"\nat = "middle"\nrelative_to = "bar.end"\n'
-        'component = "z"\nmax = "1 mm"\ncases = ["tip_force"]\n[limits.push]\nquantity = "reaction"\nat = "wall"\nmax = "1 kN"\n'
+        'component = "z"\nmax = "1 mm"\ncases = ["tip_force"]\n'
+        '[limits.push]\nquantity = "reaction"\nat = "wall"\nmax = "1 kN"\n'
         '[places.middle]\nat = "reach / 2"\n'
     )
     sag, push = part.limits[2:]
