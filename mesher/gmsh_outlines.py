@@ -35,41 +35,62 @@ def mesh_all(job: dict[str, Any]) -> tuple[dict[str, Any], dict[str, Any]]:
     with session():
         gmsh.option.setNumber("Mesh.ElementOrder", 2)
         gmsh.option.setNumber("Mesh.SecondOrderLinear", 0)
-        gmsh.option.setNumber("Mesh.Algorithm", 6)
         gmsh.option.setNumber("Mesh.MeshSizeExtendFromBoundary", 0)
         gmsh.option.setNumber("Mesh.MeshSizeFromPoints", 0)
-        gmsh.option.setNumber("Mesh.MeshSizeFromCurvature", 16)
+        # Not gmsh's sizes from curvature: with them it once hung on a quarter circle.
+        gmsh.option.setNumber("Mesh.MeshSizeFromCurvature", 0)
         for number, outline in enumerate(job["outlines"]):
-            gmsh.clear()
-            _mesh_one(outline, arrays, number)
+            arrays |= {f"{name}{number}": values for name, values in _mesh_with_fallback(outline, number).items()}
         return {"version": kernel_version()}, arrays
 
 
-def _mesh_one(outline: dict[str, Any], arrays: dict[str, Any], number: int) -> None:
+def _mesh_with_fallback(outline: dict[str, Any], number: int) -> dict[str, Any]:
+    """Frontal-Delaunay, then MeshAdapt, then Delaunay: the first that gives a mesh."""
+    reasons = []
+    for algorithm in (6, 1, 5):
+        gmsh.clear()
+        gmsh.option.setNumber("Mesh.Algorithm", algorithm)
+        try:
+            return _mesh_one(outline)
+        except Exception as error:  # noqa: BLE001 - gmsh raises bare Exception
+            reasons.append(str(error))
+    raise ValueError(f"outline {number}: " + "; ".join(dict.fromkeys(reasons)))
+
+
+def _mesh_one(outline: dict[str, Any]) -> dict[str, Any]:
     size = outline["size"]
     points = _Points(1e-7 * outline["extent"])
     curves: list[list[list[int]]] = [[_add_edge(edge, points) for edge in loop] for loop in outline["loops"]]
     loops = [gmsh.model.geo.addCurveLoop([c for edge in loop for c in edge]) for loop in curves]
     gmsh.model.geo.addPlaneSurface(loops)
     gmsh.model.geo.synchronize()
-    _set_size(size, [points.tag(*corner) for corner in outline["corners"]])
+    arcs: dict[float, list[int]] = {}
+    for edges, loop in zip(outline["loops"], curves, strict=True):
+        for edge, made in zip(edges, loop, strict=True):
+            if edge["centre"] is not None:
+                arcs.setdefault(round(math.dist(edge["start"], edge["centre"]), 9), []).extend(made)
+    _set_size(size, [points.tag(*corner) for corner in outline["corners"]], arcs)
     gmsh.model.mesh.generate(2)
 
     tags, coords, _ = gmsh.model.mesh.getNodes()
     _, cells = gmsh.model.mesh.getElementsByType(9)
-    arrays[f"tags{number}"] = tags.astype(np.int64)
-    arrays[f"points{number}"] = coords.reshape(-1, 3)
-    arrays[f"cells{number}"] = cells.astype(np.int64).reshape(-1, 6)
+    if len(cells) == 0:
+        raise ValueError("the kernel made no triangles")
     boundary, owner = [], []
     for loop_index, loop in enumerate(curves):
         for edge_index, edge in enumerate(loop):
             for curve in edge:
-                _, lines = gmsh.model.mesh.getElementsByType(8, curve)
-                lines = lines.astype(np.int64).reshape(-1, 3)
+                _, found = gmsh.model.mesh.getElementsByType(8, curve)
+                lines = found.astype(np.int64).reshape(-1, 3)
                 boundary.append(lines)
                 owner.append(np.tile((loop_index, edge_index), (len(lines), 1)))
-    arrays[f"boundary{number}"] = np.concatenate(boundary)
-    arrays[f"owner{number}"] = np.concatenate(owner)
+    return {
+        "tags": tags.astype(np.int64),
+        "points": coords.reshape(-1, 3),
+        "cells": cells.astype(np.int64).reshape(-1, 6),
+        "boundary": np.concatenate(boundary),
+        "owner": np.concatenate(owner),
+    }
 
 
 def _add_edge(edge: Edge, points: _Points) -> list[int]:
@@ -94,17 +115,32 @@ def _add_edge(edge: Edge, points: _Points) -> list[int]:
     ]
 
 
-def _set_size(size: float, corners: list[int]) -> None:
-    """Even size, with a quarter of it at re-entrant corners."""
+def _set_size(size: float, corners: list[int], arcs: dict[float, list[int]]) -> None:
+    """Even size; a quarter of it at re-entrant corners, 16 elements to the full turn at arcs (by radius)."""
     field = gmsh.model.mesh.field
+    everywhere = field.add("MathEval")
+    field.setString(everywhere, "F", repr(float(size)))
+    parts = [everywhere]
     if corners:
-        near = field.add("Distance")
-        field.setNumbers(near, "PointsList", corners)
-        background = field.add("Threshold")
-        for name, value in (("InField", near), ("SizeMin", size / 4), ("SizeMax", size), ("DistMin", 0.0),
-                            ("DistMax", 2.5 * size)):
-            field.setNumber(background, name, value)
-    else:
-        background = field.add("MathEval")
-        field.setString(background, "F", repr(float(size)))
+        parts.append(_graded("PointsList", corners, size / 4, size))
+    for radius, curves in arcs.items():
+        fine = 2 * math.pi * radius / 16
+        if fine < size:
+            parts.append(_graded("CurvesList", curves, fine, size))
+    background = field.add("Min")
+    field.setNumbers(background, "FieldsList", parts)
     field.setAsBackgroundMesh(background)
+
+
+def _graded(kind: str, tags: list[int], fine: float, size: float) -> int:
+    """Field from `fine` at points or curves to `size`, growing by 0.3 mm for each mm."""
+    field = gmsh.model.mesh.field
+    near = field.add("Distance")
+    field.setNumbers(near, kind, tags)
+    field.setNumber(near, "Sampling", 40)
+    graded = field.add("Threshold")
+    reach = (size - fine) / 0.3
+    values = {"InField": near, "SizeMin": fine, "SizeMax": size, "DistMin": 0.0, "DistMax": reach}
+    for name, value in values.items():
+        field.setNumber(graded, name, value)
+    return int(graded)
