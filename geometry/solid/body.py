@@ -14,6 +14,7 @@ from OCP.TopTools import TopTools_ListOfShape
 from geometry.outline import Arc, Edge, Line, Point
 from geometry.part import Member
 from geometry.problem import SolidError
+from geometry.solid.eased import eased, edge_name
 from geometry.solid.integrals import section_integrals
 from geometry.solid.kernel import one_solid
 from geometry.solid.lofts import lofted, radius_of, sweep_of
@@ -98,7 +99,6 @@ def line_point(member: Member, dims: Dims, profile: Profile) -> Point:
             "I": 0.0,
             "tee": 0.0,
             "channel": 0.5 * dims.get("web", 0.0),
-            "angle": 0.5 * dims.get("thickness", 0.0),
         }
         if shape not in middle:
             raise SolidError(f"members.{member.name}.line_at: a {shape} has no web; use origin or centroid.")
@@ -146,6 +146,7 @@ def pieces_of(member: Member, stretches: Sequence[Stretch]) -> list[Piece]:
     """
     shape, outline = member.section.shape, member.section.outline
     at_start = stretches[0].first
+    radii = {edge_name(e.edges): e.radius for e in member.edge_radii if edge_name(e.edges)}
     y0, z0 = line_point(member, at_start, profile_of(shape, at_start, outline))
     sign = {"top": 0.5, "centre": 0.0, "bottom": -0.5}[member.anchor]
 
@@ -153,7 +154,7 @@ def pieces_of(member: Member, stretches: Sequence[Stretch]) -> list[Piece]:
         return (-y0, sign * (_depth(shape, at_start) - _depth(shape, dims)) - z0)
 
     def placed(dims: Dims) -> Profile:
-        return moved(profile_of(shape, dims, outline), *origin(dims))
+        return moved(eased(profile_of(shape, dims, outline), radii), *origin(dims))
 
     return [Piece(s, placed(s.first), placed(s.last), origin(s.first), origin(s.last)) for s in stretches]
 

@@ -96,11 +96,11 @@ def _cut(work: _Work) -> None:
         tools = [t for t in work.tools if t.cut is cut]
         volume = sum(tool_volume(t, work.pieces) for t in tools)
         overlap = sum(_shared(t, d, work.reach) for t in tools for d in done)
-        overlap += sum(r.size for t in tools for r in work.radii if _touches(t, r))
+        rounded = sum(r.size for t in tools for r in work.radii if _touches(t, r))
         what = f"cut {work.member.name}.{cut.name}"
-        work.solid, _ = cut_out(work.solid, tools, volume, overlap, what)
+        work.solid, _ = cut_out(work.solid, tools, volume, (overlap, rounded), what)
         work.estimate -= volume
-        work.slack += CUT_TOLERANCE * volume + overlap
+        work.slack += CUT_TOLERANCE * volume + overlap + rounded
         done += tools
 
 

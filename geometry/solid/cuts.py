@@ -239,10 +239,13 @@ def _removed_area(tool: Tool, pieces: Sequence[Piece], x: float, fixed: int) -> 
     return float(area)
 
 
-def cut_out(solid: Any, tools: Sequence[Tool], volume: float, overlap: float, what: str) -> tuple[Any, float]:
+def cut_out(
+    solid: Any, tools: Sequence[Tool], volume: float, spare: tuple[float, float], what: str
+) -> tuple[Any, float]:
     """`solid` less `tools`, and the volume it lost (mm^3).
 
-    `volume` is the estimate of that loss; earlier cuts may have taken up to `overlap` of it already.
+    `volume` is the estimate of that loss. `spare` holds what earlier cuts may have taken of it, and what radii may
+    have taken or added.
 
     Raises
     ------
@@ -263,7 +266,8 @@ def cut_out(solid: Any, tools: Sequence[Tool], volume: float, overlap: float, wh
     if lost <= 1e-9 * volume_of(solid)[0]:
         raise SolidError(f"{what}: it meets no material; check its place, its offset and the wall it passes.")
     slack = TOLERANCE * volume
-    if not volume - overlap - slack <= lost <= volume + slack:
+    overlap, radii = spare
+    if not volume - overlap - radii - slack <= lost <= volume + radii + slack:
         raise SolidError(
             f"{what}: it removed {lost:.6g} mm^3 but should remove {volume:.6g} mm^3 (tolerance {TOLERANCE:.0%}); "
             "the geometry kernel failed on it: move or resize it slightly."

@@ -6,6 +6,7 @@ import math
 from collections.abc import Callable, Mapping, Sequence
 
 from geometry.part import Member
+from geometry.solid.eased import eased, edge_name
 from geometry.solid.integrals import section_integrals
 from geometry.solid.profile import free_profile
 from geometry.solid.stretches import Stretch
@@ -51,16 +52,29 @@ _AREAS: dict[str, Callable[[Dims], float]] = {
 }
 
 
+def _replaced(shape: str, name: str, d: Dims) -> float:
+    """Radius that an edge radius takes the place of, mm."""
+    if shape in ("rectangle", "box"):
+        return d.get("corner_radius", 0.0)
+    return d.get("toe_radius", 0.0) if (shape, name) == ("angle", "top right") else 0.0
+
+
 def gross_volume(member: Member, stretches: Sequence[Stretch]) -> float:
     """Volume (mm^3) of the uncut member: closed areas of its sections, Simpson over each stretch.
 
     Every dimension is linear along a stretch, so the area is a quadratic and Simpson's rule is exact
     (but for a box whose inner radius is left out and runs to 0 within a stretch).
     """
+    shape = member.section.shape
+    radii = {edge_name(e.edges): e.radius for e in member.edge_radii if edge_name(e.edges)}
     if member.section.outline is not None:
-        area = section_integrals(free_profile(member.section.outline)).area
+        area = section_integrals(eased(free_profile(member.section.outline), radii)).area
         return sum(area * (s.end - s.start) for s in stretches)
-    area_of = _AREAS[member.section.shape]
+
+    def area_of(d: Dims) -> float:
+        eased_off = sum(_CORNER * (r * r - _replaced(shape, name, d) ** 2) for name, r in radii.items())
+        return _AREAS[shape](d) - eased_off
+
     return sum(
         (s.end - s.start) / 6.0 * (area_of(s.first) + 4.0 * area_of(s.at(0.5 * (s.start + s.end))) + area_of(s.last))
         for s in stretches

@@ -15,6 +15,7 @@ from geometry.part import Member
 from geometry.solid.body import Piece, piece_at
 from geometry.solid.chords import inside
 from geometry.solid.cuts import Tool
+from geometry.solid.eased import edge_name
 from geometry.solid.edges import edge_marks
 from geometry.solid.frame import Frame
 from geometry.solid.lofts import radius_of
@@ -149,6 +150,9 @@ def size_hints(
             if s.wall == "root fillet" and isinstance(s.edge, Arc)
         )
         hints.append(SizeHint("fillet", "root fillet", tuple(root), radius, thin))
+    for name, radius in ((edge_name(e.edges), e.radius) for e in member.edge_radii if edge_name(e.edges)):
+        along = tuple(i for i, n in enumerate(names) if f"~edge radius {name}" in n)
+        hints.append(SizeHint("rim", f"edge radius {name}", along, radius, thin))
     taken = {i for _, faces in tool_faces for i in faces}
     spare = [i for i, n in enumerate(names) if not n and i not in taken]
     for made in radii:

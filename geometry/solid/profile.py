@@ -264,7 +264,7 @@ def free_profile(outline: Outline) -> Profile:
         )
         return Side(edge, on)
 
-    inner = tuple(tuple(Side(e, ("bore",)) for e in loop) for loop in outline.inner)
+    inner = tuple(tuple(Side(e) for e in loop) for loop in outline.inner)
     return Profile(tuple(named(e) for e in outline.outer), inner)
 
 

@@ -13,12 +13,11 @@ from geometry.part import EdgeRadius, Member
 from geometry.problem import SolidError
 from geometry.solid.body import Piece
 from geometry.solid.cuts import Tool
+from geometry.solid.eased import NAMES, edge_name
 from geometry.solid.edges import SMOOTH, EdgeMark, edge_marks
 from geometry.solid.fillets import fillet_area, fillet_volume, filleted
-from geometry.solid.regions import TOLERANCE, end_label, on_tool, side_labels
+from geometry.solid.regions import TOLERANCE, end_label, on_tool
 from geometry.solid.samples import sample_faces
-
-SIDES = ("top", "bottom", "left", "right")
 
 
 @dataclass(frozen=True, slots=True)
@@ -63,7 +62,9 @@ def shoulder_fillets(solid: Any, member: Member, pieces: Sequence[Piece]) -> tup
 def edge_radii(
     solid: Any, member: Member, pieces: Sequence[Piece], tools: Sequence[Tool], on_cuts: bool
 ) -> tuple[Any, list[Radius]]:
-    """`solid` with the declared edge radii, either those on cuts' rims or all the others.
+    """`solid` with the declared edge radii, either those on cuts' rims or those on the rims of its ends.
+
+    Radii along the member are part of its section (`geometry.solid.eased`).
 
     Raises
     ------
@@ -72,9 +73,8 @@ def edge_radii(
     """
     cuts = {name for t in tools for name in (t.cut.name, t.cut.group)}
     done: list[Radius] = []
-    # Edges along the member before the rims of its ends: the rim then follows the rounded corner.
-    for wanted in sorted(member.edge_radii, key=lambda e: e.edges in ("start", "end")):
-        if (wanted.edges in cuts) != on_cuts:
+    for wanted in member.edge_radii:
+        if edge_name(wanted.edges) or (wanted.edges in cuts) != on_cuts:
             continue
         chosen = _chooser(solid, member, pieces, tools, wanted)
         marks = [m for m in edge_marks(solid) if m.angle > SMOOTH and chosen(m)]
@@ -89,19 +89,14 @@ def _chooser(
 ) -> Callable[[EdgeMark], bool]:
     samples = sample_faces(solid)
     length = pieces[-1].stretch.end
-    words = set(wanted.edges.split())
     if wanted.edges in ("start", "end"):
         at_end = [end_label(s, length) == wanted.edges for s in samples]
         return lambda m: at_end[m.faces[0]] != at_end[m.faces[1]]
-    if len(words) == 2 and words <= set(SIDES):
-        labels = [side_labels(s, pieces) for s in samples]
-        a, b = words
-        return lambda m: any(a in labels[i] and b in labels[j] for i, j in (m.faces, m.faces[::-1]))
     own = [t for t in tools if wanted.edges in (t.cut.name, t.cut.group)]
     if not own:
         raise SolidError(
-            f"members.{member.name}: radius on {wanted.edges!r}: no such edges; allowed: start, end, two of "
-            f"{', '.join(SIDES)}, or a cut ({', '.join(sorted({t.cut.name for t in tools})) or 'none'})."
+            f"members.{member.name}: radius on {wanted.edges!r}: no such edges; allowed: start, end, "
+            f"{', '.join(NAMES)}, or a cut ({', '.join(sorted({t.cut.name for t in tools})) or 'none'})."
         )
     inner = [any(on_tool(s, t) for t in own) for s in samples]
     return lambda m: inner[m.faces[0]] != inner[m.faces[1]]

@@ -67,7 +67,7 @@ def test_step_in_depth_and_width_with_a_radius_all_round() -> None:
     assert solid.sharp_edges == ()
 
 
-@pytest.mark.parametrize("edges", ["top left", "top right", "bottom left", "bottom right", "left top"])
+@pytest.mark.parametrize("edges", ["top left", "top right", "bottom left", "bottom right"])
 def test_radius_on_one_edge_along_the_member(edges: str) -> None:
     solid = build_solid(make_part("rectangle", BAR, 300.0, edge_radii=(EdgeRadius(edges, 5.0),)))
     assert solid.volume == pytest.approx(300 * (2400 - (1 - math.pi / 4) * 25), rel=1e-9)
@@ -106,3 +106,38 @@ def test_a_radius_that_does_not_fit_says_which_edges_and_what_fits() -> None:
 def test_unknown_edges_are_refused() -> None:
     with pytest.raises(SolidError, match="'middle': no such edges; allowed: start, end"):
         build_solid(make_part("rectangle", BAR, 300.0, edge_radii=(EdgeRadius("middle", 2.0),)))
+
+
+def test_edge_radius_on_a_taper_keeps_its_radius_in_the_section() -> None:
+    dims = {"depth": 60.0, "width": 40.0, "web": 6.0, "flange": 8.0, "root_radius": 4.0}
+    radii = (EdgeRadius("bottom left", 2.0), EdgeRadius("right top", 3.0))
+    more = {"stations": [(300.0, {"depth": 40.0})], "line_at": "top", "anchor": "top"}
+    plain = build_solid(make_part("tee", dims, 300.0, **more))
+    solid = build_solid(make_part("tee", dims, 300.0, edge_radii=radii, **more))
+    assert plain.volume - solid.volume == pytest.approx(300 * (1 - math.pi / 4) * (4 + 9), rel=1e-6)
+    assert region_area(solid, "arm.bottom") == pytest.approx(4.0 * math.hypot(300, 20), rel=1e-9)
+    assert {h.label for h in solid.hints if h.kind == "rim"} == {"edge radius bottom left", "edge radius top right"}
+
+
+def test_edge_radius_replaces_the_corner_radius_and_the_end_rim_follows_it() -> None:
+    radii = (EdgeRadius("top left", 8.0), EdgeRadius("end", 2.0))
+    solid = build_solid(make_part("rectangle", BAR | {"corner_radius": 3.0}, 300.0, edge_radii=radii[:1]))
+    assert solid.volume == pytest.approx(300 * (2400 - (1 - math.pi / 4) * (64 + 3 * 9)), rel=1e-9)
+    both = build_solid(make_part("rectangle", BAR | {"corner_radius": 3.0}, 300.0, edge_radii=radii))
+    # The end face is the section less 2 mm all round: radii 6 and 1.
+    assert region_area(both, "arm.end") == pytest.approx(56 * 36 - (1 - math.pi / 4) * (36 + 3), rel=1e-6)
+
+
+def test_edge_radius_that_does_not_fit_says_what_does() -> None:
+    with pytest.raises(
+        SolidError, match="top left: a radius of 50 mm does not fit; the largest that fits is about 40 mm"
+    ):
+        build_solid(make_part("rectangle", BAR, 300.0, edge_radii=(EdgeRadius("top left", 50.0),)))
+
+
+def test_hole_through_a_filleted_shoulder() -> None:
+    stations = step(200, {"depth": 60}, {"depth": 40}, 4.0)
+    solid = build_solid(
+        make_part("rectangle", BAR, 500.0, stations=stations, cuts=(cut("h", "hole", "z", "all", 203, 0, 10),))
+    )
+    assert region_area(solid, "arm.h") > math.pi * 10 * 40

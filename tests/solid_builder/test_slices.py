@@ -132,4 +132,4 @@ def test_edge_radius_along_a_tapered_i_and_its_patch() -> None:
         patches=(Patch("p", "top", 100, 200),),
     )
     solid = build_solid(part)
-    assert region_area(solid, "arm.p") == pytest.approx(100 * 44 * np.hypot(300, 10) / 300, rel=1e-3)
+    assert region_area(solid, "arm.p") == pytest.approx(100 * 44 * np.hypot(300, 10) / 300, rel=1e-9)
