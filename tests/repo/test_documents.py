@@ -113,6 +113,12 @@ def test_links_resolve(document: str) -> None:
         assert not anchor or anchor in heading_anchors(file), target
 
 
+@pytest.mark.parametrize("document", DOCUMENTS)
+def test_named_files_and_folders_exist(document: str) -> None:
+    named = re.findall(r"`((?:geometry|mesher|fem|studies|tests)/[\w/.]*)`", text_of(document))
+    assert [name for name in named if not (ROOT / name).exists()] == []
+
+
 def test_the_example_in_the_readme_is_the_demo() -> None:
     """Comments apart, the block that the README reads line by line is the file that `./start demo` checks."""
     found = re.search(r"^demo=\$root/(\S+)$", START, re.MULTILINE)
