@@ -9,8 +9,8 @@ import pytest
 from fem.beam.outlines import Corner, moved, outline_of, rounded_polygon, turned
 from fem.beam.section import mesh_size, properties_on_mesh, saint_venant, shear_stress_at
 from fem.beam.section.compute import as_mesh
-from fem.beam.section.meshing import mesh_sections
 from geometry.outline import Arc, Line, Outline
+from mesher import mesh_outlines
 
 _I = ("depth", "width", "web", "flange", "root_radius")
 
@@ -60,7 +60,7 @@ OUTLINES = {
 @pytest.fixture(scope="module")
 def meshes():
     names = list(OUTLINES)
-    found = mesh_sections([OUTLINES[n] for n in names], [mesh_size(OUTLINES[n]) for n in names])
+    found = mesh_outlines([OUTLINES[n] for n in names], [mesh_size(OUTLINES[n]) for n in names])
     return {n: as_mesh(m) for n, m in zip(names, found, strict=True)}
 
 
@@ -238,7 +238,7 @@ def test_the_same_mesh_turned_gives_the_same_to_rounding(meshes):
 def test_the_stated_error_covers_the_error_made(properties):
     """Against a mesh of half the size."""
     names = ["tee", "angle"]
-    fine = mesh_sections([OUTLINES[n] for n in names], [mesh_size(OUTLINES[n]) / 2 for n in names])
+    fine = mesh_outlines([OUTLINES[n] for n in names], [mesh_size(OUTLINES[n]) / 2 for n in names])
     for name, mesh in zip(names, fine, strict=True):
         p, q = properties(name), properties_on_mesh(OUTLINES[name], as_mesh(mesh), 0.3)
         change = max(abs(p.J / q.J - 1), abs(p.shear_compliance / q.shear_compliance - 1)[np.diag_indices(2)].max())

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Sequence
+from itertools import pairwise
 
 from fem.beam.section.integrals import sweep
 from geometry.outline import Arc, Edge, Line, Outline, Point
@@ -86,7 +87,7 @@ def encloses(loop: Sequence[Edge], point: Point) -> bool:
     total = 0.0
     for edge in loop:
         spots = [edge.start, *_along(edge, 24), edge.end]
-        for (ay, az), (by, bz) in zip(spots[:-1], spots[1:], strict=True):
+        for (ay, az), (by, bz) in pairwise(spots):
             ay, az, by, bz = ay - point[0], az - point[1], by - point[0], bz - point[1]
             total += math.atan2(ay * bz - az * by, ay * by + az * bz)
     return abs(total) > math.pi
@@ -118,7 +119,7 @@ def _clear(loops: Sequence[Loop], axis: int, level: float, above: bool) -> float
 def _split(edge: Edge, axis: int, level: float) -> list[Edge]:
     cuts = crossings(edge, axis, level)
     stops = [edge.start, *cuts, edge.end]
-    pairs = zip(stops[:-1], stops[1:], strict=True)
+    pairs = pairwise(stops)
     if isinstance(edge, Line):
         return [Line(a, b) for a, b in pairs]
     return [Arc(a, b, edge.centre, edge.ccw) for a, b in pairs]

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from typing import NamedTuple
 
 from geometry.outline import Arc, Edge, Line, Outline, Point
@@ -36,7 +36,7 @@ def rounded_polygon(corners: Sequence[Corner]) -> tuple[Edge, ...]:
     n = len(corners)
     pieces = [_corner_arc(corners[i - 1], corners[i], corners[(i + 1) % n]) for i in range(n)]
     edges: list[Edge] = []
-    for i, (before, corner, after) in enumerate(pieces):
+    for i, (_, corner, after) in enumerate(pieces):
         if corner is not None:
             edges.append(corner)
         following = pieces[(i + 1) % n][0]
@@ -50,7 +50,6 @@ def rounded_polygon(corners: Sequence[Corner]) -> tuple[Edge, ...]:
             )
         if along > _TINY * length * max(length, 1.0):
             edges.append(Line(after, following))
-        del before
     return tuple(edges)
 
 
@@ -114,7 +113,7 @@ def turned(outline: Outline, angle: float) -> Outline:
     return _mapped(outline, point)
 
 
-def _mapped(outline: Outline, point) -> Outline:  # type: ignore[no-untyped-def]
+def _mapped(outline: Outline, point: Callable[[Point], Point]) -> Outline:
     def loop(edges: Sequence[Edge]) -> tuple[Edge, ...]:
         return tuple(
             Line(point(e.start), point(e.end))

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import pairwise
 from typing import Literal
 
 from fem.beam.outlines.loops import OutlineError, moved
 from fem.beam.outlines.shapes import outline_of, with_defaults
+from fem.beam.section.integrals import outline_integrals
 from geometry.outline import Outline
 from geometry.part import Member
 
@@ -43,7 +45,7 @@ def _knots(member: Member, name: str) -> list[tuple[float, float, float]]:
 
 
 def _value_and_slope(knots: Sequence[tuple[float, float, float]], x: float, side: Side) -> tuple[float, float]:
-    for (a, _, first), (b, last, _) in zip(knots[:-1], knots[1:], strict=True):
+    for (a, _, first), (b, last, _) in pairwise(knots):
         if x < b or (x == b and side == "before"):
             if x < a or (x == a and side == "before" and a > 0.0):
                 continue
@@ -100,8 +102,6 @@ def line_offset(member: Member) -> tuple[float, float]:
 
     Taken on the section itself, before edge radii.
     """
-    from fem.beam.section.integrals import outline_integrals
-
     section, where = member.section, member.line_at
     start = outline_of(section.shape, dims_at(member, 0.0), section.outline)
     if where == "origin":

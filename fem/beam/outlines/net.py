@@ -20,7 +20,9 @@ _HALVES = {
 through all that lies in its way: a tool through the web of an I meets nothing else."""
 
 
-def net_section(member: Member, x: float, side: Side = "after", cuts: tuple[Cut, ...] | None = None) -> tuple[Outline, ...]:
+def net_section(
+    member: Member, x: float, side: Side = "after", cuts: tuple[Cut, ...] | None = None
+) -> tuple[Outline, ...]:
     """Pieces of the section that the cuts leave at `x`, in member axes from the declared line, mm.
 
     Exact for lines and arcs. Pieces are for integrals over the whole section (they may touch where a cut goes

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 
 from fem.beam.outlines.loops import Corner, OutlineError, circle, reversed_loop, rounded_polygon
+from fem.beam.outlines.rounding import round_vertex
 from geometry.outline import Outline
 from geometry.part import Shape
 
@@ -37,7 +38,9 @@ def with_defaults(shape: Shape, dims: Dims) -> dict[str, float]:
     return filled
 
 
-def outline_of(shape: Shape, dims: Dims, free: Outline | None = None, edges: Mapping[str, float] | None = None) -> Outline:
+def outline_of(
+    shape: Shape, dims: Dims, free: Outline | None = None, edges: Mapping[str, float] | None = None
+) -> Outline:
     """Outline of a shape in its own coordinates (see `geometry.part.Shape`), radii as arcs.
 
     Parameters
@@ -167,8 +170,6 @@ def _with_edges(corners: list[Corner], edges: Mapping[str, float]) -> list[Corne
 def _round_free(free: Outline, edges: Mapping[str, float]) -> Outline:
     if not edges:
         return free
-    from fem.beam.outlines.rounding import round_vertex
-
     points = [e.start for e in free.outer]
     targets = {_edge_index(points, name): radius for name, radius in edges.items()}
     return Outline(round_vertex(free.outer, targets), free.inner)

@@ -10,12 +10,11 @@ from numpy.typing import NDArray
 from skfem import MeshTri2
 
 from fem.beam.section.integrals import outline_integrals, sweep
-from fem.beam.section.meshing import mesh_sections
 from fem.beam.section.points import values_at
 from fem.beam.section.properties import SectionProperties
 from fem.beam.section.saint_venant import SaintVenant, saint_venant
 from geometry.outline import Arc, Edge, Outline
-from mesher import OutlineMesh
+from mesher import OutlineMesh, mesh_outlines
 
 Array = NDArray[np.float64]
 
@@ -31,7 +30,7 @@ def sections_properties(
     """Properties of many outlines, meshed together in one child process."""
     if sizes is None:
         sizes = [mesh_size(outline) for outline in outlines]
-    meshes = mesh_sections(outlines, sizes)
+    meshes = mesh_outlines(outlines, sizes)
     return [properties_on_mesh(o, as_mesh(m), nu) for o, m in zip(outlines, meshes, strict=True)]
 
 

@@ -45,7 +45,8 @@ def locate(solved: SaintVenant, point: Array, candidates: int = 24) -> tuple[int
     for _ in range(12):
         shape = [element.lbasis(X, i) for i in range(6)]
         value = sum(nodes[:, i, near] * shape[i][0] for i in range(6))
-        jacobian = sum(nodes[:, None, i, near] * np.broadcast_to(np.asarray(shape[i][1]), X.shape)[None] for i in range(6))
+        slopes = [np.broadcast_to(np.asarray(slope), X.shape) for _, slope in shape]
+        jacobian = sum(nodes[:, None, i, near] * slopes[i][None] for i in range(6))
         X = X + np.linalg.solve(jacobian.transpose(2, 0, 1), (point[:, None] - value).T[:, :, None])[:, :, 0].T
         X = np.clip(X, -3.0, 3.0)
     outside = np.maximum(-X, 0.0).sum(axis=0) + np.maximum(X.sum(axis=0) - 1.0, 0.0)
