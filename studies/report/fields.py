@@ -79,7 +79,7 @@ def stress_picture(path: Path, part: Part, mesh: NamedMesh, case: str, von_mises
             frame.triad(axes, camera, right=camera is views[1])
             if camera is views[0]:
                 frame.scale_line(axes, canvas)
-            axes.set_title(side, fontsize=10, loc="left", color=frame.NEUTRAL)
+            axes.set_title(side, fontsize=10, loc="left", color=frame.NEUTRAL, pad=16)
             for number, peak in enumerate(peaks, start=1):
                 _mark(axes, canvas, camera.project(np.array([peak.point]))[0], str(number))
         figure.suptitle(f"{part.title}, case {case}: von Mises stress at the surface, largest {high:.4g} MPa"

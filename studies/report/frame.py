@@ -44,7 +44,7 @@ def page(width: float, height: float) -> Iterator[Any]:
 
 def save(figure: Any, path: Path) -> None:
     """Write a PNG; the same picture gives the same bytes."""
-    figure.savefig(path, dpi=DPI, metadata={"Software": None})
+    figure.savefig(path, dpi=DPI, metadata={"Software": None}, pil_kwargs={"compress_level": 4})
 
 
 def show(axes: Any, canvas: Canvas) -> None:

@@ -110,9 +110,12 @@ def headlines(result: CheckResult, case: str) -> list[Pair]:
 
 
 def _largest(pairs: Sequence[Pair]) -> list[Pair]:
-    """The largest pair of each component, of those that the judge could compare when there are any."""
+    """The largest pair of each component, of those that the judge could compare when there are any.
+
+    Sizes count to four digits, so that rounding does not choose among equal stations: the first one is taken.
+    """
     best: dict[str, Pair] = {}
-    for pair in sorted(pairs, key=lambda pair: (pair.judgement == "no beam value", -_size(pair))):
+    for pair in sorted(pairs, key=lambda pair: (pair.judgement == "no beam value", -float(f"{_size(pair):.3e}"))):
         best.setdefault(pair.key.component, pair)
     return list(best.values())
 
