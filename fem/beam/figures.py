@@ -41,6 +41,7 @@ def station_values(mesh: BeamMesh) -> Array:
 
 def all_figures(s: Solved) -> tuple[list[Figure], list[str]]:
     """Every figure of the beam model, and notes on those that it withholds."""
+    from fem.beam.notches import notch_figures
     from fem.beam.stress import nominal_stresses
 
     figures: list[Figure] = []
@@ -52,7 +53,8 @@ def all_figures(s: Solved) -> tuple[list[Figure], list[str]]:
         figures += nominal_stresses(s, k, case.name)
         figures.append(Figure(FigureKey(case.name, "", "strain_energy", ""), float(energy[k]), "N mm"))
     figures += _mass(s.mesh)
-    return figures, []
+    notched, notes = notch_figures(s)
+    return figures + notched, notes
 
 
 def places(mesh: BeamMesh) -> Iterator[tuple[str, float]]:

@@ -154,6 +154,7 @@ def _nodes(part: Part, member: Member, length: float) -> Array:
     """Nodes at everything that happens, and enough of them between."""
     marks = [0.0, length, *(k * length / 20 for k in range(21))]
     marks += [s.at for s in member.stations]
+    marks += [s.at + w * s.shoulder_fillet for s in member.stations for w in (-1.0, 1.0) if s.shoulder_fillet]
     for cut in member.cuts:
         a, b = extent(cut)
         # the net section changes like a square root at the rim of a round hole: nodes gather there

@@ -11,7 +11,7 @@ from fem.beam.section.compute import (
     sections_properties,
 )
 from fem.beam.section.integrals import OutlineIntegrals, outline_integrals
-from fem.beam.section.points import shear_stress_at
+from fem.beam.section.points import shear_stress_at, warping_at
 from fem.beam.section.properties import SectionProperties
 from fem.beam.section.saint_venant import SaintVenant, saint_venant
 
@@ -28,4 +28,5 @@ __all__ = [
     "section_properties",
     "sections_properties",
     "shear_stress_at",
+    "warping_at",
 ]

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from skfem import MeshTri2
 
 from fem.beam.section.integrals import outline_integrals, sweep
-from fem.beam.section.points import values_at
+from fem.beam.section.points import warping_at
 from fem.beam.section.properties import SectionProperties
 from fem.beam.section.saint_venant import SaintVenant, saint_venant
 from geometry.outline import Arc, Edge, Outline
@@ -48,17 +48,14 @@ def properties_on_mesh(outline: Outline, mesh: MeshTri2, nu: float) -> SectionPr
     solved, coarse = saint_venant(mesh, nu), saint_venant(mesh, nu, order=2)
     change = [abs(solved.J / coarse.J - 1), *np.abs(np.diag(solved.compliance) / np.diag(coarse.compliance) - 1)]
     extremes = exact.extremes
-    warping = values_at(solved, (extremes - solved.centroid).T)
     ys, zs = solved.shear_centre
-    from_centroid = extremes - solved.centroid
-    warping = warping - zs * from_centroid[:, 0] + ys * from_centroid[:, 1]
     return SectionProperties(
         area=exact.area, yc=exact.yc, zc=exact.zc, Iyy=exact.Iyy, Izz=exact.Izz, Iyz=exact.Iyz,
         I1=exact.I1, I2=exact.I2, principal_angle=exact.principal_angle,
         ys=exact.yc + float(ys), zs=exact.zc + float(zs), shear_compliance=solved.compliance,
         J=solved.J, Iw=solved.Iw, open_thin=is_open_thin(outline, extremes, solved), extremes=extremes,
         W_top=exact.W_top, W_bottom=exact.W_bottom, W_left=exact.W_left, W_right=exact.W_right,
-        torsion_stress=largest_torsion_stress(outline, solved), warping=warping, error=float(max(change)),
+        torsion_stress=largest_torsion_stress(outline, solved), warping=warping_at(solved, extremes.T), error=float(max(change)),
     )
 
 

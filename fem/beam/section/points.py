@@ -12,9 +12,12 @@ from fem.beam.section.saint_venant import SaintVenant
 Array = NDArray[np.float64]
 
 
-def values_at(solved: SaintVenant, points: Array) -> Array:
-    """(k,) warping function about the centroid, mm^2, at (2, k) points from the centroid, mm."""
-    return np.array([float(np.asarray(_one(solved, p).interpolate(solved.omega)).ravel()[0]) for p in points.T])
+def warping_at(solved: SaintVenant, points: Array) -> Array:
+    """(k,) warping function about the shear centre, mm^2, at (2, k) points in the outline's coordinates, mm."""
+    y, z = local = np.asarray(points, dtype=float) - solved.centroid[:, None]
+    ys, zs = solved.shear_centre
+    omega = np.asarray(_basis_at(solved, local).interpolate(solved.omega))[:, 0]
+    return np.asarray(omega - zs * y + ys * z)
 
 
 def shear_stress_at(solved: SaintVenant, points: Array) -> Array:
@@ -24,33 +27,35 @@ def shear_stress_at(solved: SaintVenant, points: Array) -> Array:
     triangle when it is off by less than 1e-3 of it (rounding on a curved edge), else ValueError.
     """
     local = np.asarray(points, dtype=float) - solved.centroid[:, None]
-    return np.stack([solved.shear_at(_one(solved, p))[:, :, 0, 0] for p in local.T], axis=-1)
+    return solved.shear_at(_basis_at(solved, local))[..., 0]
 
 
-def _one(solved: SaintVenant, point: Array) -> Basis:
-    """Basis with one quadrature point: the place of `point` in its triangle."""
-    element, X = locate(solved, point)
-    return Basis(solved.mesh, solved.basis.elem, elements=np.array([element]),
-                 quadrature=(X[:, None], np.array([1.0])))
+def _basis_at(solved: SaintVenant, points: Array) -> Basis:
+    """Basis whose k-th element, with its only quadrature point, holds point k (from the centroid)."""
+    elements, X = locate(solved, points)
+    return Basis(solved.mesh, solved.basis.elem, elements=elements, quadrature=(X[:, :, None], np.array([1.0])))
 
 
-def locate(solved: SaintVenant, point: Array, candidates: int = 24) -> tuple[int, Array]:
-    """Triangle that holds `point` (from the centroid) and its reference coordinates (2,), by Newton's method."""
+def locate(solved: SaintVenant, points: Array, candidates: int = 24) -> tuple[NDArray[np.int64], Array]:
+    """Triangles (k,) that hold points (2, k) from the centroid, and reference coordinates (2, k), by Newton's method."""
     mesh = solved.mesh
     nodes = mesh.doflocs[:, mesh.dofs.element_dofs]  # (2, 6, m)
-    _, near = cKDTree(nodes.mean(axis=1).T).query(point, k=min(candidates, nodes.shape[2]))
-    near = np.atleast_1d(near)
-    X = np.full((2, len(near)), 1.0 / 3.0)
+    _, near = cKDTree(nodes.mean(axis=1).T).query(points.T, k=min(candidates, nodes.shape[2]))
+    near = np.asarray(near).reshape(points.shape[1], -1)
+    X = np.full((2, *near.shape), 1.0 / 3.0)
     element = ElementTriP2()
     for _ in range(12):
         shape = [element.lbasis(X, i) for i in range(6)]
         value = sum(nodes[:, i, near] * shape[i][0] for i in range(6))
         slopes = [np.broadcast_to(np.asarray(slope), X.shape) for _, slope in shape]
         jacobian = sum(nodes[:, None, i, near] * slopes[i][None] for i in range(6))
-        X = X + np.linalg.solve(jacobian.transpose(2, 0, 1), (point[:, None] - value).T[:, :, None])[:, :, 0].T
-        X = np.clip(X, -3.0, 3.0)
+        left = np.moveaxis(points[:, :, None] - value, 0, -1)[..., None]
+        step = np.linalg.solve(np.moveaxis(jacobian, (0, 1), (-2, -1)), left)[..., 0]
+        X = np.clip(X + np.moveaxis(step, -1, 0), -3.0, 3.0)
     outside = np.maximum(-X, 0.0).sum(axis=0) + np.maximum(X.sum(axis=0) - 1.0, 0.0)
-    best = int(np.argmin(outside))
-    if outside[best] > 1e-3:
-        raise ValueError(f"the point ({point[0]:g}, {point[1]:g}) mm from the centroid lies outside the section.")
-    return int(near[best]), X[:, best]
+    best = np.argmin(outside, axis=1)
+    rows = np.arange(len(best))
+    for k in rows[outside[rows, best] > 1e-3]:
+        y, z = points[:, k] + solved.centroid
+        raise ValueError(f"the point ({y:g}, {z:g}) mm lies outside the section.")
+    return near[rows, best], X[:, rows, best]
