@@ -55,7 +55,8 @@ def properties_on_mesh(outline: Outline, mesh: MeshTri2, nu: float) -> SectionPr
         ys=exact.yc + float(ys), zs=exact.zc + float(zs), shear_compliance=solved.compliance,
         J=solved.J, Iw=solved.Iw, open_thin=is_open_thin(outline, extremes, solved), extremes=extremes,
         W_top=exact.W_top, W_bottom=exact.W_bottom, W_left=exact.W_left, W_right=exact.W_right,
-        torsion_stress=largest_torsion_stress(outline, solved), warping=warping_at(solved, extremes.T), error=float(max(change)),
+        torsion_stress=largest_torsion_stress(outline, solved), warping=warping_at(solved, extremes.T),
+        error=float(max(change)),
     )
 
 

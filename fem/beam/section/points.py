@@ -37,7 +37,7 @@ def _basis_at(solved: SaintVenant, points: Array) -> Basis:
 
 
 def locate(solved: SaintVenant, points: Array, candidates: int = 24) -> tuple[NDArray[np.int64], Array]:
-    """Triangles (k,) that hold points (2, k) from the centroid, and reference coordinates (2, k), by Newton's method."""
+    """Triangles (k,) that hold points (2, k) from the centroid, and their places (2, k) in them, by Newton's method."""
     mesh = solved.mesh
     nodes = mesh.doflocs[:, mesh.dofs.element_dofs]  # (2, 6, m)
     _, near = cKDTree(nodes.mean(axis=1).T).query(points.T, k=min(candidates, nodes.shape[2]))
