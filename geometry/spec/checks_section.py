@@ -147,8 +147,10 @@ def _check_shoulder(values: Values, path: str, member: Member, index: int, is_st
     if not heights:
         values.problem(path, f"{station.shoulder_fillet:.6g} mm", "only where the sides step",
                        "The two stations have the same outer dimensions")  # fmt: skip
-    elif station.shoulder_fillet > min(map(abs, heights)) * (1.0 + 1e-9):
-        values.problem(path, f"{station.shoulder_fillet:.6g} mm", f"at most the step: {min(map(abs, heights)):.6g} mm")
+    elif station.shoulder_fillet >= min(map(abs, heights)) * (1.0 - 1e-3):
+        values.problem(
+            path, f"{station.shoulder_fillet:.6g} mm", f"less than the step: {min(map(abs, heights)):.6g} mm"
+        )
 
 
 def _step_heights(member: Member, x: float) -> list[float]:

@@ -165,9 +165,9 @@ STATIONS = "[supports.wall]"
     ("tables", "path", "word"),
     [
         ('[[members.bar.stations]]\nat = "500 mm"\ndepth = "30 mm"\n[[members.bar.stations]]\nat = "500 mm"\n'
-         'depth = "20 mm"\nshoulder_fillet = "5 mm"', "", ""),
+         'depth = "20 mm"\nshoulder_fillet = "4.9 mm"', "", ""),
         ('[[members.bar.stations]]\nat = "500 mm"\ndepth = "30 mm"\n[[members.bar.stations]]\nat = "500 mm"\n'
-         'depth = "20 mm"\nshoulder_fillet = "5.1 mm"', "members.bar.stations[2].shoulder_fillet", "the step: 5 mm"),
+         'depth = "20 mm"\nshoulder_fillet = "5 mm"', "members.bar.stations[2].shoulder_fillet", "the step: 5 mm"),
         ('[[members.bar.stations]]\nat = "500 mm"\ndepth = "30 mm"\nshoulder_fillet = "2 mm"',
          "members.bar.stations[1].shoulder_fillet", "second of two stations"),
         ('[[members.bar.stations]]\nat = "500 mm"\ndepth = "30 mm"\n[[members.bar.stations]]\nat = "400 mm"\n'
