@@ -14,7 +14,7 @@ from geometry.problem import SpecError
 from geometry.spec import part_from_text, read_part
 from geometry.spec.read import LARGEST_FILE
 
-CANTILEVER = (Path(__file__).parents[2] / "studies" / "examples" / "cantilever.toml").read_text(encoding="utf-8")
+CANTILEVER = Path(__file__).with_name("cantilever.toml").read_text(encoding="utf-8")
 
 
 def said_about(path: Path) -> str:

@@ -10,7 +10,7 @@ from geometry.problem import SpecError
 from geometry.spec import part_from_text
 from geometry.spec.materials import GRADES, find
 
-CANTILEVER = (Path(__file__).parents[2] / "studies" / "examples" / "cantilever.toml").read_text(encoding="utf-8")
+CANTILEVER = Path(__file__).with_name("cantilever.toml").read_text(encoding="utf-8")
 
 
 @pytest.mark.parametrize(

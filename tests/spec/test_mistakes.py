@@ -9,8 +9,7 @@ import pytest
 from geometry.problem import Problem, SpecError
 from geometry.spec import part_from_text
 
-EXAMPLES = Path(__file__).parents[2] / "studies" / "examples"
-CANTILEVER = (EXAMPLES / "cantilever.toml").read_text(encoding="utf-8")
+CANTILEVER = Path(__file__).with_name("cantilever.toml").read_text(encoding="utf-8")
 CAMERA_ARM = Path(__file__).with_name("camera_arm.toml").read_text(encoding="utf-8")
 
 

@@ -27,7 +27,7 @@ from geometry.spec.profile import polygon_of
 
 HERE = Path(__file__).parent
 EXAMPLES = HERE.parents[1] / "studies" / "examples"
-CANTILEVER = (EXAMPLES / "cantilever.toml").read_text(encoding="utf-8")
+CANTILEVER = Path(__file__).with_name("cantilever.toml").read_text(encoding="utf-8")
 CAMERA_ARM = (HERE / "camera_arm.toml").read_text(encoding="utf-8")
 
 
