@@ -20,6 +20,7 @@ from fem.beam.interpolate import between, loops, points, same_make
 from fem.beam.law import LineProperties
 from fem.beam.outlines import dims_slope, member_outline, net_section
 from fem.beam.section import OutlineIntegrals, SectionProperties, outline_integrals, sections_properties
+from fem.beam.taper_shear import tapered_shear
 from geometry.outline import Outline
 from geometry.part import Member
 
@@ -32,7 +33,7 @@ EXACT_POINTS, SOLVED_POINTS = 9, 5
 class Piece:
     """Smooth piece of the member from `start` to `end`, mm; tables of Chebyshev coefficients, first axis the degree.
 
-    `exact`: A, yc, zc, Iyy, Izz, Iyz. `solved`: J Ip / A^4, C A (yy, yz, zz), ys - yc, zs - zc, Iw, warping (4).
+    `exact`: A, yc, zc, Iyy, Izz, Iyz. `solved`: J Ip / A^4, ys - yc, zs - zc, Iw, warping (4), shear form times A (25).
     """
 
     start: float
@@ -50,7 +51,7 @@ class Piece:
         return np.asarray(chebyshev.chebval(self._t(x), self.exact))
 
     def solved_at(self, x: Array) -> Array:
-        """(11, m)"""
+        """(33, m)"""
         return np.asarray(chebyshev.chebval(self._t(x), self.solved))
 
 
@@ -104,10 +105,13 @@ class Sections:
         exact = [outline_integrals(member_outline(self.member, float(x))) for x in at]
         table = np.array([[o.area, o.yc, o.zc, o.Iyy, o.Izz, o.Iyz] for o in exact])
         rows = []
-        for s in solved:
-            C = s.shear_compliance * s.area
-            rows.append([s.J * (s.Iyy + s.Izz) / s.area**4, C[0, 0], C[0, 1], C[1, 1], s.ys - s.yc, s.zs - s.zc, s.Iw,
-                         *s.warping])
+        for x, s in zip(points, solved, strict=True):
+            Q = np.zeros((5, 5))
+            Q[:2, :2] = s.shear_compliance
+            if not constant:
+                Q = tapered_shear(lambda v: member_outline(self.member, v), float(x), 1e-4 * (b - a), s.shear_compliance)
+            rows.append([s.J * (s.Iyy + s.Izz) / s.area**4, s.ys - s.yc, s.zs - s.zc, s.Iw, *s.warping,
+                         *(Q * s.area).ravel()])
         return Piece(a, b, constant, fitted(a, b, at, table), fitted(a, b, points, np.array(rows)),
                      any(s.open_thin for s in solved))
 
@@ -156,21 +160,19 @@ class Sections:
         """Properties without cuts at points x (m,)."""
         x = np.atleast_1d(np.asarray(x, dtype=float))
         which = np.array([self.pieces.index(self.piece(float(v), side)) for v in x])
-        exact, solved = np.zeros((6, len(x))), np.zeros((11, len(x)))
+        exact, solved = np.zeros((6, len(x))), np.zeros((33, len(x)))
         for k in np.unique(which):
             here = which == k
             exact[:, here] = self.pieces[k].exact_at(x[here])
             solved[:, here] = self.pieces[k].solved_at(x[here])
         A, yc, zc, Iyy, Izz, Iyz = exact
-        shear = np.zeros((len(x), 5, 5))
-        shear[:, 0, 0], shear[:, 1, 1] = solved[1] / A, solved[3] / A
-        shear[:, 0, 1] = shear[:, 1, 0] = solved[2] / A
-        return LineProperties(A, yc, zc, Iyy, Izz, Iyz, yc + solved[4], zc + solved[5],
-                              solved[0] * A**4 / (Iyy + Izz), solved[6], shear)
+        shear = (solved[8:] / A).T.reshape(-1, 5, 5)
+        return LineProperties(A, yc, zc, Iyy, Izz, Iyz, yc + solved[1], zc + solved[2],
+                              solved[0] * A**4 / (Iyy + Izz), solved[3], shear)
 
     def warping_at_extremes(self, x: float, side: str = "after") -> Array:
         """(4,) warping function at the extreme points, mm^2."""
-        return self.piece(x, side).solved_at(np.array([x]))[7:, 0]
+        return self.piece(x, side).solved_at(np.array([x]))[4:8, 0]
 
     def net(self, x: Array, side: str = "after") -> LineProperties:
         """Properties with cuts taken off at points x (m,)."""

@@ -39,19 +39,26 @@ def station_values(mesh: BeamMesh) -> Array:
     return np.arange(STATIONS + 1) * mesh.length / STATIONS
 
 
-def all_figures(s: Solved) -> tuple[list[Figure], list[str]]:
-    """Every figure of the beam model, and notes on those that it withholds."""
-    from fem.beam.notches import notch_figures
-    from fem.beam.stress import nominal_stresses
-
+def line_figures(s: Solved) -> list[Figure]:
+    """Displacements, reactions, section forces and strain energy of all cases."""
     figures: list[Figure] = []
     energy = energies(s).sum(axis=0)
     for k, case in enumerate(s.mesh.part.cases):
         figures += _displacements(s, k, case.name)
         figures += _reactions(s, k, case.name)
         figures += _section_forces(s, k, case.name)
-        figures += nominal_stresses(s, k, case.name)
         figures.append(Figure(FigureKey(case.name, "", "strain_energy", ""), float(energy[k]), "N mm"))
+    return figures
+
+
+def all_figures(s: Solved) -> tuple[list[Figure], list[str]]:
+    """Every figure of the beam model, and notes on those that it withholds."""
+    from fem.beam.notches import notch_figures
+    from fem.beam.stress import nominal_stresses
+
+    figures = line_figures(s)
+    for k, case in enumerate(s.mesh.part.cases):
+        figures += nominal_stresses(s, k, case.name)
     figures += _mass(s.mesh)
     notched, notes = notch_figures(s)
     return figures + notched, notes

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -36,6 +36,10 @@ class BeamMesh:
     length: float
     x: Array
     shear: bool = True
+    cut_factor: float = 1.0
+    """Multiple of what cuts add to the axial and bending flexibility by their net section (see `fem.beam.causes`)."""
+    warp_everywhere: bool = False
+    """Give the seventh freedom to solid and closed sections as well (see `fem.beam.causes`)."""
 
     @classmethod
     def of(cls, part: Part, solver: SectionSolver, shear: bool = True) -> BeamMesh:
@@ -63,9 +67,24 @@ class BeamMesh:
     def stiffness(self, x: Array) -> LineProperties:
         """Properties that the stiffness is made from."""
         p = self.sections.net(x)
+        if self.cut_factor != 1.0 and self.sections.effects:
+            g = self.sections.gross(x)
+            mixed = {n: 1.0 / (1.0 / getattr(g, n) + self.cut_factor * (1.0 / getattr(p, n) - 1.0 / getattr(g, n)))
+                     for n in ("area", "Iyy", "Izz")}
+            p = replace(p, **mixed)
         if not self.shear:
             p.shear[:] = 0.0
         return p
+
+    def warps(self, x: Array) -> NDArray[np.bool_]:
+        """Whether the lengths with middles `x` (m,) have the seventh freedom."""
+        thin = np.array([self.sections.piece(float(v)).open_thin for v in x])
+        if not self.warp_everywhere:
+            return thin
+        p = self.sections.net(x)
+        reach = np.sqrt(np.maximum(p.Iw, 0.0) * 2.0 * (1.0 + self.part.material.nu) / p.J)
+        # a decay over less than a twentieth of a length has no effect and cannot be resolved
+        return np.asarray(thin | (reach > np.diff(self.x) / 20.0))
 
     @cached_property
     def line(self) -> Line:
@@ -74,7 +93,7 @@ class BeamMesh:
         halves = np.stack([np.stack([self.x[:-1], mid], 1), np.stack([mid, self.x[1:]], 1)], axis=1)
         material = self.part.material
         G = material.E / (2.0 * (1.0 + material.nu))
-        warping = np.array([self.sections.piece(float(v)).open_thin for v in mid])
+        warping = self.warps(mid)
         matrices: list[tuple[Array, Array]] = [None] * len(mid)  # type: ignore[list-item]
         for flag in (False, True):
             which = np.flatnonzero(warping == flag)

@@ -11,8 +11,9 @@ from numpy.typing import NDArray
 
 from fem.beam.actions import Actions
 from fem.beam.along import SectionSolver
+from fem.beam.causes import find_causes
 from fem.beam.equations import Row, present, solve_line
-from fem.beam.figures import Solved, all_figures, diagram, energies, properties_table
+from fem.beam.figures import Solved, all_figures, diagram, energies, line_figures, properties_table
 from fem.beam.mesh import BeamMesh
 from fem.beam.result import BeamResult
 from fem.beam.section import sections_properties
@@ -53,6 +54,7 @@ def solve_beam(
     built = time.perf_counter()
     solved = solve_cases(mesh)
     figures, notes = all_figures(solved)
+    causes = find_causes(mesh, figures, lambda changed: line_figures(solve_cases(changed)))
     depth = max(float(np.ptp(s.extremes[:2, 1])) for s in mesh.sections.solved)
     mass = next(f.value for f in figures if f.key.quantity == "mass")
     return BeamResult(
@@ -63,6 +65,7 @@ def solve_beam(
         shear_share={case.name: float(e[1] / e.sum()) if e.sum() else 0.0
                      for case, e in zip(part.cases, energies(solved).T, strict=True)},
         slenderness=mesh.length / depth,
+        causes=causes,
         notes=tuple(notes),
         seconds={"sections": built - clock, "solve": time.perf_counter() - built},
     )

@@ -67,8 +67,9 @@ def test_conical_shaft(part, solve):
 def test_conical_bar_in_tension(part, solve):
     """B29: d 40 to 20, L 500, P 1e4, E 70000."""
     alloy = Material("alloy", 70000.0, 0.3, 2.7e-9, 23e-6, None, None, "declared", "")
+    # shear=False: the table leaves out that the stress follows inclined fibres (0.06 % here)
     r = solve(part(Section("round", {"diameter": 40.0}), 500.0, [RegionLoad("p", "arm.end", force=(1e4, 0.0, 0.0))],
-                   material=alloy, stations=(Station(500.0, {"diameter": 20.0}),)), plain=True)
+                   material=alloy, stations=(Station(500.0, {"diameter": 20.0}),)), plain=True, shear=False)
     assert r("arm.end", "displacement", "x") == pytest.approx(4e4 * 500.0 / (math.pi * 70000 * 40 * 20), rel=TIGHT)
 
 

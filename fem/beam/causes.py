@@ -1,0 +1,82 @@
+"""Where the beam model knows that a solid will differ honestly, and by how much.
+
+Each cause is computed by solving the beam once more with the assumption changed:
+
+* warping of a solid or closed section is held at a clamped end, which Saint-Venant torsion leaves out: the seventh
+  freedom is given to every section;
+* a hole in a stressed wall leaves dead corners beside it: for a small round hole the extra compliance is three times
+  that of the net section (dilute limit of the effective modulus, E (1 - 3 f); from memory);
+* a region on a side face or in a group of holes that moves as a rigid body stiffens only its own face in the solid, but
+  the whole section in the beam: the truth lies between that and a region that may deform.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import replace
+
+import numpy as np
+
+from fem.beam.mesh import BeamMesh
+from fem.beam.result import Cause
+from fem.figure import Figure, FigureKey
+from geometry.part import Part, RegionLoad, RemotePoint
+from geometry.problem import SolveError
+
+QUANTITIES = ("displacement", "rotation", "strain_energy", "reaction_force", "reaction_moment", "section_force",
+              "section_moment")
+LEAST = 1e-3
+"""Smallest difference worth naming, as a share of the largest value of that quantity in the case."""
+
+Solver = Callable[[BeamMesh], Sequence[Figure]]
+
+
+def find_causes(mesh: BeamMesh, figures: Sequence[Figure], solve: Solver) -> tuple[Cause, ...]:
+    """Causes of honest differences; `solve` gives the figures of a changed model."""
+    base = {f.key: f.value for f in figures if f.key.quantity in QUANTITIES}
+    scale: dict[tuple[str, str], float] = {}
+    for key, value in base.items():
+        group = (key.case, key.quantity)
+        scale[group] = max(scale.get(group, 0.0), abs(value))
+    found: list[Cause] = []
+    for text, changed, share, open_share in _variants(mesh):
+        try:
+            other = {f.key: f.value for f in solve(changed)}
+        except SolveError:
+            continue  # without this assumption the part is not held: nothing to compare with
+        found += _differences(text, base, other, scale, share, open_share)
+    return tuple(found)
+
+
+def _variants(mesh: BeamMesh) -> Iterator[tuple[str, BeamMesh, float, float]]:
+    """Text, changed model, the share of the change that is predicted, and the share left open."""
+    warping = replace(mesh, warp_everywhere=True)
+    middles = 0.5 * (mesh.x[:-1] + mesh.x[1:])
+    if (warping.warps(middles) != mesh.warps(middles)).any():
+        yield "a clamped or rigid end also holds the warping of a solid or closed section", warping, 1.0, 0.5
+    if any(c.kind == "hole" for c in mesh.member.cuts):
+        yield ("material beside a hole carries little along the member: its compliance is up to three times the net "
+               "section's"), replace(mesh, cut_factor=3.0), 0.5, 0.5
+    softer = _not_rigid(mesh.part)
+    if softer is not None:
+        yield ("a region that moves as one body stiffens its own face, not the whole section as in the beam",
+               replace(mesh, part=softer), 0.5, 0.5)
+
+
+def _not_rigid(part: Part) -> Part | None:
+    """The part with rigid couplings of side faces made average; None when there are none."""
+    def soft(on: str, coupling: str) -> bool:
+        return coupling == "rigid" and on.partition(".")[2] not in ("start", "end")
+
+    supports = tuple(replace(s, coupling="average") if soft(s.on, s.coupling) else s for s in part.supports)
+    loads = tuple(replace(v, coupling="average") if isinstance(v, RegionLoad | RemotePoint) and soft(v.on, v.coupling)
+                  else v for v in part.loads)
+    return None if supports == part.supports and loads == part.loads else replace(part, supports=supports, loads=loads)
+
+
+def _differences(text: str, base: dict[FigureKey, float], other: dict[FigureKey, float],
+                 scale: dict[tuple[str, str], float], share: float, open_share: float) -> Iterator[Cause]:
+    for key, value in base.items():
+        change = other.get(key, value) - value
+        if abs(change) > LEAST * scale[key.case, key.quantity] and np.isfinite(change):
+            yield Cause(key.case, key.place, key.quantity, key.component, text, share * change, open_share * abs(change))
