@@ -2,7 +2,7 @@
 
 Quantities stay text here (``"reach / 2"``); `PartSpec.resolve` turns them into numbers. The model checks
 structure only (words, types, counts). Whatever needs a value or a second field is checked in
-`geometry.spec.resolve` and `geometry.spec.checks`, which also run when another part of the spec is wrong.
+`geometry.spec.resolve.part` and `geometry.spec.checks.part`, which also run when another part of the spec is wrong.
 """
 
 from __future__ import annotations
@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Annotated, Literal
 
 from pydantic import BaseModel, ConfigDict, Field
 
-from geometry.spec.model_fields import (
+from geometry.spec.words.fields import (
     AccelerationVector,
     ForceVector,
     Length,
@@ -27,7 +27,7 @@ from geometry.spec.model_fields import (
     Text,
     Words,
 )
-from geometry.spec.model_member import MemberSpec
+from geometry.spec.words.member import MemberSpec
 
 if TYPE_CHECKING:
     from geometry.part import Part
@@ -161,6 +161,6 @@ class PartSpec(Words):
 
     def resolve(self, source_text: str = "") -> Part:
         """The part in numbers; raise `SpecError` with every mistake found."""
-        from geometry.spec.resolve import resolve
+        from geometry.spec.resolve.part import resolve
 
         return resolve(self, source_text)

@@ -11,12 +11,12 @@ from pydantic import ValidationError
 
 from geometry.part import Part
 from geometry.problem import Problem, SpecError
-from geometry.spec.expression import nearest
 from geometry.spec.model import PartSpec
-from geometry.spec.resolve import resolve_and_check
-from geometry.spec.toml_errors import not_toml
-from geometry.spec.translate import MISSPELT, read_leniently
-from geometry.spec.values import shown
+from geometry.spec.resolve.part import resolve_and_check
+from geometry.spec.resolve.values import shown
+from geometry.spec.text.tokens import nearest
+from geometry.spec.text.toml_errors import not_toml
+from geometry.spec.words.translate import MISSPELT, read_leniently
 
 LARGEST_FILE = 1_000_000  # bytes: a spec is a page or two of text
 

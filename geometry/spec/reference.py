@@ -9,10 +9,14 @@ from typing import Any, Literal, get_args, get_origin
 from pydantic import BaseModel
 from pydantic.fields import FieldInfo
 
+from geometry.spec.checks.regions import FACES
 from geometry.spec.materials import GRADES, Grade
 from geometry.spec.model import LimitSpec, LimitsSpec, LoadSpec, MaterialSpec, PartSpec, PlaceSpec, SupportSpec
-from geometry.spec.model_fields import OfKind
-from geometry.spec.model_member import (
+from geometry.spec.resolve.acting import LOAD_WORDS
+from geometry.spec.resolve.member import WALLS
+from geometry.spec.text.quantity import KINDS, NUMBER
+from geometry.spec.words.fields import OfKind
+from geometry.spec.words.member import (
     AngleSection,
     BoxSection,
     ChannelSection,
@@ -31,11 +35,7 @@ from geometry.spec.model_member import (
     TeeSection,
     TubeSection,
 )
-from geometry.spec.quantity import KINDS, NUMBER
-from geometry.spec.regions import FACES
-from geometry.spec.resolve_acting import LOAD_WORDS
-from geometry.spec.resolve_member import WALLS
-from geometry.spec.structure import alternatives, described, field_annotation, mark_in
+from geometry.spec.words.structure import alternatives, described, field_annotation, mark_in
 
 SCHEMA_DIALECT = "https://json-schema.org/draft/2020-12/schema"
 

@@ -17,9 +17,10 @@ from hypothesis import strategies as st
 
 from geometry.problem import SpecError
 from geometry.spec import part_from_text
-from geometry.spec.expression import ExpressionError, evaluate
-from geometry.spec.quantity import LENGTH, UNITS, Quantity
 from geometry.spec.read import part_from_data
+from geometry.spec.text.expression import evaluate
+from geometry.spec.text.quantity import LENGTH, UNITS, Quantity
+from geometry.spec.text.tokens import ExpressionError
 
 EXAMPLES = sorted((Path(__file__).parents[2] / "studies" / "examples").glob("*.toml"))
 BASES = [tomllib.loads(path.read_text(encoding="utf-8")) for path in EXAMPLES]

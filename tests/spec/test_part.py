@@ -22,8 +22,8 @@ from geometry.part import (
 )
 from geometry.problem import SpecError
 from geometry.spec import PartSpec, part_from_spec, part_from_text, read_part, with_parameters
-from geometry.spec.drawn import area
-from geometry.spec.profile import polygon_of
+from geometry.spec.checks.profile import polygon_of
+from geometry.spec.resolve.drawn import area
 
 HERE = Path(__file__).parent
 EXAMPLES = HERE.parents[1] / "studies" / "examples"

@@ -7,8 +7,8 @@ import math
 import pytest
 
 from geometry.part import Member, Section, Station
-from geometry.spec.frame import axes_of
-from geometry.spec.profile import centroid, dims_at, profile_of
+from geometry.spec.checks.frame import axes_of
+from geometry.spec.checks.profile import centroid, dims_at, profile_of
 
 CHANNEL = Section("channel", {"depth": 200.0, "width": 80.0, "web": 6.0, "flange": 11.0, "root_radius": 13.0})
 

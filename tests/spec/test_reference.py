@@ -10,7 +10,7 @@ import pytest
 
 from geometry.spec import json_schema, spec_reference
 from geometry.spec.reference import TABLES
-from geometry.spec.structure import words_of
+from geometry.spec.words.structure import words_of
 
 EXAMPLES = [
     *sorted((Path(__file__).parents[2] / "studies" / "examples").glob("*.toml")),

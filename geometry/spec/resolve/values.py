@@ -12,21 +12,19 @@ from typing import Any
 
 from geometry.part import Vector
 from geometry.problem import Problem
-from geometry.spec.expression import (
+from geometry.spec.text.expression import evaluate, evaluate_as, names_in
+from geometry.spec.text.quantity import Quantity
+from geometry.spec.text.tokens import (
     COMMON_UNITS,
     FUNCTIONS,
     NAME,
     ExpressionError,
     UnknownUnitError,
-    evaluate,
-    evaluate_as,
-    names_in,
     nearest,
     tokens_of,
     with_article,
 )
-from geometry.spec.model_fields import OfKind
-from geometry.spec.quantity import Quantity
+from geometry.spec.words.fields import OfKind
 
 LONGEST_GIVEN = 80
 MOST_PARAMETERS = 500

@@ -6,11 +6,11 @@ import re
 from collections.abc import Collection, Iterable
 
 from geometry.part import Limit, LineLoad, Member, Part
-from geometry.spec.expression import nearest
+from geometry.spec.checks.profile import length_of
+from geometry.spec.checks.regions import faces_of, is_flat, regions_of
 from geometry.spec.model import PartSpec
-from geometry.spec.profile import length_of
-from geometry.spec.regions import faces_of, is_flat, regions_of
-from geometry.spec.values import Values, listed
+from geometry.spec.resolve.values import Values, listed
+from geometry.spec.text.tokens import nearest
 
 LEGAL = re.compile(r"[A-Za-z_][A-Za-z0-9_-]{0,39}")
 LEGAL_WORDS = "1 to 40 letters, digits, _ and -, not starting with a digit"

@@ -10,9 +10,11 @@ from typing import Any
 from pydantic import BaseModel
 
 from geometry.part import Cut, EdgeRadius, Member, Patch, Section, Station
-from geometry.spec.drawn import outline_of
-from geometry.spec.model_fields import RADIUS, SIZE, OfKind
-from geometry.spec.model_member import (
+from geometry.spec.checks.profile import dims_at
+from geometry.spec.resolve.drawn import outline_of
+from geometry.spec.resolve.values import Values
+from geometry.spec.words.fields import RADIUS, SIZE, OfKind
+from geometry.spec.words.member import (
     AcrossSpec,
     BoxSection,
     HoleSpec,
@@ -22,8 +24,6 @@ from geometry.spec.model_member import (
     OutlineSection,
     SlotSpec,
 )
-from geometry.spec.profile import dims_at
-from geometry.spec.values import Values
 
 DIMS: dict[str, tuple[str, ...]] = {
     "rectangle": ("depth", "width", "corner_radius"),

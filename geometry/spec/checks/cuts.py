@@ -6,8 +6,8 @@ import math
 from collections.abc import Iterator
 
 from geometry.part import Cut, Member
-from geometry.spec.profile import Profile, dims_at, length_of, profile_of
-from geometry.spec.values import Values
+from geometry.spec.checks.profile import Profile, dims_at, length_of, profile_of
+from geometry.spec.resolve.values import Values
 
 Interval = tuple[float, float]
 MOST_CUTS = 400

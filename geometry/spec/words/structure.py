@@ -11,8 +11,8 @@ from typing import Annotated, Any, Literal, Union, get_args, get_origin, get_typ
 
 from pydantic import BaseModel
 
-from geometry.spec.expression import with_article
-from geometry.spec.model_fields import OfKind
+from geometry.spec.text.tokens import with_article
+from geometry.spec.words.fields import OfKind
 
 Path = tuple[str | int, ...]
 """Keys and list indices (from 0) from the top of the spec."""

@@ -6,7 +6,7 @@ import re
 import tomllib
 
 from geometry.problem import Problem
-from geometry.spec.values import shown
+from geometry.spec.resolve.values import shown
 
 _PLACE = re.compile(r" \(at (?:line (?P<line>\d+), column (?P<column>\d+)|(?P<end>end of document))\)$")
 _BARE = re.compile(r"^\s*(?P<key>[A-Za-z0-9_.-]+)\s*=\s*(?P<text>[^\"'\[{#][^#]*?)\s*(?:#.*)?$")

@@ -21,12 +21,12 @@ from geometry.part import (
     TemperatureLoad,
     Vector,
 )
-from geometry.spec.expression import with_article
-from geometry.spec.frame import line_direction, scaled
+from geometry.spec.checks.frame import line_direction, scaled
 from geometry.spec.model import LimitSpec, LimitsSpec, LoadSpec, PartSpec, SupportSpec
-from geometry.spec.model_fields import OfKind
-from geometry.spec.resolve_member import Table, mark_of
-from geometry.spec.values import Values, shown
+from geometry.spec.resolve.member import Table, mark_of
+from geometry.spec.resolve.values import Values, shown
+from geometry.spec.text.tokens import with_article
+from geometry.spec.words.fields import OfKind
 
 ZERO: Vector = (0.0, 0.0, 0.0)
 TRANSLATIONS = ("x", "y", "z")

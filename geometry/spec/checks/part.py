@@ -5,14 +5,14 @@ from __future__ import annotations
 from collections.abc import Collection
 
 from geometry.part import Part
-from geometry.spec.checks_acting import check_loads, check_supports
-from geometry.spec.checks_cuts import check_cuts
-from geometry.spec.checks_held import check_held
-from geometry.spec.checks_names import check_faces, check_names
-from geometry.spec.checks_section import axes_known, check_edges, check_member
+from geometry.spec.checks.acting import check_loads, check_supports
+from geometry.spec.checks.cuts import check_cuts
+from geometry.spec.checks.held import check_held
+from geometry.spec.checks.names import check_faces, check_names
+from geometry.spec.checks.profile import length_of
+from geometry.spec.checks.section import axes_known, check_edges, check_member
 from geometry.spec.model import PartSpec
-from geometry.spec.profile import length_of
-from geometry.spec.values import Values
+from geometry.spec.resolve.values import Values
 
 
 def check_part(values: Values, spec: PartSpec, part: Part, removed: Collection[str]) -> None:

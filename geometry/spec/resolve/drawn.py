@@ -6,9 +6,9 @@ import math
 from collections.abc import Sequence
 
 from geometry.outline import Arc, Edge, Line, Outline, Point
-from geometry.spec.model_fields import RADIUS, SIZE
-from geometry.spec.model_member import OutlineSection
-from geometry.spec.values import Values
+from geometry.spec.resolve.values import Values
+from geometry.spec.words.fields import RADIUS, SIZE
+from geometry.spec.words.member import OutlineSection
 
 Corner = tuple[float, float, float]
 """y, z and radius of a corner, mm."""

@@ -17,9 +17,10 @@ from pydantic.fields import FieldInfo
 from pydantic_core import ErrorDetails
 
 from geometry.problem import Problem
-from geometry.spec.expression import nearest
 from geometry.spec.model import LimitsSpec, PartSpec
-from geometry.spec.structure import (
+from geometry.spec.resolve.values import UNREADABLE, listed, shown
+from geometry.spec.text.tokens import nearest
+from geometry.spec.words.structure import (
     Path,
     alternatives,
     at_path,
@@ -30,7 +31,6 @@ from geometry.spec.structure import (
     words_of,
     written,
 )
-from geometry.spec.values import UNREADABLE, listed, shown
 
 MOST_ROUNDS = 50
 MISSPELT = "?"
@@ -160,7 +160,7 @@ def _unknown_word(path: Path, data: Any) -> Problem:
 
 
 def _unknown_shape(where: str, given: Any) -> Problem:
-    from geometry.spec.resolve_member import DIMS
+    from geometry.spec.resolve.member import DIMS
 
     if not isinstance(given, Mapping):
         return Problem(where, shown(given), "a table with shape and its dimensions")

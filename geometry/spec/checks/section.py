@@ -6,9 +6,9 @@ import math
 from collections.abc import Iterator
 
 from geometry.part import Member
-from geometry.spec.frame import axes_of
-from geometry.spec.profile import bounds, dims_at, knots, length_of
-from geometry.spec.values import Values
+from geometry.spec.checks.frame import axes_of
+from geometry.spec.checks.profile import bounds, dims_at, knots, length_of
+from geometry.spec.resolve.values import Values
 
 Dims = dict[str, float]
 LEAST_LENGTH = 1e-3  # mm; less is a slip of a unit

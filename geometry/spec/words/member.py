@@ -6,7 +6,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import BaseModel, ConfigDict, Discriminator, Field, Tag
 
-from geometry.spec.model_fields import Angle, Count, DirectionVector, Length, OfKind, Point, Radius, Size, Text, Words
+from geometry.spec.words.fields import Angle, Count, DirectionVector, Length, OfKind, Point, Radius, Size, Text, Words
 
 
 class RectangleSection(Words):

@@ -10,10 +10,10 @@ from __future__ import annotations
 import math
 
 from geometry.part import Cut, Member, Part, Support, Vector
-from geometry.spec.checks_section import axes_known
-from geometry.spec.frame import axes_of, cross, plus, scaled
-from geometry.spec.profile import Profile, dims_at, length_of, profile_of
-from geometry.spec.values import Values
+from geometry.spec.checks.frame import axes_of, cross, plus, scaled
+from geometry.spec.checks.profile import Profile, dims_at, length_of, profile_of
+from geometry.spec.checks.section import axes_known
+from geometry.spec.resolve.values import Values
 
 Row = list[float]
 GLOBAL: tuple[Vector, Vector, Vector] = ((1.0, 0.0, 0.0), (0.0, 1.0, 0.0), (0.0, 0.0, 1.0))

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 from geometry.part import BearingLoad, BodyLoad, Member, Part, RemotePoint, Support, TemperatureLoad
-from geometry.spec.checks_section import axes_known
-from geometry.spec.frame import axes_of, dot, size
-from geometry.spec.regions import is_flat
-from geometry.spec.values import Values
+from geometry.spec.checks.frame import axes_of, dot, size
+from geometry.spec.checks.regions import is_flat
+from geometry.spec.checks.section import axes_known
+from geometry.spec.resolve.values import Values
 
 SQUARE = 1e-6  # largest share of a bearing force that may point along its hole
 

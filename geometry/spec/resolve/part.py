@@ -6,19 +6,19 @@ from collections.abc import Collection
 
 from geometry.part import BodyLoad, Load, Material, Member, Part, Place
 from geometry.problem import Problem, SpecError
-from geometry.spec.checks import check_part
+from geometry.spec.checks.part import check_part
+from geometry.spec.checks.plates import thickest_plate
 from geometry.spec.materials import GRADES, Grade, find
 from geometry.spec.model import MaterialSpec, PartSpec
-from geometry.spec.plates import thickest_plate
-from geometry.spec.resolve_acting import (
+from geometry.spec.resolve.acting import (
     SELF_WEIGHT,
     resolve_cases,
     resolve_limits,
     resolve_load,
     resolve_support,
 )
-from geometry.spec.resolve_member import Table, resolve_member
-from geometry.spec.values import Values
+from geometry.spec.resolve.member import Table, resolve_member
+from geometry.spec.resolve.values import Values
 
 
 def resolve(spec: PartSpec, source_text: str = "") -> Part:

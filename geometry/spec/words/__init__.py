@@ -1,0 +1,1 @@
+"""The tables and words of the spec, and messages about them."""
