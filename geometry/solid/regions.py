@@ -50,11 +50,18 @@ def labels_at(point: np.ndarray, pieces: Sequence[Piece]) -> set[str]:
 
 
 def side_labels(s: FaceSamples, pieces: Sequence[Piece]) -> set[str]:
-    """Labels that every sample of a face carries; none for a wall across the member (shoulder, end)."""
+    """Labels that every sample of a face carries; none for a wall across the member (shoulder, end).
+
+    A shoulder fillet adds a corner to the side faces that run past it flush: samples beside a filleted step are
+    left out, and a face that lies there wholly (the fillet itself) has no label.
+    """
     if np.all(np.abs(s.normals[:, 0]) > 1.0 - 1e-9):
         return set()
+    beside = np.zeros(len(s.points), bool)
+    for stretch in (p.stretch for p in pieces if p.stretch.step and p.stretch.shoulder > 0.0):
+        beside |= np.abs(s.points[:, 0] - stretch.start) <= stretch.shoulder + TOLERANCE
     common: set[str] | None = None
-    for point in s.points:
+    for point in s.points[~beside]:
         here = labels_at(point, pieces)
         common = here if common is None else common & here
         if not common:

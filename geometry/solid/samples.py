@@ -33,7 +33,7 @@ def sample_faces(solid: Any, most: int = 12) -> list[FaceSamples]:
     """Samples of every face of `solid`, in the kernel's order.
 
     A triangulation of each face gives parameter points that are surely inside it; the points themselves are
-    taken from the exact surface. At most `most` points a face, spread evenly over its triangles.
+    taken from the exact surface. At most `most` points a face: its largest triangles, and others spread evenly over the rest.
     """
     BRepMesh_IncrementalMesh(solid, 0.5, False, 0.3, False).Perform()
     try:
@@ -48,12 +48,16 @@ def _samples(face: Any, most: int) -> FaceSamples:
         raise SolidError("a face of the solid could not be triangulated.")
     count = mesh.NbTriangles()
     uv = np.array([[(p := mesh.UVNode(i)).X(), p.Y()] for i in range(1, mesh.NbNodes() + 1)])
-    picks = np.unique(np.linspace(1, count, min(count, most)).astype(int))
+    corners = np.array([mesh.Triangle(k).Get() for k in range(1, count + 1)]) - 1
+    nodes = np.array([[(p := mesh.Node(i)).X(), p.Y(), p.Z()] for i in range(1, mesh.NbNodes() + 1)])[corners]
+    size = np.linalg.norm(np.cross(nodes[:, 1] - nodes[:, 0], nodes[:, 2] - nodes[:, 0]), axis=1)
+    largest = np.argsort(-size.round(9), kind="stable")[: most // 2]
+    picks = np.unique(np.concatenate([largest, np.linspace(0, count - 1, min(count, most // 2)).astype(int)]))
     adaptor = BRepAdaptor_Surface(face)
     sign = -1.0 if face.Orientation() == TopAbs_REVERSED else 1.0
     points, normals = [], []
     for k in picks:
-        u, v = uv[np.array(mesh.Triangle(int(k)).Get()) - 1].mean(axis=0)
+        u, v = uv[corners[k]].mean(axis=0)
         props = BRepLProp_SLProps(adaptor, float(u), float(v), 1, 1e-9)
         point = props.Value()
         if not props.IsNormalDefined():

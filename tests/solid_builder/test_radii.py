@@ -141,3 +141,17 @@ def test_hole_through_a_filleted_shoulder() -> None:
         make_part("rectangle", BAR, 500.0, stations=stations, cuts=(cut("h", "hole", "z", "all", 203, 0, 10),))
     )
     assert region_area(solid, "arm.h") > math.pi * 10 * 40
+
+
+def test_faces_flush_past_a_filleted_step_keep_their_names() -> None:
+    """Flange tips and root fillets that a shoulder fillet touches are still whole regions."""
+    dims = {"depth": 80.0, "width": 50.0, "web": 8.0, "flange": 9.0, "root_radius": 6.0}
+    solid = build_solid(make_part("I", dims, 480.0, stations=step(200, {"depth": 80}, {"depth": 64}, 4.0)))
+    fillet = (1 - math.pi / 4) * 16
+    # Each tip: 9 mm over both stretches and the two corners that the shoulder fillets add.
+    assert region_area(solid, "arm.left") == pytest.approx(2 * (9 * 480 + 2 * fillet), rel=1e-6)
+    assert region_area(solid, "arm.right") == pytest.approx(region_area(solid, "arm.left"), rel=1e-9)
+    (root,) = [h for h in solid.hints if h.label == "root fillet"]
+    assert len(root.faces) == 8
+    (shoulder,) = [h for h in solid.hints if h.label == "shoulder at 200 mm"]
+    assert all(195.9 < solid.faces[i].box[0] and solid.faces[i].box[3] < 204.1 for i in shoulder.faces)
