@@ -21,11 +21,6 @@ Floats = NDArray[np.float64]
 LEAST_QUALITY = 0.02
 """Floor of the least scaled Jacobian. Usual meshes of these parts reach 0.1 or more; slivers lie far below."""
 
-STRAIGHT_TOLERANCE = 1e-9
-CURVED_TOLERANCE = 2e-3
-"""Relative to the area of a face: plane with straight edges, or any other (a quarter turn in one curved element
-is off by 1.6e-3 along its arc)."""
-
 VOLUME_TOLERANCE = 1e-3
 
 
@@ -52,7 +47,7 @@ def assemble(result: ChildResult, solid: NamedSolid, recipe: dict[str, Any]) -> 
     check_quality(quality, nodes, tets)
     areas = facet_areas(nodes, boundary)
     face_area = np.bincount(face_index, weights=areas, minlength=len(solid.faces))
-    _check_faces(face_area, arrays["straight"], solid)
+    _check_faces(face_area, arrays["tolerance"], solid)
     volume = float(tetrahedron_volumes(nodes, tets).sum())
     if abs(volume - solid.volume) > VOLUME_TOLERANCE * solid.volume:
         raise MeshRefused(f"volume of the mesh {volume:.8g} mm^3, of the solid {solid.volume:.8g} mm^3")
@@ -84,11 +79,11 @@ def check_quality(quality: Floats, nodes: Floats, tets: Ints) -> None:
         )
 
 
-def _check_faces(face_area: Floats, straight: NDArray[np.bool_], solid: NamedSolid) -> None:
-    """Every face must be meshed, with its area; the message names the region."""
+def _check_faces(face_area: Floats, tolerance: Floats, solid: NamedSolid) -> None:
+    """Every face must be meshed, with its area to the relative `tolerance`; the message names the region."""
     cad = np.array([face.area for face in solid.faces])
     off = np.abs(face_area - cad) / cad
-    wrong = np.flatnonzero(off > np.where(straight, STRAIGHT_TOLERANCE, CURVED_TOLERANCE))
+    wrong = np.flatnonzero(off > tolerance)
     if len(wrong):
         i = int(wrong[np.argmax(off[wrong])])
         names = [name for name, faces in solid.regions.items() if i in faces]

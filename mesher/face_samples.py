@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from math import pi
+from math import inf, pi
 
 import gmsh
 import numpy as np
@@ -16,44 +16,72 @@ Floats = NDArray[np.float64]
 _MOST_ALONG_ONE_WAY = 400
 
 
+STRAIGHT_TOLERANCE = 1e-9
+CURVED_TOLERANCE = 2e-3
+"""Allowed relative error of a face's area: plane with straight edges, or any other."""
+
+_ARC_COEFFICIENT = 8.8e-4
+"""A parabola through the ends and the middle of an arc of angle a (rad) is short by this times a^4: 5.4e-3 at 90 degrees."""
+
+
 @dataclass(frozen=True, slots=True)
 class FaceSamples:
-    """Points (n, 3) on one face, mm; the size that the face asks for (mm); its area (mm^2)."""
+    """Points (n, 3) on one face, mm; the size that the face asks for (mm); its area (mm^2).
+
+    `tolerance` is the relative error of its area that is due to the shape of the elements at that size.
+    """
 
     points: Floats
     size: float
     area: float
+    tolerance: float
 
 
 def sample_faces(faces: list[int], areas: list[float], sizes: Sizes) -> list[FaceSamples]:
     """Samples of every face (`faces`: kernel tags in the order of the solid's marks)."""
-    return [
-        _sample(tag, area, min(sizes.faces.get(index, sizes.bulk), _curvature_size(tag, sizes)))
-        for index, (tag, area) in enumerate(zip(faces, areas, strict=True))
-    ]
+    samples = []
+    for index, (tag, area) in enumerate(zip(faces, areas, strict=True)):
+        radius = _least_radius(tag)
+        size = min(sizes.faces.get(index, sizes.bulk), _curvature_size(tag, radius, sizes, index in sizes.roundings))
+        samples.append(FaceSamples(_points(tag, size), size, area, _tolerance(tag, size / radius)))
+    return samples
 
 
-def _curvature_size(tag: int, sizes: Sizes) -> float:
-    """Size that a curved face needs for its shape alone, mm.
-
-    `sizes.turn` elements to the full turn, two thirds of that on a rounding (less than 135 degrees). Small
-    roundings are let off with a third of the bulk size, as long as a quarter turn still has an element of its own.
-    """
-    kind = gmsh.model.getType(2, tag)
-    if kind == "Plane":
-        return sizes.bulk
+def _least_radius(tag: int) -> float:
+    """Least radius of curvature of a face, mm, at three places inside; infinite for a plane."""
+    if gmsh.model.getType(2, tag) == "Plane":
+        return inf
     low, high = (np.array(b) for b in gmsh.model.getParametrizationBounds(2, tag))
     middle = low + (high - low) * np.array([[0.3, 0.4], [0.5, 0.5], [0.7, 0.6]])
     bend = float(np.max(np.abs(gmsh.model.getCurvature(2, tag, middle.ravel().tolist()))))
-    if not np.isfinite(bend) or bend <= 0:
+    return 1.0 / bend if np.isfinite(bend) and bend > 0 else inf
+
+
+def _curvature_size(tag: int, radius: float, sizes: Sizes, along: bool) -> float:
+    """Size that a curved face needs for its shape alone, mm.
+
+    `sizes.turn` elements to the full turn, two thirds of that on a rounding (named as one, or less than 135
+    degrees). Small roundings are let off with half the bulk size, as long as a quarter turn still has an
+    element of its own.
+    """
+    if radius == inf:
         return sizes.bulk
-    radius = 1.0 / bend
-    rounding = kind in ("Cylinder", "Cone") and high[0] - low[0] < 0.75 * pi
-    turn = sizes.turn * (2 / 3 if rounding else 1)
-    return min(sizes.bulk, max(2 * pi * radius / turn, min(sizes.bulk / 3, pi * radius / 2)))
+    low, high = gmsh.model.getParametrizationBounds(2, tag)
+    rounding = along or (gmsh.model.getType(2, tag) in ("Cylinder", "Cone") and high[0] - low[0] < 0.75 * pi)
+    if not rounding:
+        return min(sizes.bulk, 2 * pi * radius / sizes.turn)
+    return min(sizes.bulk, max(3 * pi * radius / sizes.turn, min(sizes.bulk / 2, pi * radius / 2)))
 
 
-def _sample(tag: int, area: float, size: float) -> FaceSamples:
+def _tolerance(tag: int, angle: float) -> float:
+    if gmsh.model.getType(2, tag) != "Plane":
+        return max(CURVED_TOLERANCE, 3 * _ARC_COEFFICIENT * min(angle, pi / 2) ** 4)
+    edges = gmsh.model.getBoundary([(2, tag)], oriented=False)
+    straight = all(gmsh.model.getType(1, edge) == "Line" for _, edge in edges)
+    return STRAIGHT_TOLERANCE if straight else CURVED_TOLERANCE
+
+
+def _points(tag: int, size: float) -> Floats:
     """A grid in the face's parameters with points about `size` apart; those outside its edges are dropped."""
     low, high = (np.array(b) for b in gmsh.model.getParametrizationBounds(2, tag))
     counts = [_steps(tag, low, high, axis, size) for axis in (0, 1)]
@@ -63,8 +91,7 @@ def _sample(tag: int, area: float, size: float) -> FaceSamples:
     kept = grid[np.array(inside, dtype=bool)]
     if len(kept) == 0:
         kept = grid  # a sliver of a face between all grid points: its surroundings serve as well
-    points = np.array(gmsh.model.getValue(2, tag, kept.ravel().tolist())).reshape(-1, 3)
-    return FaceSamples(points, size, area)
+    return np.array(gmsh.model.getValue(2, tag, kept.ravel().tolist())).reshape(-1, 3)
 
 
 def _steps(tag: int, low: Floats, high: Floats, axis: int, size: float) -> int:

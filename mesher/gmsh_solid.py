@@ -44,7 +44,7 @@ def mesh_brep(job: dict[str, Any], path: Path) -> tuple[dict[str, Any], dict[str
             raise ValueError(f"the file holds {len(volumes)} shapes; one solid is needed")
         faces = match_faces(job["marks"], _face_marks(), job["extent"])
         volume = gmsh.model.occ.getMass(3, volumes[0][1])
-        integrals = _set_size_field(job, faces, volume, path.parent)
+        integrals, tolerance = _set_size_field(job, faces, volume, path.parent)
         nodes = estimated_nodes(*integrals)
         if nodes > job["most_nodes"]:
             raise OverBudget(nodes)
@@ -52,7 +52,7 @@ def mesh_brep(job: dict[str, Any], path: Path) -> tuple[dict[str, Any], dict[str
             gmsh.option.setNumber(name, value)
         gmsh.model.mesh.generate(3)
         answer = {"version": version, "volume": volume, "estimated_nodes": nodes, "integrals": integrals}
-        return answer, {**_arrays(faces), "straight": np.array([_straight(tag) for tag in faces])}
+        return answer, {**_arrays(faces), "tolerance": np.array(tolerance)}
 
 
 def _face_marks() -> list[dict[str, Any]]:
@@ -67,8 +67,13 @@ def _face_marks() -> list[dict[str, Any]]:
     ]
 
 
-def _set_size_field(job: dict[str, Any], faces: list[int], volume: float, folder: Path) -> tuple[float, float]:
-    """Make the background field; returns the integrals for the estimate of the number of nodes."""
+def _set_size_field(
+    job: dict[str, Any], faces: list[int], volume: float, folder: Path
+) -> tuple[tuple[float, float], list[float]]:
+    """Make the background field.
+
+    Returns the integrals for the estimate of the number of nodes, and the tolerance of each face's area.
+    """
     sizes = Sizes.from_json(job["sizes"])
     areas = [mark["area"] for mark in job["marks"]]
     samples = sample_faces(faces, areas, sizes)
@@ -82,13 +87,7 @@ def _set_size_field(job: dict[str, Any], faces: list[int], volume: float, folder
     gmsh.model.mesh.field.setString(field, "FileName", str(folder / "sizes.bin"))
     gmsh.model.mesh.field.setNumber(field, "TextFormat", 0)
     gmsh.model.mesh.field.setAsBackgroundMesh(field)
-    return node_integrals(areas, [grid.at(s.points) for s in samples], volume)
-
-
-def _straight(tag: int) -> bool:
-    """Whether a face is plane with straight edges: then its mesh has exactly its area."""
-    edges = gmsh.model.getBoundary([(2, tag)], oriented=False)
-    return gmsh.model.getType(2, tag) == "Plane" and all(gmsh.model.getType(1, e) == "Line" for _, e in edges)
+    return node_integrals(areas, [grid.at(s.points) for s in samples], volume), [s.tolerance for s in samples]
 
 
 def _arrays(faces: list[int]) -> dict[str, Any]:

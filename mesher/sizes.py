@@ -39,22 +39,26 @@ class Sizes:
         Elements around a full turn of a curved face that raises no stress; a rounding gets two thirds of that.
     faces
         Size at a face, by its index.
+    roundings
+        Faces that are roundings along the member.
     """
 
     bulk: float
     slope: float
     turn: float
     faces: Mapping[int, float]
+    roundings: tuple[int, ...] = ()
 
     def as_json(self) -> dict[str, Any]:
         """JSON-like, keys of `faces` as text."""
-        return {**asdict(self), "faces": {str(k): v for k, v in self.faces.items()}}
+        return {**asdict(self), "faces": {str(k): v for k, v in self.faces.items()}, "roundings": [*self.roundings]}
 
     @classmethod
     def from_json(cls, data: Mapping[str, Any]) -> Sizes:
         """The inverse of `as_json`."""
         faces = {int(k): float(v) for k, v in data["faces"].items()}
-        return cls(float(data["bulk"]), float(data["slope"]), float(data["turn"]), faces)
+        roundings = tuple(int(i) for i in data["roundings"])
+        return cls(float(data["bulk"]), float(data["slope"]), float(data["turn"]), faces, roundings)
 
 
 def elements_around(accuracy: float) -> float:
@@ -64,7 +68,7 @@ def elements_around(accuracy: float) -> float:
 
 def bulk_factor(accuracy: float) -> float:
     """Sizes away from stress raisers, as a factor on those for 2 %."""
-    return min(max((accuracy / REFERENCE_ACCURACY) ** (1.0 / 3.0), 0.3), 1.2)
+    return min(max((accuracy / REFERENCE_ACCURACY) ** (1.0 / 3.0), 0.3), 1.3)
 
 
 def sizes_for(solid: NamedSolid, accuracy: float, factor: float = 1.0) -> Sizes:
@@ -86,18 +90,23 @@ def sizes_for(solid: NamedSolid, accuracy: float, factor: float = 1.0) -> Sizes:
     if solid.least_wall > 0 and not any(h.kind == "wall" for h in solid.hints):
         bulk = min(bulk, 1.6 * solid.least_wall * coarse)
     faces: dict[int, float] = {}
+    roundings = sorted({i for hint in solid.hints if _runs_along(hint) for i in hint.faces})
     for hint in solid.hints:
         size = _hint_size(hint, around, coarse)
         for face in hint.faces:
             if not 0 <= face < len(solid.faces):
                 raise MeshError(f"size hint {hint.label!r} names face {face}; the solid has {len(solid.faces)} faces")
             faces[face] = min(size, bulk, faces.get(face, bulk))
-    return Sizes(bulk * factor, 0.4, 12.0, {k: v * factor for k, v in sorted(faces.items())})
+    return Sizes(bulk * factor, 0.4, 12.0, {k: v * factor for k, v in sorted(faces.items())}, tuple(roundings))
+
+
+def _runs_along(hint: SizeHint) -> bool:
+    return hint.kind == "fillet" and hint.label.split()[:1] != [] and hint.label.split()[0] in _ALONG
 
 
 def _hint_size(hint: SizeHint, around: float, coarse: float) -> float:
     """Size at the faces of one hint, mm."""
-    if hint.kind == "wall" or hint.label.split()[:1] and hint.label.split()[0] in _ALONG:
+    if hint.kind == "wall" or _runs_along(hint):
         return 1.2 * hint.thickness * coarse if hint.thickness > 0 else float("inf")
     if hint.kind not in RAISERS:
         raise MeshError(f"size hint {hint.label!r}: kind {hint.kind!r}; allowed: {', '.join(RAISERS)}, wall")

@@ -41,6 +41,12 @@ def bar(length: float = 200.0, width: float = 20.0, depth: float = 30.0) -> Name
     return named(shape, least_wall=min(width, depth), arm__start="<X", arm__end=">X", arm__top=">Z", arm__bottom="<Z")
 
 
+def rounded_bar(radius: float = 1.0) -> NamedSolid:
+    shape = cq.Workplane("XY").box(60.0, 20.0, 30.0).edges("|X").fillet(radius)
+    solid = named(shape, least_wall=20.0, arm__start="<X", arm__end=">X", arm__top=">Z")
+    return with_region(solid, "arm.roundings", _indices(shape, "CYLINDER", radius))
+
+
 def _indices(shape: cq.Workplane, kind: str, radius: float) -> tuple[int, ...]:
     """Faces of one kind (``CYLINDER``) with one radius."""
     found = []

@@ -11,7 +11,7 @@ from geometry.budget import Budget
 from geometry.named_solid import NamedSolid
 from geometry.problem import MeshError
 from mesher import NamedMesh, mesh_solid
-from mesher.assemble import LEAST_QUALITY, MeshRefused, check_quality
+from mesher.assemble import LEAST_QUALITY, MeshRefused, _check_faces, check_quality
 from mesher.attempts import CHAIN, Attempt
 from mesher.estimate import nodes_within, solver_memory
 from mesher.matching import FaceMismatch, match_faces
@@ -119,6 +119,16 @@ def test_the_gate_works_on_a_whole_mesh(bar_mesh: NamedMesh) -> None:
     spoiled[:, bar_mesh.tets[4, 7]] = spoiled[:, bar_mesh.tets[0, 7]]
     with pytest.raises(MeshRefused, match="may be inverted"):
         check_quality(scaled_jacobian(spoiled, bar_mesh.tets), spoiled, bar_mesh.tets)
+
+
+def test_a_region_of_the_wrong_area_is_named(bar: NamedSolid, bar_mesh: NamedMesh) -> None:
+    area = np.array([face.area for face in bar.faces])
+    tolerance = np.full(6, 1e-9)
+    _check_faces(area, tolerance, bar)
+    top = bar.regions["arm.top"][0]
+    area[top] *= 1 + 1e-6
+    with pytest.raises(MeshRefused, match=rf"face {top} \(region arm.top\): area .* 1 of 6 faces"):
+        _check_faces(area, tolerance, bar)
 
 
 def _mark(tag: int, area: float, centroid: tuple[float, ...], box: tuple[float, ...]) -> dict[str, object]:

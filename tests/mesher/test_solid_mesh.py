@@ -160,3 +160,12 @@ def test_finer_accuracy_gives_more_nodes_and_better_curves(solids: ModuleType, p
     pin = fine.facets["plate.pin"]
     rim = np.unique(pin[:3, :][np.isclose(fine.nodes[2, pin[:3]], 2.5)])
     assert 18 <= len(rim) <= 24  # elements around the hole at 2 %
+
+
+def test_small_roundings_are_met_with_one_curved_element_a_quarter_turn(solids: ModuleType, budget: Budget) -> None:
+    mesh = mesh_solid(solids.rounded_bar(1.0), 0.05, budget)
+    assert mesh.recipe["failed"] == []
+    exact = 4 * np.pi / 2 * 60.0
+    assert mesh.region_area["arm.roundings"] == pytest.approx(exact, rel=6e-3)
+    assert mesh.region_area["arm.roundings"] < exact  # parabolas are shorter than their arcs
+    assert mesh.region_area["arm.top"] == pytest.approx(18.0 * 60.0, rel=1e-9)
