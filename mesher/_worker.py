@@ -71,7 +71,7 @@ def main(folder: str) -> int:
     try:
         answer, arrays = _do(job, room)
         np.savez(room / "arrays.npz", **arrays)
-    except Exception as error:  # handed to the parent, which raises it again with the attempt's name
+    except Exception as error:  # noqa: BLE001 - handed to the parent, which raises it again with the attempt's name
         facts = getattr(error, "facts", {})
         answer = {"error": {"kind": type(error).__name__, "message": str(error), "facts": facts}}
     part = room / "answer.part"

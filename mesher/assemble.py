@@ -46,7 +46,7 @@ def assemble(result: ChildResult, solid: NamedSolid, recipe: dict[str, Any]) -> 
     quality = scaled_jacobian(nodes, tets)
     check_quality(quality, nodes, tets)
     areas = facet_areas(nodes, boundary)
-    face_area = np.bincount(face_index, weights=areas, minlength=len(solid.faces))
+    face_area: Floats = np.bincount(face_index, weights=areas, minlength=len(solid.faces)).astype(np.float64)
     _check_faces(face_area, arrays["tolerance"], solid)
     volume = float(tetrahedron_volumes(nodes, tets).sum())
     if abs(volume - solid.volume) > VOLUME_TOLERANCE * solid.volume:
@@ -72,8 +72,9 @@ def check_quality(quality: Floats, nodes: Floats, tets: Ints) -> None:
     if bad:
         worst = int(np.argmin(quality))
         place = nodes[:, tets[:4, worst]].mean(axis=1)
+        inverted = int((quality <= 0).sum())
         raise MeshRefused(
-            f"{bad} of {len(quality)} elements have a scaled Jacobian below {LEAST_QUALITY} ({int((quality <= 0).sum())}"
+            f"{bad} of {len(quality)} elements have a scaled Jacobian below {LEAST_QUALITY} ({inverted}"
             f" of them may be inverted); the worst has {quality[worst]:.3g}, near"
             f" ({place[0]:.4g}, {place[1]:.4g}, {place[2]:.4g}) mm"
         )

@@ -16,6 +16,7 @@ import sys
 import tempfile
 import time
 from collections.abc import Mapping
+from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Literal
@@ -138,10 +139,8 @@ def _resident(pid: int) -> float:
 def _kill(process: subprocess.Popen[bytes]) -> None:
     """End the child's whole session, then reap the child."""
     if process.poll() is None:
-        try:
+        with suppress(ProcessLookupError):
             os.killpg(process.pid, signal.SIGKILL)
-        except ProcessLookupError:
-            pass
     if process.stdin is not None:
         process.stdin.close()
     process.wait()

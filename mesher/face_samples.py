@@ -21,7 +21,7 @@ CURVED_TOLERANCE = 2e-3
 """Allowed relative error of a face's area: plane with straight edges, or any other."""
 
 _ARC_COEFFICIENT = 8.8e-4
-"""A parabola through the ends and the middle of an arc of angle a (rad) is short by this times a^4: 5.4e-3 at 90 degrees."""
+"""A parabola through the ends and the middle of an arc of angle a (rad) is short by this times a^4."""
 
 
 @dataclass(frozen=True, slots=True)

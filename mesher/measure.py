@@ -28,14 +28,16 @@ def triangle_gradients(X: Floats) -> Floats:
     """Derivatives of the six shape functions (corners, 01, 12, 02) at X (2, q): (6, 2, q)."""
     x, y = X
     o = np.zeros_like(x)
-    return np.array([
-        [4 * x + 4 * y - 3, 4 * x + 4 * y - 3],
-        [4 * x - 1, o],
-        [o, 4 * y - 1],
-        [4 - 8 * x - 4 * y, -4 * x],
-        [4 * y, 4 * x],
-        [-4 * y, 4 - 4 * x - 8 * y],
-    ])
+    return np.array(
+        [
+            [4 * x + 4 * y - 3, 4 * x + 4 * y - 3],
+            [4 * x - 1, o],
+            [o, 4 * y - 1],
+            [4 - 8 * x - 4 * y, -4 * x],
+            [4 * y, 4 * x],
+            [-4 * y, 4 - 4 * x - 8 * y],
+        ]
+    )
 
 
 def tetrahedron_gradients(X: Floats) -> Floats:
@@ -43,18 +45,20 @@ def tetrahedron_gradients(X: Floats) -> Floats:
     x, y, z = X
     o = np.zeros_like(x)
     first = 4 * (x + y + z) - 3
-    return np.array([
-        [first, first, first],
-        [4 * x - 1, o, o],
-        [o, 4 * y - 1, o],
-        [o, o, 4 * z - 1],
-        [4 - 8 * x - 4 * y - 4 * z, -4 * x, -4 * x],
-        [4 * y, 4 * x, o],
-        [-4 * y, 4 - 4 * x - 8 * y - 4 * z, -4 * y],
-        [-4 * z, -4 * z, 4 - 4 * x - 4 * y - 8 * z],
-        [4 * z, o, 4 * x],
-        [o, 4 * z, 4 * y],
-    ])
+    return np.array(
+        [
+            [first, first, first],
+            [4 * x - 1, o, o],
+            [o, 4 * y - 1, o],
+            [o, o, 4 * z - 1],
+            [4 - 8 * x - 4 * y - 4 * z, -4 * x, -4 * x],
+            [4 * y, 4 * x, o],
+            [-4 * y, 4 - 4 * x - 8 * y - 4 * z, -4 * y],
+            [-4 * z, -4 * z, 4 - 4 * x - 4 * y - 8 * z],
+            [4 * z, o, 4 * x],
+            [o, 4 * z, 4 * y],
+        ]
+    )
 
 
 def facet_areas(nodes: Floats, facets: Ints, points: int = 6) -> Floats:

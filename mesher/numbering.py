@@ -88,11 +88,11 @@ def _oriented(cells: Ints, corners: Floats) -> Ints:
     first = corners[1:] - corners[0]
     if len(corners) == 4:
         sign = np.einsum("mi,mi->m", np.cross(first[0], first[1]), first[2])
-        swap = (1, 0, 2, 3, 4, 6, 5, 8, 7, 9)
+        swap = [1, 0, 2, 3, 4, 6, 5, 8, 7, 9]
     else:
         sign = first[0, :, 0] * first[1, :, 1] - first[0, :, 1] * first[1, :, 0]
-        swap = (1, 0, 2, 3, 5, 4)
+        swap = [1, 0, 2, 3, 5, 4]
     turned = cells.copy()
     negative = sign < 0
-    turned[:, negative] = cells[:, negative][list(swap)]
+    turned[:, negative] = cells[:, negative][swap]
     return turned

@@ -1,4 +1,4 @@
-"""Plane geometry of an outline, as far as meshing needs it: arcs, corners, area, and whether it is closed and simple."""
+"""Plane geometry of an outline, as far as meshing needs it: arcs, corners, area, gaps and crossings."""
 
 from __future__ import annotations
 

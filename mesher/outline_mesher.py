@@ -21,9 +21,7 @@ _START_SECONDS = 20.0
 _SECONDS_PER_OUTLINE = 10.0
 
 
-def mesh_outlines(
-    outlines: Sequence[Outline], size: Sequence[float], memory: float = 2048.0
-) -> list[OutlineMesh]:
+def mesh_outlines(outlines: Sequence[Outline], size: Sequence[float], memory: float = 2048.0) -> list[OutlineMesh]:
     """Mesh sections with curved 6-node triangles; lines and arcs are met exactly by the nodes.
 
     Parameters

@@ -29,10 +29,12 @@ def _lattice() -> tuple[Floats, Floats]:
     powers = [(i, j, k, 3 - i - j - k) for i in range(4) for j in range(4 - i) for k in range(4 - i - j)]
     points = np.array([p[:3] for p in powers]).T / 3.0
     barycentric = np.array([*points, 1 - points.sum(axis=0)])
-    bernstein = np.array([
-        factorial(3) / np.prod([factorial(n) for n in p]) * np.prod(barycentric.T ** np.array(p), axis=1)
-        for p in powers
-    ])
+    bernstein = np.array(
+        [
+            factorial(3) / np.prod([factorial(n) for n in p]) * np.prod(barycentric.T ** np.array(p), axis=1)
+            for p in powers
+        ]
+    )
     return points, np.linalg.inv(bernstein)
 
 

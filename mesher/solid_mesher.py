@@ -117,7 +117,9 @@ def _replay(solid: NamedSolid, budget: Budget, recipe: Mapping[str, Any]) -> Nam
         version, digest, solid_digest = str(recipe["kernel"]), str(recipe["mesh"]), str(recipe["solid"])
         failed = [dict(f) for f in recipe["failed"]]
     except (KeyError, TypeError, ValueError, AttributeError) as error:
-        raise MeshError(f"mesh recipe: not readable ({type(error).__name__}: {error}); mesh without a recipe") from error
+        raise MeshError(
+            f"mesh recipe: not readable ({type(error).__name__}: {error}); mesh without a recipe"
+        ) from error
     if hashlib.sha256(solid.brep).hexdigest() != solid_digest:
         raise MeshError("mesh recipe: it belongs to another solid; mesh without a recipe")
     try:
@@ -166,5 +168,7 @@ def _all_failed(failed: Sequence[Mapping[str, str]], logs: Sequence[str]) -> str
     tail = "\n".join(logs[-1].strip().splitlines()[-8:]) if logs else ""
     return (
         f"none of the {len(failed)} meshing attempts succeeded. Look for very short edges or slivers of faces in the"
-        " solid, or allow more seconds for each attempt.\n" + "\n".join(lines) + (f"\nLast log:\n{tail}" if tail else "")
+        " solid, or allow more seconds for each attempt.\n"
+        + "\n".join(lines)
+        + (f"\nLast log:\n{tail}" if tail else "")
     )

@@ -37,7 +37,10 @@ def write_vtu(path: Path | str, mesh: NamedMesh, point_data: Data | None = None,
     """
     import meshio
 
-    points, cells = _checked(point_data, mesh.nodes.shape[1], "node"), _checked(cell_data, mesh.tets.shape[1], "element")
+    points, cells = (
+        _checked(point_data, mesh.nodes.shape[1], "node"),
+        _checked(cell_data, mesh.tets.shape[1], "element"),
+    )
     # VTK's quadratic tetrahedron orders its edges 01, 12, 02, 03, 13, 23, as we do; gmsh's files do not.
     content = meshio.Mesh(
         np.ascontiguousarray(mesh.nodes.T),
@@ -63,7 +66,7 @@ def read_vtu(path: Path | str) -> meshio.Mesh:
 
     try:
         return meshio.read(path, file_format="vtu")
-    except (Exception, SystemExit) as error:  # noqa: BLE001 - any failure of the parser means one thing here
+    except (Exception, SystemExit) as error:
         raise MeshError(f"mesh file {path}: cannot be read ({type(error).__name__}: {error})") from error
 
 

@@ -30,8 +30,15 @@ def named(shape: cq.Workplane, hints: Sequence[SizeHint] = (), least_wall: float
     buffer = io.BytesIO()
     solid.exportBrep(buffer)
     return NamedSolid(
-        brep=buffer.getvalue(), step=b"", faces=tuple(marks), regions=named_regions, volume=solid.Volume(),
-        area=solid.Area(), centroid=solid.Center().toTuple(), volume_estimate=solid.Volume(), hints=tuple(hints),
+        brep=buffer.getvalue(),
+        step=b"",
+        faces=tuple(marks),
+        regions=named_regions,
+        volume=solid.Volume(),
+        area=solid.Area(),
+        centroid=solid.Center().toTuple(),
+        volume_estimate=solid.Volume(),
+        hints=tuple(hints),
         least_wall=least_wall,
     )
 
@@ -104,8 +111,11 @@ def camera_arm() -> NamedSolid:
     top = slab([(0, d0 / 2 - flange), (length, d1 / 2 - flange), (length, d1 / 2), (0, d0 / 2)], width)
     shape = middle.union(top).union(top.mirror("XY"))
     roots = [
-        e for e in shape.edges().vals()
-        if e.geomType() == "LINE" and e.Length() > 300 and abs(abs(e.Center().y) - web / 2) < 1e-6
+        e
+        for e in shape.edges().vals()
+        if e.geomType() == "LINE"
+        and e.Length() > 300
+        and abs(abs(e.Center().y) - web / 2) < 1e-6
         and abs(e.Center().z) < (d0 + d1) / 4 - 1
     ]
     shape = cq.Workplane(obj=shape.val().fillet(root, roots))

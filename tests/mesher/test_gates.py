@@ -28,7 +28,8 @@ def test_hanging_and_crashing_attempts_do_not_lose_the_chain(bar: NamedSolid, ba
     chain = (_faulty("fault:crash"), _faulty("fault:log"), CHAIN[0])
     mesh = mesh_solid(bar, 0.05, budget, chain=chain)
     assert [(f["attempt"], f["ending"]) for f in mesh.recipe["failed"]] == [
-        ("fault:crash", "crash"), ("fault:log", "refused"),
+        ("fault:crash", "crash"),
+        ("fault:log", "refused"),
     ]
     assert mesh.recipe["mesh"] == bar_mesh.recipe["mesh"]  # earlier attempts leave no trace in the mesh
     quick = replace(budget, seconds=2.0)

@@ -27,15 +27,27 @@ def _circle(radius: float, ccw: bool = True) -> tuple[Edge, ...]:
 RECTANGLE = Outline(_loop([(-25, -50), (25, -50), (25, 50), (-25, 50)]))
 ANNULUS = Outline(_circle(50.0), (_circle(40.0, ccw=False),))
 EL = Outline(_loop([(0, 0), (60, 0), (60, 10), (10, 10), (10, 60), (0, 60)]))
-FILLETED_EL = Outline((
-    Line((0, 0), (60, 0)), Line((60, 0), (60, 10)), Line((60, 10), (18, 10)),
-    Arc((18, 10), (10, 18), (18, 18), ccw=False), Line((10, 18), (10, 60)), Line((10, 60), (0, 60)), Line((0, 60), (0, 0)),
-))
+FILLETED_EL = Outline(
+    (
+        Line((0, 0), (60, 0)),
+        Line((60, 0), (60, 10)),
+        Line((60, 10), (18, 10)),
+        Arc((18, 10), (10, 18), (18, 18), ccw=False),
+        Line((10, 18), (10, 60)),
+        Line((10, 60), (0, 60)),
+        Line((0, 60), (0, 0)),
+    )
+)
 
 
 @pytest.fixture(scope="module")
 def meshes() -> dict[str, OutlineMesh]:
-    outlines = {"rectangle": (RECTANGLE, 12.5), "annulus": (ANNULUS, 5.0), "el": (EL, 5.0), "filleted": (FILLETED_EL, 5.0)}
+    outlines = {
+        "rectangle": (RECTANGLE, 12.5),
+        "annulus": (ANNULUS, 5.0),
+        "el": (EL, 5.0),
+        "filleted": (FILLETED_EL, 5.0),
+    }
     made = mesh_outlines([o for o, _ in outlines.values()], [h for _, h in outlines.values()])
     return dict(zip(outlines, made, strict=True))
 
@@ -57,7 +69,9 @@ def test_numbering_is_scikit_fems(meshes: dict[str, OutlineMesh], name: str) -> 
 
 
 EXACT = {
-    "rectangle": (5000.0, 1e-12), "annulus": (math.pi * 900.0, 1e-5), "el": (1100.0, 1e-12),
+    "rectangle": (5000.0, 1e-12),
+    "annulus": (math.pi * 900.0, 1e-5),
+    "el": (1100.0, 1e-12),
     "filleted": (1100.0 + 64.0 * (1 - math.pi / 4), 1e-5),
 }
 

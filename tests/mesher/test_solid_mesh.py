@@ -69,8 +69,16 @@ def test_boundary_is_closed_and_points_outwards(which: str, request: pytest.Fixt
 
     X, w = simplex_rule(2, 4)
     x, y = X
-    values = np.array([(1 - x - y) * (1 - 2 * x - 2 * y), x * (2 * x - 1), y * (2 * y - 1), 4 * x * (1 - x - y),
-                       4 * x * y, 4 * y * (1 - x - y)])
+    values = np.array(
+        [
+            (1 - x - y) * (1 - 2 * x - 2 * y),
+            x * (2 * x - 1),
+            y * (2 * y - 1),
+            4 * x * (1 - x - y),
+            4 * x * y,
+            4 * y * (1 - x - y),
+        ]
+    )
     tangents = np.einsum("cik,idq->cdkq", mesh.nodes[:, mesh.boundary], triangle_gradients(X))
     normals = np.cross(tangents[:, 0], tangents[:, 1], axis=0)
     points = np.einsum("cik,iq->ckq", mesh.nodes[:, mesh.boundary], values)
@@ -89,7 +97,12 @@ def test_mid_edge_nodes_belong_to_their_edges(bar_mesh: NamedMesh) -> None:
 
 def test_regions_keep_their_place_and_area(bar_mesh: NamedMesh) -> None:
     assert set(bar_mesh.facets) == {"arm.start", "arm.end", "arm.top", "arm.bottom"}
-    for name, axis, value in (("arm.start", 0, 0.0), ("arm.end", 0, 200.0), ("arm.top", 2, 15.0), ("arm.bottom", 2, -15.0)):
+    for name, axis, value in (
+        ("arm.start", 0, 0.0),
+        ("arm.end", 0, 200.0),
+        ("arm.top", 2, 15.0),
+        ("arm.bottom", 2, -15.0),
+    ):
         assert np.abs(bar_mesh.nodes[axis, bar_mesh.facets[name]] - value).max() < 1e-9
     exact = {"arm.start": 600.0, "arm.end": 600.0, "arm.top": 4000.0, "arm.bottom": 4000.0}
     assert bar_mesh.region_area == pytest.approx(exact, rel=1e-12)
@@ -151,11 +164,15 @@ def test_the_order_of_the_faces_does_not_matter(bar: NamedSolid, bar_mesh: Named
     assert mesh.region_area == bar_mesh.region_area
 
 
-def test_finer_accuracy_gives_more_nodes_and_better_curves(solids: ModuleType, plate_mesh: NamedMesh, budget: Budget) -> None:
+def test_finer_accuracy_gives_more_nodes_and_better_curves(
+    solids: ModuleType, plate_mesh: NamedMesh, budget: Budget
+) -> None:
     fine = mesh_solid(solids.plate_with_hole(), 0.02, budget)
     assert fine.nodes.shape[1] > 1.2 * plate_mesh.nodes.shape[1]
-    error = {mesh: abs(m.region_area["plate.pin"] / m.region_area_cad["plate.pin"] - 1)
-             for mesh, m in (("fine", fine), ("coarse", plate_mesh))}
+    error = {
+        mesh: abs(m.region_area["plate.pin"] / m.region_area_cad["plate.pin"] - 1)
+        for mesh, m in (("fine", fine), ("coarse", plate_mesh))
+    }
     assert error["fine"] < 0.5 * error["coarse"]
     pin = fine.facets["plate.pin"]
     rim = np.unique(pin[:3, :][np.isclose(fine.nodes[2, pin[:3]], 2.5)])
