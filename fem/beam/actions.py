@@ -220,13 +220,14 @@ class Actions:
         return vector
 
     def _average_row(self, name: str, d: Array, turning: bool) -> Array:
-        """Mean displacement or rotation along d: by reciprocity the nodal forces of a unit load spread on the region."""
+        """Mean displacement or rotation along d: by reciprocity the nodal forces of a unit load on the region."""
         unit = Forces(np.zeros(self.freedoms), np.zeros((len(self.mesh.x) - 1, 12)))
-        self._on_region(unit, name, *((np.zeros(3), d) if turning else (d, np.zeros(3))), False)
+        force, moment = (np.zeros(3), d) if turning else (d, np.zeros(3))
+        self._on_region(unit, name, force, moment, False)
         vector = unit.freedoms
         for e in np.flatnonzero(np.abs(unit.lengths).any(axis=1)):
             n = 7 if self.mesh.line.warping[e] else 6
-            M = self.mesh.line.half[e][1] @ self.mesh.line.half[e][0]
+            M = self.mesh.line.half[int(e)][1] @ self.mesh.line.half[int(e)][0]
             load = np.append(unit.lengths[e], 0.0)
             f = -np.linalg.solve(M[:n, n:2 * n], M[:n, 2 * n:] @ load)
             vector[7 * e:7 * e + n] += f
@@ -273,7 +274,7 @@ class Actions:
             scale = np.array([1.0] * 3 + [1.0 / self.mesh.length] * 3)
             _, s, vt = np.linalg.svd(own.reshape(-1, 6) * scale, full_matrices=False)
             keep = s > 1e-9 * s[0]
-            weights = (np.linalg.pinv((own.reshape(-1, 6) * scale)) @ body.reshape(-1, 6))  # section motion per body's
+            weights = (np.linalg.pinv(own.reshape(-1, 6) * scale) @ body.reshape(-1, 6))  # section motion per body's
             for v in vt[keep]:
                 vector = np.zeros(self.freedoms)
                 vector[7 * node:7 * node + 6] = v / scale

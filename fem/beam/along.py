@@ -109,7 +109,8 @@ class Sections:
             Q = np.zeros((5, 5))
             Q[:2, :2] = s.shear_compliance
             if not constant:
-                Q = tapered_shear(lambda v: member_outline(self.member, v), float(x), 1e-4 * (b - a), s.shear_compliance)
+                step = 1e-4 * (b - a)
+                Q = tapered_shear(lambda v: member_outline(self.member, v), float(x), step, s.shear_compliance)
             rows.append([s.J * (s.Iyy + s.Izz) / s.area**4, s.ys - s.yc, s.zs - s.zc, s.Iw, *s.warping,
                          *(Q * s.area).ravel()])
         return Piece(a, b, constant, fitted(a, b, at, table), fitted(a, b, points, np.array(rows)),

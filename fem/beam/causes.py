@@ -79,4 +79,5 @@ def _differences(text: str, base: dict[FigureKey, float], other: dict[FigureKey,
     for key, value in base.items():
         change = other.get(key, value) - value
         if abs(change) > LEAST * scale[key.case, key.quantity] and np.isfinite(change):
-            yield Cause(key.case, key.place, key.quantity, key.component, text, share * change, open_share * abs(change))
+            yield Cause(key.case, key.place, key.quantity, key.component, text, share * change,
+                        open_share * abs(change))

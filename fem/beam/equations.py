@@ -139,7 +139,8 @@ def solve_line(line: Line, rows: Sequence[Row], nodal: Array, loads: Array, rigi
     unknown = _solve(matrix, rhs, what)
     freedoms = np.zeros_like(nodal)
     freedoms[here_is] = unknown[at[here_is]]
-    return States(*_recover(line, freedoms, unknown, start_f, loads), freedoms, unknown[start_f[-1]:])
+    start, middle, end = _recover(line, freedoms, unknown, start_f, loads)
+    return States(start, middle, end, freedoms, unknown[start_f[-1]:])
 
 
 def present(line: Line) -> NDArray[np.bool_]:
@@ -203,8 +204,8 @@ def _stopped(rows: Sequence[Row], rigid: Array, length: float, what: str) -> Non
         # name the pure motions inside the free space when there are any
         inside = [MOTIONS[k] for k in range(6) if np.linalg.norm(free[:, k]) > 1.0 - 1e-6]
         words = inside or [_mixed(f) for f in free]
-        raise SolveError(f"{what}: the supports leave {len(free)} motion(s) of the part free: {', '.join(words)} (member "
-                         "axes); hold a further freedom")
+        raise SolveError(f"{what}: the supports leave {len(free)} motion(s) of the part free: {', '.join(words)} "
+                         "(member axes); hold a further freedom")
 
 
 def _mixed(motion: Array) -> str:

@@ -35,8 +35,8 @@ def face_edges(outline: Outline, face: str) -> list[tuple[int, int]]:
     if face in OUTWARD:
         n = np.array(OUTWARD[face])
         extreme = float((points @ n).max())
-        return [(0, i) for i, e in enumerate(outline.outer)
-                if isinstance(e, Line) and _normal(e) @ n > 0.999 and abs(np.array(e.start) @ n - extreme) < 1e-6 * size]
+        return [(0, i) for i, e in enumerate(outline.outer) if isinstance(e, Line)
+                and _normal(e) @ n > 0.999 and abs(np.array(e.start) @ n - extreme) < 1e-6 * size]
     n = np.array((-1.0, 0.0) if face == "web_left" else (1.0, 0.0))
     upright = [(i, e) for i, e in enumerate(outline.outer) if isinstance(e, Line) and _normal(e) @ n > 0.999]
     inside = [(i, e) for i, e in upright if abs(np.array(e.start) @ n - float((points @ n).max())) > 1e-6 * size]

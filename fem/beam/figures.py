@@ -192,4 +192,5 @@ def diagram(s: Solved, case: int) -> Diagram:
     """Diagrams of one case."""
     both = np.stack([s.states.start[..., case], s.states.end[..., case]], axis=1).reshape(-1, 14)
     x = np.stack([s.mesh.x[:-1], s.mesh.x[1:]], axis=1).ravel()
-    return Diagram(x, *(both[:, 7 + i] for i in range(6)), both[:, 13], both[:, :3], both[:, 3:6])
+    N, Vy, Vz, T, My, Mz, B = both[:, 7:].T
+    return Diagram(x, N, Vy, Vz, T, My, Mz, B, both[:, :3], both[:, 3:6])

@@ -8,7 +8,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.beam.along import SectionSolver, Sections
+from fem.beam.along import Sections, SectionSolver
 from fem.beam.axes import member_axes
 from fem.beam.cut_faces import cut_faces
 from fem.beam.cuts import extent
@@ -151,7 +151,7 @@ class BeamMesh:
         first, last = self.node(start), self.node(end)
         lengths = np.arange(first, last)
         h = np.diff(self.x)[lengths]
-        strips = [self._strip(name, face, float(x), e, across)
+        strips = [self._strip(name, face, float(x), int(e), across)
                   for e, pair in zip(lengths, self.gauss.reshape(-1, 2)[lengths], strict=True) for x in pair]
         ends = [self._strip(name, face, float(self.x[k]), min(k, last - 1), across) for k in range(first, last + 1)]
         e = self.sections.integrals(0.5 * (start + end)).extremes

@@ -30,7 +30,7 @@ class Strip:
 
 @dataclass(frozen=True, slots=True)
 class EndFace:
-    """An end face at node `node`, with its centroid (3,) and `corners` (k, 3), the points that carry a point-wise hold."""
+    """An end face at node `node`, its centroid (3,), and `corners` (k, 3), the points of a point-wise hold."""
 
     name: str
     node: int
@@ -95,7 +95,7 @@ class Face:
 
 @dataclass(frozen=True, slots=True)
 class CutFaces:
-    """Inner faces of one cut or of a group: samples (k, 3) with area (k,), each tied to the node of its cut's middle."""
+    """Inner faces of one cut or a group: samples (k, 3) with area (k,), each tied to its cut's middle node."""
 
     name: str
     nodes: NDArray[np.int64]
@@ -115,11 +115,12 @@ Region = EndFace | Face | CutFaces
 
 
 def linear_traction(points: Array, weight: Array, force: Array, moment: Array) -> Callable[[Array], Array]:
-    """Traction with the given resultants: even for the force, linear in the distance from the centroid for the moment."""
+    """Traction with the given resultants: even for the force, linear in the distance to the centroid for the moment."""
     area = weight.sum()
     centre = weight @ points / area
     r = points - centre
-    theta = np.einsum("k,kij->ij", weight, (r**2).sum(axis=1)[:, None, None] * np.eye(3) - r[:, :, None] * r[:, None, :])
+    inertia = (r**2).sum(axis=1)[:, None, None] * np.eye(3) - r[:, :, None] * r[:, None, :]
+    theta = np.einsum("k,kij->ij", weight, inertia)
     turn = np.linalg.lstsq(theta, moment, rcond=1e-10)[0]
     return lambda p: force / area + np.cross(turn, p - centre)
 

@@ -18,7 +18,7 @@ from fem.beam.mesh import BeamMesh
 from fem.beam.result import BeamResult
 from fem.beam.section import sections_properties
 from geometry.budget import Budget
-from geometry.part import Part, RemotePoint
+from geometry.part import Part
 from geometry.problem import RunError, SolveError
 
 Array = NDArray[np.float64]

@@ -48,7 +48,8 @@ CASES = tuple(Case(v.name, {v.name: 1.0}) for v in LOADS)
 @pytest.fixture
 def full(part):
     def build(**more):
-        return part(SECTION, L, LOADS, cases=CASES, stations=TAPER, anchor="top", cuts=(HOLE,), patches=(PATCH,), **more)
+        return part(SECTION, L, LOADS, cases=CASES, stations=TAPER, anchor="top", cuts=(HOLE,), patches=(PATCH,),
+                    **more)
 
     return build
 
@@ -157,7 +158,7 @@ def test_roll_is_a_right_handed_turn(part, solve):
     rolled = solve(part(loads=[tip], roll=math.pi / 2), shear=False)
     ratio = rolled("arm.end", "displacement", "z") / upright("arm.end", "displacement", "z")
     assert ratio == pytest.approx(4.0, rel=1e-9)
-    # "left" (least y) of the rolled section looks down (y = z cross x carried from y to z): compression under a tip weight
+    # "left" (least y) of the rolled section looks down (its y points up): compression under a tip weight
     assert rolled("arm@0", "nominal_stress", "xx@left") < 0 < rolled("arm@0", "nominal_stress", "xx@right")
 
 
@@ -178,7 +179,8 @@ def test_reversed_member(part, solve):
 def test_work_is_twice_the_energy(full, solve):
     """Force times displacement at the tip."""
     p = full()
-    r = solve(replace(p, loads=(RegionLoad("one", "arm.end", (30.0, 40.0, -200.0)),), cases=(Case("one", {"one": 1.0}),)))
+    one = RegionLoad("one", "arm.end", (30.0, 40.0, -200.0))
+    r = solve(replace(p, loads=(one,), cases=(Case("one", {"one": 1.0}),)))
     u = [r("arm.end", "displacement", c, "one") for c in "xyz"]
     assert r("", "strain_energy", "", "one") == pytest.approx(0.5 * np.dot(u, (30.0, 40.0, -200.0)), rel=1e-6)
 
@@ -201,8 +203,8 @@ def test_rigid_and_average_differ_where_they_should(part, solve):
     got = {}
     for coupling in ("rigid", "average", "surface"):
         freedoms = {"x": 0.0, "y": 0.0, "z": 0.0} if coupling == "surface" else held
-        got[coupling] = -solve(part(loads=[tip], supports=[Support("s", "arm.pad", freedoms, coupling)], patches=(pad,)),
-                               shear=False)("arm.end", "displacement", "z")
+        held_pad = part(loads=[tip], supports=[Support("s", "arm.pad", freedoms, coupling)], patches=(pad,))
+        got[coupling] = -solve(held_pad, shear=False)("arm.end", "displacement", "z")
     span = 800.0**3 * 1000 / (3 * 8.75e11)
     assert got["rigid"] == pytest.approx(span, rel=1e-6)
     assert got["surface"] == pytest.approx(span, rel=1e-6)

@@ -77,7 +77,8 @@ def test_hole_in_a_flat_bar(part, solve):
     assert figure.error == pytest.approx(0.08 * edge, rel=1e-6)
 
 
-@pytest.mark.parametrize("cuts", [(hole(12.0, 20.0),), (hole(12.0), hole(12.0, 330.0, name="hole2")), (hole(12.0, z=15.0),)])
+@pytest.mark.parametrize("cuts", [
+    (hole(12.0, 20.0),), (hole(12.0), hole(12.0, 330.0, name="hole2")), (hole(12.0, z=15.0),)])
 def test_no_figure_near_other_things(part, solve, cuts):
     """Near a support, near another hole, or out of the middle: a note instead of a figure."""
     r = solve(part(FLAT, 600.0, [PULL], cuts=cuts), plain=True)
@@ -97,7 +98,8 @@ def test_shoulder_of_a_flat_bar(part, solve):
 
 def test_two_notches(part, solve):
     """D4: H 60, r 6: x = 0.2; one figure for each root."""
-    cuts = tuple(Cut(f"n_{e}", f"n_{e}", "notch", "y", "all", 300.0, 0.0, 12.0, 6.0, 6.0, edge=e) for e in ("top", "bottom"))
+    cuts = tuple(Cut(f"n_{e}", f"n_{e}", "notch", "y", "all", 300.0, 0.0, 12.0, 6.0, 6.0, edge=e)
+                 for e in ("top", "bottom"))
     r = solve(part(FLAT, 600.0, [BEND], cuts=cuts), plain=True)
     nominal = 6e5 / (8 * 48.0**2)
     assert r("arm.n_top", "notch_stress", "xx@lower") == pytest.approx(2.038 * nominal, rel=3e-4)

@@ -39,7 +39,7 @@ def test_torsion_of_a_built_in_I(part, solve):
 
 
 def test_flange_stress_of_the_bimoment(part, solve):
-    """At the root each flange bends as a plane beam under T/h: its edge stress, and its sign at the left edge on top."""
+    """At the root each flange bends as a plane beam under T/h: edge stress, and its sign at the left edge on top."""
     p = properties(part, solve, SECTION_I)
     r = solve(part(SECTION_I, L, [TORQUE]))
     B, h = abs(r.result.diagrams["c"].B[0]), 190.0
@@ -114,7 +114,8 @@ def test_where_the_line_lies_does_not_matter(part, solve):
             assert np.array([other(place, quantity, c) for c in "xyz"]) == pytest.approx(want, rel=1e-7)
     for point in ("top", "bottom", "left", "right"):
         want = results[0]("arm@300", "nominal_stress", f"xx@{point}")
-        assert [r("arm@300", "nominal_stress", f"xx@{point}") for r in results[1:]] == pytest.approx([want] * 2, rel=1e-6)
+        got = [r("arm@300", "nominal_stress", f"xx@{point}") for r in results[1:]]
+        assert got == pytest.approx([want] * 2, rel=1e-6)
 
 
 def test_angle_bends_askew(part, solve):

@@ -35,8 +35,8 @@ def test_prismatic_rectangle_is_six_fifths():
 
 def test_wedge():
     """Equilibrium gives tau = 1.5 (V - F)/A (1 - s^2) + 3 F/A s^2 with F = M h'/h and s the level over h/2: the energy
-    is (1.2 V^2 - 1.2 V F + 1.8 F^2)/A; an axial force adds (N h'/h)^2 int z^2 dA/A^2 = (N h')^2/(12 A) and nothing mixed
-    with V, because its shear stress is odd in z."""
+    is (1.2 V^2 - 1.2 V F + 1.8 F^2)/A; an axial force adds (N h'/h)^2 int z^2 dA/A^2 = (N h')^2/(12 A) and nothing
+    mixed with V, because its shear stress is odd in z."""
     h, dh, A = 80.0, -0.1, 2400.0
     form, _ = level_form(block, 0.0, 0.01, 1)
     f = dh / h
@@ -70,8 +70,8 @@ def test_axial_force_along_an_inclined_centroid_line():
 
 
 def test_deflection_of_a_wedge_cantilever(part, solve):
-    """B18 with shear: the standard formula with the local area gives 0.004119 for k 5/6; the inclined sides take that to
-    int (1.2 - 1.2 F + 1.8 F^2) with F = s/(1 + s), s from the tip, i.e. less."""
+    """B18 with shear: the standard formula with the local area gives 0.004119 for k 5/6; the inclined sides take that
+    to int (1.2 - 1.2 F + 1.8 F^2) with F = s/(1 + s), s from the tip, i.e. less."""
     tip = RegionLoad("tip", "arm.end", force=(0.0, 0.0, -1000.0))
     wedge = part(Section("rectangle", {"depth": 100.0, "width": 50.0}), 1000.0, [tip],
                  stations=(Station(1000.0, {"depth": 50.0}),))
