@@ -332,6 +332,12 @@ def test_what_the_material_lacks() -> None:
     assert "material.expansion" in {problem.path for problem in problems(CANTILEVER, bare, *hot)}
 
 
+def test_a_part_without_any_load_is_a_mistake_but_its_own_weight_is_enough() -> None:
+    bare = CANTILEVER[: CANTILEVER.index("[loads.tip]")]
+    assert only(problems(bare)).path == "loads"
+    assert not problems(bare + "[cases.rest]\nself_weight = 1.35\n")
+
+
 def test_mistakes_of_every_sort_come_at_once() -> None:
     found = problems(
         CAMERA_ARM,

@@ -155,7 +155,7 @@ def resolve_cases(values: Values, spec: PartSpec, loads: tuple[str, ...]) -> tup
     """The cases; one case ``all`` with every declared load at 1 when none is given."""
     known = (*loads, SELF_WEIGHT)
     if not spec.cases:
-        return (Case("all", dict.fromkeys(loads or (SELF_WEIGHT,), 1.0)),)
+        return (Case("all", dict.fromkeys(loads, 1.0)),)
     cases = []
     for name, factors in spec.cases.items():
         path = f"cases.{name}"
