@@ -33,7 +33,8 @@ def sample_faces(solid: Any, most: int = 12) -> list[FaceSamples]:
     """Samples of every face of `solid`, in the kernel's order.
 
     A triangulation of each face gives parameter points that are surely inside it; the points themselves are
-    taken from the exact surface. At most `most` points a face: its largest triangles, and others spread evenly over the rest.
+    taken from the exact surface. At most `most` points a face: in its largest triangles,
+    and in others spread evenly.
     """
     BRepMesh_IncrementalMesh(solid, 0.5, False, 0.3, False).Perform()
     try:
@@ -47,9 +48,9 @@ def _samples(face: Any, most: int) -> FaceSamples:
     if mesh is None or not mesh.HasUVNodes():
         raise SolidError("a face of the solid could not be triangulated.")
     count = mesh.NbTriangles()
-    uv = np.array([[(p := mesh.UVNode(i)).X(), p.Y()] for i in range(1, mesh.NbNodes() + 1)])
+    uv = np.array([(p.X(), p.Y()) for p in map(mesh.UVNode, range(1, mesh.NbNodes() + 1))])
     corners = np.array([mesh.Triangle(k).Get() for k in range(1, count + 1)]) - 1
-    nodes = np.array([[(p := mesh.Node(i)).X(), p.Y(), p.Z()] for i in range(1, mesh.NbNodes() + 1)])[corners]
+    nodes = np.array([(p.X(), p.Y(), p.Z()) for p in map(mesh.Node, range(1, mesh.NbNodes() + 1))])[corners]
     size = np.linalg.norm(np.cross(nodes[:, 1] - nodes[:, 0], nodes[:, 2] - nodes[:, 0]), axis=1)
     largest = np.argsort(-size.round(9), kind="stable")[: most // 2]
     picks = np.unique(np.concatenate([largest, np.linspace(0, count - 1, min(count, most // 2)).astype(int)]))

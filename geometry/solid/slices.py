@@ -12,8 +12,10 @@ from OCP.BRepBuilderAPI import BRepBuilderAPI_MakeFace
 from OCP.BRepGProp import BRepGProp
 from OCP.gp import gp_Dir, gp_Pln, gp_Pnt
 from OCP.GProp import GProp_GProps
+from OCP.TopTools import TopTools_ListOfShape
 
 from geometry.problem import SolidError
+from geometry.solid.kernel import area_of, faces_of
 
 COUNT = 9
 """Slices along a member."""
@@ -39,17 +41,31 @@ def slices_of(solid: Any, places: Sequence[float], reach: float) -> NDArray[np.f
     SolidError
         A plane cuts nothing.
     """
-    rows = []
+    first, sheets = TopTools_ListOfShape(), TopTools_ListOfShape()
+    first.Append(solid)
     for x in places:
-        sheet = BRepBuilderAPI_MakeFace(gp_Pln(gp_Pnt(x, 0, 0), gp_Dir(1, 0, 0)), -reach, reach, -reach, reach).Face()
-        common = BRepAlgoAPI_Common(solid, sheet).Shape()
-        props = GProp_GProps()
-        BRepGProp.SurfaceProperties_s(common, props)
-        if not props.Mass() > 0.0:
-            raise SolidError(f"slice at {x:g} mm: the plane cuts nothing of the solid.")
-        centre, inertia = props.CentreOfMass(), props.MatrixOfInertia()
-        # The kernel's matrix about the centroid, x = 0 there: int z^2 at (2,2), int y^2 at (3,3), -int y z at (2,3).
-        rows.append(
-            (x, props.Mass(), centre.Y(), centre.Z(), inertia.Value(2, 2), inertia.Value(3, 3), -inertia.Value(2, 3))
-        )
-    return np.array(rows)
+        plane = gp_Pln(gp_Pnt(x, 0, 0), gp_Dir(1, 0, 0))
+        sheets.Append(BRepBuilderAPI_MakeFace(plane, -reach, reach, -reach, reach).Face())
+    # All planes in one operation: the solid is prepared once.
+    common = BRepAlgoAPI_Common()
+    common.SetArguments(first)
+    common.SetTools(sheets)
+    common.SetRunParallel(False)
+    common.Build()
+    faces = faces_of(common.Shape())
+    where = np.array([area_of(face)[1][0] for face in faces])
+    return np.array([_row(x, [f for f, at in zip(faces, where, strict=True) if abs(at - x) < 1e-6]) for x in places])
+
+
+def _row(x: float, faces: Sequence[Any]) -> tuple[float, ...]:
+    # Moments about a point in the plane: no digits lost to a far origin.
+    props = GProp_GProps(gp_Pnt(x, 0, 0))
+    for face in faces:
+        part = GProp_GProps(gp_Pnt(x, 0, 0))
+        BRepGProp.SurfaceProperties_s(face, part)
+        props.Add(part)
+    if not props.Mass() > 0.0:
+        raise SolidError(f"slice at {x:g} mm: the plane cuts nothing of the solid.")
+    centre, inertia = props.CentreOfMass(), props.MatrixOfInertia()
+    # The kernel's matrix about the centroid, x = 0 there: int z^2 at (2,2), int y^2 at (3,3), -int y z at (2,3).
+    return (x, props.Mass(), centre.Y(), centre.Z(), inertia.Value(2, 2), inertia.Value(3, 3), -inertia.Value(2, 3))
