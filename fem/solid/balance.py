@@ -50,7 +50,8 @@ def load_checks(model: SolidModel) -> Iterator[Check]:
             remote = [p for p in model.part.loads if getattr(p, "mass", 0.0) > 0]
             declared = (model.mass + sum(p.mass for p in remote)) * load.force_per_mass
             about = np.cross(model.mass * model.centre_of_mass, load.force_per_mass) + sum(
-                (np.cross(p.mass * np.array(p.point), load.force_per_mass) for p in remote), np.zeros(3))
+                (np.cross(p.mass * np.array(p.point), load.force_per_mass) for p in remote), np.zeros(3)
+            )
             arm = float(np.ptp(x, axis=0).max())
         elif load.force is None:
             continue
@@ -58,13 +59,14 @@ def load_checks(model: SolidModel) -> Iterator[Check]:
             declared, about, arm = load.force, load.moment, load.arm
         scale = float(max(np.linalg.norm(declared), np.linalg.norm(about) / arm if about is not None else 0.0))
         scale = scale if scale > 0 else max(float(np.abs(vector).sum()), 1e-300)
-        yield _check(f"load {load.name}: force", np.linalg.norm(force - declared) / scale, 1e-9)
+        yield _check(f"load {load.name}: force", np.linalg.norm(force - declared) / scale, load.force_allowed)
         if about is not None:
             yield _check(f"load {load.name}: moment", np.linalg.norm(moment - about) / (scale * arm), load.allowed)
 
 
-def balance_checks(model: SolidModel, u: Array, reactions: Reactions, energy: Array, thermal: Array,
-                   solution: Solution) -> Iterator[Check]:
+def balance_checks(
+    model: SolidModel, u: Array, reactions: Reactions, energy: Array, thermal: Array, solution: Solution
+) -> Iterator[Check]:
     """Reactions against loads, work against energy, residual, gauge, quality, size of the motion."""
     x = model.mesh.nodes.T - model.mesh.nodes.mean(axis=1)
     length, diagonal = float(np.ptp(x, axis=0).max()), model.K.diagonal()
@@ -79,18 +81,31 @@ def balance_checks(model: SolidModel, u: Array, reactions: Reactions, energy: Ar
         for name, m in reactions.moment.items():
             arm = reactions.centre[name] - model.mesh.nodes.mean(axis=1)
             moment = moment + m[k] + np.cross(arm, reactions.force[name][k])
-        yield _check(f"case {case.name}: reactions balance the loads (force)", np.linalg.norm(force) / scale,
-                     BALANCE_ALLOWED)
-        yield _check(f"case {case.name}: reactions balance the loads (moment)",
-                     np.linalg.norm(moment) / (scale * length), BALANCE_ALLOWED)
+        yield _check(
+            f"case {case.name}: reactions balance the loads (force)", np.linalg.norm(force) / scale, BALANCE_ALLOWED
+        )
+        yield _check(
+            f"case {case.name}: reactions balance the loads (moment)",
+            np.linalg.norm(moment) / (scale * length),
+            BALANCE_ALLOWED,
+        )
         work = float((applied * u[k].T).sum() + (reactions.nodal[k] * u[k].T).sum())
         gap = abs(work - thermal[k] - 2 * energy[k])
-        size = max(2 * energy[k], abs(work), abs(thermal[k]), abs(float((model.thermal[k] * u[k].T).sum())),
-                   1e-6 * float((stiff * np.abs(u[k].T).ravel()).sum()), 1e-300)
+        size = max(
+            2 * energy[k],
+            abs(work),
+            abs(thermal[k]),
+            abs(float((model.thermal[k] * u[k].T).sum())),
+            1e-6 * float((stiff * np.abs(u[k].T).ravel()).sum()),
+            1e-300,
+        )
         yield _check(f"case {case.name}: work is twice the energy", gap / size, ENERGY_ALLOWED)
-        yield _check(f"case {case.name}: largest displacement over length",
-                     np.linalg.norm(u[k], axis=0).max() / length, LARGE_MOTION,
-                     "small displacements are assumed")
+        yield _check(
+            f"case {case.name}: largest displacement over length",
+            np.linalg.norm(u[k], axis=0).max() / length,
+            LARGE_MOTION,
+            "small displacements are assumed",
+        )
     yield _check("residual of the equations over the load", solution.residual, RESIDUAL_ALLOWED)
     yield _check("error of a known bending field", solution.gauge, GAUGE_ALLOWED)
     least = float(model.mesh.quality.min())

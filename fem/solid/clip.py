@@ -36,7 +36,7 @@ def clip_beyond(distance: Array, order: int) -> tuple[NDArray[np.int64], Array, 
     weights
         (p,) reference weight (whole simplex: 1/2 or 1/6); to be multiplied by the Jacobian. Some are negative.
     """
-    k, size = distance.shape
+    size = distance.shape[1]
     beyond = distance >= 0
     count = beyond.sum(axis=1)
     parts: list[tuple[NDArray[np.int64], Array, float]] = []

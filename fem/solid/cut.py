@@ -54,8 +54,16 @@ def _children(levels: int) -> Array:
     for _ in range(levels):
         a, b, c, d = tets.transpose(1, 0, 2)
         ab, bc, ac, ad, bd, cd = ((x + y) / 2 for x, y in ((a, b), (b, c), (a, c), (a, d), (b, d), (c, d)))
-        parts = ((a, ab, ac, ad), (ab, b, bc, bd), (ac, bc, c, cd), (ad, bd, cd, d),
-                 (ab, ac, ad, bd), (ab, ac, bc, bd), (ac, ad, bd, cd), (ac, bc, bd, cd))
+        parts = (
+            (a, ab, ac, ad),
+            (ab, b, bc, bd),
+            (ac, bc, c, cd),
+            (ad, bd, cd, d),
+            (ab, ac, ad, bd),
+            (ab, ac, bc, bd),
+            (ac, ad, bd, cd),
+            (ac, bc, bd, cd),
+        )
         tets = np.concatenate([np.stack(p, axis=1) for p in parts])
     return tets
 
@@ -103,8 +111,9 @@ class Cutter:
         return _polygons(local, tets, at, owner, bary, distance)
 
 
-def _polygons(local: Array, tets: NDArray[np.int64], at: float, owner: NDArray[np.int64], bary: Array,
-              distance: Array) -> Cut:
+def _polygons(
+    local: Array, tets: NDArray[np.int64], at: float, owner: NDArray[np.int64], bary: Array, distance: Array
+) -> Cut:
     """Quadrature points on the cuts of the linear tetrahedra with barycentric corners bary (t, 4, 4)."""
     beyond = distance >= 0
     triangles, owners = [], []

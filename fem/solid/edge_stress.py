@@ -19,12 +19,17 @@ RIM = 0.05
 FILLET_SAMPLES = 13
 
 
-def _figures(model: SolidModel, place: str, quantity: str, component: str, values: Array,
-             errors: Array | None = None) -> Iterator[Figure]:
+def _figures(
+    model: SolidModel, place: str, quantity: str, component: str, values: Array, errors: Array | None = None
+) -> Iterator[Figure]:
     for k, case in enumerate(model.part.cases):
         error = None if errors is None else float(errors[k])
-        yield Figure(FigureKey(case.name, place, quantity, component, "member"),  # type: ignore[arg-type]
-                     float(values[k]), "MPa", error)
+        yield Figure(
+            FigureKey(case.name, place, quantity, component, "member"),  # type: ignore[arg-type]
+            float(values[k]),
+            "MPa",
+            error,
+        )
 
 
 def outer_segments(model: SolidModel, member: Member, frame: Frame, at: float) -> Segments:
@@ -32,8 +37,11 @@ def outer_segments(model: SolidModel, member: Member, frame: Frame, at: float) -
     mesh = model.mesh
     facets = mesh.boundary
     if len(model.part.members) > 1:
-        own = [mesh.facets[f"{member.name}.{side}"] for side in (*SIDES, "surface")
-               if f"{member.name}.{side}" in mesh.facets]
+        own = [
+            mesh.facets[f"{member.name}.{side}"]
+            for side in (*SIDES, "surface")
+            if f"{member.name}.{side}" in mesh.facets
+        ]
         if own:
             facets = np.concatenate(own, axis=1)
     return cut_facets(mesh, facets, frame, at)
@@ -51,8 +59,9 @@ def nominal_figures(model: SolidModel, stress: Array, spread: Array) -> Iterator
                 continue
             for side in SIDES:
                 found, _ = extreme_value(segments, side, values)
-                yield from _figures(model, station_place(member.name, float(at)), "nominal_stress", f"xx@{side}",
-                                    found[:c], found[c:])
+                yield from _figures(
+                    model, station_place(member.name, float(at)), "nominal_stress", f"xx@{side}", found[:c], found[c:]
+                )
 
 
 def _cut_figures(model: SolidModel, member: Member, cut: Cut, values: Array) -> Iterator[Figure]:
@@ -100,9 +109,8 @@ def _shoulder_figures(model: SolidModel, member: Member, at: float, radius: floa
         for x in np.linspace(0.02, 1.5, FILLET_SAMPLES) * radius * way + at:
             segments = outer_segments(model, member, frame, float(x))
             chosen = side_segments(segments, side)
-            if not chosen.size:
-                continue
-            found = segments.mean(values, chosen)
+            # a round section touches its extreme in a point, a flat one along its thickness
+            found = segments.mean(values, chosen) if chosen.size else extreme_value(segments, side, values)[0]
             larger = np.abs(found[:c]) > np.abs(best[:c])
             best = np.where(np.r_[larger, larger], found, best)
         yield from _figures(model, f"{member.name}.step@{at:.6g}", "notch_stress", f"xx@{name}", best[:c], best[c:])

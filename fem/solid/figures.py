@@ -15,7 +15,9 @@ from fem.solid.shape import Array
 _XYZ = ("x", "y", "z")
 
 
-def vector_figures(cases: tuple[str, ...], place: str, quantity: Quantity, values: Array, unit: str) -> Iterator[Figure]:
+def vector_figures(
+    cases: tuple[str, ...], place: str, quantity: Quantity, values: Array, unit: str
+) -> Iterator[Figure]:
     """Components x, y, z (global) of values (c, 3)."""
     for case, row in zip(cases, values, strict=True):
         for component, value in zip(_XYZ, row, strict=True):
@@ -52,7 +54,6 @@ def scalar_figures(model: SolidModel, energy: Array) -> Iterator[Figure]:
         yield Figure(FigureKey("", "", "centre_of_mass", component), float(value), "mm")
 
 
-
 def section_force_figures(model: SolidModel, forces: dict[str, Array]) -> Iterator[Figure]:
     """N, Vy, Vz (N) and T, My, Mz (N mm) of each member at the 21 stations, forces (21, c, 6)."""
     for member in model.part.members:
@@ -61,5 +62,8 @@ def section_force_figures(model: SolidModel, forces: dict[str, Array]) -> Iterat
             for case, row in zip(model.part.cases, values, strict=True):
                 for k, component in enumerate(("N", "Vy", "Vz", "T", "My", "Mz")):
                     quantity: Quantity = "section_force" if k < 3 else "section_moment"
-                    yield Figure(FigureKey(case.name, place, quantity, component, "member"), float(row[k]),
-                                 "N" if k < 3 else "N mm")
+                    yield Figure(
+                        FigureKey(case.name, place, quantity, component, "member"),
+                        float(row[k]),
+                        "N" if k < 3 else "N mm",
+                    )

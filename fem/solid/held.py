@@ -77,5 +77,4 @@ def _describe(motion: Array, centre: Array, size: float) -> str:
         return f"it can slide along {_direction(shift)}"
     point = centre + np.cross(turn, shift) / (turn @ turn)
     near = np.where(np.abs(point) < 1e-6 * size, 0.0, point)
-    return (f"it can turn about an axis along {_direction(turn)} through "
-            f"({', '.join(f'{v:.4g}' for v in near)}) mm")
+    return f"it can turn about an axis along {_direction(turn)} through ({', '.join(f'{v:.4g}' for v in near)}) mm"

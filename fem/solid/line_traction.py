@@ -42,8 +42,9 @@ def area_density(mesh: NamedMesh, region: Region, frame: Frame, at: Array) -> Ar
     return out
 
 
-def line_traction(mesh: NamedMesh, region: Region, load: LineLoad,
-                  frame: Frame) -> tuple[Callable[[Array, Array], Array], Array, Array]:
+def line_traction(
+    mesh: NamedMesh, region: Region, load: LineLoad, frame: Frame
+) -> tuple[Callable[[Array, Array], Array], Array, Array]:
     """Traction of a line load, and its declared force (N) and moment about the global origin (N mm).
 
     The traction is q(x) over dA/dx; two factors in each direction (constant and linear in x) make the resultant and
@@ -57,8 +58,10 @@ def line_traction(mesh: NamedMesh, region: Region, load: LineLoad,
     """
     x_nodes = frame.local(mesh.nodes[:, region.nodes])[0]
     if abs(x_nodes.min() - load.start) > 1e-3 * frame.length or abs(x_nodes.max() - load.end) > 1e-3 * frame.length:
-        raise SolveError(f"The line load {load.name!r} runs from {load.start:.6g} to {load.end:.6g} mm, but its region "
-                         f"lies between {x_nodes.min():.6g} and {x_nodes.max():.6g} mm.")
+        raise SolveError(
+            f"The line load {load.name!r} runs from {load.start:.6g} to {load.end:.6g} mm, but its region "
+            f"lies between {x_nodes.min():.6g} and {x_nodes.max():.6g} mm."
+        )
     length = load.end - load.start
     at = load.start + length * (np.arange(_SAMPLES) + 0.5) / _SAMPLES
     density = area_density(mesh, region, frame, at)
@@ -78,8 +81,10 @@ def line_traction(mesh: NamedMesh, region: Region, load: LineLoad,
     largest = max(np.abs(first).max(), np.abs(last).max(), 1e-300)
     moved = float(np.abs(ends - np.array([first, last])).max() / largest)
     if moved > 0.02:
-        raise SolveError(f"The line load {load.name!r} cannot be spread over its face: the intensity would change by "
-                         f"{100 * moved:.1f} %. The face may have large openings; load two stretches instead.")
+        raise SolveError(
+            f"The line load {load.name!r} cannot be spread over its face: the intensity would change by "
+            f"{100 * moved:.1f} %. The face may have large openings; load two stretches instead."
+        )
 
     def traction(position: Array, _: Array) -> Array:
         s, inverse = shares(position)
@@ -87,7 +92,7 @@ def line_traction(mesh: NamedMesh, region: Region, load: LineLoad,
         return np.asarray((ends[0].reshape(shape) * (1 - s) + ends[1].reshape(shape) * s) * inverse)
 
     middle = _middle_line(mesh, region, frame, at)
-    q = (first[:, None] * (1 - (at - load.start) / length) + last[:, None] * (at - load.start) / length)
+    q = first[:, None] * (1 - (at - load.start) / length) + last[:, None] * (at - load.start) / length
     moment = np.cross(middle, q, axis=0).sum(axis=1) * length / _SAMPLES
     return traction, length * (first + last) / 2, moment
 

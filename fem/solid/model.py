@@ -53,16 +53,20 @@ def check_mesh(mesh: NamedMesh) -> None:
     if least < LEAST_QUALITY:
         bad = int(mesh.quality.argmin())
         where = mesh.nodes[:, mesh.tets[:4, bad]].mean(axis=1)
-        raise SolveError(f"The mesh has an element of quality {least:.2g} (least allowed {LEAST_QUALITY:g}) near "
-                         f"{np.round(where, 3).tolist()} mm. Mesh the part again with another recipe.")
+        raise SolveError(
+            f"The mesh has an element of quality {least:.2g} (least allowed {LEAST_QUALITY:g}) near "
+            f"{np.round(where, 3).tolist()} mm. Mesh the part again with another recipe."
+        )
     n = mesh.nodes.shape[1]
     first = np.broadcast_to(mesh.tets[0], (9, mesh.tets.shape[1]))
     graph = sp.coo_matrix((np.ones(first.size), (first.ravel(), mesh.tets[1:].ravel())), shape=(n, n))
     pieces, label = connected_components(graph, directed=False)
     if pieces > 1:
         sizes = np.sort(np.bincount(label))[::-1]
-        raise SolveError(f"The mesh is in {pieces} pieces that do not touch (nodes in each: "
-                         f"{', '.join(map(str, sizes[:5]))}). The members do not meet, or the mesh has unused nodes.")
+        raise SolveError(
+            f"The mesh is in {pieces} pieces that do not touch (nodes in each: "
+            f"{', '.join(map(str, sizes[:5]))}). The members do not meet, or the mesh has unused nodes."
+        )
 
 
 def mass_vector(mesh: NamedMesh, groups: list[ElementGroup]) -> tuple[Array, float, Array]:
@@ -87,8 +91,9 @@ def thermal_vector(mesh: NamedMesh, groups: list[ElementGroup], E: float, nu: fl
         stress[:, :, :3] = 3 * lam + 2 * mu
         forces = element_forces(group.gradients, group.weights, stress)[0]
         for i in range(3):
-            f[:, i] += np.bincount(mesh.tets[:, group.elements].T.ravel(), weights=forces[:, :, i].ravel(),
-                                   minlength=f.shape[0])
+            f[:, i] += np.bincount(
+                mesh.tets[:, group.elements].T.ravel(), weights=forces[:, :, i].ravel(), minlength=f.shape[0]
+            )
     return f
 
 
@@ -107,12 +112,25 @@ def build_model(part: Part, mesh: NamedMesh) -> SolidModel:
         for piece in load.pieces:
             vectors[k] += surface_vector(mesh, piece)
     factors = np.array([[case.factors.get(name, 0.0) for name in loads] for case in part.cases]).reshape(
-        len(part.cases), len(loads))
+        len(part.cases), len(loads)
+    )
     change = factors @ np.array([load.change for load in loads.values()]) if loads else np.zeros(len(part.cases))
     thermal = np.zeros((len(part.cases), *vectors.shape[1:]))
     if change.any():
         unit = material.expansion * thermal_vector(mesh, groups, material.E, material.nu)
         thermal = change[:, None, None] * unit
-    return SolidModel(part, mesh, groups, K, constraints, loads, vectors, factors,
-                      np.tensordot(factors, vectors, axes=1), thermal, change, material.density * volume,
-                      first / volume)
+    return SolidModel(
+        part,
+        mesh,
+        groups,
+        K,
+        constraints,
+        loads,
+        vectors,
+        factors,
+        np.tensordot(factors, vectors, axes=1),
+        thermal,
+        change,
+        material.density * volume,
+        first / volume,
+    )

@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 
 import numpy as np
+import scipy.sparse as sp
+from scipy.sparse.csgraph import connected_components
 from scipy.spatial import cKDTree
 
 from fem.solid.model import SolidModel
@@ -15,8 +17,9 @@ from mesher.named_mesh import NamedMesh
 COUNT = 8
 REACH = 2.0
 """Influence of a place without a converged value, in local element sizes: common practice, no source."""
-MERGE = 2.0
-"""Maxima nearer than this many local element sizes are one place."""
+SADDLE = 0.85
+"""Two maxima are one place when the stress between them stays above this part of the lesser one."""
+CANDIDATES = 200
 
 
 def node_sizes(mesh: NamedMesh) -> Array:
@@ -42,13 +45,21 @@ def singular_places(model: SolidModel, sharp_edges: Sequence[tuple[str, Array]])
     """(reason, points (3, k)) where the exact stress is unbounded."""
     out = []
     for support in model.part.supports:
-        out.append((f"rim of the held region {support.on} (support {support.name}): the exact stress is unbounded",
-                    region_rim(model.mesh, support.on)))
+        out.append(
+            (
+                f"rim of the held region {support.on} (support {support.name}): the exact stress is unbounded",
+                region_rim(model.mesh, support.on),
+            )
+        )
     for load in model.part.loads:
         if getattr(load, "coupling", "") == "rigid":
             on = str(getattr(load, "on", ""))
-            out.append((f"rim of the rigid region {on} (load {load.name}): the exact stress is unbounded",
-                        region_rim(model.mesh, on)))
+            out.append(
+                (
+                    f"rim of the rigid region {on} (load {load.name}): the exact stress is unbounded",
+                    region_rim(model.mesh, on),
+                )
+            )
     for label, points in sharp_edges:
         out.append((f"sharp re-entrant edge {label}: the exact stress is unbounded", np.asarray(points).T))
     return [(reason, points) for reason, points in out if points.size]
@@ -65,40 +76,69 @@ def singular_nodes(mesh: NamedMesh, places: list[tuple[str, Array]], sizes: Arra
     return out
 
 
-def local_maxima(mesh: NamedMesh, values: Array) -> np.ndarray:
-    """Nodes (sorted, greatest first) whose value no node of their elements exceeds."""
+def surface_graph(mesh: NamedMesh) -> sp.csr_matrix:
+    """(n, n) neighbours on the surface: the nodes of one half edge of a boundary triangle."""
+    halves = ((0, 3), (3, 1), (1, 4), (4, 2), (2, 5), (5, 0), (3, 4), (4, 5), (5, 3))
+    rows = np.concatenate([mesh.boundary[i] for i, _ in halves])
+    columns = np.concatenate([mesh.boundary[j] for _, j in halves])
+    n = mesh.nodes.shape[1]
+    graph = sp.coo_matrix((np.ones(rows.size), (rows, columns)), shape=(n, n)).tocsr()
+    return (graph + graph.T).tocsr()
+
+
+def local_maxima(graph: sp.csr_matrix, values: Array, near: np.ndarray) -> Iterator[int]:
+    """Surface nodes whose value no neighbour exceeds, greatest first, one for each hill.
+
+    A maximum belongs to the hill of a greater one (of the same kind: established, or at the same singular place) when
+    a path on the surface joins them on which the stress stays above `SADDLE` of the lesser one.
+    """
+    owner = np.repeat(np.arange(values.size), np.diff(graph.indptr))
     highest = np.zeros(values.size)
-    of_element = values[mesh.tets].max(axis=0)
-    np.maximum.at(highest, mesh.tets.ravel(), np.broadcast_to(of_element, mesh.tets.shape).ravel())
-    nodes = np.flatnonzero((values >= highest) & (values > 0))
-    return nodes[np.argsort(-values[nodes], kind="stable")]
+    np.maximum.at(highest, owner, values[graph.indices])
+    nodes = np.flatnonzero((values >= highest) & (values > 0) & (np.diff(graph.indptr) > 0))
+    accepted: list[int] = []
+    for node in nodes[np.argsort(-values[nodes], kind="stable")][:CANDIDATES]:
+        rivals = [i for i in accepted if near[i] == near[node]]
+        if rivals:
+            above = np.flatnonzero(values >= SADDLE * values[node])
+            _, label = connected_components(graph[above][:, above], directed=False)
+            mine = label[np.searchsorted(above, node)]
+            if (label[np.searchsorted(above, rivals)] == mine).any():
+                continue
+        accepted.append(int(node))
+        yield int(node)
 
 
-def peak_places(model: SolidModel, von_mises: Array, principal: Array, places: list[tuple[str, Array]],
-                near: np.ndarray, sizes: Array) -> Iterator[PeakPlace]:
-    """The highest local maxima of each case, those near each other merged into the greatest; at least the greatest
-    established one is among them."""
+def peak_places(
+    model: SolidModel, von_mises: Array, principal: Array, places: list[tuple[str, Array]], near: np.ndarray
+) -> Iterator[PeakPlace]:
+    """The highest hills of each case, at most `COUNT`, and at least the highest established one."""
     mesh = model.mesh
+    graph = surface_graph(mesh)
     for k, case in enumerate(model.part.cases):
         chosen: list[int] = []
-        for node in local_maxima(mesh, von_mises[k]):
-            established = near[node] < 0
-            has_one = any(near[i] < 0 for i in chosen)
-            if len(chosen) >= COUNT and (has_one or not established):
-                if has_one:
-                    break
-                continue
-            apart = np.linalg.norm(mesh.nodes[:, chosen] - mesh.nodes[:, [node]], axis=0)
-            same = [near[i] == near[node] for i in chosen]
-            if not ((apart < MERGE * sizes[node]) & np.array(same, dtype=bool)).any():
-                chosen.append(int(node))
+        for node in local_maxima(graph, von_mises[k], near):
+            missing = not any(near[i] < 0 for i in chosen)
+            if len(chosen) < COUNT or (missing and near[node] < 0):
+                chosen.append(node)
+            if len(chosen) >= COUNT and any(near[i] < 0 for i in chosen):
+                break
         for node in chosen:
             p = principal[k, :, node]
             regions = tuple(sorted(name for name, f in mesh.facets.items() if (f == node).any()))
             faces = tuple(sorted({int(i) for i in mesh.face_index[(mesh.boundary == node).any(axis=0)]}))
             x, y, z = map(float, mesh.nodes[:, node])
-            yield PeakPlace(case.name, float(von_mises[k, node]), (x, y, z), node, regions, faces, bool(near[node] < 0),
-                            places[near[node]][0] if near[node] >= 0 else "", float(p[np.abs(p).argmax()]))
+            yield PeakPlace(
+                case.name,
+                float(von_mises[k, node]),
+                (x, y, z),
+                node,
+                regions,
+                faces,
+                bool(near[node] < 0),
+                places[near[node]][0] if near[node] >= 0 else "",
+                float(p[np.abs(p).argmax()]),
+            )
 
 
 def case_stresses(model: SolidModel, von_mises: Array, near: np.ndarray) -> Iterator[CaseStress]:

@@ -32,8 +32,12 @@ def reactions(model: SolidModel, u: Array, mean_forces: Array) -> Reactions:
     constraints, mesh = model.constraints, model.mesh
     c, n = u.shape[1], mesh.nodes.shape[1]
     nodal = (model.K @ u).T.reshape(c, n, 3) - model.mechanical - model.thermal
-    centre = {s.name: constraints.regions[s.on].centroid if s.on in constraints.regions
-              else surface_region(mesh, s.on).centroid for s in model.part.supports}
+    centre = {
+        s.name: constraints.regions[s.on].centroid
+        if s.on in constraints.regions
+        else surface_region(mesh, s.on).centroid
+        for s in model.part.supports
+    }
     force = {name: np.zeros((c, 3)) for name in centre}
     moment = {name: np.zeros((c, 3)) for name in centre}
     mean = (constraints.rows.T @ mean_forces).T.reshape(c, n, 3)

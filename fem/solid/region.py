@@ -93,5 +93,15 @@ def surface_region(mesh: NamedMesh, name: str) -> Region:
     mean_normal = normals.sum(axis=(1, 2)) / area
     size = float(np.linalg.norm(mean_normal))
     unit = mean_normal / size if size > 1e-9 else np.zeros(3)
-    return Region(name, facets, nodes, gather(dA), np.array([gather(arms[i] * dA) for i in range(3)]), area,
-                  centroid, unit, size, inertia(arms, dA))
+    return Region(
+        name,
+        facets,
+        nodes,
+        gather(dA),
+        np.array([gather(arms[i] * dA) for i in range(3)]),
+        area,
+        centroid,
+        unit,
+        size,
+        inertia(arms, dA),
+    )

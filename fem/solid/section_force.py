@@ -17,7 +17,12 @@ from fem.solid.clip import clip_beyond
 from fem.solid.frame import Frame
 from fem.solid.model import SolidModel
 from fem.solid.shape import (
-    Array, facet_points, tet_gradients, tet_values, triangle_gradients, triangle_values,
+    Array,
+    facet_points,
+    tet_gradients,
+    tet_values,
+    triangle_gradients,
+    triangle_values,
 )
 from fem.solid.stiffness import element_forces, stresses
 
@@ -38,6 +43,7 @@ class ElementLoads:
 
 def facet_owners(tets: NDArray[np.int64], facets: NDArray[np.int64], node_count: int) -> NDArray[np.int64]:
     """(k,) element of each boundary facet (6, k)."""
+
     def keys(corners: NDArray[np.int64]) -> NDArray[np.int64]:
         a, b, c = np.sort(corners, axis=0).astype(object if node_count > 2_000_000 else np.int64)
         return np.asarray((a * node_count + b) * node_count + c)
@@ -78,16 +84,27 @@ def element_loads(model: SolidModel, u: Array) -> ElementLoads:
     return ElementLoads(internal, applied, tuple(owners))
 
 
-def _clipped_loads(model: SolidModel, loads: ElementLoads, local: Array, at: float, side: Bool, sign: float,
-                   frame: Frame, on_plane: bool) -> tuple[Array, Array]:
+def _clipped_loads(
+    model: SolidModel,
+    loads: ElementLoads,
+    local: Array,
+    at: float,
+    side: Bool,
+    sign: float,
+    frame: Frame,
+    on_plane: bool,
+) -> tuple[Array, Array]:
     """(c, 3) force and moment about the station's point of the loads on elements of `side` (m,) that act where
     sign * (x - at) >= 0; facets in the plane count when `on_plane`."""
     mesh, c = model.mesh, model.factors.shape[0]
     force, moment, point = np.zeros((c, 3)), np.zeros((c, 3)), frame.point(at)
     d = sign * (local[0] - at)
     d[np.abs(d) < 1e-9 * frame.length] = 0.0
-    body = model.part.material.density * model.factors @ np.array(
-        [load.force_per_mass for load in model.loads.values()]).reshape(-1, 3)
+    body = (
+        model.part.material.density
+        * model.factors
+        @ np.array([load.force_per_mass for load in model.loads.values()]).reshape(-1, 3)
+    )
     if body.any():
         here = np.flatnonzero(side & (d[mesh.tets[:4]] > 0).any(axis=0))
         owner, bary, weights = clip_beyond(d[mesh.tets[:4, here]].T, 2)
@@ -120,8 +137,9 @@ def _clipped_loads(model: SolidModel, loads: ElementLoads, local: Array, at: flo
     return force, moment
 
 
-def section_force(model: SolidModel, loads: ElementLoads, reaction: Array, frame: Frame, at: float,
-                  inside: Bool) -> Array:
+def section_force(
+    model: SolidModel, loads: ElementLoads, reaction: Array, frame: Frame, at: float, inside: Bool
+) -> Array:
     """(c, 6) N, Vy, Vz, T, My, Mz at a station: what the far part exerts on the near part, about the member's line.
 
     reaction (c, n, 3) nodal constraint forces; `inside` (m,) elements of this member.
@@ -173,8 +191,14 @@ def raw_section_force(frame: Frame, weights: Array, points: Array, stress: Array
     tensor = stress[:, np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2]])]  # (c, 3, 3, p)
     traction = np.einsum("ki,cijp,j->ckp", frame.axes, tensor, frame.axes[0], optimize=True) * weights
     y, z = points[1], points[2]
-    return np.stack([
-        traction[:, 0].sum(axis=1), traction[:, 1].sum(axis=1), traction[:, 2].sum(axis=1),
-        (y * traction[:, 2] - z * traction[:, 1]).sum(axis=1), (z * traction[:, 0]).sum(axis=1),
-        -(y * traction[:, 0]).sum(axis=1),
-    ], axis=1)
+    return np.stack(
+        [
+            traction[:, 0].sum(axis=1),
+            traction[:, 1].sum(axis=1),
+            traction[:, 2].sum(axis=1),
+            (y * traction[:, 2] - z * traction[:, 1]).sum(axis=1),
+            (z * traction[:, 0]).sum(axis=1),
+            -(y * traction[:, 0]).sum(axis=1),
+        ],
+        axis=1,
+    )

@@ -79,8 +79,9 @@ def member_sections(model: SolidModel, cutter: Cutter) -> dict[str, dict[float, 
     return out
 
 
-def section_forces(model: SolidModel, u: Array, reacting: Reactions,
-                   sections: dict[str, dict[float, Cut]]) -> tuple[dict[str, Array], Array]:
+def section_forces(
+    model: SolidModel, u: Array, reacting: Reactions, sections: dict[str, dict[float, Cut]]
+) -> tuple[dict[str, Array], Array]:
     """Section forces (21, c, 6) of each member, and the gap (members, 21, c, 6) of the raw stress integrals to them."""
     loads = element_loads(model, u)
     alone = len(model.part.members) == 1

@@ -25,8 +25,14 @@ from geometry.part import Part
 from mesher.named_mesh import NamedMesh
 
 
-def solve_solid(part: Part, mesh: NamedMesh, budget: Budget, progress: Callable[[str], None] | None = None,
-                backend: str = "auto", sharp_edges: Sequence[tuple[str, Array]] = ()) -> SolidResult:
+def solve_solid(
+    part: Part,
+    mesh: NamedMesh,
+    budget: Budget,
+    progress: Callable[[str], None] | None = None,
+    backend: str = "auto",
+    sharp_edges: Sequence[tuple[str, Array]] = (),
+) -> SolidResult:
     """Solve every case of the part on its mesh.
 
     Parameters
@@ -87,13 +93,26 @@ def solve_solid(part: Part, mesh: NamedMesh, budget: Budget, progress: Callable[
     places = singular_places(model, sharp_edges)
     near = singular_nodes(mesh, places, sizes)
     result = SolidResult(
-        cases=cases, mesh=mesh, u=u, stress=stress, stress_error=spread, von_mises=mises,
-        tresca=principal[:, 0] - principal[:, 2], principal=principal, figures=figures,
-        peaks=tuple(peak_places(model, mises, principal, places, near, sizes)),
+        cases=cases,
+        mesh=mesh,
+        u=u,
+        stress=stress,
+        stress_error=spread,
+        von_mises=mises,
+        tresca=principal[:, 0] - principal[:, 2],
+        principal=principal,
+        figures=figures,
+        peaks=tuple(peak_places(model, mises, principal, places, near)),
         case_stress=tuple(case_stresses(model, mises, near)),
-        denting=tuple(denting(model, u, sections)), section_gap=gap, mass=model.mass,
-        centre_of_mass=model.centre_of_mass, external_work=np.einsum("cni,cin->c", model.mechanical, u) / 2,
-        strain_energy=energy, checks=tuple(checks), timings=timings, backend=solution.backend,
+        denting=tuple(denting(model, u, sections)),
+        section_gap=gap,
+        mass=model.mass,
+        centre_of_mass=model.centre_of_mass,
+        external_work=np.einsum("cni,cin->c", model.mechanical, u) / 2,
+        strain_energy=energy,
+        checks=tuple(checks),
+        timings=timings,
+        backend=solution.backend,
     )
     stage("")
     return result

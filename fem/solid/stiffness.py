@@ -118,8 +118,9 @@ def element_stiffness(gradients: Array, weights: Array, E: float, nu: float) -> 
     return K
 
 
-def stiffness_matrix(tets: NDArray[np.int64], node_count: int, groups: list[ElementGroup],
-                     E: float, nu: float) -> sp.csr_matrix:
+def stiffness_matrix(
+    tets: NDArray[np.int64], node_count: int, groups: list[ElementGroup], E: float, nu: float
+) -> sp.csr_matrix:
     """Stiffness matrix (3 n, 3 n), N/mm, unknown 3 node + direction."""
     pattern = NodePattern(tets, node_count)
     blocks = np.zeros((pattern.indices.size, 3, 3))
@@ -141,9 +142,11 @@ def stresses(gradients: Array, displacements: Array, E: float, nu: float, therma
     q = gradients.shape[2]
     g = gradients.reshape(m, 10, 3, q)
     # H[c, e, i, j, q] = du_i/dx_j
-    H = np.matmul(
-        displacements.transpose(1, 0, 3, 2).reshape(m, 3 * c, 10), g.reshape(m, 10, 3 * q)
-    ).reshape(m, c, 3, 3, q).transpose(1, 0, 2, 3, 4)
+    H = (
+        np.matmul(displacements.transpose(1, 0, 3, 2).reshape(m, 3 * c, 10), g.reshape(m, 10, 3 * q))
+        .reshape(m, c, 3, 3, q)
+        .transpose(1, 0, 2, 3, 4)
+    )
     trace = np.einsum("ceiiq->ceq", H)
     normal = lam * trace - (3 * lam + 2 * mu) * thermal_strain[:, None, None]
     out = np.empty((c, m, 6, q))

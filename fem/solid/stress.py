@@ -51,9 +51,7 @@ def nodal_stress(model: SolidModel, u: Array) -> tuple[Array, Array]:
 def von_mises(s: Array, axis: int = 0) -> Array:
     """Von Mises stress of components along `axis`."""
     xx, yy, zz, xy, yz, zx = np.moveaxis(s, axis, 0)
-    return np.asarray(np.sqrt(
-        ((xx - yy) ** 2 + (yy - zz) ** 2 + (zz - xx) ** 2) / 2 + 3 * (xy**2 + yz**2 + zx**2)
-    ))
+    return np.asarray(np.sqrt(((xx - yy) ** 2 + (yy - zz) ** 2 + (zz - xx) ** 2) / 2 + 3 * (xy**2 + yz**2 + zx**2)))
 
 
 def principal_stresses(s: Array) -> Array:

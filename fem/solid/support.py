@@ -88,12 +88,16 @@ def support_rows(part: Part, support: Support, region: Region) -> list[Row]:
     for freedom, value in support.held.items():
         turn = freedom.startswith("r")
         if turn and support.coupling == "surface":
-            raise SolveError(f"Support {support.name!r} holds the rotation {freedom} point by point; a point has no "
-                             "rotation. Use the coupling rigid or average.")
+            raise SolveError(
+                f"Support {support.name!r} holds the rotation {freedom} point by point; a point has no "
+                "rotation. Use the coupling rigid or average."
+            )
         if freedom == "normal":
             if region.flatness < PLANE:
-                raise SolveError(f"Support {support.name!r} holds the normal direction of {support.on!r}, which is "
-                                 f"not plane (mean normal {region.flatness:.4f}). Hold x, y or z.")
+                raise SolveError(
+                    f"Support {support.name!r} holds the normal direction of {support.on!r}, which is "
+                    f"not plane (mean normal {region.flatness:.4f}). Hold x, y or z."
+                )
             rows.append(Row(support.name, region.normal, False, value))
         else:
             rows.append(Row(support.name, axes[_AXIS[freedom]], turn, value))
@@ -149,15 +153,21 @@ def _blocks(part: Part, mesh: NamedMesh, regions: dict[str, Region]) -> tuple[li
                         lines.append(r.direction @ motion)
                         values.append(r.value)
                         names.append(r.support)
-        rigid_blocks.append(Block(region.nodes, np.array(lines).reshape(-1, 6), np.array(values), tuple(names),
-                                  region.centroid))
+        rigid_blocks.append(
+            Block(region.nodes, np.array(lines).reshape(-1, 6), np.array(values), tuple(names), region.centroid)
+        )
     point_blocks = []
     for value in np.unique(mask[(mask > 0) & (owner < 0)]):
         held = [r for bit, s in enumerate(at_point) if value >> bit & 1 for r in rows[supports[s.name].name]]
         if held:
-            point_blocks.append(Block(np.flatnonzero((mask == value) & (owner < 0)),
-                                      np.array([r.direction for r in held]), np.array([r.value for r in held]),
-                                      tuple(r.support for r in held)))
+            point_blocks.append(
+                Block(
+                    np.flatnonzero((mask == value) & (owner < 0)),
+                    np.array([r.direction for r in held]),
+                    np.array([r.value for r in held]),
+                    tuple(r.support for r in held),
+                )
+            )
     return point_blocks, rigid_blocks
 
 
@@ -180,8 +190,9 @@ def _eliminate(mesh: NamedMesh, points: Sequence[Block], rigid: Sequence[Block])
         if block.rows.size:
             rows = block.rows * scale
             weight = np.linalg.norm(rows, axis=1)
-            basis, shift = _null_space(rows / weight[:, None], block.values / weight,
-                                       f"the supports {', '.join(sorted(set(block.supports)))}")
+            basis, shift = _null_space(
+                rows / weight[:, None], block.values / weight, f"the supports {', '.join(sorted(set(block.supports)))}"
+            )
         g[block.nodes] = motion @ shift
         entries.append(_block_entries(block.nodes, motion @ basis, False))
     nodes = np.flatnonzero(free)
@@ -225,6 +236,11 @@ def build_constraints(part: Part, mesh: NamedMesh) -> Constraints:
                 values.append(row.value)
                 supports.append(support.name)
     index = np.concatenate([np.full(c.size, i) for i, c in enumerate(columns)]) if columns else np.zeros(0, int)
-    C = sp.csr_matrix((np.concatenate(data) if data else np.zeros(0),
-                       (index, np.concatenate(columns) if columns else np.zeros(0, int))), shape=(len(data), 3 * n))
+    C = sp.csr_matrix(
+        (
+            np.concatenate(data) if data else np.zeros(0),
+            (index, np.concatenate(columns) if columns else np.zeros(0, int)),
+        ),
+        shape=(len(data), 3 * n),
+    )
     return Constraints(T, g, C, np.array(values, dtype=float), tuple(supports), tuple(points + rigid), regions)

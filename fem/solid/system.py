@@ -58,8 +58,9 @@ def _spring_unknowns(mesh: NamedMesh, T: sp.csr_matrix) -> np.ndarray:
     return T.indices[T.indptr[rows]]
 
 
-def solve_system(K: sp.csr_matrix, f: Array, constraints: Constraints, mesh: NamedMesh, budget: Budget,
-                 backend: str = "auto") -> Solution:
+def solve_system(
+    K: sp.csr_matrix, f: Array, constraints: Constraints, mesh: NamedMesh, budget: Budget, backend: str = "auto"
+) -> Solution:
     """Solve for the columns of f (3 n, c), N.
 
     Raises
@@ -85,9 +86,11 @@ def solve_system(K: sp.csr_matrix, f: Array, constraints: Constraints, mesh: Nam
     try:
         factor = Cholesky(A, budget, backend)
     except NotPositive as error:
-        raise SolveError("The stiffness matrix is not positive definite although the supports hold every rigid "
-                         "motion: the mesh has a detached piece or an element that is nearly flat. "
-                         "Mesh the part again.") from error
+        raise SolveError(
+            "The stiffness matrix is not positive definite although the supports hold every rigid "
+            "motion: the mesh has a detached piece or an element that is nearly flat. "
+            "Mesh the part again."
+        ) from error
     try:
         y, multipliers, back = _solve_bordered(factor, A, rhs, A @ y0, C, constraints, springs, stiffness)
     finally:
@@ -98,16 +101,28 @@ def solve_system(K: sp.csr_matrix, f: Array, constraints: Constraints, mesh: Nam
     residual = float((np.linalg.norm(left, axis=0) / np.where(scale > 0, scale, 1.0)).max())
     gauge = float(np.abs(back - y0).max() / np.abs(y0).max())
     if not residual <= RESIDUAL_ALLOWED:
-        raise SolveError(f"The equations are not met: residual {residual:.2e} of the load, allowed "
-                         f"{RESIDUAL_ALLOWED:.0e}. The mesh may hold a nearly flat element; mesh the part again.")
+        raise SolveError(
+            f"The equations are not met: residual {residual:.2e} of the load, allowed "
+            f"{RESIDUAL_ALLOWED:.0e}. The mesh may hold a nearly flat element; mesh the part again."
+        )
     if not gauge <= GAUGE_ALLOWED:
-        raise SolveError(f"A known bending field comes back with an error of {gauge:.2e}, allowed {GAUGE_ALLOWED:.0e}: "
-                         "the matrix is too badly conditioned. Look for nearly flat elements; mesh the part again.")
+        raise SolveError(
+            f"A known bending field comes back with an error of {gauge:.2e}, allowed {GAUGE_ALLOWED:.0e}: "
+            "the matrix is too badly conditioned. Look for nearly flat elements; mesh the part again."
+        )
     return Solution(u, -multipliers, residual, gauge, factor.backend)
 
 
-def _solve_bordered(factor: Cholesky, A: sp.csr_matrix, rhs: Array, gauge: Array, C: Array, constraints: Constraints,
-                    springs: np.ndarray, stiffness: float) -> tuple[Array, Array, Array]:
+def _solve_bordered(
+    factor: Cholesky,
+    A: sp.csr_matrix,
+    rhs: Array,
+    gauge: Array,
+    C: Array,
+    constraints: Constraints,
+    springs: np.ndarray,
+    stiffness: float,
+) -> tuple[Array, Array, Array]:
     """y, multipliers, and the solution for the gauge's right-hand side.
 
     With mean rows two steps of refinement, as the springs' part is large when they carry the load alone.

@@ -29,8 +29,9 @@ def _facet_nodes(tets: NDArray[np.int64]) -> NDArray[np.int64]:
     return np.concatenate(facets, axis=1)
 
 
-def named_mesh(mesh: MeshTet2, regions: Mapping[str, Callable[[NDArray[np.float64]], Any]],
-               quality: float = 0.5) -> NamedMesh:
+def named_mesh(
+    mesh: MeshTet2, regions: Mapping[str, Callable[[NDArray[np.float64]], Any]], quality: float = 0.5
+) -> NamedMesh:
     """Regions are told by a condition on the (3, k) corner-mean points of the boundary facets."""
     nodes, tets = mesh.doflocs.astype(float), mesh.dofs.element_dofs.astype(np.int64)
     x = nodes[:, tets[:4]]
@@ -69,24 +70,48 @@ def box_regions(length: float, width: float, depth: float, member: str = "arm") 
 def structured_box(length: float, width: float, depth: float, cells: tuple[int, int, int]) -> MeshTet2:
     """Structured second-order tetrahedra in the box of `box_regions`."""
     nx, ny, nz = cells
-    return MeshTet2.from_mesh(MeshTet.init_tensor(
-        np.linspace(0, length, nx + 1), np.linspace(-width / 2, width / 2, ny + 1),
-        np.linspace(-depth / 2, depth / 2, nz + 1),
-    ))
+    return MeshTet2.from_mesh(
+        MeshTet.init_tensor(
+            np.linspace(0, length, nx + 1),
+            np.linspace(-width / 2, width / 2, ny + 1),
+            np.linspace(-depth / 2, depth / 2, nz + 1),
+        )
+    )
 
 
-def box_mesh(length: float, width: float, depth: float, cells: tuple[int, int, int],
-             extra: Mapping[str, Callable[..., Any]] | None = None) -> NamedMesh:
+def box_mesh(
+    length: float,
+    width: float,
+    depth: float,
+    cells: tuple[int, int, int],
+    extra: Mapping[str, Callable[..., Any]] | None = None,
+) -> NamedMesh:
     """The structured box as a named mesh."""
-    return named_mesh(structured_box(length, width, depth, cells),
-                      {**box_regions(length, width, depth), **(extra or {})})
+    return named_mesh(
+        structured_box(length, width, depth, cells), {**box_regions(length, width, depth), **(extra or {})}
+    )
 
 
-def box_part(length: float, width: float, depth: float, supports: Any = (), loads: Any = (),
-             cases: Any = None, material: Material = STEEL, **more: Any) -> Part:
+def box_part(
+    length: float,
+    width: float,
+    depth: float,
+    supports: Any = (),
+    loads: Any = (),
+    cases: Any = None,
+    material: Material = STEEL,
+    **more: Any,
+) -> Part:
     """A rectangular bar along x; by default one case `all` with every load at factor 1."""
-    member = Member("arm", (0.0, 0.0, 0.0), (length, 0.0, 0.0), (0.0, 0.0, 1.0), 0.0,
-                    Section("rectangle", {"depth": depth, "width": width}), **more)
+    member = Member(
+        "arm",
+        (0.0, 0.0, 0.0),
+        (length, 0.0, 0.0),
+        (0.0, 0.0, 1.0),
+        0.0,
+        Section("rectangle", {"depth": depth, "width": width}),
+        **more,
+    )
     if cases is None:
         cases = (Case("all", {load.name: 1.0 for load in loads}),)
     return Part("bar", material, (member,), tuple(supports), tuple(loads), tuple(cases))

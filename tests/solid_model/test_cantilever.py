@@ -14,15 +14,21 @@ L, B, H, P = 500.0, 50.0, 100.0, 1000.0
 E, NU, G = 210000.0, 0.3, 80769.23
 
 
-def value(result: SolidResult, place: str, quantity: str, component: str, case: str = "all",
-          axes: str = "global") -> float:
+def value(
+    result: SolidResult, place: str, quantity: str, component: str, case: str = "all", axes: str = "global"
+) -> float:
     return {f.key: f.value for f in result.figures}[FigureKey(case, place, quantity, component, axes)]
 
 
 @pytest.fixture(scope="module")
 def cantilever() -> SolidResult:
-    part = box_part(L, B, H, [Support("wall", "arm.start", {"x": 0.0, "y": 0.0, "z": 0.0})],
-                    [RegionLoad("tip", "arm.end", (0.0, 0.0, -P))])
+    part = box_part(
+        L,
+        B,
+        H,
+        [Support("wall", "arm.start", {"x": 0.0, "y": 0.0, "z": 0.0})],
+        [RegionLoad("tip", "arm.end", (0.0, 0.0, -P))],
+    )
     return solve_solid(part, box_mesh(L, B, H, (12, 2, 4)), Budget(threads=1))
 
 

@@ -14,20 +14,37 @@ from fem.solid.cut import Cutter, section_means
 from fem.solid.frame import Frame
 from geometry.budget import Budget
 from geometry.part import (
-    BodyLoad, Case, LineLoad, Member, Part, Place, Pressure, RegionLoad, Section, Support, TemperatureLoad,
+    BodyLoad,
+    Case,
+    LineLoad,
+    Member,
+    Part,
+    Place,
+    Pressure,
+    RegionLoad,
+    Section,
+    Support,
+    TemperatureLoad,
 )
 
 BUDGET = Budget(threads=1)
 ALL = {"x": 0.0, "y": 0.0, "z": 0.0}
 L, B, H = 210.0, 20.0, 30.0
-FORCES = (("section_force", "N"), ("section_force", "Vy"), ("section_force", "Vz"), ("section_moment", "T"),
-          ("section_moment", "My"), ("section_moment", "Mz"))
+FORCES = (
+    ("section_force", "N"),
+    ("section_force", "Vy"),
+    ("section_force", "Vz"),
+    ("section_moment", "T"),
+    ("section_moment", "My"),
+    ("section_moment", "Mz"),
+)
 
 
 def section_forces(result: SolidResult, case: str) -> np.ndarray:
     table = {f.key: f.value for f in result.figures}
-    return np.array([[table[FigureKey(case, f"arm@{L * k / 20:.6g}", q, c, "member")] for q, c in FORCES]
-                     for k in range(21)])
+    return np.array(
+        [[table[FigureKey(case, f"arm@{L * k / 20:.6g}", q, c, "member")] for q, c in FORCES] for k in range(21)]
+    )
 
 
 def loads() -> list:
@@ -93,7 +110,9 @@ def test_cases_are_factored_sums(mixed: SolidResult) -> None:
 def test_raw_stress_gap_shrinks_with_the_mesh() -> None:
     gaps = []
     for cells in ((6, 1, 2), (12, 2, 4)):
-        part = box_part(L, B, H, [Support("wall", "arm.start", ALL)], [RegionLoad("tip", "arm.end", (0.0, 0.0, -100.0))])
+        part = box_part(
+            L, B, H, [Support("wall", "arm.start", ALL)], [RegionLoad("tip", "arm.end", (0.0, 0.0, -100.0))]
+        )
         result = solve_solid(part, box_mesh(L, B, H, cells), BUDGET)
         gaps.append(np.abs(result.section_gap[0, 5:15, 0, 4]).max())
     assert 0 < gaps[1] < gaps[0] / 2
@@ -116,13 +135,29 @@ def test_a_turned_part_gives_the_same_figures() -> None:
     for Q, t in ((np.eye(3), np.zeros(3)), (R, shift)):
         mesh = MeshTet2(Q @ box.doflocs + t[:, None], box.t)
         rules = {n: (lambda p, r=r, Q=Q, t=t: r(Q.T @ (p - t[:, None]))) for n, r in box_regions(L, B, H).items()}
-        member = Member("arm", tuple(t), tuple(Q @ [L, 0, 0] + t), tuple(Q @ [0.3, 0, 1.0]), 0.0,
-                        Section("rectangle", {"depth": H, "width": B}))
-        part = Part("bar", STEEL, (member,), (
-            Support("wall", "arm.start", ALL, axes="member"), Support("side", "arm.left", {"normal": 0.0}),
-        ), (RegionLoad("tip", "arm.end", tuple(Q @ force), tuple(Q @ moment)),
-            BodyLoad("self_weight", tuple(Q @ [0.0, 0.0, -9810.0]))),
-            (Case("all", {"tip": 1.0, "self_weight": 1.0}),), places=(Place("third", "arm", L / 3),))
+        member = Member(
+            "arm",
+            tuple(t),
+            tuple(Q @ [L, 0, 0] + t),
+            tuple(Q @ [0.3, 0, 1.0]),
+            0.0,
+            Section("rectangle", {"depth": H, "width": B}),
+        )
+        part = Part(
+            "bar",
+            STEEL,
+            (member,),
+            (
+                Support("wall", "arm.start", ALL, axes="member"),
+                Support("side", "arm.left", {"normal": 0.0}),
+            ),
+            (
+                RegionLoad("tip", "arm.end", tuple(Q @ force), tuple(Q @ moment)),
+                BodyLoad("self_weight", tuple(Q @ [0.0, 0.0, -9810.0])),
+            ),
+            (Case("all", {"tip": 1.0, "self_weight": 1.0}),),
+            places=(Place("third", "arm", L / 3),),
+        )
         results.append((solve_solid(part, named_mesh(mesh, rules), BUDGET), Q))
     (first, _), (second, _) = results
     a, b = ({f.key: f.value for f in r.figures} for r in (first, second))

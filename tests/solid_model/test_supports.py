@@ -22,8 +22,9 @@ L, B, H = 200.0, 20.0, 30.0
 MESH = box_mesh(L, B, H, (8, 2, 3))
 
 
-def value(result: SolidResult, place: str, quantity: str, component: str, case: str = "all",
-          axes: str = "global") -> float:
+def value(
+    result: SolidResult, place: str, quantity: str, component: str, case: str = "all", axes: str = "global"
+) -> float:
     return {f.key: f.value for f in result.figures}[FigureKey(case, place, quantity, component, axes)]  # type: ignore
 
 
@@ -36,10 +37,15 @@ def solve(supports, loads, cases=None, **more) -> SolidResult:  # type: ignore[n
 TIP = RegionLoad("tip", "arm.end", (200.0, 50.0, -100.0), (2000.0, 3000.0, -4000.0))
 
 
-@pytest.mark.parametrize("support", [
-    Support("wall", "arm.start", ALL), Support("wall", "arm.start", SIX, "rigid"),
-    Support("wall", "arm.start", SIX, "average"), Support("wall", "arm.start", SIX, "average", "member"),
-])
+@pytest.mark.parametrize(
+    "support",
+    [
+        Support("wall", "arm.start", ALL),
+        Support("wall", "arm.start", SIX, "rigid"),
+        Support("wall", "arm.start", SIX, "average"),
+        Support("wall", "arm.start", SIX, "average", "member"),
+    ],
+)
 @pytest.mark.parametrize("coupling", ["surface", "rigid", "average"])
 def test_every_coupling_gives_the_reactions_of_statics(support: Support, coupling: str) -> None:
     tip = RegionLoad("tip", "arm.end", TIP.force, TIP.moment, coupling)  # type: ignore[arg-type]
@@ -50,8 +56,8 @@ def test_every_coupling_gives_the_reactions_of_statics(support: Support, couplin
     # r x F with r = (L, 0, 0): (0, -L Fz, L Fy)
     assert moment == pytest.approx([-2000.0, -(3000 + L * 100), -(-4000 + L * 50)], abs=1e-3)
     assert value(result, "arm@0", "section_moment", "My", axes="member") == pytest.approx(3000 + L * 100, rel=1e-8)
-    # bending deflection of the beam: P L^3 / 3EI + M L^2 / 2EI, both down; shear part with Cowper's k. H6: 2 % at L/h 5;
-    # a root held point by point is also stiffer by the Poisson contraction that it prevents
+    # bending deflection of the beam: P L^3 / 3EI + M L^2 / 2EI, both down; shear part with Cowper's k. H6: 2 % at
+    # L/h 5; a root held point by point is also stiffer by the Poisson contraction that it prevents
     EI, kGA = 210000.0 * B * H**3 / 12, 0.8497 * 80769.0 * B * H
     exact = -(100 * L**3 / 3 + 3000 * L**2 / 2) / EI - 100 * L / kGA
     assert value(result, "arm.end", "displacement", "z") == pytest.approx(exact, rel=0.02)
@@ -84,16 +90,24 @@ def test_prescribed_motion_moves_the_part() -> None:
 
 
 def test_prescribed_stretch_and_its_reaction() -> None:
-    result = solve([Support("wall", "arm.start", {"x": 0.0, "rx": 0.0, "y": 0.0, "z": 0.0}, "average"),
-                    Support("pull", "arm.end", {"x": 0.05, "ry": 0.0, "rz": 0.0}, "average")], [], [Case("none", {})])
+    result = solve(
+        [
+            Support("wall", "arm.start", {"x": 0.0, "rx": 0.0, "y": 0.0, "z": 0.0}, "average"),
+            Support("pull", "arm.end", {"x": 0.05, "ry": 0.0, "rz": 0.0}, "average"),
+        ],
+        [],
+        [Case("none", {})],
+    )
     assert value(result, "pull", "reaction_force", "x", "none") == pytest.approx(210000 * B * H * 0.05 / L, rel=1e-6)
     assert value(result, "wall", "reaction_force", "x", "none") == pytest.approx(-210000 * B * H * 0.05 / L, rel=1e-6)
     assert result.strain_energy[0] == pytest.approx(210000 * B * H * 0.05**2 / L / 2, rel=1e-6)
 
 
 def test_supports_that_share_an_edge_share_its_reaction() -> None:
-    result = solve([Support("a", "arm.start", ALL), Support("b", "arm.bottom", {"normal": 0.0})],
-                   [RegionLoad("press", "arm.top", (0.0, 0.0, -6000.0))])
+    result = solve(
+        [Support("a", "arm.start", ALL), Support("b", "arm.bottom", {"normal": 0.0})],
+        [RegionLoad("press", "arm.top", (0.0, 0.0, -6000.0))],
+    )
     total = value(result, "a", "reaction_force", "z") + value(result, "b", "reaction_force", "z")
     assert total == pytest.approx(6000.0, rel=1e-9)
     assert value(result, "b", "reaction_force", "z") > 5000.0
@@ -101,8 +115,10 @@ def test_supports_that_share_an_edge_share_its_reaction() -> None:
 
 
 def test_rigid_region_that_touches_a_held_face() -> None:
-    result = solve([Support("wall", "arm.start", ALL), Support("side", "arm.left", {"normal": 0.0})],
-                   [RegionLoad("tip", "arm.end", (0.0, 30.0, -100.0), coupling="rigid")])
+    result = solve(
+        [Support("wall", "arm.start", ALL), Support("side", "arm.left", {"normal": 0.0})],
+        [RegionLoad("tip", "arm.end", (0.0, 30.0, -100.0), coupling="rigid")],
+    )
     total = [value(result, "wall", "reaction_force", c) + value(result, "side", "reaction_force", c) for c in "xyz"]
     assert total == pytest.approx([0.0, -30.0, 100.0], abs=1e-6)
     left = np.unique(MESH.facets["arm.left"])
@@ -128,12 +144,14 @@ def test_betti_reciprocity() -> None:
 
 def test_remote_point_is_its_force_and_moment_on_the_region() -> None:
     wall = Support("wall", "arm.start", ALL)
-    remote = RemotePoint("arm_tip", "arm.end", (L + 50.0, 5.0, -8.0), "average", (10.0, 20.0, -30.0), (1.0, 2.0, 3.0),
-                         mass=2e-4)
+    remote = RemotePoint(
+        "arm_tip", "arm.end", (L + 50.0, 5.0, -8.0), "average", (10.0, 20.0, -30.0), (1.0, 2.0, 3.0), mass=2e-4
+    )
     weight = BodyLoad("self_weight", (0.0, 0.0, -9810.0))
     arm = np.array([50.0, 5.0, -8.0])
-    same = RegionLoad("same", "arm.end", (10.0, 20.0, -30.0),
-                      tuple(np.array([1.0, 2.0, 3.0]) + np.cross(arm, [10.0, 20.0, -30.0])))
+    same = RegionLoad(
+        "same", "arm.end", (10.0, 20.0, -30.0), tuple(np.array([1.0, 2.0, 3.0]) + np.cross(arm, [10.0, 20.0, -30.0]))
+    )
     a = solve([wall], [remote, weight], [Case("force", {"arm_tip": 1.0}), Case("weight", {"self_weight": 1.0})])
     b = solve([wall], [same])
     assert a.u[0] == pytest.approx(b.u[0], abs=1e-12)
@@ -143,11 +161,13 @@ def test_remote_point_is_its_force_and_moment_on_the_region() -> None:
 
 
 def test_bearing_load_has_its_resultant_and_only_pushes() -> None:
-    box = MeshTet2.from_mesh(MeshTet.init_tensor(np.linspace(0, 10, 3), np.linspace(8, 20, 3),
-                                                 np.linspace(0, 2 * np.pi, 17)))
+    box = MeshTet2.from_mesh(
+        MeshTet.init_tensor(np.linspace(0, 10, 3), np.linspace(8, 20, 3), np.linspace(0, 2 * np.pi, 17))
+    )
     x, r, t = box.doflocs
-    mesh = named_mesh(MeshTet2(np.array([x, r * np.cos(t), r * np.sin(t)]), box.t),
-                      {"hole": lambda p: np.hypot(p[1], p[2]) < 8.2})
+    mesh = named_mesh(
+        MeshTet2(np.array([x, r * np.cos(t), r * np.sin(t)]), box.t), {"hole": lambda p: np.hypot(p[1], p[2]) < 8.2}
+    )
     region = surface_region(mesh, "hole")
     assert region.area == pytest.approx(2 * np.pi * 8 * 10, rel=1e-3)
     force = np.array([0.0, 300.0, 400.0])
@@ -165,13 +185,19 @@ def test_bearing_load_has_its_resultant_and_only_pushes() -> None:
     assert BearingLoad("pin", "hole", (0.0, 1.0, 0.0)).on == "hole"
 
 
-@pytest.mark.parametrize(("supports", "messages"), [
-    ([Support("wall", "arm.start", {"x": 0.0})], ["turn about an axis along x", "slide along y", "slide along z"]),
-    ([Support("wall", "arm.start", {"x": 0.0}), Support("side", "arm.left", {"normal": 0.0})], ["slide along z"]),
-    ([Support("wall", "arm.start", ALL, "average")], ["along x", "along y", "along z"]),
-    ([Support("wall", "arm.start", {**ALL, "rx": 0.0, "rz": 0.0}, "rigid")], ["turn about an axis along y through (0, 0, 0)"]),
-    ([], ["turn about an axis along x", "slide along x"]),
-])
+@pytest.mark.parametrize(
+    ("supports", "messages"),
+    [
+        ([Support("wall", "arm.start", {"x": 0.0})], ["turn about an axis along x", "slide along y", "slide along z"]),
+        ([Support("wall", "arm.start", {"x": 0.0}), Support("side", "arm.left", {"normal": 0.0})], ["slide along z"]),
+        ([Support("wall", "arm.start", ALL, "average")], ["along x", "along y", "along z"]),
+        (
+            [Support("wall", "arm.start", {**ALL, "rx": 0.0, "rz": 0.0}, "rigid")],
+            ["turn about an axis along y through (0, 0, 0)"],
+        ),
+        ([], ["turn about an axis along x", "slide along x"]),
+    ],
+)
 def test_a_part_that_is_not_held_is_told_its_free_motions(supports: list[Support], messages: list[str]) -> None:
     with pytest.raises(SolveError) as error:
         solve(supports, [TIP])
