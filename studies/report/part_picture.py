@@ -81,7 +81,6 @@ def describe_load(load: Load) -> str:
             return f"{load.name}: {_vector(tuple(1e-3 * a for a in load.force_per_mass), 'N/kg')} on all mass"
         case TemperatureLoad():
             return f"{load.name}: temperature change {load.change:g} K"
-    return str(load)
 
 
 def _vector(value: tuple[float, ...], unit: str) -> str:
@@ -142,7 +141,7 @@ def _pair(foot: Floats, force: tuple[float, ...], moment: tuple[float, ...]) -> 
 
 def _pressure_arrows(load: Pressure, mesh: NamedMesh) -> list[Arrow]:
     centres, areas = _region_facets(mesh, load.on)
-    chosen = np.unique(np.linspace(0, len(centres) - 1, 5).astype(int)) if len(centres) else []
+    chosen = np.unique(np.linspace(0, len(centres) - 1, min(len(centres), 5)).astype(int))
     return [(centres[i], -np.sign(load.value) * _unit(areas[i]), False) for i in chosen]
 
 

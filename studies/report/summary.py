@@ -5,7 +5,7 @@ from __future__ import annotations
 import tomllib
 from collections.abc import Iterable, Sequence
 
-from studies.check.result import CheckResult, Pair
+from studies.check.result import CheckResult, Pair, PeakPlace
 from studies.report.tables import (
     Tally,
     headlines,
@@ -90,7 +90,8 @@ def _limits(result: CheckResult) -> list[str]:
 
 
 def _pair_row(pair: Pair) -> tuple[str, ...]:
-    causes = "; ".join(f"{cause.text} ({readable(cause.predicted, pair.unit)})" for cause in pair.causes)
+    causes = "; ".join(f"{cause.text} ({readable(cause.predicted, pair.unit)})" for cause in pair.causes
+                       if cause.predicted)
     return (name_of(pair.key), shown_unit(pair.unit), number(pair.solid, pair.unit), number(pair.beam, pair.unit),
             number(pair.difference, pair.unit), number(pair.band, pair.unit) if pair.difference is not None else "-",
             marked(pair.judgement), causes)
@@ -104,7 +105,18 @@ def _case(result: CheckResult, case: str) -> list[str]:
              "Every figure of the case, by kind; the worst is the one that uses most of its allowance:", ""]
     lines += table(["kind", "figures", "judgement", "worst", "its remainder", "allowed"],
                    [_tally_row(tally) for tally in tallies(result, case)])
-    return [*lines, "", *_peaks(result, case)]
+    return [*lines, *_allowances(result, case), "", *_peaks(result, case)]
+
+
+def _allowances(result: CheckResult, case: str) -> list[str]:
+    """What the allowances are made of (causes without a signed size), each set once for each kind of figure."""
+    sets: dict[str, dict[str, None]] = {}
+    for pair in result.pairs:
+        reasons = "; ".join(cause.text for cause in pair.causes if not cause.predicted)
+        if pair.key.case == case and reasons:
+            sets.setdefault(reasons, {})[pair.key.quantity.replace("_", " ")] = None
+    lines = [f"- {', '.join(kinds)}: {reasons}" for reasons, kinds in sets.items()]
+    return ["", "What the allowances are made of:", "", *lines] if lines else []
 
 
 def _tally_row(tally: Tally) -> tuple[str, ...]:
@@ -120,11 +132,10 @@ def _peaks(result: CheckResult, case: str) -> list[str]:
     peaks = [peak for peak in result.peaks if peak.case == case]
     if not peaks:
         return ["No peak places."]
-    rows = [(str(i), peak.place or "(no named region)", ", ".join(f"{x:.4g}" for x in peak.point),
-             f"{peak.stress:.4g}", "-" if peak.error is None else f"{peak.error:.2g}",
+    rows = [(str(i), _where(peak), f"{peak.stress:.4g}", "-" if peak.error is None else f"{peak.error:.2g}",
              "yes" if peak.has_limit else f"no: {peak.text}") for i, peak in enumerate(peaks, start=1)]
     lines = ["Peak places of the solid model (von Mises):", "",
-             *table(["no.", "where", "x, y, z (mm)", "von Mises (MPa)", "stated error (MPa)", "has a converged value"],
+             *table(["no.", "where (x, y, z)", "von Mises (MPa)", "stated error (MPa)", "has a converged value"],
                     rows)]
     stress = next((c for c in result.case_stress if c.case == case), None)
     if stress is not None:
@@ -134,6 +145,11 @@ def _peaks(result: CheckResult, case: str) -> list[str]:
     dents = [f"{d.value:.3g} mm at {d.region}" for d in result.denting if d.case == case]
     return lines + (["", "Local denting of loaded faces, not part of the section means: " + ", ".join(dents) + "."]
                     if dents else [])
+
+
+def _where(peak: PeakPlace) -> str:
+    spot = f"({', '.join(f'{x:.4g}' for x in peak.point)}) mm"
+    return peak.place if spot in peak.place else f"{peak.place} {spot}".strip()
 
 
 def _whole_part(result: CheckResult) -> list[str]:

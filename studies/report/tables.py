@@ -18,7 +18,8 @@ MARKS: dict[str, str] = {
 READABLE = {"N mm": (1e-3, "N m"), "t": (1e3, "kg"), "rad": (1e3, "mrad"), "1": (1.0, "")}
 """Units of the result -> factor and the unit a person reads."""
 
-ORDER: tuple[JudgementWord, ...] = ("suspicious", "explained", "load check", "no beam value", "agrees")
+ORDER: tuple[JudgementWord, ...] = ("suspicious", "explained", "agrees", "load check", "no beam value")
+"""From the word that a row of several takes first to the last."""
 
 SECTION_KINDS = ("section_force", "section_moment", "nominal_stress")
 """Quantities that both models give at stations only: shown by their largest value."""
@@ -134,7 +135,7 @@ def verdict(result: CheckResult) -> str:
     """The run in one sentence or two."""
     words = Counter(pair.judgement for pair in result.pairs)
     compared = words["agrees"] + words["explained"] + words["suspicious"]
-    limits = Counter(limit.verdict for limit in result.limits)
+    limits: Counter[str] = Counter(limit.verdict for limit in result.limits)
     failed = [check.name for check in result.checks if not check.ok]
     text = f"{marked(result.judgement)}: of {compared} compared figures {words['agrees']} agree, " \
            f"{words['explained']} are explained, {words['suspicious']} are suspicious"

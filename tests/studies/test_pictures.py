@@ -128,3 +128,20 @@ def test_tables_pick_the_largest_and_the_worst(helpers: ModuleType, tmp_path: Pa
     bad = dataclasses.replace(result, pairs=(*worse, *result.pairs[3:]))
     assert suspicious(bad) == worse[::-1] and "3 are suspicious" in verdict(bad)
     assert next(row for row in tallies(bad, "carrying") if row.quantity == "displacement").worst == worse[-1]
+
+
+def test_the_summary_tells_signed_causes_from_allowances(helpers: ModuleType) -> None:
+    import studies.check.run as run
+    from studies.check.result import Cause
+    from studies.check.stages import Clock
+    from studies.report.summary import summary
+
+    models = helpers.make_models()
+    result = run.make_result(models, helpers.make_judgement(models), "arm.toml", "t", Clock())
+    at = next(i for i, pair in enumerate(result.pairs) if pair.key.place == "arm.end")
+    causes = (Cause("the hole", 0.0125), Cause("mesh: band 1 %", 0.0))
+    pair = dataclasses.replace(result.pairs[at], causes=causes, judgement="explained")
+    text = summary(dataclasses.replace(result, pairs=(*result.pairs[:at], pair, *result.pairs[at + 1:])))
+    row = next(line for line in text.splitlines() if line.startswith("| displacement z at arm.end"))
+    assert "the hole (0.0125 mm)" in row and "~ explained" in row and "mesh: band" not in row
+    assert "- displacement: mesh: band 1 %" in text.splitlines()
