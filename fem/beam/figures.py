@@ -163,14 +163,49 @@ def energies(s: Solved) -> Array:
     return out
 
 
+def fillet_volumes(mesh: BeamMesh) -> Iterator[tuple[float, Array]]:
+    """Volume (mm^3) and centroid (member axes) of the material in each shoulder fillet.
+
+    The corner outside a quarter circle has the area (1 - pi/4) r^2, its centroid (10 - 3 pi)/(12 - 3 pi) r from either
+    side. Taken where a rectangle or a round steps by at least the radius on opposite sides; other shapes' fillets are
+    left out of the mass.
+    """
+    member = mesh.member
+    for before, after in zip(member.stations, member.stations[1:], strict=False):
+        r = after.shoulder_fillet
+        if before.at != after.at or r == 0.0:
+            continue
+        inset = 1e-9 * mesh.length
+        sides = [mesh.sections.integrals(after.at + d * inset) for d in (-1.0, 1.0)]
+        way = 1.0 if sides[1].area < sides[0].area else -1.0
+        wide, narrow = sides if way > 0 else sides[::-1]
+        corner, arm = (1.0 - np.pi / 4.0) * r * r, (10.0 - 3.0 * np.pi) / (12.0 - 3.0 * np.pi) * r
+        x = after.at + way * arm
+        size = np.array([narrow.extremes[3, 0] - narrow.extremes[2, 0], narrow.extremes[0, 1] - narrow.extremes[1, 1]])
+        if member.section.shape == "round":
+            if wide.extremes[0, 1] - narrow.extremes[0, 1] >= r * (1 - 1e-9):
+                yield float(2.0 * np.pi * (0.5 * size[1] + arm) * corner), np.array([x, narrow.yc, narrow.zc])
+        elif member.section.shape == "rectangle":
+            for i, (axis, sign) in enumerate(((1, 1.0), (1, -1.0), (0, -1.0), (0, 1.0))):
+                step = sign * (wide.extremes[i, axis] - narrow.extremes[i, axis])
+                if step >= r * (1 - 1e-9):
+                    point = np.array([x, narrow.yc, narrow.zc])
+                    point[1 + axis] = narrow.extremes[i, axis] + sign * arm
+                    yield float(corner * size[1 - axis]), point
+
+
 def _mass(mesh: BeamMesh) -> Iterator[Figure]:
     t, w = np.polynomial.legendre.leggauss(4)
     h = np.diff(mesh.x)
     x = (mesh.x[:-1, None] + h[:, None] * 0.5 * (t + 1.0)).ravel()
     p = mesh.sections.net(x)
     dm = mesh.part.material.density * p.area * (h[:, None] * 0.5 * w).ravel()
+    moment = np.array([dm @ x, dm @ p.yc, dm @ p.zc])
     mass = float(dm.sum())
-    centre = np.array([dm @ x, dm @ p.yc, dm @ p.zc]) / mass
+    for volume, point in fillet_volumes(mesh):
+        mass += mesh.part.material.density * volume
+        moment += mesh.part.material.density * volume * point
+    centre = moment / mass
     yield Figure(FigureKey("", "", "mass", ""), mass, "t")
     for i, value in enumerate(mesh.axes.T @ centre + np.array(mesh.member.start)):
         yield Figure(FigureKey("", "", "centre_of_mass", XYZ[i]), float(value), "mm")

@@ -74,6 +74,9 @@ class BeamResult:
         moments about the section's own centroid), mm.
     shear_share
         Case -> share of the strain energy that is shear: what a beam without shear flexibility would miss.
+    nominal_shear
+        Case -> (21, 4) x, shear stress along z and y at the centroid's level, torsion stress (see
+        `fem.beam.stress.nominal_shear`), MPa.
     slenderness
         Length over the largest depth.
     causes
@@ -87,6 +90,7 @@ class BeamResult:
     properties: Array
     mass: float
     shear_share: Mapping[str, float]
+    nominal_shear: Mapping[str, Array]
     slenderness: float
     causes: tuple[Cause, ...] = ()
     notes: tuple[str, ...] = ()

@@ -17,6 +17,7 @@ from fem.beam.figures import Solved, all_figures, diagram, energies, line_figure
 from fem.beam.mesh import BeamMesh
 from fem.beam.result import BeamResult
 from fem.beam.section import sections_properties
+from fem.beam.stress import nominal_shear
 from geometry.budget import Budget
 from geometry.part import Part
 from geometry.problem import RunError, SolveError
@@ -64,6 +65,7 @@ def solve_beam(
         mass=mass,
         shear_share={case.name: float(e[1] / e.sum()) if e.sum() else 0.0
                      for case, e in zip(part.cases, energies(solved).T, strict=True)},
+        nominal_shear={case.name: nominal_shear(solved, k) for k, case in enumerate(part.cases)},
         slenderness=mesh.length / depth,
         causes=causes,
         notes=tuple(notes),

@@ -1,4 +1,4 @@
-"""Nominal longitudinal stress at the extreme points of the outline."""
+"""Nominal stress: longitudinal at the extreme points of the outline, shear at the centroid's level."""
 
 from __future__ import annotations
 
@@ -6,9 +6,11 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
 import numpy as np
+from numpy.typing import NDArray
 
 from fem.beam.outlines import net_section
 from fem.beam.section import OutlineIntegrals, outline_integrals
+from fem.beam.taper_shear import level_shear
 from fem.figure import Figure, FigureKey, station_place
 
 if TYPE_CHECKING:
@@ -26,7 +28,7 @@ def bending_stress(o: OutlineIntegrals, forces: np.ndarray, y: float, z: float) 
 
 
 def nominal_stresses(s: Solved, case: int, name: str) -> Iterator[Figure]:
-    """xx at the four extreme points of the gross outline, at the 21 stations; net section where a cut passes."""
+    """xx at the four extreme points of the section at the 21 stations; of the net section where a cut passes."""
     from fem.beam.figures import forces_at, station_values
 
     mesh = s.mesh
@@ -41,6 +43,35 @@ def nominal_stresses(s: Solved, case: int, name: str) -> Iterator[Figure]:
         if piece.open_thin:
             bimoment = f[6] / mesh.sections.gross(np.array([at])).Iw[0] * mesh.sections.warping_at_extremes(at)
         for i, point in enumerate(POINTS):
-            value = bending_stress(used, f, *gross.extremes[i]) + bimoment[i]
+            value = bending_stress(used, f, *used.extremes[i]) + bimoment[i]
             yield Figure(FigureKey(name, station_place(mesh.member.name, float(x)), "nominal_stress", f"xx@{point}",
                                    "member"), float(value), "MPa", note="net section" if cut else "gross section")
+
+
+def nominal_shear(s: Solved, case: int) -> NDArray[np.float64]:
+    """(21, 4) x, mean shear stress along z and y at the centroid's level, largest Saint-Venant torsion stress.
+
+    MPa, on the section without cuts. The first two follow from equilibrium, the inclination of tapered sides included
+    (see `fem.beam.taper_shear`): V S/(I b) where the member is prismatic. The third is unsigned and taken from the nearest
+    analysed section of the same piece, scaled with J.
+    """
+    from fem.beam.figures import forces_at, station_values
+
+    mesh = s.mesh
+    G = mesh.part.material.E / (2.0 * (1.0 + mesh.part.material.nu))
+    rows = []
+    for x in station_values(mesh):
+        at = min(max(float(x), 1e-3 * mesh.length), (1.0 - 1e-3) * mesh.length)
+        f = forces_at(s, float(x), case)
+        o = mesh.sections.integrals(at)
+        My, Mz = f[4] - o.zc * f[0], f[5] + o.yc * f[0]
+        step = 1e-4 * mesh.length
+        tau = (level_shear(mesh.sections.outline, at, step, 1, np.array([f[2], f[0], My])),
+               level_shear(mesh.sections.outline, at, step, 0, np.array([f[1], f[0], -Mz])))
+        p = mesh.sections.gross(np.array([at]))
+        k = mesh.node(float(x))
+        chi = s.states.freedoms[7 * k + 6, case] if mesh.sections.piece(at).open_thin else None
+        torque = f[3] + p.zs[0] * f[1] - p.ys[0] * f[2] if chi is None else G * p.J[0] * chi
+        near = min(mesh.sections.solved, key=lambda q: abs(q.area - p.area[0]))
+        rows.append([x, *tau, abs(torque) / p.J[0] * near.torsion_stress * near.J])
+    return np.array(rows)
