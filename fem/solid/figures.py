@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+import numpy as np
+
 from fem.figure import Figure, FigureKey, Quantity, station_place
 from fem.solid.cut import Cut, section_means
 from fem.solid.frame import member_frame, stations
@@ -16,16 +18,19 @@ _XYZ = ("x", "y", "z")
 
 
 def vector_figures(
-    cases: tuple[str, ...], place: str, quantity: Quantity, values: Array, unit: str
+    cases: tuple[str, ...], place: str, quantity: Quantity, values: Array, unit: str, errors: Array | None = None
 ) -> Iterator[Figure]:
-    """Components x, y, z (global) of values (c, 3)."""
-    for case, row in zip(cases, values, strict=True):
+    """Components x, y, z (global) of values (c, 3); errors (c,) relative to the vector's size."""
+    for k, (case, row) in enumerate(zip(cases, values, strict=True)):
+        error = None if errors is None else float(errors[k] * np.linalg.norm(row))
         for component, value in zip(_XYZ, row, strict=True):
-            yield Figure(FigureKey(case, place, quantity, component), float(value), unit)
+            yield Figure(FigureKey(case, place, quantity, component), float(value), unit, error)
 
 
-def displacement_figures(model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]]) -> Iterator[Figure]:
-    """Mean displacement (mm) and rotation (rad) of every section; u (c, 3, n)."""
+def displacement_figures(
+    model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]], relative_error: Array
+) -> Iterator[Figure]:
+    """Mean displacement (mm) and rotation (rad) of every section; u (c, 3, n); relative_error (c,) of the energy."""
     cases = tuple(case.name for case in model.part.cases)
     places = section_places(model)
     for member in model.part.members:
@@ -33,8 +38,8 @@ def displacement_figures(model: SolidModel, u: Array, sections: dict[str, dict[f
         for at, names in places[member.name].items():
             mean, turn = section_means(sections[member.name][at], u, model.mesh.tets, frame)
             for name in names:
-                yield from vector_figures(cases, name, "displacement", mean, "mm")
-                yield from vector_figures(cases, name, "rotation", turn, "rad")
+                yield from vector_figures(cases, name, "displacement", mean, "mm", relative_error)
+                yield from vector_figures(cases, name, "rotation", turn, "rad", relative_error)
 
 
 def reaction_figures(model: SolidModel, reactions: Reactions) -> Iterator[Figure]:
@@ -45,10 +50,10 @@ def reaction_figures(model: SolidModel, reactions: Reactions) -> Iterator[Figure
         yield from vector_figures(cases, name, "reaction_moment", reactions.moment[name], "N mm")
 
 
-def scalar_figures(model: SolidModel, energy: Array) -> Iterator[Figure]:
+def scalar_figures(model: SolidModel, energy: Array, relative_error: Array) -> Iterator[Figure]:
     """Strain energy (N mm) of each case, mass (t) and centre of mass (mm)."""
-    for case, value in zip(model.part.cases, energy, strict=True):
-        yield Figure(FigureKey(case.name, "", "strain_energy", ""), float(value), "N mm")
+    for case, value, error in zip(model.part.cases, energy, relative_error, strict=True):
+        yield Figure(FigureKey(case.name, "", "strain_energy", ""), float(value), "N mm", float(error * value))
     yield Figure(FigureKey("", "", "mass", ""), model.mass, "t", note="material of the part, no remote masses")
     for component, value in zip(_XYZ, model.centre_of_mass, strict=True):
         yield Figure(FigureKey("", "", "centre_of_mass", component), float(value), "mm")

@@ -94,6 +94,9 @@ class SolidResult:
         (linear) stresses at the node.
     stress_error
         (c, n) nodal spread: root mean square von Mises difference between the elements' stresses and their mean.
+    energy_error
+        (c,) energy of that spread over the strain energy: an estimate of the relative error of the energy, and of the
+        displacement under the loads (Zienkiewicz and Zhu 1987; low near places of unbounded stress).
     von_mises, tresca
         (c, n) MPa.
     principal
@@ -126,6 +129,7 @@ class SolidResult:
     u: Array
     stress: Array
     stress_error: Array
+    energy_error: Array
     von_mises: Array
     tresca: Array
     principal: Array

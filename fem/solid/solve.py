@@ -74,7 +74,8 @@ def solve_solid(
     energy, thermal_part = strain_energies(model, u)
     checks = [*load_checks(model), *balance_checks(model, u, reacting, energy, thermal_part, solution)]
     stage("stress")
-    stress, spread = nodal_stress(model, u)
+    stress, spread, lost = nodal_stress(model, u)
+    energy_error = lost / np.where(energy > 0, energy, np.inf)
     mises, principal = von_mises(stress, axis=1), principal_stresses(stress)
     stage("sections")
     cutter = Cutter(mesh)
@@ -82,12 +83,12 @@ def solve_solid(
     forces, gap = section_forces(model, u, reacting, sections)
     stage("figures")
     figures = (
-        *displacement_figures(model, u, sections),
+        *displacement_figures(model, u, sections, energy_error),
         *reaction_figures(model, reacting),
         *section_force_figures(model, forces),
         *nominal_figures(model, stress, spread),
         *notch_figures(model, stress, spread),
-        *scalar_figures(model, energy),
+        *scalar_figures(model, energy, energy_error),
     )
     sizes = node_sizes(mesh)
     places = singular_places(model, sharp_edges)
@@ -98,6 +99,7 @@ def solve_solid(
         u=u,
         stress=stress,
         stress_error=spread,
+        energy_error=energy_error,
         von_mises=mises,
         tresca=principal[:, 0] - principal[:, 2],
         principal=principal,

@@ -21,12 +21,13 @@ NODE_BARY = np.vstack([np.eye(4), (np.eye(4)[TET_EDGES[:, 0]] + np.eye(4)[TET_ED
 """(4, 10) barycentric coordinates of an element's nodes."""
 
 
-def nodal_stress(model: SolidModel, u: Array) -> tuple[Array, Array]:
-    """(c, 6, n) averaged stress and (c, n) spread (von Mises of the deviation, root mean square), MPa."""
+def nodal_stress(model: SolidModel, u: Array) -> tuple[Array, Array, Array]:
+    """(c, 6, n) averaged stress, (c, n) spread (von Mises of the deviation, root mean square), MPa, and (c,) energy
+    of the deviation, N mm: an estimate of the energy of the error. u (c, 3, n)."""
     mesh, material = model.mesh, model.part.material
     c, n = u.shape[0], mesh.nodes.shape[1]
     expansion = material.expansion * model.change
-    total, squares, weight = np.zeros((c, 6, n)), np.zeros((c, n)), np.zeros(n)
+    total, squares, weight, energy = np.zeros((c, 6, n)), np.zeros((c, n)), np.zeros(n), np.zeros(c)
     kept = []
     for start in range(0, mesh.tets.shape[1], _CHUNK):
         tets = mesh.tets[:, start : start + _CHUNK]
@@ -45,7 +46,18 @@ def nodal_stress(model: SolidModel, u: Array) -> tuple[Array, Array]:
         for k in range(c):
             off = s[k].transpose(1, 0, 2).reshape(6, -1) - mean[k][:, index]
             squares[k] += np.bincount(index, weights=von_mises(off) ** 2 * volume, minlength=n)
-    return mean, np.sqrt(squares / weight)
+            corner = off.reshape(6, -1, 10)[:, :, :4]
+            # a linear field's square over a tetrahedron of volume V: V / 20 (sum of squares + square of the sum)
+            forms = _energy(corner, material.E, material.nu).sum(axis=1)
+            forms += _energy(corner.sum(axis=2), material.E, material.nu)
+            energy[k] += float((volume[::10] / 6 / 20 * forms).sum())
+    return mean, np.sqrt(squares / weight), energy
+
+
+def _energy(s: Array, E: float, nu: float) -> Array:
+    """Elastic energy density of stress (6, ...), N mm / mm^3."""
+    trace = s[:3].sum(axis=0)
+    return np.asarray(((1 + nu) * ((s[:3] ** 2).sum(axis=0) + 2 * (s[3:] ** 2).sum(axis=0)) - nu * trace**2) / (2 * E))
 
 
 def von_mises(s: Array, axis: int = 0) -> Array:

@@ -204,3 +204,13 @@ def test_two_members_b22() -> None:
         assert found[FigureKey("all", f"column@{x:g}", "section_moment", "My", "member")] == pytest.approx(
             -6e5, rel=1e-6
         )
+
+
+def test_energy_error_estimate_follows_the_true_one() -> None:
+    # H5: effectivity of a recovery estimate is 0.8 to 1.2 in the usual range; a plain average over boundary nodes is
+    # coarser, so between half and three times here; the true error from a mesh twice as fine in each direction
+    part = box_part(60.0, 10.0, 20.0, [Support("wall", "arm.start", ALL)], [Pressure("press", "arm.top", 1.0)])
+    coarse, fine = (solve_solid(part, box_mesh(60.0, 10.0, 20.0, cells), BUDGET) for cells in ((6, 1, 2), (12, 2, 4)))
+    true = (fine.strain_energy[0] - coarse.strain_energy[0]) / fine.strain_energy[0]
+    assert 0.5 * true < coarse.energy_error[0] < 3 * true
+    assert fine.energy_error[0] < 0.6 * coarse.energy_error[0]
