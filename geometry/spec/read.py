@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import tomllib
 from collections.abc import Collection, Mapping
 from pathlib import Path
@@ -18,6 +19,10 @@ from geometry.spec.text.tokens import nearest
 from geometry.spec.text.toml_errors import not_toml
 from geometry.spec.words.translate import MISSPELT, read_leniently
 
+DEEPEST = 20  # levels of tables and lists; a spec has about seven
+# The TOML reader takes time that grows with the square of the number of dots, so they are counted before.
+_KEY = r"""(?:[A-Za-z0-9_-]++|"[^"\n]*+"|'[^'\n]*+')"""
+_DOTTED = re.compile(rf"(?<![A-Za-z0-9_-])(?:{_KEY}[ \t]*+\.[ \t]*+){{{DEEPEST}}}")
 LARGEST_FILE = 1_000_000  # bytes: a spec is a page or two of text
 
 
@@ -61,6 +66,8 @@ def data_from_text(text: str, name: str) -> dict[str, Any]:
     """The tables of a TOML text."""
     if len(text) > LARGEST_FILE:
         raise SpecError([Problem(name, f"{len(text)} characters", f"at most {LARGEST_FILE} characters")])
+    if _DOTTED.search(text):
+        raise SpecError([Problem(name, "a name nested too deeply", f"at most {DEEPEST} names joined by dots")])
     try:
         return tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
@@ -73,6 +80,7 @@ def data_from_text(text: str, name: str) -> dict[str, Any]:
 
 def part_from_data(data: Mapping[str, Any], text: str = "") -> Part:
     """The part that plain data (the tables of a TOML file) describes; raise `SpecError` with every mistake."""
+    _check_depth(data)
     try:
         spec = PartSpec.model_validate(data)
     except ValidationError:
@@ -82,6 +90,18 @@ def part_from_data(data: Mapping[str, Any], text: str = "") -> Part:
             problems += [p for p in more if not _follows_from(p, removed)]
         raise SpecError(problems) from None
     return spec.resolve(text)
+
+
+def _check_depth(data: Mapping[str, Any]) -> None:
+    """Refuse tables nested more deeply than any spec: dotted keys nest without end, and what copies them recurses."""
+    waiting: list[tuple[Any, int, str]] = [(data, 0, "")]
+    while waiting:
+        value, depth, first = waiting.pop()
+        if depth > DEEPEST:
+            raise SpecError([Problem(first, "tables nested too deeply", f"at most {DEEPEST} levels")])
+        items = value.values() if isinstance(value, Mapping) else value if isinstance(value, list) else ()
+        keys = value if isinstance(value, Mapping) else items
+        waiting += [(item, depth + 1, first or str(key)) for key, item in zip(keys, items, strict=True)]
 
 
 def _follows_from(problem: Problem, removed: Collection[str]) -> bool:

@@ -94,6 +94,9 @@ def test_bombs_are_refused_quickly() -> None:
     start = time.perf_counter()
     assert "nested too deeply" in said_of("x = " + "[" * 100_000)
     assert "nested too deeply" in said_of("x = " + "{a=" * 20_000)
+    dotted = "x" + ".x" * 450_000 + " = 1\n"  # nests without a single bracket
+    for text in (dotted, "material." + dotted, CANTILEVER.replace("[parameters]", f"[parameters]\n{dotted}")):
+        assert "nested too deeply" in said_of(text)
     assert "characters" in said_of("#" * (LARGEST_FILE + 1))
     assert said_of("n = " + "9" * 5000)
     long_sum = "+".join(["reach"] * 100_000)
