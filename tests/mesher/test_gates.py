@@ -116,6 +116,17 @@ def test_no_inverted_element_passes_between_the_sample_points() -> None:
             assert scaled_jacobian(nodes, index)[0] <= 0
 
 
+def test_an_element_inverted_between_the_lattice_points_is_found() -> None:
+    # Found by search: the Jacobian is positive at all 20 lattice points and falls to -0.07 between them.
+    nodes, index = _element(CORNERS), np.arange(10)[:, None]
+    nodes[:, 4:] += [
+        [0.152, -0.017, 0.096, -0.093, -0.164, 0.183],
+        [-0.112, -0.049, 0.195, -0.196, -0.067, -0.009],
+        [-0.183, 0.112, 0.109, 0.119, -0.07, -0.185],
+    ]
+    assert scaled_jacobian(nodes, index)[0] <= 0
+
+
 def test_the_gate_works_on_a_whole_mesh(bar_mesh: NamedMesh) -> None:
     assert bar_mesh.quality.min() >= LEAST_QUALITY
     assert bar_mesh.quality.max() <= 1.0 + 1e-12
