@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from typing import SupportsFloat
 
 import numpy as np
 
@@ -13,6 +14,7 @@ from fem.solid.result import Check
 from fem.solid.shape import Array
 from fem.solid.stiffness import stresses
 from fem.solid.system import Solution
+from geometry.part import RemotePoint
 
 BALANCE_ALLOWED = 1e-6
 ENERGY_ALLOWED = 1e-8
@@ -21,8 +23,8 @@ LARGE_MOTION = 0.05
 source."""
 
 
-def _check(name: str, value: float, allowed: float, note: str = "") -> Check:
-    return Check(name, float(value), allowed, bool(value <= allowed), note)
+def _check(name: str, value: SupportsFloat, allowed: float, note: str = "") -> Check:
+    return Check(name, float(value), allowed, float(value) <= allowed, note)
 
 
 def strain_energies(model: SolidModel, u: Array) -> tuple[Array, Array]:
@@ -46,8 +48,9 @@ def load_checks(model: SolidModel) -> Iterator[Check]:
     x = model.mesh.nodes.T
     for load, vector in zip(model.loads.values(), model.load_vectors, strict=True):
         force, moment = vector.sum(axis=0), np.cross(x, vector).sum(axis=0)
+        about: Array | None
         if load.force_per_mass.any():
-            remote = [p for p in model.part.loads if getattr(p, "mass", 0.0) > 0]
+            remote = [p for p in model.part.loads if isinstance(p, RemotePoint)]
             declared = (model.mass + sum(p.mass for p in remote)) * load.force_per_mass
             about = np.cross(model.mass * model.centre_of_mass, load.force_per_mass) + sum(
                 (np.cross(p.mass * np.array(p.point), load.force_per_mass) for p in remote), np.zeros(3)

@@ -57,8 +57,8 @@ def clip_beyond(distance: Array, order: int) -> tuple[NDArray[np.int64], Array, 
             c, d = (i for i in range(4) if i not in (a, b))
             A, B = (np.broadcast_to(np.eye(4)[i], (here.size, 4)) for i in (a, b))
             ac, ad, bc, bd = (_meet(distance[here], i, j) for i, j in ((a, c), (a, d), (b, c), (b, d)))
-            for corners in ((A, B, bc, bd), (A, ac, bc, bd), (A, ac, ad, bd)):
-                parts.append((here, np.stack(corners, axis=1), 1.0))
+            for wedge in ((A, B, bc, bd), (A, ac, bc, bd), (A, ac, ad, bd)):
+                parts.append((here, np.stack(wedge, axis=1), 1.0))
     L, w = (tet_quadrature if size == 4 else triangle_quadrature)(order)
     owner, bary, weights = [], [], []
     for here, corners, sign in parts:

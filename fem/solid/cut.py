@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 
 from fem.solid.frame import Frame
 from fem.solid.region import inertia
-from fem.solid.shape import TET_EDGES, Array, curved_tets, tet_values, triangle_quadrature
+from fem.solid.shape import Array, curved_tets, tet_values, triangle_quadrature
 from mesher.named_mesh import NamedMesh
 
 ORDER = 4
@@ -172,7 +172,4 @@ def section_means(cut: Cut, u: Array, tets: NDArray[np.int64], frame: Frame) -> 
     mean = field @ cut.weights / cut.area
     arms = frame.axes.T @ (cut.points - cut.centroid[:, None])
     moment = np.cross(arms[None], field, axis=1) @ cut.weights
-    return mean, np.linalg.solve(inertia(arms, cut.weights), moment.T).T
-
-
-__all__ = ["TET_EDGES", "Cut", "Cutter", "interpolate", "section_means"]
+    return mean, np.asarray(np.linalg.solve(inertia(arms, cut.weights), moment.T).T, dtype=float)

@@ -67,7 +67,7 @@ class Cholesky:
         self.size = matrix.shape[0]
         if (matrix.diagonal() <= 0).any():
             raise NotPositive
-        self._factor = {"pardiso": _Pardiso, "lu": _Lu}[backend](matrix, budget)
+        self._factor: _Pardiso | _Lu = (_Pardiso if backend == "pardiso" else _Lu)(matrix, budget)
 
     def solve(self, rhs: Array) -> Array:
         """(n, k) solutions of all right-hand sides (n, k)."""

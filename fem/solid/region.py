@@ -88,7 +88,7 @@ def surface_region(mesh: NamedMesh, name: str) -> Region:
     local = local.reshape(facets.shape)
 
     def gather(values: Array) -> Array:
-        return np.bincount(local.ravel(), weights=(N @ values.T).ravel(), minlength=nodes.size)
+        return np.bincount(local.ravel(), weights=(N @ values.T).ravel(), minlength=nodes.size).astype(float)
 
     mean_normal = normals.sum(axis=(1, 2)) / area
     size = float(np.linalg.norm(mean_normal))

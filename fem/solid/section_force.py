@@ -57,9 +57,9 @@ def facet_owners(tets: NDArray[np.int64], facets: NDArray[np.int64], node_count:
 def element_loads(model: SolidModel, u: Array) -> ElementLoads:
     """Forces of each element; u (c, 3, n)."""
     mesh, material = model.mesh, model.part.material
-    c, m = u.shape[0], mesh.tets.shape[1]
+    count, m = u.shape[0], mesh.tets.shape[1]
     expansion = material.expansion * model.change
-    internal, applied = np.zeros((c, m, 10, 3)), np.zeros((c, m, 10, 3))
+    internal, applied = np.zeros((count, m, 10, 3)), np.zeros((count, m, 10, 3))
     loads = list(model.loads.values())
     body = material.density * model.factors @ np.array([load.force_per_mass for load in loads]).reshape(-1, 3)
     for group in model.groups:
@@ -80,7 +80,8 @@ def element_loads(model: SolidModel, u: Array) -> ElementLoads:
             local = (mesh.tets[:, owner][None] == piece.facets[:, None]).argmax(axis=1)  # (6, k)
             for a in range(6):
                 share = model.factors[:, k, None, None] * forces[None, :, a]
-                np.add.at(applied, (slice(None), owner, local[a]), share)
+                for c in range(share.shape[0]):
+                    np.add.at(applied[c], (owner, local[a]), share[c])
     return ElementLoads(internal, applied, tuple(owners))
 
 
@@ -126,9 +127,9 @@ def _clipped_loads(
         if not here.size:
             continue
         owner, bary, weights = clip_beyond(df[:, here].T, FORCE_ORDER)
-        nodes = mesh.nodes[:, piece.facets[:, here[owner]]]
-        x = np.einsum("iap,ap->ip", nodes, triangle_values(bary))
-        tangents = np.einsum("iap,ajp->jip", nodes, triangle_gradients(bary))
+        corners = mesh.nodes[:, piece.facets[:, here[owner]]]
+        x = np.einsum("iap,ap->ip", corners, triangle_values(bary))
+        tangents = np.einsum("iap,ajp->jip", corners, triangle_gradients(bary))
         normal = np.cross(tangents[0], tangents[1], axis=0)
         size = np.linalg.norm(normal, axis=0)
         t = piece.traction(x[:, :, None], (normal / size)[:, :, None])[:, :, 0] * (weights * size)
@@ -159,8 +160,8 @@ def section_force(
         face = local[0] <= at + tolerance if start else local[0] >= at - tolerance
         interface = face & touched.any(axis=0)
     # a reaction at an interface node belongs to the side of the plane on which the node lies
-    by_near = interface if end else interface & beyond & (not start)
-    by_far = interface & ~by_near
+    by_near: Bool = interface & (beyond | end) & np.full(n, not start)
+    by_far: Bool = interface & ~by_near
     force, moment = np.zeros((reaction.shape[0], 3)), np.zeros((reaction.shape[0], 3))
     point = frame.point(at)
     for side, chosen, sign in ((near, by_near, 1.0), (~near, by_far, -1.0)):

@@ -51,13 +51,14 @@ def solve_solid(
         not solved to the accuracy that a result needs.
     """
     timings: dict[str, float] = {}
-    clock = [perf_counter(), ""]
+    begun, running = perf_counter(), ""
 
     def stage(name: str) -> None:
+        nonlocal begun, running
         now = perf_counter()
-        if clock[1]:
-            timings[str(clock[1])] = now - float(clock[0])
-        clock[:] = [now, name]
+        if running:
+            timings[running] = now - begun
+        begun, running = now, name
         if name and progress is not None:
             progress(name)
 

@@ -175,7 +175,7 @@ def _eliminate(mesh: NamedMesh, points: Sequence[Block], rigid: Sequence[Block])
     n = mesh.nodes.shape[1]
     g = np.zeros((n, 3))
     free = np.ones(n, dtype=bool)
-    entries: list[tuple[Array, NDArray[np.int64], Array]] = []  # values, rows, columns from 0 of this block
+    entries: list[tuple[Array, NDArray[np.int64], NDArray[np.int64]]] = []  # values, rows, columns from 0 of this block
     for block in points:
         free[block.nodes] = False
         basis, shift = _null_space(block.rows, block.values, f"the supports {', '.join(sorted(set(block.supports)))}")
@@ -197,7 +197,9 @@ def _eliminate(mesh: NamedMesh, points: Sequence[Block], rigid: Sequence[Block])
         entries.append(_block_entries(block.nodes, motion @ basis, False))
     nodes = np.flatnonzero(free)
     plain = (3 * nodes[:, None] + np.arange(3)).ravel()
-    values, rows_, columns = [np.ones(plain.size)], [plain], [np.arange(plain.size)]
+    values: list[Array] = [np.ones(plain.size)]
+    rows_: list[NDArray[np.int64]] = [plain]
+    columns: list[NDArray[np.int64]] = [np.arange(plain.size)]
     count = plain.size
     for v, r, c in entries:
         values.append(v)
@@ -209,7 +211,9 @@ def _eliminate(mesh: NamedMesh, points: Sequence[Block], rigid: Sequence[Block])
     return T, g.ravel()
 
 
-def _block_entries(nodes: NDArray[np.int64], basis: Array, own: bool) -> tuple[Array, NDArray[np.int64], Array]:
+def _block_entries(
+    nodes: NDArray[np.int64], basis: Array, own: bool
+) -> tuple[Array, NDArray[np.int64], NDArray[np.int64]]:
     """Entries of basis (k, 3, f): with `own` each node has its own f unknowns, else all share f."""
     k, _, f = basis.shape
     rows = np.broadcast_to((3 * nodes[:, None] + np.arange(3))[:, :, None], basis.shape)
