@@ -76,6 +76,12 @@ def test_the_thickest_plate_chooses_the_row() -> None:
         part_from_text(thick.replace('width = "50 mm"', 'width = "85 mm"'))
 
 
+def test_the_thickest_plate_of_an_i_section_is_the_one_that_counts() -> None:
+    i_section = 'shape = "I", depth = "200 mm", width = "100 mm", web = "10 mm", flange = "45 mm"'
+    text = CANTILEVER.replace('shape = "rectangle", depth = "depth", width = "width"', i_section)
+    assert part_from_text(text).material.yield_strength == 215.0  # flange 45 mm, not web 10 mm
+
+
 def test_an_unknown_material_lists_the_known_ones() -> None:
     with pytest.raises(SpecError) as caught:
         part_from_text(CANTILEVER.replace('"S235"', '"S236"'))

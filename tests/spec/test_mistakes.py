@@ -357,6 +357,15 @@ def test_mistakes_of_every_sort_come_at_once() -> None:
     )  # fmt: skip
 
 
+def test_a_wrong_freedom_in_a_list_is_not_also_a_wrong_list() -> None:
+    assert only(problems(CAMERA_ARM, ('hold = "all"', 'hold = ["x", "w"]'))).path == "supports.wall.hold[2]"
+
+
+def test_a_stretch_starts_on_the_member() -> None:
+    patch = '[members.bar.patches.p]\nface = "top"\nfrom = "-1 mm"\nto = "9 mm"\n[supports.wall]'
+    assert only(problems(CANTILEVER, ("[supports.wall]", patch))).path == "members.bar.patches.p.from"
+
+
 def test_one_mistake_does_not_bring_others_with_it() -> None:
     # A support, a load, a member that cannot be read is not also "missing" wherever it is named.
     assert len(problems(CAMERA_ARM, ('hold = "all"', "hold = 5"))) == 1
