@@ -1,0 +1,30 @@
+"""What the part *is*: the spec, its quantities and sections, the solid, and the named regions on it.
+
+Knows CadQuery (in `geometry.solid` only); knows no mesh and no physics. Importing this package, or
+`geometry.spec`, loads neither the CAD kernel nor the mesher.
+
+`geometry.spec`    TOML or Python objects to a resolved `Part`
+`geometry.solid`   a `Part` to a `NamedSolid`
+"""
+
+from __future__ import annotations
+
+from geometry.budget import Budget
+from geometry.outline import Arc, Line, Outline
+from geometry.part import Part
+from geometry.problem import HaunchError, MeshError, Problem, RunError, SolidError, SolveError, SpecError
+
+__all__ = [
+    "Arc",
+    "Budget",
+    "HaunchError",
+    "Line",
+    "MeshError",
+    "Outline",
+    "Part",
+    "Problem",
+    "RunError",
+    "SolidError",
+    "SolveError",
+    "SpecError",
+]
