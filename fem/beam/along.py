@@ -8,8 +8,8 @@ of A^4/I_p and 1/A, which vary little.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from collections.abc import Callable, Hashable, Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.polynomial import chebyshev
@@ -20,7 +20,7 @@ from fem.beam.interpolate import between, loops, points, same_make
 from fem.beam.law import LineProperties
 from fem.beam.outlines import dims_slope, member_outline, net_section
 from fem.beam.section import OutlineIntegrals, SectionProperties, outline_integrals, sections_properties
-from fem.beam.taper_shear import tapered_shear
+from fem.beam.taper_shear import level_shear, tapered_shear
 from geometry.outline import Outline
 from geometry.part import Member
 
@@ -84,7 +84,8 @@ class Sections:
         self.member, self.length = member, length
         self._ends: dict[int, tuple[Outline, Outline] | None] = {}
         self._integrals: dict[float, OutlineIntegrals] = {}
-        self._net: dict[float, OutlineIntegrals] = {}
+        self._shear: dict[float, tuple[Array, Array]] = {}
+        self._net: dict[Hashable, OutlineIntegrals] = {}
         cuts = sorted({0.0, length, *(s.at for s in member.stations if 0.0 < s.at < length)})
         spans = list(zip(cuts[:-1], cuts[1:], strict=True))
         constant = [not any(dims_slope(member, 0.5 * (a + b)).values()) for a, b in spans]
@@ -153,9 +154,30 @@ class Sections:
 
     def both_integrals(self, x: float) -> tuple[OutlineIntegrals, OutlineIntegrals]:
         """Exact integrals without and with the cuts taken off."""
-        if x not in self._net:
-            self._net[x] = outline_integrals(net_section(self.member, x))
-        return self.integrals(x), self._net[x]
+        key = self._net_key(x)
+        if key not in self._net:
+            self._net[key] = outline_integrals(net_section(self.member, x))
+        return self.integrals(x), self._net[key]
+
+    def _net_key(self, x: float) -> Hashable:
+        """Equal where net sections are: like cuts of a prismatic stretch share theirs; a round hole is symmetric."""
+        here = [e for e in self.effects if e.start < x < e.end]
+        piece = self.piece(x)
+        if not piece.constant or len(here) != 1 or len(here[0].cuts) != 1:
+            return x
+        cut = here[0].cuts[0]
+        away = x - cut.at
+        shape = replace(cut, name="", group="", at=0.0)
+        return piece.start, shape, round(abs(away) if cut.kind == "hole" else away, 7)
+
+    def unit_shear(self, x: float) -> tuple[Array, Array]:
+        """Mean shear stress at the centroid's level for unit (V, N, M), along z and along y (see `level_shear`)."""
+        piece = self.piece(x)
+        at = 0.5 * (piece.start + piece.end) if piece.constant else x
+        if at not in self._shear:
+            step = 1e-4 * self.length
+            self._shear[at] = (level_shear(self.outline, at, step, 1), level_shear(self.outline, at, step, 0))
+        return self._shear[at]
 
     def gross(self, x: Array, side: str = "after") -> LineProperties:
         """Properties without cuts at points x (m,)."""

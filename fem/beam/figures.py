@@ -12,8 +12,9 @@ from fem.beam.actions import Actions
 from fem.beam.equations import Row, States
 from fem.beam.law import section_flexibility, torque_row
 from fem.beam.mesh import BeamMesh
+from fem.beam.outlines import dims_at
 from fem.beam.result import Diagram
-from fem.beam.section import outline_integrals
+from fem.beam.section import OutlineIntegrals, outline_integrals
 from fem.figure import Figure, FigureKey, station_place
 
 Array = NDArray[np.float64]
@@ -167,7 +168,7 @@ def fillet_volumes(mesh: BeamMesh) -> Iterator[tuple[float, Array]]:
     """Volume (mm^3) and centroid (member axes) of the material in each shoulder fillet.
 
     The corner outside a quarter circle has the area (1 - pi/4) r^2, its centroid (10 - 3 pi)/(12 - 3 pi) r from either
-    side. Taken where a rectangle or a round steps by at least the radius on opposite sides; other shapes' fillets are
+    side. Taken where a rectangle, a round or the width of an I steps by at least the radius; other shapes' fillets are
     left out of the mass.
     """
     member = mesh.member
@@ -186,12 +187,29 @@ def fillet_volumes(mesh: BeamMesh) -> Iterator[tuple[float, Array]]:
             if wide.extremes[0, 1] - narrow.extremes[0, 1] >= r * (1 - 1e-9):
                 yield float(2.0 * np.pi * (0.5 * size[1] + arm) * corner), np.array([x, narrow.yc, narrow.zc])
         elif member.section.shape == "rectangle":
+            # top, bottom, left, right
             for i, (axis, sign) in enumerate(((1, 1.0), (1, -1.0), (0, -1.0), (0, 1.0))):
                 step = sign * (wide.extremes[i, axis] - narrow.extremes[i, axis])
                 if step >= r * (1 - 1e-9):
                     point = np.array([x, narrow.yc, narrow.zc])
                     point[1 + axis] = narrow.extremes[i, axis] + sign * arm
                     yield float(corner * size[1 - axis]), point
+        elif member.section.shape == "I" and "bottom_width" not in member.section.dims:
+            centre = np.array([x, narrow.yc, narrow.zc])
+            yield from _flange_fillets(mesh, after.at, wide, narrow, r, corner, centre, arm)
+
+
+def _flange_fillets(mesh: BeamMesh, at: float, wide: OutlineIntegrals, narrow: OutlineIntegrals, r: float,
+                    corner: float, centre: Array, arm: float) -> Iterator[tuple[float, Array]]:
+    """Fillets on the tips of both flanges of an I whose width steps."""
+    flange = dims_at(mesh.member, at)["flange"]
+    for i, sign in ((2, -1.0), (3, 1.0)):
+        if sign * (wide.extremes[i, 0] - narrow.extremes[i, 0]) < r * (1 - 1e-9):
+            continue
+        for level in (narrow.extremes[0, 1] - 0.5 * flange, narrow.extremes[1, 1] + 0.5 * flange):
+            point = centre.copy()
+            point[1:] = narrow.extremes[i, 0] + sign * arm, level
+            yield float(corner * flange), point
 
 
 def _mass(mesh: BeamMesh) -> Iterator[Figure]:

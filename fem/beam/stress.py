@@ -10,7 +10,6 @@ from numpy.typing import NDArray
 
 from fem.beam.outlines import net_section
 from fem.beam.section import OutlineIntegrals, outline_integrals
-from fem.beam.taper_shear import level_shear
 from fem.figure import Figure, FigureKey, station_place
 
 if TYPE_CHECKING:
@@ -52,8 +51,8 @@ def nominal_shear(s: Solved, case: int) -> NDArray[np.float64]:
     """(21, 4) x, mean shear stress along z and y at the centroid's level, largest Saint-Venant torsion stress.
 
     MPa, on the section without cuts. The first two follow from equilibrium, the inclination of tapered sides included
-    (see `fem.beam.taper_shear`): V S/(I b) where the member is prismatic. The third is unsigned and taken from the nearest
-    analysed section of the same piece, scaled with J.
+    (see `fem.beam.taper_shear`): V S/(I b) where the member is prismatic. The third is unsigned and taken from the
+    analysed section that is nearest in area, scaled with J.
     """
     from fem.beam.figures import forces_at, station_values
 
@@ -65,9 +64,8 @@ def nominal_shear(s: Solved, case: int) -> NDArray[np.float64]:
         f = forces_at(s, float(x), case)
         o = mesh.sections.integrals(at)
         My, Mz = f[4] - o.zc * f[0], f[5] + o.yc * f[0]
-        step = 1e-4 * mesh.length
-        tau = (level_shear(mesh.sections.outline, at, step, 1, np.array([f[2], f[0], My])),
-               level_shear(mesh.sections.outline, at, step, 0, np.array([f[1], f[0], -Mz])))
+        unit_z, unit_y = mesh.sections.unit_shear(at)
+        tau = unit_z @ (f[2], f[0], My), unit_y @ (f[1], f[0], -Mz)
         p = mesh.sections.gross(np.array([at]))
         k = mesh.node(float(x))
         chi = s.states.freedoms[7 * k + 6, case] if mesh.sections.piece(at).open_thin else None

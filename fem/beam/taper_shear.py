@@ -76,16 +76,14 @@ def level_form(outline_at: Callable[[float], Outline], x: float, step: float, ax
     return form, float(middle[3])
 
 
-def level_shear(outline_at: Callable[[float], Outline], x: float, step: float, axis: int, forces: Array) -> float:
-    """Mean shear stress (MPa) at the centroid's level for (V, N, M), positive along the axis of the shear."""
+def level_shear(outline_at: Callable[[float], Outline], x: float, step: float, axis: int) -> Array:
+    """(3,) mean shear stress at the centroid's level for unit V, N and M, positive along the axis of the shear."""
     edges = polygon_edges(outline_at(x), axis)
     level = np.array([_shares(edges, np.zeros(1))[3]])
     middle, before, after = (_shares(polygon_edges(outline_at(x + d), axis), level) for d in (0.0, -step, step))
     F_x, S_x = ((n - p) / (2.0 * step) for n, p in zip(after[:2], before[:2], strict=True))
     slope = (after[3] - before[3]) / (2.0 * step)
-    V, N, M = forces
-    flow = N * F_x + (V - slope * N) * middle[1] + M * S_x
-    return float(flow[0] / middle[2][0])
+    return np.array([middle[1][0], F_x[0] - slope * middle[1][0], S_x[0]]) / middle[2][0]
 
 
 def _shares(edges: Array, levels: Array) -> tuple[Array, Array, Array, float]:

@@ -36,18 +36,20 @@ def test_a_hole_takes_its_mass_and_moves_the_centre(part, solve):
     assert r("", "centre_of_mass", "x", "") == pytest.approx((300 * whole - 200 * gone) / (whole - gone), rel=2e-6)
 
 
-@pytest.mark.parametrize("shape", ["rectangle", "round"])
+@pytest.mark.parametrize("shape", ["rectangle", "round", "I"])
 def test_a_shoulder_fillet_has_mass(part, solve, shape):
-    """Two strips of (1 - pi/4) r^2, or a ring of it (by Pappus; here by quadrature over the fillet)."""
+    """Strips of (1 - pi/4) r^2, or a ring of it (by Pappus; here by quadrature over the fillet)."""
     r, d, D = 5.0, 30.0, 50.0
-    name = "depth" if shape == "rectangle" else "diameter"
-    section = Section(shape, {"depth": D, "width": 8.0} if shape == "rectangle" else {"diameter": D})
+    name = {"rectangle": "depth", "round": "diameter", "I": "width"}[shape]
+    section = Section(shape, {"rectangle": {"depth": D, "width": 8.0}, "round": {"diameter": D},
+                              "I": {"depth": 80.0, "width": D, "web": 5.0, "flange": 8.0}}[shape])
     stations = (Station(200.0, {name: D}), Station(200.0, {name: d}, r))
     with_fillet = solve(part(section, L, [], stations=stations), plain=True)
     sharp = solve(part(section, L, [], stations=(stations[0], Station(200.0, {name: d}))), plain=True)
     s = (np.arange(100000) + 0.5) / 100000 * r
     rise = r - np.sqrt(r * r - (r - s) ** 2)
-    area = 2 * 8 * rise if shape == "rectangle" else math.pi * ((d / 2 + rise) ** 2 - d * d / 4)
+    strips = {"rectangle": 2, "I": 4}.get(shape, 0)
+    area = strips * 8 * rise if strips else math.pi * ((d / 2 + rise) ** 2 - d * d / 4)
     volume = r * area.mean()
     got = (with_fillet("", "mass", case="") - sharp("", "mass", case="")) / 7.85e-9
     assert got == pytest.approx(volume, rel=1e-5)
@@ -89,7 +91,8 @@ def test_extent(kind, length, depth, turned, half):
 
 def test_shear_of_a_rectangle(part, solve):
     """1.5 V/A at the middle, in both directions, with their signs."""
-    r = solve(part(FLAT, L, [RegionLoad("f", "arm.end", force=(0.0, 70.0, -100.0))]), plain=True).result.nominal_shear["c"]
+    tip = RegionLoad("f", "arm.end", force=(0.0, 70.0, -100.0))
+    r = solve(part(FLAT, L, [tip]), plain=True).result.nominal_shear["c"]
     assert r[10, 1:3] == pytest.approx([-150 / 480, 105 / 480], rel=1e-9)
 
 

@@ -19,10 +19,7 @@ def properties(part, solve, section):
     from fem.beam.along import Sections
 
     # the same cached analysis as the solved part uses
-    member = part(section, L).members[0]
-    solver = solve.__closure__
-    del solver
-    return Sections(member, L, 0.3).solved[0]
+    return Sections(part(section, L).members[0], L, 0.3, solve.sections).solved[0]
 
 
 def test_torsion_of_a_built_in_I(part, solve):
