@@ -80,26 +80,44 @@ def stress_picture(path: Path, part: Part, mesh: NamedMesh, case: str, von_mises
             if camera is views[0]:
                 frame.scale_line(axes, canvas)
             axes.set_title(side, fontsize=10, loc="left", color=frame.NEUTRAL, pad=16)
-            for number, peak in enumerate(peaks, start=1):
-                _mark(axes, canvas, camera.project(np.array([peak.point]))[0], str(number))
+            for spot, text in _labels(canvas, camera.project(np.array([peak.point for peak in peaks]).reshape(-1, 3))):
+                _mark(axes, spot, text)
         figure.suptitle(f"{part.title}, case {case}: von Mises stress at the surface, largest {high:.4g} MPa"
                         + ("\nnumbers: peak places of the summary" if peaks else ""), fontsize=12)
         frame.colour_bar(figure, list(panels), 0.0, high, "von Mises stress (MPa)", "viridis")
         frame.save(figure, path)
 
 
-def _mark(axes: Any, canvas: Canvas, spot: Floats, text: str) -> None:
-    """Number a point, if it is not hidden."""
+def _seen(canvas: Canvas, spot: Floats) -> bool:
+    """Whether a point (picture coordinates) is on the side that faces the viewer."""
     column, row, depth = canvas.to_pixels(spot[None])[0]
     r, c = round(float(row)), round(float(column))
     near = canvas.depth[max(r - 3, 0):r + 4, max(c - 3, 0):c + 4]
     near = near[np.isfinite(near)]
-    if near.size == 0 or depth > near.max() + 4 * canvas.pixel:
-        return
+    return bool(near.size > 0 and depth <= near.max() + 4 * canvas.pixel)
+
+
+def _labels(canvas: Canvas, spots: Floats) -> list[tuple[Floats, str]]:
+    """Numbers of the points (n, 3) that are seen, one label for those too close to be told apart."""
+    left, right, _, _ = canvas.extent
+    groups: list[tuple[Floats, list[int]]] = []
+    for number, spot in enumerate(spots, start=1):
+        if not _seen(canvas, spot):
+            continue
+        close = next((group for group in groups if np.hypot(*(group[0] - spot)[:2]) < 0.03 * (right - left)), None)
+        if close is None:
+            groups.append((spot, [number]))
+        else:
+            close[1].append(number)
+    return [(spot, " ".join(map(str, numbers))) for spot, numbers in groups]
+
+
+def _mark(axes: Any, spot: Floats, text: str) -> None:
+    """Label a point beside it."""
     from matplotlib.patheffects import withStroke
 
     axes.annotate(
-        text, spot[:2], (14, 14), textcoords="offset points", fontsize=10, ha="center", va="center", zorder=6,
-        bbox={"boxstyle": "circle,pad=0.25", "fc": "white", "ec": "#222222", "lw": 0.9},
+        text, spot[:2], (16, 16), textcoords="offset points", fontsize=10, ha="center", va="center", zorder=6,
+        bbox={"boxstyle": "round,pad=0.3,rounding_size=0.7", "fc": "white", "ec": "#222222", "lw": 0.9},
         arrowprops={"arrowstyle": "-", "color": "#222222", "lw": 0.9, "shrinkB": 0,
                     "path_effects": [withStroke(linewidth=2.5, foreground="white")]})

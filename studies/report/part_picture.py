@@ -44,8 +44,13 @@ def part_picture(path: Path, part: Part, mesh: NamedMesh) -> None:
         frame.show(axes, canvas)
         frame.triad(axes, camera)
         frame.scale_line(axes, canvas)
+        named: set[str] = set()
         for load, arrow in arrows:
-            _draw_arrow(axes, camera, load, arrow, reach, mesh)
+            spread = isinstance(load, LineLoad | Pressure)  # several arrows for one load: named once
+            _draw_arrow(axes, camera, load, arrow, reach, mesh, named=not (spread and load.name in named))
+            named.add(load.name)
+        for support in part.supports:
+            _name_support(axes, camera, support, mesh)
         _legend(figure, part)
         figure.suptitle(f"{part.title}: supports and loads (arrow length is not to scale)", fontsize=12)
         frame.save(figure, path)
@@ -174,7 +179,8 @@ def _facet_colours(part: Part, mesh: NamedMesh) -> Floats:
     return colours
 
 
-def _draw_arrow(axes: Any, camera: Camera, load: Load, arrow: Arrow, reach: float, mesh: NamedMesh) -> None:
+def _draw_arrow(axes: Any, camera: Camera, load: Load, arrow: Arrow, reach: float, mesh: NamedMesh,
+                named: bool) -> None:
     foot, way, turns = arrow
     share = 0.45 if isinstance(load, LineLoad | Pressure) else 1.0
     tail = foot - share * reach * _unit(way)
@@ -192,11 +198,23 @@ def _draw_arrow(axes: Any, camera: Camera, load: Load, arrow: Arrow, reach: floa
         spot = camera.project(np.array([load.point, _middle(mesh, load.on)]))
         axes.plot(spot[:, 0], spot[:, 1], ls="--", lw=1.2, color=frame.NEUTRAL, zorder=5)
         axes.plot(*spot[0, :2], marker="D", color=frame.LOAD, ms=6, zorder=7)
+    if not named:
+        return
     back = (start - head) / max(float(np.linalg.norm(start - head)), 1e-30)
     axes.annotate(load.name, start, 9 * back, textcoords="offset points", fontsize=10, color=colour, zorder=7,
                   ha="right" if back[0] < -0.5 else "left" if back[0] > 0.5 else "center",
                   va="top" if back[1] < -0.5 else "bottom" if back[1] > 0.5 else "center",
                   bbox={"fc": "white", "ec": "none", "alpha": 0.75, "pad": 0.8})
+
+
+def _name_support(axes: Any, camera: Camera, support: Support, mesh: NamedMesh) -> None:
+    """The support's name outside the part, with a line to its region, which may look away from the viewer."""
+    spot, middle = camera.project(np.array([_middle(mesh, support.on), mesh.nodes.mean(axis=1)]))[:, :2]
+    left = spot[0] <= middle[0]
+    axes.annotate(support.name, spot, (-42 if left else 42, -34), textcoords="offset points", fontsize=10, zorder=7,
+                  color=frame.SUPPORT, ha="right" if left else "left", va="top",
+                  bbox={"fc": "white", "ec": "none", "alpha": 0.75, "pad": 0.8},
+                  arrowprops={"arrowstyle": "-", "color": frame.SUPPORT, "lw": 1.2, "shrinkB": 0})
 
 
 def _legend(figure: Any, part: Part) -> None:

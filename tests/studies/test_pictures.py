@@ -145,3 +145,15 @@ def test_the_summary_tells_signed_causes_from_allowances(helpers: ModuleType) ->
     row = next(line for line in text.splitlines() if line.startswith("| displacement z at arm.end"))
     assert "the hole (0.0125 mm)" in row and "~ explained" in row and "mesh: band" not in row
     assert "- displacement: mesh: band 1 %" in text.splitlines()
+
+
+def test_close_peak_places_share_a_label_and_hidden_ones_have_none(helpers: ModuleType) -> None:
+    from studies.report.fields import _labels
+    from studies.report.scene import draw
+
+    mesh, camera = helpers.make_mesh(), view_of(helpers.make_part())
+    flat = camera.project(mesh.nodes.T)
+    canvas = Canvas.around(flat, 400)
+    draw(mesh, Surface.of(mesh), mesh.nodes.T, camera, canvas)
+    front, beside, far, behind = [100.0, -10.0, 0.0], [103.0, -10.0, 1.0], [20.0, -10.0, 0.0], [100.0, 10.0, 0.0]
+    assert [text for _, text in _labels(canvas, camera.project(np.array([front, behind, beside, far])))] == ["1 3", "4"]
