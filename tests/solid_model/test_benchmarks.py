@@ -143,6 +143,7 @@ def test_b26_thermal() -> None:
     assert np.abs(result.stress[0, 1:]).max() < 1e-8
     assert value(result, "arm@50", "section_force", "N", axes="member") == pytest.approx(-126.0 * 400, rel=1e-9)
     assert value(result, "end", "reaction_force", "x") == pytest.approx(-126.0 * 400, rel=1e-9)
+    assert [c for c in result.checks if not c.ok] == []
     # free to grow: no stress, growth alpha dT L
     free = [Support(s, f"arm.{s}", {"normal": 0.0}) for s in ("start", "left", "bottom")]
     result = solve_solid(
