@@ -31,6 +31,13 @@ class Cause(NamedTuple):
     predicted: float
 
 
+class Reason(NamedTuple):
+    """A reason why the two models may differ either way, and how much of the band it makes (unit of the pair)."""
+
+    text: str
+    size: float
+
+
 @dataclass(frozen=True, slots=True)
 class Pair:
     """One figure from both models.
@@ -44,11 +51,13 @@ class Pair:
     scale
         What `difference` and `band` are measured against (largest value of its kind in the case), in `unit`.
     band
-        Allowed remainder after the causes, in `unit`.
+        Allowed remainder after the causes, in `unit`: the sum of `reasons`.
     causes
         Why a difference is expected, with its predicted signed size.
     look_at
         Where the likely slip is, for a suspicious pair.
+    reasons
+        What the band is made of.
     """
 
     key: FigureKey
@@ -61,6 +70,7 @@ class Pair:
     causes: tuple[Cause, ...]
     judgement: JudgementWord
     look_at: str = ""
+    reasons: tuple[Reason, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -15,10 +15,11 @@ from dataclasses import dataclass
 from typing import NamedTuple
 
 from fem.figure import FigureKey
+from geometry.part import TemperatureLoad
 from studies.judge.context import Context
 
 
-class Reason(NamedTuple):
+class Share(NamedTuple):
     """One contribution to a band: why, and how much of the scale."""
 
     text: str
@@ -30,48 +31,53 @@ class CaseFacts:
     """What one case adds to the facts about the part.
 
     `shear_share`: share of the beam's largest deflection that is shear. `twist_share`: displacement that
-    the largest twist gives at the section's edge, over the largest displacement (at most 1).
+    the largest twist gives at the section's edge, over the largest displacement (at most 1). `acting`: names
+    of the loads with a factor other than 0.
     """
 
     shear_share: float
     twist_share: float
     open_thin: bool
     thin_walled: bool
+    acting: frozenset[str] = frozenset()
 
 
-def mesh_error(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+def mesh_error(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
     # Displacements converge with the square of the stress error (Strang & Fix 1973: twice the order), so a
     # quarter of the requested stress accuracy is generous.
-    yield Reason("discretisation of the solid", 0.25 * ctx.part.accuracy)
+    yield Share("discretisation of the solid", 0.25 * ctx.part.accuracy)
 
 
-def end_effects(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+def end_effects(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
     # MacNeal & Harder 1985 (straight cantilever): at L/h = 30 the converged clamped solid is 0.18 % stiffer
-    # than the beam, that is 0.053 h/L. Thin walls distort over several depths; ten times as much, set by trial.
-    for zone in ctx.held_zones:
+    # than the beam, that is 0.053 h/L; the band has 0.06. A thin-walled section adds the shape change of its
+    # walls near the end: twice as much when the end face is held point by point or rigidly (example
+    # parts: up to 0.04), and much more when only its mean is held, for then the section is free to change its
+    # shape there (box rail with slots: 0.5). Away from an end, or on a long face, the part gives way locally.
+    for support, zone in zip(ctx.part.supports, ctx.held_zones, strict=True):
         short = zone.end - zone.start < 0.05 * ctx.length
         at_end = zone.start < 1e-6 * ctx.length or zone.end > (1 - 1e-6) * ctx.length
-        factor = 0.06 if short and at_end else 0.5
+        factor = 0.06 if short and at_end else 0.2
         if facts.thin_walled:
-            factor = max(0.5, factor)
-        yield Reason(f"end effect at {zone.what}", factor / ctx.slenderness)
+            factor = max(factor, 0.5 if support.coupling == "average" else 0.12)
+        yield Share(f"end effect at {zone.what}", factor / ctx.slenderness)
 
 
-def shear_definition(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+def shear_definition(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
     # Cowper 1966, Gruttmann & Wagner 2001 and Hutchinson 2001 differ by up to 10 % for one shape.
-    yield Reason("definition of the shear area", 0.10 * facts.shear_share)
+    yield Share("definition of the shear area", 0.10 * facts.shear_share)
 
 
-def cuts(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
-    # A cut weakens its own stretch beyond the net section by a part of the stretch's share (set by trial).
+def cuts(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
+    # A cut weakens its own stretch beyond the net section by a part of that stretch's share (set by trial).
     width, depth = ctx.size
     for cut in ctx.member.cuts:
         across = depth if cut.axis == "y" else width
-        share = min(cut.length / ctx.length, 1.0) * min(cut.depth / across, 1.0)
-        yield Reason(f"cut {cut.name} beyond its net section", share)
+        share = 0.5 * min(cut.length / ctx.length, 1.0) * min(cut.depth / across, 1.0)
+        yield Share(f"cut {cut.name} beyond its net section", share)
 
 
-def taper(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+def taper(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
     # Wedge solution of plane elasticity (Timoshenko & Goodier art. 39): the plain formula errs with the
     # square of the half angle. The full slope of the depth is taken.
     stations = ctx.member.stations
@@ -84,35 +90,47 @@ def taper(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
                     slope = max(slope, abs(station.dims[name] - v0) / (station.at - x0))
                     x0, v0 = station.at, station.dims[name]
         if slope > 0:
-            yield Reason("inclined faces of the taper", slope**2)
+            yield Share("inclined faces of the taper", slope**2)
 
 
-def steps(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
-    # At a step the wider part is not at once fully engaged: about a quarter of the step's height of it is
-    # lost on each side (common practice, no source).
-    for zone in ctx.step_zones:
-        yield Reason(f"load path at the {zone.what}", 0.25 * max(ctx.size) / ctx.length)
+def steps(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
+    # At a step the wider part is not at once fully engaged: about a quarter of its height is lost on its side
+    # (common practice, no source); the height is half the change of the largest dimension.
+    for zone, height in zip(ctx.step_zones, ctx.step_heights, strict=True):
+        yield Share(f"load path at the {zone.what}", 0.5 * height / ctx.length)
 
 
-def torsion(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
+def torsion(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
     if facts.twist_share > 0.01:
         size = 0.05 if facts.open_thin else 0.02  # set by trial
-        yield Reason("torsion constant and restrained warping", size * facts.twist_share)
+        yield Share("torsion constant and restrained warping", size * facts.twist_share)
 
 
-def local_loads(ctx: Context, facts: CaseFacts) -> Iterator[Reason]:
-    # A load on a thin wall bends the wall and distorts the section (set by trial).
+def local_loads(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
+    # A load on a thin wall bends the wall and distorts the section (set by trial; on an end face, spread over the
+    # whole section, less than on a part of a wall).
     if facts.thin_walled:
-        for zone in ctx.loaded_zones:
-            yield Reason(f"wall bending under {zone.what}", 0.25 / ctx.slenderness)
+        for name, zone in ctx.load_zones.items():
+            if name in facts.acting:
+                at_end = zone.end - zone.start < 1e-6 * ctx.length
+                yield Share(f"wall bending under {zone.what}", (0.05 if at_end else 0.15) / ctx.slenderness)
 
 
-DISPLACEMENT: tuple[Callable[[Context, CaseFacts], Iterator[Reason]], ...] = (
-    mesh_error, end_effects, shear_definition, cuts, taper, steps, torsion, local_loads,
+def heat(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
+    # A region held point by point cannot grow sideways; over about half a depth the part next to it is strained
+    # by the expansion that it is denied (Saint-Venant), of which Poisson's ratio goes into length.
+    if any(isinstance(load, TemperatureLoad) and load.name in facts.acting for load in ctx.part.loads):
+        for support, zone in zip(ctx.part.supports, ctx.held_zones, strict=True):
+            if support.coupling != "average":
+                yield Share(f"sideways expansion denied at {zone.what}", 0.5 * ctx.part.material.nu / ctx.slenderness)
+
+
+DISPLACEMENT: tuple[Callable[[Context, CaseFacts], Iterator[Share]], ...] = (
+    mesh_error, end_effects, shear_definition, cuts, taper, steps, torsion, local_loads, heat,
 )
 
 
-def reasons(ctx: Context, facts: CaseFacts, key: FigureKey) -> Sequence[Reason]:
+def reasons(ctx: Context, facts: CaseFacts, key: FigureKey) -> Sequence[Share]:
     """Reasons that widen the band of one figure, as fractions of its scale."""
     match key.quantity:
         case "displacement" | "rotation":
@@ -122,21 +140,21 @@ def reasons(ctx: Context, facts: CaseFacts, key: FigureKey) -> Sequence[Reason]:
         case "reaction_force" | "reaction_moment" | "section_force" | "section_moment":
             if ctx.determinate:
                 # Equilibrium alone decides; the rest is the cut along element faces and rounding.
-                return [Reason("equilibrium of a determinate part", 2e-3)]
+                return [Share("equilibrium of a determinate part", 2e-3)]
             found = [r for rule in DISPLACEMENT for r in rule(ctx, facts)]
         case "nominal_stress":
             # ASME V&V 10.1 style practice: 2 % one depth from supports, loads and steps, plus the stated accuracy.
-            found = [Reason("plane sections", 0.02), Reason("discretisation of the solid", ctx.part.accuracy),
+            found = [Share("plane sections", 0.02), Share("discretisation of the solid", ctx.part.accuracy),
                      *taper(ctx, facts), *torsion(ctx, facts)]
             if facts.thin_walled:
-                found.append(Reason("shear lag and wall bending in thin walls", 0.25 / ctx.slenderness))
+                found.append(Share("shear lag and wall bending in thin walls", 0.1 / ctx.slenderness))
         case "notch_stress":
-            found = [Reason("discretisation of the solid", ctx.part.accuracy), Reason("nominal stress", 0.02)]
+            found = [Share("discretisation of the solid", ctx.part.accuracy), Share("nominal stress", 0.02)]
         case "mass" | "centre_of_mass":
             # Beam: integrated areas; rims' radii and cuts in inclined walls are not followed exactly.
-            found = [Reason("integration along the member", 1e-3)]
-            found += [Reason(f"edge radius {r.radius:g} mm", 2e-3) for r in ctx.member.edge_radii]
-            found += [Reason(f"cut {c.name} in a curved or inclined wall", 5e-4) for c in ctx.member.cuts]
+            found = [Share("integration along the member", 1e-3)]
+            found += [Share(f"edge radius {r.radius:g} mm", 2e-3) for r in ctx.member.edge_radii]
+            found += [Share(f"cut {c.name} in a curved or inclined wall", 5e-4) for c in ctx.member.cuts]
         case _:
             found = []
     return found

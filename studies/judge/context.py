@@ -103,17 +103,21 @@ class Context:
             if isinstance(load, LineLoad | BodyLoad):
                 continue  # spread along the member: no disturbance of its own
             if isinstance(load, RegionLoad | Pressure | BearingLoad | RemotePoint):
-                yield load.on, f"load {load.name}"
+                yield load.on, load.name
 
     @cached_property
     def held_zones(self) -> tuple[Zone, ...]:
         return tuple(self.zone(s.on, f"support {s.name}") for s in self.part.supports)
 
     @cached_property
+    def load_zones(self) -> dict[str, Zone]:
+        """Stretch where each concentrated load enters, by its name; faces along most of the member do not count."""
+        zones = {name: self.zone(region, f"load {name}") for region, name in self._load_regions()}
+        return {name: z for name, z in zones.items() if z.end - z.start < 0.5 * self.length}
+
+    @property
     def loaded_zones(self) -> tuple[Zone, ...]:
-        """Stretches where a concentrated load enters; faces along most of the member do not count."""
-        zones = (self.zone(region, what) for region, what in self._load_regions())
-        return tuple(z for z in zones if z.end - z.start < 0.5 * self.length)
+        return tuple(self.load_zones.values())
 
     @cached_property
     def cut_zones(self) -> tuple[Zone, ...]:
@@ -124,10 +128,23 @@ class Context:
         return tuple(zones)
 
     @cached_property
+    def _steps(self) -> tuple[tuple[Zone, float], ...]:
+        found = []
+        for a, b in pairwise(self.member.stations):
+            if abs(a.at - b.at) < 1e-9:
+                dims = {**self.member.section.dims, **a.dims}
+                jump = max((abs(v - dims.get(k, v)) for k, v in b.dims.items()), default=0.0)
+                found.append((Zone(a.at, a.at, f"step at {a.at:g} mm"), 0.5 * jump))
+        return tuple(found)
+
+    @property
     def step_zones(self) -> tuple[Zone, ...]:
-        stations = self.member.stations
-        pairs = pairwise(stations)
-        return tuple(Zone(a.at, a.at, f"step at {a.at:g} mm") for a, b in pairs if abs(a.at - b.at) < 1e-9)
+        return tuple(zone for zone, _ in self._steps)
+
+    @property
+    def step_heights(self) -> tuple[float, ...]:
+        """Half the largest change of a dimension at each step, mm."""
+        return tuple(height for _, height in self._steps)
 
     def disturbed_by(self, at: float, reach: float | None = None) -> tuple[str, ...]:
         """What lies within reach of a station, so that plane-section stresses are not expected there."""

@@ -62,6 +62,7 @@ def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, figures: Table
         twist_share=min(twist / largest, 1.0) if largest > 0 else 0.0,
         open_thin=thin and ctx.member.section.shape in OPEN_SHAPES,
         thin_walled=thin,
+        acting=frozenset(name for c in ctx.part.cases if c.name == case for name, f in c.factors.items() if f),
     )
 
 

@@ -7,13 +7,11 @@ from collections.abc import Iterable, Iterator, Mapping, Sequence
 import numpy as np
 
 from fem.figure import Figure, FigureKey
-from studies.check.result import Cause, JudgementWord, Pair
-from studies.judge.bands import CaseFacts, Reason, reasons
+from studies.check.result import Cause, JudgementWord, Pair, Reason
+from studies.judge.bands import CaseFacts, Share, reasons
 from studies.judge.context import Context
 
 Table = Mapping[FigureKey, Figure]
-
-_LENGTH_LIKE = {"rotation", "section_moment", "reaction_moment"}
 
 
 def table(figures: Iterable[Figure]) -> dict[FigureKey, Figure]:
@@ -125,15 +123,17 @@ def _judged(ctx: Context, key: FigureKey, solid: Figure, beam: Figure | None, sc
         return Pair(key, solid.value, beam.value, solid.unit, difference, scale, 0.0, (), "no beam value",
                     f"no plane section here: {disturbed}")
     case_facts = facts.get(key.case, CaseFacts(0.0, 0.0, False, False))
-    why = list(reasons(ctx, case_facts, key))
+    shares = list(reasons(ctx, case_facts, key))
     if key.quantity == "notch_stress" and beam.error is not None:
         fit = abs(beam.error) / scale if scale > 0 else 0.0
-        why.append(Reason(f"fit of the stress concentration factor ({beam.note})", fit))
-    band = sum(r.fraction for r in why) * scale + sum(left for _, left in causes)
-    listed = (*(c for c, _ in causes), *(Cause(f"{r.text}: band ± {100 * r.fraction:.2g} %", 0.0) for r in why))
-    word = _word(ctx, key, difference, band, sum(c.predicted for c, _ in causes), scale)
+        shares.append(Share(f"fit of the stress concentration factor ({beam.note})", fit))
+    why = tuple(Reason(s.text, s.fraction * scale) for s in shares)
+    why += tuple(Reason(f"what is left open by: {cause.text}", left) for cause, left in causes if left > 0)
+    signed = tuple(cause for cause, _ in causes if cause.predicted)
+    band = sum(r.size for r in why)
+    word = _word(ctx, key, difference, band, sum(c.predicted for c in signed), scale)
     look = look_at(key, solid.value, beam.value, ctx) if word == "suspicious" else ""
-    return Pair(key, solid.value, beam.value, solid.unit, difference, scale, band, listed, word, look)
+    return Pair(key, solid.value, beam.value, solid.unit, difference, scale, band, signed, word, look, why)
 
 
 def _word(ctx: Context, key: FigureKey, difference: float, band: float, predicted: float,

@@ -90,8 +90,7 @@ def _limits(result: CheckResult) -> list[str]:
 
 
 def _pair_row(pair: Pair) -> tuple[str, ...]:
-    causes = "; ".join(f"{cause.text} ({readable(cause.predicted, pair.unit)})" for cause in pair.causes
-                       if cause.predicted)
+    causes = "; ".join(f"{cause.text} ({readable(cause.predicted, pair.unit)})" for cause in pair.causes)
     return (name_of(pair.key), shown_unit(pair.unit), number(pair.solid, pair.unit), number(pair.beam, pair.unit),
             number(pair.difference, pair.unit), number(pair.band, pair.unit) if pair.difference is not None else "-",
             marked(pair.judgement), causes)
@@ -109,10 +108,10 @@ def _case(result: CheckResult, case: str) -> list[str]:
 
 
 def _allowances(result: CheckResult, case: str) -> list[str]:
-    """What the allowances are made of (causes without a signed size), each set once for each kind of figure."""
+    """What the allowances are made of, as shares of the scale; each set once with the kinds of figure it serves."""
     sets: dict[str, dict[str, None]] = {}
     for pair in result.pairs:
-        reasons = "; ".join(cause.text for cause in pair.causes if not cause.predicted)
+        reasons = "; ".join(f"{r.text} {100 * r.size / pair.scale:.2g} %" for r in pair.reasons if pair.scale > 0)
         if pair.key.case == case and reasons:
             sets.setdefault(reasons, {})[pair.key.quantity.replace("_", " ")] = None
     lines = [f"- {', '.join(kinds)}: {reasons}" for reasons, kinds in sets.items()]

@@ -132,19 +132,20 @@ def test_tables_pick_the_largest_and_the_worst(helpers: ModuleType, tmp_path: Pa
 
 def test_the_summary_tells_signed_causes_from_allowances(helpers: ModuleType) -> None:
     import studies.check.run as run
-    from studies.check.result import Cause
+    from studies.check.result import Cause, Reason
     from studies.check.stages import Clock
     from studies.report.summary import summary
 
     models = helpers.make_models()
     result = run.make_result(models, helpers.make_judgement(models), "arm.toml", "t", Clock())
     at = next(i for i, pair in enumerate(result.pairs) if pair.key.place == "arm.end")
-    causes = (Cause("the hole", 0.0125), Cause("mesh: band 1 %", 0.0))
-    pair = dataclasses.replace(result.pairs[at], causes=causes, judgement="explained")
+    given = result.pairs[at]
+    pair = dataclasses.replace(given, causes=(Cause("the hole", 0.0125),), judgement="explained",
+                               reasons=(Reason("mesh", 0.01 * given.scale),))
     text = summary(dataclasses.replace(result, pairs=(*result.pairs[:at], pair, *result.pairs[at + 1:])))
     row = next(line for line in text.splitlines() if line.startswith("| displacement z at arm.end"))
-    assert "the hole (0.0125 mm)" in row and "~ explained" in row and "mesh: band" not in row
-    assert "- displacement: mesh: band 1 %" in text.splitlines()
+    assert "the hole (0.0125 mm)" in row and "~ explained" in row and "mesh" not in row
+    assert "- displacement: mesh 1 %" in text.splitlines()
 
 
 def test_close_peak_places_share_a_label_and_hidden_ones_have_none(helpers: ModuleType) -> None:
