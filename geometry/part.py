@@ -6,7 +6,8 @@ dimension, no area, no load resultant. The solid model and the beam model each w
 Axes. Global axes are right-handed. A member has its own: x from `Member.start` to `Member.end`, z is
 the direction of the section's depth (towards `Member.up`), y = z cross x. A section is drawn in (y, z)
 with y to the right and z up, as seen looking against x (from the far end back to the start).
-Angles are in radian. A positive rotation or moment turns by the right-hand rule about its axis.
+Angles are in radian. A positive rotation or moment turns by the right-hand rule about its axis (only
+`Cut.turned` has a rule of its own).
 """
 
 from __future__ import annotations
@@ -99,7 +100,9 @@ class Cut:
         Radius of the inner corners of an opening or a notch. A notch whose radius is half its length
         ends in a half circle.
     turned
-        Angle from the member's x to the long side of a slot or opening, rad.
+        Angle from the member's x to the long side of a slot or opening, rad: positive from x towards z for
+        axis y (seen from the left, the far end goes up) and from x towards y for axis z. For axis y this is
+        against the right-hand rule about member y.
     edge
         For a notch: the side it starts from, ``top``/``bottom`` (axis y) or ``left``/``right`` (axis z).
     """

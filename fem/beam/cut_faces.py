@@ -46,9 +46,7 @@ def _one(cut: Cut, sections: Sections) -> tuple[Array, Array]:
 
 def _rim(cut: Cut, sections: Sections) -> tuple[Array, Array]:
     """Points (k, 2) (x, coordinate across) on the rim of the cut and their arc lengths (k,), mm."""
-    # about member z the right hand takes x towards y, about member y it takes x towards -z
-    turn = cut.turned if cut.axis == "z" else -cut.turned
-    c, s = np.cos(turn), np.sin(turn)
+    c, s = np.cos(cut.turned), np.sin(cut.turned)
     if cut.kind == "hole":
         a = (np.arange(32) + 0.5) * 2 * np.pi / 32
         return (np.column_stack([cut.at + 0.5 * cut.length * np.cos(a), cut.offset + 0.5 * cut.length * np.sin(a)]),

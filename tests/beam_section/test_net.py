@@ -68,13 +68,14 @@ def test_notches_are_as_deep_as_their_shape_at_the_station():
     assert net.yc < 0
 
 
-def test_the_right_hand_rule_turns_a_slot():
+def test_a_slot_turns_from_x_towards_the_other_axis():
+    """See `geometry.part.Cut`: positive from x towards y (axis z) and from x towards z (axis y)."""
     slot = {"kind": "slot", "at": 100.0, "offset": 0.0, "length": 40.0, "depth": 8.0, "turned": math.radians(30)}
     low, high = chord(Cut("s", "s", axis="z", through="all", **slot), 110.0)
     assert (low + high) / 2 == pytest.approx(10 * math.tan(math.radians(30)))
     assert high - low == pytest.approx(8 / math.cos(math.radians(30)))
     low, high = chord(Cut("s", "s", axis="y", through="all", **slot), 110.0)
-    assert (low + high) / 2 == pytest.approx(-10 * math.tan(math.radians(30)))
+    assert (low + high) / 2 == pytest.approx(10 * math.tan(math.radians(30)))
     assert chord(Cut("s", "s", axis="y", through="all", **slot), 100 + 16 * math.cos(math.radians(30)) + 4.001) is None
 
 

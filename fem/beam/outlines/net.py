@@ -43,7 +43,7 @@ def net_section(
 def chord(cut: Cut, x: float) -> tuple[float, float] | None:
     """Range across the member (z for axis y, y for axis z, mm from the line) that a cut takes at `x`; None beside it.
 
-    Not for notches. A positive `turned` follows the right-hand rule about the cut's axis.
+    Not for notches. A positive `turned` takes the long side from x towards the coordinate across.
     """
     if cut.kind == "hole" or (cut.kind == "slot" and cut.length - cut.depth < 1e-9 * cut.length):
         profile = Outline(circle(cut.depth / 2))
@@ -51,8 +51,7 @@ def chord(cut: Cut, x: float) -> tuple[float, float] | None:
         u, v = cut.length / 2, cut.depth / 2
         r = v if cut.kind == "slot" else cut.corner_radius
         profile = Outline(rounded_polygon([Corner(-u, -v, r), Corner(u, -v, r), Corner(u, v, r), Corner(-u, v, r)]))
-        # about member y the right hand takes x towards -z, about member z it takes x towards y
-        profile = turned(profile, cut.turned if cut.axis == "z" else -cut.turned)
+        profile = turned(profile, cut.turned)
     across = [p[1] for edge in profile.outer for p in crossings(edge, 0, x - cut.at)]
     if not across or max(across) - min(across) <= 1e-12 * cut.depth:
         return None

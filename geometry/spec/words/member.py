@@ -179,7 +179,7 @@ class SlotSpec(AcrossSpec):
 
     length: Size = Field(description="overall")
     width: Size = Field(description="its width")
-    turned: Angle = Field("0 deg", description="from the member's x to the slot's long side")
+    turned: Angle = Field("0 deg", description="from the member's x towards z (along y) or y (along z)")
 
 
 class OpeningSpec(AcrossSpec):
@@ -188,7 +188,7 @@ class OpeningSpec(AcrossSpec):
     length: Size = Field(description="along the member")
     height: Size = Field(description="across it")
     corner_radius: Radius = Field("0 mm", description="of its corners")
-    turned: Angle = Field("0 deg", description="from the member's x to the opening's length")
+    turned: Angle = Field("0 deg", description="from the member's x towards z (along y) or y (along z)")
 
 
 class NotchSpec(CutSpec):
