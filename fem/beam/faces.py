@@ -18,12 +18,13 @@ OUTWARD = {"top": (0.0, 1.0), "bottom": (0.0, -1.0), "left": (-1.0, 0.0), "right
 FACES = (*OUTWARD, "surface", "bore", "web_left", "web_right")
 
 
-def face_edges(outline: Outline, face: str) -> list[tuple[int, int]]:
+def face_edges(outline: Outline, face: str, tips: bool = False) -> list[tuple[int, int]]:
     """(loop, edge) of each edge of a face; loop 0 is the outer one.
 
     ``top``: the straight edges at the highest z whose outward normal points up, and so on; ``surface``: the whole
-    outer loop; ``bore``: the inner loops; ``web_left``, ``web_right``: the longest straight upright edge that looks
-    that way and does not lie at the section's extreme, or, where there is none (the back of a channel), at it.
+    outer loop; ``bore``: the inner loops; ``web_left``, ``web_right``: the straight upright edge that looks that way
+    and lies deepest inside (the back of a channel is its web's left side). With `tips`, ``left`` and ``right`` are the
+    tips of both flanges, whichever reaches farther.
     """
     loops = (outline.outer, *outline.inner)
     if face == "surface":
@@ -32,16 +33,18 @@ def face_edges(outline: Outline, face: str) -> list[tuple[int, int]]:
         return [(k, i) for k, loop in enumerate(loops) if k for i in range(len(loop))]
     points = np.array([e.start for e in outline.outer])
     size = float(np.ptp(points, axis=0).max())
-    if face in OUTWARD:
+    if face in OUTWARD and not (tips and face in ("left", "right")):
         n = np.array(OUTWARD[face])
         extreme = float((points @ n).max())
         return [(0, i) for i, e in enumerate(outline.outer) if isinstance(e, Line)
                 and _normal(e) @ n > 0.999 and abs(np.array(e.start) @ n - extreme) < 1e-6 * size]
-    n = np.array((-1.0, 0.0) if face == "web_left" else (1.0, 0.0))
-    upright = [(i, e) for i, e in enumerate(outline.outer) if isinstance(e, Line) and _normal(e) @ n > 0.999]
-    inside = [(i, e) for i, e in upright if abs(np.array(e.start) @ n - float((points @ n).max())) > 1e-6 * size]
-    found = sorted(inside or upright, key=lambda p: math.dist(p[1].start, p[1].end))
-    return [(0, found[-1][0])] if found else []
+    n = np.array((-1.0, 0.0) if face.endswith("left") else (1.0, 0.0))
+    upright = [i for i, e in enumerate(outline.outer) if isinstance(e, Line) and e.start != e.end
+               and _normal(e) @ n > 0.999]
+    inmost = min(upright, key=lambda i: float(points[i] @ n), default=-1)
+    if face in OUTWARD:
+        return [(0, i) for i in upright if i != inmost]
+    return [(0, inmost)] if upright else []
 
 
 def strip(

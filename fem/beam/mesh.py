@@ -163,7 +163,7 @@ class BeamMesh:
         a, b = float(self.x[e]), float(self.x[e + 1])
         inset = 1e-6 * (b - a)
         before, after = self.sections.outline(a + inset), self.sections.outline(b - inset)
-        edges = face_edges(before, face)
+        edges = face_edges(before, face, tips=self.member.section.shape == "I")
         if not edges:
             raise RunError("beam", f"region {name}: a {self.member.section.shape} has no plane face {face}")
         return strip(x, (x - a - inset) / (b - a - 2 * inset), before, after, b - a - 2 * inset, edges, across)
