@@ -197,6 +197,8 @@ class CheckResult:
         What only the solid model gives.
     started
         UTC, ISO 8601, seconds.
+    notes
+        What the beam model does not give, and why. Sentences.
     files
         Names of the files of the run folder.
     """
@@ -221,6 +223,7 @@ class CheckResult:
     stages: tuple[Stage, ...]
     versions: Mapping[str, str]
     started: str
+    notes: tuple[str, ...] = ()
     files: tuple[str, ...] = ()
     format: str = FORMAT
 

@@ -108,7 +108,8 @@ def build_models(part: Part, budget: Budget, clock: Clock) -> Models:
     with clock.stage("solve"):
         from fem.solid import solve_solid
 
-        solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text))
+        solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text),
+                            sharp_edges=[(edge.label, edge.points) for edge in named_solid.sharp_edges])
     return Models(part, named_solid, mesh, beam, solid)
 
 
@@ -129,7 +130,7 @@ def make_result(models: Models, verdict: Judgement, name: str, started: str, clo
         solid_figures=tuple(solid.figures), beam_figures=tuple(models.beam.figures),
         pairs=tuple(verdict.pairs), limits=tuple(verdict.limits), checks=tuple(verdict.checks),
         peaks=tuple(verdict.peaks), case_stress=_case_stress(solid), denting=_denting(solid),
-        cautions=tuple(verdict.cautions),
+        cautions=tuple(verdict.cautions), notes=tuple(models.beam.notes),
         mesh=MeshSummary(mesh.nodes.shape[1], mesh.tets.shape[1], mesh.nodes.size, float(mesh.quality.min()),
                          mesh.volume, dict(mesh.recipe)),
         stages=clock.times(), versions=versions(), started=started,

@@ -9,6 +9,7 @@ import numpy as np
 from fem.beam import BeamResult
 from fem.beam.slices import sections_at
 from fem.figure import FigureKey
+from fem.solid import PeakPlace as SolidPeak
 from fem.solid import SolidResult
 from geometry.named_solid import NamedSolid
 from geometry.part import Part
@@ -17,7 +18,7 @@ from studies.check.result import Cause, IndependentCheck, LimitVerdict, Pair, Pe
 from studies.judge.bands import CaseFacts
 from studies.judge.context import Context
 from studies.judge.independent import independent_checks
-from studies.judge.limits import Evidence, place_text, verdicts
+from studies.judge.limits import Evidence, verdicts
 from studies.judge.pairing import Table, pair_figures, table
 
 OPEN_SHAPES = ("I", "channel", "angle", "tee", "outline")
@@ -46,7 +47,7 @@ def judge(part: Part, named: NamedSolid, mesh: NamedMesh, solid: SolidResult, be
     evidence = Evidence(ctx, solid, solid_table, beam_table, pairs)
     properties = sections_at(ctx.member, named.slices[:, 0])
     checks = independent_checks(ctx, named, solid, properties)
-    return Judgement(pairs, verdicts(evidence), checks, peak_places(solid), cautions(ctx, solid, facts))
+    return Judgement(pairs, verdicts(evidence), checks, peak_places(ctx, named, solid), cautions(ctx, solid, facts))
 
 
 def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, figures: Table, case: str) -> CaseFacts:
@@ -84,24 +85,31 @@ def signed_causes(beam: BeamResult, figures: Table) -> dict[FigureKey, list[tupl
     return found
 
 
-def peak_places(solid: SolidResult) -> tuple[PeakPlace, ...]:
+def peak_places(ctx: Context, named: NamedSolid, solid: SolidResult) -> tuple[PeakPlace, ...]:
     """Highest stresses of the solid with what is there."""
     found = []
     for peak in solid.peaks:
         kind = "surface" if peak.converged else ("sharp" if "corner" in peak.reason else "support")
         error = float(solid.stress_error[solid.cases.index(peak.case), peak.node])
-        found.append(PeakPlace(peak.case, place_text(peak.regions, peak.position), kind, peak.position, peak.value,
+        found.append(PeakPlace(peak.case, what_is_there(ctx, named, peak), kind, peak.position, peak.value,
                                error if peak.converged else None, peak.converged, peak.reason))
     return tuple(found)
 
 
+def what_is_there(ctx: Context, named: NamedSolid, peak: SolidPeak) -> str:
+    """The feature or face at a peak and its side, in a person's words: ``root fillet, lower side``."""
+    features = [hint.label for hint in named.hints if hint.kind != "wall" and set(hint.faces) & set(peak.faces)]
+    words = list(dict.fromkeys(features)) or list(peak.regions) or ["outer surface"]
+    _, y, z = ctx.local(np.array(peak.position)[:, None])[0]
+    width, depth = ctx.size
+    sides = [name for name, far in (("upper", z > 0.05 * depth), ("lower", z < -0.05 * depth),
+                                    ("right", y > 0.05 * width), ("left", y < -0.05 * width)) if far]
+    return " / ".join(words) + (f", {' '.join(sides)} side" if sides else "")
+
+
 def cautions(ctx: Context, solid: SolidResult, facts: dict[str, CaseFacts]) -> tuple[str, ...]:
-    """Sentences that stand under every result, and those that this part earns."""
-    found = [
-        "Linear elastic, small displacements, no fatigue, no contact, no buckling; local codes and licensed "
-        "practice decide.",
-        f"Accuracy {100 * ctx.part.accuracy:g} %: requested, not verified.",
-    ]
+    """Sentences that this part earns; those that stand under every result are the report's."""
+    found = [f"Accuracy {100 * ctx.part.accuracy:g} %: requested, not verified."]
     if ctx.slenderness < 5:
         found.append(f"Length over depth is {ctx.slenderness:.2g}: stubby, so the beam model is a rough guide.")
     dents = [d for d in solid.denting if d.value > 0]

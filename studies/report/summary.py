@@ -43,7 +43,7 @@ def summary(result: CheckResult) -> str:
     parts = [
         [f"# {result.title or result.spec_name}", "", verdict(result)],
         _asked(result), _limits(result), *(_case(result, case) for case in result.cases), _whole_part(result),
-        _suspicious(result), _checks(result), _cautions(result), _run(result),
+        _suspicious(result), _notes(result), _checks(result), _cautions(result), _run(result),
     ]
     return "\n".join(line for part in parts for line in [*part, ""]).rstrip() + "\n"
 
@@ -171,6 +171,11 @@ def _checks(result: CheckResult) -> list[str]:
     rows = [(check.name, f"{check.value:.3g}", f"{check.allowed:.3g}", "= ok" if check.ok else "! failed", check.text)
             for check in result.checks]
     return ["## Independent checks", "", *table(["check", "value", "allowed", "verdict", "what it holds"], rows)]
+
+
+def _notes(result: CheckResult) -> list[str]:
+    """What the beam model leaves out, so that nobody takes a missing figure for agreement."""
+    return ["## Not in the beam model", "", *(f"- {text}" for text in result.notes or ("Nothing was left out.",))]
 
 
 def _cautions(result: CheckResult) -> list[str]:
