@@ -167,7 +167,8 @@ def write_run(room: Path, result: CheckResult, models: Models, clock: Clock, pic
     if pictures:
         from studies.report.pictures import draw_pictures
 
-        draw_pictures(room, models.part, models.mesh, models.solid, result, lambda text: clock.note("write", text))
+        draw_pictures(room, models.part, models.mesh, models.solid, models.beam, result,
+                      lambda text: clock.note("write", text))
     names = sorted(p.name for p in room.iterdir())
     result = dataclasses.replace(result, files=("summary.md", RESULT, *names), stages=clock.times())
     (room / "summary.md").write_text(summary(result), encoding="utf-8")

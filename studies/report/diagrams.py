@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 
+from fem.beam.result import Diagram
 from fem.figure import Figure, Quantity
 from studies.report import frame
 
@@ -40,14 +41,21 @@ def stations_of(figures: Sequence[Figure], case: str, member: str, quantity: Qua
     return np.array([x for x, _ in found]), np.array([v for _, v in found])
 
 
-def diagrams(path: Path, title: str, case: str, member: str, solid: Sequence[Figure], beam: Sequence[Figure]) -> None:
-    """Twelve small diagrams for one case of one member."""
+def diagrams(path: Path, title: str, case: str, member: str, solid: Sequence[Figure], beam: Sequence[Figure],
+             line: Diagram | None = None) -> None:
+    """Eleven small diagrams for one case of one member.
+
+    `line` is the beam's own curve of section forces, whose jumps stand upright; without it the beam's values
+    at the stations are joined.
+    """
     with frame.page(13, 11.5) as figure:
         panels = figure.subplots(4, 3, sharex=True)
         kinds = {("section_force", "N"), ("section_moment", "N m"), ("displacement", "mm")}
         scales = {kind[0]: _scale([solid, beam], case, kind[0]) for kind in kinds}
         for axes, (quantity, component, text, factor, unit) in zip(panels.flat, PANELS, strict=False):
             curves = [stations_of(figures, case, member, quantity, component) for figures in (solid, beam)]
+            if line is not None and quantity in ("section_force", "section_moment"):
+                curves[1] = (line.x, getattr(line, component))
             _panel(axes, curves, f"{text} ({unit})", factor, scales[quantity])
         scale = _scale([solid, beam], case, "nominal_stress")
         for axes, pair in zip(panels[3, :2], (STRESSES[:2], STRESSES[2:]), strict=True):

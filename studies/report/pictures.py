@@ -6,6 +6,7 @@ import re
 from collections.abc import Callable
 from pathlib import Path
 
+from fem.beam.result import BeamResult
 from fem.solid.result import SolidResult
 from geometry.part import Part
 from mesher.named_mesh import NamedMesh
@@ -15,8 +16,8 @@ from studies.report.fields import deflected_picture, mesh_picture, stress_pictur
 from studies.report.part_picture import part_picture
 
 
-def draw_pictures(folder: Path, part: Part, mesh: NamedMesh, solid: SolidResult, result: CheckResult,
-                  progress: Callable[[str], None]) -> None:
+def draw_pictures(folder: Path, part: Part, mesh: NamedMesh, solid: SolidResult, beam: BeamResult,
+                  result: CheckResult, progress: Callable[[str], None]) -> None:
     """Draw part, mesh, and for each case deflected shape, stress and diagrams, as PNG files in `folder`."""
     progress("drawing the part")
     part_picture(folder / "part.png", part, mesh)
@@ -30,7 +31,7 @@ def draw_pictures(folder: Path, part: Part, mesh: NamedMesh, solid: SolidResult,
         for member in part.members:
             extra = f"-{_plain(member.name)}" if len(part.members) > 1 else ""
             diagrams(folder / f"diagrams-{ending}{extra}.png", part.title, case, member.name, result.solid_figures,
-                     result.beam_figures)
+                     result.beam_figures, beam.diagrams.get(case))
 
 
 def file_ending(number: int, case: str) -> str:

@@ -138,7 +138,7 @@ def make_models(wobble: float = 0.001) -> Models:
     solid = SolidResult(**given, **{f.name: np.zeros(1) for f in more})
     marks = (FaceMark(1.0, (0.0, 0.0, 0.0), (0.0,) * 6),)
     named = NamedSolid(b"brep", b"ISO-10303-21;", marks, {}, mesh.volume, 1.0, (0.0, 0.0, 0.0), mesh.volume)
-    beam = SimpleNamespace(figures=fabricated_figures(part), notes=("No factor.",))
+    beam = SimpleNamespace(figures=fabricated_figures(part), notes=("No factor.",), diagrams={})
     return Models(part, named, mesh, beam, solid)  # type: ignore[arg-type]
 
 
