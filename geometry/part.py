@@ -54,8 +54,10 @@ class Station:
     """Dimensions declared at a distance `at` (mm) from the start of the member.
 
     A dimension varies linearly from the last place that names it to the next place that names it
-    (the section itself names all of them at 0) and stays constant after the last one. Two stations
-    at one place are a step: the first one ends the stretch before, the second begins the next.
+    (the section itself names all of them at 0) and stays constant after the last one. Stations stand in
+    order. Two stations at exactly one place (equal `at`) are a step: the first one ends the stretch before,
+    the second begins the next. A dimension that only the first names varies up to it and goes on from its
+    value, without a jump; one that only the second names keeps its last value up to the step and jumps there.
     `shoulder_fillet` is the radius at such a step (0: sharp), kept on the second of the two.
     """
 
@@ -83,11 +85,13 @@ class Cut:
         Name shared by the cuts of one row or grid: ``pivot``.
     kind
         hole (round), slot (two half circles), opening (rectangular, corner radius), notch (from an
-        edge inwards: a half-round-ended or square one, see `length`, `depth` and `corner_radius`).
+        edge inwards: a half-round-ended or square one, see `length`, `depth` and `corner_radius`). A
+        notch passes the whole section.
     axis
         Direction in which the tool passes: member ``y`` or ``z``.
     through
-        Which wall of the section it passes; ``all`` for the whole section.
+        Which wall of the section it passes, its root fillets with it; ``all`` for the whole section. A cut
+        through one wall lies beside the other walls: it touches none of them.
     at
         Distance of its middle from the member's start, mm.
     offset
@@ -95,7 +99,9 @@ class Cut:
         along y for axis z). Not used by a notch.
     length, depth
         Size along the member and across it, mm. Hole: both the diameter. Slot: overall length along
-        its own direction and its width. Notch: length along the member, depth from the edge inwards.
+        its own direction and its width. Notch: length along the member, depth from the edge inwards; on a
+        taper it counts from where the edge is at the notch's middle (`at`; beyond a step there), and the
+        notch's floor stays parallel to the member's line.
     corner_radius
         Radius of the inner corners of an opening or a notch. A notch whose radius is half its length
         ends in a half circle.
@@ -126,7 +132,9 @@ class EdgeRadius:
     """A radius on named edges.
 
     `edges`: ``top left``, ``top right``, ``bottom left``, ``bottom right`` (outer edges along the
-    member), ``start`` or ``end`` (rim of that end face), or the name of a cut or row (its two rims).
+    member: the outermost corner of the top or bottom side; a corner or toe radius there is replaced, and the
+    radius lies in the plane of the section), ``start`` or ``end`` (rim of that end face), or the name of a
+    cut or row (its two rims).
     """
 
     edges: str
@@ -160,10 +168,11 @@ class Member:
     roll
         Further turn about x, rad.
     line_at
-        Point of the start section that lies on the declared line: ``origin`` (see `Shape`),
+        Point of the start section, drawn without `edge_radii` and cuts, that lies on the declared line:
+        ``origin`` (see `Shape`),
         ``centroid``, ``top``, ``bottom``, ``left``, ``right`` (middle of that side of the bounding
-        rectangle, in line with the section's origin), ``web`` (middle of the web's thickness, half the depth),
-        or a corner of the bounding rectangle such as ``top left``.
+        rectangle, in line with the section's origin), ``web`` (middle of the web's thickness, half the depth;
+        I, channel and tee), or a corner of the bounding rectangle such as ``top left``.
     anchor
         What stays straight when the depth varies.
     """
@@ -204,7 +213,8 @@ Coupling = Literal["surface", "rigid", "average"]
 """How a region is held or loaded.
 
 surface   point by point: every point is held alike; a force is an even traction.
-rigid     the region moves as one rigid body; its six freedoms are held or loaded.
+rigid     the region moves as one rigid body; its six freedoms are held or loaded. A region that any support
+          or load couples so is rigid in every case, whether the load acts in it or not.
 average   the area-weighted mean displacement and rotation is held or loaded; the region may deform
           (a force-distributing coupling).
 """
@@ -218,8 +228,8 @@ class Support:
 
     `held` maps a freedom to its prescribed displacement (mm) or rotation (rad), mostly 0.
     ``normal`` (plane faces, `surface` only) is the direction of the outward normal; rotations are
-    allowed for `rigid` and `average` only. `axes`: which axes x, y, z mean. Prescribed values act in
-    every case with factor 1.
+    allowed for `rigid` and `average` only, about the region's area centroid. `axes`: which axes x, y, z
+    mean. Prescribed values act in every case with factor 1.
     """
 
     name: str
@@ -379,9 +389,11 @@ class Part:
     """The resolved spec of one part, with the text it came from.
 
     Regions are named ``member.region``: ``start``, ``end``; outer faces ``top``, ``bottom``, ``left``,
-    ``right``; ``surface`` (round, tube); ``bore`` (tube, box); ``web_left``, ``web_right`` (I, tee,
-    channel: the sides of the web); each cut and each group of cuts; each patch. A line load makes a
-    region named ``member.load:NAME``.
+    ``right`` (straight sides on the bounding rectangle; ``left`` and ``right`` of an I: the tips of both its
+    flanges, whichever is wider); ``surface`` (round, tube); ``bore`` (tube, box); ``web_left``, ``web_right``
+    (I, tee, channel: the sides of the web); each cut and each group of cuts; each patch. A line load makes a
+    region named ``member.load:NAME``. A face is what cuts leave of it, without corner, edge and root radii and
+    without the wall of a step. The region of a cut is its inner faces through every wall that it passes.
     """
 
     title: str

@@ -193,7 +193,8 @@ def _free_tables() -> str:
 | `[[members.NAME.stations]]` | beside `at`: any dimension of the section = its value there |
 
 A dimension varies linearly from one place that names it to the next, and stays constant after the last.
-Two stations at one place are a step.
+Two stations at one place are a step: the first ends the stretch before, the second begins the next. A dimension that
+only the second names keeps its last value up to the step and jumps there.
 """
 
 

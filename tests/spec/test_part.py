@@ -273,3 +273,15 @@ def test_python_and_toml_are_one_model() -> None:
     assert from_python.members == from_text.members
     assert from_python.loads == from_text.loads
     assert with_parameters(spec, {}) == from_python
+
+
+def test_stations_that_mean_one_place_are_at_exactly_one_place() -> None:
+    """Sums that differ in their last digit make a step, not a stretch of 1e-14 mm; the last place is the end itself."""
+    text = CANTILEVER
+    text = text.replace(
+        "[supports.wall]",
+        '[[members.bar.stations]]\nat = "110.1 mm * 3"\ndepth = "40 mm"\n'
+        '[[members.bar.stations]]\nat = "330.3 mm"\ndepth = "30 mm"\n\n[supports.wall]',
+    )
+    first, second = part_from_text(text).members[0].stations
+    assert first.at == second.at

@@ -63,8 +63,8 @@ def test_dimensions_run_linearly_between_the_places_that_name_them() -> None:
     )
     m = member(Section("rectangle", {"depth": 40.0, "width": 10.0}), stations)
     assert dims_at(m, 20.0) == pytest.approx({"depth": 30.0, "width": 9.2})
-    # The depth is named once at 50 mm: it gets there without a step; the width steps from 8 to 6.
-    assert dims_at(m, 50.0, before=True) == pytest.approx({"depth": 12.0, "width": 8.0})
+    # Only the second station at 50 mm names the depth: it stays 20 up to there and jumps; the width steps from 8 to 6.
+    assert dims_at(m, 50.0, before=True) == pytest.approx({"depth": 20.0, "width": 8.0})
     assert dims_at(m, 50.0) == pytest.approx({"depth": 12.0, "width": 6.0})
     assert dims_at(m, 90.0) == pytest.approx({"depth": 12.0, "width": 6.0})
 

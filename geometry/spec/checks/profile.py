@@ -27,9 +27,18 @@ def dims_at(member: Member, x: float, before: bool = False) -> dict[str, float]:
 
 
 def _named(member: Member, name: str) -> list[tuple[float, float]]:
-    """Where a dimension is named, and its value, in the order of the spec."""
-    stations = ((s.at, s.dims[name]) for s in member.stations if name in s.dims)
-    return [(0.0, member.section.dims[name]), *stations]
+    """Where a dimension has a value of its own, and which, in the order of the spec.
+
+    One that only the second station of a step names keeps its last value up to the step, and jumps there.
+    """
+    named = [(0.0, member.section.dims[name])]
+    for before, station in zip((None, *member.stations), member.stations, strict=False):
+        if name not in station.dims:
+            continue
+        if before is not None and before.at == station.at and name not in before.dims:
+            named.append((station.at, named[-1][1]))
+        named.append((station.at, station.dims[name]))
+    return named
 
 
 def _at(named: list[tuple[float, float]], x: float, before: bool) -> float:
@@ -188,8 +197,7 @@ def profile_of(member: Member) -> Profile:
         return Profile(member, (0.0, 0.0))
     left, right, low, high = bounds(section, dict(section.dims))
     if member.line_at == "web":
-        thickness = section.dims.get("web", section.dims.get("thickness", 0.0))
-        return Profile(member, (thickness / 2.0 if section.shape in ("channel", "angle") else 0.0, 0.0))
+        return Profile(member, (section.dims.get("web", 0.0) / 2.0 if section.shape == "channel" else 0.0, 0.0))
     words = member.line_at.split()
     y = left if "left" in words else right if "right" in words else 0.0
     z = high if "top" in words else low if "bottom" in words else 0.0

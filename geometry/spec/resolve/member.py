@@ -194,7 +194,10 @@ def _stations(values: Values, path: str, spec: MemberSpec, section: Section, len
         table = Table(values, f"{path}.stations[{i}]", station)
         dims = _dims(values, table.path, section.shape, station.model_extra or {})
         _follow(section.shape, spec.section, named, dims)
-        stations.append(Station(table.number("at"), dims, table.number("shoulder_fillet")))
+        # Sums of lengths that mean one place differ in their last digit: a step is two stations at exactly one place.
+        places = (*(s.at for s in stations[-1:]), length)
+        at = next((x for x in places if abs(table.number("at") - x) <= 1e-9 * length), table.number("at"))
+        stations.append(Station(at, dims, table.number("shoulder_fillet")))
     if spec.taper is not None:
         dims = _dims(values, f"{path}.taper", section.shape, spec.taper)
         _follow(section.shape, spec.section, named, dims)
