@@ -6,6 +6,7 @@ import tomllib
 from collections.abc import Iterable, Sequence
 
 from studies.check.result import CheckResult, Pair, PeakPlace
+from studies.judge.envelope import envelope
 from studies.report.tables import (
     Tally,
     headlines,
@@ -42,7 +43,7 @@ def summary(result: CheckResult) -> str:
     """Markdown text of the whole run."""
     parts = [
         [f"# {result.title or result.spec_name}", "", verdict(result)],
-        _asked(result), _limits(result), *(_case(result, case) for case in result.cases), _whole_part(result),
+        _asked(result), _limits(result), _envelope(result), *(_case(result, case) for case in result.cases), _whole_part(result),
         _suspicious(result), _notes(result), _checks(result), _cautions(result), _run(result),
     ]
     return "\n".join(line for part in parts for line in [*part, ""]).rstrip() + "\n"
@@ -87,6 +88,17 @@ def _limits(result: CheckResult) -> list[str]:
              readable(limit.found, limit.unit), limit.case or "-", limit.place or "-", marked(limit.verdict),
              limit.reason) for limit in result.limits]
     return ["## Limits", "", *table(["limit", "quantity", "given", "found", "case", "place", "verdict", "why"], rows)]
+
+
+def _envelope(result: CheckResult) -> list[str]:
+    """Greatest and least figures over the cases, with the case that governs."""
+    if len(result.cases) < 2:
+        return []
+    rows = [(f"{row.quantity.replace('_', ' ')} {row.component}", row.which, shown_unit(row.unit),
+             number(row.value, row.unit), number(row.beam, row.unit), row.case, row.place)
+            for row in envelope(result.solid_figures, result.beam_figures)]
+    return ["## Envelope over the cases", "",
+            *table(["figure", "", "unit", "solid", "beam there", "governing case", "place"], rows)]
 
 
 def _pair_row(pair: Pair) -> tuple[str, ...]:
