@@ -45,7 +45,7 @@ def envelope(solid: Iterable[Figure], beam: Iterable[Figure]) -> tuple[Extreme, 
             largest[key.quantity] = max(largest.get(key.quantity, 0.0), abs(figure.value))
     rows = []
     for (quantity, _, component), figures in groups.items():
-        if max(abs(f.value) for f in figures) <= 1e-3 * largest[quantity]:
+        if max(abs(f.value) for f in figures) <= 5e-3 * largest[quantity]:
             continue
         for which, pick in (("greatest", max), ("least", min)):
             found = pick(figures, key=_to_four_digits)

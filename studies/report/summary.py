@@ -43,7 +43,8 @@ def summary(result: CheckResult) -> str:
     """Markdown text of the whole run."""
     parts = [
         [f"# {result.title or result.spec_name}", "", verdict(result)],
-        _asked(result), _limits(result), _envelope(result), *(_case(result, case) for case in result.cases), _whole_part(result),
+        _asked(result), _limits(result), _envelope(result), *(_case(result, case) for case in result.cases),
+        _whole_part(result),
         _suspicious(result), _notes(result), _checks(result), _cautions(result), _run(result),
     ]
     return "\n".join(line for part in parts for line in [*part, ""]).rstrip() + "\n"

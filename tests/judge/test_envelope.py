@@ -25,7 +25,8 @@ def test_the_heavier_case_governs_the_bar() -> None:
     _, _, _, solid, beam = sound()
     rows = {(r.quantity, r.component, r.which): r for r in envelope(solid.figures, beam.figures)}
     sag = rows["displacement", "z", "least"]
-    assert (sag.case, sag.place) == ("lifting_with_weight", "arm.end")
+    assert sag.case == "lifting_with_weight"
+    assert sag.place in ("arm.end", "arm@400")
     root = rows["section_moment", "My", "greatest"]
     # P L + w L^2 / 2 (statics), w = 10 x 20 mm^2 of steel
     assert root.value == pytest.approx(100 * 400 + 200 * 7.85e-9 * 9810 * 400**2 / 2, rel=1e-6)
