@@ -20,6 +20,10 @@ from mesher.outline_mesh import OutlineMesh
 _START_SECONDS = 20.0
 _SECONDS_PER_OUTLINE = 10.0
 
+MOST_TRIANGLES = 40_000
+"""Of one section. A wall 1000 times as long as it is thick has about 6000; more is a slip of a unit, and would take
+minutes in the mesher and again in the beam model."""
+
 
 def mesh_outlines(outlines: Sequence[Outline], size: Sequence[float], memory: float = 2048.0) -> list[OutlineMesh]:
     """Mesh sections with curved 6-node triangles; lines and arcs are met exactly by the nodes.
@@ -37,7 +41,8 @@ def mesh_outlines(outlines: Sequence[Outline], size: Sequence[float], memory: fl
     Raises
     ------
     MeshError
-        An outline could not be meshed (open, crossing itself), or the mesh does not fill it.
+        An outline could not be meshed (open, crossing itself, or so thin that it would take more than
+        `MOST_TRIANGLES`), or the mesh does not fill it.
     """
     if len(outlines) != len(size):
         raise MeshError(f"{len(outlines)} outlines, but {len(size)} sizes; give one size for each outline")
@@ -61,6 +66,12 @@ def _as_job(outline: Outline, size: float) -> dict[str, Any]:
         raise MeshError(f"element size of a section: given {size}; it must be a positive length in mm")
     extent = float(np.ptp(points, axis=0).max())
     check_outline(outline, extent)
+    triangles = 4 / math.sqrt(3) * outline_area(outline) / size**2
+    if triangles > MOST_TRIANGLES:
+        raise MeshError(
+            f"a section of {extent:.4g} mm would need about {triangles:.0f} triangles of {size:.3g} mm, and at most"
+            f" {MOST_TRIANGLES} are made: its walls are too thin for its size. Look at the unit of the thickness."
+        )
     return {
         "size": size,
         "extent": extent,

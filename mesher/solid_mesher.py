@@ -15,7 +15,7 @@ from geometry.problem import MeshError
 from mesher.assemble import MeshRefused, assemble
 from mesher.attempts import CHAIN, Attempt, gmsh_options
 from mesher.child import ChildFailure, run_child
-from mesher.estimate import nodes_within, solver_memory
+from mesher.estimate import estimated_nodes, node_integrals, nodes_within, solver_memory
 from mesher.named_mesh import NamedMesh
 from mesher.sizes import Sizes, sizes_for
 
@@ -58,11 +58,13 @@ def mesh_solid(
     logs: list[str] = []
     for attempt in chain:
         sizes = sizes_for(solid, accuracy, attempt.factor)
+        if (nodes := _least_nodes(solid, sizes)) > nodes_within(budget.memory):
+            raise MeshError(_over_budget(nodes, budget, attempt, failed))
         try:
             return _attempt(solid, attempt, sizes, budget, failed)
         except ChildFailure as failure:
             if failure.kind == "OverBudget":
-                raise MeshError(_over_budget(failure.facts["nodes"], budget, attempt, failed)) from failure
+                raise MeshError(_over_budget(failure.facts["nodes"], budget, attempt, failed)) from None
             if failure.kind == "FaceMismatch":
                 raise MeshError(f"the faces named by the solid were not found again: {failure}") from failure
             failed.append({"attempt": attempt.name, "ending": failure.ending, "message": str(failure)})
@@ -107,6 +109,14 @@ def _attempt(
     recipe["nodes"] = mesh.nodes.shape[1]
     recipe["mesh"] = mesh_digest(mesh)
     return mesh
+
+
+def _least_nodes(solid: NamedSolid, sizes: Sizes) -> int:
+    """Estimate without curvature and without the growth of sizes, so never more than the kernel's own, which for a
+    sheet of millions of elements takes minutes to make."""
+    areas = [face.area for face in solid.faces]
+    wanted = [np.array([min(sizes.faces.get(i, sizes.bulk), sizes.bulk)]) for i in range(len(areas))]
+    return estimated_nodes(*node_integrals(areas, wanted, solid.volume))
 
 
 def _replay(solid: NamedSolid, budget: Budget, recipe: Mapping[str, Any]) -> NamedMesh:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from types import ModuleType
 
 import numpy as np
 import pytest
@@ -17,6 +18,8 @@ from mesher.estimate import nodes_within, solver_memory
 from mesher.matching import FaceMismatch, match_faces
 from mesher.measure import tetrahedron_volumes
 from mesher.quality import scaled_jacobian
+from mesher.sizes import sizes_for
+from mesher.solid_mesher import _least_nodes
 
 
 def _faulty(fault: str) -> Attempt:
@@ -159,3 +162,21 @@ def test_faces_of_equal_area_and_centroid_are_told_by_their_boxes() -> None:
     other = _mark(5, 10.0, (3, 0, 0), (0, 0, 0, 0, 0, 0))
     with pytest.raises(FaceMismatch, match="two faces .* same partner"):
         match_faces([wide, wide], [wide, other], 10.0)
+
+
+def test_a_sheet_far_over_budget_is_refused_before_the_kernel_starts(
+    solids: ModuleType, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def unwanted(*_: object) -> None:
+        raise AssertionError("the mesh kernel was started")
+
+    monkeypatch.setattr("mesher.solid_mesher.run_child", unwanted)
+    with pytest.raises(MeshError, match=r"about \d{8,} nodes .*budget is 4096 MiB"):
+        mesh_solid(solids.bar(1000.0, 0.05, 40.0), 0.08, Budget(memory=4096))
+
+
+def test_the_early_estimate_never_exceeds_the_kernels(bar: NamedSolid, bar_mesh: NamedMesh, plate: NamedSolid,
+                                                      plate_mesh: NamedMesh) -> None:  # fmt: skip
+    for solid, mesh in ((bar, bar_mesh), (plate, plate_mesh)):
+        early = _least_nodes(solid, sizes_for(solid, 0.05))
+        assert 0.1 * mesh.recipe["estimated_nodes"] < early <= mesh.recipe["estimated_nodes"] * (1 + 1e-9)

@@ -150,3 +150,11 @@ def test_faults_are_told() -> None:
     outside = Outline(_loop([(0, 0), (50, 0), (50, 50), (0, 50)]), (_circle(10.0, ccw=False),))
     with pytest.raises(MeshError, match="cross near"):
         mesh_outlines([outside], [25.0])
+
+
+def test_a_wall_far_too_thin_is_refused_with_the_number_at_once() -> None:
+    started = time.perf_counter()
+    thin = Outline(_circle(50.0), (_circle(49.99, ccw=False),))
+    with pytest.raises(MeshError, match=r"100 mm would need about \d+ triangles of 0\.006 mm, and at most \d+"):
+        mesh_outlines([thin], [0.006])
+    assert time.perf_counter() - started < 2.0
