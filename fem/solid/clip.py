@@ -45,6 +45,8 @@ def clip_beyond(distance: Array, order: int) -> tuple[NDArray[np.int64], Array, 
     for lone in range(size):
         for want, sign in ((1, 1.0), (size - 1, -1.0)):
             here = np.flatnonzero((count == want) & (beyond[:, lone] == (want == 1)))
+            if not here.size:
+                continue
             corner = np.broadcast_to(np.eye(size)[lone], (here.size, size))
             rest = [_meet(distance[here], lone, j) for j in range(size) if j != lone]
             small = np.stack([corner, *rest], axis=1)
@@ -54,15 +56,17 @@ def clip_beyond(distance: Array, order: int) -> tuple[NDArray[np.int64], Array, 
     if size == 4:
         for a, b in ((0, 1), (0, 2), (0, 3), (1, 2), (1, 3), (2, 3)):
             here = np.flatnonzero((count == 2) & beyond[:, a] & beyond[:, b])
+            if not here.size:
+                continue
             c, d = (i for i in range(4) if i not in (a, b))
             A, B = (np.broadcast_to(np.eye(4)[i], (here.size, 4)) for i in (a, b))
             ac, ad, bc, bd = (_meet(distance[here], i, j) for i, j in ((a, c), (a, d), (b, c), (b, d)))
             for wedge in ((A, B, bc, bd), (A, ac, bc, bd), (A, ac, ad, bd)):
                 parts.append((here, np.stack(wedge, axis=1), 1.0))
     L, w = (tet_quadrature if size == 4 else triangle_quadrature)(order)
-    owner, bary, weights = [], [], []
-    for here, corners, sign in parts:
-        bary.append(np.einsum("kcd,cq->dkq", corners, L).reshape(size, -1))
-        weights.append((sign * np.abs(np.linalg.det(corners))[:, None] * w).ravel())
-        owner.append(np.repeat(here, L.shape[1]))
-    return np.concatenate(owner), np.concatenate(bary, axis=1), np.concatenate(weights)
+    owner = np.concatenate([here for here, _, _ in parts])
+    corners = np.concatenate([corners for _, corners, _ in parts])
+    content = np.repeat([sign for _, _, sign in parts], [here.size for here, _, _ in parts])
+    content[whole.size :] *= np.abs(np.linalg.det(corners[whole.size :]))
+    bary = np.matmul(corners.transpose(2, 0, 1), L).reshape(size, -1)
+    return np.repeat(owner, w.size), bary, (content[:, None] * w).ravel()

@@ -7,14 +7,17 @@ from collections.abc import Iterator
 import numpy as np
 from scipy.interpolate import CubicSpline
 
-from fem.solid.cut import Cut, section_means
+from fem.solid.cut import Cut
 from fem.solid.frame import member_frame
 from fem.solid.model import SolidModel
 from fem.solid.result import Denting
+from fem.solid.sections import Motions
 from fem.solid.shape import Array
 
 
-def denting(model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]]) -> Iterator[Denting]:
+def denting(
+    model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]], motions: Motions
+) -> Iterator[Denting]:
     """Largest displacement of each loaded region relative to the rigid motion of the section at each point's station.
 
     The sections' mean displacement and rotation are splined over the stations. Regions on no member are left out.
@@ -24,10 +27,7 @@ def denting(model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]]) 
     for member in model.part.members:
         frame = member_frame(member)
         cuts = [cut for cut in sections[member.name].values() if cut.weights.size]
-        rows = []
-        for cut in cuts:
-            mean, turn = section_means(cut, u, mesh.tets, frame)
-            rows.append(np.concatenate([mean, turn], axis=1))
+        rows = [np.concatenate(motions[member.name][cut.at], axis=1) for cut in cuts]
         at = np.array([cut.at for cut in cuts])
         centres = np.array([cut.centroid for cut in cuts])
         motion[member.name] = (frame, CubicSpline(at, np.array(rows)), CubicSpline(at, centres))

@@ -78,10 +78,18 @@ class Cholesky:
         self._factor.close()
 
 
+def upper_triangle(matrix: sp.csr_matrix) -> sp.csr_matrix:
+    """Upper triangle, its columns sorted in each row as PARDISO wants them."""
+    matrix.sort_indices()
+    rows = np.repeat(np.arange(matrix.shape[0], dtype=matrix.indices.dtype), np.diff(matrix.indptr))
+    kept = matrix.indices >= rows
+    starts = np.concatenate([[0], np.cumsum(kept)])[matrix.indptr].astype(np.int32)
+    return sp.csr_matrix((matrix.data[kept], matrix.indices[kept], starts), shape=matrix.shape)
+
+
 class _Pardiso:
     def __init__(self, matrix: sp.csr_matrix, budget: Budget) -> None:
-        self.upper = sp.triu(matrix, format="csr")
-        self.upper.sort_indices()
+        self.upper = upper_triangle(matrix)
         self.solver = _fresh_pardiso()
         self.solver.libmkl.MKL_Set_Num_Threads(ctypes.c_int(budget.threads))
         iparm = self.solver.iparm

@@ -7,11 +7,10 @@ from collections.abc import Iterator
 import numpy as np
 
 from fem.figure import Figure, FigureKey, Quantity, station_place
-from fem.solid.cut import Cut, section_means
 from fem.solid.frame import member_frame, stations
 from fem.solid.model import SolidModel
 from fem.solid.reaction import Reactions
-from fem.solid.sections import section_places
+from fem.solid.sections import Motions, section_places
 from fem.solid.shape import Array
 
 _XYZ = ("x", "y", "z")
@@ -28,15 +27,14 @@ def vector_figures(
 
 
 def displacement_figures(
-    model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]], relative_error: Array
+    model: SolidModel, motions: Motions, relative_error: Array
 ) -> Iterator[Figure]:
-    """Mean displacement (mm) and rotation (rad) of every section; u (c, 3, n); relative_error (c,) of the energy."""
+    """Mean displacement (mm) and rotation (rad) of every section; relative_error (c,) of the energy."""
     cases = tuple(case.name for case in model.part.cases)
     places = section_places(model)
     for member in model.part.members:
-        frame = member_frame(member)
         for at, names in places[member.name].items():
-            mean, turn = section_means(sections[member.name][at], u, model.mesh.tets, frame)
+            mean, turn = motions[member.name][at]
             for name in names:
                 yield from vector_figures(cases, name, "displacement", mean, "mm", relative_error)
                 yield from vector_figures(cases, name, "rotation", turn, "rad", relative_error)

@@ -19,15 +19,19 @@ from fem.solid.model import SolidModel
 from fem.solid.shape import (
     Array,
     facet_points,
+    inverse,
     tet_gradients,
+    tet_quadrature,
     tet_values,
     triangle_gradients,
     triangle_values,
 )
 from fem.solid.stiffness import element_forces, stresses
+from mesher.named_mesh import NamedMesh
 
 Bool = NDArray[np.bool_]
 FORCE_ORDER = 6
+BODY_ORDER = 2
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,6 +43,10 @@ class ElementLoads:
     applied: Array
     owners: tuple[tuple[int, int, NDArray[np.int64]], ...]
     """(load index, piece index, owner element of each facet)"""
+    body: Array
+    """(c, 3) force for a volume, N / mm^3."""
+    volumes: Array
+    """(4, m) volume and first moment of each element, mm^3 and mm^4; empty without a force for a volume."""
 
 
 def facet_owners(tets: NDArray[np.int64], facets: NDArray[np.int64], node_count: int) -> NDArray[np.int64]:
@@ -82,7 +90,23 @@ def element_loads(model: SolidModel, u: Array) -> ElementLoads:
                 share = model.factors[:, k, None, None] * forces[None, :, a]
                 for c in range(share.shape[0]):
                     np.add.at(applied[c], (owner, local[a]), share[c])
-    return ElementLoads(internal, applied, tuple(owners))
+    volumes = np.zeros((4, 0))
+    if body.any():
+        L, w = tet_quadrature(BODY_ORDER)
+        every = np.arange(m)
+        parts = [_volume_points(mesh, every, np.broadcast_to(L[:, [q]], (4, m)), w[q]) for q in range(w.size)]
+        volumes = np.sum([np.vstack([dV, x * dV]) for x, dV in parts], axis=0)
+    return ElementLoads(internal, applied, tuple(owners), body, volumes)
+
+
+def _volume_points(
+    mesh: NamedMesh, elements: NDArray[np.int64], bary: Array, weights: Array | float
+) -> tuple[Array, Array]:
+    """Positions (3, p) and volumes (p,) of quadrature points (4, p) of elements (p,)."""
+    corners = mesh.nodes[:, mesh.tets[:, elements]]
+    x = np.einsum("iap,ap->ip", corners, tet_values(bary))
+    J = np.matmul(corners.transpose(2, 0, 1), tet_gradients(bary).transpose(2, 0, 1))
+    return x, weights * inverse(J)[1]
 
 
 def _clipped_loads(
@@ -101,21 +125,16 @@ def _clipped_loads(
     force, moment, point = np.zeros((c, 3)), np.zeros((c, 3)), frame.point(at)
     d = sign * (local[0] - at)
     d[np.abs(d) < 1e-9 * frame.length] = 0.0
-    body = (
-        model.part.material.density
-        * model.factors
-        @ np.array([load.force_per_mass for load in model.loads.values()]).reshape(-1, 3)
-    )
-    if body.any():
-        here = np.flatnonzero(side & (d[mesh.tets[:4]] > 0).any(axis=0))
-        owner, bary, weights = clip_beyond(d[mesh.tets[:4, here]].T, 2)
-        nodes = mesh.tets[:, here[owner]]
-        x = np.einsum("iap,ap->ip", mesh.nodes[:, nodes], tet_values(bary))
-        J = np.einsum("iap,ajp->pij", mesh.nodes[:, nodes], tet_gradients(bary))
-        dV = weights * np.linalg.det(J)
-        first = ((x - point[:, None]) * dV).sum(axis=1)
-        force += body * dV.sum()
-        moment += np.cross(first, body)
+    if loads.volumes.size:
+        corners = d[mesh.tets[:4]]
+        whole = side & (corners >= 0).all(axis=0)
+        volume, *first = loads.volumes[:, whole].sum(axis=1)
+        here = np.flatnonzero(side & ~whole & (corners > 0).any(axis=0))
+        owner, bary, weights = clip_beyond(corners[:, here].T, BODY_ORDER)
+        x, dV = _volume_points(mesh, here[owner], bary, weights)
+        volume += dV.sum()
+        force += loads.body * volume
+        moment += np.cross(first + (x * dV).sum(axis=1) - volume * point, loads.body)
     pieces = [load.pieces for load in model.loads.values()]
     for k, p, owners in loads.owners:
         if not model.factors[:, k].any():

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.figure import station_place
-from fem.solid.cut import Cut, Cutter
+from fem.solid.cut import Cut, Cutter, section_means
 from fem.solid.frame import Frame, member_frame, stations
 from fem.solid.model import SolidModel
 from fem.solid.reaction import Reactions
@@ -16,6 +16,9 @@ from fem.solid.stress import point_stress
 from geometry.part import Member
 from geometry.problem import SolveError
 from mesher.named_mesh import NamedMesh
+
+Motions = dict[str, dict[float, tuple[Array, Array]]]
+"""Mean displacement and rotation (c, 3) of each section, by member and station."""
 
 _OUTER = ("top", "bottom", "left", "right", "surface", "start", "end")
 
@@ -77,6 +80,17 @@ def member_sections(model: SolidModel, cutter: Cutter) -> dict[str, dict[float, 
                 raise SolveError(f"The mesh has no material at {names[0]}: the section there cannot be measured.")
             out[member.name][at] = cut
     return out
+
+
+def section_motions(model: SolidModel, u: Array, sections: dict[str, dict[float, Cut]]) -> Motions:
+    """Mean displacement (mm) and rotation (rad), global components, of every section; u (c, 3, n)."""
+    return {
+        member.name: {
+            at: section_means(cut, u, model.mesh.tets, member_frame(member))
+            for at, cut in sections[member.name].items()
+        }
+        for member in model.part.members
+    }
 
 
 def section_forces(

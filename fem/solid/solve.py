@@ -16,7 +16,7 @@ from fem.solid.model import build_model
 from fem.solid.peak import case_stresses, node_sizes, peak_places, singular_nodes, singular_places
 from fem.solid.reaction import reactions
 from fem.solid.result import SolidResult
-from fem.solid.sections import member_sections, section_forces
+from fem.solid.sections import member_sections, section_forces, section_motions
 from fem.solid.shape import Array
 from fem.solid.stress import nodal_stress, principal_stresses, von_mises
 from fem.solid.system import solve_system
@@ -81,10 +81,11 @@ def solve_solid(
     stage("sections")
     cutter = Cutter(mesh)
     sections = member_sections(model, cutter)
+    motions = section_motions(model, u, sections)
     forces, gap = section_forces(model, u, reacting, sections)
     stage("figures")
     figures = (
-        *displacement_figures(model, u, sections, energy_error),
+        *displacement_figures(model, motions, energy_error),
         *reaction_figures(model, reacting),
         *section_force_figures(model, forces),
         *nominal_figures(model, stress, spread),
@@ -107,7 +108,7 @@ def solve_solid(
         figures=figures,
         peaks=tuple(peak_places(model, mises, principal, places, near)),
         case_stress=tuple(case_stresses(model, mises, near)),
-        denting=tuple(denting(model, u, sections)),
+        denting=tuple(denting(model, u, sections, motions)),
         section_gap=gap,
         mass=model.mass,
         centre_of_mass=model.centre_of_mass,

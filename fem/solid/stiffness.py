@@ -14,7 +14,7 @@ import numpy as np
 import scipy.sparse as sp
 from numpy.typing import NDArray
 
-from fem.solid.shape import Array, curved_tets, tet_gradients, tet_quadrature
+from fem.solid.shape import Array, curved_tets, inverse, tet_gradients, tet_quadrature
 from geometry.problem import SolveError
 
 CURVED_ORDER = 4
@@ -52,16 +52,17 @@ def element_gradients(nodes: Array, tets: NDArray[np.int64], L: Array) -> tuple[
     q, m = L.shape[1], tets.shape[1]
     x = np.ascontiguousarray(nodes[:, tets].transpose(2, 0, 1))  # (m, 3, 10)
     J = (x.reshape(-1, 10) @ dN.reshape(10, -1)).reshape(m, 3, 3, q).transpose(0, 3, 1, 2)  # dx_i/dxi_j
-    det = np.linalg.det(J)
+    inverted, det = inverse(J)  # dxi_j/dx_i
     if not (det > 0).all():
         bad = np.unique(np.nonzero(~(det > 0))[0])
         raise SolveError(
             f"{bad.size} of {m} elements have no positive volume, the first one near "
             f"{np.round(x[bad[0], :, :4].mean(axis=1), 3).tolist()} mm. Mesh the part again with another recipe."
         )
-    inverse = np.linalg.inv(J)  # dxi_j/dx_i
-    g = dN.transpose(2, 0, 1) @ inverse  # (m, q, 10, 3)
-    return np.ascontiguousarray(g.reshape(m, q, 30).transpose(0, 2, 1)), det
+    g = np.empty((m, 30, q))
+    for k in range(q):
+        g[:, :, k] = np.matmul(dN[:, :, k], inverted[:, k]).reshape(m, 30)
+    return g, det
 
 
 def element_groups(nodes: Array, tets: NDArray[np.int64]) -> list[ElementGroup]:
@@ -91,12 +92,12 @@ class NodePattern:
         self.node_count = node_count
 
     def assemble(self, element_matrices: Array, elements: NDArray[np.int64]) -> Array:
-        """(blocks, 3, 3) sums of element matrices (m', 10, 3, 10, 3) of `elements`."""
+        """(blocks, 3, 3) sums of element matrices (3, 3, m', 10, 10) of `elements`."""
         slots = self.slots.reshape(-1, 100)[elements].ravel()
         blocks = np.empty((self.indices.size, 3, 3))
         for i in range(3):
             for j in range(3):
-                values = element_matrices[:, :, i, :, j].ravel()
+                values = element_matrices[i, j].ravel()
                 blocks[:, i, j] = np.bincount(slots, weights=values, minlength=self.indices.size)
         return blocks
 
@@ -107,14 +108,24 @@ class NodePattern:
 
 
 def element_stiffness(gradients: Array, weights: Array, E: float, nu: float) -> Array:
-    """(m, 10, 3, 10, 3) element matrices, N/mm."""
+    """(3, 3, m, 10, 10) element matrices, N/mm: directions first, then element and its two nodes."""
     lam, mu = lame(E, nu)
-    m = gradients.shape[0]
-    P = np.matmul(gradients * weights[:, None, :], gradients.transpose(0, 2, 1)).reshape(m, 10, 3, 10, 3)
-    K = lam * P + mu * P.transpose(0, 1, 4, 3, 2)
-    trace = mu * np.einsum("eakbk->eab", P)
+    m, _, q = gradients.shape
+    g = np.ascontiguousarray(gradients.reshape(m, 10, 3, q).transpose(2, 0, 1, 3))  # (3, m, 10, q)
+    weighted = g * weights[:, None, :]
+    K = np.empty((3, 3, m, 10, 10))
+    trace = np.zeros((m, 10, 10))
     for i in range(3):
-        K[:, :, i, :, i] += trace
+        P = np.matmul(weighted[i], g[i].transpose(0, 2, 1))
+        trace += P
+        np.multiply(P, lam + mu, out=K[i, i])
+        for j in range(i):
+            P = np.matmul(weighted[i], g[j].transpose(0, 2, 1))
+            K[i, j] = lam * P + mu * P.transpose(0, 2, 1)
+            K[j, i] = K[i, j].transpose(0, 2, 1)
+    trace *= mu
+    for i in range(3):
+        K[i, i] += trace
     return K
 
 
@@ -137,23 +148,23 @@ def stresses(gradients: Array, displacements: Array, E: float, nu: float, therma
 
     `thermal_strain` (c,) is the free expansion alpha dT of each case.
     """
-    lam, mu = lame(E, nu)
     c, m = displacements.shape[:2]
     q = gradients.shape[2]
-    g = gradients.reshape(m, 10, 3, q)
-    # H[c, e, i, j, q] = du_i/dx_j
-    H = (
-        np.matmul(displacements.transpose(1, 0, 3, 2).reshape(m, 3 * c, 10), g.reshape(m, 10, 3 * q))
-        .reshape(m, c, 3, 3, q)
-        .transpose(1, 0, 2, 3, 4)
-    )
-    trace = np.einsum("ceiiq->ceq", H)
-    normal = lam * trace - (3 * lam + 2 * mu) * thermal_strain[:, None, None]
-    out = np.empty((c, m, 6, q))
+    H = np.matmul(displacements.transpose(1, 0, 3, 2).reshape(m, 3 * c, 10), gradients.reshape(m, 10, 3 * q))
+    H = H.reshape(m, c, 3, 3, q).transpose(1, 2, 3, 0, 4)  # du_i/dx_j: (c, i, j, m, q)
+    return isotropic_stress(H, E, nu, thermal_strain).transpose(0, 2, 1, 3)
+
+
+def isotropic_stress(H: Array, E: float, nu: float, thermal_strain: Array) -> Array:
+    """(c, 6, ...) stress of displacement gradients du_i/dx_j (c, 3, 3, ...); see `stresses`."""
+    lam, mu = lame(E, nu)
+    free = ((3 * lam + 2 * mu) * thermal_strain).reshape(-1, *[1] * (H.ndim - 3))
+    normal = lam * (H[:, 0, 0] + H[:, 1, 1] + H[:, 2, 2]) - free
+    out = np.empty((H.shape[0], 6, *H.shape[3:]))
     for i in range(3):
-        out[:, :, i] = normal + 2 * mu * H[:, :, i, i]
+        out[:, i] = normal + 2 * mu * H[:, i, i]
     for k, (i, j) in enumerate(((0, 1), (1, 2), (2, 0)), start=3):
-        out[:, :, k] = mu * (H[:, :, i, j] + H[:, :, j, i])
+        out[:, k] = mu * (H[:, i, j] + H[:, j, i])
     return out
 
 

@@ -11,8 +11,8 @@ from __future__ import annotations
 import numpy as np
 
 from fem.solid.model import SolidModel
-from fem.solid.shape import TET_EDGES, Array
-from fem.solid.stiffness import element_gradients, stresses
+from fem.solid.shape import TET_EDGES, Array, inverse, tet_gradients
+from fem.solid.stiffness import element_gradients, isotropic_stress, stresses
 
 _CHUNK = 8192
 TENSOR = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2]])
@@ -81,13 +81,11 @@ def along(s: Array, direction: Array) -> Array:
 
 def point_stress(model: SolidModel, u: Array, elements: np.ndarray, bary: Array) -> Array:
     """(c, 6, p) raw stress at barycentric points (4, p) of elements (p,), MPa."""
-    from fem.solid.shape import tet_gradients
-
     mesh, material = model.mesh, model.part.material
-    dN = tet_gradients(bary).transpose(2, 0, 1)  # (p, 10, 3)
+    dN = tet_gradients(bary)  # (10, 3, p)
     nodes = mesh.tets[:, elements]
-    x = mesh.nodes[:, nodes].transpose(2, 0, 1)  # (p, 3, 10)
-    g = dN @ np.linalg.inv(x @ dN)
-    ue = u[:, :, nodes].transpose(0, 3, 2, 1)
-    s = stresses(g.reshape(-1, 30, 1), ue, material.E, material.nu, material.expansion * model.change)
-    return s[..., 0].transpose(0, 2, 1)
+    J = np.einsum("iap,ajp->ijp", mesh.nodes[:, nodes], dN)
+    inverted, _ = inverse(J.transpose(2, 0, 1))
+    H = np.einsum("ciap,akp->cikp", u[:, :, nodes], dN)
+    H = np.einsum("cikp,kjp->cijp", H, inverted.transpose(1, 2, 0))  # du_i/dx_j
+    return isotropic_stress(H, material.E, material.nu, material.expansion * model.change)

@@ -58,6 +58,21 @@ def _spring_unknowns(mesh: NamedMesh, T: sp.csr_matrix) -> np.ndarray:
     return T.indices[T.indptr[rows]]
 
 
+def reduced(K: sp.csr_matrix, T: sp.csr_matrix) -> sp.csr_matrix:
+    """T^T K T. Where T only leaves unknowns out, rows and columns are picked instead of multiplied."""
+    counts = np.diff(T.indptr)
+    kept = np.flatnonzero(counts)
+    if counts.max(initial=0) <= 1 and (T.data == 1.0).all() and np.array_equal(T.indices, np.arange(T.shape[1])):
+        place = np.full(K.shape[0], -1, dtype=np.int32)
+        place[kept] = np.arange(kept.size, dtype=np.int32)
+        rows = K[kept]
+        columns = place[rows.indices]
+        stays = columns >= 0
+        starts = np.concatenate([[0], np.cumsum(stays)])[rows.indptr].astype(np.int32)
+        return sp.csr_matrix((rows.data[stays], columns[stays], starts), shape=(kept.size, kept.size))
+    return (T.T @ K @ T).tocsr()
+
+
 def solve_system(
     K: sp.csr_matrix, f: Array, constraints: Constraints, mesh: NamedMesh, budget: Budget, backend: str = "auto"
 ) -> Solution:
@@ -72,7 +87,7 @@ def solve_system(
     if motions:
         raise SolveError("The supports do not hold the part: " + "; ".join(motions) + ". Hold these motions.")
     T, g = constraints.T, constraints.g
-    Ky = (T.T @ K @ T).tocsr()
+    Ky = reduced(K, T)
     rhs = T.T @ (f - (K @ g)[:, None])
     size = np.asarray(T.power(2).sum(axis=0)).ravel()
     y0 = (T.T @ bending_field(mesh.nodes).T.ravel()) / size
