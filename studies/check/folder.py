@@ -18,9 +18,12 @@ RESULT = "result.json"
 
 def refuse_existing(out: Path, replace: bool) -> None:
     """Raise `RunError` when `out` may not be written. Asked before the work, not after it."""
+    if out.parent.exists() and not out.parent.is_dir():
+        raise RunError("write", f"{out.parent} is a file, not a folder: choose another --out")
     if not out.parent.is_dir():
         raise RunError("write", f"the folder {out.parent} does not exist: make it, or choose another --out")
     if not out.exists() and not out.is_symlink():
+        _scratch(out, ".partial").rmdir()  # a folder that cannot be written in is told now
         return
     finished = out.is_dir() and (out / RESULT).is_file()
     empty = out.is_dir() and not any(out.iterdir())
@@ -43,10 +46,7 @@ def _free_name(out: Path) -> Path:
 @contextmanager
 def run_folder(out: Path, replace: bool) -> Iterator[Path]:
     """A temporary folder beside `out` that becomes `out` when the block ends well, and vanishes otherwise."""
-    try:
-        room = Path(tempfile.mkdtemp(prefix=f".{out.name}.", suffix=".partial", dir=out.parent))
-    except OSError as error:
-        raise RunError("write", f"cannot write in {out.parent}: {error.strerror}; choose another --out") from error
+    room = _scratch(out, ".partial")
     try:
         yield room
         room.chmod(0o755)
@@ -55,6 +55,14 @@ def run_folder(out: Path, replace: bool) -> Iterator[Path]:
         raise RunError("write", f"cannot write the run folder {out}: {error.strerror or error}") from error
     finally:
         shutil.rmtree(room, ignore_errors=True)
+
+
+def _scratch(out: Path, suffix: str) -> Path:
+    """A new hidden folder beside `out`."""
+    try:
+        return Path(tempfile.mkdtemp(prefix=f".{out.name[:100]}.", suffix=suffix, dir=out.parent))
+    except OSError as error:
+        raise RunError("write", f"cannot write in {out.parent}: {error.strerror}; choose another --out") from error
 
 
 def _put_in_place(room: Path, out: Path, replace: bool) -> None:

@@ -15,7 +15,7 @@ def run_check(part: str, out: str | None, replace: bool, pictures: bool, threads
     from studies.check.run import check
     from studies.cli.screen import StageView, make_console, print_result
 
-    folder = Path(out) if out else Path(f"{Path(part).stem}.run")
+    folder = Path(out) if out is not None else Path(f"{Path(part).stem}.run")
     console = make_console()
     with StageView(console) as view:
         result = check(part, folder, Budget(threads=threads, memory=memory), view, replace=replace, pictures=pictures)

@@ -20,6 +20,7 @@ FINE, NOT_FINE, SPEC_WRONG, RUN_FAILED, STOPPED = 0, 1, 2, 3, 130
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run one command; returns its exit status (see ``haunch --help``). Never shows a traceback."""
+    _never_fail_to_print()
     parser = make_parser()
     try:
         options = parser.parse_args(arguments)
@@ -50,6 +51,13 @@ def main(arguments: Sequence[str] | None = None) -> int:
         print(f"haunch: an unforeseen fault ({type(error).__name__}) stopped the command; details are in "
               f"{_write_log(error)}", file=sys.stderr)
         return RUN_FAILED
+
+
+def _never_fail_to_print() -> None:
+    """Characters that the terminal's encoding lacks (LANG=C) become question marks, not a fault after the work."""
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="replace")
 
 
 def _stage_words(stage: str) -> str:

@@ -22,7 +22,7 @@ STYLE = {
     "font.family": "DejaVu Sans", "font.size": 11, "axes.titlesize": 12, "axes.labelsize": 11, "legend.fontsize": 10,
     "axes.spines.top": False, "axes.spines.right": False, "axes.grid": True, "grid.color": "#dddddd",
     "grid.linewidth": 0.7, "axes.axisbelow": True, "savefig.facecolor": "white", "figure.facecolor": "white",
-    "svg.hashsalt": "haunch",
+    "svg.hashsalt": "haunch", "text.parse_math": False,
 }
 
 PIXELS = 1500

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import io
 import json
 import os
 import subprocess
@@ -150,3 +151,12 @@ def test_options_reach_the_command() -> None:
                                         "1", "--memory", "1000"])
     assert (options.part, options.out, options.replace, options.pictures, options.threads, options.memory) == \
         ("a.toml", "b", True, False, 1, 1000)
+
+
+def test_a_terminal_without_the_letters_gets_question_marks(answer: Any, monkeypatch: pytest.MonkeyPatch) -> None:
+    out = io.TextIOWrapper(io.BytesIO(), encoding="ascii")
+    monkeypatch.setattr(sys, "stdout", out)
+    answer(title="Größe")
+    assert main(["check", "arm.toml"]) == 0
+    out.seek(0)
+    assert "Gr??e" in out.read()

@@ -76,3 +76,23 @@ def test_a_folder_that_is_no_run_is_never_replaced(tmp_path: Path) -> None:
 def test_a_missing_parent_is_said_at_once(tmp_path: Path) -> None:
     with pytest.raises(RunError, match="does not exist"):
         refuse_existing(tmp_path / "no" / "arm.run", False)
+
+
+def test_a_parent_that_is_a_file_or_cannot_be_written_is_told_before_the_work(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    (tmp_path / "f").touch()
+    with pytest.raises(RunError, match="f is a file, not a folder"):
+        refuse_existing(tmp_path / "f" / "arm.run", False)
+
+    def refuse(**_: object) -> str:
+        raise OSError(30, "Read-only file system")
+
+    monkeypatch.setattr("tempfile.mkdtemp", refuse)
+    with pytest.raises(RunError, match="cannot write in .*Read-only file system"):
+        refuse_existing(tmp_path / "arm.run", False)
+
+
+def test_asking_leaves_nothing_behind(tmp_path: Path) -> None:
+    refuse_existing(tmp_path / ("a" * 240), False)
+    assert list(tmp_path.iterdir()) == []
