@@ -174,8 +174,11 @@ class Actions:
         assert isinstance(region, Face)
         R = self.mesh.axes
         c = np.zeros((len(region.strips), 6))
-        for k, s in enumerate(region.strips):
-            x = s.points[0, 0]
+        for k, (x, s) in enumerate(zip(self.mesh.gauss.reshape(-1, 2)[region.lengths].ravel(), region.strips,
+                                       strict=True)):
+            if not len(s.points):
+                raise RunError("beam", f"load {load.name}: a cut leaves nothing of its face at x = {x:.6g} mm; load two "
+                               "stretches instead")
             t = (x - load.start) / (load.end - load.start)
             q = (1.0 - t) * (R @ load.first) + t * (R @ load.last)
             middle = s.weight @ s.points / s.weight.sum()
@@ -309,9 +312,10 @@ def _face_sites(region: Face) -> list[tuple[int, Array, Array]]:
     size across is held like a knife edge, at its middle.
     """
     first = int(region.lengths[0])
-    size = max(float(np.ptp(s.points[:, 1:], axis=0).max()) for s in region.ends)
+    whole = [k for k, s in enumerate(region.ends) if len(s.points)]  # not where a cut takes the whole width
+    size = max(float(np.ptp(region.ends[k].points[:, 1:], axis=0).max()) for k in whole)
     short = float(region.h.sum()) < KNIFE_EDGE * max(size, region.depth)
-    which = [len(region.ends) // 2] if short else range(len(region.ends))
+    which = [whole[len(whole) // 2]] if short else whole
     found = []
     for k in which:
         s = region.ends[k]

@@ -61,8 +61,8 @@ def _rim(cut: Cut, sections: Sections) -> tuple[Array, Array]:
     return np.column_stack([cut.at + mid[:, 0] * c - mid[:, 1] * s, cut.offset + mid[:, 0] * s + mid[:, 1] * c]), ds
 
 
-def _rounded(length: float, depth: float, radius: float) -> tuple[Array, Array]:
-    """Rim of a rounded rectangle about its middle: points and arc lengths."""
+def _rounded(length: float, depth: float, radius: float, sides: int = 8) -> tuple[Array, Array]:
+    """Rim of a rounded rectangle about its middle: points (`sides` on each straight one) and arc lengths."""
     points, ds = [], []
     r, (a, b) = radius, (0.5 * length - radius, 0.5 * depth - radius)
     corners = [(a, b), (-a, b), (-a, -b), (a, -b)]
@@ -75,9 +75,9 @@ def _rounded(length: float, depth: float, radius: float) -> tuple[Array, Array]:
         side = np.hypot(nxt[0] - p, nxt[1] - q)
         if side > 1e-12:
             n = np.array([np.cos(first + 0.5 * np.pi), np.sin(first + 0.5 * np.pi)]) * r
-            t = (np.arange(8) + 0.5) / 8
+            t = (np.arange(sides) + 0.5) / sides
             points.append(np.array([p, q]) + n + t[:, None] * (np.array(nxt) - np.array([p, q])))
-            ds.append(np.full(8, side / 8))
+            ds.append(np.full(sides, side / sides))
     return np.vstack(points), np.concatenate(ds)
 
 
@@ -86,7 +86,8 @@ def _notch_rim(cut: Cut, sections: Sections) -> tuple[Array, Array]:
     e = sections.integrals(cut.at).extremes
     edge, sign = {"top": (e[0, 1], 1.0), "bottom": (e[1, 1], -1.0), "left": (e[2, 0], -1.0),
                   "right": (e[3, 0], 1.0)}[cut.edge]
-    points, ds = _rounded(cut.length, 2.0 * cut.depth, min(cut.corner_radius, 0.5 * cut.length))
+    # finely, as the material behind an edge begins and ends at flanges and walls
+    points, ds = _rounded(cut.length, 2.0 * cut.depth, min(cut.corner_radius, 0.5 * cut.length), 80)
     keep = points[:, 1] < 0.0
     inwards = points[keep]
     return np.column_stack([cut.at + inwards[:, 0], edge + sign * inwards[:, 1]]), ds[keep]

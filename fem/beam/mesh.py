@@ -16,6 +16,7 @@ from fem.beam.element import GAUSS, transfer_matrices
 from fem.beam.equations import Line
 from fem.beam.faces import FACES, curve, face_edges, strip
 from fem.beam.law import LineProperties
+from fem.beam.outlines.net import taken_at
 from fem.beam.regions import EndFace, Face, Region, Strip
 from geometry.part import LineLoad, Member, Part
 from geometry.problem import RunError
@@ -166,7 +167,10 @@ class BeamMesh:
         edges = face_edges(before, face, tips=self.member.section.shape == "I")
         if not edges:
             raise RunError("beam", f"region {name}: a {self.member.section.shape} has no plane face {face}")
-        return strip(x, (x - a - inset) / (b - a - 2 * inset), before, after, b - a - 2 * inset, edges, across)
+        cuts = tuple(c for c in self.member.cuts if extent(c)[0] < x < extent(c)[1])
+        taken = taken_at(self.member, x, "before" if x == b else "after", cuts) if cuts else ()
+        share = (x - a - inset) / (b - a - 2 * inset)
+        return strip(x, share, before, after, b - a - 2 * inset, edges, across, taken)
 
 
 def _nodes(part: Part, member: Member, length: float) -> Array:

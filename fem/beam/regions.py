@@ -20,7 +20,8 @@ Array = NDArray[np.float64]
 class Strip:
     """What a face shows of itself at one station: points (k, 3), area per length (k,), area vector per length (k, 3).
 
-    The area vector points out of the material and holds the inclination of a tapered face.
+    The area vector points out of the material and holds the inclination of a tapered face. There are no points where
+    a cut takes the whole width.
     """
 
     points: Array

@@ -103,7 +103,8 @@ def line_offset(member: Member) -> tuple[float, float]:
     Taken on the section itself, before edge radii.
     """
     section, where = member.section, member.line_at
-    start = outline_of(section.shape, dims_at(member, 0.0), section.outline)
+    dims = dims_at(member, 0.0)
+    start = outline_of(section.shape, dims, section.outline)
     if where == "origin":
         return 0.0, 0.0
     exact = outline_integrals(start)
@@ -112,7 +113,7 @@ def line_offset(member: Member) -> tuple[float, float]:
     if where == "web":
         if section.shape not in ("I", "tee", "channel"):
             raise OutlineError(f"member {member.name}: line_at web, but a section of shape {section.shape} has no web.")
-        return (section.dims["web"] / 2 if section.shape == "channel" else 0.0), 0.0
+        return (dims["web"] / 2 if section.shape == "channel" else 0.0), 0.0
     top, bottom, left, right = exact.extremes
     levels = {"top": (None, top[1]), "bottom": (None, bottom[1]), "left": (left[0], None), "right": (right[0], None)}
     y, z = 0.0, 0.0

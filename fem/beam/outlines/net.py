@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass
 
 from fem.beam.outlines.clip import clip, crossings, take_out
 from fem.beam.outlines.loops import Corner, OutlineError, circle, rounded_polygon, turned
@@ -31,10 +32,9 @@ def net_section(
 
     Raises `OutlineError` when nothing is left.
     """
-    gross = member_outline(member, x, side)
-    pieces = [gross]
-    for cut in member.cuts if cuts is None else cuts:
-        pieces = _without(pieces, gross, member, cut, x)
+    pieces = [member_outline(member, x, side)]
+    for taken in taken_at(member, x, side, cuts):
+        pieces = _without(pieces, taken)
     if not pieces:
         raise OutlineError(f"member {member.name}: the cuts at {x:g} mm leave nothing of the section.")
     return tuple(pieces)
@@ -67,26 +67,51 @@ def notch_depth(cut: Cut, x: float) -> float:
     return cut.depth - r + math.sqrt(r * r - beyond * beyond)
 
 
-def _without(pieces: list[Outline], gross: Outline, member: Member, cut: Cut, x: float) -> list[Outline]:
+@dataclass(frozen=True, slots=True)
+class Taken:
+    """What a cut takes at one station: `low` to `high` along `axis` (0: y, 1: z) and, unless None, between `other`."""
+
+    axis: int
+    low: float
+    high: float
+    other: tuple[float, float] | None = None
+
+
+def taken_at(member: Member, x: float, side: Side = "after", cuts: tuple[Cut, ...] | None = None) -> list[Taken]:
+    """What each cut takes of the section at `x`, mm from the declared line; a notch's range has no end outwards."""
+    gross = member_outline(member, x, side)
+    found = (_taken(gross, member, cut, x) for cut in (member.cuts if cuts is None else cuts))
+    return [t for t in found if t is not None]
+
+
+def _taken(gross: Outline, member: Member, cut: Cut, x: float) -> Taken | None:
     axis = 1 if cut.axis == "y" else 0  # the coordinate across the tool
     if cut.kind == "notch":
         depth = notch_depth(cut, x)
         if depth <= 0.0:
-            return pieces
+            return None
         # the tool is straight: its depth counts from where the edge is at the middle of the notch
         top, bottom, left, right = extreme_points([member_outline(member, cut.at)])
         edge = {"top": top[1], "bottom": bottom[1], "left": left[0], "right": right[0]}[cut.edge]
-        inwards = -1.0 if cut.edge in ("top", "right") else 1.0
-        level = float(edge) + inwards * depth
-        return [p for piece in pieces for p in clip(piece, axis, level, above=inwards > 0)]
+        if cut.edge in ("top", "right"):
+            return Taken(axis, float(edge) - depth, math.inf)
+        return Taken(axis, -math.inf, float(edge) + depth)
     taken = chord(cut, x)
     if taken is None:
-        return pieces
+        return None
     half = _HALVES.get(cut.through)
     if half is None:
-        return take_out(pieces, axis, *taken)
+        return Taken(axis, *taken)
     top, bottom, left, right = extreme_points([gross])
     middle = float(left[0] + right[0]) / 2 if cut.axis == "y" else float(top[1] + bottom[1]) / 2
     span = float(max(top[1] - bottom[1], right[0] - left[0]))
     low, high = (middle + max(min(h, span), -span) for h in half)
-    return take_out(pieces, axis, *taken, other=(low, high))
+    return Taken(axis, *taken, (low, high))
+
+
+def _without(pieces: list[Outline], t: Taken) -> list[Outline]:
+    if math.isinf(t.high):
+        return [p for piece in pieces for p in clip(piece, t.axis, t.low, above=False)]
+    if math.isinf(t.low):
+        return [p for piece in pieces for p in clip(piece, t.axis, t.high, above=True)]
+    return take_out(pieces, t.axis, t.low, t.high, other=t.other)
