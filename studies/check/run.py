@@ -5,6 +5,7 @@ from __future__ import annotations
 import dataclasses
 import sys
 from collections.abc import Mapping
+from concurrent.futures import ThreadPoolExecutor
 from contextlib import ExitStack
 from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
@@ -88,29 +89,41 @@ def _read(part: Part | str | Path) -> tuple[str, Part]:
 
 
 def build_models(part: Part, budget: Budget, clock: Clock) -> Models:
-    """Solve both models. The CAD solid is built in a child process while the beam model is solved here."""
+    """Solve both models. The solid is built and meshed, in child processes, while the beam model is solved here."""
     with ExitStack() as stack:
         clock.tell(Event("solid", "start"))
         with blamed_on("solid"):
+            # Left last: a meshing job under way is waited for, so that nothing of it stays behind.
+            pool = stack.enter_context(ThreadPoolExecutor(1, "mesh"))
             child = stack.enter_context(SolidChild(part, budget))
+        meshed = pool.submit(_build_and_mesh, child, part, budget, clock)
         with clock.stage("beam"):
             from fem.beam import solve_beam
 
             beam = solve_beam(part, budget)
-        with blamed_on("solid"):
-            named_solid, seconds = child.result()
-        clock.finish("solid", seconds, f"{len(named_solid.faces)} faces, {named_solid.volume:.6g} mm^3")
+        with blamed_on("solve"):  # what it needs is loaded while the mesh is made
+            from fem.solid import solve_solid
+            from fem.solid.factor import pardiso_available
+
+            pardiso_available()
+        named_solid, mesh = meshed.result()
+    with clock.stage("solve"):
+        solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text),
+                            sharp_edges=[(edge.label, edge.points) for edge in named_solid.sharp_edges])
+    return Models(part, named_solid, mesh, beam, solid)
+
+
+def _build_and_mesh(child: SolidChild, part: Part, budget: Budget, clock: Clock) -> tuple[NamedSolid, NamedMesh]:
+    """Wait for the solid, then mesh it."""
+    with blamed_on("solid"):
+        named_solid, seconds = child.result()
+    clock.finish("solid", seconds, f"{len(named_solid.faces)} faces, {named_solid.volume:.6g} mm^3")
     with clock.stage("mesh"):
         from mesher import mesh_solid
 
         mesh = mesh_solid(named_solid, part.accuracy, budget)
         clock.note("mesh", f"{mesh.tets.shape[1]} tetrahedra, {mesh.nodes.shape[1]} nodes")
-    with clock.stage("solve"):
-        from fem.solid import solve_solid
-
-        solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text),
-                            sharp_edges=[(edge.label, edge.points) for edge in named_solid.sharp_edges])
-    return Models(part, named_solid, mesh, beam, solid)
+    return named_solid, mesh
 
 
 def _compare(models: Models, name: str, started: str, clock: Clock) -> CheckResult:

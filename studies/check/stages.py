@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import threading
 import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -33,11 +34,14 @@ class Clock:
 
     listener: Listener | None = None
     done: list[Stage] = field(default_factory=list)
+    lock: threading.Lock = field(default_factory=threading.Lock)
+    """One event at a time: stages run side by side."""
 
     def tell(self, event: Event) -> None:
         """Pass an event on."""
-        if self.listener is not None:
-            self.listener(event)
+        with self.lock:
+            if self.listener is not None:
+                self.listener(event)
 
     def note(self, stage: str, text: str) -> None:
         """Say something about a stage."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -48,7 +49,12 @@ def outline_integrals(outline: Outline | Sequence[Outline]) -> OutlineIntegrals:
     over at most a full turn: rounding error only). Shifting the origin to a point of the outline first
     keeps the digits of a section drawn far from its origin.
     """
-    outlines = [outline] if isinstance(outline, Outline) else list(outline)
+    return _integrals((outline,) if isinstance(outline, Outline) else tuple(outline))
+
+
+@lru_cache(maxsize=1024)
+def _integrals(outlines: tuple[Outline, ...]) -> OutlineIntegrals:
+    """Kept, as the same sections are asked for again and again along a member."""
     origin = outlines[0].outer[0].start
     m = np.zeros(6)
     for edge in _edges(outlines):
@@ -59,6 +65,7 @@ def outline_integrals(outline: Outline | Sequence[Outline]) -> OutlineIntegrals:
     yc, zc = y + origin[0], z + origin[1]
     I1, I2, angle = principal_moments(Iyy, Izz, Iyz)
     points = extreme_points(outlines)
+    points.flags.writeable = False
     reach = [float(abs(v)) for v in (points[0, 1] - zc, points[1, 1] - zc, points[2, 0] - yc, points[3, 0] - yc)]
     return OutlineIntegrals(area, yc, zc, Iyy, Izz, Iyz, I1, I2, angle, points,
                             Iyy / reach[0], Iyy / reach[1], Izz / reach[2], Izz / reach[3])
