@@ -373,3 +373,22 @@ def test_one_mistake_does_not_bring_others_with_it() -> None:
     assert len(problems(CAMERA_ARM, ('to      = ["reach", ', "to = [360, "))) == 1
     assert len(problems(CAMERA_ARM, ('root_depth = "60 mm"', 'root_depth = "60 mmm"'))) == 1
     assert len(problems(CAMERA_ARM, ('shape = "I"', 'shape = "H"'))) == 1
+
+
+def test_a_misspelt_word_hides_nothing_and_is_told_once() -> None:
+    """Table, word and shape misspelt: what stands in them is read as it was meant."""
+    found = problems(CAMERA_ARM, ("[loads.camera]", "[load.camera]"), ("depth = ", "dept = "), ('"I"', '"II"'),
+                     ('hold = "all"', 'hold = "al"'), ("arm.start", "arm.strat"), ("arm.end", "arm.edn"),
+                     ("force = [", "forse = ["))  # fmt: skip
+    assert {p.path for p in found} == {
+        "load", "members.arm.section.shape", "supports.wall.hold", "supports.wall.on", "loads.camera.on",
+        "loads.camera.forse", "members.arm.section.dept", "members.arm.taper.dept",
+    }  # fmt: skip
+
+
+def test_percent_left_out_of_the_accuracy() -> None:
+    assert 'Did you mean "8 %"' in only(problems("accuracy = 8\n" + CAMERA_ARM)).fix
+
+
+def test_an_endless_factor_is_told_once() -> None:
+    assert only(problems(CAMERA_ARM, ("camera = 1.0", "camera = inf"))).allowed == "a finite number"

@@ -37,6 +37,7 @@ UNREADABLE = "\0unreadable"
 def shown(value: Any) -> str:
     """A value as it is quoted in a message, never longer than a line."""
     text = f'"{value}"' if isinstance(value, str) else str(value)
+    text = text.lower() if isinstance(value, bool) else text
     return text if len(text) <= LONGEST_GIVEN else text[: LONGEST_GIVEN - 3] + "..."
 
 
@@ -88,6 +89,7 @@ class Values:
             value = _as_float(text)
             if not math.isfinite(value):
                 self.problem(path, shown(text), "a finite number")
+                return math.nan
         else:
             unit = mark.kind.unit
             self.problem(path, shown(text), f'{with_article(mark.word)} with its unit, as text: "{mark.kind.example}"',
@@ -99,7 +101,9 @@ class Values:
             or (mark.most is not None and value > mark.most)
         )
         if outside:
-            self.problem(path, _with_value(text, value, mark.kind.unit), f"{with_article(mark.word)} {mark.range}")
+            percent = mark.word == "number" and mark.most is not None and mark.most < 1.0 <= value <= 100.0 * mark.most
+            self.problem(path, _with_value(text, value, mark.kind.unit), f"{with_article(mark.word)} {mark.range}",
+                         f'Did you mean "{value:g} %"?' if percent else "")  # fmt: skip
             return math.nan
         if 0.0 < abs(value) < mark.finest:
             self.problem(

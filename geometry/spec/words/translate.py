@@ -41,6 +41,7 @@ def read_leniently(data: Mapping[str, Any]) -> tuple[PartSpec | None, list[Probl
     """The spec as far as it can be read, the mistakes of structure, and the tables that lost something."""
     problems: dict[str, Problem] = {}
     removed: set[str] = set()
+    respelt: set[Path] = set()
     rest: Any = copy.deepcopy(dict(data))
     for _ in range(MOST_ROUNDS):
         try:
@@ -48,13 +49,48 @@ def read_leniently(data: Mapping[str, Any]) -> tuple[PartSpec | None, list[Probl
         except ValidationError as error:
             found = _by_path(error.errors(include_url=False), rest)
         first = not problems
+        # Later rounds find what the repairs leave behind, and new mistakes only in tables that were misspelt.
+        new = {path for path in found if first or any(path[: len(table)] == table for table in respelt)}
+        meant = _meant({path: found[path] for path in new}, rest)
         for path, details in found.items():
-            if first:
+            if path in new and path not in meant.values():  # a word that is there, misspelt, is not missing as well
                 problems.setdefault(written(path), _problem(path, details, rest))
+        respelt.update(meant.values())
+        respelt.update(p for p in new if "union_tag_invalid" in {e["type"] for e in found[p]})
         # Deepest first: a table may have to go as a whole after something in it was replaced.
         for path in sorted(found, key=len, reverse=True):
-            _repair(rest, path, found[path], removed)
+            if path in meant:
+                _respell(rest, path, str(meant[path][-1]))
+            elif path not in meant.values() or below(_parent(rest, path), path[-1]) is None:
+                _repair(rest, path, found[path], removed)
     return None, list(problems.values()), removed
+
+
+def _meant(found: Mapping[Path, list[ErrorDetails]], data: Any) -> dict[Path, Path]:
+    """Misspelt words and what they stand for, so that what follows in their tables is read as it was meant."""
+    meant: dict[Path, Path] = {}
+    for path, errors in found.items():
+        parent = _parent(data, path)
+        if "extra_forbidden" not in {error["type"] for error in errors} or not isinstance(parent, dict):
+            continue
+        model = model_of(at_path(PartSpec, data, path[:-1]), parent)
+        near = nearest(str(path[-1]), words_of(model)) if model else ""
+        target = (*path[:-1], near)
+        if near and near not in parent and target not in meant.values():
+            meant[path] = target
+    return meant
+
+
+def _parent(data: Any, path: Path) -> Any:
+    for step in path[:-1]:
+        data = below(data, step)
+    return data
+
+
+def _respell(data: Any, path: Path, word: str) -> None:
+    parent = _parent(data, path)
+    if isinstance(parent, dict) and path[-1] in parent:
+        parent[word] = parent.pop(path[-1])
 
 
 def _by_path(errors: list[ErrorDetails], data: Any) -> dict[Path, list[ErrorDetails]]:
@@ -171,6 +207,14 @@ def _unknown_shape(where: str, given: Any) -> Problem:
     return Problem(f"{where}.shape", shown(shape), f"one of {listed(DIMS)}", f'Did you mean "{near}"?' if near else "")
 
 
+def _near_shape(parent: Any, last: str | int) -> str:
+    from geometry.spec.resolve.member import DIMS
+
+    given = below(parent, last)
+    shape = given.get("shape") if isinstance(given, dict) else None
+    return nearest(shape, list(DIMS)) if isinstance(shape, str) else ""
+
+
 def _repair(data: Any, path: Path, errors: list[ErrorDetails], removed: set[str]) -> None:
     """Take the mistake at `path` out of `data`, in place."""
     if not path:
@@ -183,6 +227,12 @@ def _repair(data: Any, path: Path, errors: list[ErrorDetails], removed: set[str]
     if parent is None:
         return  # it has gone with a table above it
     annotation = at_path(PartSpec, data, path)
+    if path[0] == "supports" and len(path) > 2 and path[2] == "hold" and isinstance(data["supports"][path[1]], dict):
+        data["supports"][path[1]]["hold"] = "all"  # its region is looked at all the same
+        return
+    if "union_tag_invalid" in kinds and _near_shape(parent, last):
+        parent[last]["shape"] = _near_shape(parent, last)  # its dimensions tell whether that was meant
+        return
     if "extra_forbidden" not in kinds and annotation is not None and mark_in(annotation) is not None:
         parent[last] = UNREADABLE
     elif "extra_forbidden" not in kinds and (low := _counts(annotation)[0]) and _holds_quantities(annotation):
