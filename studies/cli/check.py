@@ -10,6 +10,7 @@ from geometry.budget import Budget
 
 def run_check(part: str, out: str | None, replace: bool, pictures: bool, threads: int, memory: int) -> int:
     """Check one part and print what was found; 0 when it is fine, else 1."""
+    os.environ.setdefault("KMP_BLOCKTIME", "0")  # waiting threads sleep: the cores are shared with the child processes
     for name in ("OMP_NUM_THREADS", "MKL_NUM_THREADS", "OPENBLAS_NUM_THREADS", "NUMBA_NUM_THREADS"):
         os.environ.setdefault(name, str(threads))  # read once, when the libraries are loaded
     from studies.check.run import check

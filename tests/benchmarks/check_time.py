@@ -1,15 +1,21 @@
 """Where the time of a check goes. A script: ``python tests/benchmarks/check_time.py [PART.toml] [--repeats N]``.
 
-Each check runs in a process of its own, as a user's does, so imports are part of the times. Seconds say little about
-another machine: beside them stand ratios to two reference kernels timed in the same minute, one bound by arithmetic
-(a dense matrix product) and one by memory (``a = b + s c`` on long vectors).
+Start-up (imports, finding MKL) is timed on its own; then every stage runs one after the other in the warm process, with
+its wall and CPU seconds. The CAD kernel is loaded in this process too; the mesh kernel's child processes start anew
+each time, as in a user's run, and their CPU seconds count. Pictures are left out unless asked for. A whole run in a
+process of its own, where stages overlap, ends the list.
+
+Seconds say little about another machine: beside them stand ratios to two reference kernels timed in the same
+run, one bound by arithmetic (a dense matrix product) and one by memory (``a = b + s c`` on long vectors). On a machine
+that others use too, the CPU seconds are the ones to compare.
 """
 
 from __future__ import annotations
 
 import argparse
-import json
+import importlib
 import os
+import resource
 import statistics
 import subprocess
 import sys
@@ -17,33 +23,48 @@ import tempfile
 import time
 from collections.abc import Callable
 from pathlib import Path
+from typing import Any, NamedTuple
 
 ROOT = Path(__file__).resolve().parents[2]
 DEMO = ROOT / "studies" / "examples" / "camera_arm.toml"
+SMALL = ROOT / "studies" / "examples" / "cantilever.toml"
 LIMIT = 900  # s for one check
+SIDE_BY_SIDE = (("beam",), ("solid", "mesh"))
 RUN = """
-import json
 import sys
 from geometry.budget import Budget
 from studies.check.run import check
-result = check(sys.argv[1], sys.argv[2], Budget(threads=int(sys.argv[3])))
-stages = {stage.name: stage.seconds for stage in result.stages}
-print(json.dumps([stages, f"{result.mesh.tets} tetrahedra, {result.mesh.nodes} nodes"]))
+check(sys.argv[1], sys.argv[2], Budget(threads=int(sys.argv[3])), pictures=sys.argv[4] == "1")
 """
 
 
-def best(kernel: Callable[[], object], repeats: int = 5) -> float:
-    """Shortest of several times, s: the one least disturbed by others."""
-    times = []
-    for _ in range(repeats):
-        begin = time.perf_counter()
-        kernel()
-        times.append(time.perf_counter() - begin)
-    return min(times)
+class Spent(NamedTuple):
+    """Seconds on the wall, and CPU seconds of this process and its ended children."""
+
+    wall: float
+    cpu: float
 
 
-def reference_times() -> tuple[float, float]:
-    """Seconds of a 1500 x 1500 matrix product (6.75 GFLOP) and of a triad on 2e7 doubles (480 MB moved)."""
+def timed(work: Callable[[], Any]) -> tuple[Spent, Any]:
+    """What some work takes, and what it returns."""
+    wall, cpu = time.perf_counter(), _cpu()
+    answer = work()
+    return Spent(time.perf_counter() - wall, _cpu() - cpu), answer
+
+
+def _cpu() -> float:
+    used = [resource.getrusage(who) for who in (resource.RUSAGE_SELF, resource.RUSAGE_CHILDREN)]
+    return sum(u.ru_utime + u.ru_stime for u in used)
+
+
+def best(kernel: Callable[[], object], repeats: int = 5) -> Spent:
+    """Shortest of several times: the one least disturbed by others."""
+    times = [timed(kernel)[0] for _ in range(repeats)]
+    return Spent(min(t.wall for t in times), min(t.cpu for t in times))
+
+
+def reference_times() -> tuple[Spent, Spent]:
+    """Times of a 1500 x 1500 matrix product (6.75 GFLOP) and of a triad on 2e7 doubles (480 MB moved)."""
     import numpy as np
 
     rng = np.random.default_rng(0)
@@ -57,44 +78,105 @@ def reference_times() -> tuple[float, float]:
     return best(lambda: a @ b), best(triad)
 
 
-def one_check(part: Path, threads: int) -> tuple[dict[str, float], float, str]:
-    """Seconds of each stage, seconds of the whole process, and the size of the mesh in words."""
+def start_up() -> dict[str, Spent]:
+    """Load everything that a check loads."""
+
+    def load() -> None:
+        for name in ("geometry.spec", "mesher", "fem.beam", "fem.solid", "studies.check.run", "studies.judge"):
+            importlib.import_module(name)
+        from fem.solid.factor import pardiso_available
+
+        pardiso_available()
+
+    def cad() -> None:
+        importlib.import_module("cadquery")
+
+    return {"Haunch": timed(load)[0], "CAD kernel": timed(cad)[0]}
+
+
+def stages(part: Path, threads: int, pictures: bool) -> tuple[dict[str, Spent], str]:
+    """Times of each stage, one after the other, and the size of the mesh in words."""
+    from fem.beam import solve_beam
+    from fem.beam.section import integrals
+    from fem.solid import solve_solid
+    from geometry.budget import Budget
+    from geometry.solid import build_solid
+    from geometry.spec import read_part
+    from mesher import mesh_solid
+    from studies.check import run
+    from studies.check.stages import Clock
+
+    integrals._integrals.cache_clear()  # a user's run begins without them
+    budget, clock, spent = Budget(threads=threads), Clock(), {}
+    spent["spec"], resolved = timed(lambda: read_part(part))
+    spent["solid"], solid = timed(lambda: build_solid(resolved))
+    spent["mesh"], mesh = timed(lambda: mesh_solid(solid, resolved.accuracy, budget))
+    spent["beam"], beam = timed(lambda: solve_beam(resolved, budget))
+    sharp = [(edge.label, edge.points) for edge in solid.sharp_edges]
+    spent["solve"], solved = timed(lambda: solve_solid(resolved, mesh, budget, sharp_edges=sharp))
+    models = run.Models(resolved, solid, mesh, beam, solved)
+    spent["compare"], result = timed(lambda: run._compare(models, part.name, "", clock))
+    with tempfile.TemporaryDirectory() as room:
+        spent["write"], _ = timed(lambda: run.write_run(Path(room), result, models, clock, pictures))
+    parts = ", ".join(f"{name} {seconds:.2f}" for name, seconds in solved.timings.items())
+    size = f"{mesh.tets.shape[1]} tetrahedra, {mesh.nodes.size} displacements\nwithin solve (wall): {parts}"
+    return spent, size
+
+
+def whole_run(part: Path, threads: int, pictures: bool) -> Spent:
+    """A run in a process of its own, start-up included."""
     with tempfile.TemporaryDirectory() as folder:
-        words = [sys.executable, "-c", RUN, str(part), str(Path(folder) / "timed.run"), str(threads)]
-        begin = time.perf_counter()
-        told = subprocess.run(words, check=True, timeout=LIMIT, stdout=subprocess.PIPE, text=True).stdout
-        whole = time.perf_counter() - begin
-    # The last stage, writing, is timed in what the check returns and cannot be in the file that it writes.
-    stages, mesh = json.loads(told.splitlines()[-1])
-    return stages, whole, mesh
+        words = [sys.executable, "-c", RUN, str(part), str(Path(folder) / "timed.run"), str(threads),
+                 str(int(pictures))]
+        return timed(lambda: subprocess.run(words, check=True, timeout=LIMIT, cwd=ROOT))[0]
 
 
-def table(runs: list[tuple[dict[str, float], float, str]], product: float, triad: float) -> str:
-    """The times as text: the median, the least and the largest, and the median over each reference kernel."""
-    names = list(runs[0][0])
-    rows = [(name, [stages[name] for stages, _, _ in runs]) for name in names]
-    # Stages overlap (the solid is built while the beam is solved), so the rest cannot be told by subtraction.
-    rows.append(("whole process", [whole for _, whole, _ in runs]))
-    lines = [f"{'stage':<14}{'median s':>10}{'least':>8}{'most':>8}{'x product':>11}{'x triad':>9}"]
-    for name, times in rows:
-        mid = statistics.median(times)
-        lines.append(
-            f"{name:<14}{mid:>10.2f}{min(times):>8.2f}{max(times):>8.2f}{mid / product:>11.1f}{mid / triad:>9.1f}"
-        )
-    return "\n".join(lines)
+def table(runs: list[dict[str, Spent]], product: Spent, triad: Spent) -> str:
+    """Medians over the runs, and their ratios in CPU seconds to the reference kernels."""
+    rows = {name: Spent(statistics.median(r[name].wall for r in runs), statistics.median(r[name].cpu for r in runs))
+            for name in runs[0]}
+    beside = [name for names in SIDE_BY_SIDE for name in names]
+    rest = sum(spent.wall for name, spent in rows.items() if name not in beside)
+    longest = max(sum(rows[name].wall for name in names) for names in SIDE_BY_SIDE)
+    rows["check"] = Spent(rest + longest, sum(spent.cpu for spent in rows.values()))
+    lines = [f"{'stage':<10}{'wall s':>9}{'CPU s':>9}{'CPU / product':>15}{'CPU / triad':>13}"]
+    for name, (wall, cpu) in rows.items():
+        lines.append(f"{name:<10}{wall:>9.2f}{cpu:>9.2f}{cpu / product.cpu:>15.1f}{cpu / triad.cpu:>13.1f}")
+    return "\n".join([*lines, "check: wall with the beam beside solid and mesh, as a run does them; CPU of all"])
 
 
 def main() -> None:
     parser = argparse.ArgumentParser(description="Stage times of haunch check, beside two reference kernels.")
     parser.add_argument("part", nargs="?", type=Path, default=DEMO)
     parser.add_argument("--repeats", type=int, default=3)
-    parser.add_argument("--threads", type=int, default=os.cpu_count() or 1)
+    parser.add_argument("--threads", type=int, default=2)
+    parser.add_argument("--pictures", action="store_true", help="draw the pictures too")
     options = parser.parse_args()
+    part = options.part.resolve()
+    for name in ("OMP_NUM_THREADS", "MKL_NUM_THREADS", "OPENBLAS_NUM_THREADS"):
+        os.environ.setdefault(name, str(options.threads))
+    os.environ.setdefault("KMP_BLOCKTIME", "0")
+    sys.path.insert(0, str(ROOT))
+    loading = start_up()
     product, triad = reference_times()
-    runs = [one_check(options.part.resolve(), options.threads) for _ in range(options.repeats)]
-    print(f"{options.part.name}: {runs[0][2]}; {options.repeats} runs, {options.threads} threads")
-    print(f"reference: matrix product {product * 1e3:.0f} ms, triad {triad * 1e3:.0f} ms\n")
-    print(table(runs, product, triad))
+    stages(SMALL, options.threads, options.pictures)  # what is loaded or prepared at the first use
+    runs, size = [], ""
+    for _ in range(options.repeats):
+        spent, size = stages(part, options.threads, options.pictures)
+        runs.append(spent)
+    again = reference_times()
+    print(f"{part.name}: {size}\n{options.repeats} runs, {options.threads} threads, "
+          f"load {os.getloadavg()[0]:.1f} on {os.cpu_count()} cores")
+    for name, first, last in (("matrix product", product, again[0]), ("triad", triad, again[1])):
+        print(f"reference {name}: wall {first.wall * 1e3:.0f} and {last.wall * 1e3:.0f} ms before and after, "
+              f"CPU {first.cpu * 1e3:.0f} and {last.cpu * 1e3:.0f} ms")
+    for name, (wall, cpu) in loading.items():
+        print(f"start-up {name}: wall {wall:.2f} s, CPU {cpu:.2f} s")
+    print(f"\n{table(runs, product, triad)}")
+    wall, cpu = whole_run(part, options.threads, options.pictures)
+    print(f"\nwhole run in a new process, start-up included: wall {wall:.2f} s, CPU {cpu:.2f} s")
+    peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
+    print(f"most memory of this process (reference kernels and CAD kernel included): {peak:.0f} MiB")
 
 
 if __name__ == "__main__":
