@@ -217,14 +217,14 @@ def _mass(mesh: BeamMesh) -> Iterator[Figure]:
     h = np.diff(mesh.x)
     x = (mesh.x[:-1, None] + h[:, None] * 0.5 * (t + 1.0)).ravel()
     p = mesh.sections.net(x)
-    dm = mesh.part.material.density * p.area * (h[:, None] * 0.5 * w).ravel()
-    moment = np.array([dm @ x, dm @ p.yc, dm @ p.zc])
-    mass = float(dm.sum())
+    dv = p.area * (h[:, None] * 0.5 * w).ravel()
+    moment = np.array([dv @ x, dv @ p.yc, dv @ p.zc])
+    whole = float(dv.sum())
     for volume, point in fillet_volumes(mesh):
-        mass += mesh.part.material.density * volume
-        moment += mesh.part.material.density * volume * point
-    centre = moment / mass
-    yield Figure(FigureKey("", "", "mass", ""), mass, "t")
+        whole += volume
+        moment += volume * point
+    centre = moment / whole  # of the volume: it has one even when no density is declared
+    yield Figure(FigureKey("", "", "mass", ""), mesh.part.material.density * whole, "t")
     for i, value in enumerate(mesh.axes.T @ centre + np.array(mesh.member.start)):
         yield Figure(FigureKey("", "", "centre_of_mass", XYZ[i]), float(value), "mm")
 
