@@ -14,6 +14,7 @@ import signal
 import subprocess
 import sys
 import tempfile
+import threading
 import time
 from collections.abc import Mapping
 from contextlib import suppress
@@ -24,7 +25,7 @@ from typing import Any, Literal
 import numpy as np
 from numpy.typing import NDArray
 
-Ending = Literal["refused", "time", "memory", "crash"]
+Ending = Literal["refused", "time", "memory", "crash", "stopped"]
 
 _ADDRESS_SPACE_MARGIN = 1024
 """MiB of address space allowed above the memory limit: libraries map far more than they touch."""
@@ -33,7 +34,7 @@ _ADDRESS_SPACE_MARGIN = 1024
 class ChildFailure(Exception):
     """The child gave no result.
 
-    ``ending``: ``refused`` (the kernel or a check raised an exception), ``time``, ``memory`` or ``crash``.
+    ``ending``: ``refused`` (the kernel or a check raised an exception), ``time``, ``memory``, ``crash`` or ``stopped``.
     ``kind`` is the name of the child's exception, ``facts`` what it told about it, ``log`` the kernel's output.
     """
 
@@ -59,7 +60,11 @@ class ChildResult:
 
 
 def run_child(
-    job: Mapping[str, Any], seconds: float, memory: float, files: Mapping[str, bytes] | None = None
+    job: Mapping[str, Any],
+    seconds: float,
+    memory: float,
+    files: Mapping[str, bytes] | None = None,
+    stop: threading.Event | None = None,
 ) -> ChildResult:
     """Run one job of `mesher._worker` and wait for it.
 
@@ -73,11 +78,13 @@ def run_child(
         Limit of the child's resident memory, MiB.
     files
         Further files for the child's folder, by name.
+    stop
+        Set from another thread, it ends the child at once.
 
     Raises
     ------
     ChildFailure
-        No result: exception in the child, time limit, memory limit, or a crash.
+        No result: exception in the child, time limit, memory limit, a crash, or `stop`.
     """
     with tempfile.TemporaryDirectory(prefix="haunch-mesh-") as folder:
         room = Path(folder)
@@ -88,7 +95,7 @@ def run_child(
         started = time.monotonic()
         process = _start(room)
         try:
-            ending, peak = _watch(process, started + seconds, memory)
+            ending, peak = _watch(process, started + seconds, memory, stop)
         finally:
             _kill(process)
         return _collect(room, process.returncode, ending, time.monotonic() - started, peak, seconds, memory)
@@ -110,7 +117,9 @@ def _start(room: Path) -> subprocess.Popen[bytes]:
     )
 
 
-def _watch(process: subprocess.Popen[bytes], deadline: float, memory: float) -> tuple[Ending | None, float]:
+def _watch(
+    process: subprocess.Popen[bytes], deadline: float, memory: float, stop: threading.Event | None
+) -> tuple[Ending | None, float]:
     """Wait for the end; returns why it must be killed (None: it ended by itself) and the peak MiB seen."""
     peak = 0.0
     while True:
@@ -119,6 +128,8 @@ def _watch(process: subprocess.Popen[bytes], deadline: float, memory: float) -> 
             return None, peak
         except subprocess.TimeoutExpired:
             pass
+        if stop is not None and stop.is_set():
+            return "stopped", peak
         resident = _resident(process.pid)
         peak = max(peak, resident)
         if resident > memory:
@@ -155,6 +166,8 @@ def _collect(
         raise ChildFailure("time", f"stopped at its time limit of {seconds:.4g} s", log)
     if ending == "memory":
         raise ChildFailure("memory", f"stopped at its memory limit of {memory:.4g} MiB ({peak:.4g} MiB in use)", log)
+    if ending == "stopped":
+        raise ChildFailure("stopped", "stopped on request", log)
     answer_file = room / "answer.json"
     if code != 0 or not answer_file.exists():
         how = f"signal {signal.Signals(-code).name}" if code < 0 else f"exit code {code}"

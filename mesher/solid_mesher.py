@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import threading
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -29,6 +30,7 @@ def mesh_solid(
     recipe: Mapping[str, Any] | None = None,
     *,
     chain: Sequence[Attempt] = CHAIN,
+    stop: threading.Event | None = None,
 ) -> NamedMesh:
     """Mesh a solid with curved 10-node tetrahedra whose regions are named.
 
@@ -45,6 +47,8 @@ def mesh_solid(
         `NamedMesh.recipe` of an earlier mesh: makes exactly that mesh again (`accuracy` is not used).
     chain
         The attempts, in order.
+    stop
+        Set from another thread, it ends the attempt under way and with it the whole.
 
     Raises
     ------
@@ -61,8 +65,10 @@ def mesh_solid(
         if (nodes := _least_nodes(solid, sizes)) > nodes_within(budget.memory):
             raise MeshError(_over_budget(nodes, budget, attempt, failed))
         try:
-            return _attempt(solid, attempt, sizes, budget, failed)
+            return _attempt(solid, attempt, sizes, budget, failed, stop=stop)
         except ChildFailure as failure:
+            if failure.ending == "stopped":
+                raise MeshError("meshing was stopped on request") from None
             if failure.kind == "OverBudget":
                 raise MeshError(_over_budget(failure.facts["nodes"], budget, attempt, failed)) from None
             if failure.kind == "FaceMismatch":
@@ -81,6 +87,7 @@ def _attempt(
     budget: Budget,
     failed: Sequence[Mapping[str, str]],
     version: str = "",
+    stop: threading.Event | None = None,
 ) -> NamedMesh:
     """One attempt with its gates; its recipe is complete."""
     options = gmsh_options(attempt)
@@ -93,7 +100,7 @@ def _attempt(
         "most_nodes": nodes_within(budget.memory),
         "version": version,
     }
-    result = run_child(job, budget.seconds, budget.memory, {"solid.brep": solid.brep})
+    result = run_child(job, budget.seconds, budget.memory, {"solid.brep": solid.brep}, stop)
     recipe = {
         "format": RECIPE_FORMAT,
         "kernel": result.answer["version"],

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import dataclasses
 import sys
+import threading
 from collections.abc import Mapping
 from concurrent.futures import ThreadPoolExecutor
 from contextlib import ExitStack
@@ -28,6 +29,9 @@ if TYPE_CHECKING:
 
 PACKAGES = ("haunch", "cadquery", "cadquery-ocp", "gmsh", "scikit-fem", "numpy", "scipy", "pypardiso", "meshio",
             "matplotlib")
+
+SLOWER_SOLVER = ("MKL PARDISO could not be loaded, so SciPy's sparse LU solved the solid model: "
+                 "the same equations, but slower and with more memory")
 
 
 @dataclasses.dataclass(frozen=True, slots=True)
@@ -93,10 +97,11 @@ def build_models(part: Part, budget: Budget, clock: Clock) -> Models:
     with ExitStack() as stack:
         clock.tell(Event("solid", "start"))
         with blamed_on("solid"):
-            # Left last: a meshing job under way is waited for, so that nothing of it stays behind.
+            # Left last: a meshing job under way is ended and waited for, so that nothing of it stays behind.
             pool = stack.enter_context(ThreadPoolExecutor(1, "mesh"))
+            stack.callback((stop := threading.Event()).set)
             child = stack.enter_context(SolidChild(part, budget))
-        meshed = pool.submit(_build_and_mesh, child, part, budget, clock)
+        meshed = pool.submit(_build_and_mesh, child, part, budget, clock, stop)
         with clock.stage("beam"):
             from fem.beam import solve_beam
 
@@ -110,10 +115,13 @@ def build_models(part: Part, budget: Budget, clock: Clock) -> Models:
     with clock.stage("solve"):
         solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text),
                             sharp_edges=[(edge.label, edge.points) for edge in named_solid.sharp_edges])
+        if solid.backend == "lu":
+            clock.note("solve", SLOWER_SOLVER)
     return Models(part, named_solid, mesh, beam, solid)
 
 
-def _build_and_mesh(child: SolidChild, part: Part, budget: Budget, clock: Clock) -> tuple[NamedSolid, NamedMesh]:
+def _build_and_mesh(child: SolidChild, part: Part, budget: Budget, clock: Clock,
+                    stop: threading.Event) -> tuple[NamedSolid, NamedMesh]:
     """Wait for the solid, then mesh it."""
     with blamed_on("solid"):
         named_solid, seconds = child.result()
@@ -121,7 +129,7 @@ def _build_and_mesh(child: SolidChild, part: Part, budget: Budget, clock: Clock)
     with clock.stage("mesh"):
         from mesher import mesh_solid
 
-        mesh = mesh_solid(named_solid, part.accuracy, budget)
+        mesh = mesh_solid(named_solid, part.accuracy, budget, stop=stop)
         clock.note("mesh", f"{mesh.tets.shape[1]} tetrahedra, {mesh.nodes.shape[1]} nodes")
     return named_solid, mesh
 
@@ -143,7 +151,8 @@ def make_result(models: Models, verdict: Judgement, name: str, started: str, clo
         solid_figures=tuple(solid.figures), beam_figures=tuple(models.beam.figures),
         pairs=tuple(verdict.pairs), limits=tuple(verdict.limits), checks=tuple(verdict.checks),
         peaks=tuple(verdict.peaks), case_stress=_case_stress(solid), denting=_denting(solid),
-        cautions=tuple(verdict.cautions), notes=tuple(models.beam.notes),
+        cautions=(*verdict.cautions, *((f"{SLOWER_SOLVER}.",) if solid.backend == "lu" else ())),
+        notes=tuple(models.beam.notes),
         mesh=MeshSummary(mesh.nodes.shape[1], mesh.tets.shape[1], mesh.nodes.size, float(mesh.quality.min()),
                          mesh.volume, dict(mesh.recipe)),
         stages=clock.times(), versions=versions(), started=started,

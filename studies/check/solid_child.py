@@ -8,6 +8,7 @@ over pipes between the two processes; nothing is written to a file.
 from __future__ import annotations
 
 import contextlib
+import ctypes
 import os
 import pickle
 import signal
@@ -86,6 +87,8 @@ def _serve(address_space: int) -> int:
     """The child: read a part from standard input, answer with the solid or the reason why not."""
     import resource
 
+    if sys.platform == "linux":  # also while the kernel's libraries are loaded and hold the interpreter's lock
+        ctypes.CDLL(None).prctl(1, signal.SIGKILL)  # 1: PR_SET_PDEATHSIG, end with the parent
     resource.setrlimit(resource.RLIMIT_AS, (address_space * 2**20,) * 2)
     resource.setrlimit(resource.RLIMIT_CORE, (0, 0))
     out = os.dup(1)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import threading
+import time
 from dataclasses import replace
 from types import ModuleType
 
@@ -180,3 +182,12 @@ def test_the_early_estimate_never_exceeds_the_kernels(bar: NamedSolid, bar_mesh:
     for solid, mesh in ((bar, bar_mesh), (plate, plate_mesh)):
         early = _least_nodes(solid, sizes_for(solid, 0.05))
         assert 0.1 * mesh.recipe["estimated_nodes"] < early <= mesh.recipe["estimated_nodes"] * (1 + 1e-9)
+
+
+def test_a_hanging_attempt_ends_at_once_when_asked(bar: NamedSolid) -> None:
+    stop = threading.Event()
+    threading.Timer(1.0, stop.set).start()
+    started = time.perf_counter()
+    with pytest.raises(MeshError, match="stopped on request"):
+        mesh_solid(bar, 0.05, Budget(seconds=60.0), chain=(_faulty("fault:hang"), CHAIN[0]), stop=stop)
+    assert time.perf_counter() - started < 10.0

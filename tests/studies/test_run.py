@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import subprocess
 import sys
 from pathlib import Path
@@ -135,3 +136,11 @@ def test_a_hanging_cad_kernel_is_stopped(helpers: ModuleType, monkeypatch: pytes
         with pytest.raises(RunError, match="was stopped"):
             child.result()
     assert child._process.poll() is not None
+
+
+def test_the_slower_solver_is_told(helpers: ModuleType) -> None:
+    models = helpers.make_models()
+    for backend, told in (("lu", True), ("pardiso", False)):
+        other = dataclasses.replace(models, solid=dataclasses.replace(models.solid, backend=backend))
+        result = run.make_result(other, helpers.make_judgement(models), "arm.toml", "2026-12-01T12:00:00Z", Clock())
+        assert any("sparse LU" in caution for caution in result.cautions) is told
