@@ -109,7 +109,11 @@ class LimitSpec(Words):
     component: Literal["", "x", "y", "z"] = Field("", description="global; the size when left out")
     max: Real | Text | None = Field(None, description="largest value (everything but yield_factor)")
     min: Real | Text | None = Field(None, description="least value (yield_factor)")
-    basis: Literal["nominal", "edge", "local"] = Field("local", description="which stress is meant")
+    basis: Literal["nominal", "edge", "local"] = Field(
+        "edge",
+        description="nominal: beam formula, net section; edge: local stress where it converges, outer fibres "
+        "extrapolated to held edges; local: local stress only, which cannot pass at a held sharp edge",
+    )
     cases: list[Text] = Field(default_factory=list, description="cases it is judged in; all when left out")
 
 
@@ -121,9 +125,9 @@ class LimitsSpec(BaseModel):
 
     deflection: Size | None = Field(None, description="largest size of the displacement, anywhere")
     rotation: Annotated[Text, OfKind("angle", above=0.0)] | None = Field(None, description="largest rotation")
-    stress: Strength | None = Field(None, description="largest local stress")
+    stress: Strength | None = Field(None, description="largest stress (edge basis)")
     yield_factor: Annotated[Real | Text, OfKind("number", above=0.0)] | None = Field(
-        None, description="least factor against local first yield"
+        None, description="least factor against first yield (edge basis)"
     )
     mass: Annotated[Text, OfKind("mass", above=0.0)] | None = Field(None, description="largest mass of the part")
 

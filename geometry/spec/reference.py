@@ -14,7 +14,7 @@ from geometry.spec.materials import GRADES, Grade
 from geometry.spec.model import LimitSpec, LimitsSpec, LoadSpec, MaterialSpec, PartSpec, PlaceSpec, SupportSpec
 from geometry.spec.resolve.acting import LOAD_WORDS
 from geometry.spec.resolve.member import WALLS
-from geometry.spec.text.quantity import KINDS, NUMBER
+from geometry.spec.text.units import KINDS, NUMBER
 from geometry.spec.words.fields import OfKind
 from geometry.spec.words.member import (
     AngleSection,

@@ -2,6 +2,6 @@
 
 from __future__ import annotations
 
-from studies.judge.judge import Judgement, judge
+from studies.judge.whole_run import Judgement, judge
 
 __all__ = ["Judgement", "judge"]

@@ -15,9 +15,9 @@ from fem.figure import FigureKey, Quantity
 from fem.solid import SolidResult
 from geometry.part import Limit
 from studies.check.result import LimitVerdict, LimitWord, Pair
+from studies.judge.agreement import Table
 from studies.judge.context import Context
 from studies.judge.edge_stress import extrapolated
-from studies.judge.pairing import Table
 
 UNITS = {
     "deflection": "mm", "displacement": "mm", "relative_displacement": "mm", "rotation": "rad", "stress": "MPa",

@@ -8,7 +8,7 @@ from bar import mesh, sound
 
 from geometry.named_solid import SizeHint
 from studies.judge.context import Context
-from studies.judge.judge import peak_places
+from studies.judge.whole_run import peak_places
 
 
 def test_a_peak_is_named_by_its_feature_and_side() -> None:

@@ -19,8 +19,8 @@ from geometry.problem import SpecError
 from geometry.spec import part_from_text
 from geometry.spec.read import part_from_data
 from geometry.spec.text.expression import evaluate
-from geometry.spec.text.quantity import LENGTH, UNITS, Quantity
 from geometry.spec.text.tokens import ExpressionError
+from geometry.spec.text.units import LENGTH, UNITS, Quantity
 
 EXAMPLES = sorted((Path(__file__).parents[2] / "studies" / "examples").glob("*.toml"))
 BASES = [tomllib.loads(path.read_text(encoding="utf-8")) for path in EXAMPLES]

@@ -8,8 +8,8 @@ import time
 import pytest
 
 from geometry.spec.text.expression import evaluate, evaluate_as
-from geometry.spec.text.quantity import KINDS, LENGTH, UNITS, Quantity
 from geometry.spec.text.tokens import ExpressionError
+from geometry.spec.text.units import KINDS, LENGTH, UNITS, Quantity
 
 SCOPE = {
     "h": Quantity(40.0, LENGTH),

@@ -13,7 +13,6 @@ from typing import Any
 from geometry.part import Vector
 from geometry.problem import Problem
 from geometry.spec.text.expression import evaluate, evaluate_as, names_in
-from geometry.spec.text.quantity import Quantity
 from geometry.spec.text.tokens import (
     COMMON_UNITS,
     FUNCTIONS,
@@ -24,6 +23,7 @@ from geometry.spec.text.tokens import (
     tokens_of,
     with_article,
 )
+from geometry.spec.text.units import Quantity
 from geometry.spec.words.fields import OfKind
 
 LONGEST_GIVEN = 80

@@ -18,8 +18,8 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping
 
-from geometry.spec.text.quantity import ANGLE, NUMBER, UNITS, Dimension, Kind, Quantity, name_of
 from geometry.spec.text.tokens import FUNCTIONS, NUMBER_TEXT, ExpressionError, Token, nearest, tokens_of, with_article
+from geometry.spec.text.units import ANGLE, NUMBER, UNITS, Dimension, Kind, Quantity, name_of
 
 DEEPEST = 24
 GREATEST_POWER = 4

@@ -12,7 +12,7 @@ import re
 from collections.abc import Iterable, Mapping
 from typing import NamedTuple
 
-from geometry.spec.text.quantity import UNITS, Quantity
+from geometry.spec.text.units import UNITS, Quantity
 
 LONGEST = 300
 COMMON_UNITS = (

@@ -7,7 +7,7 @@ from typing import Annotated
 
 from pydantic import BaseModel, ConfigDict, Field, Strict
 
-from geometry.spec.text.quantity import KINDS, Kind
+from geometry.spec.text.units import KINDS, Kind
 
 
 @dataclass(frozen=True, slots=True)

@@ -15,11 +15,11 @@ from geometry.named_solid import NamedSolid
 from geometry.part import Part
 from mesher.named_mesh import NamedMesh
 from studies.check.result import Cause, IndependentCheck, LimitVerdict, Pair, PeakPlace
+from studies.judge.agreement import Table, pair_figures, table
 from studies.judge.bands import CaseFacts
 from studies.judge.context import Context
 from studies.judge.independent import independent_checks
 from studies.judge.limits import Evidence, verdicts
-from studies.judge.pairing import Table, pair_figures, table
 
 OPEN_SHAPES = ("I", "channel", "angle", "tee", "outline")
 

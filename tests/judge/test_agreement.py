@@ -10,8 +10,8 @@ from bar import LENGTH, TIP, WALL, bar, mesh, sound
 from fem.figure import Figure, FigureKey
 from geometry.part import Support
 from studies.check.result import Cause
+from studies.judge.agreement import pair_figures, table
 from studies.judge.context import Context
-from studies.judge.pairing import pair_figures, table
 
 KEY = FigureKey("lifting", "arm.end", "displacement", "z")
 
