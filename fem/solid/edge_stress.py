@@ -105,8 +105,9 @@ def _shoulder_figures(
     for side, name in (("top", "upper"), ("bottom", "lower")):
         axis, sign = SIDES[side]
         reach = {}
-        for way in (-1.0, 1.0):
-            segments = outer_segments(model, member, frame, at + way * 2 * radius)
+        for way, end in ((-1.0, 0.0), (1.0, frame.length)):
+            beside = min(2 * radius, abs(end - at) / 2)  # a shoulder may lie closer to an end than two radii
+            segments = outer_segments(model, member, frame, at + way * beside)
             reach[way] = sign * segments.yz[axis].max() if sign > 0 else -segments.yz[axis].min()
         step = reach[-1.0] - reach[1.0]
         if abs(step) < 1e-3 * radius:
@@ -116,7 +117,8 @@ def _shoulder_figures(
         values = np.concatenate([*parts, spread])
         way = 1.0 if step > 0 else -1.0
         best, error = np.zeros(c), np.zeros(c)
-        for x in np.linspace(0.02, 1.5, FILLET_SAMPLES) * radius * way + at:
+        length = min(1.5 * radius, 0.98 * abs((frame.length if way > 0 else 0.0) - at))
+        for x in np.linspace(0.02 * radius, length, FILLET_SAMPLES) * way + at:
             segments = outer_segments(model, member, frame, float(x))
             chosen = side_segments(segments, side)
             # a round section touches its extreme in a point, a flat one along its thickness

@@ -114,6 +114,7 @@ def _flat(p: np.ndarray, length: float) -> np.ndarray:
     return (p[0] < 1e-6) | (p[0] > length - 1e-6) | (p[1] < 1e-6) | (p[2] < 1e-6)
 
 
+@pytest.mark.heavy
 def test_c5_lame_cylinder() -> None:
     # REFERENCES C5: ri 50, ro 100, p 60: hoop 100 inside, 40 outside; radial -60, 0; plane strain u(ri) 0.0272381
     part, mesh = lame_cylinder((1, 4, 6), 10.0)

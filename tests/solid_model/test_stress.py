@@ -206,6 +206,7 @@ def test_two_members_b22() -> None:
         )
 
 
+@pytest.mark.heavy
 def test_energy_error_estimate_follows_the_true_one() -> None:
     # H5: effectivity of a recovery estimate is 0.8 to 1.2 in the usual range; a plain average over boundary nodes is
     # coarser, so between half and three times here; the true error from a mesh twice as fine in each direction

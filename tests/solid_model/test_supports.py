@@ -63,6 +63,7 @@ def test_every_coupling_gives_the_reactions_of_statics(support: Support, couplin
     assert value(result, "arm.end", "displacement", "z") == pytest.approx(exact, rel=0.02)
 
 
+@pytest.mark.heavy
 def test_rigid_is_stiffer_than_surface_and_average() -> None:
     wall = Support("wall", "arm.start", ALL)
     energy = {}

@@ -10,7 +10,8 @@ from solid_help import box_mesh, box_part, named_mesh
 
 import fem.solid.factor as factor
 from fem.solid import solve_solid
-from fem.solid.factor import Cholesky, NotPositive, pardiso_available
+from fem.solid.factor import Cholesky, NotPositive, pardiso_available, upper_triangle
+from fem.solid.system import reduced
 from geometry.budget import Budget
 from geometry.part import BodyLoad, RegionLoad, Support
 from geometry.problem import SolveError
@@ -145,3 +146,16 @@ def test_detached_pieces_are_counted() -> None:
     )
     with pytest.raises(SolveError, match="2 pieces"):
         solve_solid(PART, twice, BUDGET)
+
+
+def test_picked_rows_and_columns_equal_the_product() -> None:
+    rng = np.random.default_rng(3)
+    K = sp.random(60, 60, density=0.2, random_state=rng, format="csr")
+    K = (K + K.T).tocsr()
+    kept = np.flatnonzero(rng.random(60) > 0.3)
+    T = sp.csr_matrix((np.ones(kept.size), (kept, np.arange(kept.size))), shape=(60, kept.size))
+    assert abs(reduced(K, T) - T.T @ K @ T).max() == 0.0
+    twice = T.copy()
+    twice.data[0] = 2.0  # not a mere choice of unknowns: the product is taken
+    assert abs(reduced(K, twice) - twice.T @ K @ twice).max() == 0.0
+    assert abs(upper_triangle(K) - sp.triu(K)).max() == 0.0
