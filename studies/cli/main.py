@@ -36,6 +36,11 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except BrokenPipeError:  # the reader, such as `head`, has enough
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return FINE
+    except OSError as error:  # the commands tell their own; what is left is printing, to a full disk for one
+        with contextlib.suppress(OSError):
+            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        print(f"haunch: cannot print the result: {error.strerror or error}", file=sys.stderr)
+        return RUN_FAILED
     except KeyboardInterrupt:
         print("haunch: stopped; nothing was written", file=sys.stderr)
         return STOPPED
@@ -54,9 +59,13 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 
 def _never_fail_to_print() -> None:
-    """Characters that the terminal's encoding lacks (LANG=C) become question marks, not a fault after the work."""
-    for stream in (sys.stdout, sys.stderr):
-        if hasattr(stream, "reconfigure"):
+    """A closed stream is none to fail on, and characters that the terminal's encoding lacks (LANG=C) become question
+    marks, not a fault after the work."""
+    for name in ("stdout", "stderr"):
+        stream = getattr(sys, name)
+        if stream is None:  # closed by the shell: >&-
+            setattr(sys, name, open(os.devnull, "w", encoding="utf-8"))  # noqa: SIM115 - until the end
+        elif hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="replace")
 
 

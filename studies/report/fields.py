@@ -65,7 +65,7 @@ def stress_picture(path: Path, part: Part, mesh: NamedMesh, case: str, von_mises
     """Von Mises stress at the surface from two sides, the peak places numbered. `von_mises` is (n,), MPa."""
     surface, nodes = Surface.of(mesh), mesh.nodes.T
     high = float(von_mises[np.unique(mesh.boundary)].max())
-    colours = frame.colours_of(np.clip(von_mises, 0.0, high), 0.0, high, "viridis")
+    colours = frame.colours_of(np.clip(von_mises, 0.0, high), 0.0, high or 1.0, "viridis")
     views = [view_of(part), view_of(part, below=True)]
     canvases = [Canvas.around(camera.project(nodes), frame.PIXELS) for camera in views]
     height = sum(frame.page_height(canvas, 9.0, 0.3) for canvas in canvases)
@@ -84,7 +84,7 @@ def stress_picture(path: Path, part: Part, mesh: NamedMesh, case: str, von_mises
                 _mark(axes, spot, text)
         figure.suptitle(f"{part.title}, case {case}: von Mises stress at the surface, largest {high:.4g} MPa"
                         + ("\nnumbers: peak places of the summary" if peaks else ""), fontsize=12)
-        frame.colour_bar(figure, list(panels), 0.0, high, "von Mises stress (MPa)", "viridis")
+        frame.colour_bar(figure, list(panels), 0.0, high or 1.0, "von Mises stress (MPa)", "viridis")
         frame.save(figure, path)
 
 

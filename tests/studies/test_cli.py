@@ -160,3 +160,11 @@ def test_a_terminal_without_the_letters_gets_question_marks(answer: Any, monkeyp
     assert main(["check", "arm.toml"]) == 0
     out.seek(0)
     assert "Gr??e" in out.read()
+
+
+@pytest.mark.parametrize(("redirection", "status"), [(">&-", 0), ("> /dev/full", 3)])
+def test_output_that_cannot_be_written(redirection: str, status: int) -> None:
+    done = subprocess.run(["sh", "-c", f'"{sys.executable}" -m studies.cli reference {redirection}'],
+                          capture_output=True, text=True, timeout=60)
+    assert done.returncode == status
+    assert ("No space left" in done.stderr) == (status == 3) and "unforeseen" not in done.stderr
