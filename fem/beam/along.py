@@ -50,6 +50,11 @@ class Piece:
         """(6, m)"""
         return np.asarray(chebyshev.chebval(self._t(x), self.exact))
 
+    def slope_at(self, x: Array) -> Array:
+        """(2, m) inclination of the centroid line, dyc/dx and dzc/dx."""
+        rate = 2.0 / (self.end - self.start)
+        return np.asarray(rate * chebyshev.chebval(self._t(x), chebyshev.chebder(self.exact[:, 1:3])))
+
     def solved_at(self, x: Array) -> Array:
         """(33, m)"""
         return np.asarray(chebyshev.chebval(self._t(x), self.solved))
@@ -183,15 +188,16 @@ class Sections:
         """Properties without cuts at points x (m,)."""
         x = np.atleast_1d(np.asarray(x, dtype=float))
         which = np.array([self.pieces.index(self.piece(float(v), side)) for v in x])
-        exact, solved = np.zeros((6, len(x))), np.zeros((33, len(x)))
+        exact, solved, slope = np.zeros((6, len(x))), np.zeros((33, len(x))), np.zeros((2, len(x)))
         for k in np.unique(which):
             here = which == k
             exact[:, here] = self.pieces[k].exact_at(x[here])
             solved[:, here] = self.pieces[k].solved_at(x[here])
+            slope[:, here] = self.pieces[k].slope_at(x[here])
         A, yc, zc, Iyy, Izz, Iyz = exact
         shear = (solved[8:] / A).T.reshape(-1, 5, 5)
         return LineProperties(A, yc, zc, Iyy, Izz, Iyz, yc + solved[1], zc + solved[2],
-                              solved[0] * A**4 / (Iyy + Izz), solved[3], shear)
+                              solved[0] * A**4 / (Iyy + Izz), solved[3], shear, *slope)
 
     def warping_at_extremes(self, x: float, side: str = "after") -> Array:
         """(4,) warping function at the extreme points, mm^2."""

@@ -7,8 +7,10 @@ and torque about the line, B = E Iw chi' the bimoment. N, mm, rad.
 Strains follow from the complementary energy per length
 ``N^2/2EA + M^T K M/2E + s^T Q s/2G + Ts^2/2GJ`` with moments about the centroid and the torque
 ``Ts = T + zs Vy - ys Vz`` about the shear centre; V. Z. Vlasov, Thin-walled elastic beams, 1961, for the seventh
-freedom. Because every section is referred to the same straight line, an inclined centroid line or
-shear-centre line needs no term of its own.
+freedom. Every section is referred to the same straight line, so that an inclined centroid line needs no term of
+its own in bending. In torsion it does: a bar twists about its own direction e = (1, yc', zc'), so that with the
+moments M about the centroid the torque is M . e and the turn is along e (to first order in the slope; exact
+statics of a prismatic bar that lies askew to the line). Bending takes the moments square to e.
 """
 
 from __future__ import annotations
@@ -27,6 +29,7 @@ SHEAR_FORCES = ("Vy", "Vz", "N", "My about the centroid", "Mz about the centroid
 class LineProperties:
     """Properties at m points of the line; (m,) each unless stated. mm.
 
+    ``y_slope``, ``z_slope``: inclination of the centroid line, dyc/dx and dzc/dx, of the section without cuts.
     ``shear`` (m, 5, 5): shear energy per length is s^T Q s / 2G with s in the order of `SHEAR_FORCES`; only the first
     two rows and columns (the shear compliance) are filled where the member is prismatic.
     """
@@ -42,6 +45,8 @@ class LineProperties:
     J: Array
     Iw: Array
     shear: Array
+    y_slope: Array
+    z_slope: Array
 
     def at(self, index: Array | slice | NDArray[np.int64]) -> LineProperties:
         """The properties at some of the points."""
@@ -64,14 +69,20 @@ def section_flexibility(p: LineProperties, E: float, G: float) -> Array:
     shear = np.zeros((m, 5, 6))
     shear[:, 0, 1] = shear[:, 1, 2] = 1.0
     shear[:, 2:, :] = to_centroid
+    torque = np.zeros((m, 6))
+    torque[:, 1], torque[:, 2], torque[:, 3] = p.zc, -p.yc, 1.0
+    to_centroid[:, 1] -= p.y_slope[:, None] * torque
+    to_centroid[:, 2] -= p.z_slope[:, None] * torque
     return (np.swapaxes(to_centroid, 1, 2) @ bending @ to_centroid
             + np.swapaxes(shear, 1, 2) @ p.shear @ shear / G)
 
 
 def torque_row(p: LineProperties) -> Array:
-    """(m, 6) row t with t . f = torque about the shear centre."""
+    """(m, 6) row t with t . f = torque about the shear centre, along the direction of the centroid line."""
     row = np.zeros((len(p.area), 6))
     row[:, 1], row[:, 2], row[:, 3] = p.zs, -p.ys, 1.0
+    row[:, 4], row[:, 5] = p.y_slope, p.z_slope
+    row[:, 0] = p.z_slope * p.yc - p.y_slope * p.zc
     return row
 
 

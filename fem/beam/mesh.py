@@ -136,11 +136,11 @@ class BeamMesh:
     def _end(self, name: str, which: str) -> EndFace:
         x, k, sign = (0.0, 0, -1.0) if which == "start" else (self.length, len(self.x) - 1, 1.0)
         outline = self._outline(x)
-        p = self.sections.integrals(x) if which == "start" else self.sections.integrals(x - 1e-9 * self.length)
+        p = self.sections.gross(np.array([x]), "after" if which == "start" else "before")
         t = np.array([0.0, 1 / 3, 2 / 3])  # enough to tell a circle from a line
         yz = np.vstack([curve(e, t)[0] for loop in (outline.outer, *outline.inner) for e in loop])
         corners = np.column_stack([np.full(len(yz), x), yz])
-        return EndFace(name, k, p.area, np.array([x, p.yc, p.zc]), corners, np.array([sign, 0.0, 0.0]))
+        return EndFace(name, k, float(p.area[0]), np.array([x, p.yc[0], p.zc[0]]), corners, np.array([sign, 0.0, 0.0]))
 
     def _outline(self, x: float):  # type: ignore[no-untyped-def]
         tiny = 1e-9 * self.length

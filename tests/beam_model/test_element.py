@@ -16,7 +16,7 @@ def properties(area, Iyy):
     shear = np.zeros((len(area), 5, 5))
     shear[:, 0, 0], shear[:, 1, 1], shear[:, 0, 1], shear[:, 1, 0] = 2e-3, 3e-3, 4e-4, 4e-4
     return LineProperties(area, 3.0 * one, -5.0 * one, Iyy, 4e5 * one, 1e5 * one, 20.0 * one, 7.0 * one, 3e3 * one,
-                          2e8 * one, shear)
+                          2e8 * one, shear, 0.02 * one, -0.03 * one)
 
 
 def test_exponentials_against_scipy():
@@ -54,3 +54,25 @@ def test_order_four_where_the_section_varies():
     errors = [np.linalg.norm((chain(n) - exact) / (np.abs(exact) + 1e-30)) for n in (4, 8, 16)]
     rates = np.log2(np.array(errors[:-1]) / errors[1:])
     assert rates == pytest.approx(4.0, abs=0.4)
+
+
+@pytest.mark.parametrize("warping", [False, True])
+def test_a_bar_that_lies_askew_twists_about_itself(warping):
+    """A torque T about the line turns a prismatic bar of length L by T.e L/GJ along its direction e = (1, a, b)
+    and by the rest of T over E I square to it (statics of a straight bar, first order in the slope)."""
+    a, b, E, G, J, I, L, T = 0.01, -0.02, 2e5, 8e4, 3e3, 5e5, 50.0, 1e4
+
+    def askew(x):
+        one = np.ones_like(x)
+        return LineProperties(500 * one, a * x, b * x, I * one, I * one, 0 * one, a * x, b * x, J * one, 1e6 * one,
+                              np.zeros((len(x), 5, 5)), a * one, b * one)
+
+    M = transfer_matrices(np.array([[0.0, L]]), askew, E, G, warping)[0]
+    n = 7 if warping else 6
+    state = np.zeros(2 * n + 13)
+    state[n + 3] = T
+    if warping:
+        state[6] = T / (G * J)  # warping free: twisted evenly from the start
+    turned = (M @ state)[3:6]
+    each = T * L * (1.0 / (G * J) - 1.0 / (E * I))
+    assert turned == pytest.approx([T * L / (G * J), a * each, b * each], rel=1e-3)
