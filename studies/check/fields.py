@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.solid.result import SolidResult
+from geometry.problem import MeshError, RunError
 from mesher.named_mesh import NamedMesh
 
 
@@ -28,4 +29,7 @@ def write_fields(path: Path, mesh: NamedMesh, solid: SolidResult) -> None:
     """Write the file; second-order cells, for any viewer of VTK files."""
     from mesher import write_vtu
 
-    write_vtu(path, mesh, nodal_fields(solid))
+    try:
+        write_vtu(path, mesh, nodal_fields(solid))
+    except MeshError as error:  # a full disk, say: writing failed, not meshing
+        raise RunError("write", str(error)) from error

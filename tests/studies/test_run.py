@@ -144,3 +144,17 @@ def test_the_slower_solver_is_told(helpers: ModuleType) -> None:
         other = dataclasses.replace(models, solid=dataclasses.replace(models.solid, backend=backend))
         result = run.make_result(other, helpers.make_judgement(models), "arm.toml", "2026-12-01T12:00:00Z", Clock())
         assert any("sparse LU" in caution for caution in result.cautions) is told
+
+
+def test_a_full_disk_is_blamed_on_writing(helpers: ModuleType, monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> None:
+    from studies.check.fields import write_fields
+
+    def full(*_: object) -> None:
+        raise MeshError("No space left on device")
+
+    monkeypatch.setattr("mesher.write_vtu", full)
+    monkeypatch.setattr("studies.check.fields.nodal_fields", lambda _: {})
+    models = helpers.make_models()
+    with pytest.raises(RunError, match="No space left") as caught:
+        write_fields(tmp_path / "solid.vtu", models.mesh, models.solid)
+    assert caught.value.stage == "write"
