@@ -148,15 +148,20 @@ def test_c5_thick_tube_under_internal_pressure() -> None:
 
 
 @pytest.mark.heavy
-@pytest.mark.parametrize(("depth", "width", "centre", "edge"), [(40, 20, 0.983, 1.033), (20, 20, 0.940, 1.126),
-                                                              (20, 40, 0.856, 1.396)])  # fmt: skip
-def test_c6_shear_stress_of_a_rectangle(depth: float, width: float, centre: float, edge: float) -> None:
-    # C6 (Timoshenko & Goodier), nu 0.25: shear stress over 1.5 P/A on the neutral line, 1 % away from the ends
+@pytest.mark.parametrize(
+    ("depth", "width", "accuracy", "centre", "edge"),
+    [(40, 20, 0.01, 0.983, 1.033), (20, 20, 0.01, 0.940, 1.126), (20, 40, 0.004, 0.856, 1.396)],
+)
+def test_c6_shear_stress_of_a_rectangle(
+    depth: float, width: float, accuracy: float, centre: float, edge: float
+) -> None:
+    # C6 (Timoshenko & Goodier), nu 0.25: shear stress over 1.5 P/A on the neutral line, 1 % away from the ends. The
+    # wide bar varies steeply across its width, which the mesh of 1 % does not follow (centre 4 % off): finer there.
     text = bar_text(
         rectangle(depth, width), "200 mm", CLAMPED + end_force(z=depth * width / 1.5),
         material='{ E = "210 GPa", nu = 0.25, density = "7850 kg/m^3" }',
     )  # fmt: skip
-    part = solved(text, 0.01, beam=False)
+    part = solved(text, accuracy, beam=False)
     x, y, z = part.mesh.nodes
     inside = np.flatnonzero((x > 60.0) & (x < 140.0))
     eta, zeta = 2 * y[inside] / width, 2 * z[inside] / depth
