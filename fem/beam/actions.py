@@ -177,8 +177,8 @@ class Actions:
         for k, (x, s) in enumerate(zip(self.mesh.gauss.reshape(-1, 2)[region.lengths].ravel(), region.strips,
                                        strict=True)):
             if not len(s.points):
-                raise RunError("beam", f"load {load.name}: a cut leaves nothing of its face at x = {x:.6g} mm; load two "
-                               "stretches instead")
+                raise RunError("beam", f"load {load.name}: a cut leaves nothing of its face at x = {x:.6g} mm; load "
+                               "two stretches instead")
             t = (x - load.start) / (load.end - load.start)
             q = (1.0 - t) * (R @ load.first) + t * (R @ load.last)
             middle = s.weight @ s.points / s.weight.sum()

@@ -61,17 +61,17 @@ def _rim(cut: Cut, sections: Sections) -> tuple[Array, Array]:
     return np.column_stack([cut.at + mid[:, 0] * c - mid[:, 1] * s, cut.offset + mid[:, 0] * s + mid[:, 1] * c]), ds
 
 
-def _rounded(length: float, depth: float, radius: float, sides: int = 8) -> tuple[Array, Array]:
-    """Rim of a rounded rectangle about its middle: points (`sides` on each straight one) and arc lengths."""
+def _rounded(length: float, depth: float, radius: float, sides: int = 8, arcs: int = 6) -> tuple[Array, Array]:
+    """Rim of a rounded rectangle about its middle: points (so many on each side and arc) and arc lengths."""
     points, ds = [], []
     r, (a, b) = radius, (0.5 * length - radius, 0.5 * depth - radius)
     corners = [(a, b), (-a, b), (-a, -b), (a, -b)]
     for k, (p, q) in enumerate(corners):
         first, nxt = 0.5 * np.pi * k, corners[(k + 1) % 4]
         if r > 0.0:
-            angle = first + (np.arange(6) + 0.5) * np.pi / 12
+            angle = first + (np.arange(arcs) + 0.5) * np.pi / (2 * arcs)
             points.append(np.column_stack([p + r * np.cos(angle), q + r * np.sin(angle)]))
-            ds.append(np.full(6, np.pi * r / 12))
+            ds.append(np.full(arcs, np.pi * r / (2 * arcs)))
         side = np.hypot(nxt[0] - p, nxt[1] - q)
         if side > 1e-12:
             n = np.array([np.cos(first + 0.5 * np.pi), np.sin(first + 0.5 * np.pi)]) * r
@@ -87,7 +87,7 @@ def _notch_rim(cut: Cut, sections: Sections) -> tuple[Array, Array]:
     edge, sign = {"top": (e[0, 1], 1.0), "bottom": (e[1, 1], -1.0), "left": (e[2, 0], -1.0),
                   "right": (e[3, 0], 1.0)}[cut.edge]
     # finely, as the material behind an edge begins and ends at flanges and walls
-    points, ds = _rounded(cut.length, 2.0 * cut.depth, min(cut.corner_radius, 0.5 * cut.length), 80)
+    points, ds = _rounded(cut.length, 2.0 * cut.depth, min(cut.corner_radius, 0.5 * cut.length), 80, 60)
     keep = points[:, 1] < 0.0
     inwards = points[keep]
     return np.column_stack([cut.at + inwards[:, 0], edge + sign * inwards[:, 1]]), ds[keep]
