@@ -109,7 +109,15 @@ def balance_checks(
             LARGE_MOTION,
             "small displacements are assumed",
         )
-    yield _check("residual of the equations over the load", solution.residual, RESIDUAL_ALLOWED)
+    yield _check(
+        "residual of the equations over the load",
+        solution.residual,
+        solution.residual_allowed,
+        f"rounding of a slender part; correcting it would move the part by {solution.correction:.0e} of its "
+        "largest displacement"
+        if solution.residual_allowed > RESIDUAL_ALLOWED
+        else "",
+    )
     yield _check("error of a known bending field", solution.gauge, GAUGE_ALLOWED)
     least = float(model.mesh.quality.min())
     yield Check("least element quality", least, LEAST_QUALITY, least >= LEAST_QUALITY, "must be above")
