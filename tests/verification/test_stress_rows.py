@@ -51,7 +51,7 @@ def notched(height: float, radius: float, thickness: float, bend: bool) -> str:
     net = height - 2 * radius
     load = end_moment(y=thickness * net**2 / 6) if bend else end_force(x=thickness * net)
     notch = "".join(
-        f'[[members.bar.notches]]\nname = "{edge} notch"\nalong = "y"\nedge = "{edge}"\nat = "{2.5 * height:g} mm"\n'
+        f'[[members.bar.notches]]\nname = "{edge}_notch"\nalong = "y"\nedge = "{edge}"\nat = "{2.5 * height:g} mm"\n'
         f'length = "{2 * radius:g} mm"\ndepth = "{radius:g} mm"\ncorner_radius = "{radius:g} mm"\n'
         for edge in ("top", "bottom")
     )
@@ -69,8 +69,8 @@ ROWS = [  # name, text, place, component, recomputed factor (signed)
     ("D2a d/H 0.5", HOLE_BENDING, HOLE, "xx@upper", 1.928),
     ("D3 2.0, 0.1 tension", flat_step(40, 80, 4, 10, False), STEP + "160", "xx@upper", 2.506),
     ("D3 1.5, 0.1 bending", flat_step(40, 60, 4, 10, True), STEP + "120", "xx@upper", 1.898),
-    ("D4 0.2 tension", notched(60, 6, 10, False), "bar.top notch", "xx@lower", 2.429),
-    ("D4 0.3 bending", notched(60, 9, 10, True), "bar.bottom notch", "xx@upper", -1.694),
+    ("D4 0.2 tension", notched(60, 6, 10, False), "bar.top_notch", "xx@lower", 2.429),
+    ("D4 0.3 bending", notched(60, 9, 10, True), "bar.bottom_notch", "xx@upper", -1.694),
     ("D5 2.0, 0.2 tension", round_step(20, 40, 4, "tension"), STEP + "80", "xx@upper", 1.755),
 ]
 
