@@ -26,6 +26,9 @@ class Share(NamedTuple):
     fraction: float
 
 
+OPEN_SHAPES = ("I", "channel", "angle", "tee", "outline")
+
+
 @dataclass(frozen=True)
 class CaseFacts:
     """What one case adds to the facts about the part.
@@ -77,6 +80,16 @@ def cuts(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
         yield Share(f"cut {cut.name} beyond its net section", share)
 
 
+def cut_flanges(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
+    # A notch that takes off part of a flange or leg moves the shear centre of what is left, which the beam keeps
+    # where it was: whatever twists there may be off by the notch's share of the length (set by trial).
+    if ctx.member.section.shape in OPEN_SHAPES:
+        for cut in ctx.member.cuts:
+            if cut.kind == "notch":
+                share = min(1.0, 2.0 * cut.length / ctx.length)
+                yield Share(f"{cut.name} moves the shear centre", share * facts.twist_share)
+
+
 def taper(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
     # Wedge solution of plane elasticity (Timoshenko & Goodier art. 39): the plain formula errs with the
     # square of the half angle. The full slope of the depth is taken.
@@ -126,7 +139,7 @@ def heat(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
 
 
 DISPLACEMENT: tuple[Callable[[Context, CaseFacts], Iterator[Share]], ...] = (
-    mesh_error, end_effects, shear_definition, cuts, taper, steps, torsion, local_loads, heat,
+    mesh_error, end_effects, shear_definition, cuts, cut_flanges, taper, steps, torsion, local_loads, heat,
 )
 
 

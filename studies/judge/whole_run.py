@@ -16,12 +16,10 @@ from geometry.part import Part
 from mesher.named_mesh import NamedMesh
 from studies.check.result import Cause, IndependentCheck, LimitVerdict, Pair, PeakPlace
 from studies.judge.agreement import Table, pair_figures, table
-from studies.judge.bands import CaseFacts
+from studies.judge.bands import OPEN_SHAPES, CaseFacts
 from studies.judge.context import Context
 from studies.judge.independent import independent_checks
 from studies.judge.limits import Evidence, verdicts
-
-OPEN_SHAPES = ("I", "channel", "angle", "tee", "outline")
 
 
 @dataclass(frozen=True, slots=True)

@@ -8,7 +8,7 @@ import pytest
 from bar import LENGTH, TIP, WALL, bar, mesh, sound
 
 from fem.figure import Figure, FigureKey
-from geometry.part import Support
+from geometry.part import Case, Support, TemperatureLoad
 from studies.check.result import Cause
 from studies.judge.agreement import pair_figures, table
 from studies.judge.context import Context
@@ -72,3 +72,13 @@ PIN = Support("pin", "arm.start", {"x": 0.0, "y": 0.0, "z": 0.0, "rx": 0.0, "rz"
 ])
 def test_determinate_parts_are_told_from_the_others(supports: tuple[Support, ...], determinate: bool) -> None:
     assert Context(bar(supports=supports, loads=(TIP,)), mesh()).determinate is determinate
+
+
+def test_energy_of_a_heated_part_gripped_at_a_face_is_not_compared() -> None:
+    part = bar(loads=(TIP, TemperatureLoad("sun", 30.0)),
+               cases=(Case("hot", {"tip": 1.0, "sun": 1.0}), Case("cold", {"tip": 1.0})))
+    ctx = Context(part, mesh())
+    energy = [Figure(FigureKey(case, "", "strain_energy", ""), 5.0, "N mm") for case in ("hot", "cold")]
+    beam = [dataclasses.replace(f, value=1.0) for f in energy]
+    pairs = pair_figures(ctx, table(energy), table(beam), {}, {})
+    assert [p.judgement for p in pairs] == ["no beam value", "suspicious"]
