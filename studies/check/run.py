@@ -20,6 +20,7 @@ from studies.check.folder import RESULT, refuse_existing, run_folder
 from studies.check.result import CaseStress, CheckResult, Denting, MeshSummary
 from studies.check.solid_child import SolidChild
 from studies.check.stages import Clock, Event, Listener, blamed_on
+from studies.check.version import RESULTS
 
 if TYPE_CHECKING:
     from fem.beam import BeamResult
@@ -170,7 +171,7 @@ def _denting(solid: SolidResult) -> tuple[Denting, ...]:
 
 def versions() -> Mapping[str, str]:
     """Version of Python and of each package that a number can depend on."""
-    found = {"python": ".".join(map(str, sys.version_info[:3]))}
+    found = {"python": ".".join(map(str, sys.version_info[:3])), "results": str(RESULTS)}
     for package in PACKAGES:
         try:
             found[package] = version(package)
