@@ -131,7 +131,7 @@ def _with_inner_radii(member: Member) -> Member:
     """The member with the inner radius of a box that follows wall and outer radius at every station that names them."""
     if any("inner_radius" in station.dims for station in member.stations):
         return member
-    stations = []
+    stations: list[Station] = []
     for i, station in enumerate(member.stations):
         dims = dict(station.dims)
         if {"wall", "corner_radius"} & set(dims):
@@ -188,7 +188,7 @@ def _follow(shape: str, section: Any, named: set[str], dims: dict[str, float]) -
 
 
 def _stations(values: Values, path: str, spec: MemberSpec, section: Section, length: float) -> tuple[Station, ...]:
-    stations = []
+    stations: list[Station] = []
     named = set(spec.taper or {}).union(*(s.model_extra or {} for s in spec.stations))
     for i, station in enumerate(spec.stations, 1):
         table = Table(values, f"{path}.stations[{i}]", station)
