@@ -6,7 +6,7 @@ import tomllib
 from collections.abc import Iterable, Sequence
 
 from studies.check.result import CheckResult, Pair, PeakPlace
-from studies.judge.envelope import envelope
+from studies.judge.envelope import Extreme, envelope
 from studies.report.tables import (
     Tally,
     headlines,
@@ -95,9 +95,18 @@ def _envelope(result: CheckResult) -> list[str]:
     """Greatest and least figures over the cases, with the case that governs."""
     if len(result.cases) < 2:
         return []
+    found = envelope(result.solid_figures, result.beam_figures)
+    largest: dict[str, float] = {}
+    for row in found:
+        largest[row.quantity] = max(largest.get(row.quantity, 0.0), abs(row.value))
+
+    def shown(value: float | None, row: Extreme) -> str:
+        # rounding beside the largest of its kind is nothing, and is written as nothing
+        tiny = value is not None and abs(value) < 1e-6 * largest[row.quantity]
+        return "0" if tiny else number(value, row.unit)
+
     rows = [(f"{row.quantity.replace('_', ' ')} {row.component}", row.which, shown_unit(row.unit),
-             number(row.value, row.unit), number(row.beam, row.unit), row.case, row.place)
-            for row in envelope(result.solid_figures, result.beam_figures)]
+             shown(row.value, row), shown(row.beam, row), row.case, row.place) for row in found]
     return ["## Envelope over the cases", "",
             *table(["figure", "", "unit", "solid", "beam there", "governing case", "place"], rows)]
 
