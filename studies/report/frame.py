@@ -62,7 +62,16 @@ def page_height(canvas: Canvas, width: float, extra: float) -> float:
 
 def triad(axes: Any, camera: Camera, right: bool = False) -> None:
     """Global axes in the lower left (or right) corner of the axes."""
-    inset = axes.inset_axes([0.89 if right else 0.0, -0.04, 0.11, 0.24], zorder=5)
+    (left, right_), (bottom, top) = axes.get_xlim(), axes.get_ylim()
+    if right_ - left < 0.6 * (top - bottom):
+        # An upright part leaves no room inside: the triad stands beside the picture, in inches.
+        from mpl_toolkits.axes_grid1.inset_locator import inset_axes
+
+        inset = inset_axes(axes, width=1.1, height=1.1, loc="lower left" if right else "lower right", borderpad=1.5,
+                           bbox_to_anchor=(1.0 if right else 0.0, 0.0), bbox_transform=axes.transAxes)
+        inset.set_zorder(5)
+    else:
+        inset = axes.inset_axes([0.89 if right else 0.0, -0.04, 0.11, 0.24], zorder=5)
     inset.set_axis_off()
     inset.set_aspect("equal")
     inset.set_xlim(-1.5, 1.5)
