@@ -393,3 +393,70 @@ def test_percent_left_out_of_the_accuracy() -> None:
 
 def test_an_endless_factor_is_told_once() -> None:
     assert only(problems(CAMERA_ARM, ("camera = 1.0", "camera = inf"))).allowed == "a finite number"
+
+
+def _step(at: str, before: str, after: str, fillet: str = "0 mm") -> str:
+    return (f'[[members.bar.stations]]\nat = "{at}"\ndepth = "{before}"\n'
+            f'[[members.bar.stations]]\nat = "{at}"\ndepth = "{after}"\nshoulder_fillet = "{fillet}"\n')  # fmt: skip
+
+
+FIRST = _step("500 mm", "40 mm", "20 mm", "8 mm")
+
+
+@pytest.mark.parametrize(
+    ("tables", "path", "words"),
+    [
+        (_step("793 mm", "40 mm", "20 mm", "8 mm"), "members.bar.stations[2].shoulder_fillet", ("8 mm", "7 mm", "end")),
+        (_step("791 mm", "40 mm", "20 mm", "8 mm"), "", ()),
+        (_step("7 mm", "20 mm", "40 mm", "8 mm"), "members.bar.stations[2].shoulder_fillet", ("less than 7", "start")),
+        (FIRST + _step("507 mm", "20 mm", "40 mm"), "members.bar.stations[2].shoulder_fillet", ("less than 7", "507")),
+        (FIRST + _step("506 mm", "20 mm", "15 mm"), "members.bar.stations[2].shoulder_fillet", ("less than 6", "506")),
+        (FIRST + _step("512 mm", "20 mm", "40 mm", "8 mm"), "members.bar.stations[2].shoulder_fillet",
+         ("less than 4 mm", "only 12 mm", "less the 8 mm")),
+        (FIRST + _step("518 mm", "20 mm", "40 mm", "8 mm"), "", ()),
+        # A step of the width alone leaves top and bottom whole.
+        ('[[members.bar.stations]]\nat = "500 mm"\n[[members.bar.stations]]\nat = "500 mm"\ndepth = "20 mm"\n'
+         'shoulder_fillet = "8 mm"\n[[members.bar.stations]]\nat = "506 mm"\n[[members.bar.stations]]\n'
+         'at = "506 mm"\nwidth = "10 mm"', "", ()),
+    ],
+)  # fmt: skip
+def test_a_shoulder_fillet_longer_than_the_side_it_lies_on(tables: str, path: str, words: tuple[str, ...]) -> None:
+    found = problems(CANTILEVER, (STATIONS, f"{tables}\n{STATIONS}"))
+    if not path:
+        assert not found, "\n".join(map(str, found))
+        return
+    text = str(only(found))
+    assert text.startswith(path)
+    assert all(word in text for word in words), text
+
+
+NOTCH = '[[members.bar.notches]]\nedge = "top"\nat = "200 mm"\nlength = "10 mm"\ndepth = "5 mm"\n'
+LOAD = '[loads.q]\nforce_per_length = ["0 N/m", "0 N/m", "1 N/m"]\non = "bar.'
+
+
+@pytest.mark.parametrize(
+    ("tables", "words"),
+    [
+        (f'{NOTCH}{LOAD}top"', ("195 to 205 mm (notch1)", "two loads: from 0 to 195 mm; from 205 to 800 mm")),
+        (f'{NOTCH}{LOAD}top"\nto = "195 mm"', ()),
+        (f'{NOTCH}{LOAD}top"\nto = "200 mm"', ("Give from 0 to 195 mm",)),
+        (f'{NOTCH}{LOAD}bottom"', ()),
+        (f'{NOTCH}{LOAD}left"', ()),
+        (f'{FIRST}{LOAD}top"', ("500 to 508 mm (a shoulder fillet)", "from 0 to 500 mm; from 508 to 800 mm")),
+        (f'{FIRST}{LOAD}left"', ()),
+        (f'[[members.bar.edge_radii]]\nedges = "end"\nradius = "3 mm"\n{LOAD}top"', ("Give from 0 to 797 mm",)),
+        (f'[[members.bar.edge_radii]]\nedges = "end"\nradius = "3 mm"\n{LOAD}top"\nto = "797 mm"', ()),
+        (f'[[members.bar.holes]]\nalong = "z"\nat = "99 mm"\ndiameter = "12 mm"\n{LOAD}top"', ()),
+        ('[[members.bar.edge_radii]]\nedges = "top left"\nradius = "5 mm"\n[[members.bar.edge_radii]]\n'
+         'edges = "top right"\nradius = "5 mm"\n'
+         f'[[members.bar.holes]]\nalong = "z"\nat = "99 mm"\ndiameter = "12 mm"\n{LOAD}top"', ("93 to 105 mm",)),
+    ],
+)  # fmt: skip
+def test_a_line_load_on_a_face_that_is_interrupted(tables: str, words: tuple[str, ...]) -> None:
+    found = problems(CANTILEVER, (STATIONS, f"{tables}\n{STATIONS}"))
+    if not words:
+        assert not found, "\n".join(map(str, found))
+        return
+    text = str(only(found))
+    assert text.startswith("loads.q: given bar.top from 0")
+    assert all(word in text for word in words), text

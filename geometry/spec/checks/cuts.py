@@ -239,7 +239,7 @@ def _check_station(
             removed.append(
                 (high - cut.depth, high, cut) if cut.edge in ("top", "right") else (low, low + cut.depth, cut)
             )
-        elif cut.kind != "notch" and (span := _span(cut, x)):
+        elif cut.kind != "notch" and (span := span_at(cut, x)):
             removed.append((*span, cut))
     removed.sort(key=lambda r: r[:2])
     reach, last_end = low, -math.inf
@@ -256,7 +256,7 @@ def _check_station(
     return False
 
 
-def _span(cut: Cut, x: float) -> Interval | None:
+def span_at(cut: Cut, x: float) -> Interval | None:
     """Stretch across the member that a cut takes away at a distance from the start."""
     points = rim(cut)
     crossings = []

@@ -7,6 +7,7 @@ from collections.abc import Collection
 from geometry.part import Part
 from geometry.spec.checks.acting import check_loads, check_supports
 from geometry.spec.checks.cuts import check_cuts
+from geometry.spec.checks.face_gaps import check_line_loads
 from geometry.spec.checks.held import check_held
 from geometry.spec.checks.names import check_faces, check_names
 from geometry.spec.checks.profile import length_of
@@ -43,6 +44,8 @@ def check_part(values: Values, spec: PartSpec, part: Part, removed: Collection[s
     check_faces(values, part)
     check_supports(values, part)
     check_loads(values, part)
+    if not any(p.path.startswith("members") for p in values.problems):
+        check_line_loads(values, part)
     regions_known = not any(p.path.startswith("supports.") for p in values.problems)
     if part.members and regions_known and not _any_of(removed, "supports", "members"):
         if all(axes_known(m) for m in part.members):

@@ -7,7 +7,8 @@ from collections.abc import Iterator
 
 from geometry.part import Member
 from geometry.spec.checks.frame import axes_of
-from geometry.spec.checks.profile import bounds, dims_at, knots, length_of
+from geometry.spec.checks.profile import dims_at, knots, length_of
+from geometry.spec.checks.shoulders import check_shoulder
 from geometry.spec.resolve.values import Values
 
 Dims = dict[str, float]
@@ -134,32 +135,7 @@ def _check_stations(values: Values, path: str, member: Member) -> None:
                 where, "a step at the far end", f"a step before {length:.6g} mm", "Is there a taper as well?"
             )
         if station.shoulder_fillet > 0.0:
-            _check_shoulder(values, f"{path}.stations[{i}].shoulder_fillet", member, i - 1, is_step)
-
-
-def _check_shoulder(values: Values, path: str, member: Member, index: int, is_step: bool) -> None:
-    station = member.stations[index]
-    if not is_step:
-        values.problem(path, f"{station.shoulder_fillet:.6g} mm", "only on the second of two stations at one place",
-                       "Give the dimensions before the step in a station at the same place")  # fmt: skip
-        return
-    heights = [h for h in _step_heights(member, station.at) if abs(h) > 1e-9]
-    if not heights:
-        values.problem(path, f"{station.shoulder_fillet:.6g} mm", "only where the sides step",
-                       "The two stations have the same outer dimensions")  # fmt: skip
-    elif station.shoulder_fillet >= min(map(abs, heights)) * (1.0 - 1e-3):
-        values.problem(
-            path, f"{station.shoulder_fillet:.6g} mm", f"less than the step: {min(map(abs, heights)):.6g} mm"
-        )
-
-
-def _step_heights(member: Member, x: float) -> list[float]:
-    """Heights of the step of the four sides, mm; those that stay in line are 0."""
-    first, last = dims_at(member, x, before=True), dims_at(member, x)
-    a, b = bounds(member.section, first), bounds(member.section, last)
-    deep = (a[3] - a[2]) - (b[3] - b[2])
-    up_down = {"top": [deep], "bottom": [deep]}.get(member.anchor, [deep / 2.0, deep / 2.0])
-    return [a[0] - b[0], a[1] - b[1], *up_down]
+            check_shoulder(values, f"{path}.stations[{i}].shoulder_fillet", member, i - 1, is_step)
 
 
 def check_edges(values: Values, member: Member) -> None:
