@@ -15,7 +15,7 @@ import numpy as np
 from numpy.polynomial import chebyshev
 from numpy.typing import NDArray
 
-from fem.beam.cuts import NetEffect, net_effects
+from fem.beam.cut_stiffness import NetEffect, net_effects
 from fem.beam.interpolate import between, loops, points, same_make
 from fem.beam.law import LineProperties
 from fem.beam.outlines import dims_slope, member_outline, net_section

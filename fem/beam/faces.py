@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.beam.interpolate import between
-from fem.beam.outlines.net import Taken
+from fem.beam.outlines.net_sections import Taken
 from fem.beam.regions import Strip
 from geometry.outline import Arc, Edge, Line, Outline
 from geometry.problem import RunError

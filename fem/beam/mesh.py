@@ -11,12 +11,12 @@ from numpy.typing import NDArray
 from fem.beam.along import Sections, SectionSolver
 from fem.beam.axes import member_axes
 from fem.beam.cut_faces import cut_faces
-from fem.beam.cuts import extent
+from fem.beam.cut_stiffness import extent
 from fem.beam.element import GAUSS, transfer_matrices
 from fem.beam.equations import Line
 from fem.beam.faces import FACES, curve, face_edges, strip
 from fem.beam.law import LineProperties
-from fem.beam.outlines.net import taken_at
+from fem.beam.outlines.net_sections import taken_at
 from fem.beam.regions import EndFace, Face, Region, Strip
 from geometry.part import LineLoad, Member, Part
 from geometry.problem import RunError

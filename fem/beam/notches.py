@@ -11,7 +11,7 @@ from collections.abc import Callable, Iterator
 import numpy as np
 
 from fem.beam import notch_factors as factors
-from fem.beam.cuts import extent
+from fem.beam.cut_stiffness import extent
 from fem.beam.figures import Solved, forces_at
 from fem.beam.notch_factors import FLAT_BAND, ROUND_TENSION_BAND, OutOfRange
 from fem.beam.regions import EndFace, Face

@@ -7,7 +7,7 @@ import math
 import numpy as np
 import pytest
 
-from fem.beam.cuts import extent
+from fem.beam.cut_stiffness import extent
 from geometry.part import Cut, RegionLoad, Section, Station
 
 FLAT = Section("rectangle", {"depth": 60.0, "width": 8.0})

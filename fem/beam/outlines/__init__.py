@@ -7,7 +7,7 @@ from __future__ import annotations
 
 from fem.beam.outlines.loops import Corner, OutlineError, moved, rounded_polygon, turned
 from fem.beam.outlines.member import dims_at, dims_slope, line_offset, member_outline
-from fem.beam.outlines.net import chord, net_section, notch_depth
+from fem.beam.outlines.net_sections import chord, net_section, notch_depth
 from fem.beam.outlines.shapes import outline_of, with_defaults
 
 __all__ = [

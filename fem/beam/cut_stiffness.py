@@ -20,7 +20,7 @@ from numpy.typing import NDArray
 
 from fem.beam.law import LineProperties
 from fem.beam.outlines import net_section
-from fem.beam.outlines.net import chord, notch_depth
+from fem.beam.outlines.net_sections import chord, notch_depth
 from fem.beam.section import OutlineIntegrals, outline_integrals
 from geometry.part import Cut, Member
 
