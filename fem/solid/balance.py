@@ -102,7 +102,9 @@ def balance_checks(
             1e-6 * float((stiff * np.abs(u[k].T).ravel()).sum()),
             1e-300,
         )
-        yield _check(f"case {case.name}: work is twice the energy", gap / size, ENERGY_ALLOWED)
+        # work inherits the rounding of the displacements, which the known field measures (slender parts)
+        allowed = max(ENERGY_ALLOWED, 10.0 * solution.gauge)
+        yield _check(f"case {case.name}: work is twice the energy", gap / size, allowed)
         yield _check(
             f"case {case.name}: largest displacement over length",
             np.linalg.norm(u[k], axis=0).max() / length,
