@@ -19,6 +19,7 @@ from geometry.named_solid import NamedSolid, SizeHint
 from geometry.problem import MeshError
 
 REFERENCE_ACCURACY = 0.02
+LEAST_ACCURACY, MOST_ACCURACY = 0.001, 0.2  # as in the spec
 RAISERS = ("hole", "fillet", "step", "rim")
 
 _ALONG = ("root", "corner", "edge", "toe")
@@ -77,10 +78,13 @@ def sizes_for(solid: NamedSolid, accuracy: float, factor: float = 1.0) -> Sizes:
     Raises
     ------
     MeshError
-        `accuracy` outside 0.0005 to 0.2, or a hint that names a face the solid does not have.
+        `accuracy` outside 0.001 to 0.2, or a hint that names a face the solid does not have.
     """
-    if not 0.0005 <= accuracy <= 0.2:
-        raise MeshError(f"accuracy: given {accuracy:.4g}; allowed 0.0005 to 0.2 (0.05 % to 20 %)")
+    if not LEAST_ACCURACY <= accuracy <= MOST_ACCURACY:
+        raise MeshError(
+            f"accuracy: given {accuracy:.4g}; allowed {LEAST_ACCURACY:g} to {MOST_ACCURACY:g}"
+            f" ({100 * LEAST_ACCURACY:g} % to {100 * MOST_ACCURACY:g} %)"
+        )
     around, coarse = elements_around(accuracy), bulk_factor(accuracy)
     # 2 V / A is the thickness of a plate, half the side of a square bar, half the diameter of a round one.
     thickness = 2.0 * solid.volume / solid.area

@@ -39,7 +39,7 @@ def mesh_solid(
     solid
         What the solid builder made.
     accuracy
-        Wanted relative accuracy of the results, 0.0005 to 0.2; see `mesher.sizes`.
+        Wanted relative accuracy of the results, 0.001 to 0.2; see `mesher.sizes`.
     budget
         `seconds` limits each attempt; `memory` (MiB) limits the child process and, by way of an estimate
         made before meshing, the number of nodes that the solver will have to carry.

@@ -13,6 +13,8 @@ import pytest
 from geometry.budget import Budget
 from geometry.named_solid import NamedSolid
 from geometry.problem import MeshError
+from geometry.spec import PartSpec
+from geometry.spec.words.fields import OfKind
 from mesher import NamedMesh, mesh_solid
 from mesher.assemble import LEAST_QUALITY, MeshRefused, _check_faces, check_quality
 from mesher.attempts import CHAIN, Attempt
@@ -20,7 +22,7 @@ from mesher.estimate import nodes_within, solver_memory
 from mesher.matching import FaceMismatch, match_faces
 from mesher.measure import tetrahedron_volumes
 from mesher.quality import scaled_jacobian
-from mesher.sizes import sizes_for
+from mesher.sizes import LEAST_ACCURACY, MOST_ACCURACY, sizes_for
 from mesher.solid_mesher import _least_nodes
 
 
@@ -51,7 +53,13 @@ def test_when_every_attempt_fails_the_message_lists_them_and_the_log(bar: NamedS
 
 def test_a_mesh_over_budget_is_refused_before_meshing(bar: NamedSolid) -> None:
     with pytest.raises(MeshError, match=r"about \d+ nodes \(\d+ unknowns\).*budget is 150 MiB.*coarser"):
-        mesh_solid(bar, 0.0005, Budget(memory=150))
+        mesh_solid(bar, 0.001, Budget(memory=150))
+
+
+def test_accuracy_has_the_range_of_the_spec(bar: NamedSolid) -> None:
+    field = next(m for m in PartSpec.model_fields["accuracy"].metadata if isinstance(m, OfKind))
+    assert (field.least, field.most) == (LEAST_ACCURACY, MOST_ACCURACY)
+    assert sizes_for(bar, 0.001).bulk < sizes_for(bar, 0.2).bulk
 
 
 def test_the_estimate_is_near_the_mesh(bar_mesh: NamedMesh, plate_mesh: NamedMesh, rod_mesh: NamedMesh) -> None:
@@ -67,9 +75,9 @@ def test_memory_and_nodes_are_inverse() -> None:
     assert solver_memory(70_191 / 3) == pytest.approx(278.0, rel=0.45)
 
 
-@pytest.mark.parametrize("accuracy", [0.0, -1.0, 0.5, float("nan")])
+@pytest.mark.parametrize("accuracy", [0.0, -1.0, 0.0009, 0.5, float("nan")])
 def test_accuracy_out_of_range_is_refused(bar: NamedSolid, budget: Budget, accuracy: float) -> None:
-    with pytest.raises(MeshError, match=r"allowed 0\.0005 to 0\.2"):
+    with pytest.raises(MeshError, match=r"allowed 0\.001 to 0\.2"):
         mesh_solid(bar, accuracy, budget)
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 
 import pytest
@@ -460,3 +461,27 @@ def test_a_line_load_on_a_face_that_is_interrupted(tables: str, words: tuple[str
     text = str(only(found))
     assert text.startswith("loads.q: given bar.top from 0")
     assert all(word in text for word in words), text
+
+
+def test_the_offset_of_a_hole_is_answered_with_the_range_that_holds() -> None:
+    at = 'at       = "reach / 2"'
+    text = str(only(problems(CAMERA_ARM, (at, f'{at}\noffset = "40 mm"'))))
+    found = re.search(r"given 40 mm; allowed: more than (\S+) mm and less than (\S+) mm, .* at 180 mm along", text)
+    assert found, text
+    low, high = map(float, found.groups())
+    # At 180 mm the web's flat is 46 - 2 (8 + 6) = 18 mm high; a hole of 14 mm leaves 2 mm, less on the taper.
+    assert low == pytest.approx(-high) and 1.4 < high < 2.0
+    assert not problems(CAMERA_ARM, (at, f'{at}\noffset = "{high - 1e-4} mm"'))
+    assert problems(CAMERA_ARM, (at, f'{at}\noffset = "{high + 1e-4} mm"'))
+
+
+@pytest.mark.parametrize("name", ["", " "])
+def test_an_empty_name_is_called_one(name: str) -> None:
+    text = str(only(problems(CANTILEVER, ("[cases.tip_force]", f'[cases."{name}"]'))))
+    assert text.startswith(f'cases."{name}": given an empty name; allowed: 1 to 40 letters'), text
+
+
+def test_an_edge_radius_is_told_with_its_edge_and_the_plate_that_bounds_it() -> None:
+    radius = '[[members.bar.edge_radii]]\nedges = "end"\nradius = "10 mm"'
+    text = str(only(problems(CANTILEVER, (STATIONS, f"{radius}\n{STATIONS}"))))
+    assert "10 mm on the rim of the end; allowed: less than 10 mm. That is half the width of 20 mm" in text

@@ -120,24 +120,42 @@ def _check_place(values: Values, path: str, profile: Profile, cut: Cut) -> bool:
             for wall, stretches in walls_of(profile, cut, dims_at(profile.member, x, before)):
                 near = min(stretches, key=lambda t: abs(cut.offset - (t[0] + t[1]) / 2.0))
                 if not near[0] < s < near[1]:
-                    _misplaced(values, path, cut, wall, near, x)
+                    _misplaced(values, path, profile, cut, wall, near, x)
                     return False
     return True
 
 
-def _misplaced(values: Values, path: str, cut: Cut, wall: str, room: Interval, x: float) -> None:
-    wide = max(s for _, s in rim(cut)) - min(s for _, s in rim(cut))
+def _misplaced(values: Values, path: str, profile: Profile, cut: Cut, wall: str, room: Interval, x: float) -> None:
     axis = "z" if cut.axis == "y" else "y"
-    where = f"the {wall}, {axis} from {room[0]:.6g} to {room[1]:.6g} mm at {x:.6g} mm along"
-    if wide >= room[1] - room[0]:
+    low, high = _offsets(profile, cut, "")
+    if low >= high:  # where the walls have no offset in common, the one at fault is told first
+        low, high = _offsets(profile, cut, wall)
+    if low >= high:
+        where = f"the {wall}, {axis} from {room[0]:.6g} to {room[1]:.6g} mm at {x:.6g} mm along"
         name, size = {"hole": "diameter", "slot": "width", "opening": "height"}[cut.kind], cut.depth
         if cut.kind != "hole" and abs(math.sin(cut.turned)) * cut.length > cut.depth:
             name, size = "length", cut.length  # turned, it is its length that lies across
         values.problem(f"{path}.{name}", f"{size:.6g} mm", f"less than {max(room[1] - room[0], 0.0):.6g} mm",
                        f"It must lie within {where}")  # fmt: skip
     else:
-        values.problem(f"{path}.offset", f"{cut.offset:.6g} mm", f"a place that keeps the cut within {where}",
+        walls = dict(walls_of(profile, cut, dims_at(profile.member, cut.at)))
+        a, b = min(walls.get(wall, [room]), key=lambda t: abs(cut.offset - (t[0] + t[1]) / 2.0))
+        values.problem(f"{path}.offset", f"{cut.offset:.6g} mm",
+                       f"more than {low:.6g} mm and less than {high:.6g} mm, which keeps the cut within the {wall}, "
+                       f"{axis} from {a:.6g} to {b:.6g} mm at {cut.at:.6g} mm along",
                        f"Offset is counted from the member's line ({axis} of the member)")  # fmt: skip
+
+
+def _offsets(profile: Profile, cut: Cut, wall: str) -> Interval:
+    """Between which offsets the whole rim lies in a wall (or, without a name, in all), mm; its taper included."""
+    low, high = -math.inf, math.inf
+    for x, s in rim(cut):
+        for before in (True, False):
+            for name, stretches in walls_of(profile, cut, dims_at(profile.member, x, before)):
+                if wall in ("", name):
+                    a, b = min(stretches, key=lambda t: abs(cut.offset - (t[0] + t[1]) / 2.0))
+                    low, high = max(low, a - (s - cut.offset)), min(high, b - (s - cut.offset))
+    return low, high
 
 
 def _side_depth(profile: Profile, cut: Cut, x: float) -> float:

@@ -14,7 +14,7 @@ from geometry.spec.resolve.values import Values
 Gap = tuple[float, float, str]
 """From, to (mm along the member) and what makes it."""
 
-ENDS = 1e-3  # share of the length by which a face may fall short of its load at the ends; the solid model allows as much
+ENDS = 1e-3  # share of the length by which a face may fall short of its load at the ends, as in the solid model
 TOP_BOTTOM = ("all", "flanges", "top flange", "bottom flange", "top wall", "bottom wall", "bottom leg")
 UPRIGHT = ("all", "web", "left wall", "right wall", "upright leg")
 
@@ -98,7 +98,7 @@ def _leaves_nothing(profile: Profile, face: str, cut: Cut) -> bool:
 
 def _width(profile: Profile, face: str, d: dict[str, float]) -> Interval | None:
     """Range of y (top, bottom) or z of a face, from the line, mm; None where it is not worked out (outlines)."""
-    shape, (oy, oz) = profile.member.section.shape, profile.origin(d)
+    shape, oy = profile.member.section.shape, profile.origin(d)[0]
     low_y, high_y, low_z, high_z = profile.box(d)
     if shape in ("rectangle", "box"):
         low, high = (low_y, high_y) if face in ("top", "bottom") else (low_z, high_z)

@@ -44,6 +44,9 @@ def _check_legal(values: Values, table: str, names: Iterable[str]) -> None:
         if not LEGAL.fullmatch(name):
             plain = re.sub(r"[^A-Za-z0-9_-]+", "_", name)[:40]
             fix = f'Write "{plain}"' if LEGAL.fullmatch(plain) else ""
+            if not name.strip():
+                values.problem(f'{table}."{name}"'[:80], "an empty name", LEGAL_WORDS, f"Give each of {table} a name")
+                continue
             values.problem(f"{table}.{name}"[:80], name, LEGAL_WORDS, fix)
 
 

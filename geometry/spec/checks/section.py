@@ -153,24 +153,32 @@ def check_edges(values: Values, member: Member) -> None:
             values.problem(f"{path}[{i}].edges", edge.edges, "one radius for each edge")
         if edge.edges in outer and member.section.dims.get("corner_radius", 0.0) > 0.0:
             values.problem(f"{path}[{i}].edges", edge.edges, "edges that are sharp", "The section has a corner_radius")
-        most = _largest_edge_radius(member, edge.edges)
+        if edge.edges in outer:
+            where = f"the edge {edge.edges}"
+        else:
+            where = f"the rim of the {edge.edges}" if edge.edges in ("start", "end") else f"the rims of {edge.edges}"
+        most, what = _largest_edge_radius(member)
         if edge.radius >= most:
-            values.problem(f"{path}[{i}].radius", f"{edge.radius:.6g} mm", f"less than {most:.6g} mm")
+            values.problem(f"{path}[{i}].radius", f"{edge.radius:.6g} mm on {where}", f"less than {most:.6g} mm",
+                           f"That is half the {what}, and a radius on either side of it must fit")  # fmt: skip
 
 
-def _largest_edge_radius(member: Member, edges: str) -> float:
-    """Half the thinnest plate that has the edge (or half its hole's wall), mm."""
-    least = math.inf
-    for x in knots(member):
-        for d in (dims_at(member, x, True), dims_at(member, x)):
-            if member.section.shape == "rectangle":
-                least = min(least, d["depth"], d["width"])
-            elif member.section.shape == "round":
-                least = min(least, d["diameter"])
-            else:
-                walls = [d[n] for n in ("web", "wall", "flange", "bottom_flange", "thickness") if n in d]
-                least = min([least, *walls])
-    return least / 2.0
+def _largest_edge_radius(member: Member) -> tuple[float, str]:
+    """Half the thinnest plate of the member (mm), and that plate in words with its place."""
+    names = {"rectangle": ("depth", "width"), "round": ("diameter",)}.get(
+        member.section.shape, ("web", "wall", "flange", "bottom_flange", "thickness")
+    )
+    found = [
+        (d[name], x, name)
+        for x in knots(member)
+        for d in (dims_at(member, x, True), dims_at(member, x))
+        for name in names
+        if name in d
+    ]
+    if not found:
+        return math.inf, ""
+    least, x, name = min(found)
+    return least / 2.0, f"{name.replace('_', ' ')} of {least:.6g} mm at {x:.6g} mm along"
 
 
 def axes_known(member: Member) -> bool:
