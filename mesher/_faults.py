@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import signal
 import subprocess
 import time
 from typing import Any
@@ -20,6 +21,8 @@ def provoke(job: dict[str, Any]) -> tuple[dict[str, Any], dict[str, Any]]:
             grandchild.wait()
     if fault == "fault:crash":
         os.abort()
+    if fault == "fault:killed":
+        os.kill(os.getpid(), signal.SIGKILL)
     if fault == "fault:memory":
         hoard = []
         while True:

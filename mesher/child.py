@@ -25,7 +25,9 @@ from typing import Any, Literal
 import numpy as np
 from numpy.typing import NDArray
 
-Ending = Literal["refused", "time", "memory", "crash", "stopped"]
+from geometry.endings import ended_from_outside, signal_name, told_from_outside
+
+Ending = Literal["refused", "time", "memory", "crash", "killed", "stopped"]
 
 _ADDRESS_SPACE_MARGIN = 1024
 """MiB of address space allowed above the memory limit: libraries map far more than they touch."""
@@ -34,7 +36,8 @@ _ADDRESS_SPACE_MARGIN = 1024
 class ChildFailure(Exception):
     """The child gave no result.
 
-    ``ending``: ``refused`` (the kernel or a check raised an exception), ``time``, ``memory``, ``crash`` or ``stopped``.
+    ``ending``: ``refused`` (the kernel or a check raised an exception), ``time``, ``memory``, ``crash``,
+    ``killed`` (by a signal from outside) or ``stopped``.
     ``kind`` is the name of the child's exception, ``facts`` what it told about it, ``log`` the kernel's output.
     """
 
@@ -170,7 +173,9 @@ def _collect(
         raise ChildFailure("stopped", "stopped on request", log)
     answer_file = room / "answer.json"
     if code != 0 or not answer_file.exists():
-        how = f"signal {signal.Signals(-code).name}" if code < 0 else f"exit code {code}"
+        if killer := ended_from_outside(code):
+            raise ChildFailure("killed", told_from_outside("the mesh process", killer, memory), log)
+        how = f"signal {signal_name(code)}" if code < 0 else f"exit code {code}"
         raise ChildFailure("crash", f"the mesh process crashed ({how})", log)
     answer = json.loads(answer_file.read_text(encoding="utf-8"))
     if "error" in answer:

@@ -52,6 +52,8 @@ def mesh_outlines(outlines: Sequence[Outline], size: Sequence[float], memory: fl
     try:
         result = run_child(job, _START_SECONDS + _SECONDS_PER_OUTLINE * len(outlines), memory)
     except ChildFailure as failure:
+        if failure.ending == "killed":  # nothing says that the section is at fault
+            raise MeshError(f"the section could not be meshed: {failure}.") from failure
         raise MeshError(
             f"the section could not be meshed: {failure}. Look for crossing or open loops, or a size far smaller"
             f" than the section.\n{failure.log[-1000:]}"

@@ -19,6 +19,7 @@ import time
 from pathlib import Path
 
 from geometry.budget import Budget
+from geometry.endings import ended_from_outside, signal_name, told_from_outside
 from geometry.named_solid import NamedSolid
 from geometry.part import Part
 from geometry.problem import HaunchError, SolidError
@@ -73,7 +74,10 @@ class SolidChild:
                              "stopped; look for a very small radius or a cut that only grazes the part")
         code = self._process.wait()
         if not self._answer:
-            how = f"signal {signal.Signals(-code).name}" if code < 0 else f"exit code {code}"
+            if killer := ended_from_outside(code):
+                raise SolidError(told_from_outside("the CAD process that builds the solid", killer,
+                                                   self._budget.memory) + "; nothing was written")
+            how = f"signal {signal_name(code)}" if code < 0 else f"exit code {code}"
             raise SolidError(f"the CAD kernel crashed ({how}) while it built the solid; nothing was written. "
                              "Leave out edge radii and shoulder fillets one by one to find the one at fault, "
                              f"or allow more than {self._budget.memory} MiB of memory")

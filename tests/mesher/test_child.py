@@ -48,6 +48,12 @@ def test_a_crash_is_told_with_its_signal() -> None:
     assert caught.value.ending == "crash"
 
 
+def test_a_child_ended_from_outside_is_not_called_a_crash() -> None:
+    with pytest.raises(ChildFailure, match=r"from outside \(SIGKILL\).*run again.*--memory \(now 1000 MiB\)") as caught:
+        run_child({"task": "fault:killed"}, seconds=20.0, memory=1000)
+    assert caught.value.ending == "killed"
+
+
 def test_a_child_that_eats_memory_is_stopped_at_its_limit() -> None:
     with pytest.raises(ChildFailure, match="memory limit") as caught:
         run_child({"task": "fault:memory"}, seconds=20.0, memory=200)

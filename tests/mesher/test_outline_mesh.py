@@ -12,7 +12,8 @@ from skfem import Basis, ElementTriP2, MeshTri2
 
 from geometry.outline import Arc, Edge, Line, Outline, Point
 from geometry.problem import MeshError
-from mesher import OutlineMesh, mesh_outlines, outline_to_skfem
+from mesher import OutlineMesh, mesh_outlines, outline_mesher, outline_to_skfem
+from mesher.child import ChildResult, run_child
 
 
 def _loop(points: Sequence[Point]) -> tuple[Edge, ...]:
@@ -158,3 +159,13 @@ def test_a_wall_far_too_thin_is_refused_with_the_number_at_once() -> None:
     with pytest.raises(MeshError, match=r"100 mm would need about \d+ triangles of 0\.006 mm, and at most \d+"):
         mesh_outlines([thin], [0.006])
     assert time.perf_counter() - started < 2.0
+
+
+def test_a_section_is_not_blamed_when_its_mesher_was_killed(monkeypatch: pytest.MonkeyPatch) -> None:
+    def run(job: object, seconds: float, memory: float) -> ChildResult:
+        return run_child({"task": "fault:killed"}, seconds, memory)
+
+    monkeypatch.setattr(outline_mesher, "run_child", run)
+    with pytest.raises(MeshError, match="SIGKILL.*run again") as caught:
+        mesh_outlines([RECTANGLE], [10.0])
+    assert "loops" not in str(caught.value)

@@ -124,6 +124,21 @@ def test_a_crash_of_the_cad_kernel_is_told_not_suffered(helpers: ModuleType, mon
     assert child._process.poll() is not None
 
 
+def test_a_cad_process_ended_from_outside_is_no_fault_of_the_part(
+    helpers: ModuleType, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    real = subprocess.Popen
+
+    def popen(command: list[str], **kinds: Any) -> subprocess.Popen[bytes]:
+        return real([sys.executable, "-c", "import os, signal; os.kill(os.getpid(), signal.SIGKILL)"], **kinds)
+
+    monkeypatch.setattr(subprocess, "Popen", popen)
+    with SolidChild(helpers.make_part(), Budget()) as child:
+        with pytest.raises(RunError, match="SIGKILL.*run again.*--memory") as caught:
+            child.result()
+    assert caught.value.stage == "solid" and "edge radii" not in str(caught.value)
+
+
 def test_a_hanging_cad_kernel_is_stopped(helpers: ModuleType, monkeypatch: pytest.MonkeyPatch) -> None:
     real = subprocess.Popen
 
