@@ -16,7 +16,7 @@ from typing import TYPE_CHECKING
 from geometry.budget import Budget
 from geometry.named_solid import NamedSolid
 from geometry.part import Part
-from studies.check.folder import RESULT, refuse_existing, run_folder
+from studies.check.folder import RESULT, refuse_existing, remove_stale, run_folder
 from studies.check.result import CaseStress, CheckResult, Denting, MeshSummary
 from studies.check.solid_child import SolidChild
 from studies.check.stages import Clock, Event, Listener, blamed_on
@@ -80,8 +80,11 @@ def check(part: Part | str | Path, out: str | Path, budget: Budget | None = None
     models = build_models(resolved, budget, clock)
     with clock.stage("compare"):
         result = _compare(models, name, started, clock)
-    with clock.stage("write"), run_folder(out, replace) as room:
-        result = write_run(room, result, models, clock, pictures)
+    with clock.stage("write"):
+        for stale in remove_stale(out):
+            clock.note("write", f"removed {stale.name}, which an earlier run to this folder left when it was killed")
+        with run_folder(out, replace) as room:
+            result = write_run(room, result, models, clock, pictures)
     return dataclasses.replace(result, stages=clock.times())
 
 

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import subprocess
+import sys
 from pathlib import Path
 
 import pytest
 
 from geometry.problem import RunError
-from studies.check.folder import refuse_existing, run_folder
+from studies.check.folder import MARK, refuse_existing, remove_stale, run_folder
 
 
 def write(out: Path, text: str, replace: bool = False) -> None:
@@ -96,3 +98,52 @@ def test_a_parent_that_is_a_file_or_cannot_be_written_is_told_before_the_work(
 def test_asking_leaves_nothing_behind(tmp_path: Path) -> None:
     refuse_existing(tmp_path / ("a" * 240), False)
     assert list(tmp_path.iterdir()) == []
+
+
+KILLED = """
+import os, signal, sys
+from pathlib import Path
+from studies.check.folder import run_folder
+with run_folder(Path(sys.argv[1]), False) as room:
+    (room / "part.step").write_text("half")
+    if sys.argv[2] == "kill":
+        os.kill(os.getpid(), signal.SIGKILL)
+    print("writing", flush=True)
+    sys.stdin.read()
+"""
+
+
+def child(out: Path, how: str) -> subprocess.Popen[str]:
+    return subprocess.Popen([sys.executable, "-c", KILLED, str(out), how], text=True, cwd=Path(__file__).parents[2],
+                            stdin=subprocess.PIPE, stdout=subprocess.PIPE)  # fmt: skip
+
+
+def test_what_a_killed_run_left_is_removed_and_nothing_else(tmp_path: Path) -> None:
+    out = tmp_path / "arm.run"
+    with child(out, "kill") as killed:
+        assert killed.wait(timeout=60) == -9
+    left = list(tmp_path.iterdir())
+    assert len(left) == 1 and left[0].name.startswith(".arm.run.") and left[0].name.endswith(".partial")
+    names = (".arm.run.abcdefgh.partial", ".arm.run.partial", ".leg.run.abcdefgh.partial")
+    others = [tmp_path / name for name in names]
+    for other in others:
+        (other / "run").mkdir(parents=True)
+    (others[1] / MARK).touch()
+    (others[2] / MARK).touch()
+    foreign = tmp_path / ".arm.run.abcdefg2.partial"  # marked, but something of somebody's own lies in it
+    foreign.mkdir()
+    (foreign / MARK).touch()
+    (foreign / "notes.txt").touch()
+    assert remove_stale(out) == left
+    assert sorted(tmp_path.iterdir()) == sorted([*others, foreign])
+
+
+def test_a_run_that_is_being_written_is_left_alone(tmp_path: Path) -> None:
+    out = tmp_path / "arm.run"
+    with child(out, "wait") as other:
+        assert other.stdout is not None and other.stdout.readline() == "writing\n"
+        assert remove_stale(out) == []
+        assert len(list(tmp_path.iterdir())) == 1
+        other.communicate("", timeout=60)
+    assert [p.name for p in tmp_path.iterdir()] == ["arm.run"]
+    assert [p.name for p in out.iterdir()] == ["part.step"]
