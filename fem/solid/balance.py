@@ -60,7 +60,8 @@ def load_checks(model: SolidModel) -> Iterator[Check]:
             continue
         else:
             declared, about, arm = load.force, load.moment, load.arm
-        scale = float(max(np.linalg.norm(declared), np.linalg.norm(about) / arm if about is not None else 0.0))
+        scale = float(max(np.linalg.norm(declared), np.linalg.norm(about) / arm if about is not None else 0.0,
+                          load.push))  # fmt: skip
         scale = scale if scale > 0 else max(float(np.abs(vector).sum()), 1e-300)
         yield _check(f"load {load.name}: force", np.linalg.norm(force - declared) / scale, load.force_allowed)
         if about is not None:
