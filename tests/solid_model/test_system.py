@@ -2,18 +2,23 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 import scipy.sparse as sp
 from skfem import MeshTet, MeshTet2
-from solid_help import box_mesh, box_part, named_mesh
+from solid_help import box_mesh, box_part, box_regions, named_mesh
 
 import fem.solid.factor as factor
 from fem.solid import solve_solid
+from fem.solid.balance import load_checks
 from fem.solid.factor import Cholesky, NotPositive, pardiso_available, upper_triangle
+from fem.solid.load import solid_loads
+from fem.solid.model import build_model
 from fem.solid.system import reduced
 from geometry.budget import Budget
-from geometry.part import BodyLoad, RegionLoad, Support
+from geometry.part import BodyLoad, Pressure, RegionLoad, Support
 from geometry.problem import SolveError
 from mesher.named_mesh import NamedMesh
 
@@ -159,3 +164,22 @@ def test_picked_rows_and_columns_equal_the_product() -> None:
     twice.data[0] = 2.0  # not a mere choice of unknowns: the product is taken
     assert abs(reduced(K, twice) - twice.T @ K @ twice).max() == 0.0
     assert abs(upper_triangle(K) - sp.triu(K)).max() == 0.0
+
+
+def test_a_pressure_all_round_is_judged_by_what_it_presses_not_by_its_resultant() -> None:
+    """On all four sides the resultant is nothing but rounding, which must not be divided by itself."""
+    sides = box_regions(100.0, 10.0, 20.0)
+    mesh = box_mesh(
+        100.0, 10.0, 20.0, (5, 1, 2),
+        {"arm.round": lambda x: np.any([sides[f"arm.{s}"](x) for s in ("top", "bottom", "left", "right")], axis=0)},
+    )  # fmt: skip
+    part = box_part(100.0, 10.0, 20.0, [Support("wall", "arm.start", ALL)], [Pressure("water", "arm.round", 3.7)])
+    result = solve_solid(part, mesh, BUDGET)
+    assert [c for c in result.checks if not c.ok] == []
+    load = solid_loads(part, mesh)["water"]
+    assert load.push == pytest.approx(3.7 * 2 * (10.0 + 20.0) * 100.0)
+    # the check still sees a pressure that is lost on one element
+    model = build_model(part, mesh)
+    vectors = np.array(model.load_vectors)
+    vectors[0][np.argmax(np.abs(vectors[0]).sum(axis=1))] *= 0.99
+    assert any(not c.ok for c in load_checks(replace(model, load_vectors=vectors)))
