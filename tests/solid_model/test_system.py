@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 import scipy.sparse as sp
+import scipy.sparse.linalg as spla
 from skfem import MeshTet, MeshTet2
 from solid_help import box_mesh, box_part, box_regions, named_mesh
 
@@ -83,6 +84,18 @@ def test_factor_solves_several_columns_and_sees_negative_pivots(backend: str) ->
 def test_a_factor_beyond_the_memory_is_refused() -> None:
     with pytest.raises(SolveError, match="MiB"):
         solve_solid(PART, box_mesh(100.0, 10.0, 20.0, (12, 4, 6)), Budget(threads=1, memory=1))
+
+
+@pytest.mark.parametrize("cells", [(6, 1, 2), (10, 2, 4)])
+def test_the_memory_of_the_fallback_is_told_before_and_refused(cells: tuple[int, int, int]) -> None:
+    model = build_model(PART, box_mesh(100.0, 10.0, 20.0, cells))
+    free = np.flatnonzero(np.repeat(model.mesh.nodes[0] > 1e-6, 3))
+    matrix = model.K[free][:, free].tocsr()
+    entries = spla.splu(matrix.tocsc(), permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True}).nnz
+    need = factor.lu_memory(matrix)
+    assert 1.0 < need * 2**20 / (24 * entries) < 2.0  # never less than L and U take, and not far above
+    with pytest.raises(SolveError, match=rf"about {need:.0f} MiB and the budget is 1 MiB"):
+        Cholesky(matrix, Budget(threads=1, memory=1), "lu")
 
 
 def test_a_sliver_is_refused_by_its_quality() -> None:
