@@ -87,7 +87,9 @@ def _set_size_field(
     gmsh.model.mesh.field.setString(field, "FileName", str(folder / "sizes.bin"))
     gmsh.model.mesh.field.setNumber(field, "TextFormat", 0)
     gmsh.model.mesh.field.setAsBackgroundMesh(field)
-    return node_integrals(areas, [grid.at(s.points) for s in samples], volume), [s.tolerance for s in samples]
+    grows = [s.size < sizes.bulk for s in samples]
+    found = [grid.at(s.points) for s in samples]
+    return node_integrals(areas, found, volume, grows, sizes.bulk, sizes.slope), [s.tolerance for s in samples]
 
 
 def _arrays(faces: list[int]) -> dict[str, Any]:

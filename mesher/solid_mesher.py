@@ -119,11 +119,12 @@ def _attempt(
 
 
 def _least_nodes(solid: NamedSolid, sizes: Sizes) -> int:
-    """Estimate without curvature and without the growth of sizes, so never more than the kernel's own, which for a
-    sheet of millions of elements takes minutes to make."""
+    """Estimate without curvature and with each face's size growing at once, so never more than the kernel's own, which
+    for a sheet of millions of elements takes minutes to make."""
     areas = [face.area for face in solid.faces]
     wanted = [np.array([min(sizes.faces.get(i, sizes.bulk), sizes.bulk)]) for i in range(len(areas))]
-    return estimated_nodes(*node_integrals(areas, wanted, solid.volume))
+    grows = [float(h[0]) < sizes.bulk for h in wanted]
+    return estimated_nodes(*node_integrals(areas, wanted, solid.volume, grows, sizes.bulk, sizes.slope))
 
 
 def _replay(solid: NamedSolid, budget: Budget, recipe: Mapping[str, Any]) -> NamedMesh:

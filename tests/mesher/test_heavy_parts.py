@@ -21,4 +21,6 @@ def test_first_attempt_succeeds_and_the_estimate_holds(solids: ModuleType, name:
     assert mesh.recipe["estimated_nodes"] == pytest.approx(mesh.nodes.shape[1], rel=0.25)
     assert mesh.volume == pytest.approx(solid.volume, rel=2e-4)
     if name == "camera_arm" and accuracy == 0.02:
-        assert 14_000 <= mesh.nodes.shape[1] <= 26_000  # about 60 000 unknowns
+        # 85 000 unknowns. It was 60 000 until the holes got the elements that their measured rim stress asks for (36
+        # around, half the accuracy at the rim: `mesher.sizes`); a third either way tells when sizes move again.
+        assert 21_000 <= mesh.nodes.shape[1] <= 38_000
