@@ -87,7 +87,10 @@ def remove_stale(out: Path) -> list[Path]:
     """
     name = re.compile(rf"\.{re.escape(out.name[:100])}\.[a-z0-9_]{{8}}{re.escape(SUFFIX)}")
     found = [p for p in out.parent.iterdir() if name.fullmatch(p.name)] if out.parent.is_dir() else []
-    return [p for p in sorted(found) if _is_stale(p) and not shutil.rmtree(p, ignore_errors=True) and not p.exists()]
+    stale = [p for p in sorted(found) if _is_stale(p)]
+    for folder in stale:
+        shutil.rmtree(folder, ignore_errors=True)
+    return [p for p in stale if not p.exists()]
 
 
 def _is_stale(scratch: Path) -> bool:
