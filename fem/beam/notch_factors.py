@@ -3,7 +3,7 @@
 All are elastic, on the *net* (narrow) section's nominal stress unless said otherwise. Arguments outside the range of
 a fit raise `OutOfRange`; nothing is extrapolated. Sources: R. B. Heywood, Designing by Photoelasticity, 1952; W. D.
 Pilkey and D. F. Pilkey, Peterson's Stress Concentration Factors, 3rd ed., 2008 (coefficients partly from memory and
-from secondary transcriptions; the one sign that those print wrongly is settled by C1 + .. + C4 -> 1 for no step).
+from secondary sources; the one sign that those print wrongly is settled by C1 + .. + C4 -> 1 for no step).
 Photoelastic fits are up to 7 % low for shallow steps in flat bars and up to 16 % low for stepped round bars in
 tension (N.-A. Noda, Y. Takase and K. Monda, Int. J. Fatigue 19 (1997) 75-84; S. M. Tipton, J. R. Sorem and
 R. D. Rolovic, J. Mech. Des. 118 (1996) 321-327): hence the bands.
