@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -20,6 +21,9 @@ from studies.judge.bands import OPEN_SHAPES, CaseFacts
 from studies.judge.context import Context
 from studies.judge.independent import independent_checks
 from studies.judge.limits import Evidence, verdicts
+
+WIDE_BAND = 0.10
+"""Share of the largest displacement; a band beyond it is said in so many words."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -45,7 +49,8 @@ def judge(part: Part, named: NamedSolid, mesh: NamedMesh, solid: SolidResult, be
     evidence = Evidence(ctx, solid, solid_table, beam_table, pairs)
     properties = sections_at(ctx.member, named.slices[:, 0])
     checks = independent_checks(ctx, named, solid, properties)
-    return Judgement(pairs, verdicts(evidence), checks, peak_places(ctx, named, solid), cautions(ctx, solid, facts))
+    return Judgement(pairs, verdicts(evidence), checks, peak_places(ctx, named, solid),
+                     cautions(ctx, solid, facts, pairs))
 
 
 def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, figures: Table, case: str) -> CaseFacts:
@@ -105,9 +110,15 @@ def what_is_there(ctx: Context, named: NamedSolid, peak: SolidPeak) -> str:
     return " / ".join(words) + (f", {' '.join(sides)} side" if sides else "")
 
 
-def cautions(ctx: Context, solid: SolidResult, facts: dict[str, CaseFacts]) -> tuple[str, ...]:
+def cautions(ctx: Context, solid: SolidResult, facts: dict[str, CaseFacts],
+             pairs: Sequence[Pair]) -> tuple[str, ...]:
     """Sentences that this part earns; those that stand under every result are the report's."""
     found = [f"Accuracy {100 * ctx.part.accuracy:g} %: requested, not verified."]
+    widest = max((p.band / p.scale for p in pairs if p.key.quantity == "displacement" and p.scale > 0), default=0.0)
+    if widest > WIDE_BAND:
+        found.append(f"The beam is a weak witness for this part: a displacement may differ by {100 * widest:.0f} % of "
+                     "the largest one before it is called suspicious, so agreement says little. See what the "
+                     "allowances are made of.")
     if ctx.slenderness < 5:
         found.append(f"Length over depth is {ctx.slenderness:.2g}: stubby, so the beam model is a rough guide.")
     dents = [d for d in solid.denting if d.value > 0]

@@ -7,8 +7,9 @@ import dataclasses
 from bar import mesh, sound
 
 from geometry.named_solid import SizeHint
+from studies.judge import judge
 from studies.judge.context import Context
-from studies.judge.whole_run import peak_places
+from studies.judge.whole_run import cautions, peak_places
 
 
 def test_a_peak_is_named_by_its_feature_and_side() -> None:
@@ -26,3 +27,12 @@ def test_a_wall_is_no_feature() -> None:
     places = peak_places(Context(part, mesh()), dataclasses.replace(named, hints=(hint,)), solid)
     assert not any("web" in place.place for place in places)
     assert all("arm." in place.place for place in places)  # the faces that meet there instead
+
+
+def test_a_wide_band_is_said() -> None:
+    part, named, m, solid, beam = sound()
+    ctx = Context(part, mesh())
+    pairs = judge(part, named, m, solid, beam).pairs
+    assert not any("weak witness" in text for text in cautions(ctx, solid, {}, pairs))
+    wide = [dataclasses.replace(p, band=0.2 * p.scale) for p in pairs]
+    assert any("weak witness" in text and "20 %" in text for text in cautions(ctx, solid, {}, wide))
