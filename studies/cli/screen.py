@@ -86,6 +86,9 @@ def print_result(console: Console, result: CheckResult) -> None:
                           f"{escape(check.text)}", soft_wrap=True)
     console.print(f"[bold]{escape(verdict(result))}[/]", soft_wrap=True)
     console.print(f"Accuracy {100 * result.accuracy:g} %: requested, not verified.")
+    for text in result.cautions:
+        if not text.startswith("Accuracy"):
+            console.print(escape(text), soft_wrap=True)
 
 
 def _pair_table(title: str, pairs: list[Pair]) -> Table:
