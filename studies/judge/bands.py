@@ -107,8 +107,8 @@ def taper(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
 
 
 def steps(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
-    # At a step the wider part is not at once fully engaged: about a quarter of its height is lost on its side
-    # (common practice, no source); the height is half the change of the largest dimension.
+    # Beside a step the wider part is not at once fully engaged, over a length of about half the step's height (set by
+    # trial); the height is half the largest change of a dimension.
     for zone, height in zip(ctx.step_zones, ctx.step_heights, strict=True):
         yield Share(f"load path at the {zone.what}", 0.5 * height / ctx.length)
 

@@ -30,7 +30,7 @@ ALL = {"x": 0.0, "y": 0.0, "z": 0.0}
 def value(
     result: SolidResult, place: str, quantity: str, component: str, case: str = "all", axes: str = "global"
 ) -> float:
-    return {f.key: f.value for f in result.figures}[FigureKey(case, place, quantity, component, axes)]  # type: ignore
+    return {f.key: f.value for f in result.figures}[FigureKey(case, place, quantity, component, axes)]
 
 
 def test_c9_pure_bending_is_exact() -> None:

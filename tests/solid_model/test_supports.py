@@ -25,7 +25,7 @@ MESH = box_mesh(L, B, H, (8, 2, 3))
 def value(
     result: SolidResult, place: str, quantity: str, component: str, case: str = "all", axes: str = "global"
 ) -> float:
-    return {f.key: f.value for f in result.figures}[FigureKey(case, place, quantity, component, axes)]  # type: ignore
+    return {f.key: f.value for f in result.figures}[FigureKey(case, place, quantity, component, axes)]
 
 
 def solve(supports, loads, cases=None, **more) -> SolidResult:  # type: ignore[no-untyped-def]
