@@ -44,7 +44,7 @@ def judge(part: Part, named: NamedSolid, mesh: NamedMesh, solid: SolidResult, be
     """
     ctx = Context(part, mesh)
     solid_table, beam_table = table(solid.figures), table(beam.figures)
-    facts = {c.name: case_facts(ctx, named, beam, beam_table, c.name) for c in part.cases}
+    facts = {c.name: case_facts(ctx, named, beam, (solid_table, beam_table), c.name) for c in part.cases}
     pairs = pair_figures(ctx, solid_table, beam_table, facts, signed_causes(beam, beam_table))
     evidence = Evidence(ctx, solid, solid_table, beam_table, pairs)
     properties = sections_at(ctx.member, named.slices[:, 0])
@@ -53,21 +53,28 @@ def judge(part: Part, named: NamedSolid, mesh: NamedMesh, solid: SolidResult, be
                      cautions(ctx, solid, facts, pairs))
 
 
-def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, figures: Table, case: str) -> CaseFacts:
-    """What one case adds to the facts about the part (see `CaseFacts`)."""
-    moved = [f.value for k, f in figures.items() if k.case == case and k.quantity == "displacement"]
-    x = ctx.x_axis
-    turned = [abs(float(np.dot(v, x))) for v in _rotations(figures, case)]
-    largest = max(map(abs, moved), default=0.0)
+def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, models: Sequence[Table], case: str) -> CaseFacts:
+    """What one case adds to the facts about the part (see `CaseFacts`).
+
+    The twist is the smaller of the two models': a spurious twist in one of them must not widen the band by which it
+    is judged.
+    """
     thin = named.least_wall < 0.2 * min(ctx.size)
-    twist = 0.5 * max(ctx.size) * max(turned, default=0.0)
     return CaseFacts(
         shear_share=abs(beam.shear_share.get(case, 0.0)),
-        twist_share=min(twist / largest, 1.0) if largest > 0 else 0.0,
+        twist_share=min(_twist_share(ctx, figures, case) for figures in models),
         open_thin=thin and ctx.member.section.shape in OPEN_SHAPES,
         thin_walled=thin,
         acting=frozenset(name for c in ctx.part.cases if c.name == case for name, f in c.factors.items() if f),
     )
+
+
+def _twist_share(ctx: Context, figures: Table, case: str) -> float:
+    moved = [f.value for k, f in figures.items() if k.case == case and k.quantity == "displacement"]
+    turned = [abs(float(np.dot(v, ctx.x_axis))) for v in _rotations(figures, case)]
+    largest = max(map(abs, moved), default=0.0)
+    twist = 0.5 * max(ctx.size) * max(turned, default=0.0)
+    return min(twist / largest, 1.0) if largest > 0 else 0.0
 
 
 def _rotations(figures: Table, case: str) -> list[np.ndarray]:

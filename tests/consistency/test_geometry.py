@@ -38,8 +38,9 @@ def gaps_of(seed: int) -> str:
     found = [f"section at {worst[0]:.4g} mm: {worst[1:]}"] if worst[1:].max() > SECTION else []
     cuts = {f"area of m.{n}" for c in part.members[0].cuts for n in (c.name, c.group)}
     cuts |= {name.replace("area", "centroid") for name in cuts}
-    # A known fault of the beam's faces, not yet mended: its sides run up to a shoulder, the solid's end where the fillet
-    # begins, so at most one radius of the length is too much (seeds 108, 169 and 180: 0.22 to 0.24 % of the area).
+    # A known fault of the beam's faces, not yet mended: its sides run up to a shoulder, the solid's end where the
+    # fillet begins, so at most one radius of the length is too much (seeds 108, 169 and 180: 0.22 to 0.24 % of the
+    # area).
     fillets = sum(s.shoulder_fillet for s in part.members[0].stations) / mesh.length
     sides = {f"{figure} of m.{side}" for figure in ("area", "centroid") for side in ("top", "bottom", "left", "right")}
     for gap in (*mass_gaps(part, solid, mesh), *region_gaps(part, solid, mesh)):

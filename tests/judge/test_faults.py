@@ -78,3 +78,13 @@ def test_slices_that_differ_from_the_beam_are_flagged() -> None:
     bad = [c.name for c in judged.checks if not c.ok and "slices" in c.name]
     assert len(bad) == 3  # area and both second moments
     assert mesh().volume == pytest.approx(part.members[0].section.dims["depth"] * 10.0 * 400.0)
+
+
+def test_a_spurious_twist_in_one_model_does_not_widen_its_own_band() -> None:
+    part, named, m, solid, beam = sound()
+    twisted = dataclasses.replace(beam, figures=tuple(
+        dataclasses.replace(f, value=1.0) if f.key.quantity == "rotation" and f.key.component == "x" else f
+        for f in beam.figures))
+    bands = [{p.key: p.band for p in judge(part, named, m, solid, b).pairs if p.key.quantity == "displacement"}
+             for b in (beam, twisted)]
+    assert bands[0] == pytest.approx(bands[1])
