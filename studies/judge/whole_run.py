@@ -128,7 +128,8 @@ def cautions(ctx: Context, solid: SolidResult, facts: dict[str, CaseFacts],
                      "allowances are made of.")
     if ctx.slenderness < 5:
         found.append(f"Length over depth is {ctx.slenderness:.2g}: stubby, so the beam model is a rough guide.")
-    dents = [d for d in solid.denting if d.value > 0]
+    largest = float(np.linalg.norm(solid.u, axis=1).max()) if solid.u.size else 0.0
+    dents = [d for d in solid.denting if d.value > 1e-6 * largest]  # less is rounding of a rigid face
     if dents:
         worst = max(dents, key=lambda d: d.value)
         found.append(f"Denting of the loaded face {worst.region}: up to {worst.value:.3g} mm beyond the section's own "
