@@ -8,6 +8,7 @@ from typing import Literal, NamedTuple
 Quantity = Literal[
     "displacement", "rotation", "reaction_force", "reaction_moment", "section_force", "section_moment",
     "nominal_stress", "notch_stress", "peak_stress", "strain_energy", "mass", "centre_of_mass",
+    "natural_frequency", "buckling_factor",
 ]
 
 

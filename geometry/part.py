@@ -328,18 +328,82 @@ class TemperatureLoad:
     change: float
 
 
-Load = RegionLoad | Pressure | BearingLoad | LineLoad | RemotePoint | BodyLoad | TemperatureLoad
+@dataclass(frozen=True, slots=True)
+class StripLoad:
+    """One position of a load that travels along a face: a force (N, global) on each of some short strips of it.
+
+    Attributes
+    ----------
+    name
+        The travelling load's name and the position: ``trolley@350``.
+    on
+        The face travelled on, ``rail.top``.
+    centres
+        Middle of each strip (one an axle), distance from the member's start, mm, in rising order.
+    length
+        Length of each strip along the member, mm.
+    force
+        Of each strip: an even traction over the strip and across the face's whole width (what cuts leave of it). In
+        the beam it acts at the middle of that width, spread evenly over the strip's length. A strip that passes an
+        end of the part acts with its whole force on what is left of it.
+    """
+
+    name: str
+    on: str
+    centres: tuple[float, ...]
+    length: float
+    force: Vector
+
+
+Load = RegionLoad | Pressure | BearingLoad | LineLoad | RemotePoint | BodyLoad | TemperatureLoad | StripLoad
+
+
+@dataclass(frozen=True, slots=True)
+class Travel:
+    """Which position of a travelling load a case stands for: the declared `case`, the `load`, and where its first axle
+    is (`position`, mm from the member's start)."""
+
+    case: str
+    load: str
+    position: float
 
 
 @dataclass(frozen=True, slots=True)
 class Case:
     """Load case: factor of each load by name. Loads that are not named do not act.
 
-    The mass of a remote point acts with the factors of the body loads.
+    The mass of a remote point acts with the factors of the body loads. A case with a travelling load is resolved into
+    one case a position, named ``crossing@350``; `travel` then says which position of what.
     """
 
     name: str
     factors: Mapping[str, float]
+    travel: Travel | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Vibration:
+    """Natural frequencies are wanted: the lowest `modes` of them (of a free part: not counting its rigid motions).
+
+    `free`: without the supports. Supports hold with the value zero; remote masses with their inertia belong to the
+    part; loads do not act.
+    """
+
+    modes: int = 6
+    free: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Buckling:
+    """Linear buckling factors of one case: the `modes` of least size.
+
+    The loads named in `fixed` keep their value, the others of the case grow together: (K + G_fixed + factor G_varying)
+    phi = 0 with G the geometric stiffness of the linear stress. A negative factor: under the varying loads reversed.
+    """
+
+    case: str
+    fixed: tuple[str, ...] = ()
+    modes: int = 3
 
 
 @dataclass(frozen=True, slots=True)
@@ -360,7 +424,8 @@ class Limit:
     quantity
         deflection (size of the section's mean displacement, mm), displacement (one component of it),
         rotation (rad, size or component), relative_displacement (between `at` and `relative_to`),
-        stress (MPa, see `basis`), yield_factor, mass (t), reaction (N, size of the force at a support).
+        stress (MPa, see `basis`), yield_factor, mass (t), reaction (N, size of the force at a support),
+        frequency (Hz, least of the natural frequencies), buckling_factor (least positive one).
     at
         Place, region or support; empty: anywhere.
     component
@@ -404,6 +469,8 @@ class Part:
     cases: tuple[Case, ...]
     limits: tuple[Limit, ...] = ()
     places: tuple[Place, ...] = ()
+    vibration: Vibration | None = None
+    buckling: tuple[Buckling, ...] = ()
     accuracy: float = 0.02
     parameters: Mapping[str, float] = field(default_factory=dict)
     source_text: str = ""

@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.figure import Figure
+from fem.mode import Mode
 
 Array = NDArray[np.float64]
 
@@ -83,6 +84,8 @@ class BeamResult:
         Predicted honest differences from the solid.
     notes
         Why a figure that one might expect is not given.
+    vibration, buckling
+        Modes, in the order of their size; those of several buckling studies one after the other.
     """
 
     figures: tuple[Figure, ...]
@@ -95,3 +98,5 @@ class BeamResult:
     causes: tuple[Cause, ...] = ()
     notes: tuple[str, ...] = ()
     seconds: Mapping[str, float] = field(default_factory=dict)
+    vibration: tuple[Mode, ...] = ()
+    buckling: tuple[Mode, ...] = ()

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.figure import Figure
+from fem.mode import Mode
 from mesher.named_mesh import NamedMesh
 
 Array = NDArray[np.float64]
@@ -122,6 +123,14 @@ class SolidResult:
         See `Check`.
     timings
         Seconds of each stage.
+    backend
+        The solver that was used, ``cholesky (pardiso)``, ``cholesky (lu)`` or ``multigrid``, and
+    backend_reason
+        why it was chosen, or fallen back to: a sentence.
+    vibration, buckling
+        Modes, in the order of their size; those of several buckling studies one after the other.
+    vibration_shapes, buckling_shapes
+        (modes, 3, n) displacement of every node, scaled to a largest size of 1 mm.
     """
 
     cases: tuple[str, ...]
@@ -145,3 +154,8 @@ class SolidResult:
     checks: tuple[Check, ...]
     timings: dict[str, float] = field(default_factory=dict)
     backend: str = ""
+    backend_reason: str = ""
+    vibration: tuple[Mode, ...] = ()
+    buckling: tuple[Mode, ...] = ()
+    vibration_shapes: Array = field(default_factory=lambda: np.zeros((0, 3, 0)))
+    buckling_shapes: Array = field(default_factory=lambda: np.zeros((0, 3, 0)))
