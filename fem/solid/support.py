@@ -172,54 +172,61 @@ def _blocks(part: Part, mesh: NamedMesh, regions: dict[str, Region]) -> tuple[li
 
 
 def _eliminate(mesh: NamedMesh, points: Sequence[Block], rigid: Sequence[Block]) -> tuple[sp.csr_matrix, Array]:
+    """T and g. The unknowns of a node stand together and follow the order of the nodes; those of the rigid regions
+    come last. `fem.solid.solver.elimination` relies on it."""
     n = mesh.nodes.shape[1]
     g = np.zeros((n, 3))
-    free = np.ones(n, dtype=bool)
-    entries: list[tuple[Array, NDArray[np.int64], NDArray[np.int64]]] = []  # values, rows, columns from 0 of this block
+    count = np.full(n, 3)
+    bases = []
     for block in points:
-        free[block.nodes] = False
         basis, shift = _null_space(block.rows, block.values, f"the supports {', '.join(sorted(set(block.supports)))}")
         g[block.nodes] = shift
-        entries.append(_block_entries(block.nodes, np.repeat(basis[None], block.nodes.size, axis=0), True))
+        count[block.nodes] = basis.shape[1]
+        bases.append(basis)
     for block in rigid:
-        free[block.nodes] = False
+        count[block.nodes] = 0
+    plain = np.ones(n, dtype=bool)
+    for block in (*points, *rigid):
+        plain[block.nodes] = False
+    first = np.cumsum(count) - count
+    nodes = np.flatnonzero(plain)
+    rows, columns = [(3 * nodes[:, None] + np.arange(3)).ravel()], [(first[nodes][:, None] + np.arange(3)).ravel()]
+    values: list[Array] = [np.ones(rows[0].size)]
+    for block, basis in zip(points, bases, strict=True):
+        _add(values, rows, columns, block.nodes, np.repeat(basis[None], block.nodes.size, axis=0), first[block.nodes])
+    total = int(count.sum())
+    for block in rigid:
         size = float(np.ptp(mesh.nodes[:, block.nodes], axis=1).max())
         scale = np.r_[np.ones(3), np.full(3, 1.0 / size)]  # unknown rotations as the displacement at the rim
         motion = rigid_map(mesh.nodes[:, block.nodes], np.asarray(block.centre)) * scale
         basis, shift = np.eye(6), np.zeros(6)
         if block.rows.size:
-            rows = block.rows * scale
-            weight = np.linalg.norm(rows, axis=1)
+            held = block.rows * scale
+            weight = np.linalg.norm(held, axis=1)
             basis, shift = _null_space(
-                rows / weight[:, None], block.values / weight, f"the supports {', '.join(sorted(set(block.supports)))}"
+                held / weight[:, None], block.values / weight, f"the supports {', '.join(sorted(set(block.supports)))}"
             )
         g[block.nodes] = motion @ shift
-        entries.append(_block_entries(block.nodes, motion @ basis, False))
-    nodes = np.flatnonzero(free)
-    plain = (3 * nodes[:, None] + np.arange(3)).ravel()
-    values: list[Array] = [np.ones(plain.size)]
-    rows_: list[NDArray[np.int64]] = [plain]
-    columns: list[NDArray[np.int64]] = [np.arange(plain.size)]
-    count = plain.size
-    for v, r, c in entries:
-        values.append(v)
-        rows_.append(r)
-        columns.append(c + count)
-        count += int(c.max()) + 1 if c.size else 0
-    T = sp.csr_matrix((np.concatenate(values), (np.concatenate(rows_), np.concatenate(columns))), shape=(3 * n, count))
+        _add(values, rows, columns, block.nodes, motion @ basis, np.full(block.nodes.size, total))
+        total += basis.shape[1]
+    T = sp.csr_matrix((np.concatenate(values), (np.concatenate(rows), np.concatenate(columns))), shape=(3 * n, total))
     T.eliminate_zeros()
+    T.sort_indices()
     return T, g.ravel()
 
 
-def _block_entries(
-    nodes: NDArray[np.int64], basis: Array, own: bool
-) -> tuple[Array, NDArray[np.int64], NDArray[np.int64]]:
-    """Entries of basis (k, 3, f): with `own` each node has its own f unknowns, else all share f."""
-    k, _, f = basis.shape
-    rows = np.broadcast_to((3 * nodes[:, None] + np.arange(3))[:, :, None], basis.shape)
-    first = f * np.arange(k) if own else np.zeros(k, dtype=np.int64)
-    columns = np.broadcast_to(first[:, None, None] + np.arange(f), basis.shape)
-    return basis.ravel(), rows.ravel(), columns.ravel()
+def _add(
+    values: list[Array],
+    rows: list[NDArray[np.int64]],
+    columns: list[NDArray[np.int64]],
+    nodes: NDArray[np.int64],
+    basis: Array,
+    first: NDArray[np.int64],
+) -> None:
+    """Entries of basis (k, 3, f) for k nodes, whose unknowns begin at `first` (k,)."""
+    values.append(basis.ravel())
+    rows.append(np.broadcast_to((3 * nodes[:, None] + np.arange(3))[:, :, None], basis.shape).ravel())
+    columns.append(np.broadcast_to(first[:, None, None] + np.arange(basis.shape[2]), basis.shape).ravel())
 
 
 def build_constraints(part: Part, mesh: NamedMesh) -> Constraints:
