@@ -36,6 +36,7 @@ class NotPositive(Exception):
 @cache
 def _loaded_pardiso() -> Any:
     """A solver object with MKL loaded, to be copied: finding the library takes time. None without MKL."""
+    os.environ.setdefault("KMP_BLOCKTIME", "0")  # or idle threads spin for 0.2 s and take the processor from others
     try:
         from pypardiso import PyPardisoSolver
 
@@ -65,7 +66,8 @@ def pardiso_available() -> bool:
 
 
 class Cholesky:
-    """Factor of a symmetric positive definite matrix (n, n) in CSR form.
+    """Factor of a symmetric positive definite matrix (n, n) in CSR form: the whole of it, or with `upper` its upper
+    triangle with sorted columns.
 
     Raises
     ------
@@ -75,14 +77,18 @@ class Cholesky:
         When the factor would not fit the memory of the budget.
     """
 
-    def __init__(self, matrix: sp.csr_matrix, budget: Budget, backend: str = "auto") -> None:
+    def __init__(self, matrix: sp.csr_matrix, budget: Budget, backend: str = "auto", upper: bool = False) -> None:
         if backend == "auto":
             backend = "pardiso" if pardiso_available() else "lu"
         self.backend = backend
         self.size = matrix.shape[0]
         if (matrix.diagonal() <= 0).any():
             raise NotPositive
-        self._factor: _Pardiso | _Lu = (_Pardiso if backend == "pardiso" else _Lu)(matrix, budget)
+        self._factor: _Pardiso | _Lu
+        if backend == "pardiso":
+            self._factor = _Pardiso(matrix if upper else upper_triangle(matrix), budget)
+        else:
+            self._factor = _Lu(whole(matrix) if upper else matrix, budget)
 
     def solve(self, rhs: Array) -> Array:
         """(n, k) solutions of all right-hand sides (n, k)."""
@@ -102,9 +108,14 @@ def upper_triangle(matrix: sp.csr_matrix) -> sp.csr_matrix:
     return sp.csr_matrix((matrix.data[kept], matrix.indices[kept], starts), shape=matrix.shape)
 
 
+def whole(upper: sp.csr_matrix) -> sp.csr_matrix:
+    """The symmetric matrix of an upper triangle."""
+    return sp.csr_matrix(upper + sp.triu(upper, 1).T)
+
+
 class _Pardiso:
-    def __init__(self, matrix: sp.csr_matrix, budget: Budget) -> None:
-        self.upper = upper_triangle(matrix)
+    def __init__(self, upper: sp.csr_matrix, budget: Budget) -> None:
+        self.upper = upper
         self.solver = _fresh_pardiso()
         self.solver.libmkl.MKL_Set_Num_Threads(ctypes.c_int(budget.threads))
         iparm = self.solver.iparm

@@ -18,6 +18,7 @@ from fem.solid.reaction import reactions
 from fem.solid.result import SolidResult
 from fem.solid.sections import member_sections, section_forces, section_motions
 from fem.solid.shape import Array
+from fem.solid.solver import Choice
 from fem.solid.stress import nodal_stress, principal_stresses, von_mises
 from fem.solid.system import solve_system
 from geometry.budget import Budget
@@ -32,6 +33,7 @@ def solve_solid(
     progress: Callable[[str], None] | None = None,
     backend: str = "auto",
     sharp_edges: Sequence[tuple[str, Array]] = (),
+    solver: Choice = "auto",
 ) -> SolidResult:
     """Solve every case of the part on its mesh.
 
@@ -40,9 +42,11 @@ def solve_solid(
     progress
         Called with the name of each stage as it begins.
     backend
-        ``auto`` (PARDISO where it is installed), ``pardiso`` or ``lu``.
+        Of the direct solver: ``auto`` (PARDISO where it is installed), ``pardiso`` or ``lu``.
     sharp_edges
         (label, points (k, 3) in mm) of re-entrant edges without a radius: peaks near them are marked.
+    solver
+        ``auto`` chooses by size and shape; ``cholesky`` or ``multigrid`` is taken as told.
 
     Raises
     ------
@@ -68,7 +72,7 @@ def solve_solid(
     stage("factor and solve")
     n = mesh.nodes.shape[1]
     total = (model.mechanical + model.thermal).reshape(len(cases), 3 * n).T
-    solution = solve_system(model.K, total, model.constraints, mesh, budget, backend)
+    solution = solve_system(model.K, total, model.constraints, mesh, budget, solver, backend)
     u = np.ascontiguousarray(solution.u.T.reshape(len(cases), n, 3).transpose(0, 2, 1))
     stage("reactions and balance")
     reacting = reactions(model, solution.u, solution.mean_forces)
@@ -117,6 +121,7 @@ def solve_solid(
         checks=tuple(checks),
         timings=timings,
         backend=solution.backend,
+        backend_reason=solution.reason,
     )
     stage("")
     return result

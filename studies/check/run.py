@@ -119,7 +119,7 @@ def build_models(part: Part, budget: Budget, clock: Clock) -> Models:
     with clock.stage("solve"):
         solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text),
                             sharp_edges=[(edge.label, edge.points) for edge in named_solid.sharp_edges])
-        if solid.backend == "lu":
+        if solid.backend == "cholesky (lu)":
             clock.note("solve", SLOWER_SOLVER)
     return Models(part, named_solid, mesh, beam, solid)
 
@@ -155,7 +155,7 @@ def make_result(models: Models, verdict: Judgement, name: str, started: str, clo
         solid_figures=tuple(solid.figures), beam_figures=tuple(models.beam.figures),
         pairs=tuple(verdict.pairs), limits=tuple(verdict.limits), checks=tuple(verdict.checks),
         peaks=tuple(verdict.peaks), case_stress=_case_stress(solid), denting=_denting(solid),
-        cautions=(*verdict.cautions, *((f"{SLOWER_SOLVER}.",) if solid.backend == "lu" else ())),
+        cautions=(*verdict.cautions, *((f"{SLOWER_SOLVER}.",) if solid.backend == "cholesky (lu)" else ())),
         notes=tuple(models.beam.notes),
         mesh=MeshSummary(mesh.nodes.shape[1], mesh.tets.shape[1], mesh.nodes.size, float(mesh.quality.min()),
                          mesh.volume, dict(mesh.recipe)),

@@ -17,7 +17,7 @@ from fem.solid.balance import load_checks
 from fem.solid.factor import Cholesky, NotPositive, pardiso_available, upper_triangle
 from fem.solid.load import solid_loads
 from fem.solid.model import build_model
-from fem.solid.system import reduced
+from fem.solid.solver.elimination import Elimination, block_matrix
 from geometry.budget import Budget
 from geometry.part import BodyLoad, Pressure, RegionLoad, Support
 from geometry.problem import SolveError
@@ -55,14 +55,14 @@ def mesh_with(nodes: np.ndarray | None = None, quality: float = 0.5) -> NamedMes
 def test_the_fallback_equals_pardiso() -> None:
     mesh = mesh_with()
     a, b = (solve_solid(PART, mesh, BUDGET, backend=name) for name in ("pardiso", "lu"))
-    assert (a.backend, b.backend) == ("pardiso", "lu")
+    assert (a.backend, b.backend) == ("cholesky (pardiso)", "cholesky (lu)")
     assert b.u == pytest.approx(a.u, abs=1e-10 * np.abs(a.u).max())
 
 
 def test_the_fallback_is_taken_when_mkl_is_missing(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(factor, "_loaded_pardiso", lambda: None)
     result = solve_solid(PART, mesh_with(), BUDGET)
-    assert result.backend == "lu"
+    assert result.backend == "cholesky (lu)"
     assert [c for c in result.checks if not c.ok] == []
 
 
@@ -166,16 +166,33 @@ def test_detached_pieces_are_counted() -> None:
         solve_solid(PART, twice, BUDGET)
 
 
-def test_picked_rows_and_columns_equal_the_product() -> None:
+@pytest.mark.parametrize("rigid", [0, 2])
+def test_the_upper_triangle_equals_the_product(rigid: int) -> None:
+    """Plain, partly held, wholly held and rigidly coupled nodes."""
     rng = np.random.default_rng(3)
-    K = sp.random(60, 60, density=0.2, random_state=rng, format="csr")
-    K = (K + K.T).tocsr()
-    kept = np.flatnonzero(rng.random(60) > 0.3)
-    T = sp.csr_matrix((np.ones(kept.size), (kept, np.arange(kept.size))), shape=(60, kept.size))
-    assert abs(reduced(K, T) - T.T @ K @ T).max() == 0.0
-    twice = T.copy()
-    twice.data[0] = 2.0  # not a mere choice of unknowns: the product is taken
-    assert abs(reduced(K, twice) - twice.T @ K @ twice).max() == 0.0
+    n = 20
+    full = sp.random(n, n, density=0.2, random_state=rng) + sp.eye(n)
+    K = sp.kron(full + full.T, np.ones((3, 3))).tocsr()
+    K.data *= rng.normal(size=K.nnz)
+    K = sp.csr_matrix(K + K.T)
+    kind = np.r_[np.full(12, 3), [2, 1, 0, 2, 0, 1, 3, 3]]  # unknowns of each node
+    kind[17:20] = 3 if not rigid else 0
+    T = np.zeros((3 * n, kind.sum() + 6 * rigid))
+    column = 0
+    for i, own in enumerate(kind):
+        T[3 * i : 3 * i + 3, column : column + own] = np.eye(3) if own == 3 else rng.normal(size=(3, own))
+        column += own
+    if rigid:
+        T[51:57, column:] = rng.normal(size=(6, 6 * rigid))
+        T[57:, column + 3 :] = rng.normal(size=(3, 6 * rigid - 3))
+    elimination = Elimination(sp.csr_matrix(T))
+    exact = T.T @ K.toarray() @ T
+    upper = elimination.square(block_matrix(K))
+    assert upper.has_sorted_indices
+    assert upper.toarray() == pytest.approx(np.triu(exact), abs=1e-13 * np.abs(exact).max())
+    y, f = rng.normal(size=(T.shape[1], 2)), rng.normal(size=3 * n)
+    assert elimination.expand(y) == pytest.approx(T @ y, abs=1e-13)
+    assert elimination.gather(f) == pytest.approx(T.T @ f, abs=1e-13)
     assert abs(upper_triangle(K) - sp.triu(K)).max() == 0.0
 
 

@@ -155,7 +155,7 @@ def test_a_hanging_cad_kernel_is_stopped(helpers: ModuleType, monkeypatch: pytes
 
 def test_the_slower_solver_is_told(helpers: ModuleType) -> None:
     models = helpers.make_models()
-    for backend, told in (("lu", True), ("pardiso", False)):
+    for backend, told in (("cholesky (lu)", True), ("cholesky (pardiso)", False)):
         other = dataclasses.replace(models, solid=dataclasses.replace(models.solid, backend=backend))
         result = run.make_result(other, helpers.make_judgement(models), "arm.toml", "2026-12-01T12:00:00Z", Clock())
         assert any("sparse LU" in caution for caution in result.cautions) is told

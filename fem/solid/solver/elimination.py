@@ -1,0 +1,196 @@
+"""The held motions u = T y in a form that is quick to apply, and T^T K T of a block matrix.
+
+T comes from `fem.solid.support`: the unknowns of one node stand together and follow the order of the nodes, those of
+the rigid regions come last. A node then has three plain unknowns, or fewer along a basis of its own, or belongs to a
+rigid region.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+import scipy.sparse as sp
+from numba import njit
+from numpy.typing import NDArray
+
+from fem.solid.block_matrix import BlockMatrix
+from fem.solid.shape import Array
+
+
+class Elimination:
+    """T (3 n, f) taken apart.
+
+    Attributes
+    ----------
+    T
+        (3 n, f).
+    first, count
+        (n,) first unknown of each node and how many it has of its own (0 to 3).
+    special, basis
+        (s,) nodes that are not plain, and (s, 3, 3) the columns of T that are their own (zero where there are fewer
+        than three).
+    rigid
+        (3 n, r) the columns shared by many nodes, r of them, the last of T.
+    """
+
+    def __init__(self, T: sp.csr_matrix) -> None:
+        self.T = T
+        n = T.shape[0] // 3
+        users = np.bincount(T.indices, minlength=T.shape[1])
+        node = np.repeat(np.arange(n), T.indptr[3::3] - T.indptr[:-3:3])
+        lowest, highest = np.full(T.shape[1], n), np.full(T.shape[1], -1)
+        np.minimum.at(lowest, T.indices, node)
+        np.maximum.at(highest, T.indices, node)
+        own = (users > 0) & (lowest == highest)
+        self.own = int(np.argmin(np.r_[own, False]))  # unknowns of single nodes; the others are shared
+        if (np.diff(lowest[: self.own]) < 0).any():
+            raise ValueError("the unknowns must follow the nodes, those of the rigid regions last")
+        self.count = np.bincount(lowest[: self.own], minlength=n)
+        self.first = (np.cumsum(self.count) - self.count).astype(np.int32)
+        plain = self.count == 3
+        self.kept = (3 * np.flatnonzero(plain)[:, None] + np.arange(3)).ravel()
+        self.place = (self.first[plain][:, None] + np.arange(3)).ravel()
+        entries = np.diff(T.indptr)
+        one = np.zeros(3 * n, dtype=bool)
+        one[self.kept] = True
+        at = T.indptr[:-1][one]
+        if not ((entries[one] == 1).all() and (T.data[at] == 1.0).all() and np.array_equal(T.indices[at], self.place)):
+            raise ValueError("a node with three unknowns of its own must have them plain")
+        self.special = np.flatnonzero(~plain)
+        self.rigid = T[:, self.own :].tocsr()
+        rows = (3 * self.special[:, None] + np.arange(3)).ravel()
+        self._rows, self._part = rows, T[rows]
+        self._back = self._part.T.tocsr()
+        self.basis = np.zeros((self.special.size, 3, 3))
+        part = self._part.tocoo()
+        s, own_column = part.row // 3, part.col < self.own
+        s, i = s[own_column], part.row[own_column] % 3
+        self.basis[s, i, part.col[own_column] - self.first[self.special[s]]] = part.data[own_column]
+
+    def expand(self, y: Array) -> Array:
+        """T y: (f, ...) to (3 n, ...)."""
+        u = np.zeros((self.T.shape[0], *y.shape[1:]))
+        u[self.kept] = y[self.place]
+        if self._rows.size:
+            u[self._rows] = self._part @ y
+        return u
+
+    def gather(self, f: Array) -> Array:
+        """T^T f: (3 n, ...) to (f, ...)."""
+        y = self._back @ f[self._rows] if self._rows.size else np.zeros((self.T.shape[1], *f.shape[1:]))
+        y[self.place] += f[self.kept]
+        return y
+
+    def square(self, K: BlockMatrix) -> sp.csr_matrix:
+        """Upper triangle, diagonal included, of T^T K T (f, f); columns rise in each row."""
+        which = np.full(self.count.size, -1, dtype=np.int32)
+        which[self.special] = np.arange(self.special.size, dtype=np.int32)
+        shared = np.zeros((self.T.shape[1], 0))
+        if self.rigid.shape[1]:
+            shared = self.gather(K @ self.rigid.toarray())
+        counts = self.count.astype(np.int32)
+        extra = np.count_nonzero(shared[: self.own], axis=1)
+        indptr = np.zeros(self.T.shape[1] + 1, dtype=np.int64)
+        _row_lengths(K.indptr, K.indices, self.first, counts, indptr)
+        indptr[1 : self.own + 1] += extra
+        indptr[self.own + 1 :] = np.arange(self.rigid.shape[1], 0, -1)
+        np.cumsum(indptr, out=indptr)
+        if indptr[-1] > np.iinfo(np.int32).max:
+            raise MemoryError(f"{indptr[-1]} entries do not fit the solver's 32-bit indices")
+        indices = np.empty(indptr[-1], dtype=np.int32)
+        data = np.empty(indptr[-1])
+        _fill_rows(
+            K.indptr, K.indices, K.blocks, self.first, counts, which, self.basis, indptr, indices, data
+        )
+        for k in range(self.rigid.shape[1]):
+            row = self.own + k
+            indices[indptr[row] : indptr[row + 1]] = np.arange(row, self.T.shape[1])
+            data[indptr[row] : indptr[row + 1]] = shared[row, k:]
+        if self.rigid.shape[1]:
+            rows, columns = np.nonzero(shared[: self.own])
+            rank = np.arange(rows.size) - np.repeat(np.cumsum(extra) - extra, extra)
+            at = indptr[rows + 1] - np.repeat(extra, extra) + rank
+            indices[at] = self.own + columns
+            data[at] = shared[rows, columns]
+        return sp.csr_matrix((data, indices, indptr.astype(np.int32)), shape=(self.T.shape[1],) * 2)
+
+
+@njit(nogil=True, cache=True)
+def _row_lengths(
+    indptr: NDArray[np.int32],
+    indices: NDArray[np.int32],
+    first: NDArray[np.int32],
+    count: NDArray[np.int32],
+    length: NDArray[np.int64],
+) -> None:
+    """Entries of row r of the upper triangle, in length[r + 1]."""
+    for i in range(indptr.size - 1):
+        right = 0
+        for k in range(indptr[i] + 1, indptr[i + 1]):
+            right += count[indices[k]]
+        for a in range(count[i]):
+            length[first[i] + a + 1] = right + count[i] - a
+
+
+@njit(nogil=True, cache=True)
+def _fill_rows(
+    indptr: NDArray[np.int32],
+    indices: NDArray[np.int32],
+    blocks: Array,
+    first: NDArray[np.int32],
+    count: NDArray[np.int32],
+    which: NDArray[np.int32],
+    basis: Array,
+    starts: NDArray[np.int64],
+    columns: NDArray[np.int32],
+    data: Array,
+) -> None:
+    """Q_i^T K_ij Q_j of every block, Q_i the basis of node i (the identity where which[i] is -1)."""
+    B = np.empty((3, 3))
+    C = np.empty((3, 3))
+    for i in range(indptr.size - 1):
+        if count[i] == 0:
+            continue
+        done = 0  # entries before this block in the rows of i, counted in row 0
+        for k in range(indptr[i], indptr[i + 1]):
+            j = indices[k]
+            if count[j] == 0:
+                continue
+            for a in range(3):
+                for b in range(3):
+                    B[a, b] = blocks[k, a, b]
+            if which[i] >= 0:
+                for a in range(3):
+                    for b in range(3):
+                        C[a, b] = 0.0
+                        for c in range(3):
+                            C[a, b] += basis[which[i], c, a] * B[c, b]
+                B[:] = C
+            if which[j] >= 0:
+                for a in range(3):
+                    for b in range(3):
+                        C[a, b] = 0.0
+                        for c in range(3):
+                            C[a, b] += B[a, c] * basis[which[j], c, b]
+                B[:] = C
+            for a in range(count[i]):
+                begin = starts[first[i] + a] + done
+                if i == j:
+                    for b in range(a, count[i]):
+                        columns[begin + b - a] = first[j] + b
+                        data[begin + b - a] = B[a, b]
+                else:
+                    begin -= a  # the row of the a-th unknown has a entries fewer in the diagonal block
+                    for b in range(count[j]):
+                        columns[begin + b] = first[j] + b
+                        data[begin + b] = B[a, b]
+            done += count[j]
+
+
+def block_matrix(K: sp.csr_matrix) -> BlockMatrix:
+    """Upper half in blocks of a whole symmetric matrix (3 n, 3 n)."""
+    blocks = K.tobsr((3, 3))
+    blocks.sort_indices()
+    rows = np.repeat(np.arange(blocks.indptr.size - 1), np.diff(blocks.indptr))
+    kept = blocks.indices >= rows
+    starts = np.concatenate([[0], np.cumsum(kept)])[blocks.indptr]
+    return BlockMatrix(starts.astype(np.int32), blocks.indices[kept].astype(np.int32), blocks.data[kept])
