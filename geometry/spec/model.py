@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Annotated, Literal
 
-from pydantic import BaseModel, ConfigDict, Field
+from pydantic import BaseModel, ConfigDict, Field, Strict
 
 from geometry.spec.words.fields import (
     AccelerationVector,
@@ -71,6 +71,21 @@ class SupportSpec(Words):
     axes: Literal["global", "member"] = Field("global", description="which axes x, y, z mean")
 
 
+class TravelSpec(Words):
+    """A load that travels along a face: its positions, each a case of its own (`crossing@350`)."""
+
+    start: Length = Field(alias="from", description="first position of the first axle, from the member's start")
+    end: Length = Field(alias="to", description="its last position")
+    steps: Annotated[Annotated[int, Strict()] | Text, OfKind("number", least=1.0, most=200.0)] = Field(
+        20, description="how many equal steps from the first to the last; there is one position more"
+    )
+    contact: Size = Field(description="length along the member over which the force of an axle is spread")
+    axles: Annotated[list[Length], Field(min_length=1, max_length=20)] = Field(
+        default_factory=lambda: ["0 mm"],
+        description="distance of each axle from the first, itself with 0, towards the member's end",
+    )
+
+
 class LoadSpec(Words):
     """One load: its kind follows from the words used."""
 
@@ -79,6 +94,7 @@ class LoadSpec(Words):
     moment: MomentVector | None = Field(None, description="moment about the region's centroid (or point), global")
     torque: Moment | None = Field(None, description="moment about the member's x")
     pressure: Annotated[Text, OfKind("stress")] | None = Field(None, description="positive: pushes into the part")
+    travels: TravelSpec | None = Field(None, description="it travels along a face; force is that of each axle")
     bearing: ForceVector | None = Field(None, description="force of a pin in a hole, global, square to the hole")
     force_per_length: LineForceVector | None = Field(None, description="on a face, global")
     force_per_length_end: LineForceVector | None = Field(None, description="its value at the end of the stretch")
@@ -102,19 +118,22 @@ class LimitSpec(Words):
     """A limit with a name of its own."""
 
     quantity: Literal[
-        "deflection", "displacement", "rotation", "relative_displacement", "stress", "yield_factor", "mass", "reaction"
+        "deflection", "displacement", "rotation", "relative_displacement", "stress", "yield_factor", "mass", "reaction",
+        "frequency", "buckling_factor",
     ] = Field(description="what is limited")
     at: Text = Field("", description="place, region or support; anywhere when left out")
     relative_to: Text = Field("", description="second place of a relative_displacement")
     component: Literal["", "x", "y", "z"] = Field("", description="global; the size when left out")
-    max: Real | Text | None = Field(None, description="largest value (everything but yield_factor)")
-    min: Real | Text | None = Field(None, description="least value (yield_factor)")
+    max: Real | Text | None = Field(None, description="largest value (everything that has no min)")
+    min: Real | Text | None = Field(None, description="least value (yield_factor, frequency, buckling_factor)")
     basis: Literal["nominal", "edge", "local"] = Field(
         "edge",
         description="nominal: beam formula, net section; edge: local stress where it converges, outer fibres "
         "extrapolated to held edges; local: local stress only, which cannot pass at a held sharp edge",
     )
-    cases: list[Text] = Field(default_factory=list, description="cases it is judged in; all when left out")
+    cases: list[Text] = Field(default_factory=list,
+        description="cases it is judged in (one with a travelling load: at every position); all when left out",
+    )
 
 
 class LimitsSpec(BaseModel):
@@ -130,6 +149,33 @@ class LimitsSpec(BaseModel):
         None, description="least factor against first yield (edge basis)"
     )
     mass: Annotated[Text, OfKind("mass", above=0.0)] | None = Field(None, description="largest mass of the part")
+    frequency: Annotated[Text, OfKind("frequency", above=0.0)] | None = Field(
+        None, description="least natural frequency; needs [vibration]"
+    )
+    buckling_factor: Annotated[Real | Text, OfKind("number", above=0.0)] | None = Field(
+        None, description="least buckling factor over the cases of [buckling]"
+    )
+
+
+ModeCount = Annotated[Annotated[int, Strict()] | Text, OfKind("number", least=1.0, most=40.0)]
+
+
+class VibrationSpec(Words):
+    """Natural frequencies of the part with the masses it carries (`mass` of loads at a point); loads do not act."""
+
+    modes: ModeCount = Field(6, description="how many, from the lowest; rigid motions of a free part do not count")
+    supports: Literal["declared", "none"] = Field(
+        "declared", description="declared: held as in [supports]; none: the free part, as if hung in soft slings"
+    )
+
+
+class BucklingSpec(Words):
+    """Linear buckling of one case: by which factor its loads may grow until the perfect part has another shape."""
+
+    fixed: list[Text] = Field(
+        default_factory=list, description="loads of the case that keep their value; the others grow together"
+    )
+    modes: ModeCount = Field(3, description="how many factors, from the one of least size")
 
 
 class PlaceSpec(Words):
@@ -161,6 +207,8 @@ class PartSpec(Words):
     cases: dict[str, dict[str, Number]] = Field(
         default_factory=dict, description="load = factor; one case `all` with every load at 1 when left out"
     )
+    vibration: VibrationSpec | None = Field(None, description="natural frequencies are wanted")
+    buckling: dict[str, BucklingSpec] = Field(default_factory=dict, description="buckling factors wanted, by case")
     limits: LimitsSpec = Field(default_factory=LimitsSpec, description="what the part must meet")
 
     def resolve(self, source_text: str = "") -> Part:

@@ -11,7 +11,18 @@ from pydantic.fields import FieldInfo
 
 from geometry.spec.checks.regions import FACES
 from geometry.spec.materials import GRADES, Grade
-from geometry.spec.model import LimitSpec, LimitsSpec, LoadSpec, MaterialSpec, PartSpec, PlaceSpec, SupportSpec
+from geometry.spec.model import (
+    BucklingSpec,
+    LimitSpec,
+    LimitsSpec,
+    LoadSpec,
+    MaterialSpec,
+    PartSpec,
+    PlaceSpec,
+    SupportSpec,
+    TravelSpec,
+    VibrationSpec,
+)
 from geometry.spec.resolve.acting import LOAD_WORDS
 from geometry.spec.resolve.member import WALLS
 from geometry.spec.text.units import KINDS, NUMBER
@@ -62,6 +73,9 @@ TABLES: tuple[tuple[str, type[BaseModel]], ...] = (
     ("[places.NAME]", PlaceSpec),
     ("[supports.NAME]", SupportSpec),
     ("[loads.NAME]", LoadSpec),
+    ("travels = { ... }", TravelSpec),
+    ("[vibration]", VibrationSpec),
+    ("[buckling.CASE]", BucklingSpec),
     ("[limits]", LimitsSpec),
     ("[limits.NAME]", LimitSpec),
 )
@@ -121,7 +135,8 @@ One TOML file describes one part. This page is made from the model that reads th
 
 
 def _table(title: str, model: type[BaseModel]) -> str:
-    lines = [f"## `{title}`" if title.startswith(("[", "section")) else f"## {title[:1].upper()}{title[1:]}", ""]
+    words = title.startswith(("[", "section", "travels"))
+    lines = [f"## `{title}`" if words else f"## {title[:1].upper()}{title[1:]}", ""]
     lines += [(model.__doc__ or "").strip().split("\n\n")[0].replace("``", "`"), ""]
     lines += ["| word | holds | default | meaning |", "|---|---|---|---|"]
     for name, info in model.model_fields.items():
@@ -189,6 +204,7 @@ def _free_tables() -> str:
 |---|---|
 | `[parameters]` | name = quantity (of any kind) or number; may use other parameters |
 | `[cases.NAME]` | load = factor; `self_weight` is a built-in load that uses `gravity` |
+| `[buckling.CASE]` | a case whose buckling factors are wanted, by its name |
 | `taper = { ... }` | dimension = its value at the far end |
 | `[[members.NAME.stations]]` | beside `at`: any dimension of the section = its value there |
 

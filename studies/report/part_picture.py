@@ -16,6 +16,7 @@ from geometry.part import (
     Pressure,
     RegionLoad,
     RemotePoint,
+    StripLoad,
     Support,
     TemperatureLoad,
 )
@@ -77,6 +78,9 @@ def describe_load(load: Load) -> str:
             size = _vector(load.first, "N/mm") if same else f"{_vector(load.first, 'N/mm')} to " \
                 f"{_vector(load.last, 'N/mm')}"
             return f"{load.name}: {size} on {load.on}, {load.start:g} to {load.end:g} mm"
+        case StripLoad():
+            axles = ", ".join(f"{x:g}" for x in load.centres)
+            return f"{load.name}: {_vector(load.force, 'N')} on {load.on}, {load.length:g} mm about {axles} mm"
         case RemotePoint():
             mass = f", mass {1e3 * load.mass:g} kg" if load.mass else ""
             wrench = _wrench(load.force, load.moment)

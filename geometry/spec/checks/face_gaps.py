@@ -32,7 +32,7 @@ def check_line_loads(values: Values, part: Part) -> None:
 def _check_load(values: Values, load: LineLoad, member: Member, face: str) -> None:
     length = length_of(member)
     found = []
-    for low, high, what in sorted(_gaps(member, face)):
+    for low, high, what in sorted(gaps_of(member, face)):
         low, high = max(low, load.start), min(high, load.end)
         at_end = low == load.start or high == load.end
         if high - low > (ENDS * length if at_end else 1e-9 * length):
@@ -56,7 +56,7 @@ def _check_load(values: Values, load: LineLoad, member: Member, face: str) -> No
     )  # fmt: skip
 
 
-def _gaps(member: Member, face: str) -> list[Gap]:
+def gaps_of(member: Member, face: str) -> list[Gap]:
     """Where nothing of a face is left, mm along the member."""
     length = length_of(member)
     gaps = [(low, high, "a shoulder fillet") for side, low, high in fillets(member) if face in (side, "surface")]

@@ -5,7 +5,7 @@ from __future__ import annotations
 import re
 from collections.abc import Collection, Iterable
 
-from geometry.part import Limit, LineLoad, Member, Part
+from geometry.part import Limit, LineLoad, Member, Part, StripLoad
 from geometry.spec.checks.profile import length_of
 from geometry.spec.checks.regions import faces_of, is_flat, regions_of
 from geometry.spec.model import PartSpec
@@ -33,7 +33,7 @@ def check_names(values: Values, spec: PartSpec, part: Part, removed: Collection[
         check_region(values, f"supports.{support.name}.on", support.on, part, removed)
     for load in part.loads:
         on = getattr(load, "on", None)
-        if isinstance(on, str):
+        if isinstance(on, str) and not isinstance(load, StripLoad):
             check_region(values, f"loads.{load.name}.on", on, part, removed)
     for limit in part.limits:
         _check_limit(values, limit, part, removed)
@@ -89,7 +89,7 @@ def check_region(values: Values, path: str, on: str, part: Part, removed: Collec
 
 def _check_limit(values: Values, limit: Limit, part: Part, removed: Collection[str]) -> None:
     path = f"limits.{limit.name}"
-    cases = [case.name for case in part.cases]
+    cases = list(dict.fromkeys(case.travel.case if case.travel else case.name for case in part.cases))
     for case in limit.cases:
         if case not in cases and not _lost(removed, "cases"):
             values.unknown(f"{path}.cases", case, cases, "a case")

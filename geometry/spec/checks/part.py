@@ -2,21 +2,26 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection
+from collections.abc import Collection, Sequence
 
 from geometry.part import Part
 from geometry.spec.checks.acting import check_loads, check_supports
 from geometry.spec.checks.cuts import check_cuts
 from geometry.spec.checks.face_gaps import check_line_loads
 from geometry.spec.checks.held import check_held
+from geometry.spec.checks.modes import check_modes
 from geometry.spec.checks.names import check_faces, check_names
 from geometry.spec.checks.profile import length_of
 from geometry.spec.checks.section import axes_known, check_edges, check_member
+from geometry.spec.checks.travel import check_travelling
 from geometry.spec.model import PartSpec
+from geometry.spec.resolve.travel import Travelling
 from geometry.spec.resolve.values import Values
 
 
-def check_part(values: Values, spec: PartSpec, part: Part, removed: Collection[str]) -> None:
+def check_part(
+    values: Values, spec: PartSpec, part: Part, removed: Collection[str], travelling: Sequence[Travelling] = ()
+) -> None:
     """Keep every mistake that can be seen in the resolved part.
 
     `removed` names tables that could not be read: nothing is said about what may only be missing with them.
@@ -46,6 +51,8 @@ def check_part(values: Values, spec: PartSpec, part: Part, removed: Collection[s
     check_loads(values, part)
     if not any(p.path.startswith("members") for p in values.problems):
         check_line_loads(values, part)
+    check_travelling(values, part, travelling, removed)
+    check_modes(values, spec, part, removed)
     regions_known = not any(p.path.startswith("supports.") for p in values.problems)
     if part.members and regions_known and not _any_of(removed, "supports", "members"):
         if all(axes_known(m) for m in part.members):

@@ -24,6 +24,7 @@ from geometry.part import (
 from geometry.spec.checks.frame import line_direction, scaled
 from geometry.spec.model import LimitSpec, LimitsSpec, LoadSpec, PartSpec, SupportSpec
 from geometry.spec.resolve.member import Table, mark_of
+from geometry.spec.resolve.travel import Travelling, cases_at_positions, resolve_travelling
 from geometry.spec.resolve.values import Values, shown
 from geometry.spec.text.tokens import with_article
 from geometry.spec.words.fields import OfKind
@@ -36,6 +37,7 @@ SELF_WEIGHT = "self_weight"
 LOAD_WORDS: dict[str, tuple[str, ...]] = {
     "point": ("force", "moment", "mass", "inertia", "coupling", "on"),
     "force_per_length": ("force_per_length_end", "start", "end", "on"),
+    "travels": ("force", "on"),
     "pressure": ("on",),
     "bearing": ("on",),
     "acceleration": (),
@@ -74,7 +76,9 @@ def load_kind(spec: LoadSpec) -> str:
     return next((word for word in LOAD_WORDS if getattr(spec, word) is not None), "")
 
 
-def resolve_load(values: Values, name: str, spec: LoadSpec, members: Mapping[str, Member]) -> Load | None:
+def resolve_load(
+    values: Values, name: str, spec: LoadSpec, members: Mapping[str, Member]
+) -> Load | Travelling | None:
     """The load in numbers, or None after keeping a problem about its words."""
     table = Table(values, f"loads.{name}", spec)
     kind = load_kind(spec)
@@ -84,6 +88,8 @@ def resolve_load(values: Values, name: str, spec: LoadSpec, members: Mapping[str
     if not _words_fit(table, kind):
         return None
     on = spec.on or ""
+    if kind == "travels":
+        return resolve_travelling(values, name, spec)
     if kind == "acceleration":
         x, y, z = table.vector("acceleration")
         return BodyLoad(name, (0.0 - x, 0.0 - y, 0.0 - z))
@@ -151,12 +157,14 @@ def _remote_point(table: Table, name: str, on: str) -> RemotePoint:
     )  # fmt: skip
 
 
-def resolve_cases(values: Values, spec: PartSpec, loads: tuple[str, ...]) -> tuple[Case, ...]:
-    """The cases; one case ``all`` with every declared load at 1 when none is given."""
+def resolve_cases(
+    values: Values, spec: PartSpec, loads: tuple[str, ...], travelling: Mapping[str, Travelling]
+) -> tuple[Case, ...]:
+    """The cases, one a position of a travelling load; one case ``all`` with every load at 1 when none is given."""
     known = (*loads, SELF_WEIGHT)
     if not spec.cases:
-        return (Case("all", dict.fromkeys(loads, 1.0)),)
-    cases = []
+        return cases_at_positions(values, "all", dict.fromkeys(loads, 1.0), travelling, declared=False)
+    cases: list[Case] = []
     for name, factors in spec.cases.items():
         path = f"cases.{name}"
         if not factors:
@@ -166,15 +174,19 @@ def resolve_cases(values: Values, spec: PartSpec, loads: tuple[str, ...]) -> tup
             if load not in known:
                 values.unknown(f"{path}.{load}", load, known, "a load")
             numbers[load] = values.number(f"{path}.{load}", factor, "number")
-        cases.append(Case(name, numbers))
+        cases += cases_at_positions(values, name, numbers, travelling, declared=True)
     return tuple(cases)
 
 
 LIMIT_KINDS = {
     "deflection": "length", "displacement": "length", "relative_displacement": "length", "rotation": "angle",
     "stress": "stress", "yield_factor": "number", "mass": "mass", "reaction": "force",
+    "frequency": "frequency", "buckling_factor": "number",
 }  # fmt: skip
 """What each limited quantity is measured in."""
+
+LEAST = ("yield_factor", "frequency", "buckling_factor")
+"""Quantities that a limit keeps from being too small."""
 
 
 def resolve_limits(values: Values, spec: LimitsSpec) -> tuple[Limit, ...]:
@@ -190,7 +202,7 @@ def resolve_limits(values: Values, spec: LimitsSpec) -> tuple[Limit, ...]:
 
 def _limit(values: Values, name: str, spec: LimitSpec) -> Limit:
     path = f"limits.{name}"
-    word, other = ("min", "max") if spec.quantity == "yield_factor" else ("max", "min")
+    word, other = ("min", "max") if spec.quantity in LEAST else ("max", "min")
     given = getattr(spec, word)
     value = math.nan
     if getattr(spec, other) is not None:

@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Collection
+from dataclasses import replace
 
-from geometry.part import BodyLoad, Load, Material, Member, Part, Place
+from geometry.part import BodyLoad, Buckling, Limit, Load, Material, Member, Part, Place, Vibration
 from geometry.problem import Problem, SpecError
 from geometry.spec.checks.part import check_part
 from geometry.spec.checks.plates import thickest_plate
@@ -18,6 +19,7 @@ from geometry.spec.resolve.acting import (
     resolve_support,
 )
 from geometry.spec.resolve.member import Table, resolve_member
+from geometry.spec.resolve.travel import Travelling
 from geometry.spec.resolve.values import Values
 
 
@@ -40,11 +42,17 @@ def resolve_and_check(
     values = Values(spec.parameters, lenient)
     members = {name: resolve_member(values, name, member) for name, member in spec.members.items()}
     loads: list[Load] = []
+    travelling: dict[str, Travelling] = {}
     for name, load_spec in spec.loads.items():
-        if load := resolve_load(values, name, load_spec, members):
+        load = resolve_load(values, name, load_spec, members)
+        if isinstance(load, Travelling):
+            travelling[name] = load
+        elif load:
             loads.append(load)
     lost = [path.split(".")[1] for path in removed if path.startswith("loads.")]
-    cases = resolve_cases(values, spec, tuple(dict.fromkeys((*spec.loads, *lost))))
+    cases = resolve_cases(values, spec, tuple(dict.fromkeys((*spec.loads, *lost))), travelling)
+    used = {case.travel.load for case in cases if case.travel}
+    loads += [strip for name, moving in travelling.items() if name in used for strip in moving.strips]
     gravity = values.vector("gravity", spec.gravity, "acceleration")
     if any(SELF_WEIGHT in case.factors for case in cases):
         loads.append(BodyLoad(SELF_WEIGHT, gravity))
@@ -58,12 +66,36 @@ def resolve_and_check(
         cases=cases,
         limits=resolve_limits(values, spec.limits),
         places=_places(values, spec, members),
+        vibration=_vibration(values, spec),
+        buckling=tuple(
+            Buckling(name, tuple(study.fixed), Table(values, f"buckling.{name}", study).whole("modes"))
+            for name, study in spec.buckling.items()
+        ),
         accuracy=accuracy,
         parameters={name: quantity.value for name, quantity in values.scope.items()},
         source_text=source_text,
     )
-    check_part(values, spec, part, removed)
-    return part, values.problems
+    check_part(values, spec, part, removed, tuple(travelling.values()))
+    return replace(part, limits=_limits_at_positions(part)), values.problems
+
+
+def _vibration(values: Values, spec: PartSpec) -> Vibration | None:
+    if spec.vibration is None:
+        return None
+    modes = Table(values, "vibration", spec.vibration).whole("modes")
+    return Vibration(modes, free=spec.vibration.supports == "none")
+
+
+def _limits_at_positions(part: Part) -> tuple[Limit, ...]:
+    """A limit that names a case with a travelling load is judged at every position of it."""
+    positions: dict[str, list[str]] = {}
+    for case in part.cases:
+        if case.travel:
+            positions.setdefault(case.travel.case, []).append(case.name)
+    return tuple(
+        replace(limit, cases=tuple(name for case in limit.cases for name in positions.get(case, [case])))
+        for limit in part.limits
+    )
 
 
 def _places(values: Values, spec: PartSpec, members: dict[str, Member]) -> tuple[Place, ...]:

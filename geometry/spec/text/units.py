@@ -35,6 +35,7 @@ VOLUME = Dimension(length=3)
 SECOND_MOMENT = Dimension(length=4)
 MASS = Dimension(mass=1)
 TIME = Dimension(time=1)
+FREQUENCY = Dimension(time=-1)
 TEMPERATURE = Dimension(temperature=1)
 ANGLE = Dimension(angle=1)
 ACCELERATION = Dimension(length=1, time=-2)
@@ -98,6 +99,7 @@ KINDS: dict[str, Kind] = {
         Kind("acceleration", ACCELERATION, "mm/s^2", "9.81 m/s^2"),
         Kind("temperature change", TEMPERATURE, "K", "40 K"),
         Kind("thermal expansion", EXPANSION, "1/K", "12e-6 1/K"),
+        Kind("frequency", FREQUENCY, "Hz", "40 Hz"),
         Kind("quantity", NUMBER, "", "12 mm"),  # a parameter: of any dimension
         # Not fields of the spec, but results of arithmetic that messages must be able to name.
         Kind("area", AREA, "mm^2", "120 mm^2"),
@@ -141,6 +143,7 @@ _TABLE: tuple[tuple[Dimension, dict[str, float]], ...] = (
     (DENSITY, {"kg/m^3": 1e-12, "t/m^3": 1e-9, "g/cm^3": 1e-9, "t/mm^3": 1.0, "lb/in^3": POUND / INCH**3}),
     (INERTIA, {"kg m^2": 1e3, "t mm^2": 1.0, "kg mm^2": 1e-3, "lb in^2": POUND * INCH**2}),
     (TIME, {"s": 1.0, "ms": 1e-3}),
+    (FREQUENCY, {"Hz": 1.0, "kHz": 1e3}),
     (ACCELERATION, {"m/s^2": 1e3, "mm/s^2": 1.0}),
     (TEMPERATURE, {"K": 1.0}),
     (EXPANSION, {"1/K": 1.0}),

@@ -135,7 +135,8 @@ def _problem(path: Path, errors: list[ErrorDetails], data: Any) -> Problem:
         return Problem(where, f"{len(given)} values", f"{count} values: {allowed}")
     fix = ""
     mark = mark_in(annotation)
-    if path[0] == "limits" and len(path) == 2 and not isinstance(given, Mapping):
+    unknown_limit = path[0] == "limits" and len(path) == 2 and path[-1] not in words_of(LimitsSpec)
+    if unknown_limit and not isinstance(given, Mapping):
         near = nearest(str(path[-1]), words_of(LimitsSpec))
         fix = f'Did you mean "{near}"?' if near else f"The simple limits are {', '.join(words_of(LimitsSpec))}"
     elif isinstance(given, (int, float)) and not isinstance(given, bool) and mark and mark.kind.unit:
