@@ -1,0 +1,95 @@
+"""Wall seconds inside a running program: named functions are wrapped, and each is charged for its own time only.
+
+So what is timed is the program as it runs for its users, not a copy of its steps.
+"""
+
+from __future__ import annotations
+
+import functools
+import importlib
+import sys
+import threading
+import time
+from collections.abc import Callable, Mapping, Sequence
+from typing import Any
+
+Bytes = Callable[..., float]
+
+
+class Watch:
+    """Context in which functions are timed.
+
+    Parameters
+    ----------
+    stages
+        Stage -> functions, as ``module:function``, ``module:Class`` (its making) or ``module:Class.method``. A function
+        that is called from another watched one is taken out of that one's time. Calls from other threads pass.
+    moved
+        Function -> bytes that a call with these arguments moves at least.
+
+    Attributes
+    ----------
+    seconds, calls, bytes
+        By stage; `missing` names what is not there (any more).
+    """
+
+    def __init__(self, stages: Mapping[str, Sequence[str]], moved: Mapping[str, Bytes] | None = None) -> None:
+        self.seconds = dict.fromkeys(stages, 0.0)
+        self.calls = dict.fromkeys(stages, 0)
+        self.bytes = dict.fromkeys(stages, 0.0)
+        self.missing: list[str] = []
+        self._inside = [0.0]
+        self._thread = threading.get_ident()
+        self._put_back: list[tuple[Any, str, Any]] = []
+        self._places = [(stage, name, (moved or {}).get(name)) for stage, names in stages.items() for name in names]
+
+    def __enter__(self) -> Watch:
+        for stage, name, moved in self._places:
+            module_name, _, path = name.partition(":")
+            try:
+                owner: Any = importlib.import_module(module_name)
+                *classes, last = path.split(".")
+                for inner in classes:
+                    owner = getattr(owner, inner)
+                found = getattr(owner, last)
+            except (ImportError, AttributeError):
+                self.missing.append(name)
+                continue
+            if isinstance(found, type):
+                self._replace(found, "__init__", self._wrapped(stage, found.__init__, moved))
+                continue
+            timed = self._wrapped(stage, found, moved)
+            self._replace(owner, last, timed)
+            if not classes:  # other modules took it by name
+                for other in list(sys.modules.values()):
+                    if getattr(other, "__name__", "").startswith("fem.") and getattr(other, last, None) is found:
+                        self._replace(other, last, timed)
+        return self
+
+    def __exit__(self, *unused: object) -> None:
+        for owner, name, old in reversed(self._put_back):
+            setattr(owner, name, old)
+        self._put_back.clear()
+
+    def _replace(self, owner: Any, name: str, new: Any) -> None:
+        self._put_back.append((owner, name, owner.__dict__[name]))
+        setattr(owner, name, new)
+
+    def _wrapped(self, stage: str, work: Callable[..., Any], moved: Bytes | None) -> Callable[..., Any]:
+        @functools.wraps(work)
+        def timed(*args: Any, **words: Any) -> Any:
+            if threading.get_ident() != self._thread:
+                return work(*args, **words)
+            self._inside.append(0.0)
+            begun = time.perf_counter()
+            try:
+                return work(*args, **words)
+            finally:
+                spent = time.perf_counter() - begun
+                self.seconds[stage] += spent - self._inside.pop()
+                self._inside[-1] += spent
+                self.calls[stage] += 1
+                if moved is not None:
+                    self.bytes[stage] += moved(*args, **words)
+
+        return timed
