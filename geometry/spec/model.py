@@ -118,8 +118,16 @@ class LimitSpec(Words):
     """A limit with a name of its own."""
 
     quantity: Literal[
-        "deflection", "displacement", "rotation", "relative_displacement", "stress", "yield_factor", "mass", "reaction",
-        "frequency", "buckling_factor",
+        "deflection",
+        "displacement",
+        "rotation",
+        "relative_displacement",
+        "stress",
+        "yield_factor",
+        "mass",
+        "reaction",
+        "frequency",
+        "buckling_factor",
     ] = Field(description="what is limited")
     at: Text = Field("", description="place, region or support; anywhere when left out")
     relative_to: Text = Field("", description="second place of a relative_displacement")
@@ -131,7 +139,8 @@ class LimitSpec(Words):
         description="nominal: beam formula, net section; edge: local stress where it converges, outer fibres "
         "extrapolated to held edges; local: local stress only, which cannot pass at a held sharp edge",
     )
-    cases: list[Text] = Field(default_factory=list,
+    cases: list[Text] = Field(
+        default_factory=list,
         description="cases it is judged in (one with a travelling load: at every position); all when left out",
     )
 

@@ -76,9 +76,7 @@ def load_kind(spec: LoadSpec) -> str:
     return next((word for word in LOAD_WORDS if getattr(spec, word) is not None), "")
 
 
-def resolve_load(
-    values: Values, name: str, spec: LoadSpec, members: Mapping[str, Member]
-) -> Load | Travelling | None:
+def resolve_load(values: Values, name: str, spec: LoadSpec, members: Mapping[str, Member]) -> Load | Travelling | None:
     """The load in numbers, or None after keeping a problem about its words."""
     table = Table(values, f"loads.{name}", spec)
     kind = load_kind(spec)
