@@ -7,7 +7,7 @@ multiplier is the force that the support exerts on the part.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -99,41 +99,43 @@ def solve_line(line: Line, rows: Sequence[Row], nodal: Array, loads: Array, rigi
     SolveError
         A motion is not stopped, or the supports contradict or repeat one another.
     """
-    _stopped(rows, rigid, float(line.x[-1] - line.x[0]), what)
+    check_stopped(rows, rigid, float(line.x[-1] - line.x[0]), what)
     here_is = present(line)
     at = np.cumsum(here_is) - 1
-    nd = int(here_is.sum())
     sizes = np.where(line.warping, 7, 6)
-    start_f = nd + np.concatenate([[0], np.cumsum(sizes)])
+    start_f = int(here_is.sum()) + np.concatenate([[0], np.cumsum(sizes)])
     total = int(start_f[-1]) + len(rows)
     r, c, v = [], [], []  # triplets
     rhs = np.zeros((total, nodal.shape[1]))
 
     def put(ri: NDArray[np.int64], ci: NDArray[np.int64], block: Array) -> None:
-        r.append(np.repeat(ri, len(ci)))
-        c.append(np.tile(ci, len(ri)))
-        v.append(np.asarray(block).ravel())
+        """Blocks (..., i, j) at rows (..., i) and columns (..., j)."""
+        shape = np.broadcast_shapes(ri[..., :, None].shape, ci[..., None, :].shape)
+        r.append(np.broadcast_to(ri[..., :, None], shape).ravel())
+        c.append(np.broadcast_to(ci[..., None, :], shape).ravel())
+        v.append(np.broadcast_to(block, shape).ravel())
 
     rhs[at[here_is], :] = -nodal[here_is]
-    for e, n in enumerate(sizes):
-        M = line.half[e][1] @ line.half[e][0]
-        di, dj = at[7 * e + np.arange(n)], at[7 * e + 7 + np.arange(n)]
-        f = start_f[e] + np.arange(n)
+    for which, n, first, second in _groups(line):
+        M = second @ first
+        node = 7 * which[:, None] + np.arange(n)
+        di, dj, f = at[node], at[node + 7], start_f[which][:, None] + np.arange(n)
         # rows f: d_end - Tdd d - Tdf f = td ;  rows of the node: f_start - f_end + applied + reactions = 0
         put(f, dj, np.eye(n))
-        put(f, di, -M[:n, :n])
-        put(f, f, -M[:n, n:2 * n])
-        rhs[f] += M[:n, 2 * n:] @ loads[e]
+        put(f, di, -M[:, :n, :n])
+        put(f, f, -M[:, :n, n:2 * n])
         put(di, f, np.eye(n))
-        put(dj, di, -M[n:2 * n, :n])
-        put(dj, f, -M[n:2 * n, n:2 * n])
-        rhs[dj] += M[n:2 * n, 2 * n:] @ loads[e]
+        put(dj, di, -M[:, n:2 * n, :n])
+        put(dj, f, -M[:, n:2 * n, n:2 * n])
+        added = M[:, :2 * n, 2 * n:] @ loads[which]
+        rhs[f] += added[:, :n]
+        rhs[dj] += added[:, n:]  # each node ends one length at most
     for k, row in enumerate(rows):
         used = np.flatnonzero(row.vector)
         used = used[here_is[used]]
         here = np.array([start_f[-1] + k])
         put(here, at[used], row.vector[used])
-        put(at[used], here, row.vector[used])
+        put(at[used], here, row.vector[used][:, None])
         rhs[here] = row.value
     matrix = sparse.csc_matrix((np.concatenate(v), (np.concatenate(r), np.concatenate(c))), shape=(total, total))
     unknown = _solve(matrix, rhs, what)
@@ -141,6 +143,14 @@ def solve_line(line: Line, rows: Sequence[Row], nodal: Array, loads: Array, rigi
     freedoms[here_is] = unknown[at[here_is]]
     start, middle, end = _recover(line, freedoms, unknown, start_f, loads)
     return States(start, middle, end, freedoms, unknown[start_f[-1]:])
+
+
+def _groups(line: Line) -> Iterator[tuple[NDArray[np.int64], int, Array, Array]]:
+    """Lengths without and with warping: their indices, n, and the stacked matrices of both halves."""
+    for flag, n in ((False, 6), (True, 7)):
+        which = np.flatnonzero(line.warping == flag)
+        if len(which):
+            yield which, n, np.stack([line.half[e][0] for e in which]), np.stack([line.half[e][1] for e in which])
 
 
 def present(line: Line) -> NDArray[np.bool_]:
@@ -182,17 +192,18 @@ def _recover(line: Line, freedoms: Array, unknown: Array, start_f: NDArray[np.in
     """States at the start, middle and end of each length."""
     m, cases = len(line.warping), freedoms.shape[1]
     out = [np.zeros((m, 14, cases)) for _ in range(3)]
-    for e in range(m):
-        n = 7 if line.warping[e] else 6
-        s = np.vstack([freedoms[7 * e:7 * e + n], unknown[start_f[e]:start_f[e] + n], loads[e]])
-        for k in range(3):
-            if k:
-                s = line.half[e][k - 1] @ s
-            out[k][e, :n], out[k][e, 7:7 + n] = s[:n], s[n:2 * n]
+    for which, n, first, second in _groups(line):
+        entries = np.arange(n)
+        d, f = freedoms[7 * which[:, None] + entries], unknown[start_f[which][:, None] + entries]
+        s = np.concatenate([d, f, loads[which]], axis=1)
+        for k, half in enumerate((None, first, second)):
+            if half is not None:
+                s = half @ s
+            out[k][which, :n], out[k][which, 7:7 + n] = s[:, :n], s[:, n:2 * n]
     return out
 
 
-def _stopped(rows: Sequence[Row], rigid: Array, length: float, what: str) -> None:
+def check_stopped(rows: Sequence[Row], rigid: Array, length: float, what: str) -> None:
     """Raise when a rigid motion is left free by the supports."""
     scaled = rigid * np.array([1.0] * 3 + [1.0 / length] * 3)
     held = np.array([row.vector @ scaled for row in rows]).reshape(-1, 6)
