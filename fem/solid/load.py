@@ -15,8 +15,10 @@ from numpy.typing import NDArray
 
 from fem.solid.frame import member_frame
 from fem.solid.line_traction import line_traction
+from fem.solid.piece import SurfacePiece, piece_forces
 from fem.solid.region import Region, surface_region
 from fem.solid.shape import Array, facet_points
+from fem.solid.strip import TravelledFace
 from geometry.part import (
     BearingLoad,
     BodyLoad,
@@ -26,6 +28,7 @@ from geometry.part import (
     Pressure,
     RegionLoad,
     RemotePoint,
+    StripLoad,
     TemperatureLoad,
 )
 from geometry.problem import SolveError
@@ -34,18 +37,6 @@ from mesher.named_mesh import NamedMesh
 AXIAL_ALLOWED = 1e-3
 """Part of a bearing load that may seem to lie along the axis of a meshed hole, whose normals give the axis only so
 exactly (the spec holds the declared force to the declared axis)."""
-
-Traction = Callable[[Array, Array], Array]
-"""Traction (3, ...) in MPa at positions (3, ...) with outward unit normals (3, ...)."""
-
-
-@dataclass(frozen=True, slots=True)
-class SurfacePiece:
-    """Traction on the facets (6, k)."""
-
-    facets: NDArray[np.int64]
-    traction: Traction
-
 
 @dataclass(frozen=True, slots=True)
 class SolidLoad:
@@ -164,18 +155,30 @@ def _rim_vector_area(mesh: NamedMesh, facets: NDArray[np.int64]) -> Array:
 def solid_loads(part: Part, mesh: NamedMesh) -> dict[str, SolidLoad]:
     """Every load of the part by name; the masses of remote points are added to the body loads."""
     regions: dict[str, Region] = {}
+    faces: dict[str, TravelledFace] = {}
 
     def region(name: str) -> Region:
         if name not in regions:
             regions[name] = surface_region(mesh, name)
         return regions[name]
 
+    def face(name: str) -> TravelledFace:
+        if name not in faces:
+            member = next(m for m in part.members if name.startswith(m.name + "."))
+            faces[name] = TravelledFace(mesh.nodes, region(name), member_frame(member))
+        return faces[name]
+
     remote = [load for load in part.loads if isinstance(load, RemotePoint) and load.mass > 0]
-    return {load.name: _solid_load(part, mesh, load, region, remote) for load in part.loads}
+    return {load.name: _solid_load(part, mesh, load, region, face, remote) for load in part.loads}
 
 
 def _solid_load(
-    part: Part, mesh: NamedMesh, load: Load, region: Callable[[str], Region], remote: Iterable[RemotePoint]
+    part: Part,
+    mesh: NamedMesh,
+    load: Load,
+    region: Callable[[str], Region],
+    face: Callable[[str], TravelledFace],
+    remote: Iterable[RemotePoint],
 ) -> SolidLoad:
     match load:
         case RegionLoad():
@@ -230,6 +233,9 @@ def _solid_load(
                 arm=_size(mesh, r),
                 allowed=0.02,
             )
+        case StripLoad():
+            strips, force, moment = face(load.on).strips(load)
+            return SolidLoad(load.name, strips, force=force, moment=moment, arm=_size(mesh, region(load.on)))
         case BodyLoad():
             b = np.array(load.force_per_mass, float)
             pieces = []
@@ -252,11 +258,7 @@ def _size(mesh: NamedMesh, region: Region) -> float:
 
 
 def surface_vector(mesh: NamedMesh, piece: SurfacePiece) -> Array:
-    """(n, 3) consistent nodal forces of a traction."""
-    N, x, normals = facet_points(mesh.nodes, piece.facets)
-    dA = np.linalg.norm(normals, axis=0)
-    t = piece.traction(x, normals / dA) * dA
-    f = np.zeros((mesh.nodes.shape[1], 3))
-    for i in range(3):
-        f[:, i] = np.bincount(piece.facets.ravel(), weights=(N @ t[i].T).ravel(), minlength=f.shape[0])
-    return f
+    """(n, 3) consistent nodal forces of a traction, N."""
+    forces, nodes = piece_forces(mesh.nodes, piece), piece.facets.ravel()
+    n = mesh.nodes.shape[1]
+    return np.stack([np.bincount(nodes, weights=forces[:, i].ravel(), minlength=n) for i in range(3)], axis=1)

@@ -6,11 +6,11 @@ The extreme points of a section are found here, on the mesh, and nowhere from de
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import cache
 
 import numpy as np
 from numpy.typing import NDArray
 
+from fem.solid.clip import smaller_triangles
 from fem.solid.frame import Frame
 from fem.solid.shape import TRIANGLE_EDGES, Array, triangle_values
 from mesher.named_mesh import NamedMesh
@@ -53,17 +53,6 @@ class Segments:
         return np.asarray(total / (2 * length.sum()))
 
 
-@cache
-def _children(levels: int) -> Array:
-    triangles = np.eye(3)[None]
-    for _ in range(levels):
-        a, b, c = triangles.transpose(1, 0, 2)
-        ab, bc, ac = (a + b) / 2, (b + c) / 2, (a + c) / 2
-        parts = ((a, ab, ac), (ab, b, bc), (ac, bc, c), (ab, bc, ac))
-        triangles = np.concatenate([np.stack(p, axis=1) for p in parts])
-    return triangles
-
-
 def cut_facets(mesh: NamedMesh, facets: NDArray[np.int64], frame: Frame, at: float) -> Segments:
     """Cut boundary triangles (6, k) with the plane at a station; a node on the plane counts as beyond it."""
     x = frame.local(mesh.nodes[:, facets])  # (3, 6, k)
@@ -81,7 +70,7 @@ def _cut(facets: NDArray[np.int64], x: Array, d: Array) -> Segments:
     curved = (np.linalg.norm(x[:, 3:] - middles, axis=0) > 1e-9 * size).any(axis=0)
     bary, owner = [], []
     for chosen, levels in ((crossing[~curved[crossing]], 0), (crossing[curved[crossing]], 3)):
-        children = _children(levels)
+        children = smaller_triangles(levels)
         bary.append(np.tile(children, (chosen.size, 1, 1)))
         owner.append(np.repeat(chosen, children.shape[0]))
     corners, own = np.concatenate(bary), np.concatenate(owner)  # (t, 3 corners, 3)

@@ -16,21 +16,18 @@ from numpy.typing import NDArray
 from fem.solid.clip import clip_beyond
 from fem.solid.frame import Frame
 from fem.solid.model import SolidModel
+from fem.solid.piece import FORCE_ORDER, FacetPoints, SurfacePiece, clipped_facets, facet_quadrature, piece_forces
 from fem.solid.shape import (
     Array,
-    facet_points,
     inverse,
     tet_gradients,
     tet_quadrature,
     tet_values,
-    triangle_gradients,
-    triangle_values,
 )
 from fem.solid.stiffness import element_forces, stresses
 from mesher.named_mesh import NamedMesh
 
 Bool = NDArray[np.bool_]
-FORCE_ORDER = 6
 BODY_ORDER = 2
 
 
@@ -81,10 +78,7 @@ def element_loads(model: SolidModel, u: Array) -> ElementLoads:
         for p, piece in enumerate(load.pieces):
             owner = facet_owners(mesh.tets, piece.facets, mesh.nodes.shape[1])
             owners.append((k, p, owner))
-            N, x, normals = facet_points(mesh.nodes, piece.facets)
-            dA = np.linalg.norm(normals, axis=0)
-            t = piece.traction(x, normals / dA) * dA
-            forces = np.einsum("aq,ikq->kai", N, t)  # (k, 6, 3)
+            forces = piece_forces(mesh.nodes, piece).transpose(2, 0, 1)  # (k, 6, 3)
             local = (mesh.tets[:, owner][None] == piece.facets[:, None]).argmax(axis=1)  # (6, k)
             for a in range(6):
                 share = model.factors[:, k, None, None] * forces[None, :, a]
@@ -145,16 +139,20 @@ def _clipped_loads(
         here = np.flatnonzero(chosen)
         if not here.size:
             continue
-        owner, bary, weights = clip_beyond(df[:, here].T, FORCE_ORDER)
-        corners = mesh.nodes[:, piece.facets[:, here[owner]]]
-        x = np.einsum("iap,ap->ip", corners, triangle_values(bary))
-        tangents = np.einsum("iap,ajp->jip", corners, triangle_gradients(bary))
-        normal = np.cross(tangents[0], tangents[1], axis=0)
-        size = np.linalg.norm(normal, axis=0)
-        t = piece.traction(x[:, :, None], (normal / size)[:, :, None])[:, :, 0] * (weights * size)
+        at_points = _beyond(mesh.nodes, piece, here, d[piece.facets[:, here]])
+        t = piece.traction(at_points.points, at_points.normals) * at_points.areas
         force += np.outer(model.factors[:, k], t.sum(axis=1))
-        moment += np.outer(model.factors[:, k], np.cross(x - point[:, None], t, axis=0).sum(axis=1))
+        moment += np.outer(model.factors[:, k], np.cross(at_points.points - point[:, None], t, axis=0).sum(axis=1))
     return force, moment
+
+
+def _beyond(nodes: Array, piece: SurfacePiece, here: NDArray[np.int64], d: Array) -> FacetPoints:
+    """Quadrature on what of the piece's facets `here` lies where the distances d (6, k) of their nodes are >= 0."""
+    facets = piece.facets[:, here]
+    if piece.window is not None:
+        return clipped_facets(nodes, facets, (*piece.window.distances(nodes[:, facets]), d))
+    owner, bary, weights = clip_beyond(d[:3].T, FORCE_ORDER)
+    return facet_quadrature(nodes, facets, owner, bary, weights)
 
 
 def section_force(
