@@ -1,27 +1,21 @@
-"""Symmetric positive definite sparse systems: one factorisation, every right-hand side at once.
-
-The only place that touches MKL PARDISO. It is given the upper triangle (a full matrix with ``mtype = 2`` takes
-the process down). Without MKL the same calls go to scipy's sparse LU in symmetric mode.
-"""
+"""Factors of symmetric sparse matrices: MKL PARDISO where it is installed, else SciPy's sparse LU in symmetric mode."""
 
 from __future__ import annotations
 
-import copy
-import ctypes
-import glob
-import os
-import sys
-from functools import cache
-from typing import Any
+from typing import Protocol
 
 import numpy as np
 import scipy.sparse as sp
 import scipy.sparse.linalg as spla
 from scipy.sparse.csgraph import reverse_cuthill_mckee
 
+from fem.solid import pardiso
+from fem.solid.pardiso import INDEFINITE, POSITIVE, NotPositive, Pardiso
 from fem.solid.shape import Array
 from geometry.budget import Budget
 from geometry.problem import SolveError
+
+__all__ = ["Cholesky", "NotPositive", "SymmetricFactor", "lu_memory", "pardiso_available", "upper_triangle", "whole"]
 
 RESIDUAL_ALLOWED = 1e-6
 GAUGE_ALLOWED = 1e-4
@@ -29,74 +23,21 @@ GAUGE_ALLOWED = 1e-4
 that a spec may ask for. A bar of length over depth 600 has 8e-6 from rounding alone."""
 
 
-class NotPositive(Exception):
-    """The matrix has a pivot that is not positive."""
-
-
-@cache
-def _loaded_pardiso() -> Any:
-    """A solver object with MKL loaded, to be copied: finding the library takes time. None without MKL."""
-    os.environ.setdefault("KMP_BLOCKTIME", "0")  # or idle threads spin for 0.2 s and take the processor from others
-    try:
-        from pypardiso import PyPardisoSolver
-
-        # the wrapper searches every folder below sys.prefix unless it is told; the package puts MKL here
-        found = sorted(glob.glob(f"{glob.escape(sys.prefix)}/lib/libmkl_rt.so*"))
-        told = os.environ.get("PYPARDISO_MKL_RT")
-        if found and told is None:
-            os.environ["PYPARDISO_MKL_RT"] = found[-1]
-        try:
-            return PyPardisoSolver(mtype=2, size_limit_storage=0)
-        finally:
-            if found and told is None:
-                del os.environ["PYPARDISO_MKL_RT"]
-    except (ImportError, OSError, AttributeError):
-        return None
-
-
-def _fresh_pardiso() -> Any:
-    solver = copy.copy(_loaded_pardiso())
-    solver.pt, solver.iparm = np.zeros_like(solver.pt), np.zeros_like(solver.iparm)
-    return solver
+FACTOR_ALLOWED = 1e-2
+"""Error of a known vector that a factor L D L^T may give back: what is left then tells the signs of the pivots. A
+shift that is 1e-10 of an eigenvalue away from it leaves about 1e-4."""
+_SINGULAR = "A shifted matrix is singular to working precision: the shift lies on an eigenvalue. Shift it a little."
 
 
 def pardiso_available() -> bool:
     """Whether pypardiso and MKL can be loaded."""
-    return _loaded_pardiso() is not None
+    return pardiso.library() is not None
 
 
-class Cholesky:
-    """Factor of a symmetric positive definite matrix (n, n) in CSR form: the whole of it, or with `upper` its upper
-    triangle with sorted columns.
-
-    Raises
-    ------
-    NotPositive
-        When a pivot is not positive.
-    SolveError
-        When the factor would not fit the memory of the budget.
-    """
-
-    def __init__(self, matrix: sp.csr_matrix, budget: Budget, backend: str = "auto", upper: bool = False) -> None:
-        if backend == "auto":
-            backend = "pardiso" if pardiso_available() else "lu"
-        self.backend = backend
-        self.size = matrix.shape[0]
-        if (matrix.diagonal() <= 0).any():
-            raise NotPositive
-        self._factor: _Pardiso | _Lu
-        if backend == "pardiso":
-            self._factor = _Pardiso(matrix if upper else upper_triangle(matrix), budget)
-        else:
-            self._factor = _Lu(whole(matrix) if upper else matrix, budget)
-
-    def solve(self, rhs: Array) -> Array:
-        """(n, k) solutions of all right-hand sides (n, k)."""
-        return self._factor.solve(np.asarray(rhs, dtype=float).reshape(self.size, -1))
-
-    def close(self) -> None:
-        """Give the factor's memory back."""
-        self._factor.close()
+def _backend(name: str) -> str:
+    if name == "auto":
+        return "pardiso" if pardiso_available() else "lu"
+    return name
 
 
 def upper_triangle(matrix: sp.csr_matrix) -> sp.csr_matrix:
@@ -113,42 +54,132 @@ def whole(upper: sp.csr_matrix) -> sp.csr_matrix:
     return sp.csr_matrix(upper + sp.triu(upper, 1).T)
 
 
-class _Pardiso:
-    def __init__(self, upper: sp.csr_matrix, budget: Budget) -> None:
-        self.upper = upper
-        self.solver = _fresh_pardiso()
-        self.solver.libmkl.MKL_Set_Num_Threads(ctypes.c_int(budget.threads))
-        iparm = self.solver.iparm
-        iparm[0], iparm[1] = 1, 2  # own settings, nested dissection
-        # the three rows of a node are alike: stored and ordered as blocks, they take half the analysis and less memory
-        iparm[23], iparm[36] = 1, -80
-        empty = np.zeros((self.upper.shape[0], 1), order="F")
-        self._call(11, empty)
-        need = max(int(iparm[14]), int(iparm[15]) + int(iparm[16])) / 1024
+class _Factor(Protocol):
+    negative: int
+
+    def solve(self, rhs: Array) -> Array: ...
+
+    def close(self) -> None: ...
+
+
+class Cholesky:
+    """Factor of a symmetric positive definite matrix (n, n) in CSR form: the whole of it, or with `upper` its upper
+    triangle with sorted columns.
+
+    Parameters
+    ----------
+    single
+        Factor in single precision (PARDISO; the LU keeps to double).
+
+    Raises
+    ------
+    NotPositive
+        When a pivot is not positive.
+    SolveError
+        When the factor would not fit the memory of the budget.
+    """
+
+    def __init__(
+        self, matrix: sp.csr_matrix, budget: Budget, backend: str = "auto", upper: bool = False, single: bool = False
+    ) -> None:
+        self.backend = _backend(backend)
+        self.size = matrix.shape[0]
+        if not (matrix.diagonal() > 0).all():
+            raise NotPositive
+        self._factor: _Factor
+        if self.backend == "pardiso":
+            self._factor = _Mkl(matrix if upper else upper_triangle(matrix), budget, POSITIVE, single)
+        else:
+            self._factor = _Lu(whole(matrix) if upper else matrix, budget)
+            if self._factor.negative:
+                raise NotPositive
+
+    def solve(self, rhs: Array) -> Array:
+        """(n, k) solutions of all right-hand sides (n, k)."""
+        return self._factor.solve(np.asarray(rhs, dtype=float).reshape(self.size, -1))
+
+    def close(self) -> None:
+        """Give the factor's memory back."""
+        self._factor.close()
+
+
+class SymmetricFactor:
+    """L D L^T of a symmetric matrix (n, n), indefinite in general, in CSR form (whole, or with `upper` its upper
+    triangle).
+
+    Attributes
+    ----------
+    negative
+        How many eigenvalues are below zero: the number of negative pivots (Sylvester's law of inertia).
+
+    Raises
+    ------
+    SolveError
+        When the matrix is singular to working precision (a known vector does not come back), or the factor would not
+        fit the memory of the budget.
+    """
+
+    def __init__(self, matrix: sp.csr_matrix, budget: Budget, backend: str = "auto", upper: bool = False) -> None:
+        self.backend = _backend(backend)
+        self.size = matrix.shape[0]
+        self._factor: _Factor
+        try:
+            if self.backend == "pardiso":
+                self._factor = _Mkl(_filled(matrix if upper else upper_triangle(matrix)), budget, INDEFINITE, False)
+            else:
+                self._factor = _Lu(whole(matrix) if upper else matrix, budget)
+        except NotPositive as error:
+            raise SolveError(_SINGULAR) from error
+        self.negative = self._factor.negative
+        known = np.random.default_rng(budget.seed).normal(size=(self.size, 1))
+        load = matrix @ known
+        if upper:
+            load += matrix.T @ known - matrix.diagonal()[:, None] * known
+        off = np.linalg.norm(self.solve(load) - known) / np.linalg.norm(known)
+        if not off <= FACTOR_ALLOWED:
+            self.close()
+            raise SolveError(f"{_SINGULAR} (A known vector comes back with an error of {off:.1e}.)")
+
+    def solve(self, rhs: Array) -> Array:
+        """(n, k) solutions of all right-hand sides (n, k)."""
+        return self._factor.solve(np.asarray(rhs, dtype=float).reshape(self.size, -1))
+
+    def close(self) -> None:
+        """Give the factor's memory back."""
+        self._factor.close()
+
+
+def _filled(upper: sp.csr_matrix) -> sp.csr_matrix:
+    """With every diagonal entry stored, as PARDISO wants an indefinite matrix."""
+    if upper.diagonal().all():
+        return upper
+    rows = np.repeat(np.arange(upper.shape[0]), np.diff(upper.indptr))
+    there = np.arange(upper.shape[0])
+    filled = sp.csr_matrix(
+        (np.r_[upper.data, np.zeros(there.size)], (np.r_[rows, there], np.r_[upper.indices, there])), shape=upper.shape
+    )
+    filled.sort_indices()
+    return filled
+
+
+class _Mkl:
+    def __init__(self, upper: sp.csr_matrix, budget: Budget, kind: int, single: bool) -> None:
+        self._solver = Pardiso(upper, budget.threads, kind, single)
+        need = self._solver.analyse()
         if need > budget.memory:
             self.close()
             raise SolveError(
-                f"The factor of {self.upper.shape[0]} unknowns needs about {need:.0f} MiB and the budget is "
+                f"The factor of {upper.shape[0]} unknowns needs about {need:.0f} MiB and the budget is "
                 f"{budget.memory} MiB. Raise the memory, or ask for a coarser accuracy."
             )
-        self._call(22, empty)
-
-    def _call(self, phase: int, rhs: Array) -> Array:
-        self.solver.set_phase(phase)
-        try:
-            return np.asarray(self.solver._call_pardiso(self.upper, rhs))
-        except Exception as error:  # the wrapper's only error type is not exported
-            code = getattr(error, "value", None)
-            if code in (-4, -7):
-                self.close()
-                raise NotPositive from error
-            raise SolveError(f"The direct solver stopped in phase {phase} with code {code}.") from error
+        self._solver.factorise()
+        self.negative = int(self._solver.iparm[22]) if kind == INDEFINITE else 0
 
     def solve(self, rhs: Array) -> Array:
-        return self._call(33, np.asfortranarray(rhs)).reshape(rhs.shape)
+        return np.asarray(self._solver.solve(rhs), dtype=float, order="C")
 
     def close(self) -> None:
-        self.solver.free_memory(everything=True)
+        self._solver.close()
 
 
 _LU_BYTES, _LU_FACTOR = 24, 1.5
@@ -187,8 +218,10 @@ class _Lu:
         except RuntimeError as error:
             raise NotPositive from error
         # with the diagonal as pivots, the signs on U's diagonal are the signs of the pivots
-        if (self.factor.U.diagonal() <= 0).any():
+        pivots = self.factor.U.diagonal()
+        if (pivots == 0).any() or not np.array_equal(self.factor.perm_r, self.factor.perm_c):
             raise NotPositive
+        self.negative = int((pivots < 0).sum())
 
     def solve(self, rhs: Array) -> Array:
         return np.asarray(self.factor.solve(rhs))

@@ -60,7 +60,7 @@ def test_the_fallback_equals_pardiso() -> None:
 
 
 def test_the_fallback_is_taken_when_mkl_is_missing(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(factor, "_loaded_pardiso", lambda: None)
+    monkeypatch.setattr(factor.pardiso, "library", lambda: None)
     result = solve_solid(PART, mesh_with(), BUDGET)
     assert result.backend == "cholesky (lu)"
     assert [c for c in result.checks if not c.ok] == []
@@ -90,7 +90,7 @@ def test_a_factor_beyond_the_memory_is_refused() -> None:
 def test_the_memory_of_the_fallback_is_told_before_and_refused(cells: tuple[int, int, int]) -> None:
     model = build_model(PART, box_mesh(100.0, 10.0, 20.0, cells))
     free = np.flatnonzero(np.repeat(model.mesh.nodes[0] > 1e-6, 3))
-    matrix = model.K[free][:, free].tocsr()
+    matrix = model.K.to_csr()[free][:, free].tocsr()
     entries = spla.splu(matrix.tocsc(), permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True}).nnz
     need = factor.lu_memory(matrix)
     assert 1.0 < need * 2**20 / (24 * entries) < 2.0  # never less than L and U take, and not far above
