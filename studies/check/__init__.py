@@ -16,8 +16,9 @@ from studies.check.result import (
     PeakPlace,
     Stage,
 )
+from studies.check.studied import ModePair, Peak, SolverSummary, TravelEnvelope, TravelSummary
 
 __all__ = [
-    "CaseStress", "Cause", "CheckResult", "Denting", "IndependentCheck", "LimitVerdict", "MeshSummary", "Pair",
-    "PeakPlace", "Stage",
+    "CaseStress", "Cause", "CheckResult", "Denting", "IndependentCheck", "LimitVerdict", "MeshSummary", "ModePair",
+    "Pair", "Peak", "PeakPlace", "SolverSummary", "Stage", "TravelEnvelope", "TravelSummary",
 ]  # fmt: skip

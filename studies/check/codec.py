@@ -18,6 +18,7 @@ from typing import Any
 
 from geometry.problem import HaunchError, RunError
 from studies.check.result import FORMAT, CheckResult
+from studies.check.upgrade import upgraded
 
 
 class ResultFormatError(HaunchError):
@@ -36,7 +37,7 @@ def loads(text: str) -> CheckResult:
     except (ValueError, RecursionError) as error:
         raise ResultFormatError(f"result.json is not readable JSON ({error}); run `haunch check` again") from error
     _check_version(raw)
-    result = _decode(CheckResult, raw, "result")
+    result = _decode(CheckResult, upgraded(raw), "result")
     assert isinstance(result, CheckResult)
     return result
 
@@ -47,7 +48,7 @@ def _refuse_constant(word: str) -> float:
 
 def _check_version(raw: Any) -> None:
     given = raw.get("format") if isinstance(raw, dict) else None
-    match = re.fullmatch(r"haunch-result/(\d+)", given) if isinstance(given, str) else None
+    match = re.fullmatch(r"haunch-result/([1-9]\d*)", given) if isinstance(given, str) else None
     if match is None:
         raise ResultFormatError(f"not a Haunch result: its format is {given!r}, expected {FORMAT!r}")
     ours = int(FORMAT.rpartition("/")[2])

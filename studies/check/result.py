@@ -1,24 +1,24 @@
 """`CheckResult`: everything one checked run found. It *is* ``result.json``.
 
-Layout of ``result.json`` (version ``haunch-result/1``): one JSON object whose members are the attributes
+Layout of ``result.json`` (version ``haunch-result/2``): one JSON object whose members are the attributes
 of `CheckResult` by name, nested objects being the attributes of the dataclasses below by name. Tuples are
 arrays, mappings are objects, "no value" is ``null``; there is no NaN and no infinity. A `FigureKey` is an
 object ``{case, place, quantity, component, axes}``. Every value is in the unit that stands beside it
-(N, mm, MPa, t, s, rad, K); section forces act on the face with outward normal +x. See `CheckResult.to_json`.
+(N, mm, MPa, t, s, rad, K, Hz); section forces act on the face with outward normal +x. See `CheckResult.to_json`.
 """
 
 from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Any, Literal, NamedTuple
+from typing import Any, NamedTuple
 
 from fem.figure import Figure, FigureKey
+from studies.check.studied import ModePair, SolverSummary, TravelEnvelope, TravelSummary
+from studies.check.words import JudgementWord, LimitWord
 
-FORMAT = "haunch-result/1"
-
-JudgementWord = Literal["agrees", "explained", "suspicious", "load check", "no beam value"]
-LimitWord = Literal["met", "missed", "not established"]
+FORMAT = "haunch-result/2"
+"""2: modes, travelling loads with their envelopes, and the solver. See `studies.check.upgrade` for older files."""
 
 
 class Cause(NamedTuple):
@@ -188,11 +188,13 @@ class CheckResult:
     material
         Name and numbers of the material.
     cases
-        Factor of each load, by case.
+        Factor of each load, by case as declared.
     solid_figures, beam_figures
-        Every figure of each model.
+        Every figure of each model in the cases whose loads stand still.
     pairs, limits, checks, peaks, cautions
-        What the judge made of them. `cautions` are sentences.
+        What the judge made of them. `cautions` are sentences. Of the positions of a travelling load (cases such as
+        ``crossing@350``) there are the suspicious pairs, and of each kind of figure the explained one that uses most
+        of its band; peaks, denting and stress at the position that governs.
     case_stress, denting
         What only the solid model gives.
     started
@@ -201,6 +203,12 @@ class CheckResult:
         What the beam model does not give, and why. Sentences.
     files
         Names of the files of the run folder.
+    modes
+        Natural vibrations and buckling shapes.
+    travels, envelopes
+        The declared cases with a travelling load, and the extremes of each of their figures over the positions.
+    solver
+        Of the solid model; None in files of runs before it was told.
     """
 
     title: str
@@ -225,12 +233,16 @@ class CheckResult:
     started: str
     notes: tuple[str, ...] = ()
     files: tuple[str, ...] = ()
+    modes: tuple[ModePair, ...] = ()
+    travels: tuple[TravelSummary, ...] = ()
+    envelopes: tuple[TravelEnvelope, ...] = ()
+    solver: SolverSummary | None = None
     format: str = FORMAT
 
     @property
     def judgement(self) -> JudgementWord:
         """The worst word of the pairs and checks: ``suspicious``, ``explained`` or ``agrees``."""
-        words = {pair.judgement for pair in self.pairs}
+        words = {pair.judgement for pair in self.pairs} | {row.judgement for row in self.envelopes}
         if "suspicious" in words or not all(check.ok for check in self.checks):
             return "suspicious"
         return "explained" if "explained" in words else "agrees"

@@ -8,7 +8,8 @@ import numpy as np
 
 from fem.figure import Figure, FigureKey
 from geometry.part import TemperatureLoad
-from studies.check.result import Cause, JudgementWord, Pair, Reason
+from studies.check.result import Cause, Pair, Reason
+from studies.check.words import JudgementWord
 from studies.judge.bands import CaseFacts, Share, reasons
 from studies.judge.context import Context
 

@@ -14,7 +14,8 @@ import numpy as np
 from fem.figure import FigureKey, Quantity
 from fem.solid import SolidResult
 from geometry.part import Limit
-from studies.check.result import LimitVerdict, LimitWord, Pair
+from studies.check.result import LimitVerdict, Pair
+from studies.check.words import LimitWord
 from studies.judge.agreement import Table
 from studies.judge.context import Context
 from studies.judge.edge_stress import extrapolated

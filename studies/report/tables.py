@@ -7,7 +7,8 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from fem.figure import FigureKey
-from studies.check.result import CheckResult, JudgementWord, LimitVerdict, Pair
+from studies.check.result import CheckResult, LimitVerdict, Pair
+from studies.check.words import JudgementWord
 
 MARKS: dict[str, str] = {
     "agrees": "=", "explained": "~", "suspicious": "!", "load check": "o", "no beam value": "-",

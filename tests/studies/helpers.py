@@ -26,8 +26,9 @@ from geometry.part import (
     Support,
 )
 from mesher.named_mesh import NamedMesh
-from studies.check.result import IndependentCheck, JudgementWord, LimitVerdict, Pair, PeakPlace
+from studies.check.result import IndependentCheck, LimitVerdict, Pair, PeakPlace
 from studies.check.run import Models
+from studies.check.words import JudgementWord
 
 Axes = Literal["global", "member"]
 L, WIDTH, DEPTH = 200.0, 20.0, 30.0

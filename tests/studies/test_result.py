@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import dataclasses
 import json
+from pathlib import Path
 
 import pytest
 
@@ -22,6 +23,7 @@ from studies.check.result import (
     PeakPlace,
     Stage,
 )
+from studies.check.studied import ModePair, Peak, SolverSummary, TravelEnvelope, TravelSummary
 
 KEY = FigureKey("carrying", "arm.end", "displacement", "z")
 
@@ -45,6 +47,14 @@ def sample(**changes: object) -> CheckResult:
         cautions=("linear only",), mesh=MeshSummary(9, 2, 27, 0.35, 12.5, {"size": 2.0, "tries": ["a", 1]}),
         stages=(Stage("solid", 0.75),), versions={"numpy": "2.4"}, started="2026-12-01T11:30:00Z",
         files=("summary.md",),
+        modes=(ModePair(FigureKey("", "", "natural_frequency", "mode 1"), 41.5, 42.5, "Hz", "bending about y",
+                        "bending", 0.98, 0.97, (0.1, 0.2, 0.61, 0.4, 0.5, 0.6), 1e-7, "agrees"),
+               ModePair(FigureKey("parked", "", "buckling_factor", "beam mode 2"), None, -3.5, "1", "", "torsion",
+                        None, None, (), None, "no beam value")),
+        travels=(TravelSummary("crossing", "trolley", "rail.top", (30.0, 70.0), (0.0, 180.0), 40.0, 70.0),),
+        envelopes=(TravelEnvelope(KEY._replace(case="crossing"), "mm", Peak(0.25, 30.0, 0.26), Peak(-0.45, 70.0, None),
+                                  None, None, "suspicious", 30.0, {"agrees": 1, "suspicious": 1}),),
+        solver=SolverSummary("multigrid", "many unknowns", 3e-9, 4e-6),
     )
     return dataclasses.replace(result, **changes)  # type: ignore[arg-type]
 
@@ -60,7 +70,7 @@ def test_every_attribute_is_in_the_text_and_is_read_back() -> None:
     """Take away any one member, at any depth of records: reading must fail, not fall back on a default."""
     raw = json.loads(sample().to_json())
     assert set(raw) == {f.name for f in dataclasses.fields(CheckResult)}
-    free = {"parameters", "material", "cases", "versions", "recipe"}  # mappings by the user's own names
+    free = {"parameters", "material", "cases", "versions", "recipe", "words"}  # mappings by the user's own names
 
     def records(node: object) -> list[dict[str, object]]:
         if isinstance(node, dict):
@@ -77,7 +87,15 @@ def test_every_attribute_is_in_the_text_and_is_read_back() -> None:
     assert CheckResult.from_json(json.dumps(raw)) == sample()
 
 
-@pytest.mark.parametrize("version", ["haunch-result/2", "haunch-result/10"])
+def test_files_of_every_older_layout_are_read() -> None:
+    """``old/result-1.json`` was written by the version before modes and travelling loads."""
+    old = CheckResult.from_json((Path(__file__).parent / "old" / "result-1.json").read_text(encoding="utf-8"))
+    now = sample(modes=(), travels=(), envelopes=(), solver=None)
+    assert old == now
+    assert CheckResult.from_json(old.to_json()) == now
+
+
+@pytest.mark.parametrize("version", ["haunch-result/3", "haunch-result/10"])
 def test_a_newer_version_is_refused_by_name(version: str) -> None:
     raw = json.loads(sample().to_json()) | {"format": version}
     with pytest.raises(ResultFormatError, match="newer"):
@@ -85,6 +103,7 @@ def test_a_newer_version_is_refused_by_name(version: str) -> None:
 
 
 @pytest.mark.parametrize("text", ["", "[]", "{}", '{"format": 1}', "[" * 100_000, '{"format": "haunch-result/1"}',
+                                  '{"format": "haunch-result/0"}', '{"format": "haunch-result/2"}',
                                   '{"format": "other/1"}', '{"format": NaN}'])
 def test_anything_else_is_refused_without_a_traceback_of_another_kind(text: str) -> None:
     with pytest.raises(ResultFormatError):
@@ -114,7 +133,9 @@ def test_numpy_scalars_become_plain_numbers() -> None:
 
 
 def test_the_worst_word_decides() -> None:
-    assert sample().judgement == "explained" and not sample().fine
-    assert sample(limits=()).fine
+    still = {"envelopes": ()}
+    assert sample(**still).judgement == "explained" and not sample(**still).fine
+    assert sample(limits=(), **still).fine
+    assert sample().judgement == "suspicious"  # one position of a travelling load was
     assert sample(checks=(IndependentCheck("b", 2.0, 1.0, False, "t"),)).judgement == "suspicious"
-    assert sample(pairs=()).judgement == "agrees"
+    assert sample(pairs=(), **still).judgement == "agrees"
