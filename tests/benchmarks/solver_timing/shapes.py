@@ -145,7 +145,7 @@ SHAPES = {
             _BOX,
             cells={"tiny": (16, 4, 4), "small": (34, 9, 9), "medium": (64, 16, 16), "large": (100, 25, 25)},
         ),
-        Shape("free box", "the same box, meshed freely", 400, _BOX, factors={"small": 1.0, "medium": 0.5}),
+        Shape("free box", "the same box, meshed freely", 400, _BOX, factors={"small": 0.42, "medium": 0.226}),
         Shape(
             "foot",
             "short thick bracket with a wide foot and a filleted shoulder",
