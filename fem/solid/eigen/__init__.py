@@ -1,0 +1,6 @@
+"""Natural frequencies and linear buckling of the solid model."""
+
+from fem.solid.eigen.buckling import solid_buckling
+from fem.solid.eigen.vibration import Eigenmodes, solid_vibration
+
+__all__ = ["Eigenmodes", "solid_buckling", "solid_vibration"]

@@ -1,0 +1,357 @@
+"""Linear buckling: (K + G_fixed + factor G_varying) phi = 0, with G the geometric stiffness of the linear stress.
+
+Loads keep their direction and their place in the material: pressure does not turn with the surface, and a support's
+moment arm does not shorten. A force at a remote point keeps its direction while its lever turns with the region that
+carries it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.sparse as sp
+from numpy.typing import NDArray
+
+from fem.mode import Mode
+from fem.solid.block_matrix import BlockMatrix
+from fem.solid.cut import Cutter
+from fem.solid.eigen.count import LowRank, negative_count, separated, symmetric_factor, too_large
+from fem.solid.eigen.describe import buckling_kind, section_shapes, section_shares, shape_sections
+from fem.solid.eigen.local import geometric_stiffness, mass_matrix
+from fem.solid.eigen.motions import Motions, Operator, held_motions
+from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs
+from fem.solid.eigen.remote import lever_rows
+from fem.solid.eigen.start import start_unknowns
+from fem.solid.eigen.vibration import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes
+from fem.solid.model import SolidModel, thermal_vector
+from fem.solid.result import Check
+from fem.solid.shape import Array
+from fem.solid.stiffness import stresses
+from fem.solid.system import HeldSystem
+from geometry.budget import Budget
+from geometry.part import BodyLoad, Buckling, RemotePoint
+from geometry.problem import SolveError
+
+LARGEST_FACTOR = 1e6
+"""Factors beyond are no buckling: rounding, or waves as short as the elements."""
+OTHER_SIGN = 100.0
+"""How many times the least factor one of the other sign may have to be looked for: set by trial."""
+OTHER_SIGN_ROUNDS = 40
+NOTE = "loads keep their direction (pressure does not turn with the surface); walls may buckle by themselves"
+
+
+@dataclass(frozen=True, slots=True)
+class _Geometric:
+    """Geometric stiffness of the part and weights and rows (r, 3 n) of the levers of remote forces."""
+
+    part: BlockMatrix
+    weights: Array
+    levers: sp.csr_matrix
+
+    def __matmul__(self, u: Array) -> Array:
+        return np.asarray(self.part @ u + self.levers.T @ (self.weights[:, None] * (self.levers @ u)))
+
+
+def solid_buckling(
+    model: SolidModel, system: HeldSystem, u: Array, budget: Budget, cutter: Cutter | None = None
+) -> Eigenmodes:
+    """The buckling factors that `model.part.buckling` asks for, one study after the other.
+
+    Prescribed displacements of supports grow with the varying loads. Of one study: the factors of least size, and the
+    least of the other sign where all have one sign and there is one up to OTHER_SIGN times the least.
+
+    Parameters
+    ----------
+    system
+        The held system of the static run.
+    u
+        (c, 3, n) displacements of the cases, mm.
+    cutter
+        Of the mesh, if there is one already.
+
+    Raises
+    ------
+    SolveError
+        When the factors do not converge, or one is missing.
+    """
+    motions = held_motions(system)
+    modes: list[Mode] = []
+    shapes: list[Array] = []
+    checks: list[Check] = []
+    describe = _Describer(model, cutter)
+    for study in model.part.buckling:
+        fixed, varying = _geometric_of(model, system, u, study)
+        found = _Study(model, motions, fixed, varying, study, budget)
+        pairs = found.solve()
+        checks += found.checks
+        if pairs.mu.size:
+            field = motions.elimination.expand(pairs.x)
+            more, shape = describe.modes(field, pairs, study.case)
+            modes += more
+            shapes.append(shape)
+    n = model.mesh.nodes.shape[1]
+    return Eigenmodes(tuple(modes), np.concatenate(shapes) if shapes else np.zeros((0, 3, n)), tuple(checks))
+
+
+def _geometric_of(
+    model: SolidModel, system: HeldSystem, u: Array, study: Buckling
+) -> tuple[_Geometric | None, _Geometric | None]:
+    """Geometric stiffness of the fixed and of the varying loads; None where there is no stress."""
+    part, n = model.part, model.mesh.nodes.shape[1]
+    case = next(k for k, c in enumerate(part.cases) if c.name == study.case)
+    total = model.factors[case]
+    names = list(model.loads)
+    held = np.array([f if name in study.fixed else 0.0 for name, f in zip(names, total, strict=True)])
+    u_fixed, change = np.zeros((3, n)), 0.0
+    if held.any():
+        change = float(held @ np.array([load.change for load in model.loads.values()]))
+        f = np.tensordot(held, model.load_vectors, axes=1)
+        if change:
+            m = part.material
+            f = f + change * m.expansion * thermal_vector(model.mesh, model.groups, m.E, m.nu)
+        y = system.inverse(system.elimination.gather(f.reshape(-1, 1)))
+        u_fixed = system.elimination.expand(y).reshape(n, 3).T
+    both = np.array([u_fixed, u[case] - u_fixed])
+    changes = np.array([change, model.change[case] - change])
+    expansion = part.material.expansion * changes
+    stress = [
+        stresses(
+            group.gradients,
+            both[:, :, model.mesh.tets[:, group.elements]].transpose(0, 3, 2, 1),
+            part.material.E,
+            part.material.nu,
+            expansion,
+        )
+        for group in model.groups
+    ]
+    # stress that is rounding of the motion that makes it is none
+    largest = [max(float(np.abs(s[k]).max()) for s in stress) for k in range(2)]
+    strain = float(np.abs(expansion).max()) + float(np.abs(both).max() / np.ptp(model.mesh.nodes, axis=1).max())
+    least = 1e-9 * part.material.E * strain
+    return tuple(  # type: ignore[return-value]
+        _Geometric(geometric_stiffness(model, [s[k] for s in stress]), *_levers(model, factors))
+        if largest[k] > least
+        else None
+        for k, factors in enumerate((held, total - held))
+    )
+
+
+def _levers(model: SolidModel, factors: Array) -> tuple[Array, sp.csr_matrix]:
+    """Weights and rows of the levers of all remote forces under load factors (loads,)."""
+    part, mesh = model.part, model.mesh
+    by_name = dict(zip(model.loads, factors, strict=True))
+    pull = sum((by_name[b.name] * np.array(b.force_per_mass) for b in part.loads if isinstance(b, BodyLoad)), np.zeros(3))
+    weights, rows = [np.zeros(0)], [sp.csr_matrix((0, 3 * mesh.nodes.shape[1]))]
+    for point in part.loads:
+        if isinstance(point, RemotePoint):
+            force = by_name[point.name] * np.array(point.force) + point.mass * pull
+            if force.any():
+                w, r = lever_rows(mesh, point, force)
+                weights.append(w)
+                rows.append(r)
+    return np.concatenate(weights), sp.csr_matrix(sp.vstack(rows))
+
+
+def _of_sign(sign: float) -> Callable[[Array, int], NDArray[np.int64]]:
+    def choose(mu: Array, count: int) -> NDArray[np.int64]:
+        return np.argsort(-sign * mu, kind="stable")[:count]
+
+    return choose
+
+
+class _Study:
+    """One buckling study: mu = -1 / factor of G_varying x = mu (K + G_fixed) x."""
+
+    def __init__(
+        self,
+        model: SolidModel,
+        motions: Motions,
+        fixed: _Geometric | None,
+        varying: _Geometric | None,
+        study: Buckling,
+        budget: Budget,
+    ) -> None:
+        self.model, self.motions, self.fixed, self.varying = model, motions, fixed, varying
+        self.study, self.budget = study, budget
+        self.allowed = RESIDUAL_ALLOWED[motions.direct]
+        self.checks: list[Check] = []
+
+    def _check(self, what: str, value: float, allowed: float, note: str) -> None:
+        self.checks.append(Check(f"buckling of {self.study.case}: {what}", value, allowed, value <= allowed, note))
+
+    def _reduced(self, matrix: _Geometric) -> Operator:
+        eliminate = self.motions.elimination
+        return lambda y: eliminate.gather(matrix @ eliminate.expand(y))
+
+    def _stiffness(self) -> Operator:
+        if self.fixed is None:
+            return self.motions.stiffness
+        K, G = self.motions.stiffness, self._reduced(self.fixed)
+        return lambda y: K(y) + G(y)
+
+    def _start(self, B: Operator, count: int, seed: int) -> Array:
+        fields = start_unknowns(self.motions.elimination, self.model.mesh.nodes, count, seed)
+        first = self.motions.precondition(B(fields))
+        return first if np.abs(first).max() > 0 else fields
+
+    def solve(self) -> Pairs:
+        """The pairs, the least factor first; none when nothing buckles."""
+        none = Pairs(np.zeros(0), np.zeros((self.motions.free, 0)), np.zeros(0), 0)
+        if self.fixed is not None and not self._fixed_loads_hold(self.fixed):
+            return none
+        if self.varying is None:
+            self._check("stress of the loads that grow", 0.0, 0.0, "there is none, so there is no factor")
+            return none
+        B = self._reduced(self.varying)
+        pencil = Pencil(self._stiffness(), B, self.motions.precondition)
+        pairs = self._least(pencil, B)
+        sensible = np.abs(pairs.mu) > 1.0 / LARGEST_FACTOR
+        pairs = Pairs(pairs.mu[sensible], pairs.x[:, sensible], pairs.residual[sensible], pairs.rounds)
+        if not pairs.mu.size:
+            self._check("factors", 0.0, 0.0, f"none of a size below {LARGEST_FACTOR:g}")
+            return none
+        pairs = self._with_other_sign(pencil, B, pairs)
+        worst = float(pairs.residual.max())
+        self._check(
+            "largest residual", worst, self.allowed,
+            f"of the sum of the three forces over K phi, in the norm of the inverse stiffness; {NOTE}",
+        )  # fmt: skip
+        return pairs
+
+    def _fixed_loads_hold(self, fixed: _Geometric) -> bool:
+        """Whether K + G_fixed is positive definite: the least positive factor of the fixed loads is above one."""
+        B = self._reduced(fixed)
+        pencil = Pencil(self.motions.stiffness, B, self.motions.precondition)
+        start = self._start(B, 6, self.budget.seed)
+        found = extreme_pairs(pencil, start, np.array([GUARD_ALLOWED]), choose=_of_sign(-1.0))
+        factor = -1.0 / found.mu[0] if found.mu[0] < 0 else np.inf
+        note = "the fixed loads alone buckle the part" if factor <= 1.0 else ""
+        self._check("fixed loads over those that buckle the part alone", float(1.0 / factor), 1.0, note)
+        return bool(factor > 1.0)
+
+    def _least(self, pencil: Pencil, B: Operator) -> Pairs:
+        """The factors of least size, counted."""
+        modes, guards = min(self.study.modes, self.motions.free - self.motions.rows.shape[0]), GUARDS
+        start, reason = np.zeros((self.motions.free, 0)), too_large(self.motions)
+        for attempt in range(3):
+            fresh = self._start(B, modes + guards + 4, self.budget.seed + attempt)
+            tolerance = np.r_[np.full(modes, self.allowed), np.full(guards, GUARD_ALLOWED)]
+            found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance)
+            real = np.abs(found.mu) > 1.0 / LARGEST_FACTOR
+            if not (found.residual <= tolerance[: found.mu.size])[real].all():
+                raise SolveError(
+                    f"The buckling factors of the case {self.study.case!r} do not converge: residual "
+                    f"{found.residual[real].max():.1e} after {found.rounds} rounds, allowed {self.allowed:.0e}. Ask for "
+                    "fewer modes, or mesh the part again."
+                )
+            counts = [self._missing(found, modes, sign, attempt == 2) for sign in (1.0, -1.0)] if not reason else []
+            if all(c is not None and c[0] <= 0 for c in counts):
+                break
+            guards, start = guards + 4, found.x
+        known = [c for c in counts if c is not None]
+        missing = sum(abs(c[0]) for c in known)
+        self._check(
+            "factors missed, by the inertia of K + G", float(missing), 0.0, reason or "; ".join(c[1] for c in known if c[1])
+        )
+        if missing:
+            raise SolveError(
+                f"Buckling factors of the case {self.study.case!r} are missing: {self.checks[-1].note}. Mesh the part "
+                "again."
+            )
+        return Pairs(found.mu[:modes], found.x[:, :modes], found.residual[:modes], found.rounds)
+
+    def _missing(self, found: Pairs, modes: int, sign: float, last: bool) -> tuple[int, str] | None:
+        """How many factors of one sign are missing among those reported, and what was counted; None: not to be told
+        because the next one is not known to stand apart."""
+        factors = -1.0 / np.where(found.mu != 0, found.mu, np.nan)
+        mine = np.flatnonzero((factors * sign > 0) & (np.abs(factors) < LARGEST_FACTOR))
+        reported = int((mine < modes).sum())
+        if not reported:
+            return 0, ""
+        values = np.abs(factors[mine])
+        # the next one of this sign is at least as far as the last one found of any
+        farthest = float(np.abs(factors[-1]))
+        if farthest > values[-1]:
+            values = np.r_[values, farthest]
+        split = separated(values, reported)
+        if split is None:
+            if not last:
+                return None
+            split = reported, float(values[reported - 1])
+        above, shift = split
+        count = self._count(sign * shift)
+        return count - above, f"{count} between 0 and {sign * shift:.5g}"
+
+    def _count(self, shift: float) -> int:
+        """Negative directions of K + G_fixed + shift G_varying."""
+        assert self.varying is not None
+        K, eliminate = self.model.K, self.motions.elimination
+        blocks = K.blocks + shift * self.varying.part.blocks
+        weights, levers = [shift * self.varying.weights], [self.varying.levers]
+        if self.fixed is not None:
+            blocks += self.fixed.part.blocks
+            weights.append(self.fixed.weights)
+            levers.append(self.fixed.levers)
+        matrix = eliminate.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
+        rows = (sp.vstack(levers) @ eliminate.T).toarray()
+        low = LowRank(rows, np.concatenate(weights))
+        return negative_count(matrix, low, self.motions.rows, symmetric_factor(self.budget))
+
+    def _with_other_sign(self, pencil: Pencil, B: Operator, pairs: Pairs) -> Pairs:
+        """The pairs and, where all have one sign, the first of the other one if it is found."""
+        sign = float(np.sign(pairs.mu[0]))
+        if not (pairs.mu * sign > 0).all():
+            return pairs
+        start = self._start(B, 6, self.budget.seed + 7)
+        found = extreme_pairs(
+            pencil, start, np.array([self.allowed]), choose=_of_sign(-sign), rounds=OTHER_SIGN_ROUNDS,
+            enough=lambda mu, rounds: bool(rounds > 10 and -sign * mu[0] * OTHER_SIGN < abs(pairs.mu[0])),
+        )  # fmt: skip
+        mu = float(found.mu[0])
+        if -sign * mu * OTHER_SIGN < abs(float(pairs.mu[0])) or found.residual[0] > self.allowed:
+            self._check(
+                "factors of the other sign", 0.0, 0.0,
+                f"none was found up to {OTHER_SIGN:g} times the least",
+            )  # fmt: skip
+            return pairs
+        order = np.argsort(-np.abs(np.r_[pairs.mu, mu]), kind="stable")
+        return Pairs(
+            np.r_[pairs.mu, mu][order],
+            np.hstack([pairs.x, found.x])[:, order],
+            np.r_[pairs.residual, found.residual][order],
+            max(pairs.rounds, found.rounds),
+        )
+
+
+class _Describer:
+    """Sections and volume of the part, made when the first shape comes."""
+
+    def __init__(self, model: SolidModel, cutter: Cutter | None) -> None:
+        self.model, self.cutter = model, cutter
+        self.made: tuple = ()  # type: ignore[type-arg]
+
+    def modes(self, field: Array, pairs: Pairs, case: str) -> tuple[Sequence[Mode], Array]:
+        """Modes and shapes (k, 3, n) of fields (3 n, k)."""
+        if not self.made:
+            self.made = shape_sections(self.model, self.cutter), mass_matrix(self.model)
+        sections, volume = self.made
+        n, count = self.model.mesh.nodes.shape[1], pairs.mu.size
+        shapes = field.reshape(n, 3, count).transpose(2, 1, 0)
+        shapes = np.ascontiguousarray(shapes / np.linalg.norm(shapes, axis=1).max(axis=1)[:, None, None])
+        mean, turn = section_shapes(sections, self.model, shapes)
+        explained = section_shares(sections, self.model, volume, shapes, mean, turn)
+        modes = [
+            Mode(
+                value=float(-1.0 / pairs.mu[k]),
+                displacement=mean[k],
+                rotation=turn[k],
+                kind=buckling_kind(sections, mean[k], turn[k], float(explained[k])),
+                residual=float(pairs.residual[k]),
+                section_share=float(explained[k]),
+                case=case,
+            )
+            for k in range(count)
+        ]
+        return modes, shapes

@@ -1,0 +1,84 @@
+"""How many eigenvalues lie below a shift: the inertia of a bordered matrix (Sylvester's law)."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.sparse as sp
+
+from fem.solid.eigen.motions import Motions
+from fem.solid.shape import Array
+from geometry.budget import Budget
+
+COUNT_LIMIT = 150_000
+"""Unknowns up to which modes are counted where the solver is iterative: beyond, the factor would take several times
+as long as everything else."""
+
+
+APART = 2e-3
+"""Least relative gap behind which eigenvalues are counted."""
+
+
+@dataclass(frozen=True, slots=True)
+class LowRank:
+    """A part sum_i weight_i b_i b_i^T of a matrix, rows b (r, f), weight (r,) of either sign."""
+
+    rows: Array
+    weight: Array
+
+
+def negative_count(
+    matrix: sp.csr_matrix, low: LowRank, rows: Array, factor: Callable[[sp.csr_matrix], tuple[int, Callable[[Array], Array]]]
+) -> int:
+    """Number of negative directions of matrix + low rank on the motions with rows y = 0.
+
+    The low-rank part and the rows stand as a border: matrix - B^T D^-1 B is what elimination of the border leaves, with
+    D = -1 / weight for the low-rank part; the rows have D = 0, and each of them makes one negative and one positive
+    pivot of its own. Inertias of a factor and of its Schur complement add up (E. V. Haynsworth, Linear Algebra Appl. 1
+    (1968) 73).
+    """
+    negative, solve = factor(matrix)
+    kept = low.weight != 0
+    border = np.vstack([low.rows[kept], rows])
+    if not border.shape[0]:
+        return negative
+    D = np.r_[-1.0 / low.weight[kept], np.zeros(rows.shape[0])]
+    size = np.r_[np.sqrt(np.abs(D[: kept.sum()])), np.linalg.norm(rows, axis=1)]
+    border, D = border / size[:, None], D / size**2
+    S = np.diag(D) - border @ solve(border.T)
+    scale = 1.0 / np.sqrt(np.maximum(np.abs(np.diag(S)), 1e-300))
+    S = S * scale * scale[:, None]
+    return negative + int((np.linalg.eigvalsh((S + S.T) / 2) < 0).sum()) - rows.shape[0] - int((D < 0).sum())
+
+
+def separated(values: Array, wanted: int) -> tuple[int, float] | None:
+    """Where to count: how many of the rising positive values lie below a shift, at least `wanted`, and the shift.
+
+    None when the last ones stand so close together that the next one may be one of them.
+    """
+    gaps = np.diff(values) / values[:-1]
+    apart = np.flatnonzero(gaps[wanted - 1 :] > APART)
+    if not apart.size:
+        return None
+    below = wanted + int(apart[0])
+    return below, float(values[below - 1]) * (1.0 + min(float(gaps[below - 1]) / 3.0, 0.01))
+
+
+def too_large(motions: Motions) -> str:
+    """Why the modes are not counted; empty when they are."""
+    if motions.direct or motions.free <= COUNT_LIMIT:
+        return ""
+    return f"not counted: {motions.free} unknowns are too many for a factor beside the {motions.solver} solver"
+
+
+def symmetric_factor(budget: Budget) -> Callable[[sp.csr_matrix], tuple[int, Callable[[Array], Array]]]:
+    from fem.solid.eigen.local import SymmetricFactor
+
+    def factor(matrix: sp.csr_matrix) -> tuple[int, Callable[[Array], Array]]:
+        made = SymmetricFactor(matrix, budget)
+        return made.negative, made.solve
+
+    return factor
+

@@ -1,0 +1,142 @@
+"""The motions that eigenvectors are sought among: those that the supports leave, or all but the rigid ones."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+from itertools import combinations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fem.solid.block_matrix import BlockMatrix
+from fem.solid.model import SolidModel
+from fem.solid.shape import Array
+from fem.solid.solver.elimination import Elimination
+from fem.solid.support import Block, Constraints, build_constraints, rigid_map
+from fem.solid.system import HeldSystem
+from geometry.budget import Budget
+
+Operator = Callable[[Array], Array]
+"""(f, k) of (f, k)."""
+
+
+@dataclass(frozen=True, slots=True)
+class Motions:
+    """u = T y, (3 n, f), with C y = 0.
+
+    Attributes
+    ----------
+    elimination
+        T.
+    rows
+        (r, f) C, dense: the rows of mean values that are held.
+    stiffness, precondition
+        T^T K T y, and a symmetric positive definite approximation of its inverse on the motions with C y = 0 (and,
+        of a free part, with no rigid motion).
+    solver
+        Name of the solver behind it; `direct`: its approximation is the inverse. `close` gives memory back that was
+        taken for these motions alone.
+    """
+
+    elimination: Elimination
+    rows: Array
+    stiffness: Operator
+    precondition: Operator
+    solver: str
+    close: Callable[[], None]
+
+    @property
+    def free(self) -> int:
+        return int(self.elimination.T.shape[1])
+
+    @property
+    def direct(self) -> bool:
+        return is_direct(self.solver)
+
+    def reduced(self, matrix: BlockMatrix) -> Operator:
+        """y -> T^T matrix T y."""
+        return lambda y: self.elimination.gather(matrix @ self.elimination.expand(y))
+
+
+def is_direct(solver: str) -> bool:
+    """Whether the solver of that name applies the inverse itself."""
+    return solver.startswith("cholesky")
+
+
+def held_motions(system: HeldSystem) -> Motions:
+    """What the supports leave. Mean rows are met exactly, whatever the solver's approximation does with them."""
+    rows = system.mean_rows.toarray()
+    precondition: Operator = system.precondition
+    if rows.shape[0] and not is_direct(system.solver.name):
+        Z = system.precondition(rows.T)
+        small = np.linalg.inv(rows @ Z)
+
+        def precondition(r: Array) -> Array:
+            y = system.precondition(r)
+            return np.asarray(y - Z @ (small @ (rows @ y)))
+
+    return Motions(system.elimination, rows, system.apply, precondition, system.solver.name, lambda: None)
+
+
+def free_part_constraints(model: SolidModel) -> Constraints:
+    """No supports; regions that loads make rigid stay rigid."""
+    return build_constraints(replace(model.part, supports=()), model.mesh)
+
+
+def held_at_points(nodes: Array, constraints: Constraints) -> tuple[Constraints, NDArray[np.int64]]:
+    """The same with six directions of three far nodes held, just enough that no rigid motion is left.
+
+    Loads that balance draw no reaction from such a hold, so that solutions under it are solutions of the free part but
+    for a rigid motion. Also gives the unknowns (f - 6,) that are kept.
+    """
+    T = constraints.T
+    plain = np.flatnonzero((np.diff(T.indptr).reshape(-1, 3) == 1).all(axis=1))
+    x = nodes[:, plain]
+    a = int(((x - x.mean(axis=1)[:, None]) ** 2).sum(axis=0).argmax())
+    away = x - x[:, [a]]
+    b = int((away**2).sum(axis=0).argmax())
+    line = away[:, b] / np.linalg.norm(away[:, b])
+    c = int(((away - np.outer(line, line @ away)) ** 2).sum(axis=0).argmax())
+    turns = rigid_map(away[:, [b, c]], np.zeros(3))[:, :, 3:]  # (2, 3, 3) motion of b and c under turns about a
+    options = [(pair, k) for pair in combinations(range(3), 2) for k in range(3)]
+    pair, k = max(options, key=lambda o: abs(float(np.linalg.det(np.vstack([turns[0, list(o[0])], turns[1, [o[1]]]])))))
+    eye = np.eye(3)
+    held = [(plain[a], eye), (plain[b], eye[list(pair)]), (plain[c], eye[[k]])]
+    blocks = tuple(
+        Block(np.array([node]), rows, np.zeros(rows.shape[0]), ("",) * rows.shape[0]) for node, rows in held
+    )
+    unknowns = np.concatenate([3 * node + np.flatnonzero(rows.any(axis=0)) for node, rows in held])
+    kept = np.setdiff1d(np.arange(T.shape[1]), T.indices[T.indptr[unknowns]])
+    return replace(constraints, T=T[:, kept].tocsr(), blocks=constraints.blocks + blocks), kept
+
+
+def free_motions(
+    model: SolidModel, constraints: Constraints, elimination: Elimination, mass: Operator, R: Array, budget: Budget
+) -> Motions:
+    """Every motion of a free part but the rigid ones.
+
+    Parameters
+    ----------
+    constraints, elimination
+        Of the part without its supports.
+    mass
+        y -> M y.
+    R
+        (f, 6) rigid motions with R^T M R = 1: every vector is kept M-orthogonal to them.
+    """
+    pinned, kept = held_at_points(model.mesh.nodes, constraints)
+    system = HeldSystem(model.K, pinned, model.mesh, budget)
+    heavy = mass(R)
+
+    def precondition(r: Array) -> Array:
+        balanced = r - heavy @ (R.T @ r)
+        y = np.zeros_like(r)
+        y[kept] = system.precondition(balanced[kept])
+        return np.asarray(y - R @ (heavy.T @ y))
+
+    def stiffness(y: Array) -> Array:
+        return elimination.gather(model.K @ elimination.expand(y))
+
+    rows = np.zeros((0, elimination.T.shape[1]))
+    return Motions(elimination, rows, stiffness, precondition, system.solver.name, system.close)

@@ -1,0 +1,165 @@
+"""Extreme eigenpairs of B x = mu A x, A positive definite, with a fixed approximation of A^-1.
+
+Block Davidson method: the space grows by the approximate inverse applied to the residuals of the pairs that are wanted
+and not yet found, Rayleigh and Ritz take the best of it, and it is cut back to its best vectors when it is full
+(E. R. Davidson, J. Comput. Phys. 17 (1975) 87; thick restart as in Stathopoulos, Saad and Wu, SIAM J. Sci. Comput. 19
+(1998) 227; from memory). With the exact inverse the space is a block Krylov space of A^-1 B and a few steps do. Blocks
+are what makes repeated eigenvalues come complete.
+
+Both uses are of this form, with A the stiffness: vibration has B the mass and mu = 1 / omega^2, all positive; buckling
+has B the geometric stiffness and mu = -1 / factor, of either sign. The largest mu are wanted in size.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fem.solid.shape import Array
+
+Operator = Callable[[Array], Array]
+"""(f, k) of (f, k)."""
+
+ROUNDS = 120
+_INDEPENDENT = 1e-13
+"""Least part (squared, in the norm of A) of a new direction that may lie outside the space."""
+
+
+@dataclass(frozen=True, slots=True)
+class Pencil:
+    """Products with A and B, and a symmetric positive definite approximation of A^-1."""
+
+    A: Operator
+    B: Operator
+    precondition: Operator
+
+
+@dataclass(frozen=True, slots=True)
+class Pairs:
+    """Pairs in falling order of \\|mu\\|.
+
+    Attributes
+    ----------
+    mu, x
+        (k,) and (f, k), with x^T A x = 1.
+    residual
+        (k,) \\|B x - mu A x\\| over \\|mu A x\\|, both in the norm of A^-1 (or of its approximation): mu is off by at
+        most this part, and where it stands alone by its square.
+    rounds
+        Rounds that were taken.
+    """
+
+    mu: Array
+    x: Array
+    residual: Array
+    rounds: int
+
+
+def largest(mu: Array, count: int) -> NDArray[np.int64]:
+    """Indices of the `count` largest in size, in falling order."""
+    return np.argsort(-np.abs(mu), kind="stable")[:count]
+
+
+def extreme_pairs(
+    pencil: Pencil,
+    start: Array,
+    tolerance: Array,
+    room: int = 0,
+    choose: Callable[[Array, int], NDArray[np.int64]] = largest,
+    rounds: int = ROUNDS,
+    enough: Callable[[Array, int], bool] = lambda mu, rounds: False,
+) -> Pairs:
+    """The pairs with the largest \\|mu\\|.
+
+    Parameters
+    ----------
+    start
+        (f, p) vectors to begin with, at least as many as pairs are wanted.
+    tolerance
+        (k,) allowed residual of each of the k pairs, in their order. The pairs come back when all are met or after
+        `rounds`: the caller looks at the residuals.
+    room
+        Vectors in the space before it is cut back.
+    choose
+        Which Ritz values are wanted.
+    enough
+        Told the Ritz values that are wanted and the round, whether to give up.
+    """
+    wanted = tolerance.size
+    keep = max(2 * wanted, start.shape[1])
+    room = max(room, keep + 2 * wanted)
+    space = _Space(pencil)
+    space.add(start)
+    residual = np.full(wanted, np.inf)
+    mu = np.zeros(0)
+    x = np.zeros((start.shape[0], 0))
+    for done in range(1, rounds + 1):
+        values, S = space.ritz()
+        chosen = choose(values, wanted)
+        mu = values[chosen]
+        x, Ax, Bx = (V @ S[:, chosen] for V in (space.V, space.AV, space.BV))
+        left = Bx - Ax * mu
+        new = pencil.precondition(left)
+        size = np.sqrt(np.maximum(np.einsum("fk,fk->k", left, new), 0.0))
+        residual = size / np.where(mu != 0, np.abs(mu), 1e-300)
+        open_ = residual > tolerance[: chosen.size]
+        if (chosen.size == wanted and not open_.any()) or enough(mu, done):
+            return Pairs(mu, x, residual, done)
+        if space.size + int(open_.sum()) > room:
+            kept = np.union1d(largest(values, keep), chosen)
+            space.rotate(S[:, kept])
+        if not space.add(new[:, open_] / np.where(size[open_] > 0, size[open_], 1.0)):
+            break
+    return Pairs(mu, x, residual, done)
+
+
+class _Space:
+    """Columns V with V^T A V = 1, A V and B V."""
+
+    def __init__(self, pencil: Pencil) -> None:
+        self.pencil = pencil
+        self.V = self.AV = self.BV = np.zeros((0, 0))
+        self.H = np.zeros((0, 0))
+
+    @property
+    def size(self) -> int:
+        return self.V.shape[1]
+
+    def ritz(self) -> tuple[Array, Array]:
+        values, S = np.linalg.eigh(self.H)
+        return values, S
+
+    def rotate(self, S: Array) -> None:
+        self.V, self.AV, self.BV = self.V @ S, self.AV @ S, self.BV @ S
+        self.H = self._symmetric(self.V.T @ self.BV)
+
+    def add(self, W: Array) -> bool:
+        """Add what is new of W (f, k); False when nothing is."""
+        for _ in range(2):
+            if self.size:
+                W = W - self.V @ (self.AV.T @ W)
+            AW = self.pencil.A(W)
+            gram = self._symmetric(W.T @ AW)
+            scale = 1.0 / np.sqrt(np.maximum(np.diag(gram), 1e-300))
+            values, Q = np.linalg.eigh(gram * scale * scale[:, None])
+            good = values > _INDEPENDENT * max(float(values.max(initial=0.0)), 1e-300)
+            if not good.any():
+                return False
+            Q = (scale[:, None] * Q[:, good]) / np.sqrt(values[good])
+            W, AW = W @ Q, AW @ Q
+        BW = self.pencil.B(W)
+        if not self.size:
+            self.V, self.AV, self.BV = W, AW, BW
+            self.H = self._symmetric(W.T @ BW)
+            return True
+        cross = self.V.T @ BW
+        self.H = np.block([[self.H, cross], [cross.T, self._symmetric(W.T @ BW)]])
+        self.V, self.AV, self.BV = (np.hstack(pair) for pair in ((self.V, W), (self.AV, AW), (self.BV, BW)))
+        return True
+
+    @staticmethod
+    def _symmetric(H: Array) -> Array:
+        return np.asarray((H + H.T) / 2)

@@ -1,0 +1,222 @@
+"""Natural frequencies: K phi = omega^2 M phi on the motions that the supports leave, or of the free part."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.sparse as sp
+
+from fem.mode import Mode
+from fem.solid.block_matrix import BlockMatrix
+from fem.solid.cut import Cutter
+from fem.solid.eigen.count import APART, LowRank, negative_count, separated, symmetric_factor, too_large
+from fem.solid.eigen.describe import section_shapes, section_shares, shape_sections, vibration_kind
+from fem.solid.eigen.local import mass_matrix
+from fem.solid.eigen.motions import Motions, free_motions, free_part_constraints, held_motions
+from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs
+from fem.solid.eigen.remote import remote_mass_rows
+from fem.solid.eigen.rigid import orthonormal, rigid_motions
+from fem.solid.eigen.start import start_unknowns
+from fem.solid.model import SolidModel
+from fem.solid.result import Check
+from fem.solid.shape import Array
+from fem.solid.solver.elimination import Elimination
+from fem.solid.system import HeldSystem
+from geometry.budget import Budget
+from geometry.part import RemotePoint
+from geometry.problem import SolveError
+
+RESIDUAL_ALLOWED = {True: 1e-6, False: 1e-3}
+"""Residual in the norm of the inverse stiffness, by whether the solver is direct: the square of it is the error of the
+eigenvalue, 1e-6 for an iterative solver."""
+GUARD_ALLOWED = 1e-2
+GUARDS = 2
+RIGID_ALLOWED = 1e-9
+"""Energy of a rigid motion over the sum of its terms' sizes: rounding of coordinates and stiffness."""
+
+
+@dataclass(frozen=True, slots=True)
+class Eigenmodes:
+    """What an eigenvalue study gives: modes, shapes (modes, 3, n) of largest size 1 mm, checks."""
+
+    modes: tuple[Mode, ...]
+    shapes: Array
+    checks: tuple[Check, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class _Mass:
+    """Consistent mass of the part and rows B (r, 3 n) of the remote masses, M + B^T B, t."""
+
+    part: BlockMatrix
+    remote: sp.csr_matrix
+
+    def __matmul__(self, u: Array) -> Array:
+        return np.asarray(self.part @ u + self.remote.T @ (self.remote @ u))
+
+
+def solid_vibration(
+    model: SolidModel, system: HeldSystem | None, budget: Budget, cutter: Cutter | None = None
+) -> Eigenmodes:
+    """The lowest natural frequencies that `model.part.vibration` asks for.
+
+    Parameters
+    ----------
+    system
+        The held system of the static run; not used for a free part, which makes one of its own.
+    cutter
+        Of the mesh, if there is one already.
+
+    Raises
+    ------
+    SolveError
+        When the modes do not converge, or one is missing.
+    """
+    wanted = model.part.vibration
+    if wanted is None:
+        raise SolveError("The part asks for no natural frequencies.")
+    points = [p for p in model.part.loads if isinstance(p, RemotePoint) and (p.mass > 0 or any(p.inertia))]
+    mass = _Mass(mass_matrix(model), remote_mass_rows(model.mesh, points))
+    checks: list[Check] = []
+    if wanted.free:
+        constraints = free_part_constraints(model)
+        elimination = Elimination(constraints.T)
+        R, cost = _rigid_unknowns(model, elimination, mass)
+        checks.append(Check("free part: energy of its rigid motions", cost, RIGID_ALLOWED, cost <= RIGID_ALLOWED))
+        apply = _reduced_mass(elimination, mass)
+        motions = free_motions(model, constraints, elimination, apply, R, budget)
+    elif system is None:
+        raise SolveError("Natural frequencies of a held part need its held system.")
+    else:
+        motions = held_motions(system)
+        apply = _reduced_mass(motions.elimination, mass)
+    try:
+        pairs, counted = _solve(model, motions, apply, mass, wanted.modes, 6 if wanted.free else 0, budget)
+    finally:
+        motions.close()
+    checks.append(counted)
+    return _modes(model, motions, mass, pairs, checks, cutter)
+
+
+def _reduced_mass(elimination: Elimination, mass: _Mass):  # type: ignore[no-untyped-def]
+    return lambda y: elimination.gather(mass @ elimination.expand(y))
+
+
+def _rigid_unknowns(model: SolidModel, elimination: Elimination, mass: _Mass) -> tuple[Array, float]:
+    """(f, 6) rigid motions of a free part, orthonormal in the mass, and the largest relative energy of one."""
+    R = rigid_motions(model.mesh.nodes, model.centre_of_mass)
+    size = np.asarray(elimination.T.power(2).sum(axis=0)).ravel()
+    Y = elimination.gather(R) / size[:, None]
+    gap = np.abs(elimination.expand(Y) - R).max(axis=0) / np.abs(R).max(axis=0)
+    if gap.max() > 1e-8:
+        raise SolveError("The free part's unknowns do not hold its rigid motions.")
+    energy = np.einsum("ik,ik->k", R, model.K @ R)
+    terms = np.einsum("ik,i->k", R**2, model.K.diagonal())
+    return orthonormal(Y, elimination.gather(mass @ R)), float((np.abs(energy) / terms).max())
+
+
+def _solve(
+    model: SolidModel, motions: Motions, apply, mass: _Mass, modes: int, below: int, budget: Budget  # type: ignore[no-untyped-def]
+) -> tuple[Pairs, Check]:
+    """The lowest `modes` pairs, counted; `below`: rigid motions that the count finds as well."""
+    available = motions.free - motions.rows.shape[0] - below
+    if modes > available:
+        raise SolveError(f"{modes} natural frequencies are asked for and the mesh has {available} free motions.")
+    pencil = Pencil(motions.stiffness, apply, motions.precondition)
+    allowed = RESIDUAL_ALLOWED[motions.direct]
+    reason = too_large(motions)
+    guards, start = GUARDS, np.zeros((motions.free, 0))
+    note, missing = reason, 0
+    for attempt in range(3):
+        guards = min(guards, available - modes)
+        fields = start_unknowns(motions.elimination, model.mesh.nodes, modes + guards + 2, budget.seed + attempt)
+        fresh = motions.precondition(apply(fields))
+        tolerance = np.r_[np.full(modes, allowed), np.full(guards, GUARD_ALLOWED)]
+        found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance)
+        if not (found.residual.size == modes + guards and (found.residual <= tolerance).all()):
+            worst = float(found.residual[:modes].max(initial=0.0))
+            raise SolveError(
+                f"The natural frequencies do not converge: residual {worst:.1e} after {found.rounds} rounds, allowed "
+                f"{allowed:.0e}. Ask for fewer modes, or mesh the part again."
+            )
+        squares = 1.0 / found.mu
+        split = separated(squares, modes)
+        if reason:
+            break
+        if split is None and guards and attempt < 2:
+            guards, start = guards + 4, found.x
+            continue
+        above, shift = split or (modes + guards, float(squares[-1]) * (1.0 + APART))
+        missing = _count(motions, model.K, mass, shift, budget) - below - above
+        note = f"{above} at or below {np.sqrt(shift) / 2 / np.pi:.5g} Hz"
+        if missing <= 0:
+            break
+        guards, start = guards + missing + 2, found.x
+    check = Check("natural frequencies missed, by the inertia of K - omega^2 M", float(missing), 0.0, missing == 0, note)
+    if missing:
+        raise SolveError(
+            f"{abs(missing)} natural frequencies too {'many' if missing < 0 else 'few'} were found ({note}). Mesh the "
+            "part again."
+        )
+    return Pairs(found.mu[:modes], found.x[:, :modes], found.residual[:modes], found.rounds), check
+
+
+def _count(motions: Motions, K: BlockMatrix, mass: _Mass, shift: float, budget: Budget) -> int:
+    T = motions.elimination.T
+    blocks = K.blocks - shift * mass.part.blocks
+    matrix = motions.elimination.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
+    rows = (mass.remote @ T).toarray()
+    return negative_count(matrix, LowRank(rows, np.full(rows.shape[0], -shift)), motions.rows, symmetric_factor(budget))
+
+
+def _modes(
+    model: SolidModel, motions: Motions, mass: _Mass, pairs: Pairs, checks: list[Check], cutter: Cutter | None
+) -> Eigenmodes:
+    n, count = model.mesh.nodes.shape[1], pairs.mu.size
+    u = motions.elimination.expand(pairs.x / np.sqrt(pairs.mu))  # phi^T M phi = 1
+    share = _mass_shares(model, mass, u)
+    shapes = u.reshape(n, 3, count).transpose(2, 1, 0)
+    shapes = np.ascontiguousarray(shapes / np.linalg.norm(shapes, axis=1).max(axis=1)[:, None, None])
+    sections = shape_sections(model, cutter)
+    mean, turn = section_shapes(sections, model, shapes)
+    explained = section_shares(sections, model, mass.part, shapes, mean, turn)
+    modes = tuple(
+        Mode(
+            value=float(1.0 / np.sqrt(pairs.mu[k]) / (2.0 * np.pi)),
+            displacement=mean[k],
+            rotation=turn[k],
+            kind=vibration_kind(sections, mean[k], turn[k], float(explained[k])),
+            residual=float(pairs.residual[k]),
+            section_share=float(explained[k]),
+            mass_share=share[k],
+        )
+        for k in range(count)
+    )
+    worst, allowed = float(pairs.residual.max()), RESIDUAL_ALLOWED[motions.direct]
+    most = float(share.sum(axis=0).max())
+    checks = [
+        Check(
+            "natural frequencies: largest residual",
+            worst,
+            allowed,
+            worst <= allowed,
+            f"of K phi - omega^2 M phi over K phi, in the norm of the inverse stiffness; {pairs.rounds} rounds with "
+            f"the {motions.solver} solver",
+        ),
+        *checks,
+        Check("natural frequencies: most of the mass carried along a direction", most, 1.0 + 1e-6, most <= 1.0 + 1e-6),
+    ]
+    return Eigenmodes(modes, shapes, tuple(checks))
+
+
+def _mass_shares(model: SolidModel, mass: _Mass, u: Array) -> Array:
+    """(modes, 6) effective mass and moment of inertia over those of the whole, about its centre; u^T M u = 1."""
+    R = rigid_motions(model.mesh.nodes, np.zeros(3))
+    heavy = mass @ R
+    total = R.T @ heavy
+    # of the first moments m (c x .): total[0:3, 3:6] holds -[m c] x
+    centre = np.array([total[1, 5], total[2, 3], total[0, 4]]) / total[0, 0]
+    R = rigid_motions(model.mesh.nodes, centre)
+    heavy = mass @ R
+    return np.asarray((u.T @ heavy) ** 2 / np.einsum("ik,ik->k", R, heavy))
