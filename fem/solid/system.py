@@ -14,6 +14,7 @@ from fem.solid.shape import Array
 from fem.solid.solver import Choice
 from fem.solid.solver.cholesky import CholeskySolver, spring_unknowns
 from fem.solid.solver.elimination import Elimination, block_matrix
+from fem.solid.solver.multigrid import MultigridSolver
 from fem.solid.solver.gauge import bending_field, rounding_of_product
 from fem.solid.support import Constraints
 from geometry.budget import Budget
@@ -88,9 +89,10 @@ class HeldSystem:
         self._nodes = mesh.nodes
         rows = self.mean_rows.shape[0]
         springs = spring_unknowns(mesh.nodes, self.T) if rows else np.zeros(0, dtype=np.int64)
-        self.solver = CholeskySolver(
-            self.elimination.square(self.K), self.apply, self.mean_rows, springs, budget, backend
-        )
+        if choice == "multigrid":
+            self.solver = MultigridSolver(self.K, self.elimination, constraints.rows, mesh.tets, mesh.nodes, budget, backend)
+        else:
+            self.solver = CholeskySolver(self.elimination.square(self.K), self.mean_rows, springs, budget, backend)
 
     def apply(self, y: Array) -> Array:
         """T^T K T y for y (f,) or (f, k)."""

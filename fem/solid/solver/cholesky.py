@@ -7,8 +7,6 @@ complement of at most 9 + rows.
 
 from __future__ import annotations
 
-from collections.abc import Callable
-
 import numpy as np
 import scipy.sparse as sp
 from numpy.typing import NDArray
@@ -39,7 +37,16 @@ def spring_unknowns(nodes: Array, T: sp.csr_matrix) -> NDArray[np.int64]:
 
 
 class CholeskySolver:
-    """A y + C^T m = b, C y = d with the upper triangle of A (f, f), its product `apply` and mean rows C (k, f).
+    """A y + C^T m = b, C y = d with the upper triangle of A (f, f) and mean rows C (k, f).
+
+    Parameters
+    ----------
+    springs
+        (9,) unknowns that hold the part while there are mean rows; empty without.
+    single
+        Factor in single precision.
+    refinement
+        Steps of refinement with mean rows: the springs' part is large when they carry the load alone.
 
     Raises
     ------
@@ -52,22 +59,24 @@ class CholeskySolver:
     def __init__(
         self,
         upper: sp.csr_matrix,
-        apply: Callable[[Array], Array],
         mean_rows: sp.csr_matrix,
         springs: NDArray[np.int64],
         budget: Budget,
         backend: str = "auto",
         reason: str = "",
+        single: bool = False,
+        refinement: int = 2,
     ) -> None:
-        self.reason, self._apply, self._springs = reason, apply, springs
+        self.reason, self._springs, self._steps = reason, springs, 1 + refinement
         self._rows = mean_rows.shape[0]
         if self._rows:
             diagonal = upper.indptr[:-1]
             self._stiffness = float(np.median(upper.data[diagonal]))
             upper = sp.csr_matrix((upper.data.copy(), upper.indices, upper.indptr), shape=upper.shape)
             upper.data[diagonal[springs]] += self._stiffness
+            self._upper, self._diagonal = upper, upper.data[diagonal][:, None]
         try:
-            self._factor = Cholesky(upper, budget, backend, upper=True)
+            self._factor = Cholesky(upper, budget, backend, upper=True, single=single)
         except NotPositive as error:
             raise SolveError(NOT_POSITIVE) from error
         self.name = f"cholesky ({self._factor.backend})"
@@ -93,19 +102,17 @@ class CholeskySolver:
         return self.solve_bordered(rhs, np.zeros((self._rows, rhs.shape[1])))[0]
 
     def solve_bordered(self, rhs: Array, values: Array) -> tuple[Array, Array]:
-        """y (f, k) with C y = values (rows, k), and the multipliers m (rows, k).
-
-        With mean rows two steps of refinement, as the springs' part is large when they carry the load alone.
-        """
+        """y (f, k) with C y = values (rows, k), and the multipliers m (rows, k)."""
         if not self._rows:
             return self._factor.solve(rhs), np.zeros((0, rhs.shape[1]))
         k = self._rows
         target = np.zeros((self._B.shape[1], rhs.shape[1]))
         target[:k] = values / self._weight
         y, q = np.zeros_like(rhs), np.zeros_like(target)
-        for _ in range(3):
-            left = rhs - self._apply(y) - (self._B * self._sign) @ q
-            left[self._springs] -= self._stiffness * y[self._springs]
+        for step in range(self._steps):
+            left = rhs - (self._B * self._sign) @ q if step else rhs
+            if step:
+                left -= self._upper @ y + self._upper.T @ y - self._diagonal * y
             gap = self._B.T @ y - target
             gap[k:] -= q[k:] / self._stiffness
             base = self._factor.solve(left)

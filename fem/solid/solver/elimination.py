@@ -9,10 +9,10 @@ from __future__ import annotations
 
 import numpy as np
 import scipy.sparse as sp
-from numba import njit
-from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix
+from fem.solid.kernels.jit import kernel
+from fem.solid.kernels.parallel import ranges, run
 from fem.solid.shape import Array
 
 
@@ -28,6 +28,8 @@ class Elimination:
     special, basis
         (s,) nodes that are not plain, and (s, 3, 3) the columns of T that are their own (zero where there are fewer
         than three).
+    pseudo
+        (s, 3, 3) pseudo-inverse of each basis.
     rigid
         (3 n, r) the columns shared by many nodes, r of them, the last of T.
     """
@@ -64,7 +66,16 @@ class Elimination:
         part = self._part.tocoo()
         s, own_column = part.row // 3, part.col < self.own
         s, i = s[own_column], part.row[own_column] % 3
-        self.basis[s, i, part.col[own_column] - self.first[self.special[s]]] = part.data[own_column]
+        local = part.col[own_column] - self.first[self.special[s]]
+        self.basis[s, i, local] = part.data[own_column]
+        self.pseudo = np.linalg.pinv(self.basis)
+        part.data[own_column] = self.pseudo[s, local, i]
+        self._lift = part.tocsr()
+        if self.rigid.shape[1]:
+            R = self.rigid[rows].toarray()
+            inverse = sp.csr_matrix(R @ np.linalg.inv(R.T @ R))
+            self._lift = sp.hstack([self._lift[:, : self.own], inverse]).tocsr()
+        self._down = self._lift.T.tocsr()
 
     def expand(self, y: Array) -> Array:
         """T y: (f, ...) to (3 n, ...)."""
@@ -80,6 +91,20 @@ class Elimination:
         y[self.place] += f[self.kept]
         return y
 
+    def lift(self, r: Array) -> Array:
+        """T (T^T T)^-1 r: forces (3 n, ...) on the nodes whose `gather` is r (f, ...)."""
+        f = np.zeros((self.T.shape[0], *r.shape[1:]))
+        f[self.kept] = r[self.place]
+        if self._rows.size:
+            f[self._rows] = self._lift @ r
+        return f
+
+    def reduce(self, u: Array) -> Array:
+        """(T^T T)^-1 T^T u: the unknowns (f, ...) of a held motion u (3 n, ...)."""
+        y = self._down @ u[self._rows] if self._rows.size else np.zeros((self.T.shape[1], *u.shape[1:]))
+        y[self.place] += u[self.kept]
+        return y
+
     def square(self, K: BlockMatrix) -> sp.csr_matrix:
         """Upper triangle, diagonal included, of T^T K T (f, f); columns rise in each row."""
         which = np.full(self.count.size, -1, dtype=np.int32)
@@ -90,7 +115,8 @@ class Elimination:
         counts = self.count.astype(np.int32)
         extra = np.count_nonzero(shared[: self.own], axis=1)
         indptr = np.zeros(self.T.shape[1] + 1, dtype=np.int64)
-        _row_lengths(K.indptr, K.indices, self.first, counts, indptr)
+        nodes = ranges(counts.size)
+        run(lambda a, b: _row_lengths(a, b, K.indptr, K.indices, self.first, counts, indptr), nodes, K.threads)
         indptr[1 : self.own + 1] += extra
         indptr[self.own + 1 :] = np.arange(self.rigid.shape[1], 0, -1)
         np.cumsum(indptr, out=indptr)
@@ -98,9 +124,8 @@ class Elimination:
             raise MemoryError(f"{indptr[-1]} entries do not fit the solver's 32-bit indices")
         indices = np.empty(indptr[-1], dtype=np.int32)
         data = np.empty(indptr[-1])
-        _fill_rows(
-            K.indptr, K.indices, K.blocks, self.first, counts, which, self.basis, indptr, indices, data
-        )
+        of_node = (self.first, counts, which, self.basis)
+        run(lambda a, b: _fill_rows(a, b, K.indptr, K.indices, K.blocks, *of_node, indptr, indices, data), nodes, K.threads)
         for k in range(self.rigid.shape[1]):
             row = self.own + k
             indices[indptr[row] : indptr[row + 1]] = np.arange(row, self.T.shape[1])
@@ -114,16 +139,10 @@ class Elimination:
         return sp.csr_matrix((data, indices, indptr.astype(np.int32)), shape=(self.T.shape[1],) * 2)
 
 
-@njit(nogil=True, cache=True)
-def _row_lengths(
-    indptr: NDArray[np.int32],
-    indices: NDArray[np.int32],
-    first: NDArray[np.int32],
-    count: NDArray[np.int32],
-    length: NDArray[np.int64],
-) -> None:
+@kernel
+def _row_lengths(begin, end, indptr, indices, first, count, length):  # type: ignore[no-untyped-def]
     """Entries of row r of the upper triangle, in length[r + 1]."""
-    for i in range(indptr.size - 1):
+    for i in range(begin, end):
         right = 0
         for k in range(indptr[i] + 1, indptr[i + 1]):
             right += count[indices[k]]
@@ -131,23 +150,14 @@ def _row_lengths(
             length[first[i] + a + 1] = right + count[i] - a
 
 
-@njit(nogil=True, cache=True)
-def _fill_rows(
-    indptr: NDArray[np.int32],
-    indices: NDArray[np.int32],
-    blocks: Array,
-    first: NDArray[np.int32],
-    count: NDArray[np.int32],
-    which: NDArray[np.int32],
-    basis: Array,
-    starts: NDArray[np.int64],
-    columns: NDArray[np.int32],
-    data: Array,
-) -> None:
+@kernel
+def _fill_rows(  # type: ignore[no-untyped-def]
+    begin, end, indptr, indices, blocks, first, count, which, basis, starts, columns, data
+):
     """Q_i^T K_ij Q_j of every block, Q_i the basis of node i (the identity where which[i] is -1)."""
     B = np.empty((3, 3))
     C = np.empty((3, 3))
-    for i in range(indptr.size - 1):
+    for i in range(begin, end):
         if count[i] == 0:
             continue
         done = 0  # entries before this block in the rows of i, counted in row 0
@@ -164,25 +174,25 @@ def _fill_rows(
                         C[a, b] = 0.0
                         for c in range(3):
                             C[a, b] += basis[which[i], c, a] * B[c, b]
-                B[:] = C
+                B[:, :] = C
             if which[j] >= 0:
                 for a in range(3):
                     for b in range(3):
                         C[a, b] = 0.0
                         for c in range(3):
                             C[a, b] += B[a, c] * basis[which[j], c, b]
-                B[:] = C
+                B[:, :] = C
             for a in range(count[i]):
-                begin = starts[first[i] + a] + done
+                at = starts[first[i] + a] + done
                 if i == j:
                     for b in range(a, count[i]):
-                        columns[begin + b - a] = first[j] + b
-                        data[begin + b - a] = B[a, b]
+                        columns[at + b - a] = first[j] + b
+                        data[at + b - a] = B[a, b]
                 else:
-                    begin -= a  # the row of the a-th unknown has a entries fewer in the diagonal block
+                    at -= a  # the row of the a-th unknown has a entries fewer in the diagonal block
                     for b in range(count[j]):
-                        columns[begin + b] = first[j] + b
-                        data[begin + b] = B[a, b]
+                        columns[at + b] = first[j] + b
+                        data[at + b] = B[a, b]
             done += count[j]
 
 

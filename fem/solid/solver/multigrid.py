@@ -1,0 +1,151 @@
+"""The iterative solver: conjugate gradients with two levels, quadratic and linear displacements, as preconditioner.
+
+The quadratic level is smoothed in single precision, the linear level solved directly: what is left of a smooth motion
+after smoothing is nearly linear in each element, whatever the size of the elements, so that the number of iterations
+does not grow with the mesh (p-multigrid; E. M. Ronquist, A. T. Patera, J. Sci. Comput. 2 (1987) 389).
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+import scipy.sparse as sp
+from numpy.typing import NDArray
+
+from fem.solid.block_matrix import BlockMatrix
+from fem.solid.shape import Array
+from fem.solid.solver.cholesky import CholeskySolver, spring_unknowns
+from fem.solid.solver.conjugate import MeanRows, conjugate_gradients
+from fem.solid.solver.elimination import Elimination
+from fem.solid.solver.smoother import BlockJacobi
+from fem.solid.solver.transfer import Transfer
+from geometry.budget import Budget
+
+DEGREE = 2
+TOLERANCE = 1e-6
+"""Of the error in the norm of the energy, as it was two iterations before the last: what remains is about a tenth."""
+
+
+class MultigridSolver:
+    """K u + C^T m = f on the held motions u = T y, C u = d.
+
+    Parameters
+    ----------
+    K
+        Stiffness on all nodes.
+    held
+        The elimination T.
+    mean_rows
+        C (rows, 3 n) on all nodes.
+    tets, nodes
+        (10, m), and (3, n) mm.
+    """
+
+    name = "multigrid"
+
+    def __init__(
+        self,
+        K: BlockMatrix,
+        held: Elimination,
+        mean_rows: sp.csr_matrix,
+        tets: NDArray[np.int64],
+        nodes: Array,
+        budget: Budget,
+        backend: str = "auto",
+        reason: str = "",
+    ) -> None:
+        self.reason, self.iterations = reason, 0
+        self._K, self._held, self._threads = K, held, budget.threads
+        self._transfer = transfer = Transfer(tets, held, budget.threads)
+        self._single = K.single()
+        self._jacobi = BlockJacobi(K, held, budget.threads)
+        self._bound = self._jacobi.largest(self._single, budget.seed)
+        count = mean_rows.shape[0]
+        coarse = transfer.galerkin(K)
+        coarse_rows = sp.csr_matrix((count, transfer.coarse.T.shape[1]))
+        springs = np.zeros(0, dtype=np.int64)
+        if count:
+            coarse_rows = sp.csr_matrix(np.vstack([transfer.restrict(row.T.toarray()).T for row in mean_rows]))
+            springs = spring_unknowns(nodes[:, transfer.corners], transfer.coarse.T)
+        self._coarse = CholeskySolver(
+            transfer.coarse.square(coarse), coarse_rows, springs, budget, backend, single=not count, refinement=0
+        )
+        self._buffers: dict[int, list[NDArray[np.float32]]] = {}
+        self._rows: MeanRows | None = None
+        if count:
+            C = mean_rows.toarray()
+            W = np.empty_like(C.T)
+            self._cycle(np.ascontiguousarray(C.T), W)
+            self._rows = MeanRows(C, W, np.linalg.inv(C @ W))
+
+    def solve(self, rhs: Array) -> Array:
+        """(f, k) solutions with C y = 0."""
+        count = self._rows.C.shape[0] if self._rows else 0
+        return self.solve_bordered(rhs, np.zeros((count, rhs.shape[1])))[0]
+
+    def solve_bordered(self, rhs: Array, values: Array) -> tuple[Array, Array]:
+        """y (f, k) with C y = values (rows, k), and the multipliers m (rows, k). Raises `Stalled`."""
+        start = None
+        if values.any():
+            nothing = np.zeros((self._transfer.coarse.T.shape[1], rhs.shape[1]))
+            start = np.zeros((self._K.shape[0], rhs.shape[1]))
+            self._transfer.prolong(self._coarse.solve_bordered(nothing, values)[0], start)
+        loads = self._held.lift(rhs)
+        found = conjugate_gradients(
+            self._product, self._cycle, loads, start, self._rows, TOLERANCE, self._threads
+        )
+        self.iterations = found.iterations
+        return self._held.reduce(found.u), found.multipliers
+
+    def precondition(self, residual: Array) -> Array:
+        """(f, k): one cycle, with mean rows its projection onto C y = 0."""
+        r = self._held.lift(residual)
+        z = np.empty_like(r)
+        self._cycle(r, z)
+        if self._rows:
+            z -= self._rows.W @ (self._rows.inverse @ (self._rows.C @ z))
+        return self._held.reduce(z)
+
+    def close(self) -> None:
+        """Give memory back."""
+        self._coarse.close()
+        self._buffers.clear()
+
+    def _product(self, x: Array, out: Array) -> None:
+        if x.shape[1] == 1:
+            self._K.product(x[:, 0], out[:, 0], self._threads)
+        else:
+            self._K.product(x, out, self._threads)
+
+    def _single_product(self, x: NDArray[np.float32], out: NDArray[np.float32]) -> None:
+        if x.shape[1] == 1:
+            self._single.product(x[:, 0], out[:, 0], self._threads)
+        else:
+            self._single.product(x, out, self._threads)
+
+    def _cycle(self, residual: Array, out: Array) -> None:
+        """out = M residual: smooth, correct on the linear level, smooth. Symmetric, as both smoothings are alike."""
+        columns = residual.shape[1]
+        if columns not in self._buffers:
+            self._buffers = {columns: [np.empty(residual.shape, np.float32) for _ in range(4)]}
+        r, z, d, w = self._buffers[columns]
+        scale = np.abs(residual).max(axis=0)
+        scale = np.where(scale > 0, scale, 1.0)
+        r[:] = residual / scale
+        z[:] = 0
+        self._smooth(r, z, d, w, first=True)
+        self._single_product(z, w)
+        np.subtract(r, w, out=w)
+        self._transfer.prolong(self._coarse.solve(self._transfer.restrict(w)), z)
+        self._smooth(r, z, d, w, first=False)
+        np.multiply(z, scale, out=out)
+
+    def _smooth(self, r: Any, z: Any, d: Any, w: Any, first: bool) -> None:
+        for k in range(1, DEGREE + 1):
+            fresh = first and k == 1
+            if not fresh:
+                self._single_product(z, w)
+            old = (2 * k - 3) / (2 * k + 1) if k > 1 else 0.0
+            new = (8 * k - 4) / ((2 * k + 1) * self._bound)
+            self._jacobi.step(r, None if fresh else w, d, z, old, new)
