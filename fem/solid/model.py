@@ -8,6 +8,7 @@ import numpy as np
 import scipy.sparse as sp
 from scipy.sparse.csgraph import connected_components
 
+from fem.solid.block_matrix import BlockMatrix
 from fem.solid.load import SolidLoad, solid_loads, surface_vector
 from fem.solid.shape import Array, tet_values
 from fem.solid.stiffness import ElementGroup, element_forces, element_groups, lame, stiffness_matrix
@@ -35,7 +36,7 @@ class SolidModel:
     part: Part
     mesh: NamedMesh
     groups: list[ElementGroup]
-    K: sp.csr_matrix
+    K: BlockMatrix
     constraints: Constraints
     loads: dict[str, SolidLoad]
     load_vectors: Array
@@ -97,12 +98,12 @@ def thermal_vector(mesh: NamedMesh, groups: list[ElementGroup], E: float, nu: fl
     return f
 
 
-def build_model(part: Part, mesh: NamedMesh) -> SolidModel:
+def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
     """Assemble stiffness, constraints and load vectors."""
     check_mesh(mesh)
     material = part.material
     groups = element_groups(mesh.nodes, mesh.tets)
-    K = stiffness_matrix(mesh.tets, mesh.nodes.shape[1], groups, material.E, material.nu)
+    K = stiffness_matrix(mesh.nodes, mesh.tets, groups, material.E, material.nu, threads)
     constraints = build_constraints(part, mesh)
     loads = solid_loads(part, mesh)
     shares, volume, first = mass_vector(mesh, groups)

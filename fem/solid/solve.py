@@ -67,7 +67,7 @@ def solve_solid(
             progress(name)
 
     stage("assemble")
-    model = build_model(part, mesh)
+    model = build_model(part, mesh, budget.threads)
     cases = tuple(case.name for case in part.cases)
     stage("factor and solve")
     n = mesh.nodes.shape[1]

@@ -11,26 +11,29 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-import scipy.sparse as sp
 from numpy.typing import NDArray
 
+from fem.solid.block_matrix import BlockMatrix
+from fem.solid.kernels.elastic import add_curved, straight_blocks
+from fem.solid.kernels.pattern import incidence, upper_pattern
 from fem.solid.shape import Array, curved_tets, inverse, tet_gradients, tet_quadrature
 from geometry.problem import SolveError
 
 CURVED_ORDER = 4
 STRAIGHT_ORDER = 2
-_CHUNK = 8192
 
 
 @dataclass(frozen=True, slots=True)
 class ElementGroup:
-    """Elements integrated with one rule.
+    """Elements integrated with one rule: barycentric points (4, q) and weights (q,) that sum to 1/6.
 
     elements (m',), gradients (m', 30, q) with row 3 a + i, weights (m', q) in mm^3.
     """
 
     elements: NDArray[np.int64]
     points: Array
+    rule: Array
+    curved: bool
     gradients: Array
     weights: Array
 
@@ -69,78 +72,42 @@ def element_groups(nodes: Array, tets: NDArray[np.int64]) -> list[ElementGroup]:
     """Straight and curved elements with their gradients and weights."""
     curved = curved_tets(nodes, tets)
     groups = []
-    for which, order in ((~curved, STRAIGHT_ORDER), (curved, CURVED_ORDER)):
-        elements = np.flatnonzero(which)
+    for bent, order in ((False, STRAIGHT_ORDER), (True, CURVED_ORDER)):
+        elements = np.flatnonzero(curved == bent)
         if elements.size:
             L, w = tet_quadrature(order)
             gradients, det = element_gradients(nodes, tets[:, elements], L)
-            groups.append(ElementGroup(elements, L, gradients, det * w))
+            groups.append(ElementGroup(elements, L, w, bent, gradients, det * w))
     return groups
 
 
-class NodePattern:
-    """Block sparsity pattern of the nodes: where the 3 x 3 block of each pair of an element's nodes is added."""
-
-    def __init__(self, tets: NDArray[np.int64], node_count: int) -> None:
-        rows = np.repeat(tets, 10, axis=0).T
-        columns = np.tile(tets, (10, 1)).T
-        keys = (rows * node_count + columns).ravel()
-        unique, self.slots = np.unique(keys, return_inverse=True)
-        self.indices = (unique % node_count).astype(np.int32)
-        counts = np.bincount(unique // node_count, minlength=node_count)
-        self.indptr = np.concatenate([[0], np.cumsum(counts)]).astype(np.int32)
-        self.node_count = node_count
-
-    def assemble(self, element_matrices: Array, elements: NDArray[np.int64]) -> Array:
-        """(blocks, 3, 3) sums of element matrices (3, 3, m', 10, 10) of `elements`."""
-        slots = self.slots.reshape(-1, 100)[elements].ravel()
-        blocks = np.empty((self.indices.size, 3, 3))
-        for i in range(3):
-            for j in range(3):
-                values = element_matrices[i, j].ravel()
-                blocks[:, i, j] = np.bincount(slots, weights=values, minlength=self.indices.size)
-        return blocks
-
-    def matrix(self, blocks: Array) -> sp.csr_matrix:
-        """(3 n, 3 n) matrix, unknown 3 node + direction."""
-        size = 3 * self.node_count
-        return sp.bsr_matrix((blocks, self.indices, self.indptr), shape=(size, size)).tocsr()
-
-
-def element_stiffness(gradients: Array, weights: Array, E: float, nu: float) -> Array:
-    """(3, 3, m, 10, 10) element matrices, N/mm: directions first, then element and its two nodes."""
-    lam, mu = lame(E, nu)
-    m, _, q = gradients.shape
-    g = np.ascontiguousarray(gradients.reshape(m, 10, 3, q).transpose(2, 0, 1, 3))  # (3, m, 10, q)
-    weighted = g * weights[:, None, :]
-    K = np.empty((3, 3, m, 10, 10))
-    trace = np.zeros((m, 10, 10))
-    for i in range(3):
-        P = np.matmul(weighted[i], g[i].transpose(0, 2, 1))
-        trace += P
-        np.multiply(P, lam + mu, out=K[i, i])
-        for j in range(i):
-            P = np.matmul(weighted[i], g[j].transpose(0, 2, 1))
-            K[i, j] = lam * P + mu * P.transpose(0, 2, 1)
-            K[j, i] = K[i, j].transpose(0, 2, 1)
-    trace *= mu
-    for i in range(3):
-        K[i, i] += trace
-    return K
-
-
 def stiffness_matrix(
-    tets: NDArray[np.int64], node_count: int, groups: list[ElementGroup], E: float, nu: float
-) -> sp.csr_matrix:
-    """Stiffness matrix (3 n, 3 n), N/mm, unknown 3 node + direction."""
-    pattern = NodePattern(tets, node_count)
-    blocks = np.zeros((pattern.indices.size, 3, 3))
+    nodes: Array,
+    tets: NDArray[np.int64],
+    groups: list[ElementGroup],
+    E: float,
+    nu: float,
+    threads: int = 1,
+) -> BlockMatrix:
+    """Stiffness matrix (3 n, 3 n), N/mm, of nodes (3, n) and tets (10, m), unknown 3 node + direction.
+
+    Straight elements are exact, curved ones integrated with the rule of their group.
+    """
+    lam, mu = lame(E, nu)
+    points = np.ascontiguousarray(nodes.T)
+    elements = np.ascontiguousarray(tets.T, dtype=np.int32)
+    incident = incidence(elements, points.shape[0])
+    pattern = upper_pattern(elements, *incident, threads)
+    curved = np.zeros(elements.shape[0], dtype=np.bool_)
     for group in groups:
-        for start in range(0, group.elements.size, _CHUNK):
-            part = slice(start, start + _CHUNK)
-            K = element_stiffness(group.gradients[part], group.weights[part], E, nu)
-            blocks += pattern.assemble(K, group.elements[part])
-    return pattern.matrix(blocks)
+        curved[group.elements] = group.curved
+    blocks = straight_blocks(points, elements, curved, incident, pattern, lam, mu, threads)
+    for group in groups:
+        if group.curved:
+            slopes = np.ascontiguousarray(tet_gradients(group.points).transpose(2, 0, 1))
+            which = group.elements.astype(np.int32)
+            add_curved(blocks, points, elements, which, (slopes, group.rule), pattern, lam, mu, threads)
+    return BlockMatrix(*pattern, blocks, threads)
 
 
 def stresses(gradients: Array, displacements: Array, E: float, nu: float, thermal_strain: Array) -> Array:
