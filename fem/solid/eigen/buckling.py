@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from fem.mode import Mode
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.cut import Cutter
-from fem.solid.eigen.count import LowRank, negative_count, separated, symmetric_factor, too_large
+from fem.solid.eigen.count import LowRank, negative_count, separated, too_large
 from fem.solid.eigen.describe import buckling_kind, section_shapes, section_shares, shape_sections
 from fem.solid.eigen.local import geometric_stiffness, mass_matrix
 from fem.solid.eigen.motions import Motions, Operator, held_motions
@@ -281,7 +281,10 @@ class _Study:
                 return None
             split = reported, float(values[reported - 1])
         above, shift = split
-        count = self._count(sign * shift)
+        try:
+            count = self._count(sign * shift)
+        except SolveError as error:
+            return 0, f"not counted: {error}"
         return count - above, f"{count} between 0 and {sign * shift:.5g}"
 
     def _count(self, shift: float) -> int:
@@ -297,7 +300,7 @@ class _Study:
         matrix = eliminate.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
         rows = (sp.vstack(levers) @ eliminate.T).toarray()
         low = LowRank(rows, np.concatenate(weights))
-        return negative_count(matrix, low, self.motions.rows, symmetric_factor(self.budget))
+        return negative_count(matrix, low, self.motions.rows, self.budget)
 
     def _with_other_sign(self, pencil: Pencil, B: Operator, pairs: Pairs) -> Pairs:
         """The pairs and, where all have one sign, the first of the other one if it is found."""

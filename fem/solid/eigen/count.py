@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
 import scipy.sparse as sp
 
 from fem.solid.eigen.motions import Motions
+from fem.solid.factor import SymmetricFactor
 from fem.solid.shape import Array
 from geometry.budget import Budget
 
@@ -29,25 +29,32 @@ class LowRank:
     weight: Array
 
 
-def negative_count(
-    matrix: sp.csr_matrix, low: LowRank, rows: Array, factor: Callable[[sp.csr_matrix], tuple[int, Callable[[Array], Array]]]
-) -> int:
-    """Number of negative directions of matrix + low rank on the motions with rows y = 0.
+def negative_count(upper: sp.csr_matrix, low: LowRank, rows: Array, budget: Budget) -> int:
+    """Number of negative directions of a matrix + low rank on the motions with rows y = 0.
+
+    `upper` is the upper triangle (f, f) of the matrix.
 
     The low-rank part and the rows stand as a border: matrix - B^T D^-1 B is what elimination of the border leaves, with
     D = -1 / weight for the low-rank part; the rows have D = 0, and each of them makes one negative and one positive
     pivot of its own. Inertias of a factor and of its Schur complement add up (E. V. Haynsworth, Linear Algebra Appl. 1
     (1968) 73).
+
+    Raises
+    ------
+    SolveError
+        When the factor does not fit the memory of the budget, or the matrix is singular.
     """
-    negative, solve = factor(matrix)
-    kept = low.weight != 0
-    border = np.vstack([low.rows[kept], rows])
-    if not border.shape[0]:
-        return negative
-    D = np.r_[-1.0 / low.weight[kept], np.zeros(rows.shape[0])]
-    size = np.r_[np.sqrt(np.abs(D[: kept.sum()])), np.linalg.norm(rows, axis=1)]
-    border, D = border / size[:, None], D / size**2
-    S = np.diag(D) - border @ solve(border.T)
+    factor = SymmetricFactor(upper, budget, upper=True)
+    try:
+        negative = factor.negative
+        kept = low.weight != 0
+        border = np.vstack([low.rows[kept], rows])
+        if not border.shape[0]:
+            return negative
+        D = np.r_[-1.0 / low.weight[kept], np.zeros(rows.shape[0])]
+        S = np.diag(D) - border @ factor.solve(border.T)
+    finally:
+        factor.close()
     scale = 1.0 / np.sqrt(np.maximum(np.abs(np.diag(S)), 1e-300))
     S = S * scale * scale[:, None]
     return negative + int((np.linalg.eigvalsh((S + S.T) / 2) < 0).sum()) - rows.shape[0] - int((D < 0).sum())
@@ -71,14 +78,3 @@ def too_large(motions: Motions) -> str:
     if motions.direct or motions.free <= COUNT_LIMIT:
         return ""
     return f"not counted: {motions.free} unknowns are too many for a factor beside the {motions.solver} solver"
-
-
-def symmetric_factor(budget: Budget) -> Callable[[sp.csr_matrix], tuple[int, Callable[[Array], Array]]]:
-    from fem.solid.eigen.local import SymmetricFactor
-
-    def factor(matrix: sp.csr_matrix) -> tuple[int, Callable[[Array], Array]]:
-        made = SymmetricFactor(matrix, budget)
-        return made.negative, made.solve
-
-    return factor
-

@@ -51,7 +51,7 @@ def shape_sections(model: SolidModel, cutter: Cutter | None = None) -> ShapeSect
 
 def section_shapes(sections: ShapeSections, model: SolidModel, u: Array) -> tuple[Array, Array]:
     """Mean displacement and rotation (modes, s, 3), global, of shapes u (modes, 3, n)."""
-    means = [section_means(cut, u, model.mesh.tets, sections.frame) for cut in sections.cuts]
+    means = [section_means(cut, u, sections.frame) for cut in sections.cuts]
     return np.array([m[0] for m in means]).transpose(1, 0, 2), np.array([m[1] for m in means]).transpose(1, 0, 2)
 
 

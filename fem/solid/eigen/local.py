@@ -1,15 +1,13 @@
-"""Mass, geometric stiffness and a symmetric factor: until the model's own come."""
+"""Mass and geometric stiffness: until the model's own come."""
 
 from __future__ import annotations
 
 import numpy as np
-import scipy.sparse as sp
 
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.model import SolidModel
 from fem.solid.shape import Array, tet_quadrature, tet_values
 from fem.solid.stiffness import element_gradients
-from geometry.budget import Budget
 
 
 def mass_matrix(model: SolidModel) -> BlockMatrix:
@@ -45,21 +43,3 @@ def _isotropic(model: SolidModel, values: list[Array]) -> BlockMatrix:
         slot = np.searchsorted(keys, a[up] * n + b[up])
         total += np.bincount(slot, weights=v[up], minlength=keys.size)
     return BlockMatrix(K.indptr, K.indices, total[:, None, None] * np.eye(3), K.threads)
-
-
-class SymmetricFactor:
-    def __init__(self, matrix: sp.csr_matrix, budget: Budget, upper: bool = False) -> None:
-        from pypardiso import PyPardisoSolver
-
-        self.upper = sp.triu(matrix).tocsr()
-        self.upper.sort_indices()
-        self.solver = PyPardisoSolver(mtype=-2, size_limit_storage=0)
-        self.solver.iparm[0], self.solver.iparm[1], self.solver.iparm[20] = 1, 2, 1
-        self.solver.iparm[7] = 2
-        self.solver.set_phase(12)
-        self.solver._call_pardiso(self.upper, np.zeros((matrix.shape[0], 1), order="F"))
-        self.negative = int(self.solver.iparm[22])
-
-    def solve(self, rhs: Array) -> Array:
-        self.solver.set_phase(33)
-        return np.asarray(self.solver._call_pardiso(self.upper, np.asfortranarray(rhs))).reshape(rhs.shape)

@@ -91,7 +91,7 @@ def extreme_pairs(
     wanted = tolerance.size
     keep = max(2 * wanted, start.shape[1])
     room = max(room, keep + 2 * wanted)
-    space = _Space(pencil)
+    space, rng = _Space(pencil), np.random.default_rng(0)
     space.add(start)
     residual = np.full(wanted, np.inf)
     mu = np.zeros(0)
@@ -111,7 +111,10 @@ def extreme_pairs(
         if space.size + int(open_.sum()) > room:
             kept = np.union1d(largest(values, keep), chosen)
             space.rotate(S[:, kept])
-        if not space.add(new[:, open_] / np.where(size[open_] > 0, size[open_], 1.0)):
+        new = new[:, open_] / np.where(size[open_] > 0, size[open_], 1.0)
+        if chosen.size < wanted:  # B takes the start to fewer directions than are wanted
+            new = np.hstack([new, pencil.precondition(rng.standard_normal((x.shape[0], wanted - chosen.size)))])
+        if not space.add(new):
             break
     return Pairs(mu, x, residual, done)
 

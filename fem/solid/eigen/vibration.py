@@ -10,7 +10,7 @@ import scipy.sparse as sp
 from fem.mode import Mode
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.cut import Cutter
-from fem.solid.eigen.count import APART, LowRank, negative_count, separated, symmetric_factor, too_large
+from fem.solid.eigen.count import APART, LowRank, negative_count, separated, too_large
 from fem.solid.eigen.describe import section_shapes, section_shares, shape_sections, vibration_kind
 from fem.solid.eigen.local import mass_matrix
 from fem.solid.eigen.motions import Motions, free_motions, free_part_constraints, held_motions
@@ -148,7 +148,11 @@ def _solve(
             guards, start = guards + 4, found.x
             continue
         above, shift = split or (modes + guards, float(squares[-1]) * (1.0 + APART))
-        missing = _count(motions, model.K, mass, shift, budget) - below - above
+        try:
+            missing = _count(motions, model.K, mass, shift, budget) - below - above
+        except SolveError as error:
+            missing, note = 0, f"not counted: {error}"
+            break
         note = f"{above} at or below {np.sqrt(shift) / 2 / np.pi:.5g} Hz"
         if missing <= 0:
             break
@@ -167,7 +171,7 @@ def _count(motions: Motions, K: BlockMatrix, mass: _Mass, shift: float, budget: 
     blocks = K.blocks - shift * mass.part.blocks
     matrix = motions.elimination.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
     rows = (mass.remote @ T).toarray()
-    return negative_count(matrix, LowRank(rows, np.full(rows.shape[0], -shift)), motions.rows, symmetric_factor(budget))
+    return negative_count(matrix, LowRank(rows, np.full(rows.shape[0], -shift)), motions.rows, budget)
 
 
 def _modes(
