@@ -24,6 +24,7 @@ from fem.beam.regions import (
     rigid_rows,
     wrench,
 )
+from fem.beam.strip_load import strip_forces
 from geometry.part import (
     BearingLoad,
     BodyLoad,
@@ -32,6 +33,7 @@ from geometry.part import (
     Pressure,
     RegionLoad,
     RemotePoint,
+    StripLoad,
     Support,
     TemperatureLoad,
 )
@@ -114,6 +116,9 @@ class Actions:
                 self._on_region(zero, load.on, R @ load.force, np.zeros(3), False)
             case LineLoad():
                 self._line_load(zero, load)
+            case StripLoad():
+                lengths, c = strip_forces(self.mesh, load)
+                zero.lengths[lengths] += c
             case BodyLoad():
                 zero.lengths += self.weight(R @ load.force_per_mass)
                 for point in self.mesh.part.loads:
@@ -211,6 +216,12 @@ class Actions:
     def _direction(self, support: Support, letter: str) -> Array:
         d = np.eye(3)[DIRECTIONS.index(letter)]
         return d if support.axes == "member" else np.asarray(self.mesh.axes @ d)
+
+    def motion_rows(self, name: str, rigid: bool) -> Array:
+        """(6, n_freedoms) displacement of a region's centroid and rotation, member axes, as one body or on average."""
+        region = self.region(name)
+        return np.array([self._rigid_row(name, region, d, turning) if rigid else self._average_row(name, d, turning)
+                         for turning in (False, True) for d in np.eye(3)])
 
     def _rigid_row(self, name: str, region: Region, d: Array, turning: bool) -> Array:
         vector = np.zeros(self.freedoms)

@@ -12,40 +12,50 @@ Each cause is computed by solving the beam once more with the assumption changed
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterator
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
+from fem.beam.figures import LineValues
 from fem.beam.mesh import BeamMesh
 from fem.beam.result import Cause
-from fem.figure import Figure, FigureKey
 from geometry.part import Part, RegionLoad, RemotePoint
 from geometry.problem import SolveError
 
-QUANTITIES = ("displacement", "rotation", "strain_energy", "reaction_force", "reaction_moment", "section_force",
-              "section_moment")
+Array = NDArray[np.float64]
 LEAST = 1e-3
 """Smallest difference worth naming, as a share of the largest value of that quantity in the case."""
 
-Solver = Callable[[BeamMesh], Sequence[Figure]]
+Solver = Callable[[BeamMesh], LineValues]
 
 
-def find_causes(mesh: BeamMesh, figures: Sequence[Figure], solve: Solver) -> tuple[Cause, ...]:
-    """Causes of honest differences; `solve` gives the figures of a changed model."""
-    base = {f.key: f.value for f in figures if f.key.quantity in QUANTITIES}
-    scale: dict[tuple[str, str], float] = {}
-    for key, value in base.items():
-        group = (key.case, key.quantity)
-        scale[group] = max(scale.get(group, 0.0), abs(value))
+def find_causes(mesh: BeamMesh, base: LineValues, solve: Solver) -> tuple[Cause, ...]:
+    """Causes of honest differences from `base`; `solve` gives the same values of a changed model."""
+    scale = _scales(base)
     found: list[Cause] = []
     for text, changed, share, open_share in _variants(mesh):
         try:
-            other = {f.key: f.value for f in solve(changed)}
+            other = solve(changed)
         except SolveError:
             continue  # without this assumption the part is not held: nothing to compare with
-        found += _differences(text, base, other, scale, share, open_share)
+        change = other.values - base.values
+        for row, case in np.argwhere((np.abs(change) > LEAST * scale) & np.isfinite(change)):
+            key, by = base.keys[row], float(change[row, case])
+            found.append(Cause(mesh.part.cases[case].name, key.place, key.quantity, key.component, text, share * by,
+                               open_share * abs(by)))
     return tuple(found)
+
+
+def _scales(line: LineValues) -> Array:
+    """(k, cases) largest value of each figure's quantity in each case."""
+    size = np.abs(line.values)
+    quantity = np.array([key.quantity for key in line.keys])
+    scale = np.zeros_like(size)
+    for name in np.unique(quantity):
+        scale[quantity == name] = size[quantity == name].max(axis=0)
+    return scale
 
 
 def _variants(mesh: BeamMesh) -> Iterator[tuple[str, BeamMesh, float, float]]:
@@ -72,12 +82,3 @@ def _not_rigid(part: Part) -> Part | None:
     loads = tuple(replace(v, coupling="average") if isinstance(v, RegionLoad | RemotePoint) and soft(v.on, v.coupling)
                   else v for v in part.loads)
     return None if supports == part.supports and loads == part.loads else replace(part, supports=supports, loads=loads)
-
-
-def _differences(text: str, base: dict[FigureKey, float], other: dict[FigureKey, float],
-                 scale: dict[tuple[str, str], float], share: float, open_share: float) -> Iterator[Cause]:
-    for key, value in base.items():
-        change = other.get(key, value) - value
-        if abs(change) > LEAST * scale[key.case, key.quantity] and np.isfinite(change):
-            yield Cause(key.case, key.place, key.quantity, key.component, text, share * change,
-                        open_share * abs(change))

@@ -150,7 +150,8 @@ def _groups(line: Line) -> Iterator[tuple[NDArray[np.int64], int, Array, Array]]
     for flag, n in ((False, 6), (True, 7)):
         which = np.flatnonzero(line.warping == flag)
         if len(which):
-            yield which, n, np.stack([line.half[e][0] for e in which]), np.stack([line.half[e][1] for e in which])
+            first, second = (np.stack([line.half[int(e)][k] for e in which]) for k in (0, 1))
+            yield which, n, first, second
 
 
 def present(line: Line) -> NDArray[np.bool_]:
@@ -196,9 +197,9 @@ def _recover(line: Line, freedoms: Array, unknown: Array, start_f: NDArray[np.in
         entries = np.arange(n)
         d, f = freedoms[7 * which[:, None] + entries], unknown[start_f[which][:, None] + entries]
         s = np.concatenate([d, f, loads[which]], axis=1)
-        for k, half in enumerate((None, first, second)):
-            if half is not None:
-                s = half @ s
+        states = [s, first @ s]
+        states.append(second @ states[1])
+        for k, s in enumerate(states):
             out[k][which, :n], out[k][which, 7:7 + n] = s[:, :n], s[:, n:2 * n]
     return out
 

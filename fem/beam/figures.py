@@ -4,18 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from typing import Literal, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
 from fem.beam.actions import Actions
 from fem.beam.equations import Row, States
-from fem.beam.law import section_flexibility, torque_row
+from fem.beam.law import LineProperties, section_flexibility, torque_row
 from fem.beam.mesh import BeamMesh
 from fem.beam.outlines import dims_at
 from fem.beam.result import Diagram
 from fem.beam.section import OutlineIntegrals, outline_integrals
-from fem.figure import Figure, FigureKey, station_place
+from fem.figure import Figure, FigureKey, Quantity, station_place
 
 Array = NDArray[np.float64]
 XYZ = ("x", "y", "z")
@@ -40,27 +41,49 @@ def station_values(mesh: BeamMesh) -> Array:
     return np.arange(STATIONS + 1) * mesh.length / STATIONS
 
 
-def line_figures(s: Solved) -> list[Figure]:
+class LineKey(NamedTuple):
+    """What one row of `LineValues` is: a `FigureKey` without its case, and the unit."""
+
+    place: str
+    quantity: Quantity
+    component: str
+    axes: Literal["global", "member"]
+    unit: str
+
+
+@dataclass(frozen=True, slots=True)
+class LineValues:
+    """Displacements, reactions, section forces and strain energy: `keys` (k,) and `values` (k, cases)."""
+
+    keys: tuple[LineKey, ...]
+    values: Array
+
+
+def line_values(s: Solved) -> LineValues:
     """Displacements, reactions, section forces and strain energy of all cases."""
-    figures: list[Figure] = []
-    energy = energies(s).sum(axis=0)
-    for k, case in enumerate(s.mesh.part.cases):
-        figures += _displacements(s, k, case.name)
-        figures += _reactions(s, k, case.name)
-        figures += _section_forces(s, k, case.name)
-        figures.append(Figure(FigureKey(case.name, "", "strain_energy", ""), float(energy[k]), "N mm"))
-    return figures
+    blocks = [*_displacements(s), *_reactions(s), *_section_forces(s)]
+    blocks.append(([LineKey("", "strain_energy", "", "global", "N mm")], energies(s).sum(axis=0)[None]))
+    return LineValues(tuple(key for keys, _ in blocks for key in keys), np.vstack([values for _, values in blocks]))
 
 
-def all_figures(s: Solved) -> tuple[list[Figure], list[str]]:
-    """Every figure of the beam model, and notes on those that it withholds."""
+def line_figures(s: Solved) -> list[Figure]:
+    """`line_values` as figures, case by case."""
+    return as_figures(s, line_values(s))
+
+
+def as_figures(s: Solved, line: LineValues) -> list[Figure]:
+    """Figures, case by case."""
+    return [Figure(FigureKey(case.name, key.place, key.quantity, key.component, key.axes), value, key.unit)
+            for case, column in zip(s.mesh.part.cases, line.values.T.tolist(), strict=True)
+            for key, value in zip(line.keys, column, strict=True)]
+
+
+def all_figures(s: Solved, line: LineValues) -> tuple[list[Figure], list[str]]:
+    """Every figure of the beam model (`line`: those of `line_values`), and notes on those that it withholds."""
     from fem.beam.notches import notch_figures
     from fem.beam.stress import nominal_stresses
 
-    figures = line_figures(s)
-    for k, case in enumerate(s.mesh.part.cases):
-        figures += nominal_stresses(s, k, case.name)
-    figures += _mass(s.mesh)
+    figures = [*as_figures(s, line), *nominal_stresses(s), *_mass(s.mesh)]
     notched, notes = notch_figures(s)
     return figures + notched, notes
 
@@ -77,67 +100,81 @@ def places(mesh: BeamMesh) -> Iterator[tuple[str, float]]:
         yield station_place(name, float(x)), float(x)
 
 
-def forces_at(s: Solved, x: float, case: int) -> Array:
-    """(7,) N, Vy, Vz, T, My, Mz, B at `x`; at an inner jump the mean of both sides."""
+def forces_at(s: Solved, x: float) -> Array:
+    """(7, cases) N, Vy, Vz, T, My, Mz, B at `x`; at an inner jump the mean of both sides."""
     k = s.mesh.node(x)
     m = len(s.mesh.x) - 1
     sides = []
     if k > 0:
-        sides.append(s.states.end[k - 1, 7:, case])
+        sides.append(s.states.end[k - 1, 7:])
     if k < m:
-        sides.append(s.states.start[k, 7:, case])
+        sides.append(s.states.start[k, 7:])
     return np.asarray(np.mean(sides, axis=0))
 
 
-def _displacements(s: Solved, case: int, name: str) -> Iterator[Figure]:
+Block = tuple[list[LineKey], Array]
+
+
+def _displacements(s: Solved) -> Iterator[Block]:
     R = s.mesh.axes
-    for place, x in places(s.mesh):
+    named = list(places(s.mesh))
+    p = sections_after(s.mesh, np.array([x for _, x in named]))
+    for (place, x), yc, zc in zip(named, p.yc, p.zc, strict=True):
         k = s.mesh.node(x)
-        d = s.states.freedoms[7 * k:7 * k + 6, case]
-        p = s.mesh.sections.net(np.array([x]), "after" if x < s.mesh.length else "before")
-        r = np.array([0.0, p.yc[0], p.zc[0]])
+        d = s.states.freedoms[7 * k:7 * k + 6]
         # the section's mean is that of its centroid; free expansion moves it across the member as well
-        u = d[:3] + np.cross(d[3:6], r) + s.mesh.part.material.expansion * s.change[case] * r
-        for i, (value, turn) in enumerate(zip(R.T @ u, R.T @ d[3:6], strict=True)):
-            yield Figure(FigureKey(name, place, "displacement", XYZ[i]), float(value), "mm")
-            yield Figure(FigureKey(name, place, "rotation", XYZ[i]), float(turn), "rad")
+        u = d[:3] + section_arm(yc, zc) @ d[3:6]
+        u[1] += s.mesh.part.material.expansion * s.change * yc
+        u[2] += s.mesh.part.material.expansion * s.change * zc
+        yield [LineKey(place, "displacement", c, "global", "mm") for c in XYZ], R.T @ u
+        yield [LineKey(place, "rotation", c, "global", "rad") for c in XYZ], R.T @ d[3:6]
 
 
-def reaction(s: Solved, support: str, case: int) -> tuple[Array, Array]:
-    """Force and moment about its region's centroid (member axes) that a support exerts on the part."""
+def sections_after(mesh: BeamMesh, x: Array) -> LineProperties:
+    """Net sections at stations `x` (k,), just behind each one; before the last end of the member."""
+    at = np.where(x >= mesh.length, np.nextafter(mesh.length, 0.0), x)
+    return mesh.sections.net(at)
+
+
+def section_arm(yc: float, zc: float) -> Array:
+    """(3, 3) A with A @ rotation = rotation x (0, yc, zc)."""
+    return np.array([[0.0, zc, -yc], [-zc, 0.0, 0.0], [yc, 0.0, 0.0]])
+
+
+def row_resultants(s: Solved, centre: Array, vectors: Array) -> Array:
+    """(rows, 6) force and moment about `centre` (member axes) of generalised forces `vectors` (rows, n_freedoms)."""
+    line = np.zeros((len(s.mesh.x), 3))
+    line[:, 0] = s.mesh.x
+    points = np.vstack([line, *(p[None] for p in s.actions.rigid_points)])
+    n = 7 * len(line)
+    blocks = np.concatenate([vectors[:, :n].reshape(len(vectors), -1, 7)[:, :, :6],
+                             vectors[:, n:].reshape(len(vectors), -1, 6)], axis=1)
+    force = blocks[:, :, :3]
+    moment = blocks[:, :, 3:] + np.cross(points - centre, force)
+    return np.hstack([force.sum(axis=1), moment.sum(axis=1)])
+
+
+def reaction(s: Solved, support: str) -> Array:
+    """(6, cases) force and moment about its region's centroid (member axes) that a support exerts on the part."""
     on = next(v.on for v in s.mesh.part.supports if v.name == support)
-    centre = s.actions.region(on).centroid
-    total = np.zeros(s.actions.freedoms)
-    for row, value in zip(s.rows, s.states.reactions[:, case], strict=True):
-        if row.owner == support:
-            total += value * row.vector
-    points = [np.array([x, 0.0, 0.0]) for x in s.mesh.x]
-    blocks = [total[7 * i:7 * i + 6] for i in range(len(points))]
-    points += s.actions.rigid_points
-    blocks += list(total[7 * len(s.mesh.x):].reshape(-1, 6))
-    F, M = np.zeros(3), np.zeros(3)
-    for point, w in zip(points, blocks, strict=True):
-        F += w[:3]
-        M += w[3:] + np.cross(point - centre, w[:3])
-    return F, M
+    own = [k for k, row in enumerate(s.rows) if row.owner == support]
+    vectors = np.array([s.rows[k].vector for k in own]).reshape(len(own), s.actions.freedoms)
+    return np.asarray(row_resultants(s, s.actions.region(on).centroid, vectors).T @ s.states.reactions[own])
 
 
-def _reactions(s: Solved, case: int, name: str) -> Iterator[Figure]:
+def _reactions(s: Solved) -> Iterator[Block]:
     for support in s.mesh.part.supports:
-        force, moment = (s.mesh.axes.T @ v for v in reaction(s, support.name, case))
-        for i in range(3):
-            yield Figure(FigureKey(name, support.name, "reaction_force", XYZ[i]), float(force[i]), "N")
-            yield Figure(FigureKey(name, support.name, "reaction_moment", XYZ[i]), float(moment[i]), "N mm")
+        total, back = reaction(s, support.name), s.mesh.axes.T
+        yield [LineKey(support.name, "reaction_force", c, "global", "N") for c in XYZ], back @ total[:3]
+        yield [LineKey(support.name, "reaction_moment", c, "global", "N mm") for c in XYZ], back @ total[3:]
 
 
-def _section_forces(s: Solved, case: int, name: str) -> Iterator[Figure]:
+def _section_forces(s: Solved) -> Iterator[Block]:
     for x in station_values(s.mesh):
-        f = forces_at(s, float(x), case)
         place = station_place(s.mesh.member.name, float(x))
-        for i, component in enumerate(("N", "Vy", "Vz")):
-            yield Figure(FigureKey(name, place, "section_force", component, "member"), float(f[i]), "N")
-        for i, component in enumerate(("T", "My", "Mz")):
-            yield Figure(FigureKey(name, place, "section_moment", component, "member"), float(f[3 + i]), "N mm")
+        f = forces_at(s, float(x))
+        yield [LineKey(place, "section_force", c, "member", "N") for c in ("N", "Vy", "Vz")], f[:3]
+        yield [LineKey(place, "section_moment", c, "member", "N mm") for c in ("T", "My", "Mz")], f[3:6]
 
 
 def energies(s: Solved) -> Array:

@@ -18,7 +18,7 @@ from fem.beam.faces import FACES, curve, face_edges, strip
 from fem.beam.law import LineProperties
 from fem.beam.outlines.net_sections import taken_at
 from fem.beam.regions import EndFace, Face, Region, Strip
-from geometry.part import LineLoad, Member, Part
+from geometry.part import LineLoad, Member, Part, StripLoad
 from geometry.problem import RunError
 
 Array = NDArray[np.float64]
@@ -51,6 +51,11 @@ class BeamMesh:
         axes, length = member_axes(member)
         return cls(part, member, Sections(member, length, part.material.nu, solver), axes, length,
                    _nodes(part, member, length), shear)
+
+    def finer(self, part: Part, steps: int, lengths: int) -> BeamMesh:
+        """The same member with the nodes that `part` (other loads and supports) needs, nodes at `steps` equal steps
+        and at least so many lengths."""
+        return replace(self, part=part, x=_nodes(part, self.member, self.length, steps, lengths))
 
     def node(self, x: float) -> int:
         """Index of the node at `x`."""
@@ -159,6 +164,21 @@ class BeamMesh:
         depth = max(float(e[0, 1] - e[1, 1]), float(e[3, 0] - e[2, 0]))
         return Face(name, lengths, h, tuple(strips), tuple(ends), depth)
 
+    def face_middle(self, face: str, x: float, e: int) -> Array:
+        """(3,) middle of a face's width at `x` in length `e`, from the line there; NaN where cuts take all of it."""
+        piece = self.sections.piece(x)
+        cut = any(effect.start < x < effect.end for effect in self.sections.effects)
+        key = (face, piece.start if piece.constant and not cut else x)
+        if key not in self._middles:
+            s = self._strip(f"{self.member.name}.{face}", face, x, e, None)
+            yz = s.weight @ s.points[:, 1:] / s.weight.sum() if len(s.points) else np.full(2, np.nan)
+            self._middles[key] = np.array([0.0, *yz])
+        return self._middles[key]
+
+    @cached_property
+    def _middles(self) -> dict[tuple[str, float], Array]:
+        return {}
+
     def _strip(self, name: str, face: str, x: float, e: int, across: tuple[int, float, float] | None) -> Strip:
         """Strip at `x`, with outlines taken inside length `e` (one side of a step)."""
         a, b = float(self.x[e]), float(self.x[e + 1])
@@ -173,9 +193,9 @@ class BeamMesh:
         return strip(x, share, before, after, b - a - 2 * inset, edges, across, taken)
 
 
-def _nodes(part: Part, member: Member, length: float) -> Array:
+def _nodes(part: Part, member: Member, length: float, steps: int = 20, lengths: int = LENGTHS) -> Array:
     """Nodes at everything that happens, and enough of them between."""
-    marks = [0.0, length, *(k * length / 20 for k in range(21))]
+    marks = [0.0, length, *(k * length / steps for k in range(steps + 1))]
     marks += [s.at for s in member.stations]
     marks += [s.at + w * s.shoulder_fillet for s in member.stations for w in (-1.0, 1.0) if s.shoulder_fillet]
     for cut in member.cuts:
@@ -188,10 +208,12 @@ def _nodes(part: Part, member: Member, length: float) -> Array:
     for load in part.loads:
         if isinstance(load, LineLoad):
             marks += [load.start, load.end]
+        elif isinstance(load, StripLoad):
+            marks += [min(max(c + w * load.length, 0.0), length) for c in load.centres for w in (-0.5, 0.5)]
     marks += [p.at for p in part.places if p.member == member.name]
     marks = [v for v in marks if -1e-9 * length <= v <= length * (1 + 1e-9)]
     x = np.unique(np.clip(marks, 0.0, length))
     x = x[np.concatenate([[True], np.diff(x) > 1e-7 * length])]
-    parts = [np.linspace(a, b, max(1, int(np.ceil((b - a) * LENGTHS / length - 1e-9))) + 1)[:-1]
+    parts = [np.linspace(a, b, max(1, int(np.ceil((b - a) * lengths / length - 1e-9))) + 1)[:-1]
              for a, b in zip(x[:-1], x[1:], strict=True)]
     return np.concatenate([*parts, [length]])

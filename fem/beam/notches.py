@@ -40,10 +40,10 @@ def notch_figures(s: Solved) -> tuple[list[Figure], list[str]]:
         except OutOfRange as reason:
             notes.append(f"{place}: no published stress concentration factor applies: {reason}")
             continue
+        forces = forces_at(s, x)
         for k, case in enumerate(s.mesh.part.cases):
-            forces = forces_at(s, x, k)
             for side in sides:
-                value, band = values(side, forces)
+                value, band = values(side, forces[:, k])
                 figures.append(Figure(FigureKey(case.name, place, "notch_stress", f"xx@{side}", "member"), value, "MPa",
                                       error=band, note=note))
     return figures, notes

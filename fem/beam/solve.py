@@ -13,7 +13,7 @@ from fem.beam.actions import Actions
 from fem.beam.along import SectionSolver
 from fem.beam.causes import find_causes
 from fem.beam.equations import Row, present, solve_line
-from fem.beam.figures import Solved, all_figures, diagram, energies, line_figures, properties_table
+from fem.beam.figures import Solved, all_figures, diagram, energies, line_values, properties_table
 from fem.beam.mesh import BeamMesh
 from fem.beam.result import BeamResult
 from fem.beam.section import sections_properties
@@ -54,8 +54,10 @@ def solve_beam(
     mesh = BeamMesh.of(part, section_solver, shear)
     built = time.perf_counter()
     solved = solve_cases(mesh)
-    figures, notes = all_figures(solved)
-    causes = find_causes(mesh, figures, lambda changed: line_figures(solve_cases(changed)))
+    line = line_values(solved)
+    figures, notes = all_figures(solved, line)
+    causes = find_causes(mesh, line, lambda changed: line_values(solve_cases(changed)))
+    energy, shear_stress = energies(solved), nominal_shear(solved)
     depth = max(float(np.ptp(s.extremes[:2, 1])) for s in mesh.sections.solved)
     mass = next(f.value for f in figures if f.key.quantity == "mass")
     return BeamResult(
@@ -64,8 +66,8 @@ def solve_beam(
         properties=properties_table(mesh),
         mass=mass,
         shear_share={case.name: float(e[1] / e.sum()) if e.sum() else 0.0
-                     for case, e in zip(part.cases, energies(solved).T, strict=True)},
-        nominal_shear={case.name: nominal_shear(solved, k) for k, case in enumerate(part.cases)},
+                     for case, e in zip(part.cases, energy.T, strict=True)},
+        nominal_shear={case.name: shear_stress[..., k] for k, case in enumerate(part.cases)},
         slenderness=mesh.length / depth,
         causes=causes,
         notes=tuple(notes),
@@ -90,12 +92,24 @@ def solve_cases(mesh: BeamMesh) -> Solved:
             lengths[:, :12, k] += factor * single[name].lengths
             change[k] += factor * single[name].change
     lengths[:, 12, :] = part.material.expansion * change
-    rows = [*actions.ties, *(row for s in part.supports for row in actions.rows(s, change))]
     line = replace(mesh.line, extra=6 * len(actions.rigid_points))
-    there = present(line)  # a row that stops warping says nothing where the section is free of it
-    rows = independent([row for row in rows if row.vector[there].any()], len(mesh.x), cases)
+    rows = support_rows(mesh, actions, change)
     states = solve_line(line, rows, nodal, lengths, actions.rigid_motions(), f"member {mesh.member.name}")
     return Solved(mesh, actions, rows, nodal, lengths, change, states)
+
+
+def support_rows(mesh: BeamMesh, actions: Actions, change: Array | None = None) -> list[Row]:
+    """Independent rows of rigid regions and supports in cases of the temperature `change` (cases,), K.
+
+    Without it one case in which all prescribed values are zero.
+    """
+    values = np.zeros(1) if change is None else change
+    rows = [*actions.ties, *(row for s in mesh.part.supports for row in actions.rows(s, values))]
+    if change is None:
+        rows = [replace(row, value=np.zeros(1)) for row in rows]
+    # a row that stops warping says nothing where the section is free of it
+    there = present(replace(mesh.line, extra=6 * len(actions.rigid_points)))
+    return independent([row for row in rows if row.vector[there].any()], len(mesh.x), len(values))
 
 
 def independent(rows: Sequence[Row], nodes: int, cases: int) -> list[Row]:

@@ -15,40 +15,46 @@ from fem.figure import Figure, FigureKey, station_place
 if TYPE_CHECKING:
     from fem.beam.figures import Solved
 
+Array = NDArray[np.float64]
 POINTS = ("top", "bottom", "left", "right")
 
 
-def bending_stress(o: OutlineIntegrals, forces: np.ndarray, y: float, z: float) -> float:
-    """Longitudinal stress (MPa) at (y, z) of a section under (N, Vy, Vz, T, My, Mz, ...) about the line."""
+def bending_stress(o: OutlineIntegrals, forces: Array, y: float, z: float) -> Array:
+    """Longitudinal stress (MPa) at (y, z) of a section under (N, Vy, Vz, T, My, Mz, ...) about the line; (cases,)."""
     N, My, Mz = forces[0], forces[4] - o.zc * forces[0], forces[5] + o.yc * forces[0]
     det = o.Iyy * o.Izz - o.Iyz**2
     ky, kz = (o.Izz * My + o.Iyz * Mz) / det, (o.Iyz * My + o.Iyy * Mz) / det
-    return float(N / o.area + ky * (z - o.zc) - kz * (y - o.yc))
+    return np.asarray(N / o.area + ky * (z - o.zc) - kz * (y - o.yc))
 
 
-def nominal_stresses(s: Solved, case: int, name: str) -> Iterator[Figure]:
+def nominal_stresses(s: Solved) -> Iterator[Figure]:
     """xx at the four extreme points of the section at the 21 stations; of the net section where a cut passes."""
     from fem.beam.figures import forces_at, station_values
 
     mesh = s.mesh
+    found: list[tuple[str, str, str, list[float]]] = []
     for x in station_values(mesh):
         at = min(max(float(x), 1e-9 * mesh.length), (1.0 - 1e-9) * mesh.length)
         gross = mesh.sections.integrals(at)
         cut = any(e.start < at < e.end for e in mesh.sections.effects)
         used = outline_integrals(net_section(mesh.member, at)) if cut else gross
-        f = forces_at(s, float(x), case)
-        piece = mesh.sections.piece(at)
-        bimoment = np.zeros(4)
-        if piece.open_thin:
-            bimoment = f[6] / mesh.sections.gross(np.array([at])).Iw[0] * mesh.sections.warping_at_extremes(at)
+        f = forces_at(s, float(x))
+        bimoment = np.zeros((4, f.shape[1]))
+        if mesh.sections.piece(at).open_thin:
+            warping = mesh.sections.warping_at_extremes(at) / mesh.sections.gross(np.array([at])).Iw[0]
+            bimoment = np.outer(warping, f[6])
         for i, point in enumerate(POINTS):
-            value = bending_stress(used, f, *used.extremes[i]) + bimoment[i]
-            yield Figure(FigureKey(name, station_place(mesh.member.name, float(x)), "nominal_stress", f"xx@{point}",
-                                   "member"), float(value), "MPa", note="net section" if cut else "gross section")
+            values = bending_stress(used, f, *used.extremes[i]) + bimoment[i]
+            found.append((station_place(mesh.member.name, float(x)), f"xx@{point}",
+                          "net section" if cut else "gross section", values.tolist()))
+    for k, case in enumerate(mesh.part.cases):
+        for place, component, note, values in found:
+            yield Figure(FigureKey(case.name, place, "nominal_stress", component, "member"), values[k], "MPa",
+                         note=note)
 
 
-def nominal_shear(s: Solved, case: int) -> NDArray[np.float64]:
-    """(21, 4) x, mean shear stress along z and y at the centroid's level, largest Saint-Venant torsion stress.
+def nominal_shear(s: Solved) -> Array:
+    """(21, 4, cases) x, mean shear stress along z and y at the centroid's level, largest Saint-Venant torsion stress.
 
     MPa, on the section without cuts. The first two follow from equilibrium, the inclination of tapered sides included
     (see `fem.beam.taper_shear`): V S/(I b) where the member is prismatic. The third is unsigned and taken from the
@@ -61,15 +67,15 @@ def nominal_shear(s: Solved, case: int) -> NDArray[np.float64]:
     rows = []
     for x in station_values(mesh):
         at = min(max(float(x), 1e-3 * mesh.length), (1.0 - 1e-3) * mesh.length)
-        f = forces_at(s, float(x), case)
+        f = forces_at(s, float(x))
         o = mesh.sections.integrals(at)
         My, Mz = f[4] - o.zc * f[0], f[5] + o.yc * f[0]
         unit_z, unit_y = mesh.sections.unit_shear(at)
-        tau = unit_z @ (f[2], f[0], My), unit_y @ (f[1], f[0], -Mz)
         p = mesh.sections.gross(np.array([at]))
-        k = mesh.node(float(x))
-        chi = s.states.freedoms[7 * k + 6, case] if mesh.sections.piece(at).open_thin else None
-        torque = f[3] + p.zs[0] * f[1] - p.ys[0] * f[2] if chi is None else G * p.J[0] * chi
+        torque = f[3] + p.zs[0] * f[1] - p.ys[0] * f[2]
+        if mesh.sections.piece(at).open_thin:
+            torque = G * p.J[0] * s.states.freedoms[7 * mesh.node(float(x)) + 6]
         near = min(mesh.sections.solved, key=lambda q: abs(q.area - p.area[0]))
-        rows.append([x, *tau, abs(torque) / p.J[0] * near.torsion_stress * near.J])
+        rows.append([np.full(f.shape[1], x), unit_z @ np.array([f[2], f[0], My]), unit_y @ np.array([f[1], f[0], -Mz]),
+                     np.abs(torque) / p.J[0] * near.torsion_stress * near.J])
     return np.array(rows)

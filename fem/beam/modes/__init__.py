@@ -1,0 +1,7 @@
+"""Natural frequencies and linear buckling of the beam model."""
+
+from __future__ import annotations
+
+from fem.beam.modes.vibration import beam_vibration
+
+__all__ = ["beam_vibration"]
