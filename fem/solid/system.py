@@ -132,6 +132,9 @@ class HeldSystem:
         y, m = both[:, :-1], m[:, :-1]
         gauge = float(np.abs(both[:, -1] - y0).max() / np.abs(y0).max())
         scale = np.maximum(np.linalg.norm(rhs, axis=0), np.abs(moved).max() * np.sqrt(g.size))
+        if values.any():  # the load is then what the mean rows take, or of a rigid motion the rounding of the stiffness
+            stiff = self.K.diagonal()[:, None] * self.elimination.expand(y)
+            scale = np.maximum(scale, np.maximum(np.linalg.norm(C.T @ m, axis=0), 1e-8 * np.linalg.norm(stiff, axis=0)))
         scale = np.where(scale > 0, scale, 1.0)
         left = rhs - self.apply(y) - C.T @ m
         residual = float((np.linalg.norm(left, axis=0) / scale).max())

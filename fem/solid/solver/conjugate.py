@@ -48,13 +48,35 @@ class MeanRows:
     inverse: Array
 
 
+@dataclass(frozen=True, slots=True)
+class Goal:
+    """When to stop: both must be met.
+
+    Attributes
+    ----------
+    energy
+        Allowed error in the norm of the energy, over the norm of the solution, as it was `DELAY` iterations ago.
+    floor
+        (k,) energy that counts as nothing: the rounding of a start that is a large rigid motion.
+    residual
+        (k,) allowed size of the residual.
+    size
+        Gives (k,) sizes of residuals (3 n, k), of which only what works on held motions counts.
+    """
+
+    energy: float
+    floor: Array
+    residual: Array
+    size: Callable[[Array], Array]
+
+
 def conjugate_gradients(
     product: Operator,
     precondition: Operator,
     loads: Array,
     start: Array | None,
     rows: MeanRows | None,
-    tolerance: float,
+    goal: Goal,
     threads: int,
 ) -> Iterate:
     """Solve K u + C^T m = f for the columns of f (3 n, k), beginning at u = `start`, which has the C u wanted.
@@ -69,7 +91,7 @@ def conjugate_gradients(
     u = np.zeros_like(loads)
     z, p, q = np.empty_like(loads), np.zeros_like(loads), np.empty_like(loads)
     multipliers = np.zeros((rows.C.shape[0] if rows else 0, columns))
-    energy = np.zeros(columns)
+    energy = goal.floor.copy()
     if start is not None:
         u += start
         product(u, q)
@@ -102,12 +124,15 @@ def conjugate_gradients(
         energy += steps[-1]
         before = np.where(active, rz, 1.0)
         missed = np.sum(steps[-DELAY:], axis=0)
-        active &= (missed > tolerance**2 * energy) | (len(steps) < DELAY)
+        met = (missed <= goal.energy**2 * energy) & (len(steps) >= DELAY)
+        if (met & active).any():
+            active &= ~(met & (goal.size(r) <= goal.residual))
         if not active.any():
             return Iterate(u, multipliers, iteration)
     left = float(np.sqrt((missed / energy)[active].max()))
     raise Stalled(
-        f"after {MOST_ITERATIONS} iterations the error of the energy norm was {left:.1e}, wanted {tolerance:.0e}"
+        f"after {MOST_ITERATIONS} iterations the error in the norm of the energy was still {left:.1e}, "
+        f"{goal.energy:.0e} is wanted"
     )
 
 

@@ -63,7 +63,7 @@ class Elimination:
         self._rows, self._part = rows, T[rows]
         self._back = self._part.T.tocsr()
         self.basis = np.zeros((self.special.size, 3, 3))
-        part = self._part.tocoo()
+        part = self._part.tocoo(copy=True)
         s, own_column = part.row // 3, part.col < self.own
         s, i = s[own_column], part.row[own_column] % 3
         local = part.col[own_column] - self.first[self.special[s]]
