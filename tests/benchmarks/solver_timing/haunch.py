@@ -15,7 +15,7 @@ import numpy as np
 
 from solver_timing import meshes
 from solver_timing.child import Tell
-from solver_timing.measure import PeakMemory, answer, triad_rate
+from solver_timing.measure import Clock, PeakMemory, answer, triad_rate
 from solver_timing.profile import INSIDE, MOVED, STAGES
 from solver_timing.shapes import FIRST_CASE, SHAPES
 from solver_timing.watch import Watch
@@ -74,7 +74,7 @@ def _warm_up(budget: Any) -> None:
 
     part = meshes.part_of(SHAPES["box"])
     mesh = meshes.structured(part, WARM)
-    model = build_model(part, mesh)
+    model = build_model(part, mesh, budget.threads)
     for choice in ("cholesky", "multigrid"):
         system = HeldSystem(model.K, model.constraints, mesh, budget, choice)
         for loads in (_loads(model), _loads(model)[:, :1]):
@@ -93,9 +93,9 @@ def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, m
     from fem.solid.model import build_model
     from fem.solid.system import HeldSystem
 
-    memory = PeakMemory()
+    memory, clock = PeakMemory(), Clock()
     with Watch(STAGES) as watch:
-        building, model = clocked(lambda: build_model(part, mesh))
+        building, model = clocked(lambda: build_model(part, mesh, budget.threads))
     loads = _loads(model)
     first = np.ascontiguousarray(loads[:, [case.name for case in part.cases].index(FIRST_CASE)][:, None])
     with Watch(INSIDE, MOVED) as inside:
@@ -109,6 +109,7 @@ def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, m
             set_up=setting_up,
             solve=solving,
             displacements=building + setting_up + solving,
+            processor=clock.read()[1],
             memory=memory.now(),
             stages=watch.seconds,
             missing=watch.missing + inside.missing,

@@ -15,6 +15,16 @@ SAMPLE = 200
 """Nodes at which the answers are compared."""
 
 
+class Clock:
+    """Seconds on the wall, and of the processor by all threads of this process, since it was made."""
+
+    def __init__(self) -> None:
+        self._wall, self._processor = time.perf_counter(), time.process_time()
+
+    def read(self) -> tuple[float, float]:
+        return time.perf_counter() - self._wall, time.process_time() - self._processor
+
+
 class PeakMemory:
     """Most resident memory since it was made, above what there was then, MiB.
 
