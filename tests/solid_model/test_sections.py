@@ -197,6 +197,6 @@ def test_section_means_of_a_rigid_motion_and_area() -> None:
         cut = Cutter(mesh).cut(frame, at)
         assert cut.area == pytest.approx(B * H, rel=1e-12)
         assert cut.centroid == pytest.approx([at, 0.0, 0.0], abs=1e-9)
-        mean, rot = section_means(cut, u, mesh.tets, frame)
+        mean, rot = section_means(cut, u, frame)
         assert mean[0] == pytest.approx(shift + np.cross(turn, [at, 0, 0]), abs=1e-12)
         assert rot[0] == pytest.approx(turn, abs=1e-12)
