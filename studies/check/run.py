@@ -17,7 +17,8 @@ from geometry.budget import Budget
 from geometry.named_solid import NamedSolid
 from geometry.part import Part
 from studies.check.folder import RESULT, refuse_existing, remove_stale, run_folder
-from studies.check.result import CaseStress, CheckResult, Denting, MeshSummary
+from studies.check.record import SLOWER_SOLVER, make_result
+from studies.check.result import CheckResult
 from studies.check.solid_child import SolidChild
 from studies.check.stages import Clock, Event, Listener, blamed_on
 from studies.check.version import RESULTS
@@ -25,14 +26,11 @@ from studies.check.version import RESULTS
 if TYPE_CHECKING:
     from fem.beam import BeamResult
     from fem.solid.result import SolidResult
+    from fem.solid.solver import Choice
     from mesher.named_mesh import NamedMesh
-    from studies.judge import Judgement
 
 PACKAGES = ("haunch", "cadquery", "cadquery-ocp", "gmsh", "scikit-fem", "numpy", "scipy", "pypardiso", "meshio",
             "matplotlib")
-
-SLOWER_SOLVER = ("MKL PARDISO could not be loaded, so SciPy's sparse LU solved the solid model: "
-                 "the same equations, but slower and with more memory")
 
 
 @dataclasses.dataclass(frozen=True, slots=True)
@@ -47,7 +45,7 @@ class Models:
 
 
 def check(part: Part | str | Path, out: str | Path, budget: Budget | None = None, listener: Listener | None = None, *,
-          replace: bool = False, pictures: bool = True) -> CheckResult:
+          replace: bool = False, pictures: bool = True, solver: Choice = "auto") -> CheckResult:
     """Build both models of a part, compare them, and write the run folder `out`.
 
     Parameters
@@ -64,6 +62,8 @@ def check(part: Part | str | Path, out: str | Path, budget: Budget | None = None
         Overwrite a finished run of that name.
     pictures
         Draw the PNG pictures.
+    solver
+        Of the solid model: ``auto`` chooses by size and shape of the part; ``cholesky`` or ``multigrid``.
 
     Raises
     ------
@@ -77,7 +77,7 @@ def check(part: Part | str | Path, out: str | Path, budget: Budget | None = None
     refuse_existing(out, replace)
     with clock.stage("spec"):
         name, resolved = _read(part)
-    models = build_models(resolved, budget, clock)
+    models = build_models(resolved, budget, clock, solver)
     with clock.stage("compare"):
         result = _compare(models, name, started, clock)
     with clock.stage("write"):
@@ -96,7 +96,7 @@ def _read(part: Part | str | Path) -> tuple[str, Part]:
     return Path(part).name, read_part(part)
 
 
-def build_models(part: Part, budget: Budget, clock: Clock) -> Models:
+def build_models(part: Part, budget: Budget, clock: Clock, solver: Choice = "auto") -> Models:
     """Solve both models. The solid is built and meshed, in child processes, while the beam model is solved here."""
     with ExitStack() as stack:
         clock.tell(Event("solid", "start"))
@@ -118,7 +118,8 @@ def build_models(part: Part, budget: Budget, clock: Clock) -> Models:
         named_solid, mesh = meshed.result()
     with clock.stage("solve"):
         solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text),
-                            sharp_edges=[(edge.label, edge.points) for edge in named_solid.sharp_edges])
+                            sharp_edges=[(edge.label, edge.points) for edge in named_solid.sharp_edges],
+                            solver=solver)
         if solid.backend == "cholesky (lu)":
             clock.note("solve", SLOWER_SOLVER)
     return Models(part, named_solid, mesh, beam, solid)
@@ -143,33 +144,6 @@ def _compare(models: Models, name: str, started: str, clock: Clock) -> CheckResu
 
     verdict = judge(models.part, models.named_solid, models.mesh, models.solid, models.beam)
     return make_result(models, verdict, name, started, clock)
-
-
-def make_result(models: Models, verdict: Judgement, name: str, started: str, clock: Clock) -> CheckResult:
-    """The record of a run, without its files."""
-    part, mesh, solid = models.part, models.mesh, models.solid
-    return CheckResult(
-        title=part.title, spec_name=name, spec_text=part.source_text, parameters=dict(part.parameters),
-        accuracy=part.accuracy, material=dataclasses.asdict(part.material),
-        cases={case.name: dict(case.factors) for case in part.cases},
-        solid_figures=tuple(solid.figures), beam_figures=tuple(models.beam.figures),
-        pairs=tuple(verdict.pairs), limits=tuple(verdict.limits), checks=tuple(verdict.checks),
-        peaks=tuple(verdict.peaks), case_stress=_case_stress(solid), denting=_denting(solid),
-        cautions=(*verdict.cautions, *((f"{SLOWER_SOLVER}.",) if solid.backend == "cholesky (lu)" else ())),
-        notes=tuple(models.beam.notes),
-        mesh=MeshSummary(mesh.nodes.shape[1], mesh.tets.shape[1], mesh.nodes.size, float(mesh.quality.min()),
-                         mesh.volume, dict(mesh.recipe)),
-        stages=clock.times(), versions=versions(), started=started,
-    )
-
-
-def _case_stress(solid: SolidResult) -> tuple[CaseStress, ...]:
-    return tuple(CaseStress(c.case, c.established, c.everywhere, c.yield_factor_established,
-                            c.yield_factor_everywhere) for c in solid.case_stress)
-
-
-def _denting(solid: SolidResult) -> tuple[Denting, ...]:
-    return tuple(Denting(d.case, d.region, d.value) for d in solid.denting)
 
 
 def versions() -> Mapping[str, str]:

@@ -4,11 +4,16 @@ from __future__ import annotations
 
 import os
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from geometry.budget import Budget
 
+if TYPE_CHECKING:
+    from fem.solid.solver import Choice
 
-def run_check(part: str, out: str | None, replace: bool, pictures: bool, threads: int, memory: int) -> int:
+
+def run_check(part: str, out: str | None, replace: bool, pictures: bool, threads: int, memory: int,
+              solver: Choice = "auto") -> int:
     """Check one part and print what was found; 0 when it is fine, else 1."""
     os.environ.setdefault("KMP_BLOCKTIME", "0")  # waiting threads sleep: the cores are shared with the child processes
     for name in ("OMP_NUM_THREADS", "MKL_NUM_THREADS", "OPENBLAS_NUM_THREADS", "NUMBA_NUM_THREADS"):
@@ -19,7 +24,8 @@ def run_check(part: str, out: str | None, replace: bool, pictures: bool, threads
     folder = Path(out) if out is not None else Path(f"{Path(part).stem}.run")
     console = make_console()
     with StageView(console) as view:
-        result = check(part, folder, Budget(threads=threads, memory=memory), view, replace=replace, pictures=pictures)
+        result = check(part, folder, Budget(threads=threads, memory=memory), view, replace=replace, pictures=pictures,
+                       solver=solver)
     print_result(console, result)
     console.print(f"Everything is in [bold]{folder}[/]: start with summary.md", soft_wrap=True)
     return 0 if result.fine else 1

@@ -68,6 +68,9 @@ def _add_check(commands: argparse._SubParsersAction[argparse.ArgumentParser]) ->
     check.add_argument("--threads", metavar="N", type=_whole(1, 1024), default=2, help="threads to use (2)")
     check.add_argument("--memory", metavar="MiB", type=_whole(256, 10**8), default=4096,
                        help="memory that meshing and solving may take (4096)")
+    check.add_argument("--solver", choices=("auto", "cholesky", "multigrid"), default="auto",
+                       help="of the solid model's equations: auto goes by size and shape of the part, and the result "
+                            "says what was chosen and why (auto)")
 
 
 def _whole(least: int, most: int):  # type: ignore[no-untyped-def]
@@ -86,7 +89,8 @@ def _whole(least: int, most: int):  # type: ignore[no-untyped-def]
 def _check(options: argparse.Namespace) -> int:
     from studies.cli.check import run_check
 
-    return run_check(options.part, options.out, options.replace, options.pictures, options.threads, options.memory)
+    return run_check(options.part, options.out, options.replace, options.pictures, options.threads, options.memory,
+                     options.solver)
 
 
 def _show(options: argparse.Namespace) -> int:

@@ -26,6 +26,14 @@ def table(figures: Iterable[Figure]) -> dict[FigureKey, Figure]:
     return found
 
 
+def by_case(figures: Table) -> dict[str, dict[FigureKey, Figure]]:
+    """The figures of each case."""
+    found: dict[str, dict[FigureKey, Figure]] = {}
+    for key, figure in figures.items():
+        found.setdefault(key.case, {})[key] = figure
+    return found
+
+
 def station_of(ctx: Context, place: str) -> float | None:
     """Distance of a place from the member's start (mm), None where it is not a station."""
     name = ctx.member.name
@@ -88,6 +96,8 @@ def not_compared(ctx: Context, key: FigureKey) -> str:
     if key.quantity == "strain_energy" and heated_and_gripped(ctx, key.case):
         return "sideways expansion denied where a face is held point by point or rigidly stores energy of its own"
     at = station_of(ctx, key.place)
+    if key.quantity == "notch_stress":
+        return ", ".join(ctx.pressed(key.place, key.case))
     if at is None:
         return ""
     if key.quantity in ("section_force", "section_moment"):
@@ -97,7 +107,7 @@ def not_compared(ctx: Context, key: FigureKey) -> str:
                    if min(abs(z.start - at), abs(z.end - at)) < tiny and tiny < at < ctx.length - tiny]
         return ", ".join((*inside, *at_edge))
     if key.quantity == "nominal_stress":
-        return ", ".join(ctx.disturbed_by(at))
+        return ", ".join(ctx.disturbed_by(at, key.case))
     return ""
 
 
@@ -111,40 +121,73 @@ def heated_and_gripped(ctx: Context, case: str) -> bool:
 def pair_figures(ctx: Context, solid: Table, beam: Table, facts: Mapping[str, CaseFacts],
                  causes: Mapping[FigureKey, Sequence[tuple[Cause, float]]]) -> tuple[Pair, ...]:
     """Every figure that both models give, in the solid's order, then the beam's that have no partner."""
-    scales = Scales(ctx, solid, beam)
+    judging = Judging(ctx, Scales(ctx, solid, beam), facts)
     pairs = []
     for key, figure in solid.items():
         if key.quantity == "peak_stress":
             continue  # the beam has no such figure; peak places are reported by themselves
-        other = beam.get(key)
-        pairs.append(_judged(ctx, key, figure, other, scales(key), facts, causes.get(key, ())))
-    pairs += [Pair(key, None, f.value, f.unit, None, scales(key), 0.0, (), "no beam value",
+        pairs.append(judging.judged(key, figure, beam.get(key), causes.get(key, ())))
+    pairs += [Pair(key, None, f.value, f.unit, None, judging.scale(key), 0.0, (), "no beam value",
                    "the solid model gives no such figure here")
               for key, f in beam.items() if key not in solid]
     return tuple(pairs)
 
 
-def _judged(ctx: Context, key: FigureKey, solid: Figure, beam: Figure | None, scale: float,
-            facts: Mapping[str, CaseFacts], causes: Sequence[tuple[Cause, float]]) -> Pair:
-    if beam is None:
-        return Pair(key, solid.value, None, solid.unit, None, scale, 0.0, (), "no beam value", solid.note)
-    difference = solid.value - beam.value
-    disturbed = not_compared(ctx, key)
-    if disturbed:
-        return Pair(key, solid.value, beam.value, solid.unit, difference, scale, 0.0, (), "no beam value",
-                    f"not comparable here: {disturbed}")
-    case_facts = facts.get(key.case, CaseFacts(0.0, 0.0, False, False))
-    shares = list(reasons(ctx, case_facts, key))
-    if key.quantity == "notch_stress" and beam.error is not None:
-        fit = abs(beam.error) / scale if scale > 0 else 0.0
-        shares.append(Share(f"fit of the stress concentration factor ({beam.note})", fit))
-    why = tuple(Reason(s.text, s.fraction * scale) for s in shares)
-    why += tuple(Reason(f"what is left open by: {cause.text}", left) for cause, left in causes if left > 0)
-    signed = tuple(cause for cause, _ in causes if cause.predicted)
-    band = sum(r.size for r in why)
-    word = _word(ctx, key, difference, band, sum(c.predicted for c in signed), scale)
-    look = look_at(key, solid.value, beam.value, ctx) if word == "suspicious" else ""
-    return Pair(key, solid.value, beam.value, solid.unit, difference, scale, band, signed, word, look, why)
+class Judging:
+    """Judges pair by pair. What pairs have in common (a case with hundreds of positions) is worked out once."""
+
+    def __init__(self, ctx: Context, scales: Scales, facts: Mapping[str, CaseFacts]) -> None:
+        self.ctx, self._scales, self._facts = ctx, scales, facts
+        self._shares: dict[tuple[str, str], tuple[Share, ...]] = {}
+        self._reasons: dict[tuple[str, str], tuple[Reason, ...]] = {}
+        self._scale: dict[tuple[str, str], float] = {}
+        self._disturbed: dict[tuple[str, str, str], str] = {}
+
+    def scale(self, key: FigureKey) -> float:
+        """What a figure of this case and quantity is measured against."""
+        kind = (key.case, key.quantity)
+        if kind not in self._scale:
+            self._scale[kind] = self._scales(key)
+        return self._scale[kind]
+
+    def _why(self, key: FigureKey, beam: Figure) -> tuple[Reason, ...]:
+        """What the band of a figure is made of, but for its causes."""
+        kind, scale = (key.case, key.quantity), self.scale(key)
+        if kind not in self._shares:
+            facts = self._facts.get(key.case, CaseFacts(0.0, 0.0, False, False))
+            self._shares[kind] = tuple(reasons(self.ctx, facts, key))
+            self._reasons[kind] = tuple(Reason(s.text, s.fraction * scale) for s in self._shares[kind])
+        why = self._reasons[kind]
+        if key.quantity == "notch_stress" and beam.error is not None:
+            fit = abs(beam.error) if scale > 0 else 0.0
+            why = (*why, Reason(f"fit of the stress concentration factor ({beam.note})", fit))
+        return why
+
+    def _not_compared(self, key: FigureKey) -> str:
+        at = (key.case, key.place, key.quantity)
+        if at not in self._disturbed:
+            self._disturbed[at] = not_compared(self.ctx, key)
+        return self._disturbed[at]
+
+    def judged(self, key: FigureKey, solid: Figure, beam: Figure | None,
+               causes: Sequence[tuple[Cause, float]]) -> Pair:
+        """The pair of a solid's figure with the beam's of the same key, if there is one."""
+        scale = self.scale(key)
+        if beam is None:
+            return Pair(key, solid.value, None, solid.unit, None, scale, 0.0, (), "no beam value", solid.note)
+        difference = solid.value - beam.value
+        disturbed = self._not_compared(key)
+        if disturbed:
+            return Pair(key, solid.value, beam.value, solid.unit, difference, scale, 0.0, (), "no beam value",
+                        f"not comparable here: {disturbed}")
+        why = self._why(key, beam)
+        if causes:
+            why += tuple(Reason(f"what is left open by: {cause.text}", left) for cause, left in causes if left > 0)
+        signed = tuple(cause for cause, _ in causes if cause.predicted)
+        band = sum(r.size for r in why)
+        word = _word(self.ctx, key, difference, band, sum(c.predicted for c in signed), scale)
+        look = look_at(key, solid.value, beam.value, self.ctx) if word == "suspicious" else ""
+        return Pair(key, solid.value, beam.value, solid.unit, difference, scale, band, signed, word, look, why)
 
 
 def _word(ctx: Context, key: FigureKey, difference: float, band: float, predicted: float,

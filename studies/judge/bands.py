@@ -15,7 +15,7 @@ from dataclasses import dataclass
 from typing import NamedTuple
 
 from fem.figure import FigureKey
-from geometry.part import TemperatureLoad
+from geometry.part import StripLoad, TemperatureLoad
 from studies.judge.context import Context
 
 
@@ -127,6 +127,9 @@ def local_loads(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
             if name in facts.acting:
                 at_end = zone.end - zone.start < 1e-6 * ctx.length
                 yield Share(f"wall bending under {zone.what}", (0.05 if at_end else 0.15) / ctx.slenderness)
+        for load in ctx.part.loads:
+            if isinstance(load, StripLoad) and load.name in facts.acting:
+                yield Share(f"wall bending under load {load.name}", 0.15 / ctx.slenderness)
 
 
 def heat(ctx: Context, facts: CaseFacts) -> Iterator[Share]:

@@ -13,7 +13,18 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
-from geometry.part import BearingLoad, BodyLoad, LineLoad, Member, Part, Pressure, RegionLoad, RemotePoint, Support
+from geometry.part import (
+    BearingLoad,
+    BodyLoad,
+    LineLoad,
+    Member,
+    Part,
+    Pressure,
+    RegionLoad,
+    RemotePoint,
+    StripLoad,
+    Support,
+)
 from mesher.named_mesh import NamedMesh
 
 Array = NDArray[np.float64]
@@ -44,6 +55,10 @@ class Zone:
         """How far a station lies outside the stretch (0 inside), mm."""
         return max(self.start - at, at - self.end, 0.0)
 
+    def gap(self, other: Zone) -> float:
+        """Free length between two stretches (0 where they meet), mm."""
+        return max(self.start - other.end, other.start - self.end, 0.0)
+
 
 @dataclass(frozen=True)
 class Context:
@@ -63,6 +78,11 @@ class Context:
     @property
     def length(self) -> float:
         return self._axes[2]
+
+    @property
+    def axes(self) -> Array:
+        """(3, 3) rows x, y, z of the member's axes in global components."""
+        return self._axes[1]
 
     @property
     def x_axis(self) -> Array:
@@ -100,8 +120,8 @@ class Context:
 
     def _load_regions(self) -> Iterable[tuple[str, str]]:
         for load in self.part.loads:
-            if isinstance(load, LineLoad | BodyLoad):
-                continue  # spread along the member: no disturbance of its own
+            if isinstance(load, LineLoad | BodyLoad | StripLoad):
+                continue  # spread along the member: no disturbance of its own; strips have zones case by case
             if isinstance(load, RegionLoad | Pressure | BearingLoad | RemotePoint):
                 yield load.on, load.name
 
@@ -118,6 +138,21 @@ class Context:
     @property
     def loaded_zones(self) -> tuple[Zone, ...]:
         return tuple(self.load_zones.values())
+
+    @cached_property
+    def _strip_zones(self) -> dict[str, tuple[Zone, ...]]:
+        """Stretches under the axles of a travelling load, by case: it is elsewhere in every one."""
+        strips = {load.name: load for load in self.part.loads if isinstance(load, StripLoad)}
+        found: dict[str, tuple[Zone, ...]] = {}
+        for case in self.part.cases:
+            acting = [strips[name] for name, factor in case.factors.items() if name in strips and factor]
+            found[case.name] = tuple(Zone(x - 0.5 * s.length, x + 0.5 * s.length, f"load {s.name}")
+                                     for s in acting for x in s.centres)
+        return found
+
+    def strip_zones(self, case: str) -> tuple[Zone, ...]:
+        """Stretches under the axles of the travelling load of a case."""
+        return self._strip_zones.get(case, ())
 
     @cached_property
     def cut_zones(self) -> tuple[Zone, ...]:
@@ -146,14 +181,23 @@ class Context:
         """Half the largest change of a dimension at each step, mm."""
         return tuple(height for _, height in self._steps)
 
-    def disturbed_by(self, at: float, reach: float | None = None) -> tuple[str, ...]:
-        """What lies within reach of a station, so that plane-section stresses are not expected there."""
-        reach = self.reach_of_disturbance if reach is None else reach
-        ends = tuple(z for z in self.held_zones + self.loaded_zones)
+    def disturbed_by(self, at: float, case: str = "") -> tuple[str, ...]:
+        """What lies within reach of a station, so that plane-section stresses are not expected there in the case."""
+        reach = self.reach_of_disturbance
+        ends = self.held_zones + self.loaded_zones + self.strip_zones(case)
         near_cut = 0.5 * reach
         found = [z.what for z in ends + self.step_zones if z.distance(at) < reach]
         found += [z.what for z in self.cut_zones if z.distance(at) < near_cut]
-        return tuple(found)
+        return tuple(dict.fromkeys(found))
+
+    def pressed(self, feature: str, case: str) -> tuple[str, ...]:
+        """Axles of a travelling load that stand within reach of a cut or step (``arm.hole1``, ``arm.step@120``)."""
+        name = feature.partition(".")[2]
+        zones = [z for z in self.cut_zones if z.what == f"cut {name}"]
+        if name.startswith("step@"):
+            zones = [Zone(float(name[5:]), float(name[5:]), name)]
+        near = [s.what for s in self.strip_zones(case) for z in zones if s.gap(z) < self.reach_of_disturbance]
+        return tuple(dict.fromkeys(near))
 
     def inside(self, at: float) -> tuple[str, ...]:
         """What enters or holds the part at the very station, so that a cut there has no one section force."""

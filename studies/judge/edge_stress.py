@@ -36,6 +36,13 @@ def extrapolated(ctx: Context, solid: SolidResult, case: str, zone: Zone) -> tup
     return max(found), "; ".join(reasons)
 
 
+def axle_near(ctx: Context, case: str, zone: Zone) -> bool:
+    """True when an axle of a travelling load stands so near a held stretch that the stress between it and two section
+    depths away does not vary linearly."""
+    reach = 2.0 * ctx.reach_of_disturbance
+    return any(strip.gap(zone) < reach for strip in ctx.strip_zones(case))
+
+
 def _one_side(ctx: Context, solid: SolidResult, case: str, edge: float, side: float,
               room: float) -> tuple[float, str]:
     reach = ctx.reach_of_disturbance
@@ -68,7 +75,7 @@ def _load_free_tail(ctx: Context, solid: SolidResult, case: str, edge: float, si
                     room: float) -> tuple[float, str]:
     """A short tail beyond a support: fine when nothing loads it, else there is no room to extrapolate."""
     tail = (edge - room, edge) if side < 0 else (edge, edge + room)
-    loaded = [z.what for z in ctx.loaded_zones if tail[0] <= 0.5 * (z.start + z.end) <= tail[1]]
+    loaded = [z.what for z in ctx.loaded_zones + ctx.strip_zones(case) if tail[0] <= 0.5 * (z.start + z.end) <= tail[1]]
     if loaded:
         return 0.0, (f"only {room:.4g} mm of free length carry {', '.join(loaded)}: no undisturbed stretch from "
                      f'which to extrapolate; use basis = "nominal"')

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,13 +22,33 @@ Both sides are exact for lines and arcs; inclined root fillets of a taper differ
 def independent_checks(ctx: Context, solid: NamedSolid, result: SolidResult,
                        properties: Array) -> tuple[IndependentCheck, ...]:
     """All of them. `properties`: (n, 7) of the beam at the stations of ``solid.slices``, same columns."""
-    return (*_from_solver(result), *_geometry(ctx, solid), *slice_checks(ctx, solid.slices, properties),
+    return (*_from_solver(ctx, result), *_geometry(ctx, solid), *slice_checks(ctx, solid.slices, properties),
             *_plausible(ctx, result))
 
 
-def _from_solver(result: SolidResult) -> Iterator[IndependentCheck]:
+def _from_solver(ctx: Context, result: SolidResult) -> Iterator[IndependentCheck]:
+    """The solid model's own checks; of the positions of a travelling load the one that uses most of what is allowed."""
+    declared = {name: name.partition("@")[0] for case in ctx.part.cases if case.travel
+                for name in (case.name, *(load for load in case.factors if load.startswith(f"{case.travel.load}@")))}
+    worst: dict[str, tuple[float, IndependentCheck]] = {}
     for check in result.checks:
-        yield IndependentCheck(check.name, check.value, check.allowed, check.ok, check.note)
+        words = check.name.split(" ")
+        plain = " ".join(_declared(word, declared) for word in words)
+        note = check.note
+        if plain != check.name:
+            at = next(word.partition("@")[2].rstrip(":") for word in words if "@" in word)
+            note = ", ".join(filter(None, (f"worst of the positions, {at} mm", note)))
+        use = check.value / check.allowed if check.allowed else check.value
+        use = np.inf if not check.ok else use
+        if plain not in worst or use > worst[plain][0]:
+            worst[plain] = (use, IndependentCheck(plain, check.value, check.allowed, check.ok, note))
+    yield from (check for _, check in worst.values())
+
+
+def _declared(word: str, names: Mapping[str, str]) -> str:
+    """A word of a check's name without the position it names."""
+    bare = word.rstrip(":")
+    return names[bare] + word[len(bare):] if bare in names else word
 
 
 def _geometry(ctx: Context, solid: NamedSolid) -> Iterator[IndependentCheck]:

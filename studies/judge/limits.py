@@ -8,22 +8,31 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
-from fem.figure import FigureKey, Quantity
+from fem.figure import Figure, FigureKey, Quantity
+from fem.mode import Mode
 from fem.solid import SolidResult
 from geometry.part import Limit
 from studies.check.result import LimitVerdict, Pair
 from studies.check.words import LimitWord
 from studies.judge.agreement import Table
-from studies.judge.context import Context
-from studies.judge.edge_stress import extrapolated
+from studies.judge.context import Context, Zone
+from studies.judge.edge_stress import axle_near, extrapolated
 
 UNITS = {
     "deflection": "mm", "displacement": "mm", "relative_displacement": "mm", "rotation": "rad", "stress": "MPa",
     "yield_factor": "1", "mass": "t", "reaction": "N",
+    "frequency": "Hz", "buckling_factor": "1",
 }
+
+
+LEAST = ("yield_factor", "frequency", "buckling_factor")
+"""What must not be less than its limit."""
+
+MODES = ("frequency", "buckling_factor")
 
 
 @dataclass(frozen=True)
@@ -49,10 +58,34 @@ class Evidence:
     def cases(self, limit: Limit) -> tuple[str, ...]:
         return limit.cases or tuple(c.name for c in self.ctx.part.cases)
 
+    @cached_property
+    def _suspects(self) -> dict[str, list[Pair]]:
+        found: dict[str, list[Pair]] = {}
+        for pair in self.pairs:
+            if pair.judgement == "suspicious":
+                found.setdefault(pair.key.case, []).append(pair)
+        return found
+
     def suspicious(self, case: str, quantities: tuple[str, ...], place: str) -> bool:
         """True when a pair of such a quantity was judged suspicious at the place (empty: anywhere)."""
-        return any(p.judgement == "suspicious" and p.key.case == case and p.key.quantity in quantities
-                   and place in ("", p.key.place) for p in self.pairs)
+        return any(p.key.quantity in quantities and place in ("", p.key.place) for p in self._suspects.get(case, ()))
+
+    @cached_property
+    def nominal(self) -> dict[str, list[Figure]]:
+        """The beam's nominal stresses, by case."""
+        found: dict[str, list[Figure]] = {}
+        for key, figure in self.beam_table.items():
+            if key.quantity == "nominal_stress":
+                found.setdefault(key.case, []).append(figure)
+        return found
+
+    @cached_property
+    def places(self) -> dict[str, list[str]]:
+        """Places of the solid's displacements and rotations, by quantity."""
+        found: dict[str, set[str]] = {}
+        for key in self.solid_table:
+            found.setdefault(key.quantity, set()).add(key.place)
+        return {quantity: sorted(names) for quantity, names in found.items()}
 
 
 def verdicts(evidence: Evidence) -> tuple[LimitVerdict, ...]:
@@ -61,12 +94,12 @@ def verdicts(evidence: Evidence) -> tuple[LimitVerdict, ...]:
 
 
 def _verdict(evidence: Evidence, limit: Limit) -> LimitVerdict:
-    least = limit.quantity == "yield_factor"
+    least = limit.quantity in LEAST
     found = list(_candidates(evidence, limit))
     unit = UNITS[limit.quantity]
     if not found:
-        return LimitVerdict(limit.name, limit.quantity, limit.value, None, unit, "", limit.at, "not established",
-                            "no figure of this kind was found there")
+        what = "no mode was found" if limit.quantity in MODES else "no figure of this kind was found there"
+        return LimitVerdict(limit.name, limit.quantity, limit.value, None, unit, "", limit.at, "not established", what)
     worst = min(found, key=lambda f: f.value) if least else max(found, key=lambda f: abs(f.value))
     doubts = [f for f in found if f.doubt]
     met = worst.value >= limit.value if least else abs(worst.value) <= limit.value
@@ -75,8 +108,9 @@ def _verdict(evidence: Evidence, limit: Limit) -> LimitVerdict:
     if met and doubts:
         word, reason = "not established", doubts[0].doubt
     basis = f" ({limit.basis} basis)" if limit.quantity in ("stress", "yield_factor") else ""
-    return LimitVerdict(limit.name, limit.quantity + basis, limit.value, worst.value, unit, worst.case,
-                        worst.place, word, reason)
+    value = worst.value if np.isfinite(worst.value) else None
+    return LimitVerdict(limit.name, limit.quantity + basis, limit.value, value, unit, worst.case, worst.place, word,
+                        reason)
 
 
 def _candidates(evidence: Evidence, limit: Limit) -> Iterator[Found]:
@@ -95,6 +129,11 @@ def _candidates(evidence: Evidence, limit: Limit) -> Iterator[Found]:
                 yield Found(evidence.solid_table[key].value, "", "", doubt)
         case "stress" | "yield_factor":
             yield from _strength(evidence, limit)
+        case "frequency":
+            yield from _modes(evidence, "", evidence.solid.vibration)
+        case "buckling_factor":
+            for case in limit.cases or [study.case for study in evidence.ctx.part.buckling]:
+                yield from _buckling(evidence, case)
 
 
 def _vector(table: Table, case: str, place: str, quantity: Quantity) -> np.ndarray | None:
@@ -107,9 +146,8 @@ def _pick(vector: np.ndarray, component: str) -> float:
 
 
 def _motion(evidence: Evidence, limit: Limit, quantity: Quantity) -> Iterator[Found]:
-    places = {k.place for k in evidence.solid_table if k.quantity == quantity}
     for case in evidence.cases(limit):
-        for place in sorted(places) if not limit.at else [limit.at]:
+        for place in evidence.places.get(quantity, []) if not limit.at else [limit.at]:
             vector = _vector(evidence.solid_table, case, place, quantity)
             if vector is not None:
                 bad = evidence.suspicious(case, (quantity,), place)
@@ -149,11 +187,11 @@ def _strength(evidence: Evidence, limit: Limit) -> Iterator[Found]:
 
 
 def _nominal(evidence: Evidence, case: str) -> Iterator[Found]:
-    for key, figure in evidence.beam_table.items():
-        if key.case == case and key.quantity == "nominal_stress":
-            bad = evidence.suspicious(case, ("nominal_stress",), key.place)
-            yield Found(abs(figure.value), case, f"{key.place} {key.component.partition('@')[2]}",
-                        f"the two models disagree on the stress at {key.place}" if bad else "")
+    for figure in evidence.nominal.get(case, ()):
+        key = figure.key
+        bad = evidence.suspicious(case, ("nominal_stress",), key.place)
+        yield Found(abs(figure.value), case, f"{key.place} {key.component.partition('@')[2]}",
+                    f"the two models disagree on the stress at {key.place}" if bad else "")
 
 
 def _local(evidence: Evidence, case: str) -> Iterator[Found]:
@@ -171,9 +209,43 @@ def _edge(evidence: Evidence, case: str) -> Iterator[Found]:
     where = place_text(best[0].regions, best[0].position) if best else "away from held edges"
     yield Found(stress.established, case, where, doubt)
     for zone in evidence.ctx.held_zones:
+        if axle_near(evidence.ctx, case, zone):
+            yield from _beside(evidence, case, zone, doubt)
+            continue
         value, why_not = extrapolated(evidence.ctx, evidence.solid, case, zone)
         where = f"outer fibre, extrapolated to {zone.what}"
         yield Found(value, case, where, why_not or doubt)
+
+
+def _beside(evidence: Evidence, case: str, zone: Zone, doubt: str) -> Iterator[Found]:
+    """The beam's nominal stress at the stations about a held stretch, where an axle leaves no room to extrapolate."""
+    step = evidence.ctx.length / 20.0 * (1.0 + 1e-6)
+    near = [f for f in evidence.nominal.get(case, ()) if zone.distance(float(f.key.place.partition("@")[2])) <= step]
+    if not near:
+        yield Found(0.0, case, zone.what, f"an axle stands too near {zone.what} to extrapolate to its edge")
+    for figure in near:
+        yield Found(abs(figure.value), case, f"{figure.key.place} {figure.key.component.partition('@')[2]}, beam "
+                    f"formula (an axle stands near {zone.what})", doubt)
+
+
+def _modes(evidence: Evidence, case: str, modes: Sequence[Mode]) -> Iterator[Found]:
+    """The values of the solid's modes; the place names the shape."""
+    suspects = {p.key.component for p in evidence.pairs if p.judgement == "suspicious" and p.key.case == case
+                and p.key.quantity in ("natural_frequency", "buckling_factor")}
+    # A shape of the beam that the solid lacks may be the lowest of all, missed: nothing is established then.
+    missed = [name for name in sorted(suspects) if name.startswith("beam")]
+    for number, mode in enumerate(modes, 1):
+        doubt = f"the two models disagree on mode {number}" if f"mode {number}" in suspects else ""
+        doubt = f"the solid model has no shape like {missed[0]}" if missed else doubt
+        yield Found(mode.value, case, f"mode {number}, {mode.kind}", doubt)
+
+
+def _buckling(evidence: Evidence, case: str) -> Iterator[Found]:
+    found = list(_modes(evidence, case, [m for m in evidence.solid.buckling if m.case == case]))
+    positive = [one for one in found if one.value > 0.0]
+    yield from positive
+    if found and not positive:
+        yield Found(np.inf, case, "", f"case {case}: none of its {len(found)} factors is positive; ask for more modes")
 
 
 def place_text(regions: Sequence[str], position: Sequence[float]) -> str:

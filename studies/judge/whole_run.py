@@ -16,11 +16,15 @@ from geometry.named_solid import NamedSolid
 from geometry.part import Part
 from mesher.named_mesh import NamedMesh
 from studies.check.result import Cause, IndependentCheck, LimitVerdict, Pair, PeakPlace
-from studies.judge.agreement import Table, pair_figures, table
+from studies.check.studied import ModePair, TravelEnvelope, TravelSummary
+from studies.judge.agreement import Table, by_case, pair_figures, table
 from studies.judge.bands import OPEN_SHAPES, CaseFacts
 from studies.judge.context import Context
 from studies.judge.independent import independent_checks
 from studies.judge.limits import Evidence, verdicts
+from studies.judge.mode_cautions import mode_cautions
+from studies.judge.modes import judge_modes
+from studies.judge.travelling import envelopes, kept, summaries
 
 WIDE_BAND = 0.10
 """Share of the largest displacement; a band beyond it is said in so many words."""
@@ -35,6 +39,9 @@ class Judgement:
     checks: tuple[IndependentCheck, ...]
     peaks: tuple[PeakPlace, ...]
     cautions: tuple[str, ...]
+    modes: tuple[ModePair, ...] = ()
+    travels: tuple[TravelSummary, ...] = ()
+    envelopes: tuple[TravelEnvelope, ...] = ()
 
 
 def judge(part: Part, named: NamedSolid, mesh: NamedMesh, solid: SolidResult, beam: BeamResult) -> Judgement:
@@ -44,13 +51,18 @@ def judge(part: Part, named: NamedSolid, mesh: NamedMesh, solid: SolidResult, be
     """
     ctx = Context(part, mesh)
     solid_table, beam_table = table(solid.figures), table(beam.figures)
-    facts = {c.name: case_facts(ctx, named, beam, (solid_table, beam_table), c.name) for c in part.cases}
-    pairs = pair_figures(ctx, solid_table, beam_table, facts, signed_causes(beam, beam_table))
+    split = [by_case(solid_table), by_case(beam_table)]
+    facts = {c.name: case_facts(ctx, named, beam, [figures.get(c.name, {}) for figures in split], c.name)
+             for c in part.cases}
+    thin = named.least_wall < 0.2 * min(ctx.size)
+    values, modes = judge_modes(ctx, solid, beam, facts, (thin, thin and ctx.member.section.shape in OPEN_SHAPES))
+    pairs = pair_figures(ctx, solid_table, beam_table, facts, signed_causes(beam, beam_table)) + values
     evidence = Evidence(ctx, solid, solid_table, beam_table, pairs)
     properties = sections_at(ctx.member, named.slices[:, 0])
     checks = independent_checks(ctx, named, solid, properties)
-    return Judgement(pairs, verdicts(evidence), checks, peak_places(ctx, named, solid),
-                     cautions(ctx, solid, facts, pairs))
+    return Judgement(kept(part, pairs), verdicts(evidence), checks, peak_places(ctx, named, solid),
+                     (*cautions(ctx, solid, facts, pairs), *mode_cautions(part, solid)),
+                     modes, summaries(part, solid), envelopes(part, pairs))
 
 
 def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, models: Sequence[Table], case: str) -> CaseFacts:
@@ -86,9 +98,14 @@ def _rotations(figures: Table, case: str) -> list[np.ndarray]:
 def signed_causes(beam: BeamResult, figures: Table) -> dict[FigureKey, list[tuple[Cause, float]]]:
     """The beam's predicted differences (solid minus beam) with what they leave open, by figure."""
     found: dict[FigureKey, list[tuple[Cause, float]]] = {}
+    kinds: dict[tuple[str, ...], list[FigureKey]] = {}
+    for key in figures:
+        for kind in ((key.case, key.quantity), (key.case, ""), ("", key.quantity), ("", ""),
+                     (key.case, key.place, key.quantity, key.component)):
+            kinds.setdefault(kind, []).append(key)
     for cause in beam.causes:
         wanted = (cause.case, cause.place, cause.quantity, cause.component)
-        for key in figures:
+        for key in kinds.get(wanted if all(wanted) else (cause.case, cause.quantity), []):
             has = (key.case, key.place, key.quantity, key.component)
             if all(w in ("", h) for w, h in zip(wanted, has, strict=True)):
                 found.setdefault(key, []).append((Cause(cause.text, cause.difference), cause.band))

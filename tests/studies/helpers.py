@@ -29,6 +29,7 @@ from mesher.named_mesh import NamedMesh
 from studies.check.result import IndependentCheck, LimitVerdict, Pair, PeakPlace
 from studies.check.run import Models
 from studies.check.words import JudgementWord
+from studies.judge import Judgement
 
 Axes = Literal["global", "member"]
 L, WIDTH, DEPTH = 200.0, 20.0, 30.0
@@ -143,7 +144,7 @@ def make_models(wobble: float = 0.001) -> Models:
     return Models(part, named, mesh, beam, solid)  # type: ignore[arg-type]
 
 
-def make_judgement(models: Models) -> SimpleNamespace:
+def make_judgement(models: Models) -> Judgement:
     """A plain judgement: 2 % of the value for everything, one limit met."""
     beam = {figure.key: figure.value for figure in models.beam.figures}
     pairs = []
@@ -156,5 +157,4 @@ def make_judgement(models: Models) -> SimpleNamespace:
     limit = LimitVerdict("deflection", "deflection", 0.5, 0.2, "mm", "carrying", "arm.end", "met")
     peaks = tuple(PeakPlace(p.case, "arm.start", "support", p.position, p.value, None, False, p.reason)
                   for p in models.solid.peaks)
-    return SimpleNamespace(pairs=tuple(pairs), limits=(limit,), checks=(IndependentCheck("b", 0.0, 1.0, True, "t"),),
-                           peaks=peaks, cautions=("A test.",))
+    return Judgement(tuple(pairs), (limit,), (IndependentCheck("b", 0.0, 1.0, True, "t"),), peaks, ("A test.",))

@@ -27,7 +27,7 @@ def fabricated(monkeypatch: pytest.MonkeyPatch, helpers: ModuleType) -> SimpleNa
     monkeypatch.setattr(frame, "PIXELS", 500)
     monkeypatch.setattr(frame, "DPI", 60)
 
-    def build_models(part: Any, budget: Budget, clock: Clock) -> Any:
+    def build_models(part: Any, budget: Budget, clock: Clock, solver: str = "auto") -> Any:
         for name in ("solid", "mesh", "beam", "solve"):
             with clock.stage(name):
                 if state.fault is not None and state.fault[0] == name:
