@@ -76,7 +76,7 @@ def solid_buckling(
     SolveError
         When the factors do not converge, or one is missing.
     """
-    motions = held_motions(system)
+    motions = held_motions(system, model.mesh.nodes)
     modes: list[Mode] = []
     shapes: list[Array] = []
     checks: list[Check] = []
@@ -300,7 +300,7 @@ class _Study:
         matrix = eliminate.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
         rows = (sp.vstack(levers) @ eliminate.T).toarray()
         low = LowRank(rows, np.concatenate(weights))
-        return negative_count(matrix, low, self.motions.rows, self.budget)
+        return negative_count(matrix, low, self.motions.rows, self.budget, self.motions.springs)
 
     def _with_other_sign(self, pencil: Pencil, B: Operator, pairs: Pairs) -> Pairs:
         """The pairs and, where all have one sign, the first of the other one if it is found."""

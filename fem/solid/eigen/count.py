@@ -6,8 +6,9 @@ from dataclasses import dataclass
 
 import numpy as np
 import scipy.sparse as sp
+from numpy.typing import NDArray
 
-from fem.solid.eigen.motions import Motions
+from fem.solid.eigen.motions import NO_SPRINGS, Motions
 from fem.solid.factor import SymmetricFactor
 from fem.solid.shape import Array
 from geometry.budget import Budget
@@ -29,10 +30,13 @@ class LowRank:
     weight: Array
 
 
-def negative_count(upper: sp.csr_matrix, low: LowRank, rows: Array, budget: Budget) -> int:
+def negative_count(
+    upper: sp.csr_matrix, low: LowRank, rows: Array, budget: Budget, springs: NDArray[np.int64] = NO_SPRINGS
+) -> int:
     """Number of negative directions of a matrix + low rank on the motions with rows y = 0.
 
-    `upper` is the upper triangle (f, f) of the matrix.
+    `upper` is the upper triangle (f, f) of the matrix. Where the rows alone hold the part, the matrix by itself is
+    singular: it gets springs on a few unknowns, which a low-rank part takes out again.
 
     The low-rank part and the rows stand as a border: matrix - B^T D^-1 B is what elimination of the border leaves, with
     D = -1 / weight for the low-rank part; the rows have D = 0, and each of them makes one negative and one positive
@@ -44,6 +48,8 @@ def negative_count(upper: sp.csr_matrix, low: LowRank, rows: Array, budget: Budg
     SolveError
         When the factor does not fit the memory of the budget, or the matrix is singular.
     """
+    if springs.size:
+        upper, low = _sprung(upper, low, springs)
     factor = SymmetricFactor(upper, budget, upper=True)
     try:
         negative = factor.negative
@@ -58,6 +64,19 @@ def negative_count(upper: sp.csr_matrix, low: LowRank, rows: Array, budget: Budg
     scale = 1.0 / np.sqrt(np.maximum(np.abs(np.diag(S)), 1e-300))
     S = S * scale * scale[:, None]
     return negative + int((np.linalg.eigvalsh((S + S.T) / 2) < 0).sum()) - rows.shape[0] - int((D < 0).sum())
+
+
+def _sprung(
+    upper: sp.csr_matrix, low: LowRank, springs: NDArray[np.int64]
+) -> tuple[sp.csr_matrix, LowRank]:
+    diagonal = upper.diagonal()
+    stiffness = float(np.median(np.abs(diagonal)))
+    added = np.zeros(upper.shape[0])
+    added[springs] = stiffness
+    out = np.zeros((springs.size, upper.shape[0]))
+    out[np.arange(springs.size), springs] = 1.0
+    more = LowRank(np.vstack([low.rows, out]), np.r_[low.weight, np.full(springs.size, -stiffness)])
+    return sp.csr_matrix(upper + sp.diags(added)), more
 
 
 def separated(values: Array, wanted: int) -> tuple[int, float] | None:

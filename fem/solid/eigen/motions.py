@@ -12,11 +12,13 @@ from numpy.typing import NDArray
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.model import SolidModel
 from fem.solid.shape import Array
+from fem.solid.solver.cholesky import spring_unknowns
 from fem.solid.solver.elimination import Elimination
 from fem.solid.support import Block, Constraints, build_constraints, rigid_map
 from fem.solid.system import HeldSystem
 from geometry.budget import Budget
 
+NO_SPRINGS = np.zeros(0, dtype=np.int64)
 Operator = Callable[[Array], Array]
 """(f, k) of (f, k)."""
 
@@ -37,6 +39,8 @@ class Motions:
     solver
         Name of the solver behind it; `direct`: its approximation is the inverse. `close` gives memory back that was
         taken for these motions alone.
+    springs
+        Unknowns that hold the part without the rows, were there springs on them; none where there are no rows.
     """
 
     elimination: Elimination
@@ -45,6 +49,7 @@ class Motions:
     precondition: Operator
     solver: str
     close: Callable[[], None]
+    springs: NDArray[np.int64]
 
     @property
     def free(self) -> int:
@@ -64,7 +69,7 @@ def is_direct(solver: str) -> bool:
     return solver.startswith("cholesky")
 
 
-def held_motions(system: HeldSystem) -> Motions:
+def held_motions(system: HeldSystem, nodes: Array) -> Motions:
     """What the supports leave. Mean rows are met exactly, whatever the solver's approximation does with them."""
     rows = system.mean_rows.toarray()
     precondition: Operator = system.precondition
@@ -76,7 +81,8 @@ def held_motions(system: HeldSystem) -> Motions:
             y = system.precondition(r)
             return np.asarray(y - Z @ (small @ (rows @ y)))
 
-    return Motions(system.elimination, rows, system.apply, precondition, system.solver.name, lambda: None)
+    springs = spring_unknowns(nodes, system.T) if rows.shape[0] else NO_SPRINGS
+    return Motions(system.elimination, rows, system.apply, precondition, system.solver.name, lambda: None, springs)
 
 
 def free_part_constraints(model: SolidModel) -> Constraints:
@@ -139,4 +145,4 @@ def free_motions(
         return elimination.gather(model.K @ elimination.expand(y))
 
     rows = np.zeros((0, elimination.T.shape[1]))
-    return Motions(elimination, rows, stiffness, precondition, system.solver.name, system.close)
+    return Motions(elimination, rows, stiffness, precondition, system.solver.name, system.close, NO_SPRINGS)

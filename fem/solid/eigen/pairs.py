@@ -1,9 +1,9 @@
 """Extreme eigenpairs of B x = mu A x, A positive definite, with a fixed approximation of A^-1.
 
 Block Davidson method: the space grows by the approximate inverse applied to the residuals of the pairs that are wanted
-and not yet found, Rayleigh and Ritz take the best of it, and it is cut back to its best vectors when it is full
-(E. R. Davidson, J. Comput. Phys. 17 (1975) 87; thick restart as in Stathopoulos, Saad and Wu, SIAM J. Sci. Comput. 19
-(1998) 227; from memory). With the exact inverse the space is a block Krylov space of A^-1 B and a few steps do. Blocks
+and not yet found, Rayleigh and Ritz take the best of it, and it is cut back when it is full, to its best vectors and
+those of the round before, which keep the pace of conjugate directions (E. R. Davidson, J. Comput. Phys. 17 (1975) 87;
+A. Stathopoulos and Y. Saad, Electron. Trans. Numer. Anal. 7 (1998) 163; from memory). With the exact inverse the space is a block Krylov space of A^-1 B and a few steps do. Blocks
 are what makes repeated eigenvalues come complete.
 
 Both uses are of this form, with A the stiffness: vibration has B the mass and mu = 1 / omega^2, all positive; buckling
@@ -90,10 +90,10 @@ def extreme_pairs(
     """
     wanted = tolerance.size
     keep = max(2 * wanted, start.shape[1])
-    room = max(room, keep + 2 * wanted)
+    room = max(room, keep + 3 * wanted)
     space, rng = _Space(pencil), np.random.default_rng(0)
     space.add(start)
-    residual = np.full(wanted, np.inf)
+    residual, last = np.full(wanted, np.inf), np.zeros((0, 0))
     mu = np.zeros(0)
     x = np.zeros((start.shape[0], 0))
     for done in range(1, rounds + 1):
@@ -110,13 +110,26 @@ def extreme_pairs(
             return Pairs(mu, x, residual, done)
         if space.size + int(open_.sum()) > room:
             kept = np.union1d(largest(values, keep), chosen)
-            space.rotate(S[:, kept])
+            space.rotate(_with(S[:, kept], last))
+            last = np.eye(space.size, kept.size)[:, np.searchsorted(kept, chosen)]
+        else:
+            last = S[:, chosen]
         new = new[:, open_] / np.where(size[open_] > 0, size[open_], 1.0)
         if chosen.size < wanted:  # B takes the start to fewer directions than are wanted
             new = np.hstack([new, pencil.precondition(rng.standard_normal((x.shape[0], wanted - chosen.size)))])
         if not space.add(new):
             break
     return Pairs(mu, x, residual, done)
+
+
+def _with(S: Array, last: Array) -> Array:
+    """Orthonormal S (k, s) and what `last`, of the first of the k coordinates, has outside it."""
+    padded = np.zeros((S.shape[0], last.shape[1]))
+    padded[: last.shape[0]] = last
+    for _ in range(2):
+        padded -= S @ (S.T @ padded)
+    u, s, _ = np.linalg.svd(padded, full_matrices=False)
+    return np.hstack([S, u[:, s > 1e-8]])
 
 
 class _Space:

@@ -89,7 +89,7 @@ def solid_vibration(
     elif system is None:
         raise SolveError("Natural frequencies of a held part need its held system.")
     else:
-        motions = held_motions(system)
+        motions = held_motions(system, model.mesh.nodes)
         apply = _reduced_mass(motions.elimination, mass)
     try:
         pairs, counted = _solve(model, motions, apply, mass, wanted.modes, 6 if wanted.free else 0, budget)
@@ -171,7 +171,7 @@ def _count(motions: Motions, K: BlockMatrix, mass: _Mass, shift: float, budget: 
     blocks = K.blocks - shift * mass.part.blocks
     matrix = motions.elimination.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
     rows = (mass.remote @ T).toarray()
-    return negative_count(matrix, LowRank(rows, np.full(rows.shape[0], -shift)), motions.rows, budget)
+    return negative_count(matrix, LowRank(rows, np.full(rows.shape[0], -shift)), motions.rows, budget, motions.springs)
 
 
 def _modes(
