@@ -34,7 +34,7 @@ def column() -> Eigenmodes:
 
 
 def test_cantilever_column(column: Eigenmodes) -> None:
-    # REFERENCES E6: a quarter of the pinned load; about the strong axis and for three quarter waves 9/4 and 9 times that
+    # REFERENCES E6: a quarter of the pinned load; about the strong axis and for three quarter waves 9/4 and 9 times it
     assert [m.value for m in column.modes] == pytest.approx(EULER / 4 * np.array([1, 9 / 4, 9]), rel=1e-2)
     assert [m.kind for m in column.modes] == [ABOUT_Z, ABOUT_Y, ABOUT_Z]
     assert failed(column) == []
@@ -87,8 +87,8 @@ def test_lateral_buckling_either_way() -> None:
 
 
 def test_the_other_sign_is_looked_for() -> None:
-    """Push by a unit and pull by a tenth of it cannot both be loads of one column: a bar held at both ends and pulled in
-    the middle is pushed on one side and pulled on the other, so that it buckles either way at one factor."""
+    """A bar held at both ends and pulled along at its middle is pushed on one side and pulled on the other, so that it
+    buckles either way at one factor."""
     ends = [Support(s, f"arm.{s}", {"x": 0.0, "y": 0.0, "z": 0.0}) for s in ("start", "end")]
     ring = {"arm.ring": lambda x: (np.abs(x[0] - 500.0) < 25.0) & (np.hypot(x[1], x[2]) > 9.0)}
     load = RegionLoad("pull", "arm.ring", (1.0, 0.0, 0.0))

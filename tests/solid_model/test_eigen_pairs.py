@@ -67,7 +67,8 @@ def test_a_start_that_holds_an_invariant_space_only() -> None:
 
 def test_no_pair_is_given_as_found_that_is_not() -> None:
     A, B = dense(np.random.default_rng(1).uniform(0.9, 1.0, 100))
-    found = extreme_pairs(pencil(A, B, 10.0), np.random.default_rng(2).standard_normal((100, 4)), np.full(4, 1e-8), rounds=3)
+    start = np.random.default_rng(2).standard_normal((100, 4))
+    found = extreme_pairs(pencil(A, B, 10.0), start, np.full(4, 1e-8), rounds=3)
     assert found.rounds == 3
     assert found.residual.max() > 1e-8
 

@@ -61,7 +61,7 @@ def test_ratios_of_the_higher_frequencies(cantilever: Eigenmodes) -> None:
 
 
 def test_modes_carry_their_share_of_the_mass(cantilever: Eigenmodes) -> None:
-    # effective mass of a uniform cantilever (2 sigma / beta L)^2 with sigma 0.734096, 1.018467 (Blevins 1979, table 8-1)
+    # effective mass of a uniform cantilever (2 sigma / beta L)^2, sigma 0.734096, 1.018467 (Blevins 1979, table 8-1)
     first, second = (m.mass_share for m in cantilever.modes if m.kind == ABOUT_Y and m.value < 200)
     assert first[2] == pytest.approx((2 * 0.734096 / 1.875104) ** 2, rel=5e-3)
     assert second[2] == pytest.approx((2 * 1.018467 / 4.694091) ** 2, rel=1e-2)
@@ -134,7 +134,7 @@ def test_remote_mass_with_inertia_on_a_lever(coupling: str) -> None:
     about_y, about_z = plane(E * 20 * 30**3 / 12, inertia[1]), plane(E * 30 * 20**3 / 12, inertia[2])
     assert frequencies(result, ABOUT_Y) == pytest.approx(about_y, rel=5e-3)
     assert frequencies(result, ABOUT_Z) == pytest.approx(about_z, rel=5e-3)
-    # the torsion constant of 20 x 30 is 0.196 x 30 x 20^3 (Timoshenko & Goodier, from memory); the mesh is coarse for it
+    # torsion constant of 20 x 30: 0.196 x 30 x 20^3 (Timoshenko & Goodier, from memory); the mesh is coarse for it
     torsion = np.sqrt(G * 0.196 * 30 * 20**3 / L / inertia[0]) / (2 * np.pi)
     assert frequencies(result, "torsion") == pytest.approx([torsion], rel=2.5e-2)
 

@@ -142,7 +142,8 @@ def _levers(model: SolidModel, factors: Array) -> tuple[Array, sp.csr_matrix]:
     """Weights and rows of the levers of all remote forces under load factors (loads,)."""
     part, mesh = model.part, model.mesh
     by_name = dict(zip(model.loads, factors, strict=True))
-    pull = sum((by_name[b.name] * np.array(b.force_per_mass) for b in part.loads if isinstance(b, BodyLoad)), np.zeros(3))
+    bodies = [load for load in part.loads if isinstance(load, BodyLoad)]
+    pull = sum((by_name[load.name] * np.array(load.force_per_mass) for load in bodies), np.zeros(3))
     weights, rows = [np.zeros(0)], [sp.csr_matrix((0, 3 * mesh.nodes.shape[1]))]
     for point in part.loads:
         if isinstance(point, RemotePoint):
@@ -243,8 +244,8 @@ class _Study:
             if not (found.residual <= tolerance[: found.mu.size])[real].all():
                 raise SolveError(
                     f"The buckling factors of the case {self.study.case!r} do not converge: residual "
-                    f"{found.residual[real].max():.1e} after {found.rounds} rounds, allowed {self.allowed:.0e}. Ask for "
-                    "fewer modes, or mesh the part again."
+                    f"{found.residual[real].max():.1e} after {found.rounds} rounds, allowed {self.allowed:.0e}. Ask "
+                    "for fewer modes, or mesh the part again."
                 )
             counts = [self._missing(found, modes, sign, attempt == 2) for sign in (1.0, -1.0)] if not reason else []
             if all(c is not None and c[0] <= 0 for c in counts):
@@ -252,9 +253,8 @@ class _Study:
             guards, start = guards + 4, found.x
         known = [c for c in counts if c is not None]
         missing = sum(abs(c[0]) for c in known)
-        self._check(
-            "factors missed, by the inertia of K + G", float(missing), 0.0, reason or "; ".join(c[1] for c in known if c[1])
-        )
+        note = reason or "; ".join(c[1] for c in known if c[1])
+        self._check("factors missed, by the inertia of K + G", float(missing), 0.0, note)
         if missing:
             raise SolveError(
                 f"Buckling factors of the case {self.study.case!r} are missing: {self.checks[-1].note}. Mesh the part "

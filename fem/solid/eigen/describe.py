@@ -27,7 +27,8 @@ LOCAL = 0.5
 class ShapeSections:
     """Sections of the (one) member at SHAPE_STATIONS equal steps.
 
-    cuts, frame; at (s,) mm; area (s,) mm^2; second (s, 3, 3) int (r.r I - r r) dA about the centroid, member axes, mm^4.
+    cuts, frame; at (s,) mm; area (s,) mm^2; second (s, 3, 3) int (r.r I - r r) dA about the centroid, in member axes,
+    mm^4.
     """
 
     cuts: list[Cut]
@@ -92,7 +93,7 @@ def vibration_kind(sections: ShapeSections, mean: Array, turn: Array, share: flo
     """Name of one shape (s, 3) by the kinetic energy of its sections."""
     u, w = mean @ sections.frame.axes.T, turn @ sections.frame.axes.T
     rotary = np.einsum("sii,si->si", sections.second, w**2)
-    sums = np.trapezoid(np.hstack([sections.area[:, None] * u**2, rotary]), sections.at, axis=0)
+    sums = np.asarray(np.trapezoid(np.hstack([sections.area[:, None] * u**2, rotary]), sections.at, axis=0))
     return _kind(sums[0], sums[2] + sums[4], sums[1] + sums[5], sums[3], share, PURE)
 
 
@@ -100,9 +101,9 @@ def buckling_kind(sections: ShapeSections, mean: Array, turn: Array, share: floa
     """Name of one shape (s, 3) by the turns of its sections; along the line only where these are small."""
     u, w = mean @ sections.frame.axes.T, turn @ sections.frame.axes.T
     radius = np.trace(sections.second, axis1=1, axis2=2)[:, None] / sections.area[:, None]
-    moved = np.trapezoid(np.hstack([u**2, radius * w**2]), sections.at, axis=0)
+    moved = np.asarray(np.trapezoid(np.hstack([u**2, radius * w**2]), sections.at, axis=0))
     along = moved[0] / max(float(moved.sum()), 1e-300)
-    turned = np.trapezoid(w**2, sections.at, axis=0)
+    turned = np.asarray(np.trapezoid(w**2, sections.at, axis=0))
     turned = turned / max(float(turned.sum()), 1e-300)
     if along > PURE:
         return _kind(1.0, 0.0, 0.0, 0.0, share, PURE)

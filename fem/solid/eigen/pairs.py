@@ -3,8 +3,8 @@
 Block Davidson method: the space grows by the approximate inverse applied to the residuals of the pairs that are wanted
 and not yet found, Rayleigh and Ritz take the best of it, and it is cut back when it is full, to its best vectors and
 those of the round before, which keep the pace of conjugate directions (E. R. Davidson, J. Comput. Phys. 17 (1975) 87;
-A. Stathopoulos and Y. Saad, Electron. Trans. Numer. Anal. 7 (1998) 163; from memory). With the exact inverse the space is a block Krylov space of A^-1 B and a few steps do. Blocks
-are what makes repeated eigenvalues come complete.
+A. Stathopoulos and Y. Saad, Electron. Trans. Numer. Anal. 7 (1998) 163; from memory). With the exact inverse the space
+is a block Krylov space of A^-1 B and a few steps do. Blocks are what makes repeated eigenvalues come complete.
 
 Both uses are of this form, with A the stiffness: vibration has B the mass and mu = 1 / omega^2, all positive; buckling
 has B the geometric stiffness and mu = -1 / factor, of either sign. The largest mu are wanted in size.

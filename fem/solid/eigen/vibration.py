@@ -13,7 +13,7 @@ from fem.solid.cut import Cutter
 from fem.solid.eigen.count import APART, LowRank, negative_count, separated, too_large
 from fem.solid.eigen.describe import section_shapes, section_shares, shape_sections, vibration_kind
 from fem.solid.eigen.local import mass_matrix
-from fem.solid.eigen.motions import Motions, free_motions, free_part_constraints, held_motions
+from fem.solid.eigen.motions import Motions, Operator, free_motions, free_part_constraints, held_motions
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs
 from fem.solid.eigen.remote import remote_mass_rows
 from fem.solid.eigen.rigid import orthonormal, rigid_motions
@@ -99,7 +99,7 @@ def solid_vibration(
     return _modes(model, motions, mass, pairs, checks, cutter)
 
 
-def _reduced_mass(elimination: Elimination, mass: _Mass):  # type: ignore[no-untyped-def]
+def _reduced_mass(elimination: Elimination, mass: _Mass) -> Operator:
     return lambda y: elimination.gather(mass @ elimination.expand(y))
 
 
@@ -117,7 +117,7 @@ def _rigid_unknowns(model: SolidModel, elimination: Elimination, mass: _Mass) ->
 
 
 def _solve(
-    model: SolidModel, motions: Motions, apply, mass: _Mass, modes: int, below: int, budget: Budget  # type: ignore[no-untyped-def]
+    model: SolidModel, motions: Motions, apply: Operator, mass: _Mass, modes: int, below: int, budget: Budget
 ) -> tuple[Pairs, Check]:
     """The lowest `modes` pairs, counted; `below`: rigid motions that the count finds as well."""
     available = motions.free - motions.rows.shape[0] - below
@@ -157,7 +157,8 @@ def _solve(
         if missing <= 0:
             break
         guards, start = guards + missing + 2, found.x
-    check = Check("natural frequencies missed, by the inertia of K - omega^2 M", float(missing), 0.0, missing == 0, note)
+    name = "natural frequencies missed, by the inertia of K - omega^2 M"
+    check = Check(name, float(missing), 0.0, missing == 0, note)
     if missing:
         raise SolveError(
             f"{abs(missing)} natural frequencies too {'many' if missing < 0 else 'few'} were found ({note}). Mesh the "
