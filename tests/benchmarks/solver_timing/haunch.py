@@ -13,14 +13,14 @@ from typing import Any
 
 import numpy as np
 
+from geometry.part import Vibration
 from solver_timing import meshes
 from solver_timing.child import Tell
 from solver_timing.measure import Clock, PeakMemory, answer, triad_rate
-from solver_timing.profile import INSIDE, MOVED, STAGES
+from solver_timing.profile import INSIDE, MODES, MOVED, STAGES
 from solver_timing.shapes import FIRST_CASE, SHAPES
 from solver_timing.watch import Watch
 
-MODES = 6
 WARM = (8, 2, 2)
 
 
@@ -39,7 +39,7 @@ def run(job: dict[str, Any], tell: Tell) -> None:
     part = meshes.part_of(SHAPES[job["shape"]])
     budget = Budget(threads=job["threads"], memory=job["budget"])
     choice = job.get("solver", "auto")
-    warming, _ = clocked(lambda: _warm_up(budget))
+    warming, _ = clocked(lambda: _warm_up(budget, job["modes"]))
     mesh = meshes.load(Path(job["mesh"]))
     tell(
         imports=loading,
@@ -49,7 +49,7 @@ def run(job: dict[str, Any], tell: Tell) -> None:
         tets=mesh.tets.shape[1],
     )
     for repeat in range(job["repeats"]):
-        _displacements(part, mesh, budget, choice, tell, modes=job["modes"] and repeat == job["repeats"] - 1)
+        _displacements(part, mesh, budget, choice, tell, modes=job["modes"] if repeat == job["repeats"] - 1 else 0)
     if job["results"]:
         _results(part, mesh, budget, choice, tell)
 
@@ -67,7 +67,7 @@ def _one_case(part: Any) -> Any:
     return replace(part, cases=tuple(case for case in part.cases if case.name == FIRST_CASE))
 
 
-def _warm_up(budget: Any) -> None:
+def _warm_up(budget: Any, modes: int) -> None:
     from fem.solid.model import build_model
     from fem.solid.solve import solve_solid
     from fem.solid.system import HeldSystem
@@ -79,6 +79,8 @@ def _warm_up(budget: Any) -> None:
         system = HeldSystem(model.K, model.constraints, mesh, budget, choice)
         for loads in (_loads(model), _loads(model)[:, :1]):
             system.solve(np.ascontiguousarray(loads))
+        if modes:
+            _modes(model, system, budget, 1, lambda **facts: None)
         system.close()
     solve_solid(_one_case(part), mesh, budget)
 
@@ -127,13 +129,25 @@ def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, m
         six, _ = clocked(lambda: system.solve(np.ascontiguousarray(loads)))
         tell(solve_six=six, six_over_one=six / solving, six_iterations=system.solver.iterations)
         if modes:
-            _modes(model, system, budget, tell)
+            _modes(model, system, budget, modes, tell)
     finally:
         system.close()
 
 
-def _modes(model: Any, system: Any, budget: Any, tell: Tell) -> None:
-    raise NotImplementedError
+def _modes(model: Any, system: Any, budget: Any, count: int, tell: Tell) -> None:
+    """The lowest natural frequencies on the system that is set up already."""
+    from fem.solid.eigen import solid_vibration
+
+    wanted = replace(model, part=replace(model.part, vibration=Vibration(count)))
+    with Watch(MODES) as watch:
+        seconds, found = clocked(lambda: solid_vibration(wanted, system, budget))
+    tell(
+        modes=seconds,
+        modes_parts=watch.seconds,
+        modes_missing=watch.missing,
+        frequencies=[mode.value for mode in found.modes],
+        modes_notes=[check.note for check in found.checks if check.note],
+    )
 
 
 def _results(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell) -> None:

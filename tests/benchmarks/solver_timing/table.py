@@ -145,8 +145,8 @@ def profile(row: Row) -> str:
             f"{facts['triad'] / 1e9:.1f} GB/s that a triad reaches in the same process, so the solve takes "
             f"{facts['solve'] / least:.1f} times the least time"
         )
-    if "modes_note" in facts:
-        text += f". {facts['modes_note']}"
+    if "modes" in facts:
+        text += f". Modes {seconds(facts['modes'])} s ({_shares(facts['modes_parts'], facts['modes'])})"
     if "after" in facts:
         text += f". After the displacements: {', '.join(f'{k} {seconds(v)} s' for k, v in facts['after'].items())}"
     return text + "."
