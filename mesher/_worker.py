@@ -1,4 +1,4 @@
-"""The child process: ``python -m mesher._worker FOLDER`` does the job in that folder and ends.
+"""The child process: a copy of the template of `geometry.process` that does one job, in a folder, and ends.
 
 Reads ``job.json``; writes ``arrays.npz``, then ``answer.json`` (last, so that its presence means success), and
 ``log.txt`` with everything the kernel printed.
@@ -6,27 +6,21 @@ Reads ``job.json``; writes ``arrays.npz``, then ``answer.json`` (last, so that i
 
 from __future__ import annotations
 
-import ctypes
 import json
 import os
-import signal
-import sys
-import threading
+import socket
 from pathlib import Path
 from typing import Any
 
 
-def _die_with_parent() -> None:
-    """End at once when the parent is gone: it holds the other end of standard input."""
+def prepare() -> None:
+    """Load what every job needs. gmsh is loaded, not initialised: a job begins with an untouched kernel."""
+    import numpy.lib.npyio
 
-    def wait_for_end() -> None:
-        while os.read(0, 4096):
-            pass
-        os._exit(70)
+    import mesher.gmsh_outlines
+    import mesher.gmsh_solid
 
-    threading.Thread(target=wait_for_end, daemon=True).start()
-    if sys.platform == "linux":  # the kernel's own way also works while a library holds the interpreter lock
-        ctypes.CDLL(None).prctl(1, signal.SIGKILL)  # 1: PR_SET_PDEATHSIG
+    assert numpy.lib.npyio is not None and mesher.gmsh_outlines is not None and mesher.gmsh_solid is not None
 
 
 def _limit_memory(address_space: int) -> None:
@@ -60,9 +54,11 @@ def _do(job: dict[str, Any], room: Path) -> tuple[dict[str, Any], dict[str, Any]
     return provoke(job)
 
 
-def main(folder: str) -> int:
-    room = Path(folder)
-    _die_with_parent()
+def serve(order: dict[str, Any], data: socket.socket) -> int:
+    """Do the job in the folder ``order["folder"]``; returns the exit status."""
+    data.close()
+    room = Path(order["folder"])
+    os.chdir(room)
     job = json.loads((room / "job.json").read_text(encoding="utf-8"))
     _limit_memory(job["limits"]["address_space"])
     _redirect_output(room / "log.txt")
@@ -78,9 +74,3 @@ def main(folder: str) -> int:
     part.write_text(json.dumps(answer), encoding="utf-8")
     part.rename(room / "answer.json")
     return 0
-
-
-if __name__ == "__main__":
-    code = main(sys.argv[1])
-    sys.stdout.flush()
-    os._exit(code)  # no teardown: the kernels' destructors have nothing left to do, and can crash

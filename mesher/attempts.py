@@ -44,6 +44,7 @@ class Attempt:
 
 
 CHAIN: tuple[Attempt, ...] = (
+    Attempt("frontal surface, HXT volume", _FRONTAL, _HXT),
     Attempt("frontal surface, Delaunay volume", _FRONTAL, _DELAUNAY_3D),
     Attempt("adaptive surface, Delaunay volume", _MESH_ADAPT, _DELAUNAY_3D),
     Attempt("Delaunay surface, HXT volume", _DELAUNAY_2D, _HXT),
@@ -57,14 +58,16 @@ def gmsh_options(attempt: Attempt) -> dict[str, float]:
     return {
         "Mesh.Algorithm": attempt.surface,
         "Mesh.Algorithm3D": attempt.volume,
-        "Mesh.ElementOrder": 2,
+        "Mesh.ElementOrder": 1,  # raised to 2 at the end
         "Mesh.SecondOrderLinear": 0,
-        # One element of the wall's thickness leaves slivers that the plain optimisation cannot reach.
+        "Mesh.LcIntegrationPrecision": 1e-4,  # of the number of elements along an edge: the default, 1e-9, takes long
         "Mesh.Optimize": 1,
-        "Mesh.OptimizeThreshold": 0.5,
-        "Mesh.OptimizeNetgen": 1,
+        # HXT works on until it is reached, which takes it minutes where walls are one element thick and it is 0.5.
+        "Mesh.OptimizeThreshold": 0.35 if attempt.volume == _HXT else 0.5,
+        "Mesh.OptimizeNetgen": 0,  # see `mesher.gmsh_solid`
         "Mesh.HighOrderOptimize": attempt.optimise,
         "Mesh.HighOrderThresholdMin": 0.1,
+        "Mesh.HighOrderNumLayers": 1,  # around a bad element; more take many times as long and were no better
         # The size field says it all: gmsh's own sources of sizes would be hidden settings.
         "Mesh.MeshSizeExtendFromBoundary": 0,
         "Mesh.MeshSizeFromPoints": 0,

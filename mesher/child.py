@@ -1,23 +1,18 @@
-"""One meshing job in a fresh child process, bounded in time and memory.
+"""One meshing job in a child process of its own, bounded in time and memory.
 
 The mesh kernel is a process-wide singleton that can crash, hang or eat the memory. Each job therefore has a
-process of its own, started afresh (never forked), so that nothing of an earlier job, not even the state of a
-random generator, reaches the next one. The job goes in as JSON and raw bytes, arrays come back as `.npz`
-without pickle, all in a temporary folder.
+process of its own, a copy of a template that has loaded the kernel and never used it (`geometry.process`), so that
+nothing of an earlier job, not even the state of a random generator, reaches the next one. The job goes in as JSON and
+raw bytes, arrays come back as `.npz` without pickle, all in a temporary folder.
 """
 
 from __future__ import annotations
 
 import json
-import os
-import signal
-import subprocess
-import sys
 import tempfile
 import threading
 import time
 from collections.abc import Mapping
-from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Literal
@@ -26,6 +21,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from geometry.endings import ended_from_outside, signal_name, told_from_outside
+from geometry.process import Job, Template, TemplateFailure, shared_template
 
 Ending = Literal["refused", "time", "memory", "crash", "killed", "stopped"]
 
@@ -62,12 +58,18 @@ class ChildResult:
     peak_memory: float
 
 
+def mesh_template() -> Template:
+    """The process that has the mesh kernel loaded; `Template.start` begins to load it without waiting."""
+    return shared_template("mesher._worker")
+
+
 def run_child(
     job: Mapping[str, Any],
     seconds: float,
     memory: float,
     files: Mapping[str, bytes] | None = None,
     stop: threading.Event | None = None,
+    template: Template | None = None,
 ) -> ChildResult:
     """Run one job of `mesher._worker` and wait for it.
 
@@ -76,13 +78,16 @@ def run_child(
     job
         JSON-like; ``job["task"]`` names the task (see `mesher._worker`).
     seconds
-        Wall-clock limit. When it is over, the child and whatever it started are killed.
+        Wall-clock limit, from the start of the job's process (loading the kernel comes before, once). When it is
+        over, the child and whatever it started are killed.
     memory
         Limit of the child's resident memory, MiB.
     files
         Further files for the child's folder, by name.
     stop
         Set from another thread, it ends the child at once.
+    template
+        Where the kernel is loaded; this process's own if left out.
 
     Raises
     ------
@@ -95,69 +100,47 @@ def run_child(
             (room / name).write_bytes(content)
         limits = {"address_space": int(memory) + _ADDRESS_SPACE_MARGIN}
         (room / "job.json").write_text(json.dumps({**job, "limits": limits}), encoding="utf-8")
-        started = time.monotonic()
-        process = _start(room)
         try:
-            ending, peak = _watch(process, started + seconds, memory, stop)
-        finally:
-            _kill(process)
-        return _collect(room, process.returncode, ending, time.monotonic() - started, peak, seconds, memory)
-
-
-def _start(room: Path) -> subprocess.Popen[bytes]:
-    root = str(Path(__file__).resolve().parent.parent)
-    path = os.pathsep.join(p for p in (root, os.environ.get("PYTHONPATH", "")) if p)
-    # One thread: the parallel mesh algorithms do not give the same mesh twice.
-    env = {**os.environ, "PYTHONPATH": path, "OMP_NUM_THREADS": "1", "OPENBLAS_NUM_THREADS": "1"}
-    return subprocess.Popen(
-        [sys.executable, "-P", "-m", "mesher._worker", str(room)],
-        stdin=subprocess.PIPE,  # held open, never written: its end tells the child that we are gone
-        stdout=subprocess.DEVNULL,
-        stderr=subprocess.DEVNULL,
-        cwd=room,
-        env=env,
-        start_new_session=True,
-    )
+            cancelled = stop.is_set if stop is not None else lambda: False
+            process = (template or mesh_template()).submit({"folder": folder}, cancelled)
+        except TemplateFailure as failure:
+            if cancelled():
+                raise ChildFailure("stopped", "stopped on request", "") from None
+            raise _not_started(failure, memory) from failure
+        started = time.monotonic()
+        with process:
+            code, ending, peak = _watch(process, started + seconds, memory, stop)
+        return _collect(room, code, ending, time.monotonic() - started, peak, seconds, memory)
 
 
 def _watch(
-    process: subprocess.Popen[bytes], deadline: float, memory: float, stop: threading.Event | None
-) -> tuple[Ending | None, float]:
-    """Wait for the end; returns why it must be killed (None: it ended by itself) and the peak MiB seen."""
+    process: Job, deadline: float, memory: float, stop: threading.Event | None
+) -> tuple[int, Ending | None, float]:
+    """Wait for the end; returns the exit status, why the child must be killed (None: it ended by itself) and the peak
+    MiB seen."""
     peak = 0.0
     while True:
-        try:
-            process.wait(timeout=0.02)
-            return None, peak
-        except subprocess.TimeoutExpired:
-            pass
+        if (code := process.wait(0.02)) is not None:
+            return code, None, peak
         if stop is not None and stop.is_set():
-            return "stopped", peak
-        resident = _resident(process.pid)
+            return 0, "stopped", peak
+        resident = _resident(process)
         peak = max(peak, resident)
         if resident > memory:
-            return "memory", peak
+            return 0, "memory", peak
         if time.monotonic() > deadline:
-            return "time", peak
+            return 0, "time", peak
 
 
-def _resident(pid: int) -> float:
+def _resident(process: Job) -> float:
     """Resident memory of a process, MiB; 0 where the system does not tell (the address limit still holds)."""
-    try:
-        with open(f"/proc/{pid}/statm", encoding="ascii") as stat:
-            return int(stat.read().split()[1]) * os.sysconf("SC_PAGE_SIZE") / 2**20
-    except (OSError, IndexError, ValueError):
-        return 0.0
+    return process.resident()
 
 
-def _kill(process: subprocess.Popen[bytes]) -> None:
-    """End the child's whole session, then reap the child."""
-    if process.poll() is None:
-        with suppress(ProcessLookupError):
-            os.killpg(process.pid, signal.SIGKILL)
-    if process.stdin is not None:
-        process.stdin.close()
-    process.wait()
+def _not_started(failure: TemplateFailure, memory: float) -> ChildFailure:
+    if killer := ended_from_outside(failure.code or 0):
+        return ChildFailure("killed", told_from_outside("the mesh process", killer, memory), "")
+    return ChildFailure("crash", f"the mesh process could not be started ({failure}; exit code {failure.code})", "")
 
 
 def _collect(

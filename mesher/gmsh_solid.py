@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from pathlib import Path
 from typing import Any
 
@@ -14,6 +15,11 @@ from mesher.gmsh_session import kernel_version, session
 from mesher.matching import match_faces
 from mesher.size_field import build_field
 from mesher.sizes import Sizes
+
+
+SLIVER = 0.03
+"""Least scaled Jacobian of the straight elements that is let pass without the slow improvement. The gate after meshing
+asks for 0.02 of the curved ones."""
 
 
 class WrongKernel(ValueError):
@@ -50,9 +56,44 @@ def mesh_brep(job: dict[str, Any], path: Path) -> tuple[dict[str, Any], dict[str
             raise OverBudget(nodes)
         for name, value in job["options"].items():
             gmsh.option.setNumber(name, value)
-        gmsh.model.mesh.generate(3)
+        _generate(job["extent"])
         answer = {"version": version, "volume": volume, "estimated_nodes": nodes, "integrals": integrals}
         return answer, {**_arrays(faces), "tolerance": np.array(tolerance)}
+
+
+def _generate(extent: float) -> None:
+    """Straight elements, improved where that is needed; then curved ones.
+
+    The kernel's slower improvement takes longer than all the rest and adds a tenth of nodes, so it is called only when
+    the quick one has left slivers.
+    """
+    gmsh.model.mesh.generate(3)
+    tags, _ = gmsh.model.mesh.getElementsByType(4)
+    if len(tags) == 0:
+        raise ValueError("the kernel made no tetrahedra")
+    if gmsh.model.mesh.getElementQualities(tags, "minSICN").min() < SLIVER:
+        gmsh.model.mesh.optimize("Netgen")
+    gmsh.model.mesh.setOrder(2)
+    _improve_curved(extent)
+
+
+def _improve_curved(extent: float) -> None:
+    """Move nodes where curving has spoiled elements.
+
+    The kernel adds up in an order that follows memory addresses, so that the same job does not give the last digits
+    twice. Nodes that it has moved are therefore put on a grid that is far finer than any tolerance and far coarser than
+    those digits.
+    """
+    wanted = gmsh.option.getNumber("Mesh.HighOrderOptimize")
+    if not wanted:
+        return
+    _, before, _ = gmsh.model.mesh.getNodes()
+    gmsh.model.mesh.optimize("HighOrderElastic" if wanted == 2 else "HighOrder")
+    tags, after, _ = gmsh.model.mesh.getNodes()
+    points = after.reshape(-1, 3)
+    grain = 2.0 ** round(math.log2(1e-9 * extent))
+    for k in np.flatnonzero((points != before.reshape(-1, 3)).any(axis=1)):
+        gmsh.model.mesh.setNode(int(tags[k]), (np.round(points[k] / grain) * grain).tolist(), [])
 
 
 def _face_marks() -> list[dict[str, Any]]:

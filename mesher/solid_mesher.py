@@ -20,7 +20,7 @@ from mesher.estimate import estimated_nodes, node_integrals, nodes_within, solve
 from mesher.named_mesh import NamedMesh
 from mesher.sizes import Sizes, sizes_for
 
-RECIPE_FORMAT = 1
+RECIPE_FORMAT = 2
 
 
 def mesh_solid(

@@ -17,9 +17,9 @@ from geometry.budget import Budget
 from geometry.named_solid import NamedSolid
 from geometry.part import Part
 from studies.check.folder import RESULT, refuse_existing, remove_stale, run_folder
-from studies.check.record import SLOWER_SOLVER, make_result
+from studies.check.record import SLOWER_SOLVER, kept_cases, make_result
 from studies.check.result import CheckResult
-from studies.check.solid_child import SolidChild
+from studies.check.solid_child import SolidChild, cad_template
 from studies.check.stages import Clock, Event, Listener, blamed_on
 from studies.check.version import RESULTS
 
@@ -75,6 +75,7 @@ def check(part: Part | str | Path, out: str | Path, budget: Budget | None = None
     out, budget, clock = Path(out), budget or Budget(), Clock(listener)
     started = datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
     refuse_existing(out, replace)
+    begin_loading()
     with clock.stage("spec"):
         name, resolved = _read(part)
     models = build_models(resolved, budget, clock, solver)
@@ -94,6 +95,14 @@ def _read(part: Part | str | Path) -> tuple[str, Part]:
     from geometry.spec import read_part
 
     return Path(part).name, read_part(part)
+
+
+def begin_loading() -> None:
+    """Begin to load both kernels in their processes, without waiting for them. A later run finds them loaded."""
+    from mesher.child import mesh_template
+
+    cad_template().start()
+    mesh_template().start()
 
 
 def build_models(part: Part, budget: Budget, clock: Clock, solver: Choice = "auto") -> Models:
@@ -163,7 +172,7 @@ def write_run(room: Path, result: CheckResult, models: Models, clock: Clock, pic
     from studies.report.summary import summary
 
     (room / "part.step").write_bytes(models.named_solid.step)
-    write_fields(room / "solid.vtu", models.mesh, models.solid)
+    write_fields(room / "solid.vtu", models.mesh, models.solid, kept_cases(models.part, result.travels))
     if pictures:
         from studies.report.pictures import draw_pictures
 

@@ -1,78 +1,99 @@
 """The solid, built in a child process that is bounded in time and memory.
 
 The CAD kernel holds the interpreter's lock for seconds and can crash or hang; in a process of its own it can
-do neither harm to the run, and the beam model is solved meanwhile. The part goes in and the solid comes back
-over pipes between the two processes; nothing is written to a file.
+do neither harm to the run, and the beam model is solved meanwhile. The process is a copy of a template that has the
+kernel loaded (`geometry.process`). The part goes in and the solid comes back over a socket between the two processes;
+nothing is written to a file.
 """
 
 from __future__ import annotations
 
 import contextlib
-import ctypes
 import os
 import pickle
-import signal
-import subprocess
-import sys
+import socket
 import threading
 import time
-from pathlib import Path
 
 from geometry.budget import Budget
 from geometry.endings import ended_from_outside, signal_name, told_from_outside
 from geometry.named_solid import NamedSolid
 from geometry.part import Part
 from geometry.problem import HaunchError, SolidError
+from geometry.process import Job, Template, TemplateFailure, shared_template
 
 ADDRESS_SPACE_MARGIN = 6144
 """MiB of address space above the memory limit: the CAD kernel's libraries map far more than they touch."""
+LEAST_SECONDS = 60.0
+
+
+def cad_template() -> Template:
+    """The process that has the CAD kernel loaded; `Template.start` begins to load it without waiting."""
+    return shared_template("studies.check.solid_child")
 
 
 class SolidChild:
     """A solid being built. Use as a context manager: leaving it ends the child in any case."""
 
-    def __init__(self, part: Part, budget: Budget) -> None:
-        self._deadline = time.monotonic() + max(budget.seconds, 60.0)
+    def __init__(self, part: Part, budget: Budget, template: Template | None = None) -> None:
         self._budget = budget
-        root = str(Path(__file__).resolve().parents[2])
-        path = os.pathsep.join(p for p in (root, os.environ.get("PYTHONPATH", "")) if p)
-        self._process = subprocess.Popen(
-            [sys.executable, "-P", "-m", "studies.check.solid_child", str(budget.memory + ADDRESS_SPACE_MARGIN)],
-            stdin=subprocess.PIPE, stdout=subprocess.PIPE, stderr=subprocess.DEVNULL,
-            env={**os.environ, "PYTHONPATH": path}, start_new_session=True,
-        )
+        self._seconds = max(budget.seconds, LEAST_SECONDS)
+        self._template = template or cad_template()
+        self._template.start()
         self._answer = b""
-        # The pipe must be drained while the caller works, or the child stands still.
-        self._talk = threading.Thread(target=self._converse, args=(pickle.dumps(part),), daemon=True)
+        self._fault: TemplateFailure | None = None
+        self._code: int | None = None
+        self._deadline: float | None = None
+        self._over = threading.Event()
+        self._left = threading.Event()
+        # In a thread: the kernel may still be loading, and the socket must be drained while the caller works.
+        self._talk = threading.Thread(target=self._converse, args=(pickle.dumps(part),), name="solid", daemon=True)
         self._talk.start()
 
     def __enter__(self) -> SolidChild:
         return self
 
     def __exit__(self, *_: object) -> None:
-        if self._process.poll() is None:
-            with contextlib.suppress(ProcessLookupError):
-                os.killpg(self._process.pid, signal.SIGKILL)
-        self._process.wait()
+        self._left.set()
         self._talk.join(timeout=10)
 
     def _converse(self, question: bytes) -> None:
-        assert self._process.stdin is not None and self._process.stdout is not None
+        try:
+            job = self._template.submit({"address_space": self._budget.memory + ADDRESS_SPACE_MARGIN},
+                                        self._left.is_set)
+        except TemplateFailure as fault:
+            self._fault = fault
+            self._over.set()
+            return
+        with job:
+            self._deadline = time.monotonic() + self._seconds
+            talk = threading.Thread(target=self._exchange, args=(job, question), daemon=True)
+            talk.start()
+            while (code := job.wait(0.05)) is None and time.monotonic() < self._deadline and not self._left.is_set():
+                pass
+            self._code = code
+            if code is not None:
+                talk.join(timeout=60.0)  # what it sent before it ended
+        self._over.set()
+
+    def _exchange(self, job: Job, question: bytes) -> None:
         with contextlib.suppress(OSError):  # the child is gone: `result` says so
-            self._process.stdin.write(len(question).to_bytes(8, "big") + question)
-            self._process.stdin.flush()  # left open: its end tells the child that we are gone
-            self._answer = self._process.stdout.read()
+            job.data.sendall(len(question).to_bytes(8, "big") + question)
+            pieces = []
+            while piece := job.data.recv(1 << 20):
+                pieces.append(piece)
+            self._answer = b"".join(pieces)
 
     def result(self) -> tuple[NamedSolid, float]:
         """Wait for the solid; returns it with the seconds it took.
 
         Raises `SolidError`: the builder's own, or that the child crashed or met its time limit.
         """
-        self._talk.join(timeout=max(self._deadline - time.monotonic(), 0.0))
-        if self._talk.is_alive():
-            raise SolidError(f"building the solid took longer than {max(self._budget.seconds, 60.0):g} s and was "
+        self._over.wait()
+        code = self._fault.code if self._fault is not None else self._code
+        if code is None:
+            raise SolidError(f"building the solid took longer than {self._seconds:g} s and was "
                              "stopped; look for a very small radius or a cut that only grazes the part")
-        code = self._process.wait()
         if not self._answer:
             if killer := ended_from_outside(code):
                 raise SolidError(told_from_outside("the CAD process that builds the solid", killer,
@@ -81,25 +102,27 @@ class SolidChild:
             raise SolidError(f"the CAD kernel crashed ({how}) while it built the solid; nothing was written. "
                              "Leave out edge radii and shoulder fillets one by one to find the one at fault, "
                              f"or allow more than {self._budget.memory} MiB of memory")
-        kind, content, seconds = pickle.loads(self._answer)  # noqa: S301 - from our own child, over a pipe
+        kind, content, seconds = pickle.loads(self._answer)  # noqa: S301 - from our own child, over a socket
         if kind == "solid":
             return content, seconds
         raise SolidError(content)
 
 
-def _serve(address_space: int) -> int:
-    """The child: read a part from standard input, answer with the solid or the reason why not."""
+def prepare() -> None:
+    """In the template: load what every job needs."""
+    import geometry.solid.build
+
+    assert geometry.solid.build is not None
+
+
+def serve(order: dict[str, int], data: socket.socket) -> int:
+    """In the job's process: read a part from the socket, answer with the solid or the reason why not."""
     import resource
 
-    if sys.platform == "linux":  # also while the kernel's libraries are loaded and hold the interpreter's lock
-        ctypes.CDLL(None).prctl(1, signal.SIGKILL)  # 1: PR_SET_PDEATHSIG, end with the parent
-    resource.setrlimit(resource.RLIMIT_AS, (address_space * 2**20,) * 2)
+    resource.setrlimit(resource.RLIMIT_AS, (order["address_space"] * 2**20,) * 2)
     resource.setrlimit(resource.RLIMIT_CORE, (0, 0))
-    out = os.dup(1)
-    os.dup2(2, 1)  # what the kernel prints must not reach the answer
-    size = int.from_bytes(_read(8), "big")
-    part: Part = pickle.loads(_read(size))  # noqa: S301 - from our own parent, over a pipe
-    threading.Thread(target=_end_with_parent, daemon=True).start()
+    size = int.from_bytes(_read(data, 8), "big")
+    part: Part = pickle.loads(_read(data, size))  # noqa: S301 - from our own parent, over a socket
     started = time.perf_counter()
     try:
         from geometry.solid import build_solid
@@ -109,27 +132,15 @@ def _serve(address_space: int) -> int:
         answer = ("error", str(error), 0.0)
     except Exception as error:  # noqa: BLE001 - handed to the parent, which raises it
         answer = ("error", f"the solid builder failed ({type(error).__name__}: {error})", 0.0)
-    with os.fdopen(out, "wb") as pipe:
-        pipe.write(pickle.dumps(answer))
+    data.sendall(pickle.dumps(answer))
     return 0
 
 
-def _read(size: int) -> bytes:
-    data = b""
-    while len(data) < size:
-        piece = os.read(0, size - len(data))
+def _read(data: socket.socket, size: int) -> bytes:
+    held = bytearray()
+    while len(held) < size:
+        piece = data.recv(size - len(held))
         if not piece:
             os._exit(70)
-        data += piece
-    return data
-
-
-def _end_with_parent() -> None:
-    while os.read(0, 4096):
-        pass
-    os._exit(70)
-
-
-if __name__ == "__main__":
-    # No teardown: the kernel's destructors have nothing left to do, and can crash.
-    os._exit(_serve(int(sys.argv[1])))
+        held += piece
+    return bytes(held)

@@ -61,7 +61,7 @@ def test_a_child_that_eats_memory_is_stopped_at_its_limit() -> None:
 
 
 def test_the_address_limit_holds_where_memory_cannot_be_watched(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("mesher.child._resident", lambda pid: 0.0)
+    monkeypatch.setattr("mesher.child._resident", lambda job: 0.0)
     with pytest.raises(ChildFailure) as caught:
         run_child({"task": "fault:memory"}, seconds=30.0, memory=50)
     assert caught.value.ending == "memory"
@@ -82,11 +82,11 @@ def test_an_unknown_task_is_refused() -> None:
 @pytest.mark.skipif(sys.platform != "linux", reason="looks into /proc")
 def test_the_child_dies_with_its_parent() -> None:
     code = (
-        "import mesher.child as c, threading, time, os\n"
-        "start = c._start\n"
-        "def told(room):\n"
-        "    p = start(room); print(p.pid, flush=True); return p\n"
-        "c._start = told\n"
+        "import mesher.child as c\n"
+        "watch = c._watch\n"
+        "def told(job, *rest):\n"
+        "    print(job.pid, flush=True); return watch(job, *rest)\n"
+        "c._watch = told\n"
         "c.run_child({'task': 'fault:hang'}, 60.0, 1000)\n"
     )
     with subprocess.Popen([sys.executable, "-c", code], stdout=subprocess.PIPE, text=True) as parent:

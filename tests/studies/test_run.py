@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import dataclasses
-import subprocess
-import sys
+import time
+from collections.abc import Callable, Iterator
 from pathlib import Path
 from types import ModuleType, SimpleNamespace
 from typing import Any
@@ -14,6 +14,7 @@ import pytest
 import studies.check.run as run
 from geometry.budget import Budget
 from geometry.problem import MeshError, RunError, SpecError
+from geometry.process import Template
 from studies.check.result import CheckResult
 from studies.check.solid_child import SolidChild
 from studies.check.stages import STAGES, Clock, Event
@@ -109,48 +110,70 @@ def test_a_wrong_spec_is_a_spec_error(tmp_path: Path) -> None:
     assert [p.name for p in tmp_path.iterdir()] == ["bad.toml"]
 
 
-def test_a_crash_of_the_cad_kernel_is_told_not_suffered(helpers: ModuleType, monkeypatch: pytest.MonkeyPatch) -> None:
-    """The child is made to die of a signal; the parent raises a `SolidError` and leaves no process."""
-    real = subprocess.Popen
+@pytest.fixture
+def cad(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Iterator[Callable[[str], Template]]:
+    """Makes templates whose jobs do what a line of Python says, in place of building a solid."""
+    made: list[Template] = []
 
-    def popen(command: list[str], **kinds: Any) -> subprocess.Popen[bytes]:
-        return real([sys.executable, "-c", "import os, signal; os.kill(os.getpid(), signal.SIGSEGV)"], **kinds)
+    def make(line: str) -> Template:
+        text = f"import os, signal, time\n\ndef prepare():\n    pass\n\ndef serve(order, data):\n    {line}\n"
+        (tmp_path / "fake_cad.py").write_text(text)
+        monkeypatch.setenv("PYTHONPATH", str(tmp_path))
+        made.append(Template("fake_cad"))
+        return made[-1]
 
-    monkeypatch.setattr(subprocess, "Popen", popen)
-    with SolidChild(helpers.make_part(), Budget()) as child:
-        with pytest.raises(RunError, match="SIGSEGV") as caught:
-            child.result()
-    assert caught.value.stage == "solid"
-    assert child._process.poll() is not None
+    yield make
+    for template in made:
+        template.close()
 
 
-def test_a_cad_process_ended_from_outside_is_no_fault_of_the_part(
-    helpers: ModuleType, monkeypatch: pytest.MonkeyPatch
-) -> None:
-    real = subprocess.Popen
+def test_a_crash_of_the_cad_kernel_is_told_not_suffered(helpers: ModuleType, cad: Callable[[str], Template]) -> None:
+    template = cad("os.kill(os.getpid(), signal.SIGSEGV)")
+    for _ in range(2):  # and the template is there for the next one
+        with SolidChild(helpers.make_part(), Budget(), template) as child:
+            with pytest.raises(RunError, match="SIGSEGV") as caught:
+                child.result()
+        assert caught.value.stage == "solid"
 
-    def popen(command: list[str], **kinds: Any) -> subprocess.Popen[bytes]:
-        return real([sys.executable, "-c", "import os, signal; os.kill(os.getpid(), signal.SIGKILL)"], **kinds)
 
-    monkeypatch.setattr(subprocess, "Popen", popen)
-    with SolidChild(helpers.make_part(), Budget()) as child:
+def test_a_cad_process_ended_from_outside_is_no_fault_of_the_part(helpers: ModuleType,
+                                                                  cad: Callable[[str], Template]) -> None:
+    with SolidChild(helpers.make_part(), Budget(), cad("os.kill(os.getpid(), signal.SIGKILL)")) as child:
         with pytest.raises(RunError, match="SIGKILL.*run again.*--memory") as caught:
             child.result()
     assert caught.value.stage == "solid" and "edge radii" not in str(caught.value)
 
 
-def test_a_hanging_cad_kernel_is_stopped(helpers: ModuleType, monkeypatch: pytest.MonkeyPatch) -> None:
-    real = subprocess.Popen
-
-    def popen(command: list[str], **kinds: Any) -> subprocess.Popen[bytes]:
-        return real([sys.executable, "-c", "import time; time.sleep(60)"], **kinds)
-
-    monkeypatch.setattr(subprocess, "Popen", popen)
-    with SolidChild(helpers.make_part(), Budget()) as child:
-        child._deadline = 0.0
-        with pytest.raises(RunError, match="was stopped"):
+def test_a_hanging_cad_kernel_is_stopped(helpers: ModuleType, cad: Callable[[str], Template],
+                                         monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("studies.check.solid_child.LEAST_SECONDS", 0.5)
+    template = cad("time.sleep(60)")
+    with SolidChild(helpers.make_part(), Budget(seconds=0.5), template) as child:
+        with pytest.raises(RunError, match=r"longer than 0\.5 s and was stopped"):
             child.result()
-    assert child._process.poll() is not None
+    assert _children(template) == []
+
+
+def test_leaving_early_ends_the_cad_process(helpers: ModuleType, cad: Callable[[str], Template]) -> None:
+    template = cad("time.sleep(60)")
+    with SolidChild(helpers.make_part(), Budget(), template):
+        deadline = time.monotonic() + 20.0
+        while not (template.pid and _children(template)) and time.monotonic() < deadline:
+            time.sleep(0.02)
+        assert _children(template) != [], "no job was started: this test shows nothing"
+    assert _children(template) == []
+
+
+def test_a_cad_process_that_cannot_be_started_is_told(helpers: ModuleType) -> None:
+    template = Template("no_such_module")
+    with SolidChild(helpers.make_part(), Budget(), template) as child:
+        with pytest.raises(RunError, match="exit code 1") as caught:
+            child.result()
+    assert caught.value.stage == "solid"
+
+
+def _children(template: Template) -> list[str]:
+    return Path(f"/proc/{template.pid}/task/{template.pid}/children").read_text().split()
 
 
 def test_the_slower_solver_is_told(helpers: ModuleType) -> None:
