@@ -7,12 +7,15 @@ from typing import SupportsFloat
 
 import numpy as np
 
+from fem.solid.cut import Cutter
 from fem.solid.factor import GAUGE_ALLOWED, RESIDUAL_ALLOWED
+from fem.solid.kernels.interface import elastic_energy, rules
+from fem.solid.kernels.parallel import ranges, run
 from fem.solid.model import LEAST_QUALITY, SolidModel
 from fem.solid.reaction import Reactions
 from fem.solid.result import Check
 from fem.solid.shape import Array
-from fem.solid.stiffness import stresses
+from fem.solid.stiffness import CURVED_ORDER, STRAIGHT_ORDER, lame
 from fem.solid.system import Solution
 from geometry.part import RemotePoint
 
@@ -27,20 +30,23 @@ def _check(name: str, value: SupportsFloat, allowed: float, note: str = "") -> C
     return Check(name, float(value), allowed, float(value) <= allowed, note)
 
 
-def strain_energies(model: SolidModel, u: Array) -> tuple[Array, Array]:
+def strain_energies(
+    model: SolidModel, u: Array, cutter: Cutter | None = None, threads: int = 1
+) -> tuple[Array, Array]:
     """(c,) elastic energy from the stresses, and (c,) int sigma : thermal strain dV; both N mm. u (c, 3, n)."""
-    material = model.part.material
-    energy, thermal = np.zeros(u.shape[0]), np.zeros(u.shape[0])
+    material, cutter = model.part.material, cutter or Cutter(model.mesh)
+    lam, mu = lame(material.E, material.nu)
     expansion = material.expansion * model.change
-    for group in model.groups:
-        ue = u[:, :, model.mesh.tets[:, group.elements]].transpose(0, 3, 2, 1)
-        s = stresses(group.gradients, ue, material.E, material.nu, expansion)
-        trace = s[:, :, :3].sum(axis=2)
-        squares = (s[:, :, :3] ** 2).sum(axis=2) + 2 * (s[:, :, 3:] ** 2).sum(axis=2)
-        density = ((1 + material.nu) * squares - material.nu * trace**2) / (2 * material.E)
-        energy += (density * group.weights).sum(axis=(1, 2))
-        thermal += expansion * (trace * group.weights).sum(axis=(1, 2))
-    return energy, thermal
+    free = (3 * lam + 2 * mu) * expansion
+    constants = (material.E, material.nu, lam, mu, free, *rules(STRAIGHT_ORDER, CURVED_ORDER))
+
+    def some(first: int, last: int) -> Array:
+        out = np.zeros((u.shape[0], 2))
+        elastic_energy(first, last, cutter.tets, cutter.curved, cutter.points, u, *constants, out)
+        return out
+
+    energy, trace = np.sum(run(some, ranges(cutter.tets.shape[0]), threads), axis=0).T
+    return energy, expansion * trace
 
 
 def load_checks(model: SolidModel) -> Iterator[Check]:

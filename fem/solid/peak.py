@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 import scipy.sparse as sp
-from scipy.sparse.csgraph import connected_components
+from numpy.typing import NDArray
 from scipy.spatial import cKDTree
 
+from fem.solid.kernels.hills import hills, maxima
+from fem.solid.kernels.parallel import ranges, run
 from fem.solid.model import SolidModel
 from fem.solid.result import CaseStress, PeakPlace
 from fem.solid.shape import TET_EDGES, Array
@@ -34,11 +37,16 @@ def node_sizes(mesh: NamedMesh) -> Array:
 
 def region_rim(mesh: NamedMesh, region: str) -> Array:
     """(3, k) nodes on the edge of a region: on its facets and on other boundary facets too."""
+
+    def keys(facets: NDArray[np.int64]) -> NDArray[np.int64]:
+        middles = np.sort(facets[3:], axis=0)  # two mid-edge nodes tell a triangle
+        return np.asarray(middles[0] * mesh.nodes.shape[1] + middles[1])
+
     own = mesh.facets[region]
-    key = {tuple(t) for t in np.sort(own[:3], axis=0).T.tolist()}
-    other = np.array([tuple(t) not in key for t in np.sort(mesh.boundary[:3], axis=0).T.tolist()], dtype=bool)
-    nodes = np.intersect1d(own, mesh.boundary[:, other])
-    return mesh.nodes[:, nodes]
+    other = ~np.isin(keys(mesh.boundary), keys(own))
+    shared = np.zeros(mesh.nodes.shape[1], dtype=bool)
+    shared[mesh.boundary[:, other]] = True
+    return mesh.nodes[:, np.unique(own[shared[own]])]
 
 
 def singular_places(model: SolidModel, sharp_edges: Sequence[tuple[str, Array]]) -> list[tuple[str, Array]]:
@@ -67,66 +75,89 @@ def singular_places(model: SolidModel, sharp_edges: Sequence[tuple[str, Array]])
 
 def singular_nodes(mesh: NamedMesh, places: list[tuple[str, Array]], sizes: Array) -> np.ndarray:
     """(n,) index of the nearest singular place within reach of each node, -1 where there is none."""
-    out, best = np.full(mesh.nodes.shape[1], -1), np.full(mesh.nodes.shape[1], np.inf)
+    n = mesh.nodes.shape[1]
+    out, best, reach = np.full(n, -1), np.full(n, np.inf), REACH * sizes
+    far = 1.001 * float(reach.max())
     for k, (_, points) in enumerate(places):
         # the rim is given by points: its nodes lie up to half an element apart
-        distance, _ = cKDTree(points.T).query(mesh.nodes.T)
-        within = (distance <= REACH * sizes) & (distance < best)
-        out[within], best[within] = k, distance[within]
+        low, high = points.min(axis=1) - far, points.max(axis=1) + far
+        box = np.flatnonzero(((mesh.nodes >= low[:, None]) & (mesh.nodes <= high[:, None])).all(axis=0))
+        distance, _ = cKDTree(points.T).query(mesh.nodes[:, box].T, distance_upper_bound=far)
+        within = (distance <= reach[box]) & (distance < best[box])
+        out[box[within]], best[box[within]] = k, distance[within]
     return out
 
 
-def surface_graph(mesh: NamedMesh) -> sp.csr_matrix:
-    """(n, n) neighbours on the surface: the nodes of one half edge of a boundary triangle."""
+@dataclass(frozen=True, slots=True)
+class Surface:
+    """nodes (s,) of the surface, rising, and which of them are neighbours (CSR, indices into `nodes`): the nodes of one
+    half edge of a boundary triangle."""
+
+    nodes: NDArray[np.int64]
+    indptr: NDArray[np.int32]
+    indices: NDArray[np.int32]
+
+
+def surface_graph(mesh: NamedMesh) -> Surface:
+    """The nodes of the surface and their neighbours."""
     halves = ((0, 3), (3, 1), (1, 4), (4, 2), (2, 5), (5, 0), (3, 4), (4, 5), (5, 3))
-    rows = np.concatenate([mesh.boundary[i] for i, _ in halves])
-    columns = np.concatenate([mesh.boundary[j] for _, j in halves])
-    n = mesh.nodes.shape[1]
-    graph = sp.coo_matrix((np.ones(rows.size), (rows, columns)), shape=(n, n)).tocsr()
-    return (graph + graph.T).tocsr()
+    nodes, place = np.unique(mesh.boundary, return_inverse=True)
+    place = place.reshape(mesh.boundary.shape)
+    rows = np.concatenate([place[i] for i, _ in halves])
+    columns = np.concatenate([place[j] for _, j in halves])
+    graph = sp.coo_matrix((np.ones(rows.size), (rows, columns)), shape=(nodes.size, nodes.size)).tocsr()
+    graph = (graph + graph.T).tocsr()
+    return Surface(nodes, graph.indptr.astype(np.int32), graph.indices.astype(np.int32))
 
 
-def local_maxima(graph: sp.csr_matrix, values: Array, near: np.ndarray) -> Iterator[int]:
-    """Surface nodes whose value no neighbour exceeds, greatest first, one for each hill.
+def local_maxima(surface: Surface, values: Array, near: NDArray[np.int64]) -> list[int]:
+    """Surface nodes whose value no neighbour exceeds, greatest first, one for each hill: at least `COUNT` of them and
+    one established, if there are so many. values, near (n,).
 
     A maximum belongs to the hill of a greater one (of the same kind: established, or at the same singular place) when
     a path on the surface joins them on which the stress stays above `SADDLE` of the lesser one.
     """
-    owner = np.repeat(np.arange(values.size), np.diff(graph.indptr))
-    highest = np.zeros(values.size)
-    np.maximum.at(highest, owner, values[graph.indices])
-    nodes = np.flatnonzero((values >= highest) & (values > 0) & (np.diff(graph.indptr) > 0))
-    accepted: list[int] = []
-    for node in nodes[np.argsort(-values[nodes], kind="stable")][:CANDIDATES]:
-        rivals = [i for i in accepted if near[i] == near[node]]
-        if rivals:
-            above = np.flatnonzero(values >= SADDLE * values[node])
-            _, label = connected_components(graph[above][:, above], directed=False)
-            mine = label[np.searchsorted(above, node)]
-            if (label[np.searchsorted(above, rivals)] == mine).any():
-                continue
-        accepted.append(int(node))
-        yield int(node)
+    v, kind = np.ascontiguousarray(values[surface.nodes]), np.ascontiguousarray(near[surface.nodes])
+    top = np.empty(v.size, dtype=np.bool_)
+    maxima(surface.indptr, surface.indices, v, top)
+    tops = np.flatnonzero(top)
+    candidates = tops[np.argsort(-v[tops], kind="stable")][:CANDIDATES]
+    if not candidates.size:
+        return []
+    order = np.flatnonzero(v >= SADDLE * v[candidates[-1]])
+    order = order[np.argsort(-v[order], kind="stable")]
+    accepted, parent = np.empty(candidates.size, dtype=np.int64), np.full(v.size, -1)
+    count = hills(
+        surface.indptr, surface.indices, v, kind, order, candidates, SADDLE, COUNT, parent, accepted
+    )  # fmt: skip
+    return [int(i) for i in surface.nodes[accepted[:count]]]
 
 
 def peak_places(
-    model: SolidModel, von_mises: Array, principal: Array, places: list[tuple[str, Array]], near: np.ndarray
+    model: SolidModel,
+    von_mises: Array,
+    principal: Array,
+    places: list[tuple[str, Array]],
+    near: NDArray[np.int64],
+    threads: int = 1,
 ) -> Iterator[PeakPlace]:
     """The highest hills of each case, at most `COUNT`, and at least the highest established one."""
-    mesh = model.mesh
-    graph = surface_graph(mesh)
-    for k, case in enumerate(model.part.cases):
-        chosen: list[int] = []
-        for node in local_maxima(graph, von_mises[k], near):
-            missing = not any(near[i] < 0 for i in chosen)
-            if len(chosen) < COUNT or (missing and near[node] < 0):
-                chosen.append(node)
-            if len(chosen) >= COUNT and any(near[i] < 0 for i in chosen):
-                break
-        for node in chosen:
+    mesh, surface = model.mesh, surface_graph(model.mesh)
+
+    def chosen(k: int, _: int) -> list[int]:
+        picked: list[int] = []
+        for node in local_maxima(surface, von_mises[k], near):
+            if len(picked) < COUNT or (near[node] < 0 and not any(near[i] < 0 for i in picked)):
+                picked.append(node)
+        return picked
+
+    c = len(model.part.cases)
+    peaks = run(chosen, ranges(c, c), threads)
+    where = _whereabouts(mesh, sorted({node for nodes in peaks for node in nodes}))
+    for k, (case, nodes) in enumerate(zip(model.part.cases, peaks, strict=True)):
+        for node in nodes:
             p = principal[k, :, node]
-            regions = tuple(sorted(name for name, f in mesh.facets.items() if (f == node).any()))
-            faces = tuple(sorted({int(i) for i in mesh.face_index[(mesh.boundary == node).any(axis=0)]}))
+            regions, faces = where[node]
             x, y, z = map(float, mesh.nodes[:, node])
             yield PeakPlace(
                 case.name,
@@ -139,6 +170,22 @@ def peak_places(
                 places[near[node]][0] if near[node] >= 0 else "",
                 float(p[np.abs(p).argmax()]),
             )
+
+
+def _whereabouts(mesh: NamedMesh, nodes: list[int]) -> dict[int, tuple[tuple[str, ...], tuple[int, ...]]]:
+    """Regions and CAD faces that meet at each node."""
+    place = np.full(mesh.nodes.shape[1], -1)
+    place[nodes] = np.arange(len(nodes))
+    regions: list[set[str]] = [set() for _ in nodes]
+    faces: list[set[int]] = [set() for _ in nodes]
+    for name, facets in mesh.facets.items():
+        at = place[facets]
+        for i in np.unique(at[at >= 0]):
+            regions[i].add(name)
+    at = place[mesh.boundary]
+    for i, facet in zip(at[at >= 0], np.nonzero(at >= 0)[1], strict=True):
+        faces[i].add(int(mesh.face_index[facet]))
+    return {node: (tuple(sorted(r)), tuple(sorted(f))) for node, r, f in zip(nodes, regions, faces, strict=True)}
 
 
 def case_stresses(model: SolidModel, von_mises: Array, near: np.ndarray) -> Iterator[CaseStress]:

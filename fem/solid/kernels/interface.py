@@ -126,9 +126,9 @@ def interface_forces(  # type: ignore[no-untyped-def]
 def elastic_energy(first, last, tets, curved, points, u, E, nu, lam, mu, free, L1, w1, L2, w2, out):  # type: ignore[no-untyped-def]
     """Add to out (c, 2) the elastic energy of elements first to last, and int of the trace of the stress."""
     count = u.shape[0]
-    ue, L, g = np.empty((10, 3)), np.empty(4), np.empty((11, 10, 3))
+    most = max(w1.size, w2.size)
+    ue, L, g, dV = np.empty((10, 3)), np.empty(4), np.empty((most, 10, 3)), np.empty(most)
     J, slopes, H, S = np.empty((3, 3)), np.empty((4, 3)), np.empty((3, 3)), np.empty((3, 3))
-    dV = np.empty(max(w1.size, w2.size))
     for e in range(first, last):
         weights, at = (w2, L2) if curved[e] else (w1, L1)
         det = 0.0
