@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import dataclasses
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from fem.figure import Figure
 from geometry.part import Case, Part
 from studies.check.result import CaseStress, CheckResult, Denting, MeshSummary
 from studies.check.stages import Clock
-from studies.check.studied import SolverSummary
+from studies.check.studied import SolverSummary, TravelSummary
 
 if TYPE_CHECKING:
     from fem.solid.result import SolidResult
@@ -32,7 +33,7 @@ def make_result(models: Models, verdict: Judgement, name: str, started: str, clo
     from studies.check.run import versions
 
     part, mesh, solid = models.part, models.mesh, models.solid
-    kept = kept_cases(part, verdict)
+    kept = kept_cases(part, verdict.travels)
     still = {case.name for case in part.cases if case.travel is None} | {""}
     return CheckResult(
         title=part.title, spec_name=name, spec_text=part.source_text, parameters=dict(part.parameters),
@@ -61,9 +62,9 @@ def declared_factors(case: Case) -> tuple[str, dict[str, float]]:
     return case.travel.case, {name.partition("@")[0]: factor for name, factor in case.factors.items()}
 
 
-def kept_cases(part: Part, verdict: Judgement) -> set[str]:
+def kept_cases(part: Part, travels: Sequence[TravelSummary]) -> set[str]:
     """Cases that the record holds peaks and stresses of: those that stand still, and the governing positions."""
-    governing = {(travel.case, travel.governing) for travel in verdict.travels}
+    governing = {(travel.case, travel.governing) for travel in travels}
     return {case.name for case in part.cases
             if case.travel is None or (case.travel.case, case.travel.position) in governing}
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from rich.box import SIMPLE_HEAD
 from rich.console import Console
 from rich.markup import escape
@@ -10,6 +12,7 @@ from rich.table import Table
 
 from studies.check.result import CheckResult, Pair
 from studies.check.stages import Event
+from studies.report.studied import ENVELOPE_HEAD, MODE_HEAD, buckling_cases, envelope_rows, mode_rows
 from studies.report.tables import (
     headlines,
     marked,
@@ -77,6 +80,14 @@ def print_result(console: Console, result: CheckResult) -> None:
         pairs = headlines(result, case)
         if pairs:
             console.print(_pair_table(f"case {case}" if case else "whole part", pairs))
+    for travel in result.travels:
+        console.print(_table(f"case {travel.case}: {travel.load} travels, {len(travel.positions)} positions "
+                             "(@ first axle, mm)", ENVELOPE_HEAD[:-1], [r[:-1] for r in envelope_rows(result, travel)]))
+    if rows := mode_rows(result, "natural_frequency"):
+        console.print(_table("natural frequencies", MODE_HEAD[:9], [row[:9] for row in rows]))
+    for case in buckling_cases(result):
+        rows = mode_rows(result, "buckling_factor", case)
+        console.print(_table(f"buckling factors, case {case}", MODE_HEAD[:9], [row[:9] for row in rows]))
     if result.limits:
         console.print(_limit_table(result))
     _print_suspicious(console, result)
@@ -86,6 +97,8 @@ def print_result(console: Console, result: CheckResult) -> None:
                           f"{escape(check.text)}", soft_wrap=True)
     console.print(f"[bold]{escape(verdict(result))}[/]", soft_wrap=True)
     console.print(f"Accuracy {100 * result.accuracy:g} %: requested, not verified.")
+    if result.solver is not None and result.solver.reason:
+        console.print(escape(f"Solver: {result.solver.name} ({result.solver.reason.rstrip('.')})."), soft_wrap=True)
     for text in result.cautions:
         if not text.startswith("Accuracy"):
             console.print(escape(text), soft_wrap=True)
@@ -102,6 +115,17 @@ def _pair_table(title: str, pairs: list[Pair]) -> Table:
         table.add_row(escape(name_of(pair.key)), shown_unit(pair.unit), number(pair.solid, pair.unit),
                       number(pair.beam, pair.unit), number(pair.difference, pair.unit),
                       number(pair.band, pair.unit) if pair.difference is not None else "-", marked(pair.judgement))
+    return table
+
+
+def _table(title: str, head: Sequence[str], rows: Sequence[Sequence[str]]) -> Table:
+    """A table whose columns of numbers stand to the right."""
+    table = Table(title=escape(title), title_justify="left", title_style="bold", box=SIMPLE_HEAD, pad_edge=False)
+    numbers = {"solid", "beam", "difference", "allowed", "correlation", *ENVELOPE_HEAD[2:6]}
+    for word in head:
+        table.add_column(word, justify="right" if word in numbers else "left")
+    for row in rows:
+        table.add_row(*map(escape, row))
     return table
 
 

@@ -6,7 +6,18 @@ import tomllib
 from collections.abc import Iterable, Sequence
 
 from studies.check.result import CheckResult, Pair, PeakPlace
+from studies.check.studied import TravelSummary
 from studies.judge.envelope import Extreme, envelope
+from studies.report.studied import (
+    ENVELOPE_HEAD,
+    MODE_HEAD,
+    buckling_cases,
+    envelope_rows,
+    kept_pairs,
+    mode_rows,
+    travel_sentence,
+    travelling_extremes,
+)
 from studies.report.tables import (
     Tally,
     headlines,
@@ -22,7 +33,8 @@ from studies.report.tables import (
 )
 
 SCOPE = (
-    "Linear elastic material, small displacements, perfect geometry: no yielding, no buckling, no large rotation.",
+    "Linear elastic material, small displacements, perfect geometry: no yielding, no large rotation; buckling only "
+    "where it was asked for, as a factor of the perfect part.",
     "No fatigue, no contact, no bolt or weld strength, no residual stress.",
     "The two models share the spec: a wrong load, support or dimension in it goes unseen. Local codes and a "
     "licensed engineer's judgement decide; this run is evidence for them, not a substitute.",
@@ -38,13 +50,17 @@ CONVENTIONS = (
 
 MOST_ROWS = 20
 
+BUCKLING_HEAD = MODE_HEAD[:10] + MODE_HEAD[11:]
+"""Buckling has no mass."""
+
 
 def summary(result: CheckResult) -> str:
     """Markdown text of the whole run."""
     parts = [
         [f"# {result.title or result.spec_name}", "", verdict(result)],
-        _asked(result), _limits(result), _envelope(result), *(_case(result, case) for case in result.cases),
-        _whole_part(result),
+        _asked(result), _limits(result), _envelope(result), _frequencies(result), _buckling(result),
+        *(_travelling(result, travel) for travel in result.travels),
+        *(_case(result, case) for case in still_cases(result)), _whole_part(result),
         _suspicious(result), _notes(result), _checks(result), _cautions(result), _run(result),
     ]
     return "\n".join(line for part in parts for line in [*part, ""]).rstrip() + "\n"
@@ -95,7 +111,8 @@ def _envelope(result: CheckResult) -> list[str]:
     """Greatest and least figures over the cases, with the case that governs."""
     if len(result.cases) < 2:
         return []
-    found = envelope(result.solid_figures, result.beam_figures)
+    moving = [travelling_extremes(result, solid) for solid in (True, False)]
+    found = envelope((*result.solid_figures, *moving[0]), (*result.beam_figures, *moving[1]))
     largest: dict[str, float] = {}
     for row in found:
         largest[row.quantity] = max(largest.get(row.quantity, 0.0), abs(row.value))
@@ -109,6 +126,58 @@ def _envelope(result: CheckResult) -> list[str]:
              shown(row.value, row), shown(row.beam, row), row.case, row.place) for row in found]
     return ["## Envelope over the cases", "",
             *table(["figure", "", "unit", "solid", "beam there", "governing case", "place"], rows)]
+
+
+def still_cases(result: CheckResult) -> list[str]:
+    """The cases in which nothing travels."""
+    travelling = {travel.case for travel in result.travels}
+    return [case for case in result.cases if case not in travelling]
+
+
+def _frequencies(result: CheckResult) -> list[str]:
+    rows = mode_rows(result, "natural_frequency")
+    if not rows:
+        return []
+    return ["## Natural frequencies", "", *table(MODE_HEAD, rows), "",
+            "Correlation: how alike the motion of the sections is in both models (modal assurance criterion, 1 is the "
+            "same). Rigid sections: how much of the solid's shape they explain. Carries: share of the part's mass "
+            "along a global axis, or of its inertia about one, that takes part. The load cases do not act.",
+            *_mode_allowances(result, "")]
+
+
+def _buckling(result: CheckResult) -> list[str]:
+    lines: list[str] = []
+    for case in buckling_cases(result):
+        factors = ", ".join(f"{f:g} x {load}" for load, f in result.cases.get(case, {}).items())
+        lines += ["", f"### Case {case}", "", f"The varying loads of {factors}, times:", "",
+                  *table(BUCKLING_HEAD, [row[:10] + row[11:] for row in mode_rows(result, "buckling_factor", case)]),
+                  *_mode_allowances(result, case)]
+    return ["## Buckling", *lines] if lines else []
+
+
+def _mode_allowances(result: CheckResult, case: str) -> list[str]:
+    """What the allowance of the first compared mode is made of; later ones have more waves, and more of the same."""
+    kinds = ("natural_frequency", "buckling_factor")
+    first = next((p for p in result.pairs if p.key.case == case and p.key.quantity in kinds and p.reasons), None)
+    if first is None:
+        return []
+    reasons = "; ".join(f"{r.text} {100 * r.size / first.scale:.2g} %" for r in first.reasons)
+    return ["", f"What the allowance of {first.key.component} is made of: {reasons}."]
+
+
+def _travelling(result: CheckResult, travel: TravelSummary) -> list[str]:
+    """Envelopes over the positions, and what was kept of single positions."""
+    lines = [f"## Travelling load: envelopes of case {travel.case}", "", travel_sentence(travel), "",
+             *table(ENVELOPE_HEAD, envelope_rows(result, travel)), "",
+             "Behind @: the position of the first axle, mm. Every figure at every place is in `result.json`."]
+    explained = [pair for pair in kept_pairs(result, travel.case) if pair.judgement == "explained"]
+    if explained:
+        lines += ["", "Of each kind of figure, the explained one that uses most of its allowance:", "",
+                  *table(("position", *PAIR_HEAD), [(pair.key.case.partition("@")[2], *_pair_row(pair))
+                                                    for pair in explained])]
+    for case in dict.fromkeys(peak.case for peak in result.peaks if peak.case.startswith(f"{travel.case}@")):
+        lines += ["", f"At the position {case.partition('@')[2]} mm:", "", *_peaks(result, case)]
+    return lines
 
 
 def _pair_row(pair: Pair) -> tuple[str, ...]:
@@ -204,6 +273,16 @@ def _cautions(result: CheckResult) -> list[str]:
     return ["## Cautions", "", *(f"- {text}" for text in (*result.cautions, *SCOPE)), "", CONVENTIONS]
 
 
+def _solver(result: CheckResult) -> list[str]:
+    solver = result.solver
+    if solver is None:
+        return []
+    told = [f"{word} {value:.2g}" for word, value in (("residual over load", solver.residual),
+                                                      ("error of a known bending", solver.gauge)) if value is not None]
+    reason = f" ({solver.reason.rstrip('.')})" if solver.reason else ""
+    return [f"- Solver: {solver.name}{reason}; {', '.join(told) or 'its accuracy was not told'}"]
+
+
 def _run(result: CheckResult) -> list[str]:
     mesh = result.mesh
     times = ", ".join(f"{stage.name} {stage.seconds:.2f} s" for stage in result.stages)
@@ -211,5 +290,6 @@ def _run(result: CheckResult) -> list[str]:
             f"- Started {result.started}; {times}",
             f"- Mesh: {mesh.tets} tetrahedra of second order, {mesh.nodes} nodes, least quality "
             f"{mesh.least_quality:.3g}, volume {mesh.volume:.6g} mm^3 (recipe in `result.json`)",
+            *_solver(result),
             "- Versions: " + ", ".join(f"{name} {text}" for name, text in result.versions.items()),
             "- Files: " + ", ".join(f"`{name}`" for name in result.files)]

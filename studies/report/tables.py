@@ -26,6 +26,10 @@ SECTION_KINDS = ("section_force", "section_moment", "nominal_stress")
 """Quantities that both models give at stations only: shown by their largest value."""
 
 
+MODE_KINDS = ("natural_frequency", "buckling_factor")
+"""Quantities that have tables of their own."""
+
+
 def readable(value: float | None, unit: str) -> str:
     """``12.35 N m`` from 12345 N mm; a dash for no value."""
     if value is None:
@@ -82,7 +86,7 @@ def tallies(result: CheckResult, case: str) -> list[Tally]:
     """One row for each quantity of a case."""
     groups: dict[str, list[Pair]] = {}
     for pair in result.pairs:
-        if pair.key.case == case:
+        if pair.key.case == case and pair.key.quantity not in MODE_KINDS:
             groups.setdefault(pair.key.quantity, []).append(pair)
     rows = []
     for quantity, pairs in groups.items():
@@ -100,7 +104,7 @@ def headlines(result: CheckResult, case: str) -> list[Pair]:
     Ends, named places, supports, cuts and whole-part figures that are not next to nothing, then the station
     with the largest value of each section force, moment and stress.
     """
-    ours = [pair for pair in result.pairs if pair.key.case == case]
+    ours = [pair for pair in result.pairs if pair.key.case == case and pair.key.quantity not in MODE_KINDS]
     largest: dict[str, float] = {}
     for pair in ours:
         largest[pair.key.quantity] = max(largest.get(pair.key.quantity, 0.0), _size(pair))
@@ -132,9 +136,18 @@ def suspicious(result: CheckResult) -> list[Pair]:
     return sorted(found, key=lambda pair: -abs(remainder(pair) or 0.0) / pair.band if pair.band > 0 else 0.0)
 
 
+def counts(result: CheckResult) -> Counter[str]:
+    """How many figures were given each word; of a travelling load those of every position."""
+    positions = tuple(f"{travel.case}@" for travel in result.travels)
+    words: Counter[str] = Counter(p.judgement for p in result.pairs if not p.key.case.startswith(positions or ("\0",)))
+    for row in result.envelopes:
+        words.update(row.words)
+    return words
+
+
 def verdict(result: CheckResult) -> str:
     """The run in one sentence or two."""
-    words = Counter(pair.judgement for pair in result.pairs)
+    words = counts(result)
     compared = words["agrees"] + words["explained"] + words["suspicious"]
     limits: Counter[str] = Counter(limit.verdict for limit in result.limits)
     failed = [check.name for check in result.checks if not check.ok]
