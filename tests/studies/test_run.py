@@ -191,7 +191,7 @@ def test_a_full_disk_is_blamed_on_writing(helpers: ModuleType, monkeypatch: pyte
         raise MeshError("No space left on device")
 
     monkeypatch.setattr("mesher.write_vtu", full)
-    monkeypatch.setattr("studies.check.fields.nodal_fields", lambda _: {})
+    monkeypatch.setattr("studies.check.fields.nodal_fields", lambda *_: {})
     models = helpers.make_models()
     with pytest.raises(RunError, match="No space left") as caught:
         write_fields(tmp_path / "solid.vtu", models.mesh, models.solid)
