@@ -10,8 +10,9 @@ from scipy.sparse.csgraph import connected_components
 
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.load import SolidLoad, solid_loads, surface_vector
-from fem.solid.shape import Array, tet_values
-from fem.solid.stiffness import ElementGroup, element_forces, element_groups, lame, stiffness_matrix
+from fem.solid.mass import node_integrals, node_volumes
+from fem.solid.shape import Array
+from fem.solid.stiffness import ElementGroup, element_groups, lame, stiffness_matrix
 from fem.solid.support import Constraints, build_constraints
 from geometry.part import Part
 from geometry.problem import SolveError
@@ -31,6 +32,8 @@ class SolidModel:
         (c, loads) factor of each load in each case, in the order of `loads`.
     change
         (c,) temperature change of each case, K.
+    threads
+        For the work on whole meshes; no result depends on it.
     """
 
     part: Part
@@ -46,6 +49,7 @@ class SolidModel:
     change: Array
     mass: float
     centre_of_mass: Array
+    threads: int = 1
 
 
 def check_mesh(mesh: NamedMesh) -> None:
@@ -59,57 +63,56 @@ def check_mesh(mesh: NamedMesh) -> None:
             f"{np.round(where, 3).tolist()} mm. Mesh the part again with another recipe."
         )
     n = mesh.nodes.shape[1]
-    first = np.broadcast_to(mesh.tets[0], (9, mesh.tets.shape[1]))
-    graph = sp.coo_matrix((np.ones(first.size), (first.ravel(), mesh.tets[1:].ravel())), shape=(n, n))
+    used = np.zeros(n, dtype=bool)
+    used[mesh.tets] = True
+    if not used.all():
+        idle = np.flatnonzero(~used)
+        raise SolveError(
+            f"The mesh has {idle.size} unused nodes, the first one at "
+            f"{np.round(mesh.nodes[:, idle[0]], 3).tolist()} mm. Mesh the part again."
+        )
+    corners = np.zeros(n, dtype=np.int32)
+    corners[mesh.tets[:4]] = 1
+    number = np.cumsum(corners, dtype=np.int32) - 1  # of each corner node: the others need not be looked at
+    m, count = mesh.tets.shape[1], int(number[-1]) + 1
+    first, others = np.tile(number[mesh.tets[0]], 3), number[mesh.tets[1:4]].ravel()
+    graph = sp.coo_matrix((np.ones(3 * m, dtype=np.int8), (first, others)), shape=(count, count))
     pieces, label = connected_components(graph, directed=False)
     if pieces > 1:
-        sizes = np.sort(np.bincount(label))[::-1]
+        of_node = np.empty(n, dtype=np.int32)
+        of_node[mesh.tets] = label[number[mesh.tets[0]]]
+        sizes = np.sort(np.bincount(of_node))[::-1]
         raise SolveError(
             f"The mesh is in {pieces} pieces that do not touch (nodes in each: "
-            f"{', '.join(map(str, sizes[:5]))}). The members do not meet, or the mesh has unused nodes."
+            f"{', '.join(map(str, sizes[:5]))}). The members do not meet."
         )
 
 
 def mass_vector(mesh: NamedMesh, groups: list[ElementGroup]) -> tuple[Array, float, Array]:
     """(n,) integral of each shape function (mm^3), the volume and the first moment (3,)."""
-    weights = np.zeros(mesh.nodes.shape[1])
-    first = np.zeros(3)
-    for group in groups:
-        N = tet_values(group.points)
-        nodes = mesh.tets[:, group.elements]
-        weights += np.bincount(nodes.ravel(), weights=(N @ group.weights.T).ravel(), minlength=weights.size)
-        x = np.einsum("iae,aq->ieq", mesh.nodes[:, nodes], N, optimize=True)
-        first += (x * group.weights).sum(axis=(1, 2))
-    return weights, float(weights.sum()), first
+    shares = node_integrals(groups)[:, 0]
+    return (shares, *node_volumes(shares, mesh.nodes))
 
 
 def thermal_vector(mesh: NamedMesh, groups: list[ElementGroup], E: float, nu: float) -> Array:
     """(n, 3) nodal forces of a unit free expansion."""
     lam, mu = lame(E, nu)
-    f = np.zeros((mesh.nodes.shape[1], 3))
-    for group in groups:
-        stress = np.zeros((1, group.elements.size, 6, group.weights.shape[1]))
-        stress[:, :, :3] = 3 * lam + 2 * mu
-        forces = element_forces(group.gradients, group.weights, stress)[0]
-        for i in range(3):
-            f[:, i] += np.bincount(
-                mesh.tets[:, group.elements].T.ravel(), weights=forces[:, :, i].ravel(), minlength=f.shape[0]
-            )
-    return f
+    return (3 * lam + 2 * mu) * node_integrals(groups)[:, 1:]
 
 
 def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
     """Assemble stiffness, constraints and load vectors."""
     check_mesh(mesh)
     material = part.material
-    groups = element_groups(mesh.nodes, mesh.tets)
+    groups = element_groups(mesh.nodes, mesh.tets, threads)
     K = stiffness_matrix(mesh.nodes, mesh.tets, groups, material.E, material.nu, threads)
     constraints = build_constraints(part, mesh)
     loads = solid_loads(part, mesh)
-    shares, volume, first = mass_vector(mesh, groups)
+    integrals = node_integrals(groups, threads)
+    volume, first = node_volumes(integrals[:, 0], mesh.nodes)
     vectors = np.zeros((len(loads), mesh.nodes.shape[1], 3))
     for k, load in enumerate(loads.values()):
-        vectors[k] = material.density * shares[:, None] * load.force_per_mass
+        vectors[k] = material.density * integrals[:, :1] * load.force_per_mass
         for piece in load.pieces:
             vectors[k] += surface_vector(mesh, piece)
     factors = np.array([[case.factors.get(name, 0.0) for name in loads] for case in part.cases]).reshape(
@@ -118,7 +121,8 @@ def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
     change = factors @ np.array([load.change for load in loads.values()]) if loads else np.zeros(len(part.cases))
     thermal = np.zeros((len(part.cases), *vectors.shape[1:]))
     if change.any():
-        unit = material.expansion * thermal_vector(mesh, groups, material.E, material.nu)
+        lam, mu = lame(material.E, material.nu)
+        unit = (3 * lam + 2 * mu) * material.expansion * integrals[:, 1:]
         thermal = change[:, None, None] * unit
     return SolidModel(
         part,
@@ -134,4 +138,5 @@ def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
         change,
         material.density * volume,
         first / volume,
+        threads,
     )

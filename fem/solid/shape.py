@@ -20,6 +20,11 @@ TET_EDGES = np.array([[0, 1], [1, 2], [0, 2], [0, 3], [1, 3], [2, 3]])
 TRIANGLE_EDGES = np.array([[0, 1], [1, 2], [0, 2]])
 """Corners at the ends of the edge that carries local node 3 + i."""
 
+NODE_BARY = np.vstack([np.eye(4), (np.eye(4)[TET_EDGES[:, 0]] + np.eye(4)[TET_EDGES[:, 1]]) / 2]).T
+"""(4, 10) barycentric coordinates of an element's nodes."""
+CURVED_TOLERANCE = 1e-10
+"""An element is straight when its mid-edge nodes are off the middle by no more than this part of the edge."""
+
 # rows: d L_k / d xi_j of the reference element
 _TET_GRADIENT = np.array([[-1.0, -1.0, -1.0], [1.0, 0.0, 0.0], [0.0, 1.0, 0.0], [0.0, 0.0, 1.0]])
 _TRIANGLE_GRADIENT = np.array([[-1.0, -1.0], [1.0, 0.0], [0.0, 1.0]])
@@ -70,7 +75,7 @@ def triangle_quadrature(order: int) -> tuple[Array, Array]:
     return np.vstack([1.0 - points.sum(axis=0), points]), weights
 
 
-def curved_tets(nodes: Array, tets: NDArray[np.int64], tolerance: float = 1e-10) -> NDArray[np.bool_]:
+def curved_tets(nodes: Array, tets: NDArray[np.int64], tolerance: float = CURVED_TOLERANCE) -> NDArray[np.bool_]:
     """(m,) whether a mid-edge node leaves the middle of its edge by more than `tolerance` of its length."""
     x = nodes[:, tets]
     ends = x[:, TET_EDGES]

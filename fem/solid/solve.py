@@ -81,7 +81,7 @@ def solve_solid(
     stage("stress")
     stress, spread, lost = nodal_stress(model, u)
     energy_error = lost / np.where(energy > 0, energy, np.inf)
-    mises, principal = von_mises(stress, axis=1), principal_stresses(stress)
+    mises, principal = von_mises(stress, axis=1), principal_stresses(stress, budget.threads)
     stage("sections")
     cutter = Cutter(mesh)
     sections = member_sections(model, cutter)

@@ -10,54 +10,30 @@ from __future__ import annotations
 
 import numpy as np
 
+from fem.solid.kernels import recovery
+from fem.solid.kernels.pattern import incidence
 from fem.solid.model import SolidModel
-from fem.solid.shape import TET_EDGES, Array, inverse, tet_gradients
-from fem.solid.stiffness import element_gradients, isotropic_stress, stresses
-
-_CHUNK = 8192
-TENSOR = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2]])
-
-NODE_BARY = np.vstack([np.eye(4), (np.eye(4)[TET_EDGES[:, 0]] + np.eye(4)[TET_EDGES[:, 1]]) / 2]).T
-"""(4, 10) barycentric coordinates of an element's nodes."""
+from fem.solid.shape import NODE_BARY, Array, inverse, tet_gradients
+from fem.solid.stiffness import isotropic_stress, lame, mesh_arrays, point_slopes
 
 
 def nodal_stress(model: SolidModel, u: Array) -> tuple[Array, Array, Array]:
     """(c, 6, n) averaged stress, (c, n) spread (von Mises of the deviation, root mean square), MPa, and (c,) energy
     of the deviation, N mm: an estimate of the energy of the error. u (c, 3, n)."""
     mesh, material = model.mesh, model.part.material
-    c, n = u.shape[0], mesh.nodes.shape[1]
-    expansion = material.expansion * model.change
-    total, squares, weight, energy = np.zeros((c, 6, n)), np.zeros((c, n)), np.zeros(n), np.zeros(c)
-    kept = []
-    for start in range(0, mesh.tets.shape[1], _CHUNK):
-        tets = mesh.tets[:, start : start + _CHUNK]
-        gradients, det = element_gradients(mesh.nodes, tets, NODE_BARY)
-        volume = np.repeat(det[:, :4].mean(axis=1), 10)
-        ue = u[:, :, tets].transpose(0, 3, 2, 1)
-        s = stresses(gradients, ue, material.E, material.nu, expansion)  # (c, m, 6, 10)
-        index = tets.T.ravel()
-        weight += np.bincount(index, weights=volume, minlength=n)
-        for k in range(c):
-            for i in range(6):
-                total[k, i] += np.bincount(index, weights=s[k, :, i].ravel() * volume, minlength=n)
-        kept.append((index, volume, s))
-    mean = total / weight
-    for index, volume, s in kept:
-        for k in range(c):
-            off = s[k].transpose(1, 0, 2).reshape(6, -1) - mean[k][:, index]
-            squares[k] += np.bincount(index, weights=von_mises(off) ** 2 * volume, minlength=n)
-            corner = off.reshape(6, -1, 10)[:, :, :4]
-            # a linear field's square over a tetrahedron of volume V: V / 20 (sum of squares + square of the sum)
-            forms = _energy(corner, material.E, material.nu).sum(axis=1)
-            forms += _energy(corner.sum(axis=2), material.E, material.nu)
-            energy[k] += float((volume[::10] / 6 / 20 * forms).sum())
-    return mean, np.sqrt(squares / weight), energy
-
-
-def _energy(s: Array, E: float, nu: float) -> Array:
-    """Elastic energy density of stress (6, ...), N mm / mm^3."""
-    trace = s[:3].sum(axis=0)
-    return np.asarray(((1 + nu) * ((s[:3] ** 2).sum(axis=0) + 2 * (s[3:] ** 2).sum(axis=0)) - nu * trace**2) / (2 * E))
+    lam, mu = lame(material.E, material.nu)
+    points, tets = mesh_arrays(mesh.nodes, mesh.tets)
+    mean, spread, energy = recovery.nodal_stress(
+        points,
+        tets,
+        incidence(tets, points.shape[0]),
+        point_slopes(NODE_BARY),
+        np.ascontiguousarray(u.transpose(2, 0, 1)),
+        (lam, mu, material.E, material.nu),
+        (3 * lam + 2 * mu) * material.expansion * model.change,
+        model.threads,
+    )
+    return np.ascontiguousarray(mean.transpose(1, 2, 0)), np.ascontiguousarray(spread.T), energy
 
 
 def von_mises(s: Array, axis: int = 0) -> Array:
@@ -66,10 +42,12 @@ def von_mises(s: Array, axis: int = 0) -> Array:
     return np.asarray(np.sqrt(((xx - yy) ** 2 + (yy - zz) ** 2 + (zz - xx) ** 2) / 2 + 3 * (xy**2 + yz**2 + zx**2)))
 
 
-def principal_stresses(s: Array) -> Array:
+def principal_stresses(s: Array, threads: int = 1) -> Array:
     """(c, 3, n) principal stresses, greatest first, of (c, 6, n)."""
-    tensor = s[:, TENSOR].transpose(0, 3, 1, 2)
-    return np.ascontiguousarray(np.linalg.eigvalsh(tensor)[..., ::-1].transpose(0, 2, 1))
+    out = np.empty((s.shape[0], 3, s.shape[2]))
+    for k in range(s.shape[0]):
+        out[k] = recovery.principal(np.ascontiguousarray(s[k]), threads)
+    return out
 
 
 def along(s: Array, direction: Array) -> Array:

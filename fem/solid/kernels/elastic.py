@@ -12,8 +12,10 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from fem.solid.kernels.jacobian import barycentric_gradients, inverse_jacobian
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run
+from fem.solid.kernels.pattern import find
 from fem.solid.shape import TET_EDGES, Array
 
 Int = NDArray[np.int32]
@@ -44,23 +46,9 @@ CARRIERS, FACTORS = _straight_tables()
 
 @kernel
 def _straight_gradients(first, last, points, tets, out):  # type: ignore[no-untyped-def]
-    """Gradients of L_0 to L_3 times the root of a fifth of the volume."""
+    """Gradients of L_0 to L_3, and a fifth of the volume in out[e, 4, 0]."""
     for e in range(first, last):
-        o = tets[e, 0]
-        p, q, r = tets[e, 1], tets[e, 2], tets[e, 3]
-        ax, ay, az = points[p, 0] - points[o, 0], points[p, 1] - points[o, 1], points[p, 2] - points[o, 2]
-        bx, by, bz = points[q, 0] - points[o, 0], points[q, 1] - points[o, 1], points[q, 2] - points[o, 2]
-        cx, cy, cz = points[r, 0] - points[o, 0], points[r, 1] - points[o, 1], points[r, 2] - points[o, 2]
-        ux, uy, uz = by * cz - bz * cy, bz * cx - bx * cz, bx * cy - by * cx
-        vx, vy, vz = cy * az - cz * ay, cz * ax - cx * az, cx * ay - cy * ax
-        wx, wy, wz = ay * bz - az * by, az * bx - ax * bz, ax * by - ay * bx
-        det = ax * ux + ay * uy + az * uz
-        s = np.sqrt(det / 30.0) / det
-        out[e, 1, 0], out[e, 1, 1], out[e, 1, 2] = s * ux, s * uy, s * uz
-        out[e, 2, 0], out[e, 2, 1], out[e, 2, 2] = s * vx, s * vy, s * vz
-        out[e, 3, 0], out[e, 3, 1], out[e, 3, 2] = s * wx, s * wy, s * wz
-        for k in range(3):
-            out[e, 0, k] = -(out[e, 1, k] + out[e, 2, k] + out[e, 3, k])
+        out[e, 4, 0] = barycentric_gradients(points, tets, e, out[e]) / 30.0
 
 
 @kernel
@@ -77,8 +65,9 @@ def _straight_rows(  # type: ignore[no-untyped-def]
                 continue
             a = places[s] - 10 * e
             p, q = carriers[a, 0], carriers[a, 1]
-            px, py, pz = gradients[e, p, 0], gradients[e, p, 1], gradients[e, p, 2]
-            qx, qy, qz = gradients[e, q, 0], gradients[e, q, 1], gradients[e, q, 2]
+            V = gradients[e, 4, 0]
+            px, py, pz = V * gradients[e, p, 0], V * gradients[e, p, 1], V * gradients[e, p, 2]
+            qx, qy, qz = V * gradients[e, q, 0], V * gradients[e, q, 1], V * gradients[e, q, 2]
             for b in range(10):
                 j = tets[e, b]
                 if j < i:
@@ -112,40 +101,17 @@ def _straight_rows(  # type: ignore[no-untyped-def]
 @kernel
 def _curved_elements(first, last, elements, points, tets, slopes, weights, lam, mu, out):  # type: ignore[no-untyped-def]
     """Element matrices (30, 30) by quadrature, upper blocks; slopes (q, 10, 3), weights (q,)."""
-    g = np.empty(30)
+    g, J, C = np.empty(30), np.empty((3, 3)), np.empty((3, 3))
     for n in range(first, last):
         e = elements[n]
         P = out[n]
         P[:] = 0.0
         for q in range(weights.size):
-            J = np.zeros((3, 3))  # dx_i / dxi_j
+            det = inverse_jacobian(points, tets, e, slopes[q], J, C)
+            weight = weights[q] * det  # a rule may have negative weights
             for a in range(10):
                 for i in range(3):
-                    x = points[tets[e, a], i]
-                    for j in range(3):
-                        J[i, j] += x * slopes[q, a, j]
-            c00, c01, c02 = (
-                J[1, 1] * J[2, 2] - J[1, 2] * J[2, 1],
-                J[1, 2] * J[2, 0] - J[1, 0] * J[2, 2],
-                J[1, 0] * J[2, 1] - J[1, 1] * J[2, 0],
-            )
-            c10, c11, c12 = (
-                J[2, 1] * J[0, 2] - J[2, 2] * J[0, 1],
-                J[2, 2] * J[0, 0] - J[2, 0] * J[0, 2],
-                J[2, 0] * J[0, 1] - J[2, 1] * J[0, 0],
-            )
-            c20, c21, c22 = (
-                J[0, 1] * J[1, 2] - J[0, 2] * J[1, 1],
-                J[0, 2] * J[1, 0] - J[0, 0] * J[1, 2],
-                J[0, 0] * J[1, 1] - J[0, 1] * J[1, 0],
-            )
-            det = J[0, 0] * c00 + J[0, 1] * c01 + J[0, 2] * c02
-            s, weight = 1.0 / det, weights[q] * det  # a rule may have negative weights
-            for a in range(10):
-                u, v, w = s * slopes[q, a, 0], s * slopes[q, a, 1], s * slopes[q, a, 2]
-                g[3 * a] = c00 * u + c01 * v + c02 * w
-                g[3 * a + 1] = c10 * u + c11 * v + c12 * w
-                g[3 * a + 2] = c20 * u + c21 * v + c22 * w
+                    g[3 * a + i] = C[i, 0] * slopes[q, a, 0] + C[i, 1] * slopes[q, a, 1] + C[i, 2] * slopes[q, a, 2]
             for r in range(30):
                 factor = weight * g[r]
                 for c in range(r - r % 3, 30):
@@ -172,13 +138,7 @@ def _add_elements(first, last, elements, tets, matrices, indptr, indices, blocks
                 row, column = min(i, j), max(i, j)
                 if row < first or row >= last:
                     continue
-                low, high = indptr[row], indptr[row + 1] - 1
-                while low < high:
-                    middle = (low + high) // 2
-                    if indices[middle] < column:
-                        low = middle + 1
-                    else:
-                        high = middle
+                low = find(indptr, indices, row, column)
                 if i <= j:
                     for c in range(3):
                         for d in range(3):
@@ -200,7 +160,7 @@ def straight_blocks(
     threads: int,
 ) -> Array:
     """(b, 3, 3) blocks of the straight elements' stiffness in `pattern`; points (n, 3), tets (m, 10), curved (m,)."""
-    gradients = np.empty((tets.shape[0], 4, 3))
+    gradients = np.empty((tets.shape[0], 5, 3))
     run(lambda a, b: _straight_gradients(a, b, points, tets, gradients), ranges(tets.shape[0]), threads)
     blocks = np.zeros((pattern[1].size, 3, 3))
 

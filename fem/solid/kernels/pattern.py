@@ -52,6 +52,19 @@ def _upper_rows(first, last, tets, starts, places, mark, columns, counts):  # ty
     return filled
 
 
+@kernel
+def find(indptr, indices, row, column):  # type: ignore[no-untyped-def]
+    """Place of the block (row, column), which must be there."""
+    low, high = indptr[row], indptr[row + 1] - 1
+    while low < high:
+        middle = (low + high) // 2
+        if indices[middle] < column:
+            low = middle + 1
+        else:
+            high = middle
+    return low
+
+
 def incidence(tets: Int, node_count: int) -> tuple[Int, Int]:
     """Where each node occurs in the elements (m, w): ``places[starts[i] : starts[i + 1]]`` are w element + local
     node, rising."""

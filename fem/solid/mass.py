@@ -1,0 +1,52 @@
+"""Consistent mass of the solid: the matrix, and the integrals of the shape functions that body forces act through."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fem.solid.block_matrix import BlockMatrix
+from fem.solid.kernels.jacobian import shape_integrals
+from fem.solid.kernels.nodal import add_masses
+from fem.solid.shape import Array, tet_quadrature, tet_values
+from fem.solid.stiffness import ElementGroup, mesh_arrays, point_slopes
+
+MASS_ORDER = 6
+"""Of curved elements: products of shape functions have degree 4, and the determinant of the map up to 3."""
+_EXACT_ORDER = 4
+
+
+def mass_matrix(groups: list[ElementGroup], density: float, like: BlockMatrix) -> BlockMatrix:
+    """Consistent mass (3 n, 3 n), t, of a density in t/mm^3; exact for straight elements.
+
+    `like` is the stiffness of the same mesh, whose pattern and number of threads are taken over: the blocks of the two
+    matrices stand at the same places. Every block is a number times the identity.
+    """
+    blocks = np.zeros_like(like.blocks)
+    points, tets = mesh_arrays(groups[0].nodes, groups[0].tets)
+    for group in groups:
+        L, w = tet_quadrature(MASS_ORDER if group.curved else _EXACT_ORDER)
+        N = tet_values(L).T
+        products, slopes = N[:, :, None] * N[:, None, :], point_slopes(L)
+        if not group.curved:  # the determinant is constant: one point with the sum of them all
+            products, slopes, w = np.tensordot(w, products, axes=1)[None], slopes[:1], np.ones(1)
+        rule = np.ascontiguousarray(density * products), slopes, w
+        pattern = like.indptr, like.indices
+        add_masses(blocks, points, tets, group.elements.astype(np.int32), rule, pattern, like.threads)
+    return BlockMatrix(like.indptr, like.indices, blocks, like.threads)
+
+
+def node_integrals(groups: list[ElementGroup], threads: int = 1) -> Array:
+    """(n, 4) int N_a dV, mm^3, and int dN_a/dx_i dV, mm^2, of every node."""
+    out = np.zeros((groups[0].nodes.shape[1], 4))
+    points, tets = mesh_arrays(groups[0].nodes, groups[0].tets)
+    for group in groups:
+        rule = np.ascontiguousarray(tet_values(group.points).T), point_slopes(group.points), group.rule
+        shape_integrals(points, tets, group.elements.astype(np.int32), group.curved, rule, out, threads)
+    return out
+
+
+def node_volumes(shares: Array, nodes: Array) -> tuple[float, NDArray[np.float64]]:
+    """Volume, mm^3, and its first moment (3,), mm^4, from the integrals (n,) of the shape functions: positions are
+    interpolated with them."""
+    return float(shares.sum()), nodes @ shares
