@@ -159,12 +159,12 @@ class Sections:
 
     def both_integrals(self, x: float) -> tuple[OutlineIntegrals, OutlineIntegrals]:
         """Exact integrals without and with the cuts taken off."""
-        key = self._net_key(x)
+        key = self.net_key(x)
         if key not in self._net:
             self._net[key] = outline_integrals(net_section(self.member, x))
         return self.integrals(x), self._net[key]
 
-    def _net_key(self, x: float) -> Hashable:
+    def net_key(self, x: float) -> Hashable:
         """Equal where net sections are: like cuts of a prismatic stretch share theirs; a round hole is symmetric."""
         here = [e for e in self.effects if e.start < x < e.end]
         piece = self.piece(x)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from fem.beam.modes.buckling import beam_buckling, buckling_studies
 from fem.beam.modes.vibration import beam_vibration
 
-__all__ = ["beam_vibration"]
+__all__ = ["beam_buckling", "beam_vibration", "buckling_studies"]

@@ -20,6 +20,7 @@ from scipy.linalg import eigh
 
 from fem.beam.actions import Actions
 from fem.beam.along import SectionSolver
+from fem.beam.cases import support_rows
 from fem.beam.equations import Row, States, solve_line
 from fem.beam.mesh import BeamMesh
 from fem.beam.modes.describe import modes_of
@@ -93,8 +94,6 @@ def _acting(part: Part) -> tuple[RegionLoad | RemotePoint, ...]:
 
 def _held(mesh: BeamMesh, actions: Actions, free: bool) -> list[Row]:
     """Rows of the supports and of rigid regions; of a free part six that hold its first section."""
-    from fem.beam.solve import support_rows
-
     rows = support_rows(mesh, actions)
     for k in range(6 if free else 0):
         vector = np.zeros(actions.freedoms)
@@ -123,6 +122,18 @@ class _Trial:
 
     def __matmul__(self, a: Array) -> _Trial:
         return _Trial(self.inside @ a, self.freedoms @ a)
+
+    def __sub__(self, other: _Trial) -> _Trial:
+        return _Trial(self.inside - other.inside, self.freedoms - other.freedoms)
+
+
+@dataclass(frozen=True)
+class _Forces:
+    """Forces on each length (m, 6, c) at its start and their growth per mm, and on the freedoms (n_freedoms, c)."""
+
+    start: Array
+    growth: Array
+    nodal: Array
 
 
 @dataclass(frozen=True)
@@ -187,30 +198,39 @@ class _Model:
         inside = np.einsum("mp,mpia,mpib->ab", self.weight, a.inside, self.inertia @ b.inside, optimize=True)
         return np.asarray(inside + (self.lumped @ a.freedoms).T @ (self.lumped @ b.freedoms))
 
-    def _bent(self, trial: _Trial) -> tuple[States, Array, Array]:
-        """The part bent by the inertia forces of motions: its states, and the loads on lengths and freedoms."""
+    def _inertia_forces(self, trial: _Trial) -> _Forces:
+        """Of motions: varying in a straight line along each length."""
         force = (self.inertia @ trial.inside)[..., :6, :]
-        loads = np.zeros((len(force), 13, force.shape[-1]))
-        loads[:, :6] = force[:, 0]
-        loads[:, 6:12] = (force[:, 2] - force[:, 0]) / np.diff(self.mesh.x)[:, None, None]
-        nodal = self.lumped.T @ (self.lumped @ trial.freedoms)
+        growth = (force[:, 2] - force[:, 0]) / np.diff(self.mesh.x)[:, None, None]
+        return _Forces(force[:, 0], growth, self.lumped.T @ (self.lumped @ trial.freedoms))
+
+    def _work(self, motion: _Trial, forces: _Forces) -> Array:
+        """(ca, cb) work of forces on motions."""
+        h = np.diff(self.mesh.x)[:, None, None]
+        inside = np.stack([forces.start + t * h * forces.growth for t in (0.0, 0.5, 1.0)], axis=1)
+        along = np.einsum("mp,mpia,mpib->ab", self.weight, motion.inside[..., :6, :], inside, optimize=True)
+        return np.asarray(along + motion.freedoms.T @ forces.nodal)
+
+    def _bent(self, forces: _Forces) -> States:
+        count = forces.nodal.shape[1]
+        loads = np.concatenate([forces.start, forces.growth, np.zeros((len(forces.start), 1, count))], axis=1)
         line = replace(self.mesh.line, extra=6 * len(self.actions.rigid_points))
-        rows = [replace(row, value=np.zeros(force.shape[-1])) for row in self.rows]
-        return solve_line(line, rows, nodal, loads, self.actions.rigid_motions(), self._name), loads, nodal
+        rows = [replace(row, value=np.zeros(count)) for row in self.rows]
+        return solve_line(line, rows, forces.nodal, loads, self.actions.rigid_motions(), self._name)
 
     def improved(self, trial: _Trial, wanted: int) -> tuple[_Pairs, _Trial]:
         """One step of subspace iteration: the part bent by the trial shapes' inertia, and the best combinations."""
-        states, loads, nodal = self._bent(trial)
+        R = self.rigid
+        if self.free:  # nothing may be left for what holds the first section
+            held = self._work(R, self._inertia_forces(R))
+            trial = trial - R @ np.linalg.solve(held, self._work(R, self._inertia_forces(trial)))
+        forces = self._inertia_forces(trial)
+        states = self._bent(forces)
         whole = np.stack([states.start, states.middle, states.end], axis=1)
         bent = _Trial(whole[:, :, :7], states.freedoms)
-        h = np.diff(self.mesh.x)[:, None, None]
-        forces = np.stack([loads[:, :6], loads[:, :6] + 0.5 * h * loads[:, 6:12], loads[:, :6] + h * loads[:, 6:12]], 1)
-        K = np.einsum("mp,mpia,mpib->ab", self.weight, bent.inside[..., :6, :], forces, optimize=True)
-        K = K + bent.freedoms.T @ nodal
         if self.free:
-            R = self.rigid
-            onto = np.linalg.solve(self.kinetic(R, R), self.kinetic(R, bent))
-            bent = _Trial(bent.inside - R.inside @ onto, bent.freedoms - R.freedoms @ onto)
+            bent = bent - R @ np.linalg.solve(self.kinetic(R, R), self.kinetic(R, bent))
+        K = self._work(bent, forces)
         M = self.kinetic(bent, bent)
         size = 1.0 / np.sqrt(np.diag(M))
         value, a = eigh(0.5 * (K + K.T) * np.outer(size, size), M * np.outer(size, size))
@@ -218,7 +238,7 @@ class _Model:
         new = bent @ a
         # K new = M trial a: what is left is M (trial a - omega^2 new)
         pushed = trial @ a
-        off = _Trial(pushed.inside - new.inside * value, pushed.freedoms - new.freedoms * value)
+        off = pushed - new @ np.diag(value)
         residual = np.sqrt(np.abs(np.diag(self.kinetic(off, off)) / np.diag(self.kinetic(pushed, pushed))))
         at = [self.mesh.node(k * self.mesh.length / STEPS) for k in range(SHAPE_STATIONS)]
         d = new.freedoms[:7 * len(self.mesh.x)].reshape(len(self.mesh.x), 7, -1)[at, :6, :wanted]
