@@ -3,16 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from fem.figure import Figure, FigureKey, station_place
 from fem.solid.frame import Frame, member_frame, stations
 from fem.solid.model import SolidModel
-from fem.solid.outline_cut import SIDES, Segments, cut_facets, extreme_value, side_segments
+from fem.solid.outline_cut import SIDES, Outline, extreme_value, side_segments
 from fem.solid.shape import Array
 from fem.solid.stress import along
 from geometry.part import Cut, Member
+from mesher.named_mesh import NamedMesh
 
 RIM = 0.05
 """Points within this part of a cut's half depth from its extreme are its rim."""
@@ -32,10 +35,30 @@ def _figures(
         )
 
 
-def outer_segments(model: SolidModel, member: Member, frame: Frame, at: float) -> Segments:
-    """Outline of the section at a station: all boundary for a single member, else the member's own outer faces."""
+@dataclass(frozen=True, slots=True)
+class SurfaceStress:
+    """Nodal stress (c, 6, s) and its spread (c, s) on the surface's nodes; place (n,): number of each node there."""
+
+    stress: Array
+    spread: Array
+    place: NDArray[np.int64]
+
+    def outline(self, mesh: NamedMesh, facets: NDArray[np.int64], frame: Frame) -> Outline:
+        """Facets (6, k) of the boundary to be cut, with the surface's numbers as their nodes."""
+        return Outline(mesh.nodes, facets, frame, self.place)
+
+
+def surface_stress(mesh: NamedMesh, stress: Array, spread: Array) -> SurfaceStress:
+    """What the figures need of the nodal stress (c, 6, n) and of its spread (c, n)."""
+    nodes = np.unique(mesh.boundary)
+    place = np.full(mesh.nodes.shape[1], -1)
+    place[nodes] = np.arange(nodes.size)
+    return SurfaceStress(stress[:, :, nodes], spread[:, nodes], place)
+
+
+def outer_facets(model: SolidModel, member: Member) -> NDArray[np.int64]:
+    """Facets of the member's outline: all boundary for a single member, else the member's own outer faces."""
     mesh = model.mesh
-    facets = mesh.boundary
     if len(model.part.members) > 1:
         own = [
             mesh.facets[f"{member.name}.{side}"]
@@ -43,18 +66,20 @@ def outer_segments(model: SolidModel, member: Member, frame: Frame, at: float) -
             if f"{member.name}.{side}" in mesh.facets
         ]
         if own:
-            facets = np.concatenate(own, axis=1)
-    return cut_facets(mesh, facets, frame, at)
+            return np.concatenate(own, axis=1)
+    return mesh.boundary
 
 
 def nominal_figures(model: SolidModel, stress: Array, spread: Array) -> Iterator[Figure]:
     """``xx@top`` and so on at the 21 stations; nothing where the section has no outline there."""
+    surface = surface_stress(model.mesh, stress, spread)
+    c = stress.shape[0]
     for member in model.part.members:
         frame = member_frame(member)
-        values = np.concatenate([along(stress, frame.axes[0]), spread])
-        c = stress.shape[0]
+        outline = surface.outline(model.mesh, outer_facets(model, member), frame)
+        values = np.concatenate([along(surface.stress, frame.axes[0]), surface.spread])
         for at in stations(frame.length):
-            segments = outer_segments(model, member, frame, float(at))
+            segments = outline.at(float(at))
             if not segments.facets.size:
                 continue
             for side in SIDES:
@@ -64,14 +89,16 @@ def nominal_figures(model: SolidModel, stress: Array, spread: Array) -> Iterator
                 )
 
 
-def _cut_figures(model: SolidModel, member: Member, cut: Cut, values: Array) -> Iterator[Figure]:
+def _cut_figures(
+    model: SolidModel, member: Member, cut: Cut, surface: SurfaceStress, values: Array
+) -> Iterator[Figure]:
     """Mean through the thickness of the stress along the member at the two points of the rim across it."""
     name = f"{member.name}.{cut.name}"
     facets = model.mesh.facets.get(name)
     if facets is None or not facets.shape[1]:
         return
     frame = member_frame(member)
-    segments = cut_facets(model.mesh, facets, frame, cut.at)
+    segments = surface.outline(model.mesh, facets, frame).at(cut.at)
     if not segments.facets.size:
         return
     axis = 1 if cut.axis == "y" else 0
@@ -92,7 +119,7 @@ def _cut_figures(model: SolidModel, member: Member, cut: Cut, values: Array) -> 
 
 
 def _shoulder_figures(
-    model: SolidModel, member: Member, at: float, radius: float, stress: Array, spread: Array
+    model: SolidModel, member: Member, outline: Outline, at: float, radius: float, surface: SurfaceStress
 ) -> Iterator[Figure]:
     """Greatest thickness mean along the fillet of the stress along its surface, where the section is smaller.
 
@@ -101,13 +128,14 @@ def _shoulder_figures(
     of greater size in the plane of the fillet's profile.
     """
     frame = member_frame(member)
+    stress, spread = surface.stress, surface.spread
     c = stress.shape[0]
     for side, name in (("top", "upper"), ("bottom", "lower")):
         axis, sign = SIDES[side]
         reach = {}
         for way, end in ((-1.0, 0.0), (1.0, frame.length)):
             beside = min(2 * radius, abs(end - at) / 2)  # a shoulder may lie closer to an end than two radii
-            segments = outer_segments(model, member, frame, at + way * beside)
+            segments = outline.at(at + way * beside)
             reach[way] = sign * segments.yz[axis].max() if sign > 0 else -segments.yz[axis].min()
         step = reach[-1.0] - reach[1.0]
         if abs(step) < 1e-3 * radius:
@@ -119,7 +147,7 @@ def _shoulder_figures(
         best, error = np.zeros(c), np.zeros(c)
         length = min(1.5 * radius, 0.98 * abs((frame.length if way > 0 else 0.0) - at))
         for x in np.linspace(0.02 * radius, length, FILLET_SAMPLES) * way + at:
-            segments = outer_segments(model, member, frame, float(x))
+            segments = outline.at(float(x))
             chosen = side_segments(segments, side)
             # a round section touches its extreme in a point, a flat one along its thickness
             mean = segments.mean(values, chosen) if chosen.size else extreme_value(segments, side, values)[0]
@@ -137,10 +165,15 @@ def _larger_principal(a: Array, b: Array, diagonal: Array) -> Array:
 
 def notch_figures(model: SolidModel, stress: Array, spread: Array) -> Iterator[Figure]:
     """``xx@upper`` and ``xx@lower`` of every cut and every filleted shoulder."""
+    surface = surface_stress(model.mesh, stress, spread)
     for member in model.part.members:
-        values = np.concatenate([along(stress, member_frame(member).axes[0]), spread])
+        frame = member_frame(member)
+        values = np.concatenate([along(surface.stress, frame.axes[0]), surface.spread])
         for cut in member.cuts:
-            yield from _cut_figures(model, member, cut, values)
-        for before, after in zip(member.stations, member.stations[1:], strict=False):
-            if before.at == after.at and after.shoulder_fillet > 0:
-                yield from _shoulder_figures(model, member, after.at, after.shoulder_fillet, stress, spread)
+            yield from _cut_figures(model, member, cut, surface, values)
+        pairs = zip(member.stations, member.stations[1:], strict=False)
+        steps = [(b.at, b.shoulder_fillet) for a, b in pairs if a.at == b.at and b.shoulder_fillet > 0]
+        if steps:
+            outline = surface.outline(model.mesh, outer_facets(model, member), frame)
+            for at, radius in steps:
+                yield from _shoulder_figures(model, member, outline, at, radius, surface)

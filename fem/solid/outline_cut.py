@@ -13,7 +13,6 @@ from numpy.typing import NDArray
 from fem.solid.clip import smaller_triangles
 from fem.solid.frame import Frame
 from fem.solid.shape import TRIANGLE_EDGES, Array, triangle_values
-from mesher.named_mesh import NamedMesh
 
 FLAT = 1e-4
 """A side is flat where its points lie within this part of the section's extent."""
@@ -53,45 +52,59 @@ class Segments:
         return np.asarray(total / (2 * length.sum()))
 
 
-def cut_facets(mesh: NamedMesh, facets: NDArray[np.int64], frame: Frame, at: float) -> Segments:
-    """Cut boundary triangles (6, k) with the plane at a station; a node on the plane counts as beyond it."""
-    x = frame.local(mesh.nodes[:, facets])  # (3, 6, k)
-    d = x[0] - at
-    d[np.abs(d) < 1e-9 * frame.length] = 0.0
-    segments = _cut(facets, x, d)
-    return segments if segments.facets.size else _cut(facets, x, -d)
+class Outline:
+    """Boundary triangles that are cut at many stations of a member."""
 
+    def __init__(
+        self, nodes: Array, facets: NDArray[np.int64], frame: Frame, place: NDArray[np.int64] | None = None
+    ) -> None:
+        """nodes (3, n) mm, global; facets (6, k); place (n,): number of each node in the values that will be asked."""
+        self.facets, self.length = facets if place is None else place[facets], frame.length
+        self.x = frame.local(nodes[:, facets])  # (3, 6, k)
+        self.low, self.high = self.x[0].min(axis=0), self.x[0].max(axis=0)
+        middles = self.x[:, :3][:, TRIANGLE_EDGES].mean(axis=2)
+        size = np.linalg.norm(self.x[:, 1] - self.x[:, 0], axis=0)
+        self.curved = (np.linalg.norm(self.x[:, 3:] - middles, axis=0) > 1e-9 * size).any(axis=0)
+        self.extent = float(np.ptp(self.x[0])) if facets.size else 0.0
 
-def _cut(facets: NDArray[np.int64], x: Array, d: Array) -> Segments:
-    beyond = d >= 0
-    crossing = np.flatnonzero(beyond.any(axis=0) & ~beyond.all(axis=0))
-    middles = x[:, :3][:, TRIANGLE_EDGES].mean(axis=2)
-    size = np.linalg.norm(x[:, 1] - x[:, 0], axis=0)
-    curved = (np.linalg.norm(x[:, 3:] - middles, axis=0) > 1e-9 * size).any(axis=0)
-    bary, owner = [], []
-    for chosen, levels in ((crossing[~curved[crossing]], 0), (crossing[curved[crossing]], 3)):
-        children = smaller_triangles(levels)
-        bary.append(np.tile(children, (chosen.size, 1, 1)))
-        owner.append(np.repeat(chosen, children.shape[0]))
-    corners, own = np.concatenate(bary), np.concatenate(owner)  # (t, 3 corners, 3)
-    N = triangle_values(corners.reshape(-1, 3).T).reshape(6, -1, 3)
-    distance = np.einsum("atc,at->tc", N, d[:, own])
-    distance[np.abs(distance) < 1e-12 * max(float(np.ptp(d)), 1e-300)] = 0.0
-    code = (distance >= 0) @ np.array([1, 2, 4])
-    ends, owners = [], []
-    for lone, codes in enumerate(((1, 6), (2, 5), (4, 3))):
-        mask = np.flatnonzero((code == codes[0]) | (code == codes[1]))
-        pair = []
-        for other in (k for k in range(3) if k != lone):
-            t = (distance[mask, lone] / (distance[mask, lone] - distance[mask, other]))[:, None]
-            pair.append(corners[mask, lone] * (1 - t) + corners[mask, other] * t)
-        ends.append(np.stack(pair, axis=-1))
-        owners.append(own[mask])
-    points, owned = np.concatenate(ends).transpose(1, 0, 2), np.concatenate(owners)  # (3, s, 2)
-    N = triangle_values(points.reshape(3, -1)).reshape(6, -1, 2)
-    yz = np.einsum("ias,ase->ise", x[1:][:, :, owned], N)
-    keep = np.hypot(*(yz[:, :, 1] - yz[:, :, 0])) > 1e-12 * max(float(np.ptp(x[0])), 1e-300)
-    return Segments(facets, owned[keep], points[:, keep], yz[:, keep])
+    def at(self, at: float) -> Segments:
+        """Segments of the plane at a station; a node on the plane counts as beyond it."""
+        tolerance = 1e-9 * self.length
+        before, beyond = self.low - at, self.high - at
+        segments = self._cut(at, np.flatnonzero((before <= -tolerance) & (beyond > -tolerance)), 1.0)
+        if segments.facets.size:
+            return segments
+        return self._cut(at, np.flatnonzero((beyond >= tolerance) & (before < tolerance)), -1.0)
+
+    def _cut(self, at: float, crossing: NDArray[np.int64], sign: float) -> Segments:
+        x, bent = self.x[:, :, crossing], self.curved[crossing]
+        d = x[0] - at
+        d[np.abs(d) < 1e-9 * self.length] = 0.0
+        d *= sign
+        bary, owner, distances = [], [], []
+        for chosen, levels in ((np.flatnonzero(~bent), 0), (np.flatnonzero(bent), 3)):
+            children = smaller_triangles(levels)
+            bary.append(np.tile(children, (chosen.size, 1, 1)))
+            owner.append(np.repeat(chosen, children.shape[0]))
+            distances.append((d[:, chosen].T @ triangle_values(children.reshape(-1, 3).T)).reshape(-1, 3))
+        corners, own = np.concatenate(bary), np.concatenate(owner)  # (t, 3 corners, 3), (t,)
+        distance = np.concatenate(distances)  # (t, 3)
+        distance[np.abs(distance) < 1e-12 * max(self.extent, 1e-300)] = 0.0
+        code = (distance >= 0) @ np.array([1, 2, 4])
+        ends, owners = [], []
+        for lone, codes in enumerate(((1, 6), (2, 5), (4, 3))):
+            mask = np.flatnonzero((code == codes[0]) | (code == codes[1]))
+            pair = []
+            for other in (k for k in range(3) if k != lone):
+                t = (distance[mask, lone] / (distance[mask, lone] - distance[mask, other]))[:, None]
+                pair.append(corners[mask, lone] * (1 - t) + corners[mask, other] * t)
+            ends.append(np.stack(pair, axis=-1))
+            owners.append(own[mask])
+        points, owned = np.concatenate(ends).transpose(1, 0, 2), np.concatenate(owners)  # (3, s, 2)
+        N = triangle_values(points.reshape(3, -1)).reshape(6, -1, 2)
+        yz = (x[1:, :, owned, None] * N).sum(axis=1)
+        keep = np.hypot(*(yz[:, :, 1] - yz[:, :, 0])) > 1e-12 * max(self.extent, 1e-300)
+        return Segments(self.facets, crossing[owned[keep]], points[:, keep], yz[:, keep])
 
 
 SIDES = {"top": (1, 1.0), "bottom": (1, -1.0), "left": (0, -1.0), "right": (0, 1.0)}
