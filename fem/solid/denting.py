@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.interpolate import CubicSpline
 
 from fem.solid.cut import Cut
@@ -13,6 +14,7 @@ from fem.solid.model import SolidModel
 from fem.solid.result import Denting
 from fem.solid.sections import Motions
 from fem.solid.shape import Array
+from geometry.part import StripLoad
 
 
 def denting(
@@ -20,7 +22,8 @@ def denting(
 ) -> Iterator[Denting]:
     """Largest displacement of each loaded region relative to the rigid motion of the section at each point's station.
 
-    The sections' mean displacement and rotation are splined over the stations. Regions on no member are left out.
+    The sections' mean displacement and rotation are splined over the stations. Regions on no member are left out. Of a
+    travelling load only the facets that its strips touch count.
     """
     mesh = model.mesh
     motion = {}
@@ -31,18 +34,25 @@ def denting(
         at = np.array([cut.at for cut in cuts])
         centres = np.array([cut.centroid for cut in cuts])
         motion[member.name] = (frame, CubicSpline(at, np.array(rows)), CubicSpline(at, centres))
+    known: dict[str, tuple[NDArray[np.int64], Array, Array]] = {}  # of each face: nodes, (k, c, 6), (k, 3)
     for load in model.part.loads:
         on = getattr(load, "on", "")
         name = on.partition(".")[0]
         if name not in motion or on not in mesh.facets:
             continue
-        frame, spline, centre = motion[name]
-        nodes = np.unique(mesh.facets[on])
-        local = frame.local(mesh.nodes[:, nodes])
-        at = np.clip(local[0], spline.x[0], spline.x[-1])
-        values, arms = spline(at), (local.T - centre(at)) @ frame.axes  # (k, c, 6), (k, 3)
+        if on not in known:
+            frame, spline, centre = motion[name]
+            nodes = np.unique(mesh.facets[on])
+            local = frame.local(mesh.nodes[:, nodes])
+            at = np.clip(local[0], spline.x[0], spline.x[-1])
+            known[on] = nodes, spline(at), (local.T - centre(at)) @ frame.axes
+        nodes, values, arms = known[on]
+        mine: slice | NDArray[np.intp] = slice(None)
+        if isinstance(load, StripLoad):
+            pressed = np.unique(np.concatenate([piece.facets for piece in model.loads[load.name].pieces], axis=1))
+            mine = np.searchsorted(nodes, pressed)
         for k, case in enumerate(model.part.cases):
             if case.factors.get(load.name, 0.0):
-                rigid = values[:, k, :3] + np.cross(values[:, k, 3:], arms)
-                off = np.linalg.norm(u[k][:, nodes].T - rigid, axis=1)
+                rigid = values[mine, k, :3] + np.cross(values[mine, k, 3:], arms[mine])
+                off = np.linalg.norm(u[k][:, nodes[mine]].T - rigid, axis=1)
                 yield Denting(case.name, on, float(off.max()))

@@ -10,11 +10,12 @@ import scipy.sparse as sp
 from numpy.typing import NDArray
 from scipy.spatial import cKDTree
 
+from fem.solid.kernels.cutting import EDGES, edge_lengths
 from fem.solid.kernels.hills import hills, maxima
 from fem.solid.kernels.parallel import ranges, run
 from fem.solid.model import SolidModel
 from fem.solid.result import CaseStress, PeakPlace
-from fem.solid.shape import TET_EDGES, Array
+from fem.solid.shape import Array
 from mesher.named_mesh import NamedMesh
 
 COUNT = 8
@@ -27,12 +28,11 @@ CANDIDATES = 200
 
 def node_sizes(mesh: NamedMesh) -> Array:
     """(n,) mean length of the element edges at each node, mm (a mid-edge node counts half edges' corners)."""
-    ends = mesh.nodes[:, mesh.tets[TET_EDGES]]
-    length = np.linalg.norm(ends[:, :, 0] - ends[:, :, 1], axis=0)  # (6, m)
-    mean = np.broadcast_to(length.mean(axis=0), mesh.tets.shape)
     n = mesh.nodes.shape[1]
-    count = np.bincount(mesh.tets.ravel(), minlength=n)
-    return np.asarray(np.bincount(mesh.tets.ravel(), weights=mean.ravel(), minlength=n) / np.maximum(count, 1))
+    total, count = np.zeros(n), np.zeros(n, dtype=np.int64)
+    tets = np.ascontiguousarray(mesh.tets.T, dtype=np.int32)
+    edge_lengths(np.ascontiguousarray(mesh.nodes.T), tets, EDGES, total, count)
+    return total / np.maximum(count, 1)
 
 
 def region_rim(mesh: NamedMesh, region: str) -> Array:

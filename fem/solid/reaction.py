@@ -40,8 +40,9 @@ def reactions(model: SolidModel, u: Array, mean_forces: Array) -> Reactions:
     }
     force = {name: np.zeros((c, 3)) for name in centre}
     moment = {name: np.zeros((c, 3)) for name in centre}
-    mean = (constraints.rows.T @ mean_forces).T.reshape(c, n, 3)
-    own = nodal - mean
+    own = nodal
+    if constraints.rows.shape[0]:
+        own = nodal - (constraints.rows.T @ mean_forces).T.reshape(c, n, 3)
     for k, name in enumerate(constraints.row_supports):
         row = constraints.rows[[k]].toarray().reshape(n, 3)
         arms = mesh.nodes.T - centre[name]

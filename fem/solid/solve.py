@@ -76,17 +76,17 @@ def solve_solid(
     u = np.ascontiguousarray(solution.u.T.reshape(len(cases), n, 3).transpose(0, 2, 1))
     stage("reactions and balance")
     reacting = reactions(model, solution.u, solution.mean_forces)
-    energy, thermal_part = strain_energies(model, u)
+    cutter = Cutter(mesh)
+    energy, thermal_part = strain_energies(model, u, cutter, budget.threads)
     checks = [*load_checks(model), *balance_checks(model, u, reacting, energy, thermal_part, solution)]
     stage("stress")
     stress, spread, lost = nodal_stress(model, u)
     energy_error = lost / np.where(energy > 0, energy, np.inf)
     mises, principal = von_mises(stress, axis=1), principal_stresses(stress, budget.threads)
     stage("sections")
-    cutter = Cutter(mesh)
-    sections = member_sections(model, cutter)
+    sections = member_sections(model, cutter, budget.threads)
     motions = section_motions(model, u, sections)
-    forces, gap = section_forces(model, u, reacting, sections)
+    forces, gap = section_forces(model, u, reacting, sections, cutter, budget.threads)
     stage("figures")
     figures = (
         *displacement_figures(model, motions, energy_error),
@@ -110,7 +110,7 @@ def solve_solid(
         tresca=principal[:, 0] - principal[:, 2],
         principal=principal,
         figures=figures,
-        peaks=tuple(peak_places(model, mises, principal, places, near)),
+        peaks=tuple(peak_places(model, mises, principal, places, near, budget.threads)),
         case_stress=tuple(case_stresses(model, mises, near)),
         denting=tuple(denting(model, u, sections, motions)),
         section_gap=gap,

@@ -99,6 +99,21 @@ def element_ranges(x, tets, low, high, middle):  # type: ignore[no-untyped-def]
 
 
 @kernel
+def edge_lengths(points, tets, edges, total, count):  # type: ignore[no-untyped-def]
+    """Add to each node (n,) the mean edge length of its elements, and count them."""
+    for e in range(tets.shape[0]):
+        mean = 0.0
+        for k in range(6):
+            i, j, square = tets[e, edges[k, 0]], tets[e, edges[k, 1]], 0.0
+            for c in range(3):
+                square += (points[j, c] - points[i, c]) ** 2
+            mean += np.sqrt(square) / 6.0
+        for a in range(10):
+            total[tets[e, a]] += mean
+            count[tets[e, a]] += 1
+
+
+@kernel
 def _shapes(L, N):  # type: ignore[no-untyped-def]
     for a in range(4):
         N[a] = L[a] * (2.0 * L[a] - 1.0)
