@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from functools import partial
+from typing import Any
 
 import numpy as np
 import pytest
@@ -180,8 +181,8 @@ def test_a_wide_plate_under_a_push_is_stiffer_than_a_strut() -> None:
 
 
 def test_a_missed_factor_is_told(monkeypatch: pytest.MonkeyPatch) -> None:
-    def without_the_second(pencil: Pencil, start: Array, tolerance: Array, **more: object) -> Pairs:
-        found = extreme_pairs(pencil, start, np.r_[tolerance[:1], tolerance], **more)  # type: ignore[arg-type]
+    def without_the_second(pencil: Pencil, start: Array, tolerance: Array, *rest: Any, **more: Any) -> Pairs:
+        found = extreme_pairs(pencil, start, np.r_[tolerance[:1], tolerance], *rest, **more)
         kept = np.delete(np.arange(found.mu.size), 1)
         return Pairs(found.mu[kept], found.x[:, kept], found.residual[kept], found.rounds)
 

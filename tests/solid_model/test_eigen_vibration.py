@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from functools import partial
+from typing import Any
 
 import numpy as np
 import pytest
@@ -198,8 +199,8 @@ def test_a_plate_moves_by_itself_in_its_fourth_mode() -> None:
 
 
 def test_a_missed_mode_is_told(monkeypatch: pytest.MonkeyPatch) -> None:
-    def without_the_second(pencil: Pencil, start: Array, tolerance: Array) -> Pairs:
-        found = extreme_pairs(pencil, start, np.r_[tolerance[:1], tolerance])
+    def without_the_second(pencil: Pencil, start: Array, tolerance: Array, *rest: Any) -> Pairs:
+        found = extreme_pairs(pencil, start, np.r_[tolerance[:1], tolerance], *rest)
         kept = np.delete(np.arange(found.mu.size), 1)
         return Pairs(found.mu[kept], found.x[:, kept], found.residual[kept], found.rounds)
 

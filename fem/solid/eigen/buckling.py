@@ -19,23 +19,25 @@ from fem.solid.block_matrix import BlockMatrix
 from fem.solid.cut import Cutter
 from fem.solid.eigen.count import LowRank, negative_count, separated, too_large
 from fem.solid.eigen.describe import buckling_kind, section_shapes, section_shares, shape_sections
-from fem.solid.eigen.local import geometric_stiffness, mass_matrix
 from fem.solid.eigen.motions import Motions, Operator, held_motions
-from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs
+from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, space_room
 from fem.solid.eigen.remote import lever_rows
 from fem.solid.eigen.start import start_unknowns
 from fem.solid.eigen.vibration import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes
+from fem.solid.geometric import geometric_stiffness
+from fem.solid.mass import mass_matrix
 from fem.solid.model import SolidModel, thermal_vector
 from fem.solid.result import Check
 from fem.solid.shape import Array
-from fem.solid.stiffness import stresses
+from fem.solid.stiffness import group_stresses
 from fem.solid.system import HeldSystem
 from geometry.budget import Budget
 from geometry.part import BodyLoad, Buckling, RemotePoint
 from geometry.problem import SolveError
 
-LARGEST_FACTOR = 1e6
-"""Factors beyond are no buckling: rounding, or waves as short as the elements."""
+LARGEST_STRAIN = 1.0
+"""Factors at which the root mean square of the stress is more than this part of Young's modulus are no buckling but
+rounding, or waves as short as the elements."""
 OTHER_SIGN = 100.0
 """How many times the least factor one of the other sign may have to be looked for: set by trial."""
 OTHER_SIGN_ROUNDS = 40
@@ -44,11 +46,13 @@ NOTE = "loads keep their direction (pressure does not turn with the surface); wa
 
 @dataclass(frozen=True, slots=True)
 class _Geometric:
-    """Geometric stiffness of the part and weights and rows (r, 3 n) of the levers of remote forces."""
+    """Geometric stiffness of the part, and weights and rows (r, 3 n) of the levers of remote forces; `largest` is the
+    factor beyond which nothing is looked for."""
 
     part: BlockMatrix
     weights: Array
     levers: sp.csr_matrix
+    largest: float
 
     def __matmul__(self, u: Array) -> Array:
         return np.asarray(self.part @ u + self.levers.T @ (self.weights[:, None] * (self.levers @ u)))
@@ -116,26 +120,19 @@ def _geometric_of(
     both = np.array([u_fixed, u[case] - u_fixed])
     changes = np.array([change, model.change[case] - change])
     expansion = part.material.expansion * changes
-    stress = [
-        stresses(
-            group.gradients,
-            both[:, :, model.mesh.tets[:, group.elements]].transpose(0, 3, 2, 1),
-            part.material.E,
-            part.material.nu,
-            expansion,
-        )
-        for group in model.groups
-    ]
+    stress = group_stresses(model.groups, both, part.material.E, part.material.nu, expansion, model.K.threads)
+    size = [np.sqrt(sum((s[k] ** 2).sum() for s in stress) / sum(s[k].size for s in stress) * 6) for k in range(2)]
     # stress that is rounding of the motion that makes it is none
-    largest = [max(float(np.abs(s[k]).max()) for s in stress) for k in range(2)]
     strain = float(np.abs(expansion).max()) + float(np.abs(both).max() / np.ptp(model.mesh.nodes, axis=1).max())
     least = 1e-9 * part.material.E * strain
-    return tuple(  # type: ignore[return-value]
-        _Geometric(geometric_stiffness(model, [s[k] for s in stress]), *_levers(model, factors))
-        if largest[k] > least
-        else None
-        for k, factors in enumerate((held, total - held))
-    )
+
+    def geometric(k: int, factors: Array) -> _Geometric | None:
+        if not size[k] > least:
+            return None
+        G = geometric_stiffness(model.groups, [s[k] for s in stress], model.K)
+        return _Geometric(G, *_levers(model, factors), LARGEST_STRAIN * part.material.E / float(size[k]))
+
+    return geometric(0, held), geometric(1, total - held)
 
 
 def _levers(model: SolidModel, factors: Array) -> tuple[Array, sp.csr_matrix]:
@@ -176,6 +173,7 @@ class _Study:
     ) -> None:
         self.model, self.motions, self.fixed, self.varying = model, motions, fixed, varying
         self.study, self.budget = study, budget
+        self.largest = varying.largest if varying else 0.0
         self.allowed = RESIDUAL_ALLOWED[motions.direct]
         self.checks: list[Check] = []
 
@@ -208,10 +206,10 @@ class _Study:
         B = self._reduced(self.varying)
         pencil = Pencil(self._stiffness(), B, self.motions.precondition)
         pairs = self._least(pencil, B)
-        sensible = np.abs(pairs.mu) > 1.0 / LARGEST_FACTOR
+        sensible = np.abs(pairs.mu) > 1.0 / self.largest
         pairs = Pairs(pairs.mu[sensible], pairs.x[:, sensible], pairs.residual[sensible], pairs.rounds)
         if not pairs.mu.size:
-            self._check("factors", 0.0, 0.0, f"none of a size below {LARGEST_FACTOR:g}")
+            self._check("factors", 0.0, 0.0, f"none of a size below {self.largest:.3g}")
             return none
         pairs = self._with_other_sign(pencil, B, pairs)
         worst = float(pairs.residual.max())
@@ -236,11 +234,12 @@ class _Study:
         """The factors of least size, counted."""
         modes, guards = min(self.study.modes, self.motions.free - self.motions.rows.shape[0]), GUARDS
         start, reason = np.zeros((self.motions.free, 0)), too_large(self.motions)
+        room = space_room(self.motions.free, self.budget)
         for attempt in range(3):
             fresh = self._start(B, modes + guards + 4, self.budget.seed + attempt)
             tolerance = np.r_[np.full(modes, self.allowed), np.full(guards, GUARD_ALLOWED)]
-            found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance)
-            real = np.abs(found.mu) > 1.0 / LARGEST_FACTOR
+            found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance, room)
+            real = np.abs(found.mu) > 1.0 / self.largest
             if not (found.residual <= tolerance[: found.mu.size])[real].all():
                 raise SolveError(
                     f"The buckling factors of the case {self.study.case!r} do not converge: residual "
@@ -266,7 +265,7 @@ class _Study:
         """How many factors of one sign are missing among those reported, and what was counted; None: not to be told
         because the next one is not known to stand apart."""
         factors = -1.0 / np.where(found.mu != 0, found.mu, np.nan)
-        mine = np.flatnonzero((factors * sign > 0) & (np.abs(factors) < LARGEST_FACTOR))
+        mine = np.flatnonzero((factors * sign > 0) & (np.abs(factors) < self.largest))
         reported = int((mine < modes).sum())
         if not reported:
             return 0, ""
@@ -338,7 +337,7 @@ class _Describer:
     def modes(self, field: Array, pairs: Pairs, case: str) -> tuple[Sequence[Mode], Array]:
         """Modes and shapes (k, 3, n) of fields (3 n, k)."""
         if not self.made:
-            self.made = shape_sections(self.model, self.cutter), mass_matrix(self.model)
+            self.made = shape_sections(self.model, self.cutter), mass_matrix(self.model.groups, 1.0, self.model.K)
         sections, volume = self.made
         n, count = self.model.mesh.nodes.shape[1], pairs.mu.size
         shapes = field.reshape(n, 3, count).transpose(2, 1, 0)

@@ -70,19 +70,12 @@ def is_direct(solver: str) -> bool:
 
 
 def held_motions(system: HeldSystem, nodes: Array) -> Motions:
-    """What the supports leave. Mean rows are met exactly, whatever the solver's approximation does with them."""
+    """What the supports leave."""
     rows = system.mean_rows.toarray()
-    precondition: Operator = system.precondition
-    if rows.shape[0] and not is_direct(system.solver.name):
-        Z = system.precondition(rows.T)
-        small = np.linalg.inv(rows @ Z)
-
-        def precondition(r: Array) -> Array:
-            y = system.precondition(r)
-            return np.asarray(y - Z @ (small @ (rows @ y)))
-
     springs = spring_unknowns(nodes, system.T) if rows.shape[0] else NO_SPRINGS
-    return Motions(system.elimination, rows, system.apply, precondition, system.solver.name, lambda: None, springs)
+    return Motions(
+        system.elimination, rows, system.apply, system.precondition, system.solver.name, lambda: None, springs
+    )
 
 
 def free_part_constraints(model: SolidModel) -> Constraints:

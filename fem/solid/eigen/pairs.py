@@ -19,12 +19,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.solid.shape import Array
+from geometry.budget import Budget
 
 Operator = Callable[[Array], Array]
 """(f, k) of (f, k)."""
 
 ROUNDS = 120
-_INDEPENDENT = 1e-13
+LEAST_ROOM = 24
+_ALIKE = 1e-2
+_INDEPENDENT = 1e-12
 """Least part (squared, in the norm of A) of a new direction that may lie outside the space."""
 
 
@@ -58,6 +61,11 @@ class Pairs:
     rounds: int
 
 
+def space_room(unknowns: int, budget: Budget) -> int:
+    """Vectors that a third of the memory holds three times."""
+    return int(budget.memory * 2**20 / 3 / (24 * unknowns))
+
+
 def largest(mu: Array, count: int) -> NDArray[np.int64]:
     """Indices of the `count` largest in size, in falling order."""
     return np.argsort(-np.abs(mu), kind="stable")[:count]
@@ -67,7 +75,7 @@ def extreme_pairs(
     pencil: Pencil,
     start: Array,
     tolerance: Array,
-    room: int = 0,
+    room: int = 1000,
     choose: Callable[[Array, int], NDArray[np.int64]] = largest,
     rounds: int = ROUNDS,
     enough: Callable[[Array, int], bool] = lambda mu, rounds: False,
@@ -82,16 +90,16 @@ def extreme_pairs(
         (k,) allowed residual of each of the k pairs, in their order. The pairs come back when all are met or after
         `rounds`: the caller looks at the residuals.
     room
-        Vectors in the space before it is cut back.
+        Vectors that the space may hold; no less than four times the wanted pairs, and no more than five times.
     choose
         Which Ritz values are wanted.
     enough
         Told the Ritz values that are wanted and the round, whether to give up.
     """
     wanted = tolerance.size
-    keep = max(2 * wanted, start.shape[1])
-    room = max(room, keep + 3 * wanted)
-    space, rng = _Space(pencil), np.random.default_rng(0)
+    room = max(min(room, max(5 * wanted, LEAST_ROOM)), 4 * wanted, start.shape[1] + wanted)
+    keep = room - 3 * wanted
+    space, rng = _Space(pencil, start.shape[0], room), np.random.default_rng(0)
     space.add(start)
     residual, last = np.full(wanted, np.inf), np.zeros((0, 0))
     mu = np.zeros(0)
@@ -108,7 +116,7 @@ def extreme_pairs(
         open_ = residual > tolerance[: chosen.size]
         if (chosen.size == wanted and not open_.any()) or enough(mu, done):
             return Pairs(mu, x, residual, done)
-        if space.size + int(open_.sum()) > room:
+        if space.size + wanted > room:
             kept = np.union1d(largest(values, keep), chosen)
             space.rotate(_with(S[:, kept], last))
             last = np.eye(space.size, kept.size)[:, np.searchsorted(kept, chosen)]
@@ -133,49 +141,61 @@ def _with(S: Array, last: Array) -> Array:
 
 
 class _Space:
-    """Columns V with V^T A V = 1, A V and B V."""
+    """Columns V with V^T A V = 1, A V and B V; H = V^T B V."""
 
-    def __init__(self, pencil: Pencil) -> None:
-        self.pencil = pencil
-        self.V = self.AV = self.BV = np.zeros((0, 0))
+    def __init__(self, pencil: Pencil, unknowns: int, room: int) -> None:
+        self.pencil, self.size = pencil, 0
+        self._V, self._AV, self._BV = (np.empty((unknowns, room)) for _ in range(3))
         self.H = np.zeros((0, 0))
 
     @property
-    def size(self) -> int:
-        return self.V.shape[1]
+    def V(self) -> Array:
+        return self._V[:, : self.size]
+
+    @property
+    def AV(self) -> Array:
+        return self._AV[:, : self.size]
+
+    @property
+    def BV(self) -> Array:
+        return self._BV[:, : self.size]
 
     def ritz(self) -> tuple[Array, Array]:
         values, S = np.linalg.eigh(self.H)
         return values, S
 
     def rotate(self, S: Array) -> None:
-        self.V, self.AV, self.BV = self.V @ S, self.AV @ S, self.BV @ S
-        self.H = self._symmetric(self.V.T @ self.BV)
+        count = S.shape[1]
+        for kept in (self._V, self._AV, self._BV):
+            kept[:, :count] = kept[:, : self.size] @ S
+        self.size = count
+        self.H = _symmetric(self.V.T @ self.BV)
 
     def add(self, W: Array) -> bool:
         """Add what is new of W (f, k); False when nothing is."""
         for _ in range(2):
-            if self.size:
-                W = W - self.V @ (self.AV.T @ W)
-            AW = self.pencil.A(W)
-            gram = self._symmetric(W.T @ AW)
+            W = W - self.V @ (self.AV.T @ W)
+        AW = self.pencil.A(W)
+        for least in (_INDEPENDENT, 0.0):  # what the first pass divides by small numbers, the second makes exact
+            gram = _symmetric(W.T @ AW)
             scale = 1.0 / np.sqrt(np.maximum(np.diag(gram), 1e-300))
             values, Q = np.linalg.eigh(gram * scale * scale[:, None])
-            good = values > _INDEPENDENT * max(float(values.max(initial=0.0)), 1e-300)
+            good = values > least * max(float(values.max(initial=0.0)), 1e-300)
             if not good.any():
                 return False
             Q = (scale[:, None] * Q[:, good]) / np.sqrt(values[good])
             W, AW = W @ Q, AW @ Q
+            if least and values[good].min() < _ALIKE * values.max():
+                W = W - self.V @ (self.AV.T @ W)
+                AW = self.pencil.A(W)  # rounding was divided by small numbers too
         BW = self.pencil.B(W)
-        if not self.size:
-            self.V, self.AV, self.BV = W, AW, BW
-            self.H = self._symmetric(W.T @ BW)
-            return True
         cross = self.V.T @ BW
-        self.H = np.block([[self.H, cross], [cross.T, self._symmetric(W.T @ BW)]])
-        self.V, self.AV, self.BV = (np.hstack(pair) for pair in ((self.V, W), (self.AV, AW), (self.BV, BW)))
+        self.H = np.block([[self.H, cross], [cross.T, _symmetric(W.T @ BW)]])
+        first, self.size = self.size, self.size + W.shape[1]
+        for kept, new in ((self._V, W), (self._AV, AW), (self._BV, BW)):
+            kept[:, first : self.size] = new
         return True
 
-    @staticmethod
-    def _symmetric(H: Array) -> Array:
-        return np.asarray((H + H.T) / 2)
+
+def _symmetric(H: Array) -> Array:
+    return np.asarray((H + H.T) / 2)

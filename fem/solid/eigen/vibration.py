@@ -12,12 +12,12 @@ from fem.solid.block_matrix import BlockMatrix
 from fem.solid.cut import Cutter
 from fem.solid.eigen.count import APART, LowRank, negative_count, separated, too_large
 from fem.solid.eigen.describe import section_shapes, section_shares, shape_sections, vibration_kind
-from fem.solid.eigen.local import mass_matrix
 from fem.solid.eigen.motions import Motions, Operator, free_motions, free_part_constraints, held_motions
-from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs
+from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, space_room
 from fem.solid.eigen.remote import remote_mass_rows
 from fem.solid.eigen.rigid import orthonormal, rigid_motions
 from fem.solid.eigen.start import start_unknowns
+from fem.solid.mass import mass_matrix
 from fem.solid.model import SolidModel
 from fem.solid.result import Check
 from fem.solid.shape import Array
@@ -77,7 +77,7 @@ def solid_vibration(
     if wanted is None:
         raise SolveError("The part asks for no natural frequencies.")
     points = [p for p in model.part.loads if isinstance(p, RemotePoint) and (p.mass > 0 or any(p.inertia))]
-    mass = _Mass(mass_matrix(model), remote_mass_rows(model.mesh, points))
+    mass = _Mass(mass_matrix(model.groups, model.part.material.density, model.K), remote_mass_rows(model.mesh, points))
     checks: list[Check] = []
     if wanted.free:
         constraints = free_part_constraints(model)
@@ -126,14 +126,14 @@ def _solve(
     pencil = Pencil(motions.stiffness, apply, motions.precondition)
     allowed = RESIDUAL_ALLOWED[motions.direct]
     reason = too_large(motions)
-    guards, start = GUARDS, np.zeros((motions.free, 0))
+    guards, start, room = GUARDS, np.zeros((motions.free, 0)), space_room(motions.free, budget)
     note, missing = reason, 0
     for attempt in range(3):
         guards = min(guards, available - modes)
         fields = start_unknowns(motions.elimination, model.mesh.nodes, modes + guards + 2, budget.seed + attempt)
         fresh = motions.precondition(apply(fields))
         tolerance = np.r_[np.full(modes, allowed), np.full(guards, GUARD_ALLOWED)]
-        found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance)
+        found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance, room)
         if not (found.residual.size == modes + guards and (found.residual <= tolerance).all()):
             worst = float(found.residual[:modes].max(initial=0.0))
             raise SolveError(
