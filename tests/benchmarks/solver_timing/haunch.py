@@ -52,6 +52,8 @@ def run(job: dict[str, Any], tell: Tell) -> None:
         _displacements(part, mesh, budget, choice, tell, modes=job["modes"] if repeat == job["repeats"] - 1 else 0)
     if job["results"]:
         _results(part, mesh, budget, choice, tell)
+    if job["both"]:
+        _other(part, mesh, budget, tell)
 
 
 def _imports() -> None:
@@ -132,6 +134,22 @@ def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, m
             _modes(model, system, budget, modes, tell)
     finally:
         system.close()
+
+
+def _other(part: Any, mesh: Any, budget: Any, tell: Tell) -> None:
+    """Set-up and solution of one case by either solver: whether the right one was chosen."""
+    from fem.solid.model import build_model
+    from fem.solid.system import HeldSystem
+
+    model = build_model(_one_case(part), mesh, budget.threads)
+    for choice in ("multigrid", "cholesky"):
+        seconds, system = clocked(lambda name=choice: HeldSystem(model.K, model.constraints, mesh, budget, name))
+        try:
+            solving, solution = clocked(lambda held=system: held.solve(np.ascontiguousarray(_loads(model))))
+            found = answer(solution.u.reshape(-1, 3).T, np.unique(mesh.facets["bar.end"]))
+            tell(**{choice: {"seconds": seconds + solving, "name": system.solver.name, **found}})
+        finally:
+            system.close()
 
 
 def _modes(model: Any, system: Any, budget: Any, count: int, tell: Tell) -> None:

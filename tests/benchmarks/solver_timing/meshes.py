@@ -28,7 +28,7 @@ def part_of(shape: Shape) -> Part:
 def structured(part: Part, cells: tuple[int, int, int]) -> NamedMesh:
     """Structured second-order tetrahedra of a part of one straight rectangular member along global x.
 
-    Five tetrahedra fill a cell. Knows nothing of `fem`, so that the rivals run whatever Haunch does.
+    Six tetrahedra fill a cell. Knows nothing of `fem`, so that the rivals run whatever Haunch does.
     """
     from skfem import MeshTet, MeshTet2
 

@@ -11,6 +11,9 @@ from solver_timing.rivals import NAMES
 BEGIN, END = "<!-- solver times: begin -->", "<!-- solver times: end -->"
 TIP_ALLOWED, SAMPLE_ALLOWED = 1e-6, 1e-5
 """Most that two answers may differ by, relative: the tip's displacement, and the displacements of a sample of nodes."""
+SOLVERS = {"multigrid": "its multigrid solver", "cholesky": "its direct solver"}
+COMPARED = {**NAMES, **SOLVERS}
+"""Whose answers are held against Haunch's."""
 SHARE_SHOWN = 0.03
 """Parts of less than this share of a stage are left out of the profile."""
 
@@ -34,8 +37,12 @@ def markdown(head: Sequence[str], rows: Iterable[Sequence[str]]) -> str:
 
 
 def differences(row: Row, rival: str) -> tuple[float, float] | None:
-    """(tip, sample): how far a rival's answer is from Haunch's, relative; None when either has none."""
-    ours, theirs = row["haunch"]["facts"], row.get(rival, {}).get("facts", {})
+    """(tip, sample): how far another answer is from Haunch's, relative; None when either has none.
+
+    `rival` is one of `NAMES`, or one of Haunch's own solvers where both were tried.
+    """
+    ours = row["haunch"]["facts"]
+    theirs = ours.get(rival, {}) if rival in SOLVERS else row.get(rival, {}).get("facts", {})
     if "tip" not in ours or "tip" not in theirs:
         return None
     tip = max(abs(a - b) for a, b in zip(ours["tip"], theirs["tip"], strict=True)) / max(map(abs, theirs["tip"]))
@@ -47,11 +54,11 @@ def disagreements(rows: Iterable[Row]) -> list[str]:
     """A sentence for every answer that differs by more than is allowed."""
     told = []
     for row in rows:
-        for rival in NAMES:
+        for rival in COMPARED:
             found = differences(row, rival)
             if found and not (found[0] <= TIP_ALLOWED and found[1] <= SAMPLE_ALLOWED):
                 told.append(
-                    f"{row['shape']}, {thousands(row['unknowns'])} unknowns: Haunch and {NAMES[rival]} differ by "
+                    f"{row['shape']}, {thousands(row['unknowns'])} unknowns: Haunch and {COMPARED[rival]} differ by "
                     f"{found[0]:.1e} at the tip (allowed {TIP_ALLOWED:.0e}) and {found[1]:.1e} anywhere "
                     f"(allowed {SAMPLE_ALLOWED:.0e})"
                 )
@@ -62,24 +69,31 @@ def haunch_table(rows: Sequence[Row]) -> str:
     """Haunch's own times."""
     head = (
         "shape", "unknowns", "solver", "steps", "assembly", "loads, supports", "set-up", "solve",
-        "**all, s**", "MiB", "six cases / one", "six modes, s", "to figures, s",
+        "**all, s**", "with the other solver, s", "MiB", "six cases / one", "six modes, s", "to figures, s",
     )  # fmt: skip
     lines = []
     for row in rows:
         facts, failure = row["haunch"]["facts"], row["haunch"]["failure"]
         if "displacements" not in facts:
-            lines.append((row["shape"], thousands(row.get("unknowns")), failure or "no answer", *["–"] * 10))
+            lines.append((row["shape"], thousands(row.get("unknowns")), failure or "no answer", *["–"] * 11))
             continue
         stages = facts["stages"]
         assembly = stages["pattern"] + stages["assembly"]
         lines.append((
             row["shape"], thousands(facts["unknowns"]), facts["solver"], str(facts["iterations"] or "–"),
             seconds(assembly), seconds(facts["build"] - assembly), seconds(facts["set_up"]), seconds(facts["solve"]),
-            f"**{seconds(facts['displacements'])}**", thousands(facts["memory"]),
+            f"**{seconds(facts['displacements'])}**", _other(facts), thousands(facts["memory"]),
             seconds(facts.get("six_over_one")), seconds(facts.get("modes")),
             seconds(sum(facts["after"].values()) if "after" in facts else None),
         ))  # fmt: skip
     return markdown(head, lines)
+
+
+def _other(facts: Row) -> str:
+    """The whole with the solver that was not chosen, where it was tried."""
+    found = [facts[name] for name in SOLVERS if name in facts]
+    found = [other for other in found if other["name"] != facts["solver"]]
+    return seconds(facts["build"] + found[0]["seconds"]) if found else "–"
 
 
 def rival_table(rows: Sequence[Row]) -> str:
