@@ -122,7 +122,7 @@ def test_a_child_is_ended_at_its_bounds(seconds: float, memory: float) -> None:
 
 
 def test_a_child_that_fails_says_why() -> None:
-    done = child.start("haunch", {"shape": "no such"}, 1, 60.0, 4000.0).wait()
+    done = child.start("mesh", {"shape": "no such", "size": "small"}, 1, 60.0, 4000.0).wait()
     assert "KeyError" in done.failure and done.facts == {}
 
 
