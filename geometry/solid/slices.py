@@ -16,6 +16,7 @@ from OCP.TopTools import TopTools_ListOfShape
 
 from geometry.problem import SolidError
 from geometry.solid.kernel import area_of, faces_of
+from geometry.solid.plane_cut import PlaneCuts
 
 COUNT = 9
 """Slices along a member."""
@@ -41,6 +42,24 @@ def slices_of(solid: Any, places: Sequence[float], reach: float) -> NDArray[np.f
     SolidError
         A plane cuts nothing.
     """
+    cuts = PlaneCuts(solid)
+    moments = {x: cuts.moments(x) for x in places}
+    by_kernel = kernel_slices(solid, [x for x in places if moments[x] is None], reach)
+    return np.array([by_kernel[x] if (m := moments[x]) is None else _row_of_moments(x, m) for x in places])
+
+
+def _row_of_moments(x: float, m: NDArray[np.float64]) -> tuple[float, ...]:
+    area, sy, sz, syy, syz, szz = (float(v) for v in m)
+    if not area > 0.0:
+        raise SolidError(f"slice at {x:g} mm: the plane cuts nothing of the solid.")
+    y, z = sy / area, sz / area
+    return (x, area, y, z, szz - area * z * z, syy - area * y * y, syz - area * y * z)
+
+
+def kernel_slices(solid: Any, places: Sequence[float], reach: float) -> dict[float, tuple[float, ...]]:
+    """The rows by place, from the kernel's own intersection of the solid with planes: dear, and right for any solid."""
+    if not places:
+        return {}
     first, sheets = TopTools_ListOfShape(), TopTools_ListOfShape()
     first.Append(solid)
     for x in places:
@@ -54,7 +73,7 @@ def slices_of(solid: Any, places: Sequence[float], reach: float) -> NDArray[np.f
     common.Build()
     faces = faces_of(common.Shape())
     where = np.array([area_of(face)[1][0] for face in faces])
-    return np.array([_row(x, [f for f, at in zip(faces, where, strict=True) if abs(at - x) < 1e-6]) for x in places])
+    return {x: _row(x, [f for f, at in zip(faces, where, strict=True) if abs(at - x) < 1e-6]) for x in places}
 
 
 def _row(x: float, faces: Sequence[Any]) -> tuple[float, ...]:

@@ -133,3 +133,47 @@ def test_edge_radius_along_a_tapered_i_and_its_patch() -> None:
     )
     solid = build_solid(part)
     assert region_area(solid, "arm.p") == pytest.approx(100 * 44 * np.hypot(300, 10) / 300, rel=1e-9)
+
+
+SHAPES = [
+    ("I", {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0}, {"depth": 32.0, "width": 30.0}),
+    ("tube", {"diameter": 40.0, "wall": 4.0}, {"diameter": 30.0}),
+    ("box", {"depth": 60.0, "width": 40.0, "wall": 4.0, "corner_radius": 8.0}, {"depth": 45.0}),
+    ("round", {"diameter": 40.0}, {"diameter": 25.0}),
+    ("angle", {"depth": 60.0, "width": 40.0, "thickness": 6.0, "root_radius": 6.0}, {}),
+]
+
+
+@pytest.mark.parametrize(("shape", "dims", "end"), SHAPES, ids=[s[0] for s in SHAPES])
+def test_curves_of_a_cut_agree_with_the_kernels_own_intersection(shape: str, dims: dict[str, float],
+                                                                 end: dict[str, float]) -> None:
+    """Through plain stretches and right through a hole. The kernel fits the curves on oblique cylinders to 1e-7 mm."""
+    from geometry.solid.kernel import from_brep
+    from geometry.solid.slices import kernel_slices, slices_of
+
+    hole = cut("h", "hole", "y", "web" if shape == "I" else "all", 150, 0, 12)
+    stations = [(300.0, {**end})] if end else []
+    cuts = (hole,) if shape in ("I", "round") else ()
+    solid = from_brep(build_solid(make_part(shape, dims, 300.0, stations=stations, cuts=cuts)).brep)
+    places = [20.0, 97.3, 152.0, 280.0]
+    found, wanted = slices_of(solid, places, 200.0), kernel_slices(solid, places, 200.0)
+    for row in found:
+        _, area, _, _, Iyy, Izz, _ = wanted[row[0]]
+        size = np.array([1.0, area, area**0.5, area**0.5, Iyy, Izz, max(Iyy, Izz)])
+        assert np.abs((row - wanted[row[0]]) / size).max() < 2e-7
+
+
+def test_a_cut_that_is_not_plain_is_left_to_the_kernel() -> None:
+    """A plane through a hole leaves the web's side in two pieces, and one along a step's shoulder touches a face."""
+    from geometry.solid.kernel import from_brep
+    from geometry.solid.plane_cut import PlaneCuts
+    from geometry.solid.slices import slices_of
+
+    dims = {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0}
+    part = make_part("I", dims, 300.0, cuts=(cut("h", "hole", "y", "web", 150, 0, 12),))
+    solid = from_brep(build_solid(part).brep)
+    assert PlaneCuts(solid).moments(100.0) is not None
+    assert PlaneCuts(solid).moments(152.0) is None
+    [row] = slices_of(solid, [150.0], 200.0)
+    whole = PlaneCuts(solid).moments(100.0)
+    assert whole is not None and row[1] == pytest.approx(whole[0] - 12 * 6, rel=1e-9)
