@@ -11,9 +11,11 @@ from fem.beam.cases import solve_cases
 from fem.beam.causes import find_causes
 from fem.beam.figures import all_figures, diagram, energies, line_values, properties_table
 from fem.beam.mesh import BeamMesh
+from fem.beam.modes import beam_vibration, buckling_studies
 from fem.beam.result import BeamResult
 from fem.beam.section import sections_properties
 from fem.beam.stress import nominal_shear
+from fem.mode import Mode
 from geometry.budget import Budget
 from geometry.part import Part
 
@@ -51,6 +53,9 @@ def solve_beam(
     figures, notes = all_figures(solved, line)
     causes = find_causes(mesh, line, lambda changed: line_values(solve_cases(changed)))
     energy, shear_stress = energies(solved), nominal_shear(solved)
+    solve_done = time.perf_counter()
+    vibration, buckling, why = _modes(part, mesh)
+    notes += why
     depth = max(float(np.ptp(s.extremes[:2, 1])) for s in mesh.sections.solved)
     mass = next(f.value for f in figures if f.key.quantity == "mass")
     return BeamResult(
@@ -64,5 +69,28 @@ def solve_beam(
         slenderness=mesh.length / depth,
         causes=causes,
         notes=tuple(notes),
-        seconds={"sections": built - clock, "solve": time.perf_counter() - built},
+        seconds={"sections": built - clock, "solve": solve_done - built,
+                 "modes": time.perf_counter() - solve_done},
+        vibration=vibration,
+        buckling=buckling,
     )
+
+
+def _modes(part: Part, mesh: BeamMesh) -> tuple[tuple[Mode, ...], tuple[Mode, ...], list[str]]:
+    """Natural vibrations and buckling shapes that the part asks for, and what the beam cannot say about them."""
+    notes = []
+    vibration: tuple[Mode, ...] = ()
+    if part.vibration is not None and part.material.density > 0.0:
+        vibration = beam_vibration(part, mesh)
+    elif part.vibration is not None:
+        notes.append(f"natural frequencies: material {part.material.name} has no density")
+    buckling, why = buckling_studies(part, mesh)
+    notes += why
+    if part.buckling or part.vibration is not None:
+        words = "modes: sections keep their shape, so that waves of a wall by itself are outside the beam"
+        if part.buckling:
+            words += "; deflection before buckling is left out"
+            if any(piece.open_thin for piece in mesh.sections.pieces):
+                words += ", and so is the stress of restrained warping before it"
+        notes.append(words)
+    return vibration, buckling, notes

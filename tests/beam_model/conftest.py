@@ -72,5 +72,5 @@ def solve() -> Callable[..., Reader]:
     def run(part: Part, plain: bool = False, **options: Any) -> Reader:
         return Reader(solve_beam(part, section_solver=plain_rules if plain else solved_once, **options))
 
-    run.sections = solved_once  # type: ignore[attr-defined]
+    run.sections, run.plain = solved_once, plain_rules  # type: ignore[attr-defined]
     return run

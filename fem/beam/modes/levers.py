@@ -145,11 +145,11 @@ def _on_region(out: Levers, actions: Actions, name: str, force: Array, moment: A
         traction = linear_traction(points, weight, force, moment)
         _along_face(out, region, [traction(s.points) * s.weight[:, None] for s in region.strips])
     else:
-        traction = linear_traction(region.points, region.weight, force, moment)(region.points)
+        given = linear_traction(region.points, region.weight, force, moment)(region.points)
         for node in sorted(set(region.nodes.tolist())):
             own = region.nodes == node
             arms = _from_node(actions, node, region.points[own])
-            lever = (traction[own] * region.weight[own, None]).T @ arms
+            lever = (given[own] * region.weight[own, None]).T @ arms
             out.turns.append((turn_rows(actions, 7 * node), lever))
 
 

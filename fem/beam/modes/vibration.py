@@ -13,6 +13,7 @@ stands between P and P^T, P = 1 - R (R^T M R)^-1 R^T M.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -69,8 +70,8 @@ def beam_vibration(
     if part.material.density <= 0.0:
         raise RunError("beam", f"material {part.material.name} has no density, so the part has no natural frequencies")
     held = replace(part, supports=() if wanted.free else part.supports, loads=_acting(part))
-    # six modes in one plane have waves of a third of the length
-    lengths = STEPS * max(1, int(np.ceil(wanted.modes / 8)))
+    # twelve modes in one plane have waves of a sixth of the length
+    lengths = STEPS * max(1, int(np.ceil(wanted.modes / 12)))
     mesh = mesh.finer(held, STEPS, FINER * lengths)
     model = _Model.of(mesh, Actions(mesh), wanted.free)
     trial = model.first(mesh.length / lengths, wanted.modes + GUARDS)
@@ -120,7 +121,7 @@ class _Trial:
     inside: Array
     freedoms: Array
 
-    def __matmul__(self, a: Array) -> _Trial:
+    def __matmul__(self, a: NDArray[np.floating[Any]]) -> _Trial:
         return _Trial(self.inside @ a, self.freedoms @ a)
 
     def __sub__(self, other: _Trial) -> _Trial:
