@@ -67,7 +67,6 @@ def gmsh_options(attempt: Attempt) -> dict[str, float]:
         "Mesh.OptimizeNetgen": 0,  # see `mesher.gmsh_solid`
         "Mesh.HighOrderOptimize": attempt.optimise,
         "Mesh.HighOrderThresholdMin": 0.1,
-        "Mesh.HighOrderNumLayers": 1,  # around a bad element; more take many times as long and were no better
         # The size field says it all: gmsh's own sources of sizes would be hidden settings.
         "Mesh.MeshSizeExtendFromBoundary": 0,
         "Mesh.MeshSizeFromPoints": 0,

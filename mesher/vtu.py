@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import base64
 from collections.abc import Mapping
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any, BinaryIO
+from xml.sax.saxutils import quoteattr
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,6 +16,14 @@ from mesher.named_mesh import NamedMesh
 
 if TYPE_CHECKING:
     import meshio
+
+QUADRATIC_TETRAHEDRON = 24
+"""VTK's number of the cell."""
+_PIECE = 3 << 20
+_HEAD = b"""<?xml version="1.0"?>
+<VTKFile type="UnstructuredGrid" version="1.0" byte_order="LittleEndian" header_type="UInt64">
+<UnstructuredGrid><Piece NumberOfPoints="%d" NumberOfCells="%d">
+"""
 
 Data = Mapping[str, NDArray[np.float64]]
 
@@ -35,23 +45,45 @@ def write_vtu(path: Path | str, mesh: NamedMesh, point_data: Data | None = None,
     MeshError
         An array of the wrong length, or the file cannot be written.
     """
-    import meshio
-
     points, cells = (
         _checked(point_data, mesh.nodes.shape[1], "node"),
         _checked(cell_data, mesh.tets.shape[1], "element"),
     )
-    # VTK's quadratic tetrahedron orders its edges 01, 12, 02, 03, 13, 23, as we do; gmsh's files do not.
-    content = meshio.Mesh(
-        np.ascontiguousarray(mesh.nodes.T),
-        [("tetra10", np.ascontiguousarray(mesh.tets.T))],
-        point_data=points,
-        cell_data={name: [values] for name, values in cells.items()},
-    )
+    count, elements = mesh.nodes.shape[1], mesh.tets.shape[1]
     try:
-        meshio.write(path, content, file_format="vtu")
+        with open(path, "wb") as file:
+            file.write(_HEAD % (count, elements))
+            _section(file, "Points", {"Points": mesh.nodes.T})
+            # VTK's quadratic tetrahedron orders its edges 01, 12, 02, 03, 13, 23, as we do; gmsh's files do not.
+            _section(file, "Cells", {
+                "connectivity": mesh.tets.T.ravel().astype(np.int32 if count < 2**31 else np.int64),
+                "offsets": np.arange(10, 10 * elements + 1, 10, dtype=np.int64),
+                "types": np.full(elements, QUADRATIC_TETRAHEDRON, dtype=np.uint8),
+            })
+            _section(file, "PointData", points)
+            _section(file, "CellData", cells)
+            file.write(b"</Piece></UnstructuredGrid></VTKFile>\n")
     except OSError as error:
         raise MeshError(f"mesh file {path}: cannot be written ({error})") from error
+
+
+def _section(file: BinaryIO, name: str, arrays: Mapping[str, NDArray[Any]]) -> None:
+    """Arrays as base64 of their bytes: not compressed, which would take longer than all the rest of the writing."""
+    file.write(f"<{name}>\n".encode())
+    for label, values in arrays.items():
+        data = np.ascontiguousarray(values)
+        kind = {"f": "Float", "i": "Int", "u": "UInt"}[data.dtype.kind] + str(8 * data.itemsize)
+        columns = f' NumberOfComponents="{data.shape[1]}"' if data.ndim == 2 else ""
+        file.write(f'<DataArray type="{kind}" Name={quoteattr(label)}{columns} format="binary">\n'.encode())
+        content = memoryview(data.astype(data.dtype.newbyteorder("<"), copy=False)).cast("B") if data.size else b""
+        # VTK wants the length and the data in one run of base64, which must not end in between.
+        head = len(content).to_bytes(8, "little")
+        spare = -len(head) % 3
+        file.write(base64.b64encode(head + bytes(content[:spare])))
+        for start in range(spare, len(content), _PIECE):
+            file.write(base64.b64encode(content[start : start + _PIECE]))
+        file.write(b"\n</DataArray>\n")
+    file.write(f"</{name}>\n".encode())
 
 
 def read_vtu(path: Path | str) -> meshio.Mesh:

@@ -16,7 +16,7 @@ from geometry.problem import MeshError
 from mesher import NamedMesh, mesh_solid, to_skfem
 from mesher.assemble import LEAST_QUALITY
 from mesher.numbering import TET_EDGES, TRI_EDGES
-from mesher.solid_mesher import mesh_digest
+from mesher.solid_mesher import RECIPE_FORMAT, mesh_digest
 
 
 @pytest.mark.parametrize("which", ["bar_mesh", "plate_mesh", "rod_mesh"])
@@ -144,7 +144,7 @@ def test_a_recipe_for_another_kernel_solid_or_mesh_is_refused(
     with pytest.raises(MeshError, match="format 99"):
         mesh_solid(bar, 0.05, budget, recipe={**recipe, "format": 99})
     with pytest.raises(MeshError, match=r"not readable \(KeyError: 'attempt'\)"):
-        mesh_solid(bar, 0.05, budget, recipe={"format": 1})
+        mesh_solid(bar, 0.05, budget, recipe={"format": RECIPE_FORMAT})
 
 
 def test_a_face_that_is_not_there_is_found_out(bar: NamedSolid, budget: Budget) -> None:

@@ -24,6 +24,27 @@ def test_round_trip_keeps_everything(tmp_path: Path, rod_mesh: NamedMesh) -> Non
     assert np.array_equal(back.cell_data["quality"][0], quality)
 
 
+def test_another_reader_reads_the_same(tmp_path: Path, rod_mesh: NamedMesh) -> None:
+    """VTK's own reader; a name with signs that XML reserves; a field of six components, and one of an odd length."""
+    xml = pytest.importorskip("vtkmodules.vtkIOXML")
+    support = pytest.importorskip("vtkmodules.util.numpy_support")
+    path = tmp_path / "rod.vtu"
+    rng = np.random.default_rng(1)
+    fields = {'a < b & "c" stress': rng.random((rod_mesh.nodes.shape[1], 6)), "plain": rng.random(rod_mesh.nodes.shape[1])}
+    write_vtu(path, rod_mesh, fields)
+    reader = xml.vtkXMLUnstructuredGridReader()
+    reader.SetFileName(str(path))
+    reader.Update()
+    grid = reader.GetOutput()
+    assert (grid.GetNumberOfPoints(), grid.GetNumberOfCells()) == (rod_mesh.nodes.shape[1], rod_mesh.tets.shape[1])
+    assert np.array_equal(support.vtk_to_numpy(grid.GetPoints().GetData()), rod_mesh.nodes.T)
+    assert grid.GetCellType(0) == 24
+    last = grid.GetCell(rod_mesh.tets.shape[1] - 1)
+    assert [last.GetPointId(i) for i in range(10)] == rod_mesh.tets[:, -1].tolist()
+    for name, values in fields.items():
+        assert np.array_equal(support.vtk_to_numpy(grid.GetPointData().GetArray(name)), values)
+
+
 def test_the_edges_are_in_vtks_order() -> None:
     vtk = pytest.importorskip("vtkmodules.vtkCommonDataModel")
     cell = vtk.vtkQuadraticTetra()
