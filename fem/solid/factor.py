@@ -15,12 +15,25 @@ from fem.solid.shape import Array
 from geometry.budget import Budget
 from geometry.problem import SolveError
 
-__all__ = ["Cholesky", "NotPositive", "SymmetricFactor", "lu_memory", "pardiso_available", "upper_triangle", "whole"]
+__all__ = [
+    "Cholesky",
+    "NotPositive",
+    "SymmetricFactor",
+    "TooLarge",
+    "lu_memory",
+    "pardiso_available",
+    "upper_triangle",
+    "whole",
+]
 
 RESIDUAL_ALLOWED = 1e-6
 GAUGE_ALLOWED = 1e-4
 """Error of the displacements themselves (of a known field, or left by the residual): a tenth of the tightest accuracy
 that a spec may ask for. A bar of length over depth 600 has 8e-6 from rounding alone."""
+
+
+class TooLarge(SolveError):
+    """The memory of the budget would not suffice; the message says how much it takes."""
 
 
 FACTOR_ALLOWED = 1e-2
@@ -168,7 +181,7 @@ class _Mkl:
         need = self._solver.analyse()
         if need > budget.memory:
             self.close()
-            raise SolveError(
+            raise TooLarge(
                 f"The factor of {upper.shape[0]} unknowns needs about {need:.0f} MiB and the budget is "
                 f"{budget.memory} MiB. Raise the memory, or ask for a coarser accuracy."
             )
@@ -206,7 +219,7 @@ class _Lu:
     def __init__(self, matrix: sp.csr_matrix, budget: Budget) -> None:
         need = lu_memory(matrix)
         if need > budget.memory:
-            raise SolveError(
+            raise TooLarge(
                 f"The factor of {matrix.shape[0]} unknowns by SciPy's sparse LU needs about {need:.0f} MiB and the "
                 f"budget is {budget.memory} MiB. Raise the memory, ask for a coarser accuracy, or install pypardiso "
                 "(MKL), which needs far less."

@@ -8,14 +8,16 @@ import numpy as np
 import scipy.sparse as sp
 
 from fem.solid.block_matrix import BlockMatrix
-from fem.solid.factor import GAUGE_ALLOWED, RESIDUAL_ALLOWED
+from fem.solid.factor import GAUGE_ALLOWED, RESIDUAL_ALLOWED, NotPositive, TooLarge
 from fem.solid.held import free_motions
 from fem.solid.shape import Array
-from fem.solid.solver import Choice
+from fem.solid.solver import Choice, Solver
 from fem.solid.solver.cholesky import CholeskySolver, spring_unknowns
+from fem.solid.solver.choose import choose
+from fem.solid.solver.conjugate import Stalled
 from fem.solid.solver.elimination import Elimination, block_matrix
-from fem.solid.solver.multigrid import MultigridSolver
 from fem.solid.solver.gauge import bending_field, rounding_of_product
+from fem.solid.solver.multigrid import MultigridSolver
 from fem.solid.support import Constraints
 from geometry.budget import Budget
 from geometry.problem import SolveError
@@ -38,6 +40,20 @@ class Solution:
     residual_allowed: float = RESIDUAL_ALLOWED
     correction: float = 0.0
     reason: str = ""
+
+
+class OffGate(SolveError):
+    """A solution that did not pass; `short` says why in a few words."""
+
+    def __init__(self, short: str, advice: str) -> None:
+        self.short = short
+        super().__init__(short + advice)
+
+
+NOT_POSITIVE = (
+    "The stiffness matrix is not positive definite although the supports hold every rigid motion: the mesh has a "
+    "detached piece or an element that is nearly flat. Mesh the part again."
+)
 
 
 class HeldSystem:
@@ -87,12 +103,48 @@ class HeldSystem:
         self.free = self.T.shape[1]
         self.mean_rows = sp.csr_matrix(constraints.rows @ self.T)
         self._nodes = mesh.nodes
-        rows = self.mean_rows.shape[0]
-        springs = spring_unknowns(mesh.nodes, self.T) if rows else np.zeros(0, dtype=np.int64)
-        if choice == "multigrid":
-            self.solver = MultigridSolver(self.K, self.elimination, constraints.rows, mesh.tets, mesh.nodes, budget, backend)
-        else:
-            self.solver = CholeskySolver(self.elimination.square(self.K), self.mean_rows, springs, budget, backend)
+        self._tets, self._budget, self._backend, self._choice = mesh.tets, budget, backend, choice
+        surface = np.unique(mesh.boundary).size
+        which, reason = choose(self.free, mesh.nodes.shape[1], surface, choice)
+        self.solver: Solver = self._direct(reason) if which == "cholesky" else self._iterative(reason)
+
+    def _direct(self, reason: str) -> Solver:
+        springs = np.zeros(0, dtype=np.int64)
+        if self.mean_rows.shape[0]:
+            springs = spring_unknowns(self._nodes, self.T)
+        try:
+            upper = self.elimination.square(self.K)
+            return CholeskySolver(upper, self.mean_rows, springs, self._budget, self._backend, reason)
+        except NotPositive as error:
+            raise SolveError(NOT_POSITIVE) from error
+        except TooLarge as error:
+            if self._choice != "auto":
+                raise
+            return self._multigrid(f"An iterative solver, as the memory does not suffice for a direct one: {error}")
+
+    def _iterative(self, reason: str) -> Solver:
+        try:
+            return self._multigrid(reason)
+        except NotPositive:
+            self._choice = "cholesky"
+            return self._direct("A direct solver, as the linear level of the iterative one could not be factored.")
+
+    def _multigrid(self, reason: str) -> Solver:
+        rows, tets = self.constraints.rows, self._tets
+        return MultigridSolver(self.K, self.elimination, rows, tets, self._nodes, self._budget, self._backend, reason)
+
+    def _fall_back(self, why: str) -> None:
+        """Change from the iterative to the direct solver."""
+        self.solver.close()
+        self._choice = "cholesky"
+        self.solver = self._direct(f"A direct solver, as the iterative one failed: {why}.")
+
+    def _solve(self, rhs: Array, values: Array) -> tuple[Array, Array]:
+        try:
+            return self.solver.solve_bordered(rhs, values)
+        except Stalled as error:
+            self._fall_back(str(error))
+            return self.solver.solve_bordered(rhs, values)
 
     def apply(self, y: Array) -> Array:
         """T^T K T y for y (f,) or (f, k)."""
@@ -100,7 +152,8 @@ class HeldSystem:
 
     def inverse(self, rhs: Array) -> Array:
         """(f, k) solution for right-hand sides (f, k), on the motions that meet the mean rows: symmetric."""
-        return self.solver.solve(np.asarray(rhs, dtype=float).reshape(self.free, -1))
+        b = np.asarray(rhs, dtype=float).reshape(self.free, -1)
+        return self._solve(b, np.zeros((self.mean_rows.shape[0], b.shape[1])))[0]
 
     def precondition(self, residual: Array) -> Array:
         """(f, k): a fixed symmetric positive approximation of `inverse` applied to (f, k)."""
@@ -120,15 +173,22 @@ class HeldSystem:
         SolveError
             When the residual or the forward error of the known field is off.
         """
+        try:
+            return self._checked(loads)
+        except OffGate as error:
+            if not isinstance(self.solver, MultigridSolver):
+                raise
+            self._fall_back(error.short)
+            return self._checked(loads)
+
+    def _checked(self, loads: Array) -> Solution:
         g, C = self.constraints.g, self.mean_rows
         moved = self.K @ g
         rhs = self.elimination.gather(loads - moved[:, None])
         values = (self.constraints.row_values - self.constraints.rows @ g)[:, None].repeat(rhs.shape[1], axis=1)
         size = np.asarray(self.T.power(2).sum(axis=0)).ravel()
         y0 = self.elimination.gather(bending_field(self._nodes).T.ravel()) / size
-        both, m = self.solver.solve_bordered(
-            np.column_stack([rhs, self.apply(y0)]), np.column_stack([values, C @ y0])
-        )
+        both, m = self._solve(np.column_stack([rhs, self.apply(y0)]), np.column_stack([values, C @ y0]))
         y, m = both[:, :-1], m[:, :-1]
         gauge = float(np.abs(both[:, -1] - y0).max() / np.abs(y0).max())
         scale = np.maximum(np.linalg.norm(rhs, axis=0), np.abs(moved).max() * np.sqrt(g.size))
@@ -141,7 +201,7 @@ class HeldSystem:
         allowed, correction = RESIDUAL_ALLOWED, 0.0
         if not residual <= RESIDUAL_ALLOWED:
             allowed = max(allowed, float((rounding_of_product(self.K, self.elimination.expand(y)) / scale).max()))
-            again = self.solver.solve(left)
+            again = self.inverse(left)
             largest = np.abs(y).max(axis=0)
             correction = float((np.abs(again).max(axis=0) / np.where(largest > 0, largest, 1.0)).max())
         self._gate(residual, allowed, correction, gauge)
@@ -150,15 +210,16 @@ class HeldSystem:
 
     def _gate(self, residual: float, allowed: float, correction: float, gauge: float) -> None:
         if not (residual <= allowed and correction <= GAUGE_ALLOWED):
-            raise SolveError(
-                f"The equations are not met: residual {residual:.2e} of the load, allowed {allowed:.0e}; correcting it "
-                f"would move the part by {correction:.1e} of its largest displacement, allowed {GAUGE_ALLOWED:.0e}. "
-                "The part is extremely slender, or the mesh holds a nearly flat element; mesh the part again."
+            raise OffGate(
+                f"The equations are not met: residual {residual:.2e} of the load, allowed {allowed:.0e}",
+                f"; correcting it would move the part by {correction:.1e} of its largest displacement, allowed "
+                f"{GAUGE_ALLOWED:.0e}. The part is extremely slender, or the mesh holds a nearly flat element; mesh the "
+                "part again."
             )
         if not gauge <= GAUGE_ALLOWED:
-            raise SolveError(
-                f"A known bending field comes back with an error of {gauge:.2e}, allowed {GAUGE_ALLOWED:.0e}: "
-                "the matrix is too badly conditioned. Look for nearly flat elements; mesh the part again."
+            raise OffGate(
+                f"A known bending field comes back with an error of {gauge:.2e}, allowed {GAUGE_ALLOWED:.0e}",
+                ": the matrix is too badly conditioned. Look for nearly flat elements; mesh the part again."
             )
 
 

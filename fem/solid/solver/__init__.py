@@ -27,7 +27,10 @@ class Solver(Protocol):
     iterations: int
 
     def solve(self, rhs: Array) -> Array:
-        """(n, k) solutions of right-hand sides (n, k). Raises `SolveError` when it does not converge."""
+        """(n, k) solutions of right-hand sides (n, k). `Stalled` is raised when it does not converge."""
+
+    def solve_bordered(self, rhs: Array, values: Array) -> tuple[Array, Array]:
+        """y (n, k) that meets the mean rows C y = values (rows, k), and the rows' multipliers (rows, k)."""
 
     def precondition(self, residual: Array) -> Array:
         """(n, k): a fixed symmetric positive definite approximation of A^-1 applied to (n, k)."""

@@ -11,15 +11,9 @@ import numpy as np
 import scipy.sparse as sp
 from numpy.typing import NDArray
 
-from fem.solid.factor import Cholesky, NotPositive
+from fem.solid.factor import Cholesky
 from fem.solid.shape import Array
 from geometry.budget import Budget
-from geometry.problem import SolveError
-
-NOT_POSITIVE = (
-    "The stiffness matrix is not positive definite although the supports hold every rigid motion: the mesh has a "
-    "detached piece or an element that is nearly flat. Mesh the part again."
-)
 
 
 def spring_unknowns(nodes: Array, T: sp.csr_matrix) -> NDArray[np.int64]:
@@ -50,8 +44,10 @@ class CholeskySolver:
 
     Raises
     ------
-    SolveError
-        When A is not positive definite, or its factor would not fit the memory of the budget.
+    NotPositive
+        When A is not positive definite.
+    TooLarge
+        When its factor would not fit the memory of the budget.
     """
 
     iterations = 0
@@ -75,10 +71,7 @@ class CholeskySolver:
             upper = sp.csr_matrix((upper.data.copy(), upper.indices, upper.indptr), shape=upper.shape)
             upper.data[diagonal[springs]] += self._stiffness
             self._upper, self._diagonal = upper, upper.data[diagonal][:, None]
-        try:
-            self._factor = Cholesky(upper, budget, backend, upper=True, single=single)
-        except NotPositive as error:
-            raise SolveError(NOT_POSITIVE) from error
+        self._factor = Cholesky(upper, budget, backend, upper=True, single=single)
         self.name = f"cholesky ({self._factor.backend})"
         if self._rows:
             self._border(mean_rows, springs)

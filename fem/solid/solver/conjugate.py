@@ -15,6 +15,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run
@@ -58,16 +59,13 @@ class Goal:
         Allowed error in the norm of the energy, over the norm of the solution, as it was `DELAY` iterations ago.
     floor
         (k,) energy that counts as nothing: the rounding of a start that is a large rigid motion.
-    residual
-        (k,) allowed size of the residual.
-    size
-        Gives (k,) sizes of residuals (3 n, k), of which only what works on held motions counts.
+    met
+        Whether (k,) the residuals of motions and residuals (3 n, k) are small enough.
     """
 
     energy: float
     floor: Array
-    residual: Array
-    size: Callable[[Array], Array]
+    met: Callable[[Array, Array], NDArray[np.bool_]]
 
 
 def conjugate_gradients(
@@ -86,7 +84,7 @@ def conjugate_gradients(
     Stalled
         After `MOST_ITERATIONS`, or when an inner product that a positive definite system has positive is not.
     """
-    size, columns = loads.shape
+    columns = loads.shape[1]
     r = loads.copy()
     u = np.zeros_like(loads)
     z, p, q = np.empty_like(loads), np.zeros_like(loads), np.empty_like(loads)
@@ -126,10 +124,12 @@ def conjugate_gradients(
         missed = np.sum(steps[-DELAY:], axis=0)
         met = (missed <= goal.energy**2 * energy) & (len(steps) >= DELAY)
         if (met & active).any():
-            active &= ~(met & (goal.size(r) <= goal.residual))
+            active &= ~(met & goal.met(u, r))
         if not active.any():
             return Iterate(u, multipliers, iteration)
     left = float(np.sqrt((missed / energy)[active].max()))
+    if left <= goal.energy:
+        raise Stalled(f"after {MOST_ITERATIONS} iterations the residual was not yet small enough")
     raise Stalled(
         f"after {MOST_ITERATIONS} iterations the error in the norm of the energy was still {left:.1e}, "
         f"{goal.energy:.0e} is wanted"

@@ -76,6 +76,8 @@ class Elimination:
             inverse = sp.csr_matrix(R @ np.linalg.inv(R.T @ R))
             self._lift = sp.hstack([self._lift[:, : self.own], inverse]).tocsr()
         self._down = self._lift.T.tocsr()
+        used = np.unique(self._part.indices)
+        self._project = self._part[:, used], self._down[used]
 
     def expand(self, y: Array) -> Array:
         """T y: (f, ...) to (3 n, ...)."""
@@ -105,6 +107,12 @@ class Elimination:
         y[self.place] += u[self.kept]
         return y
 
+    def project(self, u: Array) -> None:
+        """Make u (3 n, k) a held motion where rounding has made it leave them; nodes wholly held become still."""
+        if self._rows.size:
+            part, down = self._project
+            u[self._rows] = part @ (down @ u[self._rows])
+
     def square(self, K: BlockMatrix) -> sp.csr_matrix:
         """Upper triangle, diagonal included, of T^T K T (f, f); columns rise in each row."""
         which = np.full(self.count.size, -1, dtype=np.int32)
@@ -125,7 +133,11 @@ class Elimination:
         indices = np.empty(indptr[-1], dtype=np.int32)
         data = np.empty(indptr[-1])
         of_node = (self.first, counts, which, self.basis)
-        run(lambda a, b: _fill_rows(a, b, K.indptr, K.indices, K.blocks, *of_node, indptr, indices, data), nodes, K.threads)
+        run(
+            lambda a, b: _fill_rows(a, b, K.indptr, K.indices, K.blocks, *of_node, indptr, indices, data),
+            nodes,
+            K.threads,
+        )
         for k in range(self.rigid.shape[1]):
             row = self.own + k
             indices[indptr[row] : indptr[row + 1]] = np.arange(row, self.T.shape[1])

@@ -12,7 +12,6 @@ from numpy.typing import NDArray
 from fem.solid.block_matrix import BlockMatrix, SingleBlockMatrix
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run
-from fem.solid.shape import Array
 from fem.solid.solver.elimination import Elimination
 
 Single = NDArray[np.float32]

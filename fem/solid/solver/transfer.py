@@ -1,9 +1,9 @@
 """Between the quadratic displacements and the linear ones of the corner nodes: the two levels of the multigrid.
 
 A linear field takes on a mid-edge node the mean of the edge's two corners, also on a curved element, whose map is the
-same for both. Held nodes take part with what they are free to do: a partly held one with the projection of the mean, one
-of a rigid region with the region's own motion. So the coarse unknowns are those of T that belong to corners, and every
-coarse motion is one that the supports allow.
+same for both. Held nodes take part with what they are free to do: a partly held one with the projection of the mean,
+one of a rigid region with the region's own motion. So the coarse unknowns are those of T that belong to corners, and
+every coarse motion is one that the supports allow.
 """
 
 from __future__ import annotations
