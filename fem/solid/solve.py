@@ -11,6 +11,7 @@ from fem.solid.balance import balance_checks, load_checks, strain_energies
 from fem.solid.cut import Cutter
 from fem.solid.denting import denting
 from fem.solid.edge_stress import nominal_figures, notch_figures
+from fem.solid.eigen import solid_modes
 from fem.solid.figures import displacement_figures, reaction_figures, scalar_figures, section_force_figures
 from fem.solid.model import build_model
 from fem.solid.peak import case_stresses, node_sizes, peak_places, singular_nodes, singular_places
@@ -20,7 +21,7 @@ from fem.solid.sections import member_sections, section_forces, section_motions
 from fem.solid.shape import Array
 from fem.solid.solver import Choice
 from fem.solid.stress import nodal_stress, principal_stresses, von_mises
-from fem.solid.system import solve_system
+from fem.solid.system import HeldSystem
 from geometry.budget import Budget
 from geometry.part import Part
 from mesher.named_mesh import NamedMesh
@@ -51,8 +52,8 @@ def solve_solid(
     Raises
     ------
     SolveError
-        When the part is not held, the mesh has slivers or detached pieces, a region is missing, or the equations are
-        not solved to the accuracy that a result needs.
+        When the part is not held, the mesh has slivers or detached pieces, a region is missing, the equations are not
+        solved to the accuracy that a result needs, or modes that are asked for are not found.
     """
     timings: dict[str, float] = {}
     begun, running = perf_counter(), ""
@@ -72,11 +73,16 @@ def solve_solid(
     stage("factor and solve")
     n = mesh.nodes.shape[1]
     total = (model.mechanical + model.thermal).reshape(len(cases), 3 * n).T
-    solution = solve_system(model.K, total, model.constraints, mesh, budget, solver, backend)
-    u = np.ascontiguousarray(solution.u.T.reshape(len(cases), n, 3).transpose(0, 2, 1))
+    system = HeldSystem(model.K, model.constraints, mesh, budget, solver, backend)
+    try:
+        solution = system.solve(total)
+        u = np.ascontiguousarray(solution.u.T.reshape(len(cases), n, 3).transpose(0, 2, 1))
+        cutter = Cutter(mesh)
+        vibration, buckling = solid_modes(model, system, u, budget, cutter, stage, solver, backend)
+    finally:
+        system.close()
     stage("reactions and balance")
     reacting = reactions(model, solution.u, solution.mean_forces)
-    cutter = Cutter(mesh)
     energy, thermal_part = strain_energies(model, u, cutter, budget.threads)
     checks = [*load_checks(model), *balance_checks(model, u, reacting, energy, thermal_part, solution)]
     stage("stress")
@@ -118,10 +124,14 @@ def solve_solid(
         centre_of_mass=model.centre_of_mass,
         external_work=np.einsum("cni,cin->c", model.mechanical, u) / 2,
         strain_energy=energy,
-        checks=tuple(checks),
+        checks=(*checks, *vibration.checks, *buckling.checks),
         timings=timings,
         backend=solution.backend,
         backend_reason=solution.reason,
+        vibration=vibration.modes,
+        buckling=buckling.modes,
+        vibration_shapes=vibration.shapes,
+        buckling_shapes=buckling.shapes,
     )
     stage("")
     return result

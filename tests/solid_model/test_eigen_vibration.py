@@ -27,11 +27,12 @@ from eigen_help import (
 from solid_help import STEEL, box_mesh, box_part
 
 from fem.mode import SHAPE_STATIONS
+from fem.solid import solve_solid
 from fem.solid.eigen import Eigenmodes
 from fem.solid.eigen import vibration as module
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs
 from fem.solid.shape import Array
-from geometry.part import Member, Part, RemotePoint, Section, Support
+from geometry.part import Buckling, Member, Part, RegionLoad, RemotePoint, Section, Support, Vibration
 from geometry.problem import SolveError
 
 ABOUT_Y, ABOUT_Z = "bending about y", "bending about z"
@@ -219,6 +220,54 @@ def test_an_impossible_inertia_is_refused() -> None:
     body = RemotePoint("body", "arm.end", (0.0,) * 3, "average", mass=1e-3, inertia=(1.0, 1.0, 1.0, 2.0, 0.0, 0.0))
     with pytest.raises(SolveError, match="principal moment -1"):
         vibration(*slender([WALL], [body]))
+
+
+def test_modes_are_part_of_the_whole_result() -> None:
+    part, mesh = slender([WALL], [RegionLoad("push", "arm.end", (-1.0, 0.0, 0.0))])
+    part = replace(part, vibration=Vibration(2), buckling=(Buckling("all", modes=1),))
+    told: list[str] = []
+    result = solve_solid(part, mesh, BUDGET, told.append)
+    assert [m.value for m in result.vibration] == pytest.approx([16.7103, 25.0655], rel=5e-3)
+    assert [m.value for m in result.buckling] == pytest.approx([np.pi**2 * E * 20e3 / 4e6], rel=1e-2)
+    assert result.vibration_shapes.shape == (2, 3, mesh.nodes.shape[1])
+    assert result.buckling_shapes.shape == (1, 3, mesh.nodes.shape[1])
+    assert {"natural frequencies", "buckling"} <= set(told) & set(result.timings)
+    assert {"natural frequencies: largest residual", "buckling of all: largest residual"} <= {
+        c.name for c in result.checks
+    }
+
+
+@pytest.mark.parametrize("free", [False, True])
+def test_the_iterative_solver_finds_the_same_modes(free: bool) -> None:
+    part = box_part(200.0, 50.0, 60.0, [WALL], [RegionLoad("push", "arm.end", (-1.0, 0.0, 0.0))])
+    part = replace(part, vibration=Vibration(4, free), buckling=(Buckling("all", modes=2),))
+    mesh = box_mesh(200.0, 50.0, 60.0, (8, 3, 3))
+    direct, iterative = (solve_solid(part, mesh, BUDGET, solver=s) for s in ("cholesky", "multigrid"))  # type: ignore[arg-type]
+    assert iterative.backend == "multigrid"
+    assert "multigrid" in next(c.note for c in iterative.checks if c.name == "natural frequencies: largest residual")
+    for a, b in zip(direct.vibration + direct.buckling, iterative.vibration + iterative.buckling, strict=True):
+        assert b.value == pytest.approx(a.value, rel=2e-6)
+    shapes = zip(
+        [*direct.vibration_shapes, *direct.buckling_shapes],
+        [*iterative.vibration_shapes, *iterative.buckling_shapes],
+        strict=True,
+    )
+    for p, q in shapes:
+        assert abs((p * q).sum()) == pytest.approx(np.linalg.norm(p) * np.linalg.norm(q), rel=1e-4)
+
+
+def test_modes_that_do_not_settle_iteratively_are_sought_directly(monkeypatch: pytest.MonkeyPatch) -> None:
+    part = replace(box_part(200.0, 50.0, 60.0, [WALL]), vibration=Vibration(2))
+    mesh = box_mesh(200.0, 50.0, 60.0, (8, 2, 2))
+
+    def few(pencil: Pencil, start: Array, tolerance: Array, *rest: Any) -> Pairs:
+        return extreme_pairs(pencil, start, tolerance, *rest, rounds=120 if tolerance[0] < 1e-5 else 1)
+
+    monkeypatch.setattr(module, "extreme_pairs", few)
+    result = solve_solid(part, mesh, BUDGET, solver="multigrid")
+    note = next(c.note for c in result.checks if c.name == "natural frequencies: largest residual")
+    assert "as the iterative one failed: The natural frequencies do not converge" in note
+    assert len(result.vibration) == 2
 
 
 def test_same_modes_again() -> None:

@@ -19,11 +19,11 @@ from fem.solid.block_matrix import BlockMatrix
 from fem.solid.cut import Cutter
 from fem.solid.eigen.count import LowRank, negative_count, separated, too_large
 from fem.solid.eigen.describe import buckling_kind, section_shapes, section_shares, shape_sections
+from fem.solid.eigen.eigenmodes import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes, NotSettled
 from fem.solid.eigen.motions import Motions, Operator, held_motions
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, space_room
 from fem.solid.eigen.remote import lever_rows
 from fem.solid.eigen.start import start_unknowns
-from fem.solid.eigen.vibration import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes
 from fem.solid.geometric import geometric_stiffness
 from fem.solid.mass import mass_matrix
 from fem.solid.model import SolidModel, thermal_vector
@@ -241,7 +241,7 @@ class _Study:
             found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance, room)
             real = np.abs(found.mu) > 1.0 / self.largest
             if not (found.residual <= tolerance[: found.mu.size])[real].all():
-                raise SolveError(
+                raise NotSettled(
                     f"The buckling factors of the case {self.study.case!r} do not converge: residual "
                     f"{found.residual[real].max():.1e} after {found.rounds} rounds, allowed {self.allowed:.0e}. Ask "
                     "for fewer modes, or mesh the part again."

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.model import SolidModel
 from fem.solid.shape import Array
+from fem.solid.solver import Choice
 from fem.solid.solver.cholesky import spring_unknowns
 from fem.solid.solver.elimination import Elimination
 from fem.solid.support import Block, Constraints, build_constraints, rigid_map
@@ -111,7 +112,14 @@ def held_at_points(nodes: Array, constraints: Constraints) -> tuple[Constraints,
 
 
 def free_motions(
-    model: SolidModel, constraints: Constraints, elimination: Elimination, mass: Operator, R: Array, budget: Budget
+    model: SolidModel,
+    constraints: Constraints,
+    elimination: Elimination,
+    mass: Operator,
+    R: Array,
+    budget: Budget,
+    choice: Choice = "auto",
+    backend: str = "auto",
 ) -> Motions:
     """Every motion of a free part but the rigid ones.
 
@@ -123,9 +131,11 @@ def free_motions(
         y -> M y.
     R
         (f, 6) rigid motions with R^T M R = 1: every vector is kept M-orthogonal to them.
+    choice, backend
+        Of the solver, as for `HeldSystem`.
     """
     pinned, kept = held_at_points(model.mesh.nodes, constraints)
-    system = HeldSystem(model.K, pinned, model.mesh, budget)
+    system = HeldSystem(model.K, pinned, model.mesh, budget, choice, backend)
     heavy = mass(R)
 
     def precondition(r: Array) -> Array:

@@ -12,6 +12,7 @@ from fem.solid.block_matrix import BlockMatrix
 from fem.solid.cut import Cutter
 from fem.solid.eigen.count import APART, LowRank, negative_count, separated, too_large
 from fem.solid.eigen.describe import section_shapes, section_shares, shape_sections, vibration_kind
+from fem.solid.eigen.eigenmodes import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes, NotSettled
 from fem.solid.eigen.motions import Motions, Operator, free_motions, free_part_constraints, held_motions
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, space_room
 from fem.solid.eigen.remote import remote_mass_rows
@@ -21,28 +22,15 @@ from fem.solid.mass import mass_matrix
 from fem.solid.model import SolidModel
 from fem.solid.result import Check
 from fem.solid.shape import Array
+from fem.solid.solver import Choice
 from fem.solid.solver.elimination import Elimination
 from fem.solid.system import HeldSystem
 from geometry.budget import Budget
 from geometry.part import RemotePoint
 from geometry.problem import SolveError
 
-RESIDUAL_ALLOWED = {True: 1e-6, False: 1e-3}
-"""Residual in the norm of the inverse stiffness, by whether the solver is direct: the square of it is the error of the
-eigenvalue, 1e-6 for an iterative solver."""
-GUARD_ALLOWED = 1e-2
-GUARDS = 2
 RIGID_ALLOWED = 1e-9
 """Energy of a rigid motion over the sum of its terms' sizes: rounding of coordinates and stiffness."""
-
-
-@dataclass(frozen=True, slots=True)
-class Eigenmodes:
-    """What an eigenvalue study gives: modes, shapes (modes, 3, n) of largest size 1 mm, checks."""
-
-    modes: tuple[Mode, ...]
-    shapes: Array
-    checks: tuple[Check, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -57,7 +45,12 @@ class _Mass:
 
 
 def solid_vibration(
-    model: SolidModel, system: HeldSystem | None, budget: Budget, cutter: Cutter | None = None
+    model: SolidModel,
+    system: HeldSystem | None,
+    budget: Budget,
+    cutter: Cutter | None = None,
+    choice: Choice = "auto",
+    backend: str = "auto",
 ) -> Eigenmodes:
     """The lowest natural frequencies that `model.part.vibration` asks for.
 
@@ -67,6 +60,8 @@ def solid_vibration(
         The held system of the static run; not used for a free part, which makes one of its own.
     cutter
         Of the mesh, if there is one already.
+    choice, backend
+        Solver of the system that a free part makes, as for `HeldSystem`.
 
     Raises
     ------
@@ -85,7 +80,7 @@ def solid_vibration(
         R, cost = _rigid_unknowns(model, elimination, mass)
         checks.append(Check("free part: energy of its rigid motions", cost, RIGID_ALLOWED, cost <= RIGID_ALLOWED))
         apply = _reduced_mass(elimination, mass)
-        motions = free_motions(model, constraints, elimination, apply, R, budget)
+        motions = free_motions(model, constraints, elimination, apply, R, budget, choice, backend)
     elif system is None:
         raise SolveError("Natural frequencies of a held part need its held system.")
     else:
@@ -136,7 +131,7 @@ def _solve(
         found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance, room)
         if not (found.residual.size == modes + guards and (found.residual <= tolerance).all()):
             worst = float(found.residual[:modes].max(initial=0.0))
-            raise SolveError(
+            raise NotSettled(
                 f"The natural frequencies do not converge: residual {worst:.1e} after {found.rounds} rounds, allowed "
                 f"{allowed:.0e}. Ask for fewer modes, or mesh the part again."
             )
