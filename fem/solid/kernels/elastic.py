@@ -103,7 +103,7 @@ def _curved_elements(first, last, elements, points, tets, slopes, weights, lam, 
     """Element matrices (30, 30) by quadrature, upper blocks; slopes (q, 10, 3), weights (q,)."""
     g, J, C = np.empty(30), np.empty((3, 3)), np.empty((3, 3))
     for n in range(first, last):
-        e = elements[n]
+        e = np.int64(elements[n])
         P = out[n]
         P[:] = 0.0
         for q in range(weights.size):

@@ -89,7 +89,7 @@ def _integrals(first, last, elements, curved, points, tets, values, slopes, weig
     """int N_a dV and int dN_a/dx_i dV of each element: out (k, 10, 4)."""
     J, C = np.empty((3, 3)), np.empty((3, 3))
     for n in range(first, last):
-        e = elements[n]
+        e = np.int64(elements[n])
         out[n] = 0.0
         det = 0.0
         for q in range(weights.size):

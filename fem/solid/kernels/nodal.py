@@ -21,9 +21,10 @@ def _masses(first, last, elements, points, tets, products, slopes, weights, out)
     """int N_a N_b dV: sum over q of w det products (q, 10, 10); a straight element has one point."""
     J, C = np.empty((3, 3)), np.empty((3, 3))
     for n in range(first, last):
+        e = np.int64(elements[n])
         out[n] = 0.0
         for q in range(weights.size):
-            w = weights[q] * inverse_jacobian(points, tets, elements[n], slopes[q], J, C)
+            w = weights[q] * inverse_jacobian(points, tets, e, slopes[q], J, C)
             for a in range(10):
                 for b in range(a, 10):
                     out[n, a, b] += w * products[q, a, b]
@@ -34,7 +35,8 @@ def _straight_geometric(first, last, elements, points, tets, carriers, factors, 
     """int s_ij dN_a/dx_i dN_b/dx_j dV of a linear stress (k, 6, 4), factors (4, 10, 10, 2, 2) over the volume."""
     g, h = np.empty((4, 3)), np.empty((4, 4, 4))
     for n in range(first, last):
-        volume = barycentric_gradients(points, tets, elements[n], g) / 6.0
+        e = np.int64(elements[n])
+        volume = barycentric_gradients(points, tets, e, g) / 6.0
         for q in range(4):
             xx, yy, zz = stress[n, 0, q], stress[n, 1, q], stress[n, 2, q]
             xy, yz, zx = stress[n, 3, q], stress[n, 4, q], stress[n, 5, q]
@@ -58,9 +60,10 @@ def _curved_geometric(first, last, elements, points, tets, slopes, weights, stre
     """As `_straight_geometric` by quadrature, of stress (k, 6, q) at the points of the rule."""
     J, C, g = np.empty((3, 3)), np.empty((3, 3)), np.empty((10, 3))
     for n in range(first, last):
+        e = np.int64(elements[n])
         out[n] = 0.0
         for q in range(weights.size):
-            w = weights[q] * inverse_jacobian(points, tets, elements[n], slopes[q], J, C)
+            w = weights[q] * inverse_jacobian(points, tets, e, slopes[q], J, C)
             xx, yy, zz = w * stress[n, 0, q], w * stress[n, 1, q], w * stress[n, 2, q]
             xy, yz, zx = w * stress[n, 3, q], w * stress[n, 4, q], w * stress[n, 5, q]
             for a in range(10):

@@ -120,7 +120,7 @@ def _point_stress(first, last, elements, curved, points, tets, slopes, u, lam, m
     cases = u.shape[1]
     s, J, C, D = np.empty((cases, 6)), np.empty((3, 3)), np.empty((3, 3)), np.empty((3, 3))
     for n in range(first, last):
-        e = elements[n]
+        e = np.int64(elements[n])
         for q in range(slopes.shape[0]):
             if q == 0 or curved:
                 inverse_jacobian(points, tets, e, slopes[q], J, C)

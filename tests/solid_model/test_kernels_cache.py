@@ -1,0 +1,118 @@
+"""Where compiled kernels are kept, what makes them stale, and that a warm process compiles nothing."""
+
+from __future__ import annotations
+
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+from numba.core import event
+from solid_help import box_mesh, box_part
+
+from fem.solid import solve_solid
+from fem.solid.kernels import cache
+from fem.solid.kernels.jit import kernel
+from fem.solid.kernels.warm import warm_up
+from geometry.budget import Budget
+from geometry.part import BodyLoad, RegionLoad, Support
+
+
+class Compiled(event.Listener):
+    """Names of the functions that numba compiles."""
+
+    def __init__(self) -> None:
+        self.names: list[str] = []
+
+    def on_start(self, event: event.Event) -> None:
+        self.names.append(event.data["dispatcher"].py_func.__qualname__)
+
+    def on_end(self, event: event.Event) -> None:
+        pass
+
+
+def test_a_warm_process_compiles_nothing() -> None:
+    said: list[str] = []
+    warm_up(said.append)
+    assert said[0].startswith("the solver's kernels are compiled") and "ready" in said[-1]
+    assert cache.is_warm()
+    listener = Compiled()
+    event.register("numba:compile", listener)
+    try:
+        wall = Support("wall", "arm.start", {"x": 0.0, "y": 0.0, "z": 0.0})
+        loads = [RegionLoad("tip", "arm.end", (10.0, 20.0, -30.0)), BodyLoad("weight", (0.0, 0.0, -9810.0))]
+        mesh = box_mesh(100.0, 10.0, 20.0, (6, 2, 2))
+        for solver in ("cholesky", "multigrid"):
+            solve_solid(box_part(100.0, 10.0, 20.0, [wall], loads), mesh, Budget(threads=2), solver=solver)
+        twice = kernel(_twice)  # the listener sees what is compiled
+        assert twice(2.0) == 4.0
+    finally:
+        event.unregister("numba:compile", listener)
+    assert listener.names == ["_twice"]
+
+
+def _twice(x):  # type: ignore[no-untyped-def]
+    return 2.0 * x
+
+
+def test_whether_it_is_warm_is_told_without_numba() -> None:
+    code = (
+        "import sys, time; from fem.solid.kernels.cache import is_warm; begun = time.process_time(); is_warm();"
+        "print(time.process_time() - begun, 'numba' in sys.modules, 'skfem' in sys.modules)"
+    )
+    outcome = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, timeout=60, check=True)
+    seconds, *loaded = outcome.stdout.split()
+    assert loaded == ["False", "False"]
+    assert float(seconds) < 0.2  # 0.03 on a quiet machine
+
+
+def test_a_changed_file_makes_those_stale_that_build_it_in(monkeypatch: pytest.MonkeyPatch) -> None:
+    kernels = cache.SOLID / "kernels"
+    names = ("jacobian", "elastic", "nodal", "recovery", "scalar", "pattern")
+    before = {name: cache.contents(kernels / f"{name}.py") for name in names}
+    changed = dict(cache.sources())
+    changed[kernels / "jacobian.py"] += b"\n# changed\n"
+    monkeypatch.setattr(cache, "sources", lambda: changed)
+    fresh = cache.contents.__wrapped__
+    stale = {name for name in names if fresh(kernels / f"{name}.py") != before[name]}
+    assert stale == {"jacobian", "elastic", "nodal", "recovery"}
+
+
+@pytest.fixture
+def nowhere(tmp_path: Path) -> Path:
+    """A folder that nobody, not even root, can make."""
+    (tmp_path / "file").write_text("")
+    return tmp_path / "file" / "folder"
+
+
+def test_the_users_folder_is_taken_where_the_source_cannot_be_written(
+    monkeypatch: pytest.MonkeyPatch, tmp_path: Path, nowhere: Path
+) -> None:
+    monkeypatch.delenv("NUMBA_CACHE_DIR", raising=False)
+    monkeypatch.setattr(cache, "BESIDE", nowhere)
+    monkeypatch.setenv("XDG_CACHE_HOME", str(tmp_path / "mine"))
+    find = cache.base_folder.__wrapped__
+    assert find() == tmp_path / "mine" / "haunch"
+    monkeypatch.setenv("XDG_CACHE_HOME", str(nowhere))
+    assert find() is None
+    monkeypatch.setenv("NUMBA_CACHE_DIR", str(tmp_path / "named"))
+    assert find() == tmp_path / "named"
+
+
+def test_what_a_read_only_installation_brings_is_copied(monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> None:
+    brought = tmp_path / "installed" / "kernels-x-1"
+    brought.mkdir(parents=True)
+    (brought / "code").write_text("machine code")
+    monkeypatch.delenv("NUMBA_CACHE_DIR", raising=False)
+    monkeypatch.setattr(cache, "BESIDE", brought.parent)
+    monkeypatch.setattr(cache, "writable", lambda folder: folder != brought.parent)
+    monkeypatch.setenv("XDG_CACHE_HOME", str(tmp_path))
+    assert cache.base_folder.__wrapped__() == tmp_path / "haunch"
+    assert (tmp_path / "haunch" / "kernels-x-1" / "code").read_text() == "machine code"
+
+
+def test_without_any_folder_kernels_run_uncached(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("fem.solid.kernels.jit.folder_of", lambda path: None)
+    thrice = kernel(lambda x: 3.0 * x)
+    assert thrice(2.0) == 6.0
+    assert thrice._cache.cache_path is None
