@@ -32,6 +32,8 @@ class ModePair:
         Shares of the part's mass along, and of its inertia about, global x, y, z; empty for buckling.
     residual
         Of the solid's eigenvalue problem, relative. None where the solid has no such shape.
+    fixed
+        Loads of a buckling case that keep their value while the others grow.
     """
 
     key: FigureKey
@@ -45,6 +47,7 @@ class ModePair:
     mass_share: tuple[float, ...]
     residual: float | None
     judgement: JudgementWord
+    fixed: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -70,6 +73,8 @@ class TravelEnvelope:
         Of the figure; its case is the one declared in the spec (``crossing``).
     solid_greatest, solid_least, beam_greatest, beam_least
         None where that model does not give the figure.
+    scale
+        The largest value of its kind over the positions: what is next to nothing beside it is nothing.
     judgement, worst_at
         The worst word over the positions (`words`), and the position it was given at: there the remainder is the
         largest part of its band.
@@ -83,6 +88,7 @@ class TravelEnvelope:
     solid_least: Peak | None
     beam_greatest: Peak | None
     beam_least: Peak | None
+    scale: float
     judgement: JudgementWord
     worst_at: float
     words: Mapping[str, int]

@@ -6,6 +6,7 @@ beam's they are, is told by the motion of the sections; only then are two values
 
 from __future__ import annotations
 
+import dataclasses
 from collections.abc import Iterator, Mapping, Sequence
 from typing import Literal
 
@@ -48,7 +49,8 @@ def judge_modes(ctx: Context, solid: SolidResult, beam: BeamResult, facts: Mappi
     for study in ctx.part.buckling:
         ours, theirs = ([m for m in modes if m.case == study.case] for modes in (solid.buckling, beam.buckling))
         acting = facts[study.case].acting if study.case in facts else frozenset[str]()
-        found += _study(ctx, "buckling", study.case, ours, theirs, thin, acting)
+        found += ((pair, dataclasses.replace(mode, fixed=study.fixed))
+                  for pair, mode in _study(ctx, "buckling", study.case, ours, theirs, thin, acting))
     return tuple(pair for pair, _ in found), tuple(mode for _, mode in found)
 
 
@@ -93,6 +95,8 @@ def _word(found: Match, solid: Mode | None, beam: Mode | None, band: float,
     """The judgement, and why or where to look. `ends`: largest size of the values in either list."""
     if solid is None:
         assert beam is not None
+        if ends[0] == 0.0:
+            return "suspicious", "the solid model gave no mode at all; look at: supports, the loads of the case"
         if abs(beam.value) >= ends[0] * (1.0 - band):
             return "no beam value", "the list of the solid model ends before it"
         return "suspicious", (f"the solid model has no such shape ({beam.kind}); look at: supports, density or loads, "
@@ -102,7 +106,7 @@ def _word(found: Match, solid: Mode | None, beam: Mode | None, band: float,
         if walls:
             return "no beam value", OUTSIDE
         if abs(solid.value) >= ends[1] * (1.0 - band):
-            return "no beam value", "the list of the beam model ends before it"
+            return "no beam value", f"the beam model gives {'none' if ends[1] == 0.0 else 'no more'}"
         return "suspicious", (f"the beam model has no such shape ({solid.kind}); look at: supports, the carried "
                               "masses, a part that is weak between two cuts")
     if walls:

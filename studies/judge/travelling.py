@@ -62,8 +62,9 @@ def _row(key: FigureKey, found: Sequence[tuple[float, Pair]]) -> TravelEnvelope:
     worst_at, _ = max(((x, pair) for x, pair in found if pair.judgement == word), key=lambda item: _use(item[1]))
     solid = [(pair.solid, x, pair.beam) for x, pair in found if pair.solid is not None]
     beam = [(pair.beam, x, pair.solid) for x, pair in found if pair.beam is not None]
+    scale = max(pair.scale for _, pair in found)
     return TravelEnvelope(key, found[0][1].unit, _peak(solid, 1.0), _peak(solid, -1.0), _peak(beam, 1.0),
-                          _peak(beam, -1.0), word, worst_at, {str(w): count for w, count in words.items()})
+                          _peak(beam, -1.0), scale, word, worst_at, {str(w): count for w, count in words.items()})
 
 
 def _peak(values: Sequence[tuple[float, float, float | None]], sign: float) -> Peak | None:

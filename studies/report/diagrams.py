@@ -80,10 +80,10 @@ def _panel(axes: Any, curves: Sequence[tuple[np.ndarray, np.ndarray]], text: str
     (xs, vs), (xb, vb) = curves
     axes.plot(xb, factor * vb, color=frame.BEAM, lw=1.4)
     axes.plot(xs, factor * vs, ls="none", marker="o", ms=5, mfc="none", mec=frame.SOLID, mew=1.4)
-    _finish(axes, text, max((float(np.abs(v).max()) for v in (vs, vb) if v.size), default=0.0), factor, scale)
+    finish(axes, text, max((float(np.abs(v).max()) for v in (vs, vb) if v.size), default=0.0), factor, scale)
 
 
-def _finish(axes: Any, text: str, largest: float, factor: float, scale: float) -> None:
+def finish(axes: Any, text: str, largest: float, factor: float, scale: float) -> None:
     """Title and zero line; a diagram that is nothing beside its kind is drawn flat, not blown up to noise."""
     axes.axhline(0.0, color="#888888", lw=0.8, zorder=1)
     axes.set_title(text, loc="left", fontsize=11)
@@ -102,7 +102,7 @@ def _stress_panel(axes: Any, sides: Sequence[tuple[str, str]], case: str, member
         axes.plot(xb, vb, color=frame.BEAM, lw=1.4, ls=dash, label=f"{side}, beam")
         axes.plot(xs, vs, ls="none", marker=marker, ms=5, mfc="none", mec=frame.SOLID, mew=1.4, label=f"{side}, solid")
         largest = max([largest, *(float(np.abs(v).max()) for v in (vs, vb) if v.size)])
-    _finish(axes, f"stress at {sides[0][1]} and {sides[1][1]} (MPa)", largest, 1.0, scale)
+    finish(axes, f"stress at {sides[0][1]} and {sides[1][1]} (MPa)", largest, 1.0, scale)
     axes.legend(frameon=False, fontsize=8.5, ncols=2)
 
 

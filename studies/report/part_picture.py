@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
@@ -33,7 +34,8 @@ def part_picture(path: Path, part: Part, mesh: NamedMesh) -> None:
     """The part, its support regions blue, its loaded regions vermillion, an arrow for each force and moment."""
     surface, nodes, camera = Surface.of(mesh), mesh.nodes.T, view_of(part)
     extent = float(np.ptp(nodes, axis=0).max())
-    arrows = [(load, arrow) for load in part.loads for arrow in _arrows(load, part, mesh)]
+    loads = shown_loads(part)
+    arrows = [(load, arrow) for load in loads for arrow in _arrows(load, part, mesh)]
     reach = 0.16 * extent
     ends = [foot + side * reach * _unit(way) for _, (foot, way, _) in arrows for side in (-1, 0)]
     canvas = Canvas.around(np.vstack([camera.project(nodes), *(camera.project(end[None]) for end in ends)]),
@@ -47,14 +49,27 @@ def part_picture(path: Path, part: Part, mesh: NamedMesh) -> None:
         frame.scale_line(axes, canvas)
         named: set[str] = set()
         for load, arrow in arrows:
-            spread = isinstance(load, LineLoad | Pressure)  # several arrows for one load: named once
+            spread = isinstance(load, LineLoad | Pressure | StripLoad)  # several arrows for one load: named once
             _draw_arrow(axes, camera, load, arrow, reach, mesh, named=not (spread and load.name in named))
             named.add(load.name)
         for support in part.supports:
             _name_support(axes, camera, support, mesh)
+        for load in loads:
+            if isinstance(load, StripLoad):
+                _draw_travel(axes, camera, load, part, mesh)
         _legend(figure, part)
         figure.suptitle(f"{part.title}: supports and loads (arrow length is not to scale)", fontsize=12)
         frame.save(figure, path)
+
+
+def shown_loads(part: Part) -> list[Load]:
+    """The loads to draw: of a travelling one the position a quarter of its way along, beside most still loads."""
+    positions: dict[str, list[StripLoad]] = {}
+    for load in part.loads:
+        if isinstance(load, StripLoad):
+            positions.setdefault(load.name.partition("@")[0], []).append(load)
+    shown = [strips[len(strips) // 4] for strips in positions.values()]
+    return [load for load in part.loads if not isinstance(load, StripLoad)] + shown
 
 
 def describe_support(support: Support) -> str:
@@ -79,8 +94,9 @@ def describe_load(load: Load) -> str:
                 f"{_vector(load.last, 'N/mm')}"
             return f"{load.name}: {size} on {load.on}, {load.start:g} to {load.end:g} mm"
         case StripLoad():
-            axles = ", ".join(f"{x:g}" for x in load.centres)
-            return f"{load.name}: {_vector(load.force, 'N')} on {load.on}, {load.length:g} mm about {axles} mm"
+            axles = "" if len(load.centres) == 1 else f" on each of {len(load.centres)} axles"
+            return f"{load.name.partition('@')[0]}: {_vector(load.force, 'N')}{axles}, travels along {load.on} " \
+                f"(drawn at {load.centres[0]:.6g} mm)"
         case RemotePoint():
             mass = f", mass {1e3 * load.mass:g} kg" if load.mass else ""
             wrench = _wrench(load.force, load.moment)
@@ -139,6 +155,8 @@ def _arrows(load: Load, part: Part, mesh: NamedMesh) -> list[Arrow]:
             return _pressure_arrows(load, mesh)
         case LineLoad():
             return _line_arrows(load, part, mesh)
+        case StripLoad():
+            return [(foot, np.array(load.force), False) for foot in _on_face(load.on, load.centres, part, mesh)]
         case BodyLoad():
             return [(mesh.nodes.mean(axis=1), np.array(load.force_per_mass), False)]
     return []
@@ -168,6 +186,34 @@ def _line_arrows(load: LineLoad, part: Part, mesh: NamedMesh) -> list[Arrow]:
     return arrows
 
 
+def _on_face(face: str, at: Sequence[float], part: Part, mesh: NamedMesh) -> list[Floats]:
+    """Points (3,) on a face along the member at distances from its start, mm, beside the middle of the facets there."""
+    member = next(m for m in part.members if face.startswith(f"{m.name}."))
+    along = _unit(np.subtract(member.end, member.start))
+    centres, areas = _region_facets(mesh, face)
+    if len(centres) == 0:
+        return []
+    where = (centres - member.start) @ along
+    points = []
+    for x in at:
+        near = np.argsort(np.abs(where - x))[:12]
+        weight = np.linalg.norm(areas[near], axis=1)
+        middle = (centres[near] * weight[:, None]).sum(axis=0) / weight.sum()
+        points.append(middle + (x - float((middle - member.start) @ along)) * along)
+    return points
+
+
+def _draw_travel(axes: Any, camera: Camera, load: StripLoad, part: Part, mesh: NamedMesh) -> None:
+    """A dashed line with two heads from the first axle's first position to the last axle's last."""
+    name = load.name.partition("@")[0]
+    strips = [s for s in part.loads if isinstance(s, StripLoad) and s.name.partition("@")[0] == name]
+    ends = _on_face(load.on, (strips[0].centres[0], strips[-1].centres[-1]), part, mesh)
+    if len(ends) == 2:
+        first, last = camera.project(np.array(ends))[:, :2]
+        axes.annotate("", last, first, zorder=6, arrowprops={"arrowstyle": "<|-|>", "ls": "--", "color": frame.LOAD,
+                                                            "lw": 1.6, "shrinkA": 0, "shrinkB": 0})
+
+
 def _facet_colours(part: Part, mesh: NamedMesh) -> Floats:
     from matplotlib.colors import to_rgb
 
@@ -186,11 +232,11 @@ def _facet_colours(part: Part, mesh: NamedMesh) -> Floats:
 def _draw_arrow(axes: Any, camera: Camera, load: Load, arrow: Arrow, reach: float, mesh: NamedMesh,
                 named: bool) -> None:
     foot, way, turns = arrow
-    share = 0.45 if isinstance(load, LineLoad | Pressure) else 1.0
+    share = 0.45 if isinstance(load, LineLoad | Pressure) else 0.7 if isinstance(load, StripLoad) else 1.0
     tail = foot - share * reach * _unit(way)
     head, start = camera.project(foot[None])[0, :2], camera.project(tail[None])[0, :2]
     colour = frame.NEUTRAL if isinstance(load, BodyLoad) else frame.LOAD
-    style = {"color": colour, "lw": 2.0 if share == 1.0 else 1.3, "shrinkA": 0, "shrinkB": 0, "mutation_scale": 16}
+    style = {"color": colour, "lw": 2.0 if share > 0.5 else 1.3, "shrinkA": 0, "shrinkB": 0, "mutation_scale": 16}
     if np.linalg.norm(head - start) < 0.15 * reach:  # it runs along the line of sight
         axes.plot(*head, marker="o", mfc="white", mec=colour, mew=2, ms=9, zorder=6)
     else:
@@ -205,7 +251,8 @@ def _draw_arrow(axes: Any, camera: Camera, load: Load, arrow: Arrow, reach: floa
     if not named:
         return
     back = (start - head) / max(float(np.linalg.norm(start - head)), 1e-30)
-    axes.annotate(load.name, start, 9 * back, textcoords="offset points", fontsize=10, color=colour, zorder=7,
+    axes.annotate(load.name.partition("@")[0], start, 9 * back, textcoords="offset points", fontsize=10, color=colour,
+                  zorder=7,
                   ha="right" if back[0] < -0.5 else "left" if back[0] > 0.5 else "center",
                   va="top" if back[1] < -0.5 else "bottom" if back[1] > 0.5 else "center",
                   bbox={"fc": "white", "ec": "none", "alpha": 0.75, "pad": 0.8})
@@ -225,7 +272,7 @@ def _legend(figure: Any, part: Part) -> None:
     from matplotlib.patches import Patch as Swatch
 
     handles = [Swatch(color=frame.SUPPORT, label=describe_support(support)) for support in part.supports]
-    for load in part.loads:
+    for load in shown_loads(part):
         handles.append(Swatch(color=frame.NEUTRAL if isinstance(load, BodyLoad | TemperatureLoad) else frame.LOAD,
                               label=describe_load(load)))
     figure.legend(handles=handles, loc="outside lower center", frameon=False, ncols=1, fontsize=9.5)

@@ -57,10 +57,7 @@ def headlines(result: CheckResult, case: str) -> list[TravelEnvelope]:
     """Rows that a person asks for first: named places and supports, the station with the greatest and the one with the
     least value of each component; figures that are next to nothing are left out."""
     ours = [row for row in result.envelopes if row.key.case == case]
-    largest: dict[str, float] = {}
-    for row in ours:
-        largest[row.key.quantity] = max(largest.get(row.key.quantity, 0.0), _size(row))
-    shown = [row for row in ours if _size(row) > LITTLE * largest[row.key.quantity]]
+    shown = [row for row in ours if _size(row) > LITTLE * row.scale]
     named = [row for row in shown if "@" not in row.key.place]
     stations: dict[tuple[str, str], list[TravelEnvelope]] = {}
     for row in shown:
@@ -70,9 +67,12 @@ def headlines(result: CheckResult, case: str) -> list[TravelEnvelope]:
         both = [r for r in rows if r.judgement != "no beam value"] or rows
         chosen = [max(both, key=lambda r: _value(r.solid_greatest, r.beam_greatest)),
                   min(both, key=lambda r: _value(r.solid_least, r.beam_least))]
-        named += list({id(r): r for r in chosen}.values())
+        named += chosen
+    told: dict[tuple[object, ...], TravelEnvelope] = {}  # an end has the values of the station there
+    for row in named:
+        told.setdefault((row.key.quantity, row.key.component, row.solid_greatest, row.solid_least), row)
     order = list(dict.fromkeys(row.key.quantity for row in ours))
-    return sorted(named, key=lambda row: order.index(row.key.quantity))
+    return sorted(told.values(), key=lambda row: order.index(row.key.quantity))
 
 
 def _value(first: Peak | None, second: Peak | None) -> float:

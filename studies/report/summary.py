@@ -148,8 +148,10 @@ def _frequencies(result: CheckResult) -> list[str]:
 def _buckling(result: CheckResult) -> list[str]:
     lines: list[str] = []
     for case in buckling_cases(result):
-        factors = ", ".join(f"{f:g} x {load}" for load, f in result.cases.get(case, {}).items())
-        lines += ["", f"### Case {case}", "", f"The varying loads of {factors}, times:", "",
+        fixed = next(m.fixed for m in result.modes if m.key.case == case)
+        factors = ", ".join(f"{f:g} x {load}" for load, f in result.cases.get(case, {}).items() if load not in fixed)
+        kept = f" beside {', '.join(fixed)}, which keeps its value" if fixed else ""
+        lines += ["", f"### Case {case}", "", f"By which factor {factors} may grow{kept}:", "",
                   *table(BUCKLING_HEAD, [row[:10] + row[11:] for row in mode_rows(result, "buckling_factor", case)]),
                   *_mode_allowances(result, case)]
     return ["## Buckling", *lines] if lines else []

@@ -50,10 +50,10 @@ def sample(**changes: object) -> CheckResult:
         modes=(ModePair(FigureKey("", "", "natural_frequency", "mode 1"), 41.5, 42.5, "Hz", "bending about y",
                         "bending", 0.98, 0.97, (0.1, 0.2, 0.61, 0.4, 0.5, 0.6), 1e-7, "agrees"),
                ModePair(FigureKey("parked", "", "buckling_factor", "beam mode 2"), None, -3.5, "1", "", "torsion",
-                        None, None, (), None, "no beam value")),
+                        None, None, (), None, "no beam value", ("self_weight",))),
         travels=(TravelSummary("crossing", "trolley", "rail.top", (30.0, 70.0), (0.0, 180.0), 40.0, 70.0),),
         envelopes=(TravelEnvelope(KEY._replace(case="crossing"), "mm", Peak(0.25, 30.0, 0.26), Peak(-0.45, 70.0, None),
-                                  None, None, "suspicious", 30.0, {"agrees": 1, "suspicious": 1}),),
+                                  None, None, 0.46, "suspicious", 30.0, {"agrees": 1, "suspicious": 1}),),
         solver=SolverSummary("multigrid", "many unknowns", 3e-9, 4e-6),
     )
     return dataclasses.replace(result, **changes)  # type: ignore[arg-type]
