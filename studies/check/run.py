@@ -120,18 +120,31 @@ def build_models(part: Part, budget: Budget, clock: Clock, solver: Choice = "aut
 
             beam = solve_beam(part, budget)
         with blamed_on("solve"):  # what it needs is loaded while the mesh is made
-            from fem.solid import solve_solid
-            from fem.solid.factor import pardiso_available
-
-            pardiso_available()
+            prepare_solver(clock)
         named_solid, mesh = meshed.result()
     with clock.stage("solve"):
+        from fem.solid import solve_solid
+
         solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text),
                             sharp_edges=[(edge.label, edge.points) for edge in named_solid.sharp_edges],
                             solver=solver)
         if solid.backend == "cholesky (lu)":
             clock.note("solve", SLOWER_SOLVER)
     return Models(part, named_solid, mesh, beam, solid)
+
+
+def prepare_solver(clock: Clock) -> None:
+    """Load the solver's libraries, and compile its kernels where that has not been done on this machine: a minute,
+    once, and told before it begins."""
+    from fem.solid import solve_solid
+    from fem.solid.factor import pardiso_available
+    from fem.solid.kernels.warm import is_warm, warm_up
+
+    assert solve_solid is not None
+    pardiso_available()
+    if not is_warm():
+        clock.tell(Event("solve", "wait", "preparing the solver's kernels (once)"))
+        warm_up(lambda text: clock.tell(Event("solve", "wait", text)))
 
 
 def _build_and_mesh(child: SolidChild, part: Part, budget: Budget, clock: Clock,

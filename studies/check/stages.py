@@ -17,10 +17,11 @@ STAGES = ("spec", "solid", "mesh", "beam", "solve", "compare", "write")
 
 @dataclass(frozen=True, slots=True)
 class Event:
-    """Something a listener may show. `kind`: a stage starts, says something, or ends (`seconds` it took)."""
+    """Something a listener may show. `kind`: a stage starts, says something, has to wait for what is not its own work
+    (to be shown at once), or ends (`seconds` it took)."""
 
     stage: str
-    kind: Literal["start", "note", "end"]
+    kind: Literal["start", "note", "wait", "end"]
     text: str = ""
     seconds: float = 0.0
 

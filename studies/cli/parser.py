@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import argparse
-from importlib.metadata import PackageNotFoundError, version
+
+from geometry.budget import available_threads
 
 DESCRIPTION = """\
 Check a beam-like part twice: as a solid model (second-order tetrahedra) and as a beam model of the same spec.
@@ -27,6 +28,8 @@ class _Version(argparse.Action):
     """Looks the version up only when asked."""
 
     def __call__(self, parser: argparse.ArgumentParser, *_: object) -> None:
+        from importlib.metadata import PackageNotFoundError, version
+
         try:
             print(f"haunch {version('haunch')}")
         except PackageNotFoundError:
@@ -65,7 +68,8 @@ def _add_check(commands: argparse._SubParsersAction[argparse.ArgumentParser]) ->
     check.add_argument("--out", metavar="DIR", help="run folder to write; PART.run in the current folder if left out")
     check.add_argument("--replace", action="store_true", help="overwrite a finished run of that name")
     check.add_argument("--no-pictures", dest="pictures", action="store_false", help="draw no PNG pictures")
-    check.add_argument("--threads", metavar="N", type=_whole(1, 1024), default=2, help="threads to use (2)")
+    check.add_argument("--threads", metavar="N", type=_whole(1, 1024), default=available_threads(),
+                       help="threads to use (one for each core that this process may use: %(default)s)")
     check.add_argument("--memory", metavar="MiB", type=_whole(256, 10**8), default=4096,
                        help="memory that meshing and solving may take (4096)")
     check.add_argument("--solver", choices=("auto", "cholesky", "multigrid"), default="auto",

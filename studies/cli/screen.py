@@ -68,6 +68,8 @@ class StageView:
             if event.stage not in self._tasks:
                 self._tasks[event.stage] = self._progress.add_task(f"{TITLES[event.stage]:22s}", total=1, note=note)
             self._progress.update(self._tasks[event.stage], completed=1 if event.kind == "end" else 0, note=note)
+        elif event.kind == "wait":
+            self._console.print(f"{TITLES[event.stage]:22s} {'':8s}    {note}", soft_wrap=True)
         elif event.kind == "end":
             self._console.print(f"{TITLES[event.stage]:22s} {event.seconds:8.2f} s  {note}".rstrip(), soft_wrap=True)
 
