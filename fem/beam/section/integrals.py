@@ -16,6 +16,10 @@ _LINE = np.polynomial.legendre.leggauss(3)
 _ARC = np.polynomial.legendre.leggauss(24)
 
 
+SweptEdge = tuple[Edge, tuple[float, float, float] | None]
+"""An edge, with the radius and the angles of an arc (see `sweep`)."""
+
+
 @dataclass(frozen=True, slots=True)
 class OutlineIntegrals:
     """Exact integrals over an outline (or several), mm.
@@ -56,15 +60,14 @@ def outline_integrals(outline: Outline | Sequence[Outline]) -> OutlineIntegrals:
 def _integrals(outlines: tuple[Outline, ...]) -> OutlineIntegrals:
     """Kept, as the same sections are asked for again and again along a member."""
     origin = outlines[0].outer[0].start
-    m = np.zeros(6)
-    for edge in _edges(outlines):
-        m += _moments(edge, origin)
+    edges = [(edge, sweep(edge) if isinstance(edge, Arc) else None) for edge in _edges(outlines)]
+    m = _moments(edges, origin)
     area, sy, sz, syy, syz, szz = (float(v) for v in m)
     y, z = sy / area, sz / area
     Izz, Iyz, Iyy = syy - area * y * y, syz - area * y * z, szz - area * z * z
     yc, zc = y + origin[0], z + origin[1]
     I1, I2, angle = principal_moments(Iyy, Izz, Iyz)
-    points = extreme_points(outlines)
+    points = _extremes(edges)
     points.flags.writeable = False
     reach = [float(abs(v)) for v in (points[0, 1] - zc, points[1, 1] - zc, points[2, 0] - yc, points[3, 0] - yc)]
     return OutlineIntegrals(area, yc, zc, Iyy, Izz, Iyz, I1, I2, angle, points,
@@ -98,39 +101,40 @@ def sweep(arc: Arc) -> tuple[float, float, float]:
     return math.hypot(arc.start[0] - cy, arc.start[1] - cz), first, turn
 
 
-def _moments(edge: Edge, origin: Point) -> NDArray[np.float64]:
-    """(6,) share of one edge in A, int y, int z, int y^2, int y z, int z^2 about `origin`."""
-    if isinstance(edge, Arc):
-        radius, first, turn = sweep(edge)
-        t, w = _ARC
-        angle = first + 0.5 * turn * (t + 1)
-        y = edge.centre[0] - origin[0] + radius * np.cos(angle)
-        z = edge.centre[1] - origin[1] + radius * np.sin(angle)
-        dz = w * 0.5 * turn * radius * np.cos(angle)
-    else:
-        t, w = _LINE
-        s = 0.5 * (t + 1)
-        y = edge.start[0] - origin[0] + s * (edge.end[0] - edge.start[0])
-        z = edge.start[1] - origin[1] + s * (edge.end[1] - edge.start[1])
-        dz = 0.5 * w * (edge.end[1] - edge.start[1])
-    return np.array([y @ dz, y * y @ dz / 2, y * z @ dz, y**3 @ dz / 3, y * y * z @ dz / 2, y * z * z @ dz])
+def _moments(edges: Sequence[SweptEdge], origin: Point) -> NDArray[np.float64]:
+    """(6,) A, int y, int z, int y^2, int y z, int z^2 about `origin`: all edges' Gauss points in one go."""
+    lines = np.array([(*e.start, *e.end) for e, arc in edges if arc is None]).reshape(-1, 4)
+    arcs = np.array([(*e.centre, *arc) for e, arc in edges if isinstance(e, Arc) and arc is not None]).reshape(-1, 5)
+    y0, z0, y1, z1 = lines.T[:, :, None]
+    s = 0.5 * (_LINE[0] + 1)
+    cy, cz, radius, first, turn = arcs.T[:, :, None]
+    angle = first + 0.5 * turn * (_ARC[0] + 1)
+    across, up = radius * np.cos(angle), radius * np.sin(angle)
+    y = np.concatenate([(y0 - origin[0] + s * (y1 - y0)).ravel(), (cy - origin[0] + across).ravel()])
+    z = np.concatenate([(z0 - origin[1] + s * (z1 - z0)).ravel(), (cz - origin[1] + up).ravel()])
+    dz = np.concatenate([(0.5 * _LINE[1] * (z1 - z0)).ravel(), (_ARC[1] * 0.5 * turn * across).ravel()])
+    ydz, yydz = y * dz, y * y * dz
+    return np.array([dz @ y, y @ ydz / 2, z @ ydz, y @ yydz / 3, z @ yydz / 2, z @ (z * ydz)])
 
 
 def extreme_points(outlines: Sequence[Outline]) -> NDArray[np.float64]:
     """(4, 2) points top, bottom, left, right of the outlines (see `SectionProperties.extremes`)."""
-    edges = list(_edges(outlines))
-    size = max(abs(v) for e in edges for p in (e.start, e.end) for v in p) or 1.0
+    return _extremes([(edge, sweep(edge) if isinstance(edge, Arc) else None) for edge in _edges(outlines)])
+
+
+def _extremes(edges: Sequence[SweptEdge]) -> NDArray[np.float64]:
+    size = max(abs(v) for e, _ in edges for p in (e.start, e.end) for v in p) or 1.0
     return np.array([_extreme(edges, axis, sign, 1e-9 * size) for axis, sign in ((1, 1), (1, -1), (0, -1), (0, 1))])
 
 
-def _extreme(edges: Sequence[Edge], axis: int, sign: int, tol: float) -> Point:
+def _extreme(edges: Sequence[SweptEdge], axis: int, sign: int, tol: float) -> Point:
     """Farthest point along +-axis; the middle of the side when flat; of several the upper one, then the left one."""
     direction = (math.pi / 2 if axis else 0.0) + (0.0 if sign > 0 else math.pi)
     spots: list[tuple[Point, bool]] = []
-    for e in edges:
+    for e, arc in edges:
         spots += [(e.start, False), (e.end, False)]
-        if isinstance(e, Arc):
-            radius, first, turn = sweep(e)
+        if isinstance(e, Arc) and arc is not None:
+            radius, first, turn = arc
             ahead = (direction - first) % (2 * math.pi) if turn > 0 else -((first - direction) % (2 * math.pi))
             if abs(ahead) <= abs(turn):
                 spots.append(((e.centre[0] + radius * math.cos(direction), e.centre[1] + radius * math.sin(direction)),
