@@ -7,8 +7,6 @@ does not grow with the mesh (p-multigrid; E. M. Ronquist, A. T. Patera, J. Sci. 
 
 from __future__ import annotations
 
-from typing import Any
-
 import numpy as np
 import scipy.sparse as sp
 from numpy.typing import NDArray
@@ -16,8 +14,10 @@ from numpy.typing import NDArray
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.factor import NotPositive
 from fem.solid.shape import Array
+from fem.solid.solver.aggregate import AggregateSolver
 from fem.solid.solver.cholesky import CholeskySolver, spring_unknowns
 from fem.solid.solver.conjugate import Goal, MeanRows, conjugate_gradients
+from fem.solid.solver.cycle import Cycle
 from fem.solid.solver.elimination import Elimination
 from fem.solid.solver.estimate import AT_ONCE, refuse_multigrid
 from fem.solid.solver.gauge import rounding_of_product
@@ -26,6 +26,8 @@ from fem.solid.solver.transfer import Transfer
 from geometry.budget import Budget
 
 DEGREE = 3
+FACTORED = 30_000
+"""Unknowns of the linear level up to which it is factored; above it is solved by aggregates."""
 ENERGY = 1e-6
 """Allowed error in the norm of the energy, as it was two iterations before the last: what remains is about a tenth, and
 displacements are nearer still (1e-9 to 1e-8 of the largest, measured)."""
@@ -67,9 +69,6 @@ class MultigridSolver:
         self._K, self._held, self._threads = K, held, budget.threads
         self._transfer = transfer = Transfer(tets, held, budget.threads)
         refuse_multigrid(K, transfer.coarse.T.shape[1], budget)
-        self._single = K.single()
-        self._jacobi = BlockJacobi(K, held, budget.threads)
-        self._bound = self._jacobi.largest(self._single, budget.seed)
         count = mean_rows.shape[0]
         coarse = transfer.galerkin(K)
         coarse_rows = sp.csr_matrix((count, transfer.coarse.T.shape[1]))
@@ -77,18 +76,29 @@ class MultigridSolver:
         if count:
             coarse_rows = sp.csr_matrix(np.vstack([transfer.restrict(row.T.toarray()).T for row in mean_rows]))
             springs = spring_unknowns(nodes[:, transfer.corners], transfer.coarse.T)
-        upper = transfer.coarse.square(coarse)
-        try:
-            self._coarse = CholeskySolver(upper, coarse_rows, springs, budget, backend, single=not count, refinement=0)
-        except NotPositive:  # of a slender part it takes double precision
-            self._coarse = CholeskySolver(upper, coarse_rows, springs, budget, backend, refinement=0)
-        self._buffers: dict[int, list[NDArray[np.float32]]] = {}
+        self._coarse: CholeskySolver | AggregateSolver
+        if transfer.coarse.T.shape[1] > FACTORED and not count and not held.rigid.shape[1]:
+            self._coarse = AggregateSolver(coarse, transfer.coarse, nodes[:, transfer.corners], budget, backend)
+        else:
+            self._coarse = self._factored(transfer.coarse.square(coarse), coarse_rows, springs, budget, backend)
+        jacobi = BlockJacobi(K, held, budget.threads)
+        self._smooth_and_correct = Cycle(K.single(), jacobi, transfer, self._coarse.solve, DEGREE, budget.seed)
         self._rows: MeanRows | None = None
         if count:
             C = mean_rows.toarray()
             W = np.empty_like(C.T)
             self._cycle(np.ascontiguousarray(C.T), W)
             self._rows = MeanRows(C, W, np.linalg.inv(C @ W))
+
+    @staticmethod
+    def _factored(
+        upper: sp.csr_matrix, rows: sp.csr_matrix, springs: NDArray[np.int64], budget: Budget, backend: str
+    ) -> CholeskySolver:
+        single = not rows.shape[0]
+        try:
+            return CholeskySolver(upper, rows, springs, budget, backend, single=single, refinement=0)
+        except NotPositive:  # of a slender part it takes double precision
+            return CholeskySolver(upper, rows, springs, budget, backend, refinement=0)
 
     def solve(self, rhs: Array) -> Array:
         """(f, k) solutions with C y = 0."""
@@ -107,7 +117,7 @@ class MultigridSolver:
         loads = self._held.lift(rhs)
         start, force = None, np.linalg.norm(rhs, axis=0)
         floor = np.zeros(rhs.shape[1])
-        if values.any():
+        if values.any() and isinstance(self._coarse, CholeskySolver):
             nothing = np.zeros((self._transfer.coarse.T.shape[1], rhs.shape[1]))
             start = np.zeros((self._K.shape[0], rhs.shape[1]))
             self._transfer.prolong(self._coarse.solve_bordered(nothing, values)[0], start)
@@ -139,43 +149,11 @@ class MultigridSolver:
     def close(self) -> None:
         """Give memory back."""
         self._coarse.close()
-        self._buffers.clear()
-
-    def _product(self, x: Array, out: Array) -> None:
-        if x.shape[1] == 1:
-            self._K.product(x[:, 0], out[:, 0], self._threads)
-        else:
-            self._K.product(x, out, self._threads)
-
-    def _single_product(self, x: NDArray[np.float32], out: NDArray[np.float32]) -> None:
-        if x.shape[1] == 1:
-            self._single.product(x[:, 0], out[:, 0], self._threads)
-        else:
-            self._single.product(x, out, self._threads)
+        self._smooth_and_correct.close()
 
     def _cycle(self, residual: Array, out: Array) -> None:
-        """out = M residual: smooth, correct on the linear level, smooth. Symmetric, as both smoothings are alike."""
-        columns = residual.shape[1]
-        if columns not in self._buffers:
-            self._buffers = {columns: [np.empty(residual.shape, np.float32) for _ in range(4)]}
-        r, z, d, w = self._buffers[columns]
-        scale = np.abs(residual).max(axis=0)
-        scale = np.where(scale > 0, scale, 1.0)
-        r[:] = residual / scale
-        z[:] = 0
-        self._smooth(r, z, d, w, first=True)
-        self._single_product(z, w)
-        np.subtract(r, w, out=w)
-        self._transfer.prolong(self._coarse.solve(self._transfer.restrict(w)), z)
-        self._smooth(r, z, d, w, first=False)
-        np.multiply(z, scale, out=out)
+        self._smooth_and_correct(residual, out)
         self._held.project(out)  # single precision keeps a rigid region rigid to seven digits only
 
-    def _smooth(self, r: Any, z: Any, d: Any, w: Any, first: bool) -> None:
-        for k in range(1, DEGREE + 1):
-            fresh = first and k == 1
-            if not fresh:
-                self._single_product(z, w)
-            old = (2 * k - 3) / (2 * k + 1) if k > 1 else 0.0
-            new = (8 * k - 4) / ((2 * k + 1) * self._bound)
-            self._jacobi.step(r, None if fresh else w, d, z, old, new)
+    def _product(self, x: Array, out: Array) -> None:
+        self._K.product(x, out, self._threads)
