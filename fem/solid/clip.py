@@ -84,37 +84,3 @@ def smaller_triangles(levels: int) -> Array:
         parts = ((a, ab, ac), (ab, b, bc), (ac, bc, c), (ab, bc, ac))
         triangles = np.concatenate([np.stack(p, axis=1) for p in parts])
     return triangles
-
-
-def clip_triangles(corners: Array, distance: Array) -> tuple[Array, NDArray[np.int64]]:
-    """The part of triangles where a distance, linear in each, is not negative, as triangles again.
-
-    Parameters
-    ----------
-    corners
-        (t, 3, 3) barycentric coordinates in some facet: [triangle, corner, coordinate].
-    distance
-        (t, 3) at the corners.
-
-    Returns
-    -------
-    (s, 3, 3) corners of the parts, and (s,) the triangle that each one is of.
-    """
-    beyond = distance >= 0
-    count = beyond.sum(axis=1)
-    whole = np.flatnonzero(count == 3)
-    parts, index = [corners[whole]], [whole]
-
-    def meet(here: NDArray[np.int64], i: int, j: int) -> Array:
-        t = (distance[here, i] / (distance[here, i] - distance[here, j]))[:, None]
-        return np.asarray(corners[here, i] * (1 - t) + corners[here, j] * t)
-
-    for i, j, k in ((0, 1, 2), (1, 2, 0), (2, 0, 1)):
-        one = np.flatnonzero((count == 1) & beyond[:, i])
-        parts.append(np.stack([corners[one, i], meet(one, i, j), meet(one, i, k)], axis=1))
-        two = np.flatnonzero((count == 2) & ~beyond[:, i])
-        ji, ki = meet(two, j, i), meet(two, k, i)
-        parts.append(np.stack([corners[two, j], corners[two, k], ki], axis=1))
-        parts.append(np.stack([corners[two, j], ki, ji], axis=1))
-        index += [one, two, two]
-    return np.concatenate(parts), np.concatenate(index)

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.solid.clip import clip_triangles, smaller_triangles
+from fem.solid.clip import smaller_triangles
 from fem.solid.frame import Frame
+from fem.solid.kernels.clipping import clip_facets
 from fem.solid.shape import (
     TRIANGLE_EDGES,
     Array,
@@ -47,11 +49,13 @@ class Window:
 
 @dataclass(frozen=True, slots=True)
 class SurfacePiece:
-    """Traction on the facets (6, k), or on what of them lies within the window."""
+    """Traction on the facets (6, k), or on what of them lies within the window; `forces` (6, 3, k) on the facets' nodes
+    where they are known already."""
 
     facets: NDArray[np.int64]
     traction: Traction
     window: Window | None = None
+    forces: Array | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -76,6 +80,13 @@ def facet_quadrature(nodes: Array, facets: NDArray[np.int64], owner: NDArray[np.
     return FacetPoints(owner, bary, (x * triangle_values(bary)).sum(axis=1), normals / size, size * w)
 
 
+@cache
+def _children(levels: int) -> tuple[Array, Array]:
+    """(t, 3, 3) corners of the smaller triangles and (t, 3, 6) the shape functions there."""
+    corners = np.ascontiguousarray(smaller_triangles(levels))
+    return corners, np.ascontiguousarray(triangle_values(corners.reshape(-1, 3).T).T.reshape(-1, 3, 6))
+
+
 def clipped_facets(nodes: Array, facets: NDArray[np.int64], distances: tuple[Array, ...]) -> FacetPoints:
     """Quadrature on the part of the facets (6, k) where every one of the distances (6, k) of their nodes is >= 0.
 
@@ -87,15 +98,12 @@ def clipped_facets(nodes: Array, facets: NDArray[np.int64], distances: tuple[Arr
     off = np.linalg.norm(x[:, 3:] - x[:, :3][:, TRIANGLE_EDGES].mean(axis=2), axis=0)
     curved = (off > 1e-9 * size).any(axis=0)
     corners, owner = [], []
+    every = np.array(distances)
     for chosen, levels in ((np.flatnonzero(~curved), 0), (np.flatnonzero(curved), _REFINE)):
-        children = smaller_triangles(levels)
-        corners.append(np.tile(children, (chosen.size, 1, 1)))
-        owner.append(np.repeat(chosen, children.shape[0]))
+        mine, parts = clip_facets(*_children(levels), every[:, :, chosen])
+        owner.append(chosen[mine])
+        corners.append(parts)
     pieces, own = np.concatenate(corners), np.concatenate(owner)
-    for d in distances:
-        values = triangle_values(pieces.reshape(-1, 3).T).reshape(6, -1, 3)
-        pieces, index = clip_triangles(pieces, np.einsum("atc,at->tc", values, d[:, own]))
-        own = own[index]
     L, w = triangle_quadrature(FORCE_ORDER)
     bary = np.matmul(pieces.transpose(2, 0, 1), L).reshape(3, -1)
     weights = (np.abs(np.linalg.det(pieces))[:, None] * w).ravel()
@@ -104,7 +112,8 @@ def clipped_facets(nodes: Array, facets: NDArray[np.int64], distances: tuple[Arr
 
 def piece_forces(nodes: Array, piece: SurfacePiece) -> Array:
     """(6, 3, k) consistent forces of a piece on the nodes of each of its facets, N."""
-    k = piece.facets.shape[1]
+    if piece.forces is not None:
+        return piece.forces
     if piece.window is None:
         N, x, normals = facet_points(nodes, piece.facets, FORCE_ORDER)
         dA = np.linalg.norm(normals, axis=0)
@@ -112,5 +121,10 @@ def piece_forces(nodes: Array, piece: SurfacePiece) -> Array:
         return np.asarray(np.matmul(t, N.T).transpose(2, 0, 1))
     here = clipped_facets(nodes, piece.facets, piece.window.distances(nodes[:, piece.facets]))
     t = piece.traction(here.points, here.normals) * here.areas
-    N = triangle_values(here.bary)
-    return np.array([[np.bincount(here.owner, weights=N[a] * t[i], minlength=k) for i in range(3)] for a in range(6)])
+    return np.array([node_sums(here, row, piece.facets.shape[1]) for row in t]).transpose(1, 0, 2)
+
+
+def node_sums(points: FacetPoints, values: Array, count: int) -> Array:
+    """(6, count) sum of the values (p,) times each shape function over every facet's points."""
+    N = triangle_values(points.bary)
+    return np.array([np.bincount(points.owner, weights=row * values, minlength=count) for row in N])

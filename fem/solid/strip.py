@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from fem.solid.frame import Frame
-from fem.solid.piece import SurfacePiece, Traction, Window, clipped_facets
+from fem.solid.piece import SurfacePiece, Traction, Window, clipped_facets, node_sums
 from fem.solid.region import Region
 from fem.solid.shape import Array
 from geometry.part import StripLoad
@@ -49,7 +49,8 @@ class TravelledFace:
                     "nothing is left of that face: it lies beyond the part or wholly in a cut. Let it travel over a "
                     "stretch of the face that is there, give its contact a greater length, or move the cut."
                 )
-            pieces.append(SurfacePiece(facets, _even(force / area), window))
+            shares = node_sums(here, areas / area, facets.shape[1])
+            pieces.append(SurfacePiece(facets, _even(force / area), window, shares[:, None, :] * force[:, None]))
             moment += np.cross(here.points @ areas / area, force)
         return tuple(pieces), len(load.centres) * force, moment
 
