@@ -1,9 +1,10 @@
 """Where the time of a check goes. A script: ``python tests/benchmarks/check_time.py [PART.toml] [--repeats N]``.
 
-Start-up (imports, finding MKL) is timed on its own; then every stage runs one after the other in the warm process, with
-its wall and CPU seconds. The CAD kernel is loaded in this process too; the mesh kernel's child processes start anew
-each time, as in a user's run, and their CPU seconds count. Pictures are left out unless asked for. A whole run in a
-process of its own, where stages overlap, ends the list.
+Start-up (imports, finding MKL, both kernels' template processes) is timed on its own; then every stage runs one after
+the other in the warm process, with its wall and CPU seconds. Solid and meshes are made as in any run: each job in a
+process of its own, copied from a template that has the kernel loaded; their CPU seconds count. Then the whole chain,
+spec to written results, is timed as `studies.check.run.check` runs it in this warm process, stages side by side.
+Pictures are left out unless asked for. A whole run in a new process, start-up and all, ends the list.
 
 Seconds say little about another machine: beside them stand ratios to two reference kernels timed in the same
 run, one bound by arithmetic (a dense matrix product) and one by memory (``a = b + s c`` on long vectors). On a machine
@@ -53,8 +54,20 @@ def timed(work: Callable[[], Any]) -> tuple[Spent, Any]:
 
 
 def _cpu() -> float:
+    """Of this process, of its ended children, and of the templates with their ended jobs."""
     used = [resource.getrusage(who) for who in (resource.RUSAGE_SELF, resource.RUSAGE_CHILDREN)]
-    return sum(u.ru_utime + u.ru_stime for u in used)
+    return sum(u.ru_utime + u.ru_stime for u in used) + sum(map(_cpu_of, _templates()))
+
+
+def _templates() -> list[int]:
+    owner = sys.modules.get("geometry.process.owner")
+    return [] if owner is None else [t.pid for t in owner._shared.values() if t.pid is not None]
+
+
+def _cpu_of(pid: int) -> float:
+    """CPU seconds of another process and of its children that have ended (Linux)."""
+    fields = Path(f"/proc/{pid}/stat").read_text(encoding="ascii").rpartition(")")[2].split()
+    return sum(map(int, fields[11:15])) / os.sysconf("SC_CLK_TCK")
 
 
 def best(kernel: Callable[[], object], repeats: int = 5) -> Spent:
@@ -88,10 +101,29 @@ def start_up() -> dict[str, Spent]:
 
         pardiso_available()
 
-    def cad() -> None:
-        importlib.import_module("cadquery")
+    def kernels() -> None:
+        from geometry.budget import Budget
+        from geometry.spec import read_part
+        from studies.check.run import begin_loading
 
-    return {"Haunch": timed(load)[0], "CAD kernel": timed(cad)[0]}
+        begin_loading()
+        part = read_part(SMALL)
+        _mesh(_solid(part, Budget()), part, Budget())
+
+    return {"Haunch": timed(load)[0], "both kernels, and a first small mesh": timed(kernels)[0]}
+
+
+def _solid(part: Any, budget: Any) -> Any:
+    from studies.check.solid_child import SolidChild
+
+    with SolidChild(part, budget) as child:
+        return child.result()[0]
+
+
+def _mesh(solid: Any, part: Any, budget: Any) -> Any:
+    from mesher import mesh_solid
+
+    return mesh_solid(solid, part.accuracy, budget)
 
 
 def stages(part: Path, threads: int, pictures: bool) -> tuple[dict[str, Spent], str]:
@@ -100,17 +132,15 @@ def stages(part: Path, threads: int, pictures: bool) -> tuple[dict[str, Spent], 
     from fem.beam.section import integrals
     from fem.solid import solve_solid
     from geometry.budget import Budget
-    from geometry.solid import build_solid
     from geometry.spec import read_part
-    from mesher import mesh_solid
     from studies.check import run
     from studies.check.stages import Clock
 
     integrals._integrals.cache_clear()  # a user's run begins without them
     budget, clock, spent = Budget(threads=threads), Clock(), {}
     spent["spec"], resolved = timed(lambda: read_part(part))
-    spent["solid"], solid = timed(lambda: build_solid(resolved))
-    spent["mesh"], mesh = timed(lambda: mesh_solid(solid, resolved.accuracy, budget))
+    spent["solid"], solid = timed(lambda: _solid(resolved, budget))
+    spent["mesh"], mesh = timed(lambda: _mesh(solid, resolved, budget))
     spent["beam"], beam = timed(lambda: solve_beam(resolved, budget))
     sharp = [(edge.label, edge.points) for edge in solid.sharp_edges]
     spent["solve"], solved = timed(lambda: solve_solid(resolved, mesh, budget, sharp_edges=sharp))
@@ -121,6 +151,17 @@ def stages(part: Path, threads: int, pictures: bool) -> tuple[dict[str, Spent], 
     parts = ", ".join(f"{name} {seconds:.2f}" for name, seconds in solved.timings.items())
     size = f"{mesh.tets.shape[1]} tetrahedra, {mesh.nodes.size} displacements\nwithin solve (wall): {parts}"
     return spent, size
+
+
+def warm_chain(part: Path, threads: int, pictures: bool) -> Spent:
+    """Spec to written results as a run does it, in this process, which has done it before."""
+    from fem.beam.section import integrals
+    from geometry.budget import Budget
+    from studies.check.run import check
+
+    integrals._integrals.cache_clear()
+    with tempfile.TemporaryDirectory() as folder:
+        return timed(lambda: check(part, Path(folder) / "timed.run", Budget(threads=threads), pictures=pictures))[0]
 
 
 def whole_run(part: Path, threads: int, pictures: bool) -> Spent:
@@ -173,10 +214,16 @@ def main() -> None:
     for name, (wall, cpu) in loading.items():
         print(f"start-up {name}: wall {wall:.2f} s, CPU {cpu:.2f} s")
     print(f"\n{table(runs, product, triad)}")
+    warm_chain(part, options.threads, options.pictures)
+    chains = [warm_chain(part, options.threads, options.pictures) for _ in range(options.repeats)]
+    wall, cpu = (statistics.median(c[k] for c in chains) for k in (0, 1))
+    least = min(c.wall for c in chains)
+    print(f"\nwhole chain, spec to written results, in this warm process: wall {wall:.2f} s (least {least:.2f}), "
+          f"CPU {cpu:.2f} s, {cpu / triad.cpu:.1f} triads; load {os.getloadavg()[0]:.1f}")
     wall, cpu = whole_run(part, options.threads, options.pictures)
     print(f"\nwhole run in a new process, start-up included: wall {wall:.2f} s, CPU {cpu:.2f} s")
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
-    print(f"most memory of this process (reference kernels and CAD kernel included): {peak:.0f} MiB")
+    print(f"most memory of this process (reference kernels included): {peak:.0f} MiB")
 
 
 if __name__ == "__main__":

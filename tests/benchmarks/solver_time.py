@@ -10,7 +10,7 @@
 Every measurement runs in a process of its own, within a limit of time and memory; a row that does not fit is told as
 that. Each finished row is written to a file at once (its name is printed), so nothing is lost when a later one fails
 or the run is stopped. Times are of a warm process: imports, compiled code and libraries have been used before on a
-small bar, and of ``--repeats`` runs the last one counts. "All" is from the arrays of a mesh to displacements of one
+small bar, and of the runs of a small row the last one counts. "All" is from the arrays of a mesh to displacements of one
 load case. Memory is the peak of those stages, above what the process held before them. The rivals get the same mesh
 and the same load; the answers are compared. The last line says whether they agree, and the exit status is 1 when not.
 """
@@ -37,16 +37,19 @@ from solver_timing.rivals import NAMES  # noqa: E402
 from solver_timing.shapes import SHAPES, SIZES  # noqa: E402
 
 README = ROOT / "README.md"
+MAIN = "box"
+"""The shape that is measured most closely; the other rules tell it (True) from the others (False)."""
 RIVALS_AT = {
-    "tiny": ("lu", "pardiso", "amg"),
-    "small": ("lu", "pardiso", "amg"),
-    "medium": ("pardiso", "amg"),
-    "large": (),
+    True: {"tiny": ("lu", "pardiso", "amg"), "small": ("lu", "pardiso", "amg"), "medium": ("pardiso", "amg")},
+    False: {"small": ("pardiso", "amg")},
 }
-"""Rivals that have a chance within the limits, for the box; other shapes meet them at the small size only."""
-
+"""Rivals that have a chance within the limits."""
+MODES_AT = {True: ("tiny", "small", "medium"), False: ("small",)}
+"""Sizes at which natural frequencies are found."""
 BOTH_AT = ("tiny", "small")
 """Sizes at which either solver of Haunch is tried, so that the table shows whether the right one was chosen."""
+REPEATED = ("tiny", "small")
+"""Sizes that are run more than once: what a first run costs beside them (pages, plans) is little in the others."""
 
 
 class Bench:
@@ -72,42 +75,50 @@ class Bench:
             return Outcome({}, "not begun: the time of the whole run was over", 0.0)
         return start(task, job, self.options.threads, min(seconds, self.left()), memory).wait()
 
-    def row(self, shape: str, size: str) -> None:
-        """Mesh, Haunch, rivals; the row is written down after each of them."""
+    def haunch(self, shape: str, size: str) -> dict[str, Any]:
+        """Mesh and Haunch; the row is written down and returned."""
         options = self.options
-        row: dict[str, Any] = {"shape": shape, "size": size}
-        mesh = self.folder / f"{shape.replace(' ', '-')}-{size}.npz"
-        self.rows.append(row)
+        mesh = self.mesh_file(shape, size)
         if not mesh.exists():
             made = self.job("mesh", {"shape": shape, "size": size, "mesh": str(mesh)}, 300, 8000)
             self.say(f"{shape}, {size}: mesh {_told(made, 'seconds')}")
-        job = {"shape": shape, "mesh": str(mesh), "system": str(self.folder / "system.npz")}
-        more = {"budget": options.memory, "solver": options.solver, "results": options.figures}
-        more |= {"modes": options.modes, "repeats": 1 if size == "large" else options.repeats}
-        more["both"] = size in BOTH_AT
-        done = self.job("haunch", {**job, **more}, options.seconds, 1.3 * options.memory)
-        row["haunch"] = asdict(done)
-        row["unknowns"] = done.facts.get("unknowns")
+        job = {
+            "shape": shape,
+            "mesh": str(mesh),
+            "budget": options.memory,
+            "solver": options.solver,
+            "results": options.figures,
+            "modes": options.modes if size in MODES_AT[shape == MAIN] else 0,
+            "repeats": options.repeats if size in REPEATED else 1,
+            "both": size in BOTH_AT,
+        }
+        done = self.job("haunch", job, options.seconds, 1.3 * options.memory)
+        row = {"shape": shape, "size": size, "unknowns": done.facts.get("unknowns"), "haunch": asdict(done)}
+        self.rows.append(row)
         self.keep(row)
         self.say(f"{shape}, {size}: Haunch {_told(done, 'displacements')}, {done.facts.get('solver', '')}")
-        if missing := done.facts.get("missing"):
+        if missing := [*done.facts.get("missing", ()), *done.facts.get("modes_missing", ())]:
             self.say(f"    not timed, no longer there: {', '.join(missing)}")
-        self.rivals(row, job, size)
+        return row
 
-    def rivals(self, row: dict[str, Any], job: dict[str, Any], size: str) -> None:
-        chosen = RIVALS_AT[size] if row["shape"] == "box" else ("pardiso", "amg") if size == "small" else ()
-        chosen = [name for name in chosen if name in self.options.rivals]
-        if not chosen:
-            return
-        Path(job["system"]).unlink(missing_ok=True)
-        for task in ("assemble", *chosen):
-            if task != "assemble" and not Path(job["system"]).exists():
+    def rivals(self, row: dict[str, Any]) -> None:
+        """The rivals on the row's mesh; it is written down again after each of them."""
+        shape, size = row["shape"], row["size"]
+        chosen = [name for name in RIVALS_AT[shape == MAIN].get(size, ()) if name in self.options.rivals]
+        system = self.folder / "system.npz"
+        job = {"shape": shape, "mesh": str(self.mesh_file(shape, size)), "system": str(system)}
+        system.unlink(missing_ok=True)
+        for task in ("assemble", *chosen) if chosen else ():
+            if task != "assemble" and not system.exists():
                 continue
             done = self.job(task, job, self.options.rival_seconds, self.options.rival_memory)
             row[task] = asdict(done)
             self.keep(row)
             word = "assembly" if task == "assemble" else "solve"
-            self.say(f"{row['shape']}, {size}: {NAMES.get(task, 'scikit-fem')} {word} {_told(done, word)}")
+            self.say(f"{shape}, {size}: {NAMES.get(task, 'scikit-fem')} {word} {_told(done, word)}")
+
+    def mesh_file(self, shape: str, size: str) -> Path:
+        return self.folder / f"{shape.replace(' ', '-')}-{size}.npz"
 
     def keep(self, row: dict[str, Any]) -> None:
         """Add the row as it is now; of several lines for one row the last one counts."""
@@ -154,13 +165,13 @@ def arguments() -> argparse.ArgumentParser:
     parser.add_argument("--rivals", nargs="+", choices=[*NAMES, "none"], default=list(NAMES))
     parser.add_argument("--solver", choices=["auto", "cholesky", "multigrid"], default="auto")
     parser.add_argument("--threads", type=int, default=2)
-    parser.add_argument("--repeats", type=int, default=2, help="runs of a row; the last counts (large: 1)")
+    parser.add_argument("--repeats", type=int, default=2, help="runs of a small row; the last counts")
     parser.add_argument("--modes", type=int, default=6, help="natural frequencies to find; 0 for none")
     parser.add_argument("--no-figures", dest="figures", action="store_false", help="stop at the displacements")
     parser.add_argument("--within", type=float, default=590, help="s for the whole run")
     parser.add_argument("--seconds", type=float, default=150, help="s for Haunch on one mesh, everything together")
     parser.add_argument("--memory", type=int, default=6000, help="MiB that Haunch may use")
-    parser.add_argument("--rival-seconds", type=float, default=60, help="s for each step of a rival")
+    parser.add_argument("--rival-seconds", type=float, default=45, help="s for each step of a rival")
     parser.add_argument("--rival-memory", type=float, default=8000, help="MiB for each rival")
     parser.add_argument("--keep", type=Path, help="folder in which meshes and rows stay; else a temporary one")
     parser.add_argument("--rows", type=Path, help="file for the finished rows; rows.jsonl in the folder")
@@ -171,23 +182,23 @@ def arguments() -> argparse.ArgumentParser:
 
 
 def measure(options: argparse.Namespace) -> list[dict[str, Any]]:
-    """All rows that were asked for, small sizes first, so that a stopped run has most of them."""
+    """All rows that were asked for, the main shape and small sizes first, rivals last: a stopped run has the most of it."""
     folder = options.keep or Path(tempfile.mkdtemp(prefix="solver-time-"))
     folder.mkdir(parents=True, exist_ok=True)
     bench = Bench(options, folder)
     bench.say(f"rows go to {bench.file}")
+    wanted = [(shape, size) for shape in options.shapes for size in options.sizes if size in SHAPES[shape].sizes]
+    wanted.sort(key=lambda row: (row[0] != MAIN, SIZES.index(row[1])))
     try:
-        for size in (size for size in SIZES if size in options.sizes):
-            for shape in options.shapes:
-                if size in SHAPES[shape].sizes:
-                    bench.row(shape, size)
+        for row in [bench.haunch(shape, size) for shape, size in wanted]:
+            bench.rivals(row)
     except KeyboardInterrupt:
         bench.say("stopped; the rows so far follow")
     finally:
         if not options.keep:
             for file in folder.glob("*.npz"):
                 file.unlink()
-    return sorted_rows([row for row in bench.rows if "haunch" in row])
+    return sorted_rows(bench.rows)
 
 
 def main() -> int:

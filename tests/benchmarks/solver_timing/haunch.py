@@ -116,6 +116,8 @@ def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, m
             processor=clock.read()[1],
             memory=memory.now(),
             stages=watch.seconds,
+            stages_processor=watch.processor,
+            parts_processor=inside.processor,
             missing=watch.missing + inside.missing,
             set_up_parts=in_set_up,
             solve_parts={name: spent - in_set_up[name] for name, spent in inside.seconds.items()},

@@ -57,7 +57,7 @@ MOVED: Mapping[str, Bytes] = {
 """Least bytes of a call."""
 
 MODES: Mapping[str, Sequence[str]] = {
-    "mass matrix": ["fem.solid.eigen.local:mass_matrix"],
+    "mass matrix": ["fem.solid.mass:mass_matrix"],
     "count of modes": ["fem.solid.eigen.vibration:_count"],
     "description": ["fem.solid.eigen.vibration:_modes"],
     "preconditioner": ["fem.solid.system:HeldSystem.precondition"],

@@ -29,16 +29,19 @@ class Watch:
 
     Attributes
     ----------
-    seconds, calls, bytes
-        By stage; `missing` names what is not there (any more).
+    seconds, processor, calls, bytes
+        By stage: wall seconds, processor seconds of all threads, calls, least bytes.
+    missing
+        Functions that are not there (any more).
     """
 
     def __init__(self, stages: Mapping[str, Sequence[str]], moved: Mapping[str, Bytes] | None = None) -> None:
         self.seconds = dict.fromkeys(stages, 0.0)
+        self.processor = dict.fromkeys(stages, 0.0)
         self.calls = dict.fromkeys(stages, 0)
         self.bytes = dict.fromkeys(stages, 0.0)
         self.missing: list[str] = []
-        self._inside = [0.0]
+        self._inside = [(0.0, 0.0)]
         self._thread = threading.get_ident()
         self._put_back: list[tuple[Any, str, Any]] = []
         self._places = [(stage, name, (moved or {}).get(name)) for stage, names in stages.items() for name in names]
@@ -80,14 +83,16 @@ class Watch:
         def timed(*args: Any, **words: Any) -> Any:
             if threading.get_ident() != self._thread:
                 return work(*args, **words)
-            self._inside.append(0.0)
-            begun = time.perf_counter()
+            self._inside.append((0.0, 0.0))
+            wall, processor = time.perf_counter(), time.process_time()
             try:
                 return work(*args, **words)
             finally:
-                spent = time.perf_counter() - begun
-                self.seconds[stage] += spent - self._inside.pop()
-                self._inside[-1] += spent
+                wall, processor = time.perf_counter() - wall, time.process_time() - processor
+                inner, outer = self._inside.pop(), self._inside.pop()
+                self._inside.append((outer[0] + wall, outer[1] + processor))
+                self.seconds[stage] += wall - inner[0]
+                self.processor[stage] += processor - inner[1]
                 self.calls[stage] += 1
                 if moved is not None:
                     self.bytes[stage] += moved(*args, **words)
