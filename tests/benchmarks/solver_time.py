@@ -10,9 +10,10 @@
 Every measurement runs in a process of its own, within a limit of time and memory; a row that does not fit is told as
 that. Each finished row is written to a file at once (its name is printed), so nothing is lost when a later one fails
 or the run is stopped. Times are of a warm process: imports, compiled code and libraries have been used before on a
-small bar, and of the runs of a small row the last one counts. "All" is from the arrays of a mesh to displacements of one
-load case. Memory is the peak of those stages, above what the process held before them. The rivals get the same mesh
-and the same load; the answers are compared. The last line says whether they agree, and the exit status is 1 when not.
+small bar, and of the runs of a small row the last one counts. "All" is from the arrays of a mesh to displacements of
+one load case. Memory is the peak of those stages, above what the process held before them. The rivals get the same
+mesh and the same load; the answers are compared. The last line says whether they agree, and the exit status is 1 when
+not.
 """
 
 from __future__ import annotations
@@ -182,7 +183,7 @@ def arguments() -> argparse.ArgumentParser:
 
 
 def measure(options: argparse.Namespace) -> list[dict[str, Any]]:
-    """All rows that were asked for, the main shape and small sizes first, rivals last: a stopped run has the most of it."""
+    """All rows that were asked for: main shape first, rivals last, so that a stopped run has the most of it."""
     folder = options.keep or Path(tempfile.mkdtemp(prefix="solver-time-"))
     folder.mkdir(parents=True, exist_ok=True)
     bench = Bench(options, folder)
