@@ -54,10 +54,11 @@ def polar_radius(ctx: Context) -> float:
 
 
 def waves_of(motion: Array) -> int:
-    """Half waves of the largest of the four motions of the line (x, y, z, twist): changes of sign and one."""
+    """Half waves of the largest of the four motions of the line (x, y, z, twist): changes of sign and one. What moves
+    less than a tenth of the largest does not count, such as a short end beyond a support."""
     lines = motion[:, :4]
     line = lines[:, int(np.argmax(np.square(lines).sum(axis=0)))]
-    seen = line[np.abs(line) > 0.02 * np.abs(line).max(initial=0.0)]
+    seen = line[np.abs(line) > 0.1 * np.abs(line).max(initial=0.0)]
     return 1 + int(np.count_nonzero(seen[1:] * seen[:-1] < 0.0))
 
 

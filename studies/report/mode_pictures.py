@@ -6,6 +6,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
@@ -13,7 +14,7 @@ from geometry.part import Part
 from mesher.named_mesh import NamedMesh
 from studies.check.studied import ModePair
 from studies.report import frame
-from studies.report.raster import Canvas, Floats
+from studies.report.raster import Camera, Canvas, Floats
 from studies.report.scene import Surface, draw, draw_edges, view_of
 from studies.report.tables import readable
 
@@ -34,40 +35,68 @@ class _Drawn:
 
 def mode_picture(path: Path, part: Part, mesh: NamedMesh, title: str, modes: Sequence[ModePair],
                  shapes: Floats) -> None:
-    """Draw the shapes (modes, 3, n) of the solid with the value of both models under each."""
+    """Draw the shapes (modes, 3, n) of the solid with the value of both models over each."""
     nodes, camera, surface = mesh.nodes.T, view_of(part), Surface.of(mesh)
-    extent = float(np.ptp(nodes, axis=0).max())
-    drawn = [_drawn(mode, shape, nodes, extent) for mode, shape in zip(modes[:MOST], shapes[:MOST], strict=True)]
+    drawn = [_drawn(mode, shape, mesh, _reach(part, nodes, mode))
+             for mode, shape in zip(modes[:MOST], shapes[:MOST], strict=True)]
     flat = np.vstack([camera.project(nodes), *(camera.project(one.moved) for one in drawn)])
-    wide, high = np.ptp(flat[:, 0]), np.ptp(flat[:, 1])
-    columns = min(len(drawn), 2 if wide > 1.6 * high else 3 if wide > 0.5 * high else 5)
-    rows = math.ceil(len(drawn) / columns)
-    panel = 12.0 / columns
-    height = float(np.clip(rows * (panel * high / wide + 0.75) + 1.5, 4.0, 16.0))
-    with frame.page(12.6, height) as figure:
+    wide, high = float(np.ptp(flat[:, 0])), float(np.ptp(flat[:, 1]))
+    columns, panel = _layout(len(drawn) + 1, wide / high)
+    rows = math.ceil((len(drawn) + 1) / columns)
+    tall = panel * high / wide
+    with frame.page(columns * panel + 0.6, float(np.clip(rows * (tall + 0.8) + 1.6, 4.0, 18.0))) as figure:
         panels = figure.subplots(rows, columns, squeeze=False)
         for axes in panels.flat[len(drawn):]:
             axes.set_axis_off()
         for axes, one in zip(panels.flat, drawn, strict=False):
-            canvas = Canvas.around(flat, frame.PIXELS // columns + 200)
-            colours = frame.colours_of(one.size, 0.0, float(one.size.max()) or 1.0, "viridis")
+            canvas = Canvas.around(flat, round(frame.DPI * max(panel, tall)))
+            colours = frame.colours_of(one.size, 0.0, 1.0, "viridis")
             draw(mesh, surface, one.moved, camera, canvas, colours)
             draw_edges(surface.outline, one.moved, camera, canvas)
             draw_edges(surface.outline, nodes, camera, canvas, (0.45, 0.45, 0.45, 0.8), hidden=True)
             frame.show(axes, canvas)
             axes.set_title(one.text, fontsize=10.5, loc="left")
-        frame.triad(panels.flat[0], camera)
-        more = f"\nthe first {MOST} of {len(modes)}" if len(modes) > MOST else ""
+        _axes_cross(panels.flat[len(drawn)], camera)
+        more = f", the first {MOST} of {len(modes)}" if len(modes) > MOST else ""
         figure.suptitle(f"{part.title}: {title}{more}", fontsize=12)
-        frame.colour_bar(figure, list(panels.flat), 0.0, 1.0, "size of the motion over its largest; its true size is "
-                         "open, grey lines: at rest", "viridis")
+        frame.colour_bar(figure, list(panels.flat), 0.0, 1.0, "size of the motion over its largest (its true size is "
+                         "open); grey lines: at rest", "viridis")
         frame.save(figure, path)
 
 
-def _drawn(mode: ModePair, shape: Floats, nodes: Floats, extent: float) -> _Drawn:
+def _layout(cells: int, shape: float) -> tuple[int, float]:
+    """Columns and the width of a panel (inches) for a picture `shape` times as wide as high."""
+    columns = min(cells, 2 if shape > 1.6 else 3 if shape > 0.7 else 5)
+    return columns, min(12.0 / columns, max(2.4, 8.0 * shape))
+
+
+def _axes_cross(axes: Any, camera: Camera) -> None:
+    """The global axes and what the pictures show, in a panel of their own."""
+    axes.set_xlim(-2.5, 2.5)
+    axes.set_ylim(-2.5, 2.5)
+    axes.set_aspect("equal")
+    ends = camera.project(np.eye(3))
+    for (x, y, _), name in zip(ends.tolist(), "xyz", strict=True):
+        axes.annotate("", (x, y), (0, 0), arrowprops={"arrowstyle": "-|>", "color": frame.NEUTRAL, "lw": 1.5,
+                                                      "shrinkA": 0, "shrinkB": 0})
+        axes.text(1.3 * x, 1.3 * y, name, ha="center", va="center", fontsize=11, color=frame.NEUTRAL)
+
+
+def _reach(part: Part, nodes: Floats, mode: ModePair) -> float:
+    """Largest drawn motion, mm: a twist is drawn small, for straight paths of the points would swell the section."""
+    extent = float(np.ptp(nodes, axis=0).max())
+    if mode.solid_kind != "torsion":
+        return SWING * extent
+    along = np.subtract(part.members[0].end, part.members[0].start)
+    along = along / np.linalg.norm(along)
+    off = nodes - nodes.mean(axis=0)
+    return 0.4 * float(np.linalg.norm(off - np.outer(off @ along, along), axis=1).max())
+
+
+def _drawn(mode: ModePair, shape: Floats, mesh: NamedMesh, reach: float) -> _Drawn:
     size = np.linalg.norm(shape, axis=0)
     largest = float(size.max()) or 1.0
-    return _Drawn(nodes + SWING * extent / largest * shape.T, size / largest, said(mode))
+    return _Drawn(mesh.nodes.T + reach / largest * shape.T, size / largest, said(mode))
 
 
 def said(mode: ModePair) -> str:

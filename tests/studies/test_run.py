@@ -38,7 +38,8 @@ def fabricated(monkeypatch: pytest.MonkeyPatch, helpers: ModuleType) -> SimpleNa
     monkeypatch.setattr(run, "build_models", build_models)
     monkeypatch.setattr(run, "_compare", lambda models, name, started, clock: run.make_result(
         models, helpers.make_judgement(models), name, started, clock))
-    monkeypatch.setattr("studies.check.fields.write_fields", lambda path, mesh, solid, cases=None: path.write_bytes(b"vtu"))
+    monkeypatch.setattr("studies.check.fields.write_fields",
+                        lambda path, mesh, solid, cases=None: path.write_bytes(b"vtu"))
     return state
 
 
