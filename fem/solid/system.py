@@ -213,8 +213,8 @@ class HeldSystem:
             raise OffGate(
                 f"The equations are not met: residual {residual:.2e} of the load, allowed {allowed:.0e}",
                 f"; correcting it would move the part by {correction:.1e} of its largest displacement, allowed "
-                f"{GAUGE_ALLOWED:.0e}. The part is extremely slender, or the mesh holds a nearly flat element; mesh the "
-                "part again."
+                f"{GAUGE_ALLOWED:.0e}. The part is extremely slender, or the mesh holds a nearly flat element; mesh "
+                "the part again."
             )
         if not gauge <= GAUGE_ALLOWED:
             raise OffGate(

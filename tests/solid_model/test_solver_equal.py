@@ -7,57 +7,18 @@ import pytest
 import scipy.sparse.linalg as spla
 from skfem import Basis, ElementTetP2, ElementVector, LinearForm, MeshTet2, asm, condense
 from skfem.models.elasticity import lame_parameters, linear_elasticity
-from solid_help import box_mesh, box_part, named_mesh, structured_box
+from solid_help import box_part, structured_box
+from solver_help import ALL, BUDGET, SIX, TIP, WALL, B, H, L, bent_mesh, gap, right_hand_sides, solution, straight_mesh
 
 from fem.solid.factor import pardiso_available
-from fem.solid.model import SolidModel, build_model
+from fem.solid.model import build_model
 from fem.solid.solver import Choice
-from fem.solid.system import HeldSystem, Solution
+from fem.solid.system import HeldSystem
 from geometry.budget import Budget
 from geometry.part import BodyLoad, Case, RegionLoad, Support, TemperatureLoad
 from mesher.named_mesh import NamedMesh
 
-BUDGET = Budget(threads=1)
-L, B, H = 100.0, 30.0, 40.0
-ALL = {"x": 0.0, "y": 0.0, "z": 0.0}
-SIX = {**ALL, "rx": 0.0, "ry": 0.0, "rz": 0.0}
-WALL = Support("wall", "arm.start", ALL)
-TIP = RegionLoad("tip", "arm.end", (1000.0, 2000.0, -3000.0))
 BACKENDS = ["lu", pytest.param("pardiso", marks=pytest.mark.skipif(not pardiso_available(), reason="no MKL"))]
-
-
-def straight_mesh(cells: tuple[int, int, int] = (6, 2, 3)) -> NamedMesh:
-    return box_mesh(L, B, H, cells)
-
-
-def bent_mesh(cells: tuple[int, int, int] = (6, 2, 3)) -> NamedMesh:
-    """The box with curved elements: its sides bulge, the middle nodes go with the map."""
-    box = structured_box(L, B, H, cells)
-    x, y, z = box.doflocs
-    wave = 1 + 0.15 * np.sin(np.pi * x / L)
-    return named_mesh(
-        MeshTet2(np.array([x, y * wave, z * wave]), box.t),
-        {"arm.start": lambda p: p[0] < 1e-6, "arm.end": lambda p: p[0] > L - 1e-6,
-         "arm.left": lambda p: p[1] < -B / 2 + 1e-3, "arm.bottom": lambda p: p[2] < -H / 2 + 1e-3},
-    )  # fmt: skip
-
-
-def right_hand_sides(model: SolidModel) -> np.ndarray:
-    return (model.mechanical + model.thermal).reshape(len(model.part.cases), -1).T
-
-
-def solution(model: SolidModel, choice: Choice, backend: str = "auto", budget: Budget = BUDGET) -> Solution:
-    system = HeldSystem(model.K, model.constraints, model.mesh, budget, choice, backend)
-    try:
-        result = system.solve(right_hand_sides(model))
-        assert result.backend.startswith(choice)  # no silent change of the solver
-        return result
-    finally:
-        system.close()
-
-
-def gap(a: np.ndarray, b: np.ndarray) -> float:
-    return float(np.abs(a - b).max() / np.abs(b).max())
 
 
 @pytest.mark.parametrize("make", [straight_mesh, bent_mesh])

@@ -18,7 +18,7 @@ from fem.solid.factor import Cholesky
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run
 from fem.solid.shape import Array
-from fem.solid.solver.cycle import Cycle
+from fem.solid.solver.cycle import Cycle, largest
 from fem.solid.solver.elimination import Elimination
 from fem.solid.solver.smoother import BlockJacobi
 from fem.solid.support import rigid_map
@@ -144,7 +144,7 @@ class AggregateSolver:
             p = z + beta * p
             x += alpha * p
             if k + 1 < STEPS:
-                scale = np.maximum(np.abs(p).max(axis=0), 1e-300)
+                scale = np.maximum(largest(p, self._threads), 1e-300)
                 r -= alpha * scale * self._single.product((p / scale).astype(np.float32), w, self._threads)
         return self._held.reduce(x)
 

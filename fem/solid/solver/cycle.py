@@ -9,8 +9,28 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.solid.block_matrix import SingleBlockMatrix
+from fem.solid.kernels.jit import kernel
+from fem.solid.kernels.parallel import ranges, run
 from fem.solid.shape import Array
 from fem.solid.solver.smoother import BlockJacobi
+
+
+def largest(a: NDArray[Any], threads: int) -> Array:
+    """(k,) largest size in each column of a (n, k)."""
+
+    def part(first: int, last: int) -> Array:
+        out = np.zeros(a.shape[1])
+        _largest(first, last, a, out)
+        return out
+
+    return np.asarray(np.max(run(part, ranges(a.shape[0]), threads), axis=0))
+
+
+@kernel
+def _largest(first, last, a, out):  # type: ignore[no-untyped-def]
+    for i in range(first, last):
+        for c in range(out.size):
+            out[c] = max(out[c], abs(a[i, c]))
 
 
 class Coarse(Protocol):
@@ -49,7 +69,7 @@ class Cycle:
         if columns not in self._buffers:
             self._buffers = {columns: [np.empty(residual.shape, np.float32) for _ in range(4)]}
         r, z, d, w = self._buffers[columns]
-        scale = np.abs(residual).max(axis=0)
+        scale = largest(residual, self._jacobi.threads)
         scale = np.where(scale > 0, scale, 1.0)
         np.divide(residual, scale, out=r, casting="same_kind")
         z[:] = 0

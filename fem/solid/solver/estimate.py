@@ -9,6 +9,8 @@ from geometry.budget import Budget
 _FACTOR_BYTES = 100.0
 """Bytes of a factor in single precision over unknowns^(4/3), the growth of a nested dissection in space (A. George
 1973; Lipton, Rose and Tarjan 1979; from memory). Measured on linear elements, bulky: 85 at 55 488 unknowns."""
+FACTORED = 30_000
+"""Unknowns of the linear level up to which it is factored; above it is solved by aggregates, a twelfth of its size."""
 AT_ONCE = 8
 """Right-hand sides that are iterated together; more are taken in turns."""
 
@@ -19,7 +21,8 @@ def multigrid_memory(K: BlockMatrix, coarse_unknowns: int, columns: int = AT_ONC
     single = 36 * blocks
     inverses = 4 * 36 * n
     vectors = n * columns * (8 * 24 + 4 * 12 + 4 * 24)
-    coarse = 600 * coarse_unknowns + _FACTOR_BYTES * coarse_unknowns ** (4 / 3)
+    factored = coarse_unknowns if coarse_unknowns <= FACTORED else coarse_unknowns / 6
+    coarse = 1200 * coarse_unknowns + _FACTOR_BYTES * factored ** (4 / 3)
     return float(single + inverses + vectors + coarse) / 2**20
 
 

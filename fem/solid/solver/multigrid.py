@@ -19,21 +19,21 @@ from fem.solid.solver.cholesky import CholeskySolver, spring_unknowns
 from fem.solid.solver.conjugate import Goal, MeanRows, conjugate_gradients
 from fem.solid.solver.cycle import Cycle
 from fem.solid.solver.elimination import Elimination
-from fem.solid.solver.estimate import AT_ONCE, refuse_multigrid
+from fem.solid.solver.estimate import AT_ONCE, FACTORED, refuse_multigrid
 from fem.solid.solver.gauge import rounding_of_product
 from fem.solid.solver.smoother import BlockJacobi
 from fem.solid.solver.transfer import Transfer
 from geometry.budget import Budget
 
 DEGREE = 3
-FACTORED = 30_000
-"""Unknowns of the linear level up to which it is factored; above it is solved by aggregates."""
 ENERGY = 1e-6
 """Allowed error in the norm of the energy, as it was two iterations before the last: what remains is about a tenth, and
 displacements are nearer still (1e-9 to 1e-8 of the largest, measured)."""
 RESIDUAL = 5e-7
 """Allowed residual over the load, half of what the held system's gate lets pass. It is mostly of short waves, which
 move little: at the energy's goal it stands at 4e-7 to 3e-6. Of a very slender part rounding alone makes more of it."""
+PATIENCE = 4
+"""Iterations that meet the goal of the energy and not that of the residual, after which rounding is looked at."""
 ROUNDING = 1e-13
 
 
@@ -125,12 +125,14 @@ class MultigridSolver:
             floor = ROUNDING * (start * stiff).sum(axis=0)
             force = np.maximum(force, ROUNDING / RESIDUAL * np.linalg.norm(stiff, axis=0))
 
+        looks = 0
+
         def met(u: Array, r: Array) -> NDArray[np.bool_]:
-            size = np.linalg.norm(self._held.gather(r), axis=0)
-            good = size <= RESIDUAL * force
-            if not good.all():
-                good |= size <= rounding_of_product(self._K, u)
-            return np.asarray(good)
+            nonlocal looks, force
+            looks += 1
+            if looks == PATIENCE:  # is it that rounding does not let it go lower?
+                force = np.maximum(force, rounding_of_product(self._K, u) / RESIDUAL)
+            return np.asarray(np.linalg.norm(self._held.gather(r), axis=0) <= RESIDUAL * force)
 
         goal = Goal(ENERGY, floor, met)
         found = conjugate_gradients(self._product, self._cycle, loads, start, self._rows, goal, self._threads)

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from fem.solid.block_matrix import BlockMatrix, SingleBlockMatrix
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run
+from fem.solid.shape import inverse as inverse_of
 from fem.solid.solver.elimination import Elimination
 
 Single = NDArray[np.float32]
@@ -29,10 +30,7 @@ class BlockJacobi:
     def __init__(self, K: BlockMatrix, held: Elimination, threads: int) -> None:
         self.threads = threads
         D = K.diagonal_blocks()
-        inverse = np.zeros_like(D)
-        plain = np.ones(D.shape[0], dtype=bool)
-        plain[held.special] = False
-        inverse[plain] = np.linalg.inv(D[plain])
+        inverse, _ = inverse_of(D)
         Q = held.basis
         inner = Q.transpose(0, 2, 1) @ D[held.special] @ Q
         unused = ~Q.any(axis=1)
