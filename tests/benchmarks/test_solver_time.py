@@ -98,8 +98,12 @@ def test_a_watched_function_is_charged_for_its_own_time() -> None:
             other = threading.Thread(target=here.inner, args=(0.02,))  # type: ignore[attr-defined]
             other.start()
             other.join()
+        with watch.Watch(stages, {"timed_here:inner": lambda seconds: 7.0}, ["outer"]) as whole:
+            here.outer(0.005)  # type: ignore[attr-defined]
     finally:
         del sys.modules["timed_here"]
+    assert whole.calls == {"outer": 1, "inner": 0, "gone": 0}
+    assert whole.seconds["outer"] > 0.018 and whole.bytes["outer"] == 7.0
     assert here.outer is own  # type: ignore[attr-defined]
     assert found.missing == ["timed_here:nothing"]
     assert found.calls == {"outer": 1, "inner": 1, "gone": 0}

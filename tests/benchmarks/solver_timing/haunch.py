@@ -17,7 +17,7 @@ from geometry.part import Vibration
 from solver_timing import meshes
 from solver_timing.child import Tell
 from solver_timing.measure import Clock, PeakMemory, answer, triad_rate
-from solver_timing.profile import INSIDE, MODES, MOVED, STAGES
+from solver_timing.profile import INSIDE, MODES, MOVED, STAGES, WHOLE
 from solver_timing.shapes import FIRST_CASE, SHAPES
 from solver_timing.watch import Watch
 
@@ -102,7 +102,7 @@ def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, m
         building, model = clocked(lambda: build_model(part, mesh, budget.threads))
     loads = _loads(model)
     first = np.ascontiguousarray(loads[:, [case.name for case in part.cases].index(FIRST_CASE)][:, None])
-    with Watch(INSIDE, MOVED) as inside:
+    with Watch(INSIDE, MOVED, WHOLE) as inside:
         setting_up, system = clocked(lambda: HeldSystem(model.K, model.constraints, mesh, budget, choice))
         in_set_up = dict(inside.seconds)
         solving, solution = clocked(lambda: system.solve(first))

@@ -22,27 +22,28 @@ STAGES: Mapping[str, Sequence[str]] = {
 }
 """Stages of `build_model`."""
 
-_MULTIGRID = "fem.solid.solver.multigrid:MultigridSolver"
-_DIRECT = "fem.solid.solver.cholesky:CholeskySolver"
+_SOLVER = "fem.solid.solver"
 INSIDE: Mapping[str, Sequence[str]] = {
-    "factor": [_DIRECT, "fem.solid.factor:Cholesky"],
-    "back-substitution": [f"{_DIRECT}.solve_bordered", "fem.solid.factor:Cholesky.solve"],
-    "reduction": ["fem.solid.solver.elimination:Elimination", "fem.solid.solver.elimination:Elimination.square"],
+    "factor": [f"{_SOLVER}.cholesky:CholeskySolver"],
+    "back-substitution": [f"{_SOLVER}.cholesky:CholeskySolver.solve_bordered"],
+    "reduction": [f"{_SOLVER}.elimination:Elimination", f"{_SOLVER}.elimination:Elimination.square"],
     "held motions": ["fem.solid.held:free_motions"],
     "product": ["fem.solid.block_matrix:BlockMatrix.product"],
     "smoother's product": ["fem.solid.block_matrix:SingleBlockMatrix.product"],
-    "smoother's step": ["fem.solid.solver.smoother:BlockJacobi.step"],
-    "smoother's set-up": ["fem.solid.solver.smoother:BlockJacobi", "fem.solid.solver.smoother:BlockJacobi.largest"],
+    "smoother's step": [f"{_SOLVER}.smoother:BlockJacobi.step"],
+    "smoother's set-up": [f"{_SOLVER}.smoother:BlockJacobi", f"{_SOLVER}.cycle:Cycle"],
     "single copy": ["fem.solid.block_matrix:BlockMatrix.single"],
-    "linear level": ["fem.solid.solver.transfer:Transfer", "fem.solid.solver.transfer:Transfer.galerkin"],
-    "transfer": ["fem.solid.solver.transfer:Transfer.prolong", "fem.solid.solver.transfer:Transfer.restrict"],
-    "cycle": [f"{_MULTIGRID}._cycle"],
-    "vectors": [f"fem.solid.solver.conjugate:{name}" for name in ("dot", "advance", "move")],
-    "multigrid": [_MULTIGRID],
-    "held system": ["fem.solid.system:HeldSystem"],
+    "linear level's matrix": [f"{_SOLVER}.transfer:Transfer", f"{_SOLVER}.transfer:Transfer.galerkin"],
+    "linear level's set-up": [f"{_SOLVER}.aggregate:AggregateSolver"],
+    "linear level": [f"{_SOLVER}.aggregate:AggregateSolver.solve", f"{_SOLVER}.cholesky:CholeskySolver.solve"],
+    "transfer": [f"{_SOLVER}.transfer:Transfer.prolong", f"{_SOLVER}.transfer:Transfer.restrict"],
+    "cycle": [f"{_SOLVER}.cycle:Cycle.__call__"],
+    "vectors": [*(f"{_SOLVER}.conjugate:{name}" for name in ("dot", "advance", "move")), f"{_SOLVER}.cycle:largest"],
 }
-"""Parts of set-up, solve and natural modes; a part does not count what is named above it. "back-substitution" is the
-direct solver, which with multigrid serves the linear level."""
+"""Parts of set-up and solve; a part does not count what another one takes within it."""
+
+WHOLE = ("factor", "back-substitution", "smoother's set-up", "linear level's set-up", "linear level")
+"""Parts that do count everything within them: a level below has matrices, products and smoothers of its own."""
 
 
 def _product_bytes(matrix: Any, x: Any, out: Any, threads: int | None = None) -> float:

@@ -10,7 +10,7 @@ import importlib
 import sys
 import threading
 import time
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Collection, Mapping, Sequence
 from typing import Any
 
 Bytes = Callable[..., float]
@@ -26,6 +26,8 @@ class Watch:
         that is called from another watched one is taken out of that one's time. Calls from other threads pass.
     moved
         Function -> bytes that a call with these arguments moves at least.
+    whole
+        Stages that count what other watched functions take within them, and the bytes that they move.
 
     Attributes
     ----------
@@ -35,11 +37,17 @@ class Watch:
         Functions that are not there (any more).
     """
 
-    def __init__(self, stages: Mapping[str, Sequence[str]], moved: Mapping[str, Bytes] | None = None) -> None:
+    def __init__(
+        self,
+        stages: Mapping[str, Sequence[str]],
+        moved: Mapping[str, Bytes] | None = None,
+        whole: Collection[str] = (),
+    ) -> None:
         self.seconds = dict.fromkeys(stages, 0.0)
         self.processor = dict.fromkeys(stages, 0.0)
         self.calls = dict.fromkeys(stages, 0)
         self.bytes = dict.fromkeys(stages, 0.0)
+        self._whole, self._within = whole, ""
         self.missing: list[str] = []
         self._inside = [(0.0, 0.0)]
         self._thread = threading.get_ident()
@@ -83,12 +91,18 @@ class Watch:
         def timed(*args: Any, **words: Any) -> Any:
             if threading.get_ident() != self._thread:
                 return work(*args, **words)
+            if self._within:
+                if moved is not None:
+                    self.bytes[self._within] += moved(*args, **words)
+                return work(*args, **words)
+            self._within = stage if stage in self._whole else ""
             self._inside.append((0.0, 0.0))
             wall, processor = time.perf_counter(), time.process_time()
             try:
                 return work(*args, **words)
             finally:
                 wall, processor = time.perf_counter() - wall, time.process_time() - processor
+                self._within = ""
                 inner, outer = self._inside.pop(), self._inside.pop()
                 self._inside.append((outer[0] + wall, outer[1] + processor))
                 self.seconds[stage] += wall - inner[0]
