@@ -16,10 +16,9 @@ from mesher.matching import match_faces
 from mesher.size_field import build_field
 from mesher.sizes import Sizes
 
-
 SLIVER, SPOILT = 0.03, 0.05
-"""Least scaled Jacobian of straight and of curved elements that is let pass without the slow improvement. The gate after
-meshing asks for 0.02."""
+"""Least scaled Jacobian of straight and of curved elements that is let pass without the slow improvement. The gate
+after meshing asks for 0.02."""
 
 
 class WrongKernel(ValueError):

@@ -75,7 +75,7 @@ def _section(file: BinaryIO, name: str, arrays: Mapping[str, NDArray[Any]]) -> N
         kind = {"f": "Float", "i": "Int", "u": "UInt"}[data.dtype.kind] + str(8 * data.itemsize)
         columns = f' NumberOfComponents="{data.shape[1]}"' if data.ndim == 2 else ""
         file.write(f'<DataArray type="{kind}" Name={quoteattr(label)}{columns} format="binary">\n'.encode())
-        content = memoryview(data.astype(data.dtype.newbyteorder("<"), copy=False)).cast("B") if data.size else b""
+        content = data.astype(data.dtype.newbyteorder("<"), copy=False).reshape(-1).view(np.uint8).data
         # VTK wants the length and the data in one run of base64, which must not end in between.
         head = len(content).to_bytes(8, "little")
         spare = -len(head) % 3

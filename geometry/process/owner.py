@@ -60,7 +60,7 @@ class Template:
         with theirs:
             self._process = subprocess.Popen(
                 [sys.executable, "-P", "-m", "geometry.process.template", self.module],
-                stdin=theirs, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL,
+                stdin=theirs.fileno(), stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL,
                 env={**os.environ, **single, "PYTHONPATH": path}, start_new_session=True,
             )
         self._control = ours
@@ -77,7 +77,7 @@ class Template:
         number = next(self._numbers)
         message = json.dumps({"do": "start", "number": number, "job": dict(job)}).encode()
         if len(message) > LONGEST_MESSAGE:
-            raise ValueError(f"a job's order has {len(message)} bytes, at most {LONGEST_MESSAGE}: send the rest as data")
+            raise ValueError(f"a job's order has {len(message)} bytes, at most {LONGEST_MESSAGE}: send it as data")
         data, theirs = socket.socketpair(socket.AF_UNIX, socket.SOCK_STREAM)
         status, told = os.pipe()
         control = None

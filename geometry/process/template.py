@@ -76,12 +76,12 @@ def main(name: str) -> int:
     signal.set_wakeup_fd(wake, warn_on_full_buffer=False)
     jobs = _Jobs()
     while True:
-        ready, _, _ = select.select([control, woken], [], [])
+        ready, _, _ = select.select([control.fileno(), woken], [], [])
         if woken in ready:
             with contextlib.suppress(BlockingIOError):
                 os.read(woken, 4096)
             jobs.reap()
-        if control in ready:
+        if control.fileno() in ready:
             message, handles, _, _ = socket.recv_fds(control, LONGEST_MESSAGE, 2)
             if not message:
                 jobs.end()

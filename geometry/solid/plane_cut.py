@@ -1,7 +1,7 @@
 """The curves in which a plane across the member cuts the faces of a solid, and the integrals over the cut.
 
-Each face is cut by itself: where its edges pass the plane, and between two such points along the face, by Newton's method
-at Gauss points. Green's theorem turns the integrals over the cut into ones along these curves. That is exact for
+Each face is cut by itself: where its edges pass the plane, and between two such points along the face, by Newton's
+method at Gauss points. Green's theorem turns the integrals over the cut into ones along these curves. That is exact for
 straight ones and good to rounding for arcs, and takes a tenth of the kernel's own intersection of surfaces.
 """
 

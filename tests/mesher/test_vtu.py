@@ -30,7 +30,8 @@ def test_another_reader_reads_the_same(tmp_path: Path, rod_mesh: NamedMesh) -> N
     support = pytest.importorskip("vtkmodules.util.numpy_support")
     path = tmp_path / "rod.vtu"
     rng = np.random.default_rng(1)
-    fields = {'a < b & "c" stress': rng.random((rod_mesh.nodes.shape[1], 6)), "plain": rng.random(rod_mesh.nodes.shape[1])}
+    count = rod_mesh.nodes.shape[1]
+    fields = {'a < b & "c" stress': rng.random((count, 6)), "plain": rng.random(count)}
     write_vtu(path, rod_mesh, fields)
     reader = xml.vtkXMLUnstructuredGridReader()
     reader.SetFileName(str(path))

@@ -136,7 +136,8 @@ def test_edge_radius_along_a_tapered_i_and_its_patch() -> None:
 
 
 SHAPES = [
-    ("I", {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0}, {"depth": 32.0, "width": 30.0}),
+    ("I", {"depth": 60.0, "width": 46.0, "web": 6.0, "flange": 8.0, "root_radius": 6.0},
+     {"depth": 32.0, "width": 30.0}),
     ("tube", {"diameter": 40.0, "wall": 4.0}, {"diameter": 30.0}),
     ("box", {"depth": 60.0, "width": 40.0, "wall": 4.0, "corner_radius": 8.0}, {"depth": 45.0}),
     ("round", {"diameter": 40.0}, {"diameter": 25.0}),
