@@ -210,6 +210,26 @@ def test_a_missed_mode_is_told(monkeypatch: pytest.MonkeyPatch) -> None:
         vibration(*slender([WALL]), modes=3)
 
 
+def test_where_nothing_is_counted_a_second_search_finds_what_was_missed(monkeypatch: pytest.MonkeyPatch) -> None:
+    calls = []
+
+    def first_without_the_second(pencil: Pencil, start: Array, tolerance: Array, *rest: Any) -> Pairs:
+        calls.append(start.shape[1])
+        if len(calls) > 1:
+            return extreme_pairs(pencil, start, tolerance, *rest)
+        found = extreme_pairs(pencil, start, np.r_[tolerance[:1], tolerance], *rest)
+        kept = np.delete(np.arange(found.mu.size), 1)
+        return Pairs(found.mu[kept], found.x[:, kept], found.residual[kept], found.rounds)
+
+    monkeypatch.setattr(module, "extreme_pairs", first_without_the_second)
+    monkeypatch.setattr(module, "too_large", lambda motions: "nothing counted")
+    result = vibration(*slender([WALL]), modes=3)
+    assert frequencies(result)[1] == pytest.approx(25.0655, rel=5e-3)
+    assert len(calls) == 2  # the second search itself goes by another name
+    note = next(c.note for c in result.checks if "missed" in c.name)
+    assert note == "nothing counted; a second search from other vectors found none that was missed"
+
+
 def test_modes_that_do_not_converge_are_refused(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(module, "extreme_pairs", partial(extreme_pairs, rounds=1))
     with pytest.raises(SolveError, match="do not converge"):

@@ -26,6 +26,9 @@ Operator = Callable[[Array], Array]
 
 ROUNDS = 120
 LEAST_ROOM = 24
+ROUNDING = 1e-10
+SEARCH_ALLOWED, SEARCH_GAP = 0.1, 1e-3
+"""Residual to which a second search goes, and what makes two eigenvalues different ones."""
 _ALIKE = 1e-2
 _INDEPENDENT = 1e-12
 """Least part (squared, in the norm of A) of a new direction that may lie outside the space."""
@@ -79,6 +82,7 @@ def extreme_pairs(
     choose: Callable[[Array, int], NDArray[np.int64]] = largest,
     rounds: int = ROUNDS,
     enough: Callable[[Array, int], bool] = lambda mu, rounds: False,
+    known: Pairs | None = None,
 ) -> Pairs:
     """The pairs with the largest \\|mu\\|.
 
@@ -95,39 +99,68 @@ def extreme_pairs(
         Which Ritz values are wanted.
     enough
         Told the Ritz values that are wanted and the round, whether to give up.
+    known
+        Pairs among the start whose residuals need not be found again.
     """
     wanted = tolerance.size
     room = max(min(room, max(5 * wanted, LEAST_ROOM)), 4 * wanted, start.shape[1] + wanted)
     keep = room - 3 * wanted
     space, rng = _Space(pencil, start.shape[0], room), np.random.default_rng(0)
     space.add(start)
-    residual, last = np.full(wanted, np.inf), np.zeros((0, 0))
-    mu = np.zeros(0)
-    x = np.zeros((start.shape[0], 0))
+    settled = known or Pairs(np.zeros(0), start[:, :0], np.zeros(0), 0)
+    last = np.zeros((0, 0))
     for done in range(1, rounds + 1):
         values, S = space.ritz()
         chosen = choose(values, wanted)
         mu = values[chosen]
         x, Ax, Bx = (V @ S[:, chosen] for V in (space.V, space.AV, space.BV))
-        left = Bx - Ax * mu
+        residual = _already(mu, tolerance, settled)
+        open_ = ~(residual < np.inf)
+        left = Bx[:, open_] - Ax[:, open_] * mu[open_]
         new = pencil.precondition(left)
         size = np.sqrt(np.maximum(np.einsum("fk,fk->k", left, new), 0.0))
-        residual = size / np.where(mu != 0, np.abs(mu), 1e-300)
-        open_ = residual > tolerance[: chosen.size]
-        if (chosen.size == wanted and not open_.any()) or enough(mu, done):
-            return Pairs(mu, x, residual, done)
+        residual[open_] = size / np.where(mu[open_] != 0, np.abs(mu[open_]), 1e-300)
+        settled = Pairs(mu, x, residual, done)
+        going = residual[open_] > tolerance[: chosen.size][open_]
+        if (chosen.size == wanted and not going.any()) or enough(mu, done):
+            break
         if space.size + wanted > room:
             kept = np.union1d(largest(values, keep), chosen)
             space.rotate(_with(S[:, kept], last))
             last = np.eye(space.size, kept.size)[:, np.searchsorted(kept, chosen)]
         else:
             last = S[:, chosen]
-        new = new[:, open_] / np.where(size[open_] > 0, size[open_], 1.0)
+        new = new[:, going] / np.where(size[going] > 0, size[going], 1.0)
         if chosen.size < wanted:  # B takes the start to fewer directions than are wanted
             new = np.hstack([new, pencil.precondition(rng.standard_normal((x.shape[0], wanted - chosen.size)))])
         if not space.add(new):
             break
-    return Pairs(mu, x, residual, done)
+    return settled
+
+
+def _already(mu: Array, tolerance: Array, settled: Pairs) -> Array:
+    """(k,) residuals of values that were found to be settled and stand where they stood; infinite of the others."""
+    out = np.full(mu.size, np.inf)
+    free = np.ones(settled.mu.size, dtype=bool)
+    near = settled.residual**2 + ROUNDING  # what a settled value may still move by
+    for i, value in enumerate(mu):
+        same = free & (np.abs(settled.mu - value) <= near * abs(value)) & (settled.residual <= tolerance[i])
+        if same.any():
+            j = int(same.argmax())
+            out[i], free[j] = settled.residual[j], False
+    return out
+
+
+def second_search(pencil: Pencil, found: Pairs, tolerance: Array, fresh: Array, room: int) -> Pairs:
+    """Look on from pairs that are found and other vectors `fresh` (f, 2 or more), until two more pairs show what these
+    lead to: a pair that was missed comes in before those that were found."""
+    more = np.r_[tolerance, np.full(2, SEARCH_ALLOWED)]
+    return extreme_pairs(pencil, np.hstack([found.x, fresh]), more, room, known=found)
+
+
+def lost(found: Pairs, again: Pairs, count: int) -> int:
+    """How many of the first pairs are others after a second search."""
+    return int((np.abs(again.mu[:count]) > (1.0 + SEARCH_GAP) * np.abs(found.mu[:count])).sum())
 
 
 def _with(S: Array, last: Array) -> Array:

@@ -14,7 +14,7 @@ from fem.solid.eigen.count import APART, LowRank, negative_count, separated, too
 from fem.solid.eigen.describe import section_shapes, section_shares, shape_sections, vibration_kind
 from fem.solid.eigen.eigenmodes import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes, NotSettled
 from fem.solid.eigen.motions import Motions, Operator, free_motions, free_part_constraints, held_motions
-from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, space_room
+from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, lost, second_search, space_room
 from fem.solid.eigen.remote import remote_mass_rows
 from fem.solid.eigen.rigid import orthonormal, rigid_motions
 from fem.solid.eigen.start import start_unknowns
@@ -125,8 +125,7 @@ def _solve(
     note, missing = reason, 0
     for attempt in range(3):
         guards = min(guards, available - modes)
-        fields = start_unknowns(motions.elimination, model.mesh.nodes, modes + guards + 2, budget.seed + attempt)
-        fresh = motions.precondition(apply(fields))
+        fresh = motions.precondition(apply(_fields(model, motions, modes + guards + 2, budget.seed + attempt)))
         tolerance = np.r_[np.full(modes, allowed), np.full(guards, GUARD_ALLOWED)]
         found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance, room)
         if not (found.residual.size == modes + guards and (found.residual <= tolerance).all()):
@@ -138,7 +137,14 @@ def _solve(
         squares = 1.0 / found.mu
         split = separated(squares, modes)
         if reason:
-            break
+            fresh = motions.precondition(apply(_fields(model, motions, 2 * GUARDS, budget.seed + 100 + attempt)))
+            again = second_search(pencil, found, tolerance, fresh, room)
+            missing = lost(found, again, modes)
+            note = f"{reason}; a second search from other vectors found {'one' if missing else 'none'} that was missed"
+            if not missing:
+                break
+            start = again.x
+            continue
         if split is None and guards and attempt < 2:
             guards, start = guards + 4, found.x
             continue
@@ -148,11 +154,11 @@ def _solve(
         except SolveError as error:
             missing, note = 0, f"not counted: {error}"
             break
-        note = f"{above} at or below {np.sqrt(shift) / 2 / np.pi:.5g} Hz"
+        note = f"{above} at or below {np.sqrt(shift) / 2 / np.pi:.5g} Hz by the inertia of K - omega^2 M"
         if missing <= 0:
             break
         guards, start = guards + missing + 2, found.x
-    name = "natural frequencies missed, by the inertia of K - omega^2 M"
+    name = "natural frequencies missed"
     check = Check(name, float(missing), 0.0, missing == 0, note)
     if missing:
         raise SolveError(
@@ -160,6 +166,10 @@ def _solve(
             "part again."
         )
     return Pairs(found.mu[:modes], found.x[:, :modes], found.residual[:modes], found.rounds), check
+
+
+def _fields(model: SolidModel, motions: Motions, count: int, seed: int) -> Array:
+    return start_unknowns(motions.elimination, model.mesh.nodes, count, seed)
 
 
 def _count(motions: Motions, K: BlockMatrix, mass: _Mass, shift: float, budget: Budget) -> int:
