@@ -216,3 +216,15 @@ def test_strips_on_a_round_face_use_its_own_normals_and_area() -> None:
         errors.append(abs(solid.moment[1] / 100.0 - 2 * r / np.pi))
     assert errors[0] < 1e-3 * r
     assert errors[1] < errors[0] / 8
+
+
+def test_denting_of_a_strip_is_that_of_its_own_stretch() -> None:
+    # the light one beyond the heavy one, where that bends nothing
+    light = StripLoad("t", "arm.top", (85.0,), 10.0, (0.0, 0.0, -100.0))
+    heavy = StripLoad("h", "arm.top", (40.0,), 10.0, (0.0, 0.0, -10000.0))
+    cases = [Case("light", {"t": 1.0}), Case("both", {"t": 1.0, "h": 1.0})]
+    part = box_part(100.0, 10.0, 20.0, [WALL], [light, heavy], cases)
+    alone, along, other = solve_solid(part, box_mesh(100.0, 10.0, 20.0, (20, 2, 4)), BUDGET).denting
+    assert (alone.case, along.case, other.case) == ("light", "both", "both")
+    assert along.value == pytest.approx(alone.value, rel=0.1)
+    assert other.value > 20 * along.value
