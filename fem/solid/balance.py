@@ -49,11 +49,17 @@ def strain_energies(
     return energy, expansion * trace
 
 
+def _moment(x: Array, forces: Array) -> Array:
+    """(3,) sum of x cross forces, both (n, 3)."""
+    M = x.T @ forces
+    return np.array([M[1, 2] - M[2, 1], M[2, 0] - M[0, 2], M[0, 1] - M[1, 0]])
+
+
 def load_checks(model: SolidModel) -> Iterator[Check]:
     """Resultant force and moment of each load vector against the declared one."""
     x = model.mesh.nodes.T
     for load, vector in zip(model.loads.values(), model.load_vectors, strict=True):
-        force, moment = vector.sum(axis=0), np.cross(x, vector).sum(axis=0)
+        force, moment = vector.sum(axis=0), _moment(x, vector)
         about: Array | None
         if load.force_per_mass.any():
             remote = [p for p in model.part.loads if isinstance(p, RemotePoint)]
@@ -83,11 +89,14 @@ def balance_checks(
     for k, case in enumerate(model.part.cases):
         applied = model.mechanical[k]
         push = np.abs(applied).sum() + np.abs(reactions.nodal[k]).sum() + np.abs(model.thermal[k]).sum()
-        stiff = np.abs(u[k].T).ravel() * diagonal if not applied.any() else np.zeros(1)
-        # without loads a motion may be rigid: the forces are then rounding of stiffness times motion
-        scale = max(float(push), 1e-8 * float(stiff.sum()), 1e-300)
+        stiff, rigid = 0.0, 0.0
+        if not applied.any():
+            # without loads a motion may be rigid: the forces are then rounding of stiffness times motion
+            motion = np.abs(u[k].T).ravel()
+            stiff, rigid = float(motion @ diagonal), float(motion**2 @ diagonal)
+        scale = max(float(push), 1e-8 * stiff, 1e-300)
         force = applied.sum(axis=0) + sum((f[k] for f in reactions.force.values()), np.zeros(3))
-        moment = np.cross(x, applied).sum(axis=0)
+        moment = _moment(x, applied)
         for name, m in reactions.moment.items():
             arm = reactions.centre[name] - model.mesh.nodes.mean(axis=1)
             moment = moment + m[k] + np.cross(arm, reactions.force[name][k])
@@ -106,7 +115,7 @@ def balance_checks(
             abs(work),
             abs(thermal[k]),
             abs(float((model.thermal[k] * u[k].T).sum())),
-            1e-6 * float((stiff * np.abs(u[k].T).ravel()).sum()),
+            1e-6 * rigid,
             1e-300,
         )
         # work inherits the rounding of the displacements, which the known field measures (slender parts)
