@@ -119,7 +119,7 @@ class Bench:
             self.say(f"{shape}, {size}: {NAMES.get(task, 'scikit-fem')} {word} {_told(done, word)}")
 
     def mesh_file(self, shape: str, size: str) -> Path:
-        return self.folder / f"{shape.replace(' ', '-')}-{size}.npz"
+        return self.folder / SHAPES[shape].file(size)
 
     def keep(self, row: dict[str, Any]) -> None:
         """Add the row as it is now; of several lines for one row the last one counts."""

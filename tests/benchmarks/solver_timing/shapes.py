@@ -7,6 +7,7 @@ mesh of the same box instead.
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
@@ -110,6 +111,11 @@ class Shape:
     def sizes(self) -> tuple[str, ...]:
         """Sizes that this shape has, in rising order."""
         return tuple(size for size in SIZES if size in self.cells or size in self.factors)
+
+    def file(self, size: str) -> str:
+        """Name of the file of one mesh: another one when the spec or the size has changed."""
+        told = f"{self.spec} {self.cells.get(size)} {self.factors.get(size)}"
+        return f"{self.name.replace(' ', '-')}-{size}-{hashlib.sha256(told.encode()).hexdigest()[:8]}.npz"
 
 
 _BOX = '{ shape = "rectangle", depth = "100 mm", width = "100 mm" }'
