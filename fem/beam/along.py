@@ -157,11 +157,16 @@ class Sections:
             self._integrals[at] = outline_integrals(self.outline(x))
         return self._integrals[at]
 
+    def net_outlines(self, x: float) -> tuple[Outline, ...]:
+        """Pieces that the cuts near `x` leave of the outline there."""
+        near = tuple(c for e in self.effects if e.start < x < e.end for c in e.cuts)
+        return net_section(self.member, x, cuts=near, gross=self.outline(x))
+
     def both_integrals(self, x: float) -> tuple[OutlineIntegrals, OutlineIntegrals]:
         """Exact integrals without and with the cuts taken off."""
         key = self.net_key(x)
         if key not in self._net:
-            self._net[key] = outline_integrals(net_section(self.member, x))
+            self._net[key] = outline_integrals(self.net_outlines(x))
         return self.integrals(x), self._net[key]
 
     def net_key(self, x: float) -> Hashable:

@@ -12,7 +12,7 @@ Each cause is computed by solving the beam once more with the assumption changed
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -20,11 +20,16 @@ from numpy.typing import NDArray
 
 from fem.beam.figures import LineValues
 from fem.beam.mesh import BeamMesh
+from fem.beam.modes import beam_vibration, buckling_studies
 from fem.beam.result import Cause
+from fem.figure import Quantity
+from fem.mode import Mode
 from geometry.part import Part, RegionLoad, RemotePoint
 from geometry.problem import SolveError
 
 Array = NDArray[np.float64]
+ALIKE = 0.8
+"""Least correlation of two shapes that are taken for the same mode."""
 LEAST = 1e-3
 """Smallest difference worth naming, as a share of the largest value of that quantity in the case."""
 
@@ -46,6 +51,42 @@ def find_causes(mesh: BeamMesh, base: LineValues, solve: Solver) -> tuple[Cause,
             found.append(Cause(mesh.part.cases[case].name, key.place, key.quantity, key.component, text, share * by,
                                open_share * abs(by)))
     return tuple(found)
+
+
+def find_mode_causes(mesh: BeamMesh, vibration: Sequence[Mode], buckling: Sequence[Mode]) -> tuple[Cause, ...]:
+    """Causes of honest differences of frequencies (Hz) and factors: case of the study, component ``mode 1`` by the
+    beam's own order in it."""
+    found: list[Cause] = []
+    for text, changed, share, open_share in _variants(mesh):
+        studies: list[tuple[str, Quantity, Sequence[Mode], Sequence[Mode]]] = []
+        try:
+            if vibration:
+                studies.append(("", "natural_frequency", vibration, beam_vibration(changed.part, changed)))
+            if buckling:
+                other = buckling_studies(changed.part, changed)[0]
+                studies += [(case, "buckling_factor", [m for m in buckling if m.case == case],
+                             [m for m in other if m.case == case]) for case in dict.fromkeys(m.case for m in buckling)]
+        except SolveError:
+            continue  # as in `find_causes`
+        for case, quantity, ours, theirs in studies:
+            for number, (mode, by) in enumerate(zip(ours, _changes(mesh, ours, theirs), strict=True), 1):
+                if abs(by) > LEAST * abs(mode.value):
+                    found.append(Cause(case, "", quantity, f"mode {number}", text, share * by, open_share * abs(by)))
+    return tuple(found)
+
+
+def _changes(mesh: BeamMesh, ours: Sequence[Mode], theirs: Sequence[Mode]) -> list[float]:
+    """How far each value moves to that of the most similar shape with a value of its sign; 0 without one."""
+    size = float(np.ptp(mesh.sections.solved[0].extremes, axis=0).max()) / np.sqrt(12.0)
+    a, b = (np.array([np.hstack([m.displacement, size * m.rotation]).ravel() for m in modes])
+            for modes in (ours, theirs))
+    if not len(b):
+        return [0.0] * len(ours)
+    alike = (a @ b.T) ** 2 / np.outer((a**2).sum(axis=1), (b**2).sum(axis=1))
+    alike *= np.array([[m.value * n.value > 0.0 for n in theirs] for m in ours])
+    best = alike.argmax(axis=1)
+    return [theirs[j].value - m.value if alike[i, j] > ALIKE else 0.0
+            for i, (m, j) in enumerate(zip(ours, best, strict=True))]
 
 
 def _scales(line: LineValues) -> Array:

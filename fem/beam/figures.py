@@ -10,12 +10,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.beam.actions import Actions
+from fem.beam.element import GAUSS
 from fem.beam.equations import Row, States
 from fem.beam.law import LineProperties, section_flexibility, torque_row
 from fem.beam.mesh import BeamMesh
 from fem.beam.outlines import dims_at
 from fem.beam.result import Diagram
-from fem.beam.section import OutlineIntegrals, outline_integrals
+from fem.beam.section import OutlineIntegrals
 from fem.figure import Figure, FigureKey, Quantity, station_place
 
 Array = NDArray[np.float64]
@@ -250,11 +251,12 @@ def _flange_fillets(mesh: BeamMesh, at: float, wide: OutlineIntegrals, narrow: O
 
 
 def _mass(mesh: BeamMesh) -> Iterator[Figure]:
-    t, w = np.polynomial.legendre.leggauss(4)
     h = np.diff(mesh.x)
-    x = (mesh.x[:-1, None] + h[:, None] * 0.5 * (t + 1.0)).ravel()
+    # the points at which the stiffness is taken: the net sections there are known
+    halves = np.stack([mesh.x[:-1], 0.5 * (mesh.x[:-1] + mesh.x[1:])], axis=1)
+    x = (halves[..., None] + 0.5 * h[:, None, None] * GAUSS).ravel()
     p = mesh.sections.net(x)
-    dv = p.area * (h[:, None] * 0.5 * w).ravel()
+    dv = p.area * np.repeat(0.25 * h, 4)
     moment = np.array([dv @ x, dv @ p.yc, dv @ p.zc])
     whole = float(dv.sum())
     for volume, point in fillet_volumes(mesh):
@@ -268,12 +270,10 @@ def _mass(mesh: BeamMesh) -> Iterator[Figure]:
 
 def properties_table(mesh: BeamMesh) -> Array:
     """(21, 7) x, A, yc, zc, Iyy, Izz, Iyz of the net section at the stations."""
-    from fem.beam.outlines import net_section
-
     rows = []
     for x in station_values(mesh):
         at = min(max(float(x), 1e-9 * mesh.length), (1.0 - 1e-9) * mesh.length)
-        o = outline_integrals(net_section(mesh.member, at))
+        o = mesh.sections.both_integrals(at)[1]
         rows.append([x, o.area, o.yc, o.zc, o.Iyy, o.Izz, o.Iyz])
     return np.array(rows)
 

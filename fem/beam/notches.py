@@ -17,7 +17,7 @@ from fem.beam.notch_factors import FLAT_BAND, ROUND_TENSION_BAND, OutOfRange
 from fem.beam.regions import EndFace, Face
 from fem.beam.section import OutlineIntegrals
 from fem.figure import Figure, FigureKey
-from geometry.part import BearingLoad, Cut, Pressure, RegionLoad, RemotePoint
+from geometry.part import BearingLoad, Cut, Pressure, RegionLoad, RemotePoint, StripLoad
 
 CLEAR = 3.0
 """Other features, supports and loads must be this many diameters away (common practice, no source)."""
@@ -34,14 +34,19 @@ def notch_figures(s: Solved) -> tuple[list[Figure], list[str]]:
     """Figures of all cuts and filleted shoulders in all cases, and the notes on those left out."""
     figures: list[Figure] = []
     notes: list[str] = []
-    for place, x, sides, rule in _features(s):
+    for place, x, sides, zone, rule in _features(s):
         try:
             values, note = rule()
         except OutOfRange as reason:
             notes.append(f"{place}: no published stress concentration factor applies: {reason}")
             continue
-        forces = forces_at(s, x)
+        forces, near = forces_at(s, x), _loaded_near(s, *zone)
+        if near:
+            notes.append(f"{place}: no published stress concentration factor applies in {len(near)} of the cases of a "
+                         f"travelling load, which stands within {zone[2]:.4g} mm")
         for k, case in enumerate(s.mesh.part.cases):
+            if k in near:
+                continue
             for side in sides:
                 value, band = values(side, forces[:, k])
                 figures.append(Figure(FigureKey(case.name, place, "notch_stress", f"xx@{side}", "member"), value, "MPa",
@@ -49,19 +54,33 @@ def notch_figures(s: Solved) -> tuple[list[Figure], list[str]]:
     return figures, notes
 
 
-def _features(s: Solved) -> Iterator[tuple[str, float, tuple[str, ...], Callable[[], tuple[Values, str]]]]:
+Zone = tuple[float, float, float]
+"""Start and end of a feature and how far other things must be away, mm."""
+
+
+def _loaded_near(s: Solved, start: float, end: float, distance: float) -> set[int]:
+    """Cases in which a strip of a travelling load stands within `distance` of a feature."""
+    strips = {v.name for v in s.mesh.part.loads if isinstance(v, StripLoad) and any(
+        max(c - 0.5 * v.length - end, start - c - 0.5 * v.length) < distance for c in v.centres)}
+    return {k for k, case in enumerate(s.mesh.part.cases) if any(case.factors.get(name) for name in strips)}
+
+
+def _features(s: Solved) -> Iterator[tuple[str, float, tuple[str, ...], Zone, Callable[[], tuple[Values, str]]]]:
     member = s.mesh.member
     for cut in member.cuts:
         sides: tuple[str, ...] = ("upper", "lower")
         if cut.kind == "notch":
             sides = ("lower",) if cut.edge in ("top", "right") else ("upper",)
-        yield f"{member.name}.{cut.name}", cut.at, sides, lambda c=cut: _cut_rule(s, c)  # type: ignore[misc]
+        zone = (*extent(cut), CLEAR * cut.length)
+        yield f"{member.name}.{cut.name}", cut.at, sides, zone, lambda c=cut: _cut_rule(s, c)  # type: ignore[misc]
     for before, after in zip(member.stations, member.stations[1:], strict=False):
         if before.at == after.at and after.shoulder_fillet > 0.0:
             at, r = after.at, after.shoulder_fillet
             way = _narrow_side(s, at)
             end = s.mesh.node(_nearest(s, at + way * r))
-            yield (f"{member.name}.step@{at:.6g}", float(s.mesh.x[end]), ("upper", "lower"),
+            e = s.mesh.sections.integrals(at + way * 1e-6 * s.mesh.length).extremes
+            zone = (at, at, float(e[0, 1] - e[1, 1]))
+            yield (f"{member.name}.step@{at:.6g}", float(s.mesh.x[end]), ("upper", "lower"), zone,
                    lambda a=at, f=r, w=way: _shoulder_rule(s, a, f, w))  # type: ignore[misc]
 
 

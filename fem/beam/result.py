@@ -21,7 +21,8 @@ class Cause:
     Attributes
     ----------
     case, place, quantity, component
-        Which figures it touches; an empty text matches any.
+        Which figures it touches; an empty text matches any. A natural frequency or buckling factor is named ``mode 1``
+        and so on by the order of the beam's own list (of its case).
     text
         The reason, one sentence.
     difference

@@ -8,7 +8,7 @@ import numpy as np
 
 from fem.beam.along import SectionSolver
 from fem.beam.cases import solve_cases
-from fem.beam.causes import find_causes
+from fem.beam.causes import find_causes, find_mode_causes
 from fem.beam.figures import all_figures, diagram, energies, line_values, properties_table
 from fem.beam.mesh import BeamMesh
 from fem.beam.modes import beam_vibration, buckling_studies
@@ -56,6 +56,7 @@ def solve_beam(
     solve_done = time.perf_counter()
     vibration, buckling, why = _modes(part, mesh)
     notes += why
+    causes += find_mode_causes(mesh, vibration, buckling)
     depth = max(float(np.ptp(s.extremes[:2, 1])) for s in mesh.sections.solved)
     mass = next(f.value for f in figures if f.key.quantity == "mass")
     return BeamResult(

@@ -8,8 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.beam.outlines import net_section
-from fem.beam.section import OutlineIntegrals, outline_integrals
+from fem.beam.section import OutlineIntegrals
 from fem.figure import Figure, FigureKey, station_place
 
 if TYPE_CHECKING:
@@ -37,7 +36,7 @@ def nominal_stresses(s: Solved) -> Iterator[Figure]:
         at = min(max(float(x), 1e-9 * mesh.length), (1.0 - 1e-9) * mesh.length)
         gross = mesh.sections.integrals(at)
         cut = any(e.start < at < e.end for e in mesh.sections.effects)
-        used = outline_integrals(net_section(mesh.member, at)) if cut else gross
+        used = mesh.sections.both_integrals(at)[1] if cut else gross
         f = forces_at(s, float(x))
         bimoment = np.zeros((4, f.shape[1]))
         if mesh.sections.piece(at).open_thin:

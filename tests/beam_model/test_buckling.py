@@ -186,6 +186,26 @@ def test_force_at_the_end_of_a_rigid_arm(part, solve, factors):
     assert got == pytest.approx(want, rel=1e-3)
 
 
+@pytest.mark.parametrize("remote", [False, True])
+def test_column_pushed_through_a_rigid_pad(factors, remote):
+    """A cantilever of 250 with a pad of 100 that stays straight, pushed at its middle: kL tan kL = 250/50.
+
+    (A column with a rigid end of length d: k d tan kL = 1; from equilibrium.) A remote point in the pad's middle is the
+    same load. An average pad bends: less than a column of 300 pushed at its end.
+    """
+    thin = Section("rectangle", {"depth": 10.0, "width": 20.0})
+    pad = (Patch("pad", "top", 250.0, 350.0),)
+    got = {}
+    for coupling in ("rigid", "average"):
+        load = RemotePoint("n", "arm.pad", (300.0, 0.0, 5.0), coupling, (-1.0, 0.0, 0.0)) if remote else \
+            RegionLoad("n", "arm.pad", (-1.0, 0.0, 0.0), coupling=coupling)
+        got[coupling] = factors(thin, [load], (WALL,), 600.0, patches=pad)[0].value
+    EI = E * 20 * 10**3 / 12
+    k = brentq(lambda v: v * math.tan(v) - 5.0, 0.1, 1.57) / 250.0
+    assert got["rigid"] == pytest.approx(EI * k * k, rel=1e-5)
+    assert 0.99 < got["average"] / (EI * (math.pi / 600.0) ** 2) < 1.0
+
+
 def test_built_up_beam_in_uniform_bending(part, solve, factors):
     """Doubly symmetric I with warping: M = pi/L sqrt(E Iz G J (1 + pi^2 E Iw/(G J L^2))) (Timoshenko & Gere 6.2)."""
     long = 4000.0

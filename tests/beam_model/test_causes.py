@@ -53,3 +53,29 @@ def test_a_plain_cantilever_has_none(part, solve):
     """Nothing but bending: nothing is predicted."""
     r = solve(part(loads=[RegionLoad("tip", "arm.end", force=(0.0, 0.0, -1000.0))]))
     assert not r.result.causes
+
+
+def test_clamped_warping_and_modes(part, solve):
+    """A blade clamped at one end: twist is stiffer there, so that its torsion and its lateral buckling come later.
+
+    The clamp holds the twist's warping over about sqrt(E Iw/(G J)) = d (Vlasov: the bar is that much shorter in
+    torsion): f goes with 1/(L - d), Iw = b^3 t^3/144 of a thin rectangle. The modes in bending stay as they are.
+    """
+    from dataclasses import replace
+
+    from geometry.part import Buckling, Vibration
+
+    blade = Section("rectangle", {"depth": 40.0, "width": 5.0})
+    tip = RegionLoad("f", "arm.end", force=(0.0, 0.0, -100.0))
+    one = replace(part(blade, 400.0, [tip]), vibration=Vibration(5), buckling=(Buckling("c", (), 2),))
+    r = solve(one).result
+    frequency = {c.component: c for c in r.causes if c.quantity == "natural_frequency"}
+    number = next(k for k, m in enumerate(r.vibration, 1) if m.kind == "torsion")
+    assert set(frequency) == {f"mode {number}"}
+    J = 40.0 * 5.0**3 / 3 * (1 - 0.63 * 5 / 40)
+    d = (2.6 * 40.0**3 * 5.0**3 / 144 / J) ** 0.5
+    cause = frequency[f"mode {number}"]
+    assert cause.difference / r.vibration[number - 1].value == pytest.approx(d / (400.0 - d), rel=0.1)
+    factor = [c for c in r.causes if c.quantity == "buckling_factor"]
+    assert [c.case for c in factor] == ["c", "c"]
+    assert all(c.difference * m.value > 0.0 for c, m in zip(factor, r.buckling, strict=True))

@@ -109,6 +109,15 @@ def test_nothing_left_under_a_strip(part, solve):
     assert r("b", "reaction_force", "z", "c@530") == pytest.approx(P * 535.0 / L, rel=1e-6)
 
 
+def test_no_notch_factor_beside_a_strip(part, solve):
+    """A small hole in a flat bar: its factor is not given in the cases in which the load stands near it."""
+    hole = Cut("h", "h", "hole", "y", "all", 800.0, 0.0, 12.0, 12.0)
+    r = solve(crossing(part, [700.0, 790.0, 840.0, 1200.0], cuts=(hole,)), plain=True)
+    given = {key[0] for key in r.values if key[1:3] == ("arm.h", "notch_stress")}
+    assert given == {"c@700", "c@1200"}
+    assert any("2 of the cases" in note for note in r.result.notes)
+
+
 def test_many_positions_cost_little(part, solve):
     """Fifty positions of two axles against fifty plain cases: a few milliseconds a position."""
     spread = [100.0 + 30.0 * k for k in range(50)]

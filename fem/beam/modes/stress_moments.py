@@ -12,7 +12,6 @@ from fem.beam.along import EXACT_POINTS, Sections, chebyshev_points, fitted
 from fem.beam.faces import curve
 from fem.beam.interpolate import loops
 from fem.beam.law import LineProperties
-from fem.beam.outlines import net_section
 from fem.beam.section import outline_integrals
 from geometry.outline import Arc, Outline
 
@@ -54,7 +53,7 @@ def third_moments_along(sections: Sections, x: Array) -> Array:
     for k in np.flatnonzero([any(e.start < v < e.end for e in sections.effects) for v in x]):
         key = sections.net_key(float(x[k]))
         if key not in known:
-            known[key] = third_moments(net_section(sections.member, float(x[k])))
+            known[key] = third_moments(sections.net_outlines(float(x[k])))
         out[k] = known[key]
     return out
 

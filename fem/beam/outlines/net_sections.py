@@ -22,18 +22,20 @@ through all that lies in its way: a tool through the web of an I meets nothing e
 
 
 def net_section(
-    member: Member, x: float, side: Side = "after", cuts: tuple[Cut, ...] | None = None
+    member: Member, x: float, side: Side = "after", cuts: tuple[Cut, ...] | None = None, gross: Outline | None = None
 ) -> tuple[Outline, ...]:
     """Pieces of the section that the cuts leave at `x`, in member axes from the declared line, mm.
 
     Exact for lines and arcs. Pieces are for integrals over the whole section (they may touch where a cut goes
     through one wall only); torsion and shear of a section in pieces are another question. Radii on the rims
-    of cuts are not taken off. `cuts` limits which cuts are looked at (all by default).
+    of cuts are not taken off. `cuts` limits which cuts are looked at (all by default); `gross` is the
+    outline without them, where it is known.
 
     Raises `OutlineError` when nothing is left.
     """
-    pieces = [member_outline(member, x, side)]
-    for taken in taken_at(member, x, side, cuts):
+    gross = gross or member_outline(member, x, side)
+    pieces = [gross]
+    for taken in taken_at(member, x, side, cuts, gross):
         pieces = _without(pieces, taken)
     if not pieces:
         raise OutlineError(f"member {member.name}: the cuts at {x:g} mm leave nothing of the section.")
@@ -77,10 +79,12 @@ class Taken:
     other: tuple[float, float] | None = None
 
 
-def taken_at(member: Member, x: float, side: Side = "after", cuts: tuple[Cut, ...] | None = None) -> list[Taken]:
+def taken_at(
+    member: Member, x: float, side: Side = "after", cuts: tuple[Cut, ...] | None = None, gross: Outline | None = None
+) -> list[Taken]:
     """What each cut takes of the section at `x`, mm from the declared line; a notch's range has no end outwards."""
-    gross = member_outline(member, x, side)
-    found = (_taken(gross, member, cut, x) for cut in (member.cuts if cuts is None else cuts))
+    whole = gross or member_outline(member, x, side)
+    found = (_taken(whole, member, cut, x) for cut in (member.cuts if cuts is None else cuts))
     return [t for t in found if t is not None]
 
 

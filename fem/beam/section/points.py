@@ -51,7 +51,9 @@ def locate(solved: SaintVenant, points: Array, candidates: int = 24) -> tuple[ND
         jacobian = sum(nodes[:, None, i, near] * slopes[i][None] for i in range(6))
         left = np.moveaxis(points[:, :, None] - value, 0, -1)[..., None]
         step = np.linalg.solve(np.moveaxis(jacobian, (0, 1), (-2, -1)), left)[..., 0]
-        X = np.clip(X + np.moveaxis(step, -1, 0), -3.0, 3.0)
+        before, X = X, np.clip(X + np.moveaxis(step, -1, 0), -3.0, 3.0)
+        if np.abs(X - before).max() < 1e-9:  # the next step would be its square
+            break
     outside = np.maximum(-X, 0.0).sum(axis=0) + np.maximum(X.sum(axis=0) - 1.0, 0.0)
     best = np.argmin(outside, axis=1)
     rows = np.arange(len(best))

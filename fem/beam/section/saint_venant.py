@@ -104,8 +104,17 @@ def saint_venant(mesh: MeshTri2, nu: float, order: int = 3) -> SaintVenant:
     The mesh may come from anywhere; its triangles may be curved and in any corner order. Needs a connected
     section: disjoint pieces give a singular matrix (SolveError).
     """
+    return solved_about(*about_centroid(mesh), nu, order)
+
+
+def about_centroid(mesh: MeshTri2) -> tuple[MeshTri2, Array]:
+    """The mesh with its centroid at the origin, ready for `solved_about`, and where the centroid was."""
     centroid = _centroid(mesh)
-    mesh = sorted_mesh(mesh, centroid)
+    return sorted_mesh(mesh, centroid), centroid
+
+
+def solved_about(mesh: MeshTri2, centroid: Array, nu: float, order: int) -> SaintVenant:
+    """`saint_venant` on a mesh that `about_centroid` has made; two orders on one mesh share it."""
     basis = Basis(mesh, ElementTriP3() if order == 3 else ElementTriP2(), intorder=2 * order)
     x, dA = np.asarray(basis.global_coordinates()), basis.dx
     inertia = np.einsum("ieq,jeq,eq->ij", x, x, dA)
