@@ -6,14 +6,18 @@ import subprocess
 import sys
 from pathlib import Path
 
+import numpy as np
 import pytest
 from numba.core import event
 from solid_help import box_mesh, box_part
 
 from fem.solid import solve_solid
+from fem.solid.geometric import geometric_stiffness
 from fem.solid.kernels import cache
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.warm import warm_up
+from fem.solid.mass import mass_matrix
+from fem.solid.stiffness import element_groups, group_stresses, stiffness_matrix
 from geometry.budget import Budget
 from geometry.part import BodyLoad, RegionLoad, Support
 
@@ -44,6 +48,12 @@ def test_a_warm_process_compiles_nothing() -> None:
         mesh = box_mesh(100.0, 10.0, 20.0, (6, 2, 2))
         for solver in ("cholesky", "multigrid"):
             solve_solid(box_part(100.0, 10.0, 20.0, [wall], loads), mesh, Budget(threads=2), solver=solver)
+        groups = element_groups(mesh.nodes, mesh.tets)
+        K = stiffness_matrix(mesh.nodes, mesh.tets, groups, 210000.0, 0.3)
+        mass_matrix(groups, 1.0, K)
+        stress = group_stresses(groups, np.zeros((2, *mesh.nodes.shape)), 210000.0, 0.3, np.zeros(2))
+        geometric_stiffness(groups, [s[1] for s in stress], K)
+        assert K.to_csr().nnz > 2 * K.upper_csr(np.arange(0, K.shape[0], 2)).nnz
         twice = kernel(_twice)  # the listener sees what is compiled
         assert twice(2.0) == 4.0
     finally:

@@ -6,7 +6,10 @@ from collections.abc import Callable
 from dataclasses import replace
 from time import perf_counter
 
+import numpy as np
+
 from fem.solid.kernels.cache import base_folder, is_warm, set_warm
+from mesher.named_mesh import NamedMesh
 
 __all__ = ["SECONDS", "is_warm", "warm_up"]
 
@@ -37,5 +40,25 @@ def warm_up(tell: Callable[[str], None]) -> None:
     solve_solid(part, mesh, Budget(threads=1), solver="cholesky")
     solve_solid(part, mesh, Budget(threads=1), solver="multigrid")
     solve_solid(one, mesh, Budget(threads=1), solver="multigrid")
+    _matrices(mesh)
     set_warm()
     tell(f"the solver's kernels are ready after {perf_counter() - begun:.0f} s")
+
+
+def _matrices(mesh: NamedMesh) -> None:
+    """What no solution above is bound to need: mass, geometric stiffness and the scalar forms of a matrix."""
+    from fem.solid.geometric import geometric_stiffness
+    from fem.solid.mass import mass_matrix
+    from fem.solid.stiffness import element_groups, group_stresses, stiffness_matrix
+
+    groups = element_groups(mesh.nodes, mesh.tets)
+    K = stiffness_matrix(mesh.nodes, mesh.tets, groups, 1.0, 0.3)
+    mass_matrix(groups, 1.0, K)
+    stress = group_stresses(groups, np.zeros((1, *mesh.nodes.shape)), 1.0, 0.3, np.zeros(1))
+    geometric_stiffness(groups, [s[0] for s in stress], K)
+    K.to_csr()
+    K.upper_csr()
+    for columns in ((), (2,), (3,)):
+        x = np.zeros((K.shape[0], *columns))
+        K @ x
+        K.single() @ x.astype(np.float32)
