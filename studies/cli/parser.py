@@ -19,7 +19,8 @@ exit status
   130  stopped by Ctrl-C; nothing was written
 
 cautions
-  Linear elastic material, small displacements, perfect geometry. No yielding, no buckling, no fatigue, no contact.
+  Linear elastic material, small displacements, perfect geometry. No yielding, no fatigue, no contact; buckling only
+  where the spec asks for it, as a factor of the perfect part.
   The requested accuracy steers the mesh and is not verified. Both models share the spec: a wrong load or support
   in it goes unseen. Local codes and the judgement of a licensed engineer decide."""
 

@@ -8,7 +8,16 @@ from pathlib import Path
 
 import pytest
 
-from geometry.part import BearingLoad, BodyLoad, LineLoad, Pressure, RegionLoad, RemotePoint, TemperatureLoad
+from geometry.part import (
+    BearingLoad,
+    BodyLoad,
+    LineLoad,
+    Pressure,
+    RegionLoad,
+    RemotePoint,
+    StripLoad,
+    TemperatureLoad,
+)
 from geometry.spec import json_schema, read_part
 from studies.cli import main
 
@@ -41,10 +50,11 @@ def test_the_examples_cover_shapes_features_loads_and_limits() -> None:
                                                             "angle", "tee"}
     assert {cut.kind for member in members for cut in member.cuts} == {"hole", "slot", "opening", "notch"}
     assert {type(load) for part in parts for load in part.loads} >= {
-        RegionLoad, Pressure, BearingLoad, LineLoad, RemotePoint, BodyLoad, TemperatureLoad}
+        RegionLoad, Pressure, BearingLoad, LineLoad, RemotePoint, BodyLoad, TemperatureLoad, StripLoad}
     assert {limit.quantity for part in parts for limit in part.limits} == {
         "deflection", "displacement", "relative_displacement", "rotation", "stress", "yield_factor", "mass",
-        "reaction"}
+        "reaction", "frequency", "buckling_factor"}
+    assert any(part.vibration for part in parts) and any(part.buckling for part in parts)
     assert any(station.shoulder_fillet for member in members for station in member.stations)
 
 
