@@ -96,15 +96,18 @@ def _points(tag: int, size: float) -> Floats:
 def _inside(tag: int, grid: Floats) -> NDArray[np.bool_]:
     """(n,) which of the points (n, 2), in the face's parameters, lie within its edges.
 
-    By the kernel, one by one; a plane's edges are taken as chains of chords instead, which is a hundred times as
-    fast and wrong only for a point so near to an edge that it makes no difference.
+    The edges are taken as chains of chords, which is wrong only for a point so near to an edge that it makes no
+    difference. Where the face closes on itself, its seam has two places in the parameters, and the kernel is asked point
+    by point, which takes a hundred times as long.
     """
-    if gmsh.model.getType(2, tag) != "Plane":
+    around = [abs(edge) for _, edge in gmsh.model.getBoundary([(2, tag)], combined=False)]
+    if len(set(around)) < len(around):
         return np.array([gmsh.model.isInside(2, tag, uv.tolist(), parametric=True) > 0 for uv in grid], dtype=bool)
     crossings = np.zeros(len(grid), dtype=np.int64)
-    for _, edge in gmsh.model.getBoundary([(2, tag)], oriented=False):
+    plane = gmsh.model.getType(2, tag) == "Plane"
+    for edge in around:
         (first,), (last,) = gmsh.model.getParametrizationBounds(1, edge)
-        count = 2 if gmsh.model.getType(1, edge) == "Line" else 33
+        count = 2 if plane and gmsh.model.getType(1, edge) == "Line" else 33
         t = np.linspace(first, last, count)
         u, v = np.array(gmsh.model.reparametrizeOnSurface(1, edge, t.tolist(), tag)).reshape(-1, 2).T
         across = (v[:-1] > grid[:, 1:]) != (v[1:] > grid[:, 1:])

@@ -64,9 +64,11 @@ def tetrahedron_gradients(X: Floats) -> Floats:
 def facet_areas(nodes: Floats, facets: Ints, points: int = 6) -> Floats:
     """(k,) areas of curved triangles in space, mm^2. `nodes` (3, n), `facets` (6, k)."""
     X, w = simplex_rule(2, points)
-    tangents = np.einsum("cik,idq->cdkq", nodes[:, facets], triangle_gradients(X))
-    normals = np.cross(tangents[:, 0], tangents[:, 1], axis=0)
-    return np.sqrt((normals**2).sum(axis=0)) @ w
+    slopes = triangle_gradients(X)
+    at = np.ascontiguousarray(nodes.T[facets.T].transpose(2, 0, 1))
+    s, t = (at @ slopes[:, d] for d in range(2))
+    normals = (s[1] * t[2] - s[2] * t[1], s[2] * t[0] - s[0] * t[2], s[0] * t[1] - s[1] * t[0])
+    return np.asarray(np.sqrt(normals[0] ** 2 + normals[1] ** 2 + normals[2] ** 2) @ w)
 
 
 def triangle_areas(nodes: Floats, tris: Ints) -> Floats:
@@ -79,5 +81,10 @@ def triangle_areas(nodes: Floats, tris: Ints) -> Floats:
 def tetrahedron_volumes(nodes: Floats, tets: Ints) -> Floats:
     """(m,) signed volumes of curved tetrahedra, mm^3. `nodes` (3, n), `tets` (10, m). Exact."""
     X, w = simplex_rule(3, 3)
-    F = np.einsum("cim,idq->cdmq", nodes[:, tets], tetrahedron_gradients(X))
-    return np.einsum("cmq,cmq->mq", np.cross(F[:, 0], F[:, 1], axis=0), F[:, 2]) @ w
+    slopes = tetrahedron_gradients(X)
+    at = np.ascontiguousarray(nodes.T[tets.T].transpose(2, 0, 1))
+    a, b, c = (at @ slopes[:, d] for d in range(3))
+    determinant = (
+        a[0] * (b[1] * c[2] - b[2] * c[1]) + a[1] * (b[2] * c[0] - b[0] * c[2]) + a[2] * (b[0] * c[1] - b[1] * c[0])
+    )
+    return np.asarray(determinant @ w)

@@ -52,14 +52,20 @@ def scaled_jacobian(nodes: Floats, tets: Ints, chunk: int = 20000) -> Floats:
 
 def _scaled_jacobian(nodes: Floats, tets: Ints) -> Floats:
     X, to_bezier = _lattice()
-    F = np.einsum("cim,idq->dcmq", nodes[:, tets], tetrahedron_gradients(X))
-    determinant = np.einsum("cmq,cmq->mq", np.cross(F[0], F[1], axis=0), F[2])
-    corner = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0, 0, 1]])
-    lengths = []
-    for a, b in TET_EDGES:
-        edge = np.einsum("d,dcmq->cmq", (corner[b] - corner[a]).astype(float), F)
-        lengths.append(np.sqrt((edge**2).sum(axis=0)))
-    scale = np.max([lengths[i] * lengths[j] * lengths[k] for i, j, k in _CORNER_EDGES], axis=0)
+    slopes = tetrahedron_gradients(X)
+    at = np.ascontiguousarray(nodes.T[tets.T].transpose(2, 0, 1))  # (3, m, 10)
+    F = [at @ slopes[:, d] for d in range(3)]  # each (3, m, q)
+    determinant = (
+        F[0][0] * (F[1][1] * F[2][2] - F[1][2] * F[2][1])
+        + F[0][1] * (F[1][2] * F[2][0] - F[1][0] * F[2][2])
+        + F[0][2] * (F[1][0] * F[2][1] - F[1][1] * F[2][0])
+    )
+    squares = []
+    for a, b in TET_EDGES:  # corner k > 0 lies on axis k - 1 of the reference element
+        edge = F[b - 1] if a == 0 else F[b - 1] - F[a - 1]
+        squares.append(edge[0] * edge[0] + edge[1] * edge[1] + edge[2] * edge[2])
+    products = [squares[i] * squares[j] * squares[k] for i, j, k in _CORNER_EDGES]
+    scale = np.sqrt(np.maximum(np.maximum(products[0], products[1]), np.maximum(products[2], products[3])))
     least = np.min(np.sqrt(2.0) * determinant / scale, axis=1)
     bound = np.min(determinant @ to_bezier, axis=1) * np.sqrt(2.0) / scale.mean(axis=1)
     return np.where(bound > 0, least, np.minimum(least, bound))
