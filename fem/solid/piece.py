@@ -4,20 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cache
 
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.solid.clip import smaller_triangles
+from fem.solid.clip import clip_beyond
 from fem.solid.frame import Frame
-from fem.solid.kernels.clipping import clip_facets
 from fem.solid.shape import (
     TRIANGLE_EDGES,
     Array,
     facet_points,
     triangle_gradients,
-    triangle_quadrature,
     triangle_values,
 )
 
@@ -80,13 +77,6 @@ def facet_quadrature(nodes: Array, facets: NDArray[np.int64], owner: NDArray[np.
     return FacetPoints(owner, bary, (x * triangle_values(bary)).sum(axis=1), normals / size, size * w)
 
 
-@cache
-def _children(levels: int) -> tuple[Array, Array]:
-    """(t, 3, 3) corners of the smaller triangles and (t, 3, 6) the shape functions there."""
-    corners = np.ascontiguousarray(smaller_triangles(levels))
-    return corners, np.ascontiguousarray(triangle_values(corners.reshape(-1, 3).T).T.reshape(-1, 3, 6))
-
-
 def clipped_facets(nodes: Array, facets: NDArray[np.int64], distances: tuple[Array, ...]) -> FacetPoints:
     """Quadrature on the part of the facets (6, k) where every one of the distances (6, k) of their nodes is >= 0.
 
@@ -97,17 +87,12 @@ def clipped_facets(nodes: Array, facets: NDArray[np.int64], distances: tuple[Arr
     size = np.linalg.norm(x[:, 1] - x[:, 0], axis=0)
     off = np.linalg.norm(x[:, 3:] - x[:, :3][:, TRIANGLE_EDGES].mean(axis=2), axis=0)
     curved = (off > 1e-9 * size).any(axis=0)
-    corners, owner = [], []
-    every = np.array(distances)
+    every, found = np.array(distances), []
     for chosen, levels in ((np.flatnonzero(~curved), 0), (np.flatnonzero(curved), _REFINE)):
-        mine, parts = clip_facets(*_children(levels), every[:, :, chosen])
-        owner.append(chosen[mine])
-        corners.append(parts)
-    pieces, own = np.concatenate(corners), np.concatenate(owner)
-    L, w = triangle_quadrature(FORCE_ORDER)
-    bary = np.matmul(pieces.transpose(2, 0, 1), L).reshape(3, -1)
-    weights = (np.abs(np.linalg.det(pieces))[:, None] * w).ravel()
-    return facet_quadrature(nodes, facets, np.repeat(own, w.size), bary, weights)
+        own, bary, weights = clip_beyond(every[:, :, chosen], FORCE_ORDER, levels)
+        found.append((chosen[own], bary, weights))
+    owner, bary, weights = (np.concatenate(parts, axis=-1) for parts in zip(*found, strict=True))
+    return facet_quadrature(nodes, facets, owner, bary, weights)
 
 
 def piece_forces(nodes: Array, piece: SurfacePiece) -> Array:

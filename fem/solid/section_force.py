@@ -200,7 +200,7 @@ def _beyond(nodes: Array, piece: SurfacePiece, here: Int, d: Array) -> FacetPoin
     facets = piece.facets[:, here]
     if piece.window is not None:
         return clipped_facets(nodes, facets, (*piece.window.distances(nodes[:, facets]), d))
-    owner, bary, weights = clip_beyond(d[:3].T, FORCE_ORDER)
+    owner, bary, weights = clip_beyond(d[None], FORCE_ORDER)
     return facet_quadrature(nodes, facets, owner, bary, weights)
 
 

@@ -176,16 +176,23 @@ def test_a_turned_part_gives_the_same_figures() -> None:
 
 def test_clip_measures_the_part_beyond() -> None:
     rng = np.random.default_rng(3)
-    for size, whole in ((3, 0.5), (4, 1 / 6)):
-        d = rng.normal(size=(200, size))
-        owner, bary, weights = clip_beyond(d, 2)
-        one = np.bincount(owner, weights=weights, minlength=200)
-        owner2, _, weights2 = clip_beyond(-d, 2)
-        assert one + np.bincount(owner2, weights=weights2, minlength=200) == pytest.approx(np.full(200, whole))
-        assert (one >= -1e-15).all()
-        # first moment of the distance: positive part, and both parts add up to the mean of the corners
-        value = np.bincount(owner, weights=weights * (bary.T * d[owner]).sum(axis=1), minlength=200)
-        assert (value >= -1e-15).all()
+    d = rng.normal(size=(6, 200))
+    owner, bary, weights = clip_beyond(d[None], 2)
+    one = np.bincount(owner, weights=weights, minlength=200)
+    owner2, _, weights2 = clip_beyond(-d[None], 2)
+    assert one + np.bincount(owner2, weights=weights2, minlength=200) == pytest.approx(np.full(200, 0.5))
+    assert (weights >= 0).all() and bary.sum(axis=0) == pytest.approx(np.ones(owner.size))
+    # every point lies beyond; with a lone corner beyond, the area is the product of the two edges' shares
+    assert ((bary * d[:3, owner]).sum(axis=0) >= -1e-14).all()
+    lone = (d[0] > 0) & (d[1] < 0) & (d[2] < 0)
+    expected = d[0] ** 2 / (d[0] - d[1]) / (d[0] - d[2]) / 2
+    assert lone.sum() > 10
+    assert one[lone] == pytest.approx(expected[lone])
+    # two planes at once: the strip between them is what both leave
+    between = clip_beyond(np.array([d, 0.3 - d]), 2)
+    strip = np.bincount(between[0], weights=between[2], minlength=200)
+    over = clip_beyond(d[None] - 0.3, 2)
+    assert strip == pytest.approx(one - np.bincount(over[0], weights=over[2], minlength=200), abs=1e-14)
 
 
 def test_section_means_of_a_rigid_motion_and_area() -> None:
