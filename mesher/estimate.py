@@ -12,7 +12,8 @@ Floats = NDArray[np.float64]
 VOLUME_COEFFICIENT = 3.8
 SURFACE_COEFFICIENT = 6.7
 """Fitted to 14 meshes (shouldered shaft, tapered I with holes, plate with a hole and tube at accuracy 5, 2 and 1 %, bar
-at 5 and 2 %), checked on 3 more (round bar): every one of them within 22 %."""
+at 5 and 2 %), checked on 3 more (round bar): every one of them within 22 %. Of nine example parts meshed by HXT, with
+and without the slow improvement: 0.75 to 1.22 times the nodes they have."""
 
 
 def node_integrals(

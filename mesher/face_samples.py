@@ -97,8 +97,8 @@ def _inside(tag: int, grid: Floats) -> NDArray[np.bool_]:
     """(n,) which of the points (n, 2), in the face's parameters, lie within its edges.
 
     The edges are taken as chains of chords, which is wrong only for a point so near to an edge that it makes no
-    difference. Where the face closes on itself, its seam has two places in the parameters, and the kernel is asked point
-    by point, which takes a hundred times as long.
+    difference. Where the face closes on itself, its seam has two places in the parameters, and the kernel is asked
+    point by point, which takes a hundred times as long.
     """
     around = [abs(edge) for _, edge in gmsh.model.getBoundary([(2, tag)], combined=False)]
     if len(set(around)) < len(around):

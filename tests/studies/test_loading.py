@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import signal
 import subprocess
 import sys
 import threading
+import time
 from pathlib import Path
 from types import ModuleType
 
@@ -117,3 +119,32 @@ def test_every_core_is_used_unless_told() -> None:
                           capture_output=True, text=True, timeout=60, check=False)
     if done.returncode == 0:
         assert done.stdout.strip() == "1"
+
+
+@pytest.mark.skipif(sys.platform != "linux", reason="looks into /proc")
+@pytest.mark.parametrize("number", [signal.SIGINT, signal.SIGTERM, signal.SIGKILL])
+def test_a_check_that_is_stopped_leaves_no_process(tmp_path: Path, number: int) -> None:
+    part = Path(run.__file__).parents[1] / "examples" / "cantilever.toml"
+    with subprocess.Popen([sys.executable, "-m", "studies.cli", "check", str(part), "--out", str(tmp_path / "c.run")],
+                          stdout=subprocess.DEVNULL, stderr=subprocess.PIPE, text=True) as check:
+        children = Path(f"/proc/{check.pid}/task/{check.pid}/children")
+        deadline = time.monotonic() + 60.0
+        while len(found := children.read_text().split()) < 2 and time.monotonic() < deadline:
+            time.sleep(0.01)
+        assert len(found) == 2, "both kernels should be loading"
+        check.send_signal(number)
+        _, told = check.communicate(timeout=60)
+    if number != signal.SIGKILL:
+        assert check.returncode == 130 and "nothing was written" in told and "Traceback" not in told
+    deadline = time.monotonic() + 30.0  # after SIGKILL they see it when what they load is loaded
+    while any(_works(pid) for pid in found) and time.monotonic() < deadline:
+        time.sleep(0.05)
+    assert not any(_works(pid) for pid in found)
+    assert [p for p in tmp_path.iterdir() if not p.name.endswith(".partial")] == []
+
+
+def _works(pid: str) -> bool:
+    try:
+        return Path(f"/proc/{pid}/stat").read_text().rsplit(")", 1)[1].split()[0] != "Z"
+    except OSError:
+        return False
