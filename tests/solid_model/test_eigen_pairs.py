@@ -73,13 +73,14 @@ def test_no_pair_is_given_as_found_that_is_not() -> None:
     assert found.residual.max() > 1e-8
 
 
+@pytest.mark.parametrize("sign", [1.0, -1.0])
 @pytest.mark.parametrize("shift", [-0.5, 0.3, 1.7])
-def test_count_on_held_motions_with_low_rank_parts(shift: float) -> None:
+def test_count_on_held_motions_with_low_rank_parts(shift: float, sign: float) -> None:
     rng = np.random.default_rng(3)
     S = rng.standard_normal((40, 40))
     A = S + S.T - shift * 8 * np.eye(40)
     rows, low = rng.standard_normal((3, 40)), rng.standard_normal((5, 40))
-    weight = np.array([2.0, -30.0, 0.0, 5.0, -1.0])
+    weight = sign * np.array([20.0, 30.0, 0.0, 50.0, -1.0])
     whole = A + low.T @ np.diag(weight) @ low
     N = sla.null_space(rows)
     exact = int((np.linalg.eigvalsh(N.T @ whole @ N) < 0).sum())

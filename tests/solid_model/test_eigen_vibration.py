@@ -67,6 +67,9 @@ def test_modes_carry_their_share_of_the_mass(cantilever: Eigenmodes) -> None:
     first, second = (m.mass_share for m in cantilever.modes if m.kind == ABOUT_Y and m.value < 200)
     assert first[2] == pytest.approx((2 * 0.734096 / 1.875104) ** 2, rel=5e-3)
     assert second[2] == pytest.approx((2 * 1.018467 / 4.694091) ** 2, rel=1e-2)
+    # about the middle: int phi x dx = 2 / (beta L)^2 of a shape with the mean square 1 (from memory)
+    about = 2 / 1.875104**2 - 0.734096 / 1.875104
+    assert first[4] == pytest.approx(12 * about**2, rel=5e-3)
     assert abs(first[[0, 1, 3, 5]]).max() < 1e-6
 
 
