@@ -7,7 +7,9 @@ from dataclasses import replace
 from time import perf_counter
 
 import numpy as np
+import scipy.sparse as sp
 
+from fem.solid.block_matrix import BlockMatrix
 from fem.solid.kernels.cache import base_folder, is_warm, set_warm
 from mesher.named_mesh import NamedMesh
 
@@ -62,3 +64,17 @@ def _matrices(mesh: NamedMesh) -> None:
         x = np.zeros((K.shape[0], *columns))
         K @ x
         K.single() @ x.astype(np.float32)
+    _large(mesh, K)
+
+
+def _large(mesh: NamedMesh, K: BlockMatrix) -> None:
+    """What the iterative solver needs beyond in large models."""
+    from fem.solid.solver.aggregate import AggregateSolver
+    from fem.solid.solver.elimination import Elimination
+    from geometry.budget import Budget
+
+    free = np.flatnonzero(np.repeat(mesh.nodes[0] > mesh.nodes[0].min() + 1e-6, 3))
+    T = sp.csr_matrix((np.ones(free.size), (free, np.arange(free.size))), shape=(K.shape[0], free.size))
+    solver = AggregateSolver(K, Elimination(T), mesh.nodes, Budget(threads=1), "auto")
+    solver.solve(np.ones((free.size, 2)))
+    solver.close()
