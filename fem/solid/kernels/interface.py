@@ -10,8 +10,8 @@ from functools import cache
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.solid.kernels.cutting import _shapes, barycentric_slopes, node_slopes
 from fem.solid.kernels.jit import kernel
+from fem.solid.kernels.quadratic import barycentric_slopes, node_slopes, shape_values
 from fem.solid.shape import Array, tet_quadrature
 
 Int = NDArray[np.int32]
@@ -95,7 +95,7 @@ def interface_forces(  # type: ignore[no-untyped-def]
                 det = barycentric_slopes(points, tets, e, L, curved[e], J, slopes)
             w = sign * weights[q] * det
             node_slopes(L, slopes, g)
-            _shapes(L, N)
+            shape_values(L, N)
             share = 0.0
             G[:], M[:], R[:] = 0.0, 0.0, 0.0
             for a in range(10):
@@ -176,7 +176,7 @@ def _add_simplex(points, tets, e, curved, corners, sign, L1, w1, J, slopes, L, N
             for k in range(4):
                 L[c] += L1[q, k] * corners[k, c]
         volume = size * w1[q] * barycentric_slopes(points, tets, e, L, True, J, slopes)
-        _shapes(L, N)
+        shape_values(L, N)
         out[0] += volume
         for i in range(3):
             x = 0.0
