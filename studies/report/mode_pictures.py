@@ -41,10 +41,11 @@ def mode_picture(path: Path, part: Part, mesh: NamedMesh, title: str, modes: Seq
              for mode, shape in zip(modes[:MOST], shapes[:MOST], strict=True)]
     flat = np.vstack([camera.project(nodes), *(camera.project(one.moved) for one in drawn)])
     wide, high = float(np.ptp(flat[:, 0])), float(np.ptp(flat[:, 1]))
-    columns, panel = _layout(len(drawn) + 1, wide / high)
-    rows = math.ceil((len(drawn) + 1) / columns)
+    cells = len(drawn) + (wide < 0.7 * high)  # beside an upright part there is room for the axes only in a panel
+    columns, panel = _layout(cells, wide / high)
+    rows = math.ceil(cells / columns)
     tall = panel * high / wide
-    with frame.page(columns * panel + 0.6, float(np.clip(rows * (tall + 0.8) + 1.6, 4.0, 18.0))) as figure:
+    with frame.page(columns * panel + 0.6, float(np.clip(rows * (0.85 * tall + 0.9) + 1.7, 4.0, 18.0))) as figure:
         panels = figure.subplots(rows, columns, squeeze=False)
         for axes in panels.flat[len(drawn):]:
             axes.set_axis_off()
@@ -55,19 +56,22 @@ def mode_picture(path: Path, part: Part, mesh: NamedMesh, title: str, modes: Seq
             draw_edges(surface.outline, one.moved, camera, canvas)
             draw_edges(surface.outline, nodes, camera, canvas, (0.45, 0.45, 0.45, 0.8), hidden=True)
             frame.show(axes, canvas)
-            axes.set_title(one.text, fontsize=10.5, loc="left")
-        _axes_cross(panels.flat[len(drawn)], camera)
+            axes.set_title(one.text, fontsize=10, loc="left")
+        if rows * columns > len(drawn):
+            _axes_cross(panels.flat[len(drawn)], camera)
+        else:
+            frame.triad(panels.flat[0], camera)
         more = f", the first {MOST} of {len(modes)}" if len(modes) > MOST else ""
         figure.suptitle(f"{part.title}: {title}{more}", fontsize=12)
-        frame.colour_bar(figure, list(panels.flat), 0.0, 1.0, "size of the motion over its largest (its true size is "
-                         "open); grey lines: at rest", "viridis")
+        frame.colour_bar(figure, list(panels.flat), 0.0, 1.0, "", "viridis")
+        figure.supxlabel("size of the motion over its largest (true size: open); grey lines: at rest", fontsize=10)
         frame.save(figure, path)
 
 
 def _layout(cells: int, shape: float) -> tuple[int, float]:
     """Columns and the width of a panel (inches) for a picture `shape` times as wide as high."""
-    columns = min(cells, 2 if shape > 1.6 else 3 if shape > 0.7 else 5)
-    return columns, min(12.0 / columns, max(2.4, 8.0 * shape))
+    columns = min(cells, 2 if shape > 1.6 else 3 if shape > 0.7 else 7)
+    return columns, min(12.0 / columns, max(1.8, 7.0 * shape))
 
 
 def _axes_cross(axes: Any, camera: Camera) -> None:
@@ -100,9 +104,9 @@ def _drawn(mode: ModePair, shape: Floats, mesh: NamedMesh, reach: float) -> _Dra
 
 
 def said(mode: ModePair) -> str:
-    """Two lines about a mode: number, value and kind; the beam's value."""
+    """Three lines about a mode: number and value; its kind; the beam's value."""
     number = mode.key.component.removeprefix("mode ")
     factor = mode.key.quantity == "buckling_factor"
     value = f"factor {readable(mode.solid, '1')}" if factor else readable(mode.solid, "Hz")
     beam = "no beam value" if mode.beam is None else f"beam {readable(mode.beam, mode.unit)}, {mode.judgement}"
-    return f"{number}: {value}, {mode.solid_kind}\n{beam}"
+    return f"{number}: {value}\n{mode.solid_kind}\n{beam}"
