@@ -13,6 +13,7 @@ from fem.beam.modes import beam_vibration
 from geometry.part import Case, Cut, Material, Patch, RegionLoad, RemotePoint, Section, Station, Support, Vibration
 from geometry.problem import RunError, SolveError
 
+HEAVY = pytest.mark.heavy
 E, RHO, L = 210000.0, 7.85e-9, 1000.0
 G = E / 2.6
 FLAT = Section("rectangle", {"depth": 30.0, "width": 20.0})
@@ -46,8 +47,8 @@ def bending(beta_l, depth=30.0, length=L):
 @pytest.mark.parametrize(("supports", "free", "beta_l"), [
     ((WALL,), False, [1.875104, 4.694091, 7.854757]),
     ((), True, [4.730041, 7.853205, 10.995608]),
-    ((WALL, GUIDE), False, [4.730041, 7.853205, 10.995608]),
-    ((PIN, ROLLER), False, [math.pi, 2 * math.pi, 3 * math.pi]),
+    pytest.param((WALL, GUIDE), False, [4.730041, 7.853205, 10.995608], marks=HEAVY),
+    pytest.param((PIN, ROLLER), False, [math.pi, 2 * math.pi, 3 * math.pi], marks=HEAVY),
     ((WALL, ROLLER), False, [3.926602, 7.068583]),
 ])
 def test_uniform_beams(modes, supports, free, beta_l):
@@ -59,6 +60,7 @@ def test_uniform_beams(modes, supports, free, beta_l):
     assert max(m.residual for m in found) < 1e-3
 
 
+@HEAVY
 def test_numbers_of_a_steel_bar(modes):
     """E2: cantilever, pinned, free-free, strong and weak."""
     for supports, free, strong, weak in (((WALL,), False, 25.0655, 16.7103), ((PIN, ROLLER), False, 70.3599, 46.9066),
@@ -68,7 +70,8 @@ def test_numbers_of_a_steel_bar(modes):
 
 
 @pytest.mark.parametrize(("share", "expected"), [
-    (0.1, [2.96784, 19.3558, 55.5182]), (1.0, [1.557298, 16.25009, 50.89584]), (10.0, [0.541375])])
+    pytest.param(0.1, [2.96784, 19.3558, 55.5182], marks=HEAVY), (1.0, [1.557298, 16.25009, 50.89584]),
+    pytest.param(10.0, [0.541375], marks=HEAVY)])
 def test_tip_mass(modes, share, expected):
     """E3: (beta L)^2 of a cantilever with a mass at its tip, the mass's region rigid or average."""
     for coupling in ("rigid", "average"):
@@ -100,7 +103,8 @@ def steel(density):
 
 
 @pytest.mark.parametrize(("h", "expected"), [
-    (50.0, [116.774, 461.361, 1017.80]), (100.0, [230.680, 881.522, 1857.20]), (200.0, [440.761, 1528.76, 2920.88])])
+    pytest.param(50.0, [116.774, 461.361, 1017.80], marks=HEAVY),
+    pytest.param(100.0, [230.680, 881.522, 1857.20], marks=HEAVY), (200.0, [440.761, 1528.76, 2920.88])])
 def test_timoshenko_beam(modes, h, expected):
     """E4: pinned, k = 5/6, with shear and rotary inertia."""
     found = modes(Section("rectangle", {"depth": h, "width": 49.0}), supports=(PIN, ROLLER), shear=True, count=14)
@@ -109,8 +113,10 @@ def test_timoshenko_beam(modes, h, expected):
 
 ROOT = 60.0
 TAPERS = [
-    ({"depth": 0.5}, [3.82378, 18.3173, 47.2648]), ({"depth": 0.75}, [3.63624, 20.2539, 54.7684]),
-    ({"depth": 0.25}, [4.17659, 16.1843, 38.7750]), ({"width": 0.5}, [4.31517, 23.5193, 63.1992]),
+    pytest.param({"depth": 0.5}, [3.82378, 18.3173, 47.2648], marks=HEAVY),
+    pytest.param({"depth": 0.75}, [3.63624, 20.2539, 54.7684], marks=HEAVY),
+    ({"depth": 0.25}, [4.17659, 16.1843, 38.7750]),
+    pytest.param({"width": 0.5}, [4.31517, 23.5193, 63.1992], marks=HEAVY),
     ({"depth": 0.5, "width": 0.5}, [4.62515, 19.5476, 48.5789]),
 ]
 
@@ -178,7 +184,7 @@ def test_channel_bends_and_twists_together(modes, part, solve):
 HOLE = Cut("h", "h", "hole", "z", "top flange", 400.0, 5.0, 14.0, 14.0)
 
 
-@pytest.mark.parametrize("free", [False, True])
+@pytest.mark.parametrize("free", [False, pytest.param(True, marks=HEAVY)])
 def test_turned_member_and_other_line(modes, free):
     """Turned in space, rolled with its roll undone, or with the line elsewhere: the same frequencies and shapes."""
     skew = {"stations": (Station(600.0, {"depth": 80.0}),)} if free else {"cuts": (HOLE,)}
@@ -201,6 +207,7 @@ def test_turned_member_and_other_line(modes, free):
         assert np.abs(np.abs(b.displacement) - np.abs(want)).max() < 1e-4
 
 
+@HEAVY
 def test_where_the_line_lies_does_not_matter(part, modes):
     """The channel with its line at the centroid, the web or a corner, at one place in space."""
     from fem.beam.outlines import line_offset
@@ -258,6 +265,7 @@ def test_two_halves_are_a_whole(modes):
     assert [m.value for m in fussy] == pytest.approx([m.value for m in plain], rel=1e-6)
 
 
+@HEAVY
 def test_rigid_pad_stiffens(modes):
     """A patch that a load holds rigid: the bar bends in the rest only, as a free part too."""
     pad = (Patch("pad", "top", 400.0, 600.0),)
