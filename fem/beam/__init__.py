@@ -2,8 +2,9 @@
 
 `solve_beam` is the whole of it. The model is made from the part's declared numbers alone, by itself: outlines
 (`outlines`), section properties (`section`), properties along the line (`along`, `cuts`), the differential equations
-of the line (`law`, `element`, `equations`), regions, loads and supports (`regions`, `faces`, `actions`), figures
-(`figures`, `stress`, `notches`), and predicted differences from a solid (`causes`).
+of the line (`law`, `element`, `equations`), regions, loads and supports (`regions`, `faces`, `actions`, `strip_load`),
+all cases at once (`cases`), figures (`figures`, `stress`, `notches`), natural frequencies and linear buckling
+(`modes`), and predicted differences from a solid (`causes`).
 
 Restrained warping acts where a section is open and thin; it is stopped at an end face that is held along x point by
 point, or that moves as a rigid body. A rigid coupling, of a support or a load, stiffens its region in *every* case.
