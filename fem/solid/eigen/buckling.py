@@ -8,7 +8,6 @@ carries it.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
 
 import numpy as np
 import scipy.sparse as sp
@@ -22,40 +21,21 @@ from fem.solid.eigen.describe import buckling_kind, section_shapes, section_shar
 from fem.solid.eigen.eigenmodes import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes, NotSettled
 from fem.solid.eigen.motions import Motions, Operator, held_motions
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, lost, second_search, space_room
-from fem.solid.eigen.remote import lever_rows
 from fem.solid.eigen.start import start_unknowns
-from fem.solid.geometric import geometric_stiffness
+from fem.solid.eigen.stress_stiffness import StressStiffness, stress_stiffnesses
 from fem.solid.mass import mass_matrix
-from fem.solid.model import SolidModel, thermal_vector
+from fem.solid.model import SolidModel
 from fem.solid.result import Check
 from fem.solid.shape import Array
-from fem.solid.stiffness import group_stresses
 from fem.solid.system import HeldSystem
 from geometry.budget import Budget
-from geometry.part import BodyLoad, Buckling, RemotePoint
+from geometry.part import Buckling
 from geometry.problem import SolveError
 
-LARGEST_STRAIN = 1.0
-"""Factors at which the root mean square of the stress is more than this part of Young's modulus are no buckling but
-rounding, or waves as short as the elements."""
 OTHER_SIGN = 100.0
 """How many times the least factor one of the other sign may have to be looked for: set by trial."""
 OTHER_SIGN_ROUNDS = 40
 NOTE = "loads keep their direction (pressure does not turn with the surface); walls may buckle by themselves"
-
-
-@dataclass(frozen=True, slots=True)
-class _Geometric:
-    """Geometric stiffness of the part, and weights and rows (r, 3 n) of the levers of remote forces; `largest` is the
-    factor beyond which nothing is looked for."""
-
-    part: BlockMatrix
-    weights: Array
-    levers: sp.csr_matrix
-    largest: float
-
-    def __matmul__(self, u: Array) -> Array:
-        return np.asarray(self.part @ u + self.levers.T @ (self.weights[:, None] * (self.levers @ u)))
 
 
 def solid_buckling(
@@ -86,7 +66,7 @@ def solid_buckling(
     checks: list[Check] = []
     describe = _Describer(model, cutter)
     for study in model.part.buckling:
-        fixed, varying = _geometric_of(model, system, u, study)
+        fixed, varying = stress_stiffnesses(model, system, u, study)
         found = _Study(model, motions, fixed, varying, study, budget)
         pairs = found.solve()
         checks += found.checks
@@ -97,59 +77,6 @@ def solid_buckling(
             shapes.append(shape)
     n = model.mesh.nodes.shape[1]
     return Eigenmodes(tuple(modes), np.concatenate(shapes) if shapes else np.zeros((0, 3, n)), tuple(checks))
-
-
-def _geometric_of(
-    model: SolidModel, system: HeldSystem, u: Array, study: Buckling
-) -> tuple[_Geometric | None, _Geometric | None]:
-    """Geometric stiffness of the fixed and of the varying loads; None where there is no stress."""
-    part, n = model.part, model.mesh.nodes.shape[1]
-    case = next(k for k, c in enumerate(part.cases) if c.name == study.case)
-    total = model.factors[case]
-    names = list(model.loads)
-    held = np.array([f if name in study.fixed else 0.0 for name, f in zip(names, total, strict=True)])
-    u_fixed, change = np.zeros((3, n)), 0.0
-    if held.any():
-        change = float(held @ np.array([load.change for load in model.loads.values()]))
-        f = np.tensordot(held, model.load_vectors, axes=1)
-        if change:
-            m = part.material
-            f = f + change * m.expansion * thermal_vector(model.mesh, model.groups, m.E, m.nu)
-        y = system.inverse(system.elimination.gather(f.reshape(-1, 1)))
-        u_fixed = system.elimination.expand(y).reshape(n, 3).T
-    both = np.array([u_fixed, u[case] - u_fixed])
-    changes = np.array([change, model.change[case] - change])
-    expansion = part.material.expansion * changes
-    stress = group_stresses(model.groups, both, part.material.E, part.material.nu, expansion, model.K.threads)
-    size = [np.sqrt(sum((s[k] ** 2).sum() for s in stress) / sum(s[k].size for s in stress) * 6) for k in range(2)]
-    # stress that is rounding of the motion that makes it is none
-    strain = float(np.abs(expansion).max()) + float(np.abs(both).max() / np.ptp(model.mesh.nodes, axis=1).max())
-    least = 1e-9 * part.material.E * strain
-
-    def geometric(k: int, factors: Array) -> _Geometric | None:
-        if not size[k] > least:
-            return None
-        G = geometric_stiffness(model.groups, [s[k] for s in stress], model.K)
-        return _Geometric(G, *_levers(model, factors), LARGEST_STRAIN * part.material.E / float(size[k]))
-
-    return geometric(0, held), geometric(1, total - held)
-
-
-def _levers(model: SolidModel, factors: Array) -> tuple[Array, sp.csr_matrix]:
-    """Weights and rows of the levers of all remote forces under load factors (loads,)."""
-    part, mesh = model.part, model.mesh
-    by_name = dict(zip(model.loads, factors, strict=True))
-    bodies = [load for load in part.loads if isinstance(load, BodyLoad)]
-    pull = sum((by_name[load.name] * np.array(load.force_per_mass) for load in bodies), np.zeros(3))
-    weights, rows = [np.zeros(0)], [sp.csr_matrix((0, 3 * mesh.nodes.shape[1]))]
-    for point in part.loads:
-        if isinstance(point, RemotePoint):
-            force = by_name[point.name] * np.array(point.force) + point.mass * pull
-            if force.any():
-                w, r = lever_rows(mesh, point, force)
-                weights.append(w)
-                rows.append(r)
-    return np.concatenate(weights), sp.csr_matrix(sp.vstack(rows))
 
 
 def _of_sign(sign: float) -> Callable[[Array, int], NDArray[np.int64]]:
@@ -166,8 +93,8 @@ class _Study:
         self,
         model: SolidModel,
         motions: Motions,
-        fixed: _Geometric | None,
-        varying: _Geometric | None,
+        fixed: StressStiffness | None,
+        varying: StressStiffness | None,
         study: Buckling,
         budget: Budget,
     ) -> None:
@@ -180,7 +107,7 @@ class _Study:
     def _check(self, what: str, value: float, allowed: float, note: str) -> None:
         self.checks.append(Check(f"buckling of {self.study.case}: {what}", value, allowed, value <= allowed, note))
 
-    def _reduced(self, matrix: _Geometric) -> Operator:
+    def _reduced(self, matrix: StressStiffness) -> Operator:
         eliminate = self.motions.elimination
         return lambda y: eliminate.gather(matrix @ eliminate.expand(y))
 
@@ -219,7 +146,7 @@ class _Study:
         )  # fmt: skip
         return pairs
 
-    def _fixed_loads_hold(self, fixed: _Geometric) -> bool:
+    def _fixed_loads_hold(self, fixed: StressStiffness) -> bool:
         """Whether K + G_fixed is positive definite: the least positive factor of the fixed loads is above one."""
         B = self._reduced(fixed)
         pencil = Pencil(self.motions.stiffness, B, self.motions.precondition)

@@ -14,6 +14,7 @@ from fem.solid.model import SolidModel
 from fem.solid.region import inertia
 from fem.solid.sections import member_elements
 from fem.solid.shape import Array
+from geometry.problem import SolveError
 
 PURE = 0.85
 """Share from which a shape is called by one name: set by trial."""
@@ -46,6 +47,9 @@ def shape_sections(model: SolidModel, cutter: Cutter | None = None) -> ShapeSect
     at = np.linspace(0.0, frame.length, SHAPE_STATIONS)
     alone = len(model.part.members) == 1
     cuts = [cutter.cut(frame, x, None if alone else member_elements(mesh, member, frame, alone, x)) for x in at]
+    for x, cut in zip(at, cuts, strict=True):
+        if not cut.weights.size:
+            raise SolveError(f"The mesh has no material at {member.name}@{x:.6g}: a mode has no motion there.")
     second = np.array([inertia(cut.points - cut.centroid[:, None], cut.weights) for cut in cuts])
     return ShapeSections(cuts, frame, at, np.array([cut.area for cut in cuts]), second)
 
