@@ -148,3 +148,22 @@ def _works(pid: str) -> bool:
         return Path(f"/proc/{pid}/stat").read_text().rsplit(")", 1)[1].split()[0] != "Z"
     except OSError:
         return False
+
+
+@pytest.mark.skipif(sys.platform != "linux", reason="looks into /proc")
+def test_every_job_of_the_cad_template_gives_the_same_solid() -> None:
+    """The first and the second, and one in a fresh template, which has one thread: a copy of more would be unsound."""
+    from geometry.budget import Budget
+    from geometry.process import Template
+    from geometry.spec import read_part
+    from studies.check.solid_child import SolidChild, cad_template
+
+    part = read_part(Path(run.__file__).parents[1] / "examples" / "cantilever.toml")
+    fresh = Template("studies.check.solid_child")
+    solids = []
+    for template in (cad_template(), cad_template(), fresh):
+        with SolidChild(part, Budget(), template) as child:
+            solids.append(child.result()[0])
+    assert len(list(Path(f"/proc/{fresh.pid}/task").iterdir())) == 1
+    fresh.close()
+    assert len({solid.brep for solid in solids}) == len({solid.step for solid in solids}) == 1
