@@ -1,7 +1,7 @@
 """Child processes for the kernels: loaded once, one fresh process for every job, bounded and told how they ended.
 
 A kernel (CAD or mesh) takes up to two seconds to load, can crash, hang or eat the memory, and keeps state. So it is
-loaded in a *template* process that never does a caller's job itself; the template copies itself (fork) for each job. A job
+loaded in a *template* process that never does a caller's job itself; it copies itself (fork) for each job. A job
 therefore starts from the same untouched state whether it is the first or the hundredth, and whatever happens to it is
 lost with its process alone.
 
