@@ -189,6 +189,8 @@ def measure(options: argparse.Namespace) -> list[dict[str, Any]]:
     bench = Bench(options, folder)
     bench.say(f"rows go to {bench.file}")
     wanted = [(shape, size) for shape in options.shapes for size in options.sizes if size in SHAPES[shape].sizes]
+    warmed = bench.job("warm", {"budget": options.memory, "modes": options.modes}, 300, options.memory)
+    bench.say(f"compiled code {_told(warmed, 'seconds')}")
     wanted.sort(key=lambda row: (row[0] != MAIN, SIZES.index(row[1])))
     try:
         for row in [bench.haunch(shape, size) for shape, size in wanted]:

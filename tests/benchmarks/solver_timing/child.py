@@ -25,6 +25,7 @@ HERE = Path(__file__).resolve().parents[1]
 
 TASKS = {
     "mesh": "solver_timing.jobs:mesh",
+    "warm": "solver_timing.haunch:warm",
     "haunch": "solver_timing.haunch:run",
     "assemble": "solver_timing.rivals:assemble",
     "lu": "solver_timing.rivals:lu",

@@ -16,8 +16,8 @@ STAGES: Mapping[str, Sequence[str]] = {
     "loads": [
         "fem.solid.load:solid_loads",
         "fem.solid.load:surface_vector",
-        "fem.solid.model:mass_vector",
-        "fem.solid.model:thermal_vector",
+        "fem.solid.mass:node_integrals",
+        "fem.solid.mass:node_volumes",
     ],
 }
 """Stages of `build_model`."""

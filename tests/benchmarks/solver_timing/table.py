@@ -149,8 +149,8 @@ def profile(row: Row) -> str:
         f"set-up {seconds(facts['set_up'])} s ({_shares(facts['set_up_parts'], facts['set_up'])})",
         f"solve {seconds(facts['solve'])} s ({_shares(facts['solve_parts'], facts['solve'])})",
     ]
-    text = f"*{row['shape']}, {thousands(facts['unknowns'])} unknowns* ({(facts['reason'] or facts['solver']).rstrip('.')}): "
-    text += "; ".join(texts)
+    why = (facts["reason"] or facts["solver"]).rstrip(".")
+    text = f"*{row['shape']}, {thousands(facts['unknowns'])} unknowns* ({why}): {'; '.join(texts)}"
     moved = sum(facts["bytes"].values())
     if facts["iterations"] and moved:
         least = moved / facts["triad"]
