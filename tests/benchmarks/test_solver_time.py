@@ -27,7 +27,7 @@ def row(**facts: object) -> dict[str, object]:
         "stages": {"pattern": 0.25, "assembly": 0.5, "loads": 0.125}, "set_up_parts": {"factor": 1.5},
         "solve_parts": {"product": 2.9}, "bytes": {"product": 6e9}, "triad": 1.2e10, "solver": "multigrid",
         "reason": "A bulky part.", "iterations": 12, "tip": [0.0, 0.0, -2.0], "sample": [0.0, 1.0, -2.0],
-        "largest": 2.0,
+        "largest": 2.0, "processor": 11.0,
     }  # fmt: skip
     return {
         "shape": "box", "size": "small", "unknowns": 60000, "haunch": {"facts": {**known, **facts}, "failure": ""}
@@ -41,7 +41,7 @@ def rival(**facts: object) -> dict[str, object]:
 
 def test_the_table_holds_what_was_measured() -> None:
     told = table.report([{**row(), "assemble": {"facts": {"assembly": 4.0}, "failure": ""}, "pardiso": rival()}], "")
-    assert "| box | 60 000 | multigrid | 12 | 0.75 | 0.25 | 2 | 3 | **6** | – | 1 234 |" in told
+    assert "| box | 60 000 | multigrid | 12 | 0.75 | 0.25 | 2 | 3 | **6** | 11 | – | 1 234 |" in told
     assert "| box | 60 000 | 6 | 4 | – | 9 (500) | – | 0e+00 |" in told
     assert "factor 75 %, other 25 %" in told
     assert "0.5 s at the 12.0 GB/s" in told and "6.0 times the least time" in told
@@ -77,6 +77,12 @@ def test_the_readme_is_changed_between_its_marks_only(tmp_path: Path) -> None:
     readme.write_text("no marks", encoding="utf-8")
     with pytest.raises(ValueError, match="needs the marks"):
         table.write_between_marks(readme, "new")
+
+
+def test_the_readme_has_the_marks() -> None:
+    text = (ROOT / "README.md").read_text(encoding="utf-8")
+    assert text.count(table.BEGIN) == text.count(table.END) == 1
+    assert text.index(table.BEGIN) < text.index(table.END)
 
 
 def outer(seconds: float) -> None:

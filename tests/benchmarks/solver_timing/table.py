@@ -69,21 +69,22 @@ def haunch_table(rows: Sequence[Row]) -> str:
     """Haunch's own times."""
     head = (
         "shape", "unknowns", "solver", "steps", "assembly", "loads, supports", "set-up", "solve",
-        "**all, s**", "with the other solver, s", "MiB", "six cases / one", "six modes, s", "to figures, s",
+        "**all, s**", "processor, s", "with the other solver, s", "MiB", "six cases / one", "six modes, s",
+        "to figures, s",
     )  # fmt: skip
     lines = []
     for row in rows:
         facts, failure = row["haunch"]["facts"], row["haunch"]["failure"]
         if "displacements" not in facts:
-            lines.append((row["shape"], thousands(row.get("unknowns")), failure or "no answer", *["–"] * 11))
+            lines.append((row["shape"], thousands(row.get("unknowns")), failure or "no answer", *["–"] * 12))
             continue
         stages = facts["stages"]
         assembly = stages["pattern"] + stages["assembly"]
         lines.append((
             row["shape"], thousands(facts["unknowns"]), facts["solver"], str(facts["iterations"] or "–"),
             seconds(assembly), seconds(facts["build"] - assembly), seconds(facts["set_up"]), seconds(facts["solve"]),
-            f"**{seconds(facts['displacements'])}**", _other(facts), thousands(facts["memory"]),
-            seconds(facts.get("six_over_one")), seconds(facts.get("modes")),
+            f"**{seconds(facts['displacements'])}**", seconds(facts["processor"]), _other(facts),
+            thousands(facts["memory"]), seconds(facts.get("six_over_one")), seconds(facts.get("modes")),
             seconds(sum(facts["after"].values()) if "after" in facts else None),
         ))  # fmt: skip
     return markdown(head, lines)
