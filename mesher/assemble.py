@@ -9,10 +9,10 @@ from numpy.typing import NDArray
 
 from geometry.named_solid import NamedSolid
 from mesher.child import ChildResult
-from mesher.measure import facet_areas, tetrahedron_volumes
+from mesher.measure import facet_areas
 from mesher.named_mesh import NamedMesh
 from mesher.numbering import TET_EDGES, TET_FACES, from_gmsh
-from mesher.quality import scaled_jacobian
+from mesher.quality import quality_and_volume
 
 Ints = NDArray[np.int64]
 Floats = NDArray[np.float64]
@@ -43,12 +43,12 @@ def assemble(result: ChildResult, solid: NamedSolid, recipe: dict[str, Any]) -> 
         face_index = _owners(boundary, index[arrays["triangles"].T], arrays["owner"])
     except ValueError as error:
         raise MeshRefused(str(error)) from error
-    quality = scaled_jacobian(nodes, tets)
+    quality, volumes = quality_and_volume(nodes, tets)
     check_quality(quality, nodes, tets)
     areas = facet_areas(nodes, boundary)
     face_area: Floats = np.bincount(face_index, weights=areas, minlength=len(solid.faces)).astype(np.float64)
     _check_faces(face_area, arrays["tolerance"], solid)
-    volume = float(tetrahedron_volumes(nodes, tets).sum())
+    volume = float(volumes.sum())
     if abs(volume - solid.volume) > VOLUME_TOLERANCE * solid.volume:
         raise MeshRefused(f"volume of the mesh {volume:.8g} mm^3, of the solid {solid.volume:.8g} mm^3")
     facets = {name: boundary[:, np.isin(face_index, faces)] for name, faces in solid.regions.items()}

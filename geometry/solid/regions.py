@@ -7,9 +7,8 @@ from collections.abc import Sequence
 import numpy as np
 
 from geometry.outline import Arc, Edge
-from geometry.solid.body import Piece
+from geometry.solid.body import Piece, between
 from geometry.solid.cuts import Tool
-from geometry.solid.lofts import radius_of, sweep_of
 from geometry.solid.samples import FaceSamples
 
 TOLERANCE = 1e-4
@@ -17,35 +16,36 @@ TOLERANCE = 1e-4
 
 
 def side_distance(edge: Edge, y: np.ndarray, z: np.ndarray) -> np.ndarray:
-    """Distance (mm) of points (n,) from one edge of a section."""
+    """Distance (mm) of points (n,) from one edge of a section, or each from its own: ends and centre may be (n,)."""
+    ends = np.minimum(np.hypot(y - edge.start[0], z - edge.start[1]), np.hypot(y - edge.end[0], z - edge.end[1]))
     if isinstance(edge, Arc):
-        r = radius_of(edge)
-        first = np.arctan2(edge.start[1] - edge.centre[1], edge.start[0] - edge.centre[0])
-        angle = np.arctan2(z - edge.centre[1], y - edge.centre[0])
-        turned = ((angle - first) if edge.ccw else (first - angle)) % (2.0 * np.pi)
-        ends = np.minimum(np.hypot(y - edge.start[0], z - edge.start[1]), np.hypot(y - edge.end[0], z - edge.end[1]))
-        return np.where(turned <= sweep_of(edge), np.abs(np.hypot(y - edge.centre[0], z - edge.centre[1]) - r), ends)
+        cy, cz = edge.centre
+        first, last, angle = (np.arctan2(b - cz, a - cy) for a, b in (edge.start, edge.end, (y, z)))
+        turned, turn = ((v - first if edge.ccw else first - v) % (2.0 * np.pi) for v in (angle, last))
+        off = np.abs(np.hypot(y - cy, z - cz) - np.hypot(edge.start[0] - cy, edge.start[1] - cz))
+        return np.where(turned <= np.where(turn > 0.0, turn, 2.0 * np.pi), off, ends)
     dy, dz = edge.end[0] - edge.start[0], edge.end[1] - edge.start[1]
-    size = dy * dy + dz * dz
-    if size == 0.0:
-        return np.hypot(y - edge.start[0], z - edge.start[1])
-    t = np.clip(((y - edge.start[0]) * dy + (z - edge.start[1]) * dz) / size, 0.0, 1.0)
+    size = np.asarray(dy * dy + dz * dz)
+    along = (y - edge.start[0]) * dy + (z - edge.start[1]) * dz
+    t = np.clip(along / np.where(size > 0.0, size, 1.0), 0.0, 1.0)
     return np.hypot(y - edge.start[0] - t * dy, z - edge.start[1] - t * dz)
 
 
-def labels_at(point: np.ndarray, pieces: Sequence[Piece]) -> set[str]:
-    """Labels of the section sides that a point (3,) in member axes lies on.
+def labels_at(points: np.ndarray, pieces: Sequence[Piece]) -> list[set[str]]:
+    """Labels of the section sides that each of the points (n, 3), in member axes, lies on.
 
     Besides region names: ``~side`` on any side, ``~root fillet`` and the like on a corner of that kind.
     """
-    found: set[str] = set()
+    found: list[set[str]] = [set() for _ in points]
     for piece in pieces:
-        if not piece.stretch.start - TOLERANCE <= point[0] <= piece.stretch.end + TOLERANCE:
-            continue
-        for loop in piece.profile(float(point[0])).loops:
-            for side in loop:
-                if side_distance(side.edge, point[1:2], point[2:3])[0] <= TOLERANCE:
-                    found.update(side.labels, {"~side"}, {f"~{side.wall}"} if side.wall else set())
+        x = points[:, 0]
+        here = np.flatnonzero((x >= piece.stretch.start - TOLERANCE) & (x <= piece.stretch.end + TOLERANCE))
+        x, y, z = points[here].T
+        for first, last in zip(piece.first.loops, piece.last.loops, strict=True):
+            for a, b in zip(first, last, strict=True):
+                on = side_distance(between(a.edge, b.edge, piece.fraction(x)), y, z) <= TOLERANCE
+                for k in here[on]:
+                    found[k].update(a.labels, {"~side"}, {f"~{a.wall}"} if a.wall else set())
     return found
 
 
@@ -60,13 +60,8 @@ def side_labels(s: FaceSamples, pieces: Sequence[Piece]) -> set[str]:
     beside = np.zeros(len(s.points), bool)
     for stretch in (p.stretch for p in pieces if p.stretch.step and p.stretch.shoulder > 0.0):
         beside |= np.abs(s.points[:, 0] - stretch.start) <= stretch.shoulder + TOLERANCE
-    common: set[str] | None = None
-    for point in s.points[~beside]:
-        here = labels_at(point, pieces)
-        common = here if common is None else common & here
-        if not common:
-            return set()
-    return common or set()
+    here = labels_at(s.points[~beside], pieces)
+    return set.intersection(*here) if here else set()
 
 
 def end_label(s: FaceSamples, length: float) -> str:

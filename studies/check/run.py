@@ -9,8 +9,10 @@ from collections.abc import Mapping
 from concurrent.futures import ThreadPoolExecutor
 from contextlib import ExitStack
 from datetime import UTC, datetime
+from functools import cache
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
+from types import MappingProxyType
 from typing import TYPE_CHECKING
 
 from geometry.budget import Budget
@@ -168,15 +170,16 @@ def _compare(models: Models, name: str, started: str, clock: Clock) -> CheckResu
     return make_result(models, verdict, name, started, clock)
 
 
+@cache
 def versions() -> Mapping[str, str]:
-    """Version of Python and of each package that a number can depend on."""
+    """Version of Python and of each package that a number can depend on; read once in a process."""
     found = {"python": ".".join(map(str, sys.version_info[:3])), "results": str(RESULTS)}
     for package in PACKAGES:
         try:
             found[package] = version(package)
         except PackageNotFoundError:
             found[package] = "not installed"
-    return found
+    return MappingProxyType(found)
 
 
 def write_run(room: Path, result: CheckResult, models: Models, clock: Clock, pictures: bool) -> CheckResult:
