@@ -2,7 +2,7 @@
 
 Loads keep their direction and their place in the material: pressure does not turn with the surface, and a support's
 moment arm does not shorten. A force at a remote point keeps its direction while its lever turns with the region that
-carries it.
+carries it, and what keeps a region rigid turns with it.
 """
 
 from __future__ import annotations

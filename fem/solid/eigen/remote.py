@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import scipy.sparse as sp
 
-from fem.solid.region import surface_region
+from fem.solid.region import Region, surface_region
 from fem.solid.shape import Array
 from geometry.part import RemotePoint
 from geometry.problem import SolveError
@@ -55,14 +55,45 @@ def remote_mass_rows(mesh: NamedMesh, points: list[RemotePoint]) -> sp.csr_matri
     return sp.csr_matrix(sp.vstack(rows))
 
 
-def lever_rows(mesh: NamedMesh, point: RemotePoint, force: Array) -> tuple[Array, sp.csr_matrix]:
-    """(3,) weights and (3, 3 n) rows of the stiffness sum_i w_i b_i^T b_i of a dead force at the end of a lever.
+def lever_form(mesh: NamedMesh, point: RemotePoint, force: Array, moment: Array) -> Array:
+    """(3, 3) symmetric E: theta . E theta / 2 is what a dead force and moment at the point add, as the region turns by
+    theta, to the second variation of the potential, N mm.
 
-    The point moves by turn x (turn x arm) / 2 in second order, on which the force does work: its energy is
-    -F . (turn (turn . arm) - arm turn . turn) / 2.
+    The geometric stiffness takes every load for a dead traction on the surface. Force and moment come as the traction
+    t = force / A + w x r over the region, which moves by theta x r + theta x (theta x r) / 2 and does the second-order
+    work theta . (sym S_t - tr S_t 1) theta / 2 with the lever S_t = int t r^T dA, r from the region's centroid. In
+    truth the force acts at the end of the arm and does the same work with the lever S_F = force arm^T; the moment does
+    none, if theta is the rotation vector. The energy is the difference, with tr S_t = 0. (The region is taken to turn as it
+    is: what its own strain does to the mean rotation is left out.)
     """
     region = surface_region(mesh, point.on)
     arm = np.array(point.point, dtype=float) - region.centroid
-    S = -((np.outer(force, arm) + np.outer(arm, force)) / 2 - (force @ arm) * np.eye(3))
-    weights, Q = np.linalg.eigh(S)
-    return weights, sp.csr_matrix(sp.csr_matrix(Q.T) @ point_rows(mesh, point)[3:])
+    w = np.asarray(np.linalg.solve(region.second, moment + np.cross(arm, force)), dtype=float)
+    spread = np.trace(region.second) / 2.0 * np.eye(3) - region.second  # int r r^T dA
+    true, traction = np.outer(force, arm), cross_matrix(w) @ spread
+    return _energy(traction) - _energy(true)
+
+
+def rigid_form(nodes: Array, centre: Array, held: Array) -> Array:
+    """(3, 3) the same of a rigid region, whose nodes (3, k) move by theta x r + theta x (theta x r) / 2 themselves:
+    `held` (k, 3) is what keeps them rigid, the forces on the nodes beside the loads, N."""
+    return _energy(held.T @ (nodes - centre[:, None]).T)
+
+
+def _energy(lever: Array) -> Array:
+    """Symmetric form of the second-order work of forces with the lever sum f r^T on a turn."""
+    return np.asarray((lever + lever.T) / 2 - np.trace(lever) * np.eye(3))
+
+
+def turn_rows(mesh: NamedMesh, region: Region) -> sp.csr_matrix:
+    """(3, 3 n): mean rotation of a region."""
+    rows = region.mean_rows()[1].reshape(3, -1)
+    columns = (3 * region.nodes[:, None] + np.arange(3)).ravel()
+    return sp.csr_matrix((rows.ravel(), (np.repeat(np.arange(3), columns.size), np.tile(columns, 3))),
+                         shape=(3, 3 * mesh.nodes.shape[1]))  # fmt: skip
+
+
+def form_rows(form: Array, turn: sp.csr_matrix) -> tuple[Array, sp.csr_matrix]:
+    """(3,) weights and (3, 3 n) rows of the stiffness sum_i w_i b_i^T b_i of theta . form theta / 2, theta = turn u."""
+    weights, Q = np.linalg.eigh(form)
+    return weights, sp.csr_matrix(sp.csr_matrix(Q.T) @ turn)
