@@ -5,6 +5,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -14,8 +15,10 @@ if TYPE_CHECKING:
 __all__ = ["build_solid"]
 
 
-def build_solid(part: Part) -> NamedSolid:
+def build_solid(part: Part, early: Callable[[NamedSolid], None] | None = None) -> NamedSolid:
     """The solid of `part` (global axes, mm) with its regions, size hints, sharp edges and slices.
+
+    `early` is given the solid as soon as it can be meshed, yet without STEP text, sharp edges and slices.
 
     Raises
     ------
@@ -25,4 +28,4 @@ def build_solid(part: Part) -> NamedSolid:
     """
     from geometry.solid.build import build_solid as build
 
-    return build(part)
+    return build(part, early)

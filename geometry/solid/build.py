@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass, field
-from typing import Any
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, field, replace
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -59,7 +59,7 @@ class _Work:
         self.slack += BAND * sum(r.size for r in made)
 
 
-def build_solid(part: Part) -> NamedSolid:
+def build_solid(part: Part, early: Callable[[NamedSolid], None] | None = None) -> NamedSolid:
     """See `geometry.solid.build_solid`."""
     if len(part.members) != 1:
         raise SolidError(f"members: {len(part.members)} given; the solid builder makes parts of one member.")
@@ -69,11 +69,18 @@ def build_solid(part: Part) -> NamedSolid:
     _cut(work)
     work.add_radii(*edge_radii(work.solid, member, work.pieces, work.tools, on_cuts=True))
     _check_volume(work)
-    # Sliced before the patches are drawn: the same solid with fewer faces.
-    slices = slices_of(work.solid, slice_places(work.length, _avoid(work)), work.reach)
-    strips = strips_of(part, member, frame.length)
-    work.solid = imprinted(work.solid, strips, work.pieces, work.reach)
-    return _named(part, work, frame, strips, slices)
+    plain, strips = work.solid, strips_of(part, member, frame.length)
+    work.solid = imprinted(plain, strips, work.pieces, work.reach)
+    named = _named(part, work, frame, strips)
+    if early is not None:
+        early(named.solid)
+    return replace(
+        named.solid,
+        step=kernel.step_bytes(named.world, part.title),
+        sharp_edges=tuple(sharp_edges(work.solid, frame, member, work.pieces, named.names, named.tool_faces)),
+        # Sliced without the patches: the same solid with fewer faces.
+        slices=slices_of(plain, slice_places(work.length, _avoid(work)), work.reach),
+    )
 
 
 def _body(member: Member, frame: Frame) -> _Work:
@@ -135,7 +142,17 @@ def _check_volume(work: _Work) -> None:
         )
 
 
-def _named(part: Part, work: _Work, frame: Frame, strips: Sequence[Strip], slices: kernel.Array) -> NamedSolid:
+class _Named(NamedTuple):
+    """The solid as the mesher needs it; the kernel's solid in its place; the labels of each face, the faces of each
+    tool."""
+
+    solid: NamedSolid
+    world: Any
+    names: Sequence[set[str]]
+    tool_faces: Sequence[tuple[Tool, Sequence[int]]]
+
+
+def _named(part: Part, work: _Work, frame: Frame, strips: Sequence[Strip]) -> _Named:
     member, pieces, solid = work.member, work.pieces, work.solid
     samples = sample_faces(solid)
     names = [side_labels(s, pieces) for s in samples]
@@ -148,9 +165,9 @@ def _named(part: Part, work: _Work, frame: Frame, strips: Sequence[Strip], slice
     marks = tuple(kernel.face_mark(f) for f in kernel.faces_of(again))
     _check_order(solid, marks, frame)
     volume, c = kernel.volume_of(again)
-    return NamedSolid(
+    made = NamedSolid(
         brep=data,
-        step=kernel.step_bytes(world, part.title),
+        step=b"",
         faces=marks,
         regions=regions,
         volume=volume,
@@ -158,10 +175,9 @@ def _named(part: Part, work: _Work, frame: Frame, strips: Sequence[Strip], slice
         centroid=(float(c[0]), float(c[1]), float(c[2])),
         volume_estimate=work.estimate,
         hints=tuple(size_hints(member, pieces, samples, names, tool_faces, work.radii)),
-        sharp_edges=tuple(sharp_edges(solid, frame, member, pieces, names, tool_faces)),
         least_wall=least_wall(member, pieces),
-        slices=slices,
     )
+    return _Named(made, world, names, tool_faces)
 
 
 def _avoid(work: _Work) -> list[tuple[float, float]]:

@@ -151,16 +151,17 @@ def prepare_solver(clock: Clock) -> None:
 
 def _build_and_mesh(child: SolidChild, part: Part, budget: Budget, clock: Clock,
                     stop: threading.Event) -> tuple[NamedSolid, NamedMesh]:
-    """Wait for the solid, then mesh it."""
+    """Mesh the solid as soon as it can be; what else is told of it (slices, STEP text) is made meanwhile."""
     with blamed_on("solid"):
-        named_solid, seconds = child.result()
-    clock.finish("solid", seconds, f"{len(named_solid.faces)} faces, {named_solid.volume:.6g} mm^3")
+        early, seconds = child.meshable()
+    clock.finish("solid", seconds, f"{len(early.faces)} faces, {early.volume:.6g} mm^3")
     with clock.stage("mesh"):
         from mesher import mesh_solid
 
-        mesh = mesh_solid(named_solid, part.accuracy, budget, stop=stop)
+        mesh = mesh_solid(early, part.accuracy, budget, stop=stop)
         clock.note("mesh", f"{mesh.tets.shape[1]} tetrahedra, {mesh.nodes.shape[1]} nodes")
-    return named_solid, mesh
+    with blamed_on("solid"):
+        return child.result()[0], mesh
 
 
 def _compare(models: Models, name: str, started: str, clock: Clock) -> CheckResult:

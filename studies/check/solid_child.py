@@ -14,6 +14,8 @@ import pickle
 import socket
 import threading
 import time
+from collections.abc import Sequence
+from typing import Any
 
 from geometry.budget import Budget
 from geometry.endings import ended_from_outside, signal_name, told_from_outside
@@ -40,11 +42,11 @@ class SolidChild:
         self._seconds = max(budget.seconds, LEAST_SECONDS)
         self._template = template or cad_template()
         self._template.start()
-        self._answer = b""
+        self._answers: list[bytes] = []
         self._fault: TemplateFailure | None = None
         self._code: int | None = None
         self._deadline: float | None = None
-        self._over = threading.Event()
+        self._over, self._meshable = threading.Event(), threading.Event()
         self._left = threading.Event()
         # In a thread: the kernel may still be loading, and the socket must be drained while the caller works.
         self._talk = threading.Thread(target=self._converse, args=(pickle.dumps(part),), name="solid", daemon=True)
@@ -63,7 +65,7 @@ class SolidChild:
                                         self._left.is_set)
         except TemplateFailure as fault:
             self._fault = fault
-            self._over.set()
+            self._end()
             return
         with job:
             self._deadline = time.monotonic() + self._seconds
@@ -74,15 +76,28 @@ class SolidChild:
             self._code = code
             if code is not None:
                 talk.join(timeout=60.0)  # what it sent before it ended
+        self._end()
+
+    def _end(self) -> None:
         self._over.set()
+        self._meshable.set()
 
     def _exchange(self, job: Job, question: bytes) -> None:
         with contextlib.suppress(OSError):  # the child is gone: `result` says so
             job.data.sendall(len(question).to_bytes(8, "big") + question)
-            pieces = []
+            held = bytearray()
             while piece := job.data.recv(1 << 20):
-                pieces.append(piece)
-            self._answer = b"".join(pieces)
+                held += piece
+                while len(held) >= 8 and len(held) >= (end := 8 + int.from_bytes(held[:8], "big")):
+                    self._answers.append(bytes(held[8:end]))
+                    del held[:end]
+                    self._meshable.set()
+
+    def meshable(self) -> tuple[NamedSolid, float]:
+        """Wait for the solid as `build_solid` gives it early: ready to be meshed, and not yet whole. As `result`."""
+        self._meshable.wait()
+        kind, solid, seconds = _read_answer(self._answers[:1])
+        return (solid, seconds) if kind == "early" else self.result()
 
     def result(self) -> tuple[NamedSolid, float]:
         """Wait for the solid; returns it with the seconds it took.
@@ -94,7 +109,8 @@ class SolidChild:
         if code is None:
             raise SolidError(f"building the solid took longer than {self._seconds:g} s and was "
                              "stopped; look for a very small radius or a cut that only grazes the part")
-        if not self._answer:
+        kind, content, seconds = _read_answer(self._answers[-1:])
+        if kind not in ("solid", "error"):
             if killer := ended_from_outside(code):
                 raise SolidError(told_from_outside("the CAD process that builds the solid", killer,
                                                    self._budget.memory) + "; nothing was written")
@@ -102,10 +118,13 @@ class SolidChild:
             raise SolidError(f"the CAD kernel crashed ({how}) while it built the solid; nothing was written. "
                              "Leave out edge radii and shoulder fillets one by one to find the one at fault, "
                              f"or allow more than {self._budget.memory} MiB of memory")
-        kind, content, seconds = pickle.loads(self._answer)  # noqa: S301 - from our own child, over a socket
         if kind == "solid":
             return content, seconds
         raise SolidError(content)
+
+
+def _read_answer(answers: Sequence[bytes]) -> tuple[str, Any, float]:
+    return pickle.loads(answers[0]) if answers else ("", None, 0.0)  # noqa: S301 - from our own child, over a socket
 
 
 def prepare() -> None:
@@ -133,13 +152,19 @@ def serve(order: dict[str, int], data: socket.socket) -> int:
     try:
         from geometry.solid import build_solid
 
-        answer: tuple[str, object, float] = ("solid", build_solid(part), time.perf_counter() - started)
+        whole = build_solid(part, lambda solid: _send(data, ("early", solid, time.perf_counter() - started)))
+        answer: tuple[str, object, float] = ("solid", whole, time.perf_counter() - started)
     except HaunchError as error:
         answer = ("error", str(error), 0.0)
     except Exception as error:  # noqa: BLE001 - handed to the parent, which raises it
         answer = ("error", f"the solid builder failed ({type(error).__name__}: {error})", 0.0)
-    data.sendall(pickle.dumps(answer))
+    _send(data, answer)
     return 0
+
+
+def _send(data: socket.socket, answer: tuple[str, object, float]) -> None:
+    content = pickle.dumps(answer)
+    data.sendall(len(content).to_bytes(8, "big") + content)
 
 
 def _read(data: socket.socket, size: int) -> bytes:

@@ -137,6 +137,23 @@ def test_a_crash_of_the_cad_kernel_is_told_not_suffered(helpers: ModuleType, cad
         assert caught.value.stage == "solid"
 
 
+def test_the_solid_can_be_meshed_before_it_is_whole(helpers: ModuleType) -> None:
+    with SolidChild(helpers.make_part(), Budget()) as child:
+        early, seconds = child.meshable()
+        whole, all_seconds = child.result()
+    assert 0 < seconds < all_seconds and early.step == b"" and len(whole.step) > 1000 and len(whole.slices) == 9
+    assert dataclasses.replace(whole, step=b"", sharp_edges=(), slices=early.slices) == early
+
+
+def test_a_crash_after_the_solid_can_be_meshed_is_told(helpers: ModuleType, cad: Callable[[str], Template]) -> None:
+    template = cad("from studies.check.solid_child import _send; _send(data, ('early', 'a solid', 0.5)); "
+                   "os.kill(os.getpid(), signal.SIGSEGV)")
+    with SolidChild(helpers.make_part(), Budget(), template) as child:
+        assert child.meshable() == ("a solid", 0.5)
+        with pytest.raises(RunError, match="SIGSEGV"):
+            child.result()
+
+
 def test_a_cad_process_ended_from_outside_is_no_fault_of_the_part(helpers: ModuleType,
                                                                   cad: Callable[[str], Template]) -> None:
     with SolidChild(helpers.make_part(), Budget(), cad("os.kill(os.getpid(), signal.SIGKILL)")) as child:
