@@ -23,6 +23,7 @@ from studies.check.record import SLOWER_SOLVER, kept_cases, make_result
 from studies.check.result import CheckResult
 from studies.check.solid_child import SolidChild, cad_template
 from studies.check.stages import Clock, Event, Listener, blamed_on
+from studies.check.threads import dense_products_in_one_thread
 from studies.check.version import RESULTS
 
 if TYPE_CHECKING:
@@ -120,11 +121,12 @@ def build_models(part: Part, budget: Budget, clock: Clock, solver: Choice = "aut
         with clock.stage("beam"):
             from fem.beam import solve_beam
 
+            stack.enter_context(dense_products_in_one_thread())
             beam = solve_beam(part, budget)
         with blamed_on("solve"):  # what it needs is loaded while the mesh is made
             prepare_solver(clock)
         named_solid, mesh = meshed.result()
-    with clock.stage("solve"):
+    with clock.stage("solve"), dense_products_in_one_thread():
         from fem.solid import solve_solid
 
         solid = solve_solid(part, mesh, budget, progress=lambda text: clock.note("solve", text),
