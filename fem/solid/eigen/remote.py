@@ -63,8 +63,8 @@ def lever_form(mesh: NamedMesh, point: RemotePoint, force: Array, moment: Array)
     t = force / A + w x r over the region, which moves by theta x r + theta x (theta x r) / 2 and does the second-order
     work theta . (sym S_t - tr S_t 1) theta / 2 with the lever S_t = int t r^T dA, r from the region's centroid. In
     truth the force acts at the end of the arm and does the same work with the lever S_F = force arm^T; the moment does
-    none, if theta is the rotation vector. The energy is the difference, with tr S_t = 0. (The region is taken to turn as
-    it is: what its own strain does to the mean rotation is left out.)
+    none, if theta is the rotation vector. The energy is the difference, with tr S_t = 0. What the
+    region's own strain does to its mean rotation is left out.
     """
     region = surface_region(mesh, point.on)
     arm = np.array(point.point, dtype=float) - region.centroid
