@@ -186,7 +186,7 @@ class Sections:
         at = 0.5 * (piece.start + piece.end) if piece.constant else x
         if at not in self._shear:
             step = 1e-4 * self.length
-            self._shear[at] = (level_shear(self.outline, at, step, 1), level_shear(self.outline, at, step, 0))
+            self._shear[at] = level_shear(self.outline, at, step)
         return self._shear[at]
 
     def gross(self, x: Array, side: str = "after") -> LineProperties:

@@ -20,9 +20,8 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.beam.faces import curve
 from fem.beam.interpolate import loops
-from geometry.outline import Arc, Outline
+from geometry.outline import Arc, Line, Outline
 
 Array = NDArray[np.float64]
 _GAUSS = np.polynomial.legendre.leggauss(6)
@@ -34,14 +33,23 @@ def polygon_edges(outline: Outline, axis: int) -> Array:
 
     `axis` is 1 for shear along z, 0 along y. Material lies to the left (the mirror image for axis 0 is turned round).
     """
-    edges = []
-    for loop in loops(outline):
-        for e in loop:
-            p = curve(e, np.linspace(0.0, 1.0, ARC_CHORDS + 1 if isinstance(e, Arc) else 2))[0]
-            if axis == 0:
-                p = p[::-1, ::-1]
-            edges.append(np.hstack([p[:-1], p[1:]]))
-    return np.vstack(edges)
+    edges = [e for loop in loops(outline) for e in loop]
+    straight = np.array([(*e.start, *e.end) for e in edges if isinstance(e, Line)]).reshape(-1, 4)
+    arcs = np.array([(*e.centre, *e.start, *e.end, 1.0 if e.ccw else -1.0) for e in edges if isinstance(e, Arc)])
+    found = np.vstack([straight, _chords(arcs.reshape(-1, 7))])
+    return found if axis == 1 else found[:, ::-1]
+
+
+def _chords(arcs: Array) -> Array:
+    """(k, 4) chords of arcs (m, 7): centre, start, end, and 1 for those that turn counter-clockwise, else -1."""
+    centre, start, end, way = arcs[:, None, :2], arcs[:, None, 2:4], arcs[:, None, 4:6], arcs[:, 6:]
+    first, last = (np.arctan2(p[..., 1], p[..., 0]) for p in (start - centre, end - centre))
+    turn = (way * (last - first)) % (2.0 * np.pi)
+    turn = way * np.where(turn < 1e-12, 2.0 * np.pi, turn)
+    angle = first + turn * np.linspace(0.0, 1.0, ARC_CHORDS + 1)
+    radius = np.hypot(*(start - centre)[:, 0].T)[:, None, None]
+    p = centre + radius * np.stack([np.cos(angle), np.sin(angle)], axis=-1)
+    return np.concatenate([p[:, :-1], p[:, 1:]], axis=-1).reshape(-1, 4)
 
 
 def above(edges: Array, levels: Array) -> tuple[Array, Array, Array]:
@@ -64,23 +72,46 @@ def level_form(outline_at: Callable[[float], Outline], x: float, step: float, ax
 
     M is positive with tension on the side of greater b and dM/dx = V; both about the centroid.
     """
-    centre = polygon_edges(outline_at(x), axis)
-    levels, weights = _levels(centre)
-    middle, before, after = (_shares(polygon_edges(outline_at(x + d), axis), levels) for d in (0.0, -step, step))
+    return _form(_nearby(outline_at, x, step), step, axis)
+
+
+_Nearby = tuple[Array, Array, Array]
+"""Edges for shear along z at a place, a step before it and a step after it."""
+
+
+def _nearby(outline_at: Callable[[float], Outline], x: float, step: float) -> _Nearby:
+    middle, before, after = (polygon_edges(outline_at(x + d), 1) for d in (0.0, -step, step))
+    return middle, before, after
+
+
+def _seen(edges: _Nearby, axis: int) -> _Nearby:
+    return edges if axis == 1 else (edges[0][:, ::-1], edges[1][:, ::-1], edges[2][:, ::-1])
+
+
+def _form(nearby: _Nearby, step: float, axis: int) -> tuple[Array, float]:
+    edges = _seen(nearby, axis)
+    levels, weights = _levels(edges[0])
+    middle, before, after = (_shares(e, levels) for e in edges)
     F_x, S_x = ((n - p) / (2.0 * step) for n, p in zip(after[:2], before[:2], strict=True))
     centroid_x = (after[3] - before[3]) / (2.0 * step)
     S, width = middle[1], middle[2]
     rows = np.stack([S, F_x - centroid_x * S, S_x])
-    good = width > 1e-9 * np.ptp(centre[:, [1, 3]])
+    good = width > 1e-9 * np.ptp(edges[0][:, [1, 3]])
     form = np.einsum("il,jl,l->ij", rows[:, good], rows[:, good], weights[good] / width[good])
     return form, float(middle[3])
 
 
-def level_shear(outline_at: Callable[[float], Outline], x: float, step: float, axis: int) -> Array:
-    """(3,) mean shear stress at the centroid's level for unit V, N and M, positive along the axis of the shear."""
-    edges = polygon_edges(outline_at(x), axis)
-    level = np.array([_shares(edges, np.zeros(1))[3]])
-    middle, before, after = (_shares(polygon_edges(outline_at(x + d), axis), level) for d in (0.0, -step, step))
+def level_shear(outline_at: Callable[[float], Outline], x: float, step: float) -> tuple[Array, Array]:
+    """(3,) each: mean shear stress at the centroid's level for unit V, N and M, along z and along y, positive along
+    the axis of the shear."""
+    nearby = _nearby(outline_at, x, step)
+    along_z, along_y = (_level_shear(_seen(nearby, axis), step) for axis in (1, 0))
+    return along_z, along_y
+
+
+def _level_shear(edges: _Nearby, step: float) -> Array:
+    level = np.array([_shares(edges[0], np.zeros(1))[3]])
+    middle, before, after = (_shares(e, level) for e in edges)
     F_x, S_x = ((n - p) / (2.0 * step) for n, p in zip(after[:2], before[:2], strict=True))
     slope = (after[3] - before[3]) / (2.0 * step)
     return np.array([middle[1][0], F_x[0] - slope * middle[1][0], S_x[0]]) / middle[2][0]
@@ -115,8 +146,9 @@ def _levels(edges: Array) -> tuple[Array, Array]:
 def tapered_shear(outline_at: Callable[[float], Outline], x: float, step: float, compliance: Array) -> Array:
     """(5, 5) form Q of `LineProperties.shear` of a tapered section from its `compliance` (2, 2), 1/mm^2."""
     Q = np.zeros((5, 5))
+    nearby = _nearby(outline_at, x, step)
     for axis, (V, M, sign) in ((1, (1, 3, 1.0)), (0, (0, 4, -1.0))):
-        form, _ = level_form(outline_at, x, step, axis)
+        form, _ = _form(nearby, step, axis)
         form = form * compliance[axis, axis] / form[0, 0]
         # About z, tension on the +y side belongs to a negative Mz, and -Mz grows with Vy.
         index, signs = np.array([V, 2, M]), np.array([1.0, 1.0, sign])
