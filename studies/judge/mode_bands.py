@@ -23,6 +23,8 @@ from studies.judge.bands import CaseFacts, Share, cuts, steps, taper
 from studies.judge.context import Context
 
 Array = NDArray[np.float64]
+WARPING_HELD = "warping held at the ends"
+"""Not needed where the beam model predicts what it does."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -137,7 +139,7 @@ def _torsion(ctx: Context, facts: ModeFacts) -> Iterator[Share]:
         yield Share("torsion constant and restrained warping", size * facts.twist)
         if not facts.open_thin:
             # A solid or closed section cannot warp at a clamped end, over about a third of its size: stiffer there.
-            yield Share("warping held at the ends", 0.3 * facts.waves * facts.twist / ctx.slenderness)
+            yield Share(WARPING_HELD, 0.3 * facts.waves * facts.twist / ctx.slenderness)
 
 
 def _carried(ctx: Context, facts: ModeFacts) -> Iterator[Share]:

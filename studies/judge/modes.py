@@ -24,7 +24,7 @@ from studies.check.studied import ModePair
 from studies.check.words import JudgementWord
 from studies.judge.bands import CaseFacts
 from studies.judge.context import Context
-from studies.judge.mode_bands import ModeFacts, mode_reasons, motions, twist_of, waves_of
+from studies.judge.mode_bands import WARPING_HELD, ModeFacts, mode_reasons, motions, twist_of, waves_of
 from studies.judge.mode_pairs import Match, match
 
 Study = Literal["vibration", "buckling"]
@@ -109,10 +109,12 @@ class _Lists:
         scale = max(abs(v) for v in (ours, theirs) if v is not None)
         causes = self._predicted(found.beam)
         expected = sum(c.difference for c in causes)
-        why = tuple(Reason(s.text, s.fraction * scale) for s in mode_reasons(self.ctx, facts))
-        why += tuple(Reason(f"what is left open by: {c.text}", c.band) for c in causes if c.band > 0.0)
+        warping = any("warping" in c.text for c in causes)
+        why = tuple(Reason(s.text, s.fraction * scale) for s in mode_reasons(self.ctx, facts)
+                    if not (warping and s.text == WARPING_HELD))
         band = sum(r.size for r in why)
-        word, look = self._word(found, band, expected)
+        why += tuple(Reason(f"what is left open by: {c.text}", c.band) for c in causes if c.band > 0.0)
+        word, look = self._word(found, band, expected, sum(c.band for c in causes))
         difference = None
         if ours is not None and theirs is not None:
             difference = ours - theirs
@@ -126,11 +128,12 @@ class _Lists:
                         solid.residual if solid else None, word)
         return pair, mode
 
-    def _word(self, found: Match, band: float, expected: float) -> tuple[JudgementWord, str]:
-        """The judgement, and why or where to look. `band` and `expected`: in the unit of the values."""
+    def _word(self, found: Match, band: float, expected: float, left_open: float) -> tuple[JudgementWord, str]:
+        """The judgement, and why or where to look. `band`, what is `expected` and what this leaves open: in the unit
+        of the values. What a cause leaves open counts only together with what it predicts."""
         if found.solid is None:
             assert found.beam is not None
-            return self._beam_alone(self.beam[found.beam], band, expected)
+            return self._beam_alone(self.beam[found.beam], band + left_open, expected)
         solid = self.solid[found.solid]
         walls = solid.kind == "local" or solid.section_share < WALLS
         if walls:
@@ -146,7 +149,7 @@ class _Lists:
         difference, allowed = solid.value - beam.value, band + 1e-9 * abs(beam.value)
         if abs(difference) <= allowed:
             return "agrees", ""
-        if expected and abs(difference - expected) <= allowed:
+        if expected and abs(difference - expected) <= allowed + left_open:
             return "explained", ""
         hint = "supports (held more or less than meant?), density and carried masses" if beam.case == "" else \
             "supports (held more or less than meant?), the load and where it acts"
