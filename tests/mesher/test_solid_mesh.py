@@ -15,7 +15,7 @@ from geometry.named_solid import NamedSolid
 from geometry.problem import MeshError
 from mesher import NamedMesh, mesh_solid, to_skfem
 from mesher.assemble import LEAST_QUALITY
-from mesher.numbering import TET_EDGES, TRI_EDGES
+from mesher.numbering import TET_EDGES, TRI_EDGES, near_order
 from mesher.solid_mesher import RECIPE_FORMAT, mesh_digest
 
 
@@ -31,6 +31,17 @@ def test_numbering_is_scikit_fems(which: str, request: pytest.FixtureRequest) ->
             assert np.array_equal(basis.element_dofs[3 * node + component], 3 * mesh.tets[node] + component)
     # scikit-fem maps the element's own points: they land on our nodes, curved ones included.
     assert np.abs(basis.doflocs[:, 0::3] - mesh.nodes).max() <= 1e-12 * np.abs(mesh.nodes).max()
+
+
+def test_neighbours_have_near_numbers(plate_mesh: NamedMesh) -> None:
+    """The distance between the ends of an edge, against that of corners in random order: a third of all of them."""
+    corners = int(plate_mesh.tets[:4].max()) + 1
+    ends = np.hstack([plate_mesh.tets[list(edge)] for edge in TET_EDGES])
+    apart = np.abs(ends[0] - ends[1])
+    assert apart.mean() < 0.1 * corners / 3
+    assert (np.diff(plate_mesh.tets[:4].min(axis=0)) >= 0).all()  # and the elements follow them
+    count = int(near_order(plate_mesh.tets[:4]).max()) + 1
+    assert np.array_equal(np.unique(near_order(plate_mesh.tets[:4])), np.arange(count)) and count == corners
 
 
 @pytest.mark.parametrize("which", ["plate_mesh", "rod_mesh"])

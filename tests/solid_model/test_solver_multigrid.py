@@ -18,6 +18,7 @@ from fem.solid.model import SolidModel, build_model
 from fem.solid.solver.choose import choose
 from fem.solid.solver.elimination import Elimination
 from fem.solid.solver.estimate import multigrid_memory
+from fem.solid.solver.smoother import BlockJacobi
 from fem.solid.solver.transfer import Transfer
 from fem.solid.system import HeldSystem
 from geometry.budget import Budget
@@ -91,6 +92,30 @@ def test_the_transfer_gives_held_motions_and_its_transpose(kind: str) -> None:
     assert (transfer.restrict(r) * y).sum() == pytest.approx((r * u).sum(), rel=1e-12)
     lifted = rng.normal(size=(held.T.shape[1], 2))
     assert held.gather(held.lift(lifted)) == pytest.approx(lifted, abs=1e-12)
+
+
+@pytest.mark.parametrize("columns", [1, 2, 3, 7, 8])
+def test_a_step_of_the_smoother_is_that_of_dense_algebra(columns: int) -> None:
+    model = make(bent_mesh())
+    jacobi = BlockJacobi(model.K, Elimination(model.constraints.T), 1)
+    n = model.K.shape[0]
+    inverse = sp.block_diag(list(jacobi.blocks.astype(float))).tocsr()
+    left, change, d, z = np.random.default_rng(5).normal(size=(4, n, columns)).astype(np.float32)
+    d = d * np.float32(np.abs(inverse).max())
+    z = z * np.float32(np.abs(inverse).max())
+    for taken, old in ((None, 0.0), (change, 0.0), (change, 0.3)):
+        there = left.astype(float) - (0.0 if taken is None else taken)
+        step = old * d + 0.7 * (inverse @ there)
+        end = z + 1.3 * step
+        jacobi.step(left, taken, d, z, old, 0.7, 1.3)
+        assert gap(left, there) < 1e-6
+        assert gap(d, step) < 1e-6
+        assert gap(z, end) < 1e-6
+    again = [a.copy() for a in (left, d, z)]
+    jacobi.step(left, change, d, z, 0.3, 0.7, 1.3)
+    jacobi.threads = 3
+    jacobi.step(again[0], change, again[1], again[2], 0.3, 0.7, 1.3)
+    assert all(np.array_equal(a, b) for a, b in zip(again, (left, d, z), strict=True))
 
 
 def test_iterations_do_not_grow_with_the_mesh(monkeypatch: pytest.MonkeyPatch) -> None:

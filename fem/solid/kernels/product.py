@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
-from typing import Any
+from collections.abc import Callable
+from typing import Any, cast
 
 import numpy as np
 from numpy.typing import NDArray
 
 from fem.solid.kernels.jit import kernel
+from fem.solid.kernels.lanes import load, plus, store, times, times_plus
 from fem.solid.kernels.parallel import ranges, run, weighted_ranges
 
 Int = NDArray[np.int32]
@@ -50,102 +52,92 @@ def _product(first, last, indptr, indices, blocks, x, y):  # type: ignore[no-unt
         y[t + two] += s2
 
 
+def _by_lanes(width: int) -> Callable[..., None]:
+    """As `_product`, of `width` columns side by side, which begin at `column` of the rows of x and y `stride` long."""
+
+    @kernel
+    def multiply(first, last, indptr, indices, blocks, x, y, column, stride):  # type: ignore[no-untyped-def]
+        one, two = np.uint64(stride), np.uint64(2 * stride)
+        three, shift, begin = np.uint64(3 * stride), np.uint64(3 * stride * first), np.uint64(column)
+        for i in range(first, last):
+            r = np.uint64(i) * three + begin
+            x0, x1, x2 = load(x, r, width), load(x, r + one, width), load(x, r + two, width)
+            k = np.uint64(9 * np.int64(indptr[i]))
+            a, b, d, e, f, g, h, o, p = _entries(blocks, k)
+            s0 = times_plus(a, x0, times_plus(b, x1, times(d, x2)))
+            s1 = times_plus(e, x0, times_plus(f, x1, times(g, x2)))
+            s2 = times_plus(h, x0, times_plus(o, x1, times(p, x2)))
+            for n in range(indptr[i] + 1, indptr[i + 1]):
+                a, b, d, e, f, g, h, o, p = _entries(blocks, np.uint64(n) * np.uint64(9))
+                c = np.uint64(indices[np.uint64(n)]) * three + begin
+                t = c - shift
+                u, v, w = load(x, c, width), load(x, c + one, width), load(x, c + two, width)
+                s0 = times_plus(a, u, times_plus(b, v, times_plus(d, w, s0)))
+                s1 = times_plus(e, u, times_plus(f, v, times_plus(g, w, s1)))
+                s2 = times_plus(h, u, times_plus(o, v, times_plus(p, w, s2)))
+                store(y, t, times_plus(a, x0, times_plus(e, x1, times_plus(h, x2, load(y, t, width)))))
+                t += one
+                store(y, t, times_plus(b, x0, times_plus(f, x1, times_plus(o, x2, load(y, t, width)))))
+                t += one
+                store(y, t, times_plus(d, x0, times_plus(g, x1, times_plus(p, x2, load(y, t, width)))))
+            t = r - shift
+            store(y, t, plus(load(y, t, width), s0))
+            store(y, t + one, plus(load(y, t + one, width), s1))
+            store(y, t + two, plus(load(y, t + two, width), s2))
+
+    return cast(Callable[..., None], multiply)
+
+
 @kernel
-def _product_two(first, last, indptr, indices, blocks, x, y):  # type: ignore[no-untyped-def]
-    """As `_product`, of two columns side by side."""
+def _entries(blocks, k):  # type: ignore[no-untyped-def]
     one, two, three = np.uint64(1), np.uint64(2), np.uint64(3)
-    four, five = np.uint64(4), np.uint64(5)
-    shift = np.uint64(6 * first)
-    for i in range(first, last):
-        r = np.uint64(6 * i)
-        x0, x1, x2, x3, x4, x5 = x[r], x[r + one], x[r + two], x[r + three], x[r + four], x[r + five]
-        k = np.uint64(9 * np.int64(indptr[i]))
-        a, b, d = blocks[k], blocks[k + one], blocks[k + two]
-        e, f, g = blocks[k + three], blocks[k + four], blocks[k + five]
-        h, o, p = blocks[k + np.uint64(6)], blocks[k + np.uint64(7)], blocks[k + np.uint64(8)]
-        s0, s1 = a * x0 + b * x2 + d * x4, a * x1 + b * x3 + d * x5
-        s2, s3 = e * x0 + f * x2 + g * x4, e * x1 + f * x3 + g * x5
-        s4, s5 = h * x0 + o * x2 + p * x4, h * x1 + o * x3 + p * x5
-        for n in range(indptr[i] + 1, indptr[i + 1]):
-            k = np.uint64(n) * np.uint64(9)
-            c = np.uint64(indices[np.uint64(n)]) * np.uint64(6)
-            t = c - shift
-            a, b, d = blocks[k], blocks[k + one], blocks[k + two]
-            e, f, g = blocks[k + three], blocks[k + four], blocks[k + five]
-            h, o, p = blocks[k + np.uint64(6)], blocks[k + np.uint64(7)], blocks[k + np.uint64(8)]
-            u0, u1, v0, v1, w0, w1 = x[c], x[c + one], x[c + two], x[c + three], x[c + four], x[c + five]
-            s0 += a * u0 + b * v0 + d * w0
-            s1 += a * u1 + b * v1 + d * w1
-            s2 += e * u0 + f * v0 + g * w0
-            s3 += e * u1 + f * v1 + g * w1
-            s4 += h * u0 + o * v0 + p * w0
-            s5 += h * u1 + o * v1 + p * w1
-            y[t] += a * x0 + e * x2 + h * x4
-            y[t + one] += a * x1 + e * x3 + h * x5
-            y[t + two] += b * x0 + f * x2 + o * x4
-            y[t + three] += b * x1 + f * x3 + o * x5
-            y[t + four] += d * x0 + g * x2 + p * x4
-            y[t + five] += d * x1 + g * x3 + p * x5
-        t = r - shift
-        y[t] += s0
-        y[t + one] += s1
-        y[t + two] += s2
-        y[t + three] += s3
-        y[t + four] += s4
-        y[t + five] += s5
+    a, b, d = blocks[k], blocks[k + one], blocks[k + two]
+    k += three
+    e, f, g = blocks[k], blocks[k + one], blocks[k + two]
+    k += three
+    return a, b, d, e, f, g, blocks[k], blocks[k + one], blocks[k + two]
 
 
-@kernel
-def _product_columns(first, last, indptr, indices, blocks, x, y):  # type: ignore[no-untyped-def]
-    """As `_product`, of many columns: x and y (3 n, k)."""
-    one, two = np.uint64(1), np.uint64(2)
-    shift = np.uint64(3 * first)
-    for i in range(first, last):
-        r = np.uint64(3 * i)
-        s = r - shift
-        for n in range(indptr[i], indptr[i + 1]):
-            k = np.uint64(n)
-            c = np.uint64(indices[k]) * np.uint64(3)
-            t = c - shift
-            a, b, d = blocks[k, 0, 0], blocks[k, 0, 1], blocks[k, 0, 2]
-            e, f, g = blocks[k, 1, 0], blocks[k, 1, 1], blocks[k, 1, 2]
-            h, o, p = blocks[k, 2, 0], blocks[k, 2, 1], blocks[k, 2, 2]
-            for m in range(x.shape[1]):
-                q = np.uint64(m)
-                u, v, w = x[c, q], x[c + one, q], x[c + two, q]
-                y[s, q] += a * u + b * v + d * w
-                y[s + one, q] += e * u + f * v + g * w
-                y[s + two, q] += h * u + o * v + p * w
-            if c > r:
-                for m in range(x.shape[1]):
-                    q = np.uint64(m)
-                    u, v, w = x[r, q], x[r + one, q], x[r + two, q]
-                    y[t, q] += a * u + e * v + h * w
-                    y[t + one, q] += b * u + f * v + o * w
-                    y[t + two, q] += d * u + g * v + p * w
+_MULTIPLY = {width: _by_lanes(width) for width in (2, 4, 8)}
+
+
+def padded(columns: int) -> int:
+    """Columns that a product of `columns` really takes: 1, 2 or a multiple of 4."""
+    return columns if columns <= 2 else -(-columns // 4) * 4
 
 
 def product(indptr: Int, indices: Int, blocks: NDArray[Any], x: NDArray[Any], out: NDArray[Any], threads: int) -> None:
     """out = A x of x (3 n,) or (3 n, k), both contiguous and of the blocks' type."""
-    parts = weighted_ranges(indptr, _PARTS)
-    out[...] = 0
     columns = 1 if x.ndim == 1 else x.shape[1]
+    if columns == 0:
+        return
+    if columns != padded(columns):
+        wide = np.zeros((x.shape[0], padded(columns)), dtype=x.dtype)
+        wide[:, :columns] = x
+        result = np.empty_like(wide)
+        product(indptr, indices, blocks, wide, result, threads)
+        out[...] = result[:, :columns]
+        return
+    parts = weighted_ranges(indptr, _PARTS)
+    flat_x, flat_out, flat_blocks = x.reshape(-1), out.reshape(-1), blocks.reshape(-1)
     sums: dict[int, NDArray[Any]] = {}
 
     def work(first: int, last: int) -> None:
-        sums[first] = y = out if first == 0 else np.zeros((x.shape[0] - 3 * first, *x.shape[1:]), dtype=x.dtype)
-        if columns <= 2:
-            multiply = _product if columns == 1 else _product_two
-            multiply(first, last, indptr, indices, blocks.reshape(-1), x.reshape(-1), y.reshape(-1))
-        else:
-            _product_columns(first, last, indptr, indices, blocks, x, y)
+        sums[first] = y = flat_out if first == 0 else np.empty(flat_x.size - 3 * columns * first, dtype=x.dtype)
+        y[...] = 0
+        if columns == 1:
+            _product(first, last, indptr, indices, flat_blocks, flat_x, y)
+        for column in range(0, columns if columns > 1 else 0, 8):
+            multiply = _MULTIPLY[min(8, columns - column)]
+            multiply(first, last, indptr, indices, flat_blocks, flat_x, y, column, columns)
 
     def add(start: int, stop: int) -> None:
         for first, _ in parts[1:]:
-            begin = max(start, 3 * first)
+            offset = 3 * columns * first
+            begin = max(start, offset)
             if begin < stop:
-                out[begin:stop] += sums[first][begin - 3 * first : stop - 3 * first]
+                flat_out[begin:stop] += sums[first][begin - offset : stop - offset]
 
     run(work, parts, threads)
     if len(parts) > 1:
-        run(add, ranges(x.shape[0], _PARTS), threads)
+        run(add, ranges(flat_x.size, _PARTS), threads)

@@ -60,7 +60,7 @@ def _matrices(mesh: NamedMesh) -> None:
     geometric_stiffness(groups, [s[0] for s in stress], K)
     K.to_csr()
     K.upper_csr()
-    for columns in ((), (2,), (3,)):
+    for columns in ((), (2,), (4,), (8,)):
         x = np.zeros((K.shape[0], *columns))
         K @ x
         K.single() @ x.astype(np.float32)
@@ -76,5 +76,5 @@ def _large(mesh: NamedMesh, K: BlockMatrix) -> None:
     free = np.flatnonzero(np.repeat(mesh.nodes[0] > mesh.nodes[0].min() + 1e-6, 3))
     T = sp.csr_matrix((np.ones(free.size), (free, np.arange(free.size))), shape=(K.shape[0], free.size))
     solver = AggregateSolver(K, Elimination(T), mesh.nodes, Budget(threads=1), "auto")
-    solver.solve(np.ones((free.size, 2)))
+    solver.solve(np.ones((free.size, 15)))  # columns are taken by eight, four, two and one
     solver.close()

@@ -33,6 +33,16 @@ def _largest(first, last, a, out):  # type: ignore[no-untyped-def]
             out[c] = max(out[c], abs(a[i, c]))
 
 
+GAINS = {
+    1: (1.125,),
+    2: (1.02387287570313, 1.26408905371085),
+    3: (1.00842544782028, 1.08867839208730, 1.33753125909618),
+}
+"""Factors of the smoother's steps, by the number of steps: the best for the worst motion that the coarse level does
+not see (J. Lottes 2023, see `smoother`; from memory, checked by the iterations that they save)."""
+Single = NDArray[np.float32]
+
+
 class Coarse(Protocol):
     """What takes residuals to the coarse level and corrections back, each the transpose of the other."""
 
@@ -68,27 +78,48 @@ class Cycle:
         columns = residual.shape[1]
         if columns not in self._buffers:
             self._buffers = {columns: [np.empty(residual.shape, np.float32) for _ in range(4)]}
-        r, z, d, w = self._buffers[columns]
-        scale = largest(residual, self._jacobi.threads)
+        left, z, d, w = self._buffers[columns]
+        threads = self._jacobi.threads
+        rows = ranges(left.shape[0])
+        scale = largest(residual, threads)
         scale = np.where(scale > 0, scale, 1.0)
-        np.divide(residual, scale, out=r, casting="same_kind")
+        run(lambda a, b: _copy(a, b, residual, 1 / scale, left), rows, threads)
         z[:] = 0
-        self._smooth(r, z, d, w, first=True)
-        self._K.product(z, w, self._jacobi.threads)
-        np.subtract(r, w, out=w)
-        self._transfer.prolong(self._coarse(self._transfer.restrict(w)), z)
-        self._smooth(r, z, d, w, first=False)
-        np.multiply(z, scale, out=out)
+        self._smooth(left, None, z, d, w)
+        self._K.product(z, w, threads)
+        run(lambda a, b: _left(a, b, residual, 1 / scale, w, left), rows, threads)
+        d[:] = 0
+        self._transfer.prolong(self._coarse(self._transfer.restrict(left)), d)
+        run(lambda a, b: np.add(z[a:b], d[a:b], out=z[a:b]), rows, threads)
+        self._K.product(d, w, threads)
+        self._smooth(left, w, z, d, w)
+        run(lambda a, b: _copy(a, b, z, scale, out), rows, threads)
 
     def close(self) -> None:
         """Give memory back."""
         self._buffers.clear()
 
-    def _smooth(self, r: Any, z: Any, d: Any, w: Any, first: bool) -> None:
-        for k in range(1, self._degree + 1):
-            fresh = first and k == 1
-            if not fresh:
-                self._K.product(z, w, self._jacobi.threads)
+    def _smooth(self, left: Single, change: Single | None, z: Single, d: Single, w: Single) -> None:
+        """Smooth z, whose residual is left - change; `left` is afterwards nothing of use."""
+        for k, gain in enumerate(GAINS[self._degree], start=1):
+            if k > 1:
+                change = self._K.product(d, w, self._jacobi.threads)
             old = (2 * k - 3) / (2 * k + 1) if k > 1 else 0.0
             new = (8 * k - 4) / ((2 * k + 1) * self._bound)
-            self._jacobi.step(r, None if fresh else w, d, z, old, new)
+            self._jacobi.step(left, change, d, z, old, new, gain)
+
+
+@kernel
+def _left(first, last, source, factor, change, out):  # type: ignore[no-untyped-def]
+    """out = source times the factor of each column - change."""
+    for i in range(first, last):
+        for c in range(out.shape[1]):
+            out[i, c] = out.dtype.type(source[i, c] * factor[c]) - change[i, c]
+
+
+@kernel
+def _copy(first, last, source, factor, out):  # type: ignore[no-untyped-def]
+    """out = source times the factor of each column, in the type of `out`."""
+    for i in range(first, last):
+        for c in range(out.shape[1]):
+            out[i, c] = source[i, c] * factor[c]

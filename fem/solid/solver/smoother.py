@@ -6,11 +6,15 @@ The polynomials of the fourth kind need only a bound of the largest eigenvalue (
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from typing import cast
+
 import numpy as np
 from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix, SingleBlockMatrix
 from fem.solid.kernels.jit import kernel
+from fem.solid.kernels.lanes import load, minus, store, times, times_plus
 from fem.solid.kernels.parallel import ranges, run
 from fem.solid.shape import inverse as inverse_of
 from fem.solid.solver.elimination import Elimination
@@ -44,19 +48,33 @@ class BlockJacobi:
             R = held.rigid.toarray()
             self._inner = np.linalg.inv(R.T @ (K @ R))
 
-    def step(self, r: Single, w: Single | None, d: Single, z: Single, old: float, new: float) -> None:
-        """d = old d + new D^-1 (r - w);  z += d. All (3 n, k)."""
+    def step(
+        self, left: Single, change: Single | None, d: Single, z: Single, old: float, new: float, gain: float
+    ) -> None:
+        """left -= change;  d = old d + new D^-1 left;  z += gain d. All (3 n, k) and contiguous; `change` may be none.
+
+        With `old` zero d is not read.
+        """
         shared = None
         if self._rows.size:
-            left = r[self._rows] if w is None else r[self._rows] - w[self._rows]
-            shared = (self._rigid @ (self._inner @ (self._rigid.T @ left.astype(float)))).astype(np.float32)
+            there = left[self._rows] if change is None else left[self._rows] - change[self._rows]
+            shared = (self._rigid @ (self._inner @ (self._rigid.T @ there.astype(float)))).astype(np.float32)
             shared *= np.float32(new)
-        parts = ranges(self.blocks.shape[0])
-        a, b = np.float32(old), np.float32(new)
-        run(lambda i, j: _step(i, j, self.blocks, r, r if w is None else w, w is None, d, z, a, b), parts, self.threads)
+        factors = np.float32(old), np.float32(new), np.float32(gain)
+        columns = left.shape[1]
+        fields = [a.reshape(-1) for a in (self.blocks, left, left if change is None else change, d, z)]
+
+        def part(first: int, last: int) -> None:
+            column = 0
+            for width, step in _STEP.items():
+                while columns - column >= width:
+                    step(first, last, *fields, change is not None, *factors, column, columns)
+                    column += width
+
+        run(part, ranges(self.blocks.shape[0]), self.threads)
         if shared is not None:
             d[self._rows] += shared
-            z[self._rows] += shared
+            z[self._rows] += np.float32(gain) * shared
 
     def largest(self, K: SingleBlockMatrix, seed: int) -> float:
         """Estimate from above of the largest eigenvalue of D^-1 K: Lanczos, from the coefficients of CG."""
@@ -66,7 +84,7 @@ class BlockJacobi:
         alphas, betas, rz = [], [], 0.0
         for k in range(_LANCZOS):
             z[:] = 0
-            self.step(r, None, q, z, 0.0, 1.0)
+            self.step(r, None, q, z, 0.0, 1.0, 1.0)
             new = float(np.vdot(r, z))
             if not new > 0:
                 break
@@ -85,19 +103,37 @@ class BlockJacobi:
         return _SAFETY * float(np.linalg.eigvalsh(np.diag(diagonal) + np.diag(off, 1) + np.diag(off, -1))[-1])
 
 
-@kernel
-def _step(first, last, blocks, r, w, fresh, d, z, old, new):  # type: ignore[no-untyped-def]
-    for i in range(first, last):
-        t = 3 * i
-        for c in range(r.shape[1]):
-            u, v, x = r[t, c], r[t + 1, c], r[t + 2, c]
-            if not fresh:
-                u -= w[t, c]
-                v -= w[t + 1, c]
-                x -= w[t + 2, c]
+def _by_lanes(width: int) -> Callable[..., None]:
+    """One step of `width` columns side by side, which begin at `column` of rows that are `stride` long."""
+
+    @kernel
+    def step(  # type: ignore[no-untyped-def]
+        first, last, blocks, left, change, d, z, changes, old, new, gain, column, stride
+    ):
+        one = np.uint64(stride)
+        for i in range(first, last):
+            at = np.uint64(3 * i) * one + np.uint64(column)
+            u, v, w = load(left, at, width), load(left, at + one, width), load(left, at + one + one, width)
+            if changes:
+                u = minus(u, load(change, at, width))
+                v = minus(v, load(change, at + one, width))
+                w = minus(w, load(change, at + one + one, width))
+                store(left, at, u)
+                store(left, at + one, v)
+                store(left, at + one + one, w)
+            u, v, w = times(new, u), times(new, v), times(new, w)
             for k in range(3):
-                g = new * (blocks[i, k, 0] * u + blocks[i, k, 1] * v + blocks[i, k, 2] * x)
+                b = np.uint64(9 * i + 3 * k)
+                g = times_plus(
+                    blocks[b], u, times_plus(blocks[b + np.uint64(1)], v, times(blocks[b + np.uint64(2)], w))
+                )
                 if old != 0:
-                    g += old * d[t + k, c]
-                d[t + k, c] = g
-                z[t + k, c] += g
+                    g = times_plus(old, load(d, at, width), g)
+                store(d, at, g)
+                store(z, at, times_plus(gain, g, load(z, at, width)))
+                at += one
+
+    return cast(Callable[..., None], step)
+
+
+_STEP = {width: _by_lanes(width) for width in (8, 4, 2, 1)}
