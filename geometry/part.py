@@ -294,7 +294,8 @@ class LineLoad:
 class RemotePoint:
     """A point off the part, coupled to a region, with force, moment, mass (t) and inertia (t mm^2).
 
-    `inertia` is about the point: xx, yy, zz, xy, yz, zx (global). Under acceleration (and
+    `inertia` is about the point: xx, yy, zz, xy, yz, zx (global), the entries of the tensor
+    int (r.r 1 - r r) dm, so that xy is - int x y dm. Under acceleration (and
     self-weight) the mass gives a force at the point.
     """
 

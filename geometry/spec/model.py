@@ -104,7 +104,9 @@ class LoadSpec(Words):
     mass: Annotated[Text, OfKind("mass", least=0.0)] | None = Field(None, description="of what is carried at point")
     inertia: (
         Annotated[list[Annotated[Text, OfKind("mass moment of inertia")]], Field(min_length=3, max_length=6)] | None
-    ) = Field(None, description="of that mass about point: xx, yy, zz and if needed xy, yz, zx")
+    ) = Field(
+        None, description="of that mass about point: xx, yy, zz and if needed xy, yz, zx (xy: minus the sum of x y m)"
+    )
     coupling: Literal["surface", "rigid", "average"] | None = Field(
         None, description="surface (even traction) for force, moment, torque; average for a point"
     )
