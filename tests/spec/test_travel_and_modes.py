@@ -125,6 +125,7 @@ def test_without_cases_the_one_case_travels() -> None:
         ("steps = 24", "steps = 0", "loads.trolley.travels.steps", "at least 1 and at most 200"),
         ("steps = 24", "steps = 201", "loads.trolley.travels.steps", "at least 1 and at most 200"),
         ("steps = 24", 'steps = "2.5"', "loads.trolley.travels.steps", "a whole number"),
+        ("steps = 24", "steps = 2.5", "loads.trolley.travels.steps", "a whole number"),
         ('contact = "40 mm"', 'contact = "0 mm"', "loads.trolley.travels.contact", "greater than 0"),
         ('contact = "40 mm", axles = ["0 mm", "180 mm"]', 'contact = "1300 mm"', "loads.trolley.travels.contact",
          "at most the face: 1200 mm"),
@@ -202,3 +203,13 @@ def test_every_mistake_at_once() -> None:
                      ('frequency = "20 Hz"', "frequency = 20"))  # fmt: skip
     assert {p.path for p in found} == {"loads.trolley.travels.to", "loads.trolley.travels.steps", "vibration.modes",
                                        "buckling.crossing", "limits.frequency"}  # fmt: skip
+
+
+def test_an_axle_that_cannot_be_read_leaves_no_nan_in_what_is_told_of_the_positions() -> None:
+    """The range of the positions is then that of the axles that can be read."""
+    wrong = RAIL.replace('to = "990 mm"', 'to = "30 mm"').replace('"180 mm"', '"180"')
+    with pytest.raises(SpecError) as caught:
+        part_from_text(wrong)
+    told = {problem.path: problem.allowed for problem in caught.value.problems}
+    assert "a length" in told["loads.trolley.travels.axles[2]"]
+    assert told["loads.trolley.travels.to"].startswith("more than 30 mm, up to 1200 mm")

@@ -54,7 +54,7 @@ def _check_positions(values: Values, load: Travelling, length: float) -> bool:
     """Whether every axle stands between the ends at every position."""
     path = f"loads.{load.name}.travels"
     before = len(values.problems)
-    last = max(load.axles)
+    last = max((axle for axle in load.axles if not math.isnan(axle)), default=0.0)  # what is not read has been told
     most = length - last
     if load.contact > length:
         values.problem(f"{path}.contact", f"{load.contact:.6g} mm", f"more than 0, at most the face: {length:.6g} mm")

@@ -118,7 +118,7 @@ def described(annotation: Any) -> str:
         limits = f" {mark.range}" if mark.range else ""
         if mark.kind.unit:
             return f'{with_article(mark.word)}{limits} with its unit, as text: "{mark.kind.example}"'
-        return f"a number{limits}"
+        return f"a {'whole ' if int in alternatives(annotation) else ''}number{limits}"
     return " or ".join(dict.fromkeys(filter(None, map(_described_type, alternatives(annotation)))))
 
 
