@@ -92,7 +92,7 @@ def _spread(values: NDArray[np.floating[Any]], step: float) -> None:
         length = float(np.linalg.norm(direction))
         room = min(n - 1 for n, d in zip(values.shape, direction, strict=True) if d)
         hop = 1
-        while hop <= room and hop * length < 2 * reach:
+        while hop <= room and (hop - 1) * length < reach:  # the hops so far, together, do not reach as far as a rise
             shift = tuple(hop * d for d in direction)
             here = tuple(slice(max(s, 0), min(s, 0) or None) for s in shift)
             there = tuple(slice(max(-s, 0), min(-s, 0) or None) for s in shift)
