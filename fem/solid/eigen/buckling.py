@@ -23,6 +23,7 @@ from fem.solid.eigen.motions import Motions, Operator, held_motions
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, lost, second_search, space_room
 from fem.solid.eigen.start import start_unknowns
 from fem.solid.eigen.stress_stiffness import StressStiffness, stress_stiffnesses
+from fem.solid.factor import TooLarge
 from fem.solid.mass import mass_matrix
 from fem.solid.model import SolidModel
 from fem.solid.result import Check
@@ -174,14 +175,17 @@ class _Study:
                     "for fewer modes, or mesh the part again."
                 )
             counts: list[tuple[int, str] | None] = []
+            try:
+                if not reason:
+                    counts = [self._missing(found, modes, sign, attempt == 2) for sign in (1.0, -1.0)]
+            except TooLarge as error:
+                reason = f"not counted: {error}"
             if reason:
                 fresh = self._start(B, 2 * GUARDS, self.budget.seed + 100 + attempt)
                 again = second_search(pencil, found, tolerance, fresh, room)
                 missed = lost(found, again, modes)
                 word = "one" if missed else "none"
-                counts.append((missed, f"{reason}; a second search from other vectors found {word} that was missed"))
-            else:
-                counts += [self._missing(found, modes, sign, attempt == 2) for sign in (1.0, -1.0)]
+                counts = [(missed, f"{reason}; a second search from other vectors found {word} that was missed")]
             if all(c is not None and c[0] <= 0 for c in counts):
                 break
             guards, start = guards + 4, (again if reason else found).x
@@ -217,6 +221,8 @@ class _Study:
         above, shift = split
         try:
             count = self._count(sign * shift)
+        except TooLarge:
+            raise
         except SolveError as error:
             return 0, f"not counted: {error}"
         return count - above, f"{count} between 0 and {sign * shift:.5g} by the inertia of K + G"
@@ -234,7 +240,8 @@ class _Study:
         matrix = eliminate.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
         rows = (sp.vstack(levers) @ eliminate.T).toarray()
         low = LowRank(rows, np.concatenate(weights))
-        return negative_count(matrix, low, self.motions.rows, self.budget, self.motions.springs)
+        m = self.motions
+        return negative_count(matrix, low, m.rows, self.budget, m.springs, m.direct)
 
     def _with_other_sign(self, pencil: Pencil, B: Operator, pairs: Pairs) -> Pairs:
         """The pairs and, where all have one sign, the first of the other one if it is found."""

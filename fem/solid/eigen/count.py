@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import scipy.sparse as sp
 from numpy.typing import NDArray
 
 from fem.solid.eigen.motions import NO_SPRINGS, Motions
-from fem.solid.factor import SymmetricFactor
+from fem.solid.factor import SymmetricFactor, TooLarge
 from fem.solid.shape import Array
 from geometry.budget import Budget
 
@@ -31,7 +31,12 @@ class LowRank:
 
 
 def negative_count(
-    upper: sp.csr_matrix, low: LowRank, rows: Array, budget: Budget, springs: NDArray[np.int64] = NO_SPRINGS
+    upper: sp.csr_matrix,
+    low: LowRank,
+    rows: Array,
+    budget: Budget,
+    springs: NDArray[np.int64] = NO_SPRINGS,
+    beside_factor: bool = False,
 ) -> int:
     """Number of negative directions of a matrix + low rank on the motions with rows y = 0.
 
@@ -43,14 +48,18 @@ def negative_count(
     pivot of its own. Inertias of a factor and of its Schur complement add up (E. V. Haynsworth, Linear Algebra Appl. 1
     (1968) 73).
 
+    `beside_factor`: a direct solver holds a factor of the same pattern at the same time.
+
     Raises
     ------
+    TooLarge
+        When the factor, with the one beside it, does not fit the memory of the budget.
     SolveError
-        When the factor does not fit the memory of the budget, or the matrix is singular.
+        When the matrix is singular.
     """
     if springs.size:
         upper, low = _sprung(upper, low, springs)
-    factor = SymmetricFactor(upper, budget, upper=True)
+    factor = _factor(upper, budget, beside_factor)
     try:
         negative = factor.negative
         kept = low.weight != 0
@@ -64,6 +73,18 @@ def negative_count(
     scale = 1.0 / np.sqrt(np.maximum(np.abs(np.diag(S)), 1e-300))
     S = S * scale * scale[:, None]
     return negative + int((np.linalg.eigvalsh((S + S.T) / 2) < 0).sum()) - rows.shape[0] - int((D < 0).sum())
+
+
+def _factor(upper: sp.csr_matrix, budget: Budget, beside_factor: bool) -> SymmetricFactor:
+    if not beside_factor:
+        return SymmetricFactor(upper, budget, upper=True)
+    try:
+        return SymmetricFactor(upper, replace(budget, memory=budget.memory // 2), upper=True)
+    except TooLarge as error:
+        raise TooLarge(
+            f"the factor of {upper.shape[0]} unknowns that counts and that of the solver beside it do not fit the "
+            f"budget of {budget.memory} MiB together"
+        ) from error
 
 
 def _sprung(

@@ -18,6 +18,7 @@ from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, lost, second_sea
 from fem.solid.eigen.remote import remote_mass_rows
 from fem.solid.eigen.rigid import orthonormal, rigid_motions
 from fem.solid.eigen.start import start_unknowns
+from fem.solid.factor import TooLarge
 from fem.solid.mass import mass_matrix
 from fem.solid.model import SolidModel
 from fem.solid.result import Check
@@ -136,28 +137,30 @@ def _solve(
             )
         squares = 1.0 / found.mu
         split = separated(squares, modes)
-        if reason:
-            fresh = motions.precondition(apply(_fields(model, motions, 2 * GUARDS, budget.seed + 100 + attempt)))
-            again = second_search(pencil, found, tolerance, fresh, room)
-            missing = lost(found, again, modes)
-            note = f"{reason}; a second search from other vectors found {'one' if missing else 'none'} that was missed"
-            if not missing:
-                break
-            start = again.x
-            continue
-        if split is None and guards and attempt < 2:
+        if not reason and split is None and guards and attempt < 2:
             guards, start = guards + 4, found.x
             continue
         above, shift = split or (modes + guards, float(squares[-1]) * (1.0 + APART))
         try:
-            missing = _count(motions, model.K, mass, shift, budget) - below - above
+            if not reason:
+                missing = _count(motions, model.K, mass, shift, budget) - below - above
+                note = f"{above} at or below {np.sqrt(shift) / 2 / np.pi:.5g} Hz by the inertia of K - omega^2 M"
+                if missing <= 0:
+                    break
+                guards, start = guards + missing + 2, found.x
+                continue
+        except TooLarge as error:
+            reason = f"not counted: {error}"
         except SolveError as error:
             missing, note = 0, f"not counted: {error}"
             break
-        note = f"{above} at or below {np.sqrt(shift) / 2 / np.pi:.5g} Hz by the inertia of K - omega^2 M"
-        if missing <= 0:
+        fresh = motions.precondition(apply(_fields(model, motions, 2 * GUARDS, budget.seed + 100 + attempt)))
+        again = second_search(pencil, found, tolerance, fresh, room)
+        missing = lost(found, again, modes)
+        note = f"{reason}; a second search from other vectors found {'one' if missing else 'none'} that was missed"
+        if not missing:
             break
-        guards, start = guards + missing + 2, found.x
+        start = again.x
     name = "natural frequencies missed"
     check = Check(name, float(missing), 0.0, missing == 0, note)
     if missing:
@@ -177,7 +180,8 @@ def _count(motions: Motions, K: BlockMatrix, mass: _Mass, shift: float, budget: 
     blocks = K.blocks - shift * mass.part.blocks
     matrix = motions.elimination.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
     rows = (mass.remote @ T).toarray()
-    return negative_count(matrix, LowRank(rows, np.full(rows.shape[0], -shift)), motions.rows, budget, motions.springs)
+    low = LowRank(rows, np.full(rows.shape[0], -shift))
+    return negative_count(matrix, low, motions.rows, budget, motions.springs, motions.direct)
 
 
 def _modes(
