@@ -64,7 +64,8 @@ def mode_picture(path: Path, part: Part, mesh: NamedMesh, title: str, modes: Seq
         more = f", the first {MOST} of {len(modes)}" if len(modes) > MOST else ""
         figure.suptitle(f"{part.title}: {title}{more}", fontsize=12)
         frame.colour_bar(figure, list(panels.flat), 0.0, 1.0, "", "viridis")
-        figure.supxlabel("size of the motion over its largest (true size: open); grey lines: at rest", fontsize=10)
+        figure.supxlabel("size of the motion over its largest (true size: open); grey lines: at rest; bending about "
+                         "the member's own y or z", fontsize=10)
         frame.save(figure, path)
 
 

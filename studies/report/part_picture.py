@@ -25,6 +25,7 @@ from mesher.named_mesh import NamedMesh
 from studies.report import frame
 from studies.report.raster import Camera, Canvas, Floats
 from studies.report.scene import GREY, Surface, draw, draw_edges, facets_in, view_of
+from studies.report.tables import digits
 
 Arrow = tuple[Floats, Floats, bool]
 """Foot (3,), direction (3,), and whether it is a moment."""
@@ -109,7 +110,7 @@ def describe_load(load: Load) -> str:
 
 
 def _vector(value: tuple[float, ...], unit: str) -> str:
-    return f"({', '.join(f'{v:.4g}' for v in value)}) {unit}"
+    return f"({', '.join(digits(v) for v in value)}) {unit}"
 
 
 def _wrench(force: tuple[float, ...], moment: tuple[float, ...]) -> str:

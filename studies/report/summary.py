@@ -51,6 +51,11 @@ CONVENTIONS = (
 MOST_ROWS = 20
 
 BUCKLING_HEAD = MODE_HEAD[:10] + MODE_HEAD[11:]
+SHAPE_NAMES = (
+    "Bending about y or z: about the member's own axis. A shape of the solid is named by how its sections move, one of "
+    "the beam by where its strain energy is: where bending and twist go together, one and the same shape may have two "
+    "names. The correlation decides what is paired, never the name."
+)
 """Buckling has no mass."""
 
 
@@ -142,6 +147,7 @@ def _frequencies(result: CheckResult) -> list[str]:
             "Correlation: how alike the motion of the sections is in both models (modal assurance criterion, 1 is the "
             "same). Rigid sections: how much of the solid's shape they explain. Carries: share of the part's mass "
             "along a global axis, or of its inertia about one, that takes part. The load cases do not act.",
+            "", SHAPE_NAMES,
             *_mode_allowances(result, "")]
 
 
@@ -154,7 +160,7 @@ def _buckling(result: CheckResult) -> list[str]:
         lines += ["", f"### Case {case}", "", f"By which factor {factors} may grow{kept}:", "",
                   *table(BUCKLING_HEAD, [row[:10] + row[11:] for row in mode_rows(result, "buckling_factor", case)]),
                   *_mode_allowances(result, case)]
-    return ["## Buckling", *lines] if lines else []
+    return ["## Buckling", *lines, "", SHAPE_NAMES] if lines else []
 
 
 def _mode_allowances(result: CheckResult, case: str) -> list[str]:
@@ -240,7 +246,7 @@ def _peaks(result: CheckResult, case: str) -> list[str]:
 
 
 def _where(peak: PeakPlace) -> str:
-    spot = f"({', '.join(f'{x:.4g}' for x in peak.point)}) mm"
+    spot = f"({', '.join(f'{round(x, 6) + 0.0:.4g}' for x in peak.point)}) mm"  # without the rounding of a nought
     return peak.place if spot in peak.place else f"{peak.place} {spot}".strip()
 
 

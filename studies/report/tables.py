@@ -30,17 +30,23 @@ MODE_KINDS = ("natural_frequency", "buckling_factor")
 """Quantities that have tables of their own."""
 
 
+def digits(value: float) -> str:
+    """Four significant digits; whole numbers below ten million without a power of ten: ``15000``, not ``1.5e+04``."""
+    text = f"{value:.4g}"
+    return f"{float(text):.0f}" if "e+" in text and abs(value) < 1e7 else text
+
+
 def readable(value: float | None, unit: str) -> str:
     """``12.35 N m`` from 12345 N mm; a dash for no value."""
     if value is None:
         return "-"
     factor, shown = READABLE.get(unit, (1.0, unit))
-    return f"{factor * value:.4g} {shown}".rstrip()
+    return f"{digits(factor * value)} {shown}".rstrip()
 
 
 def number(value: float | None, unit: str) -> str:
     """As `readable`, without the unit."""
-    return "-" if value is None else f"{READABLE.get(unit, (1.0, ''))[0] * value:.4g}"
+    return "-" if value is None else digits(READABLE.get(unit, (1.0, ""))[0] * value)
 
 
 def shown_unit(unit: str) -> str:
