@@ -7,6 +7,7 @@ import os
 import signal
 import sys
 import tempfile
+import threading
 import time
 import traceback
 from collections.abc import Sequence
@@ -100,7 +101,11 @@ def _write_log(error: BaseException) -> str:
 
 @contextlib.contextmanager
 def _terminated_is_interrupted():  # type: ignore[no-untyped-def]
-    """Let SIGTERM unwind like Ctrl-C, so that no half-written folder and no child process stays behind."""
+    """Let SIGTERM unwind like Ctrl-C, so that no half-written folder and no child process stays behind.
+
+    Compiled code that calls Python back (the compiler of kernels does, after each long step) cannot be unwound: the
+    interruption is lost there, and Python shows a traceback. It comes once more instead, a moment later.
+    """
 
     def interrupt(*_: object) -> None:
         raise KeyboardInterrupt
@@ -110,7 +115,19 @@ def _terminated_is_interrupted():  # type: ignore[no-untyped-def]
     except ValueError:  # not in the main thread
         yield
         return
+    lost = sys.unraisablehook
+
+    def again(what: sys.UnraisableHookArgs) -> None:
+        if what.exc_type is not KeyboardInterrupt:
+            lost(what)
+            return
+        reminder = threading.Timer(0.05, lambda: sys.unraisablehook is again and os.kill(os.getpid(), signal.SIGTERM))
+        reminder.daemon = True
+        reminder.start()
+
+    sys.unraisablehook = again
     try:
         yield
     finally:
+        sys.unraisablehook = lost
         signal.signal(signal.SIGTERM, before)

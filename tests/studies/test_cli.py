@@ -168,3 +168,28 @@ def test_output_that_cannot_be_written(redirection: str, status: int) -> None:
                           capture_output=True, text=True, timeout=60)
     assert done.returncode == status
     assert ("No space left" in done.stderr) == (status == 3) and "unforeseen" not in done.stderr
+
+
+@pytest.mark.parametrize("name", ["SIGINT", "SIGTERM"])
+def test_a_stop_that_lands_in_code_called_back_is_not_lost(name: str) -> None:
+    """The compiler of kernels calls Python back through ctypes, where an exception goes no further: without care the
+    run goes on, and a traceback is shown."""
+    code = """
+import ctypes, importlib, os, signal, sys, time
+
+def long_compilation(_):
+    ctypes.CFUNCTYPE(None)(lambda: (os.kill(os.getpid(), signal.NAME), time.sleep(0.2)))()
+    time.sleep(20)
+    return 0
+
+class Parser:
+    def parse_args(self, _):
+        return type("Options", (), {"run": staticmethod(long_compilation)})
+
+signal.signal(signal.SIGINT, signal.default_int_handler)
+module = importlib.import_module("studies.cli.main")
+module.make_parser = Parser
+sys.exit(module.main([]))
+""".replace("NAME", name)
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, timeout=60)
+    assert (done.returncode, done.stderr) == (130, "haunch: stopped; nothing was written\n")
