@@ -121,9 +121,13 @@ def _terminated_is_interrupted():  # type: ignore[no-untyped-def]
         if what.exc_type is not KeyboardInterrupt:
             lost(what)
             return
-        reminder = threading.Timer(0.05, lambda: sys.unraisablehook is again and os.kill(os.getpid(), signal.SIGTERM))
+        reminder = threading.Timer(0.05, remind)
         reminder.daemon = True
         reminder.start()
+
+    def remind() -> None:
+        if sys.unraisablehook is again:
+            os.kill(os.getpid(), signal.SIGTERM)
 
     sys.unraisablehook = again
     try:
