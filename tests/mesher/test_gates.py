@@ -21,7 +21,7 @@ from mesher.attempts import CHAIN, Attempt
 from mesher.estimate import nodes_within, solver_memory
 from mesher.matching import FaceMismatch, match_faces
 from mesher.measure import tetrahedron_volumes
-from mesher.quality import scaled_jacobian
+from mesher.quality import _jacobians, _lattice, quality_and_volume, scaled_jacobian
 from mesher.sizes import LEAST_ACCURACY, MOST_ACCURACY, sizes_for
 from mesher.solid_mesher import _least_nodes
 
@@ -199,3 +199,11 @@ def test_a_hanging_attempt_ends_at_once_when_asked(bar: NamedSolid) -> None:
     with pytest.raises(MeshError, match="stopped on request"):
         mesh_solid(bar, 0.05, Budget(seconds=60.0), chain=(_faulty("fault:hang"), CHAIN[0]), stop=stop)
     assert time.perf_counter() - started < 10.0
+
+
+def test_straight_elements_measured_in_one_point_are_measured_as_in_all(plate_mesh: NamedMesh) -> None:
+    nodes, tets = plate_mesh.nodes, plate_mesh.tets
+    quality, volume = quality_and_volume(nodes, tets)
+    everywhere, _ = _jacobians(np.ascontiguousarray(nodes.T[tets.T].transpose(2, 0, 1)), _lattice()[0])
+    np.testing.assert_allclose(quality, everywhere, rtol=0, atol=1e-10)
+    np.testing.assert_allclose(volume, tetrahedron_volumes(nodes, tets), rtol=1e-10)
