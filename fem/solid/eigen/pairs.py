@@ -115,13 +115,18 @@ def extreme_pairs(
         mu = values[chosen]
         x, Ax, Bx = (V @ S[:, chosen] for V in (space.V, space.AV, space.BV))
         residual = _already(mu, tolerance, settled)
-        open_ = ~(residual < np.inf)
-        left = Bx[:, open_] - Ax[:, open_] * mu[open_]
-        new = pencil.precondition(left)
-        size = np.sqrt(np.maximum(np.einsum("fk,fk->k", left, new), 0.0))
-        residual[open_] = size / np.where(mu[open_] != 0, np.abs(mu[open_]), 1e-300)
+        size, new = np.zeros(mu.size), np.zeros_like(x)
+        fresh = ~(residual < np.inf)
+        for look in (fresh, ~fresh) if known is None else (fresh,):  # once these are met, is what was settled still so?
+            if look.any():
+                left = Bx[:, look] - Ax[:, look] * mu[look]
+                new[:, look] = pencil.precondition(left)
+                size[look] = np.sqrt(np.maximum(np.einsum("fk,fk->k", left, new[:, look]), 0.0))
+                residual[look] = size[look] / np.where(mu[look] != 0, np.abs(mu[look]), 1e-300)
+            going = residual > tolerance[: chosen.size]
+            if going.any() or chosen.size < wanted:
+                break
         settled = Pairs(mu, x, residual, done)
-        going = residual[open_] > tolerance[: chosen.size][open_]
         if (chosen.size == wanted and not going.any()) or enough(mu, done):
             break
         if space.size + wanted > room:
