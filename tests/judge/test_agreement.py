@@ -82,3 +82,38 @@ def test_energy_of_a_heated_part_gripped_at_a_face_is_not_compared() -> None:
     beam = [dataclasses.replace(f, value=1.0) for f in energy]
     pairs = pair_figures(ctx, table(energy), table(beam), {}, {})
     assert [p.judgement for p in pairs] == ["no beam value", "suspicious"]
+
+
+def test_what_is_left_where_a_heated_part_is_free_is_not_measured_against_itself() -> None:
+    """A bar on one average support takes no force from warmth; E alpha dT A would be 210000 x 3.6e-4 x 200 N."""
+    wall = Support("wall", "arm.start", dict.fromkeys(("x", "y", "z", "rx", "ry", "rz"), 0.0), coupling="average")
+    part = bar(supports=(wall,), loads=(TIP, TemperatureLoad("sun", 30.0)),
+               cases=(Case("hot", {"sun": 1.0}), Case("cold", {"tip": 1.0})))
+    ctx = Context(part, mesh())
+    kinds = [("section_force", "N", "N"), ("section_moment", "My", "N mm"), ("nominal_stress", "xx@top", "MPa"),
+             ("strain_energy", "", "N mm")]
+    at = {"strain_energy": ""}
+
+    def judged(case: str, size: float) -> set[str]:
+        solid = [Figure(FigureKey(case, at.get(q, "arm@200"), q, c), size, unit) for q, c, unit in kinds]
+        beam = [dataclasses.replace(figure, value=0.0) for figure in solid]
+        return {p.judgement for p in pair_figures(ctx, table(solid), table(beam), {}, {})}
+
+    assert "suspicious" not in judged("hot", 1e-6)
+    assert "suspicious" in judged("hot", 100.0)
+    assert "suspicious" in judged("cold", 1e-6)
+
+
+def test_a_heated_face_that_is_gripped_bulges_the_part() -> None:
+    """Measured on a bar 20 by 12: 0.11 of the free strain times the larger side; ten times that is no bulge."""
+    part = bar(loads=(TIP, TemperatureLoad("sun", 30.0)),
+               cases=(Case("hot", {"sun": 1.0}), Case("cold", {"tip": 1.0})))
+    ctx, bulge = Context(part, mesh()), 0.11 * part.material.expansion * 30.0 * 20.0
+
+    def judged(case: str, size: float) -> str:
+        key = FigureKey(case, "arm@20", "displacement", "x")
+        (pair,) = pair_figures(ctx, table([Figure(key, size, "mm")]), table([Figure(key, 0.0, "mm")]), {}, {})
+        return pair.judgement
+
+    assert [judged("hot", bulge), judged("hot", 10.0 * bulge), judged("cold", bulge)] == \
+        ["agrees", "suspicious", "suspicious"]

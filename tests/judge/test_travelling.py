@@ -17,6 +17,7 @@ from geometry.part import Case, Limit, Part, StripLoad, Support, Travel
 from studies.check.record import declared_factors, kept_cases
 from studies.check.result import Pair
 from studies.judge import Judgement, judge
+from studies.judge.agreement import pair_figures, table
 from studies.judge.context import Context
 from studies.judge.travelling import envelopes, kept
 
@@ -160,3 +161,18 @@ def test_fifty_positions_are_judged_in_seconds() -> None:
     found = judge(many, cut_solid(), mesh(), solid, beam)
     assert len(found.envelopes) > 300
     assert time.process_time() - began < 5.0
+
+
+def test_the_energy_of_a_position_is_measured_against_that_of_the_worst_one() -> None:
+    """Beside a support only what is local to the strip is left, which beam theory does not have."""
+    part = crossing()
+    sizes = {case.name: 0.01 if number == 0 else 1.0 for number, case in enumerate(part.cases)}
+    solid = [Figure(FigureKey(name, "", "strain_energy", ""), size, "N mm") for name, size in sizes.items()]
+    beam = [dataclasses.replace(figure, value=0.6 * figure.value if number == 0 else figure.value)
+            for number, figure in enumerate(solid)]
+    first = pair_figures(Context(part, mesh()), table(solid), table(beam), {}, {})[0]
+    assert first.judgement == "agrees"
+    off = [dataclasses.replace(figure, value=0.6) if figure.key.case == part.cases[1].name else figure
+           for figure in beam]
+    second = pair_figures(Context(part, mesh()), table(solid), table(off), {}, {})[1]
+    assert second.judgement == "suspicious"
