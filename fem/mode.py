@@ -12,6 +12,15 @@ Array = NDArray[np.float64]
 SHAPE_STATIONS = 41
 """Modes are given at x = k L / (SHAPE_STATIONS - 1), so that a shape with several waves can be told from another."""
 
+OTHER_SIGN = 100.0
+"""Where all buckling factors asked for have one sign, how many times the least of them one of the other sign is looked
+for: set by trial."""
+
+
+def none_of_other_sign(case: str) -> str:
+    """Name of the check that the solid model gives where it looked so far for a factor of the other sign in vain."""
+    return f"buckling of {case}: factors of the other sign"
+
 
 @dataclass(frozen=True, slots=True)
 class Mode:

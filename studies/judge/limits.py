@@ -13,7 +13,7 @@ from functools import cached_property
 import numpy as np
 
 from fem.figure import Figure, FigureKey, Quantity
-from fem.mode import Mode
+from fem.mode import OTHER_SIGN, Mode, none_of_other_sign
 from fem.solid import SolidResult
 from geometry.part import Limit
 from studies.check.result import LimitVerdict, Pair
@@ -133,7 +133,7 @@ def _candidates(evidence: Evidence, limit: Limit) -> Iterator[Found]:
             yield from _modes(evidence, "", evidence.solid.vibration)
         case "buckling_factor":
             for case in limit.cases or [study.case for study in evidence.ctx.part.buckling]:
-                yield from _buckling(evidence, case)
+                yield from _buckling(evidence, case, limit)
 
 
 def _vector(table: Table, case: str, place: str, quantity: Quantity) -> np.ndarray | None:
@@ -240,15 +240,22 @@ def _modes(evidence: Evidence, case: str, modes: Sequence[Mode]) -> Iterator[Fou
         yield Found(mode.value, case, f"mode {number}, {mode.kind}", doubt)
 
 
-def _buckling(evidence: Evidence, case: str) -> Iterator[Found]:
+def _buckling(evidence: Evidence, case: str, limit: Limit) -> Iterator[Found]:
+    """The positive factors; where there is none, how far the solid model has looked for one decides."""
     found = list(_modes(evidence, case, [m for m in evidence.solid.buckling if m.case == case]))
     positive = [one for one in found if one.value > 0.0]
     yield from positive
     if found and not positive:
-        yield Found(np.inf, case, "", f"case {case}: none of its {len(found)} factors is positive; ask for more modes")
+        looked = any(check.name == none_of_other_sign(case) for check in evidence.solid.checks)
+        reach = OTHER_SIGN * min(abs(one.value) for one in found) if looked else 0.0
+        doubt = "" if limit.value <= reach else f"case {case}: none of its {len(found)} factors is positive"
+        if doubt and looked:
+            doubt += f", and none was looked for beyond {reach:.4g}"
+        doubt = next((one.doubt for one in found if one.doubt), doubt)
+        yield Found(np.inf, case, f"no positive factor up to {reach:.4g}" if looked else "", doubt)
 
 
 def place_text(regions: Sequence[str], position: Sequence[float]) -> str:
     """Regions that meet at a point and its coordinates, for a person."""
-    spot = ", ".join(f"{c:.4g}" for c in position)
+    spot = ", ".join(f"{round(c, 6) + 0.0:.4g}" for c in position)
     return f"{' / '.join(regions)} ({spot}) mm" if regions else f"({spot}) mm"

@@ -10,7 +10,8 @@ import numpy as np
 import pytest
 from bar import LENGTH, bar, mesh, sound
 
-from fem.mode import SHAPE_STATIONS, Mode
+from fem.mode import SHAPE_STATIONS, Mode, none_of_other_sign
+from fem.solid import Check
 from geometry.part import Buckling, Case, Limit, Part, RegionLoad, RemotePoint, Vibration
 from studies.check.result import LimitVerdict
 from studies.judge import Judgement, judge
@@ -63,14 +64,15 @@ def paired(solid: Sequence[Mode], beam: Sequence[Mode]) -> list[Match]:
     return match(*moves, [m.value for m in solid], [m.value for m in beam])
 
 
-def judged(solid: Sequence[Mode] = (), beam: Sequence[Mode] = (), limits: Sequence[Limit] = (), **more: object
-           ) -> Judgement:
+def judged(solid: Sequence[Mode] = (), beam: Sequence[Mode] = (), limits: Sequence[Limit] = (),
+           checks: Sequence[Check] = (), **more: object) -> Judgement:
     """The sound bar with these modes; those with a case are buckling factors."""
     part, named, m, solved, lines = sound()
     part = dataclasses.replace(part, **{**STUDIES, **more}, limits=tuple(limits))  # type: ignore[arg-type]
     lists = [([x for x in modes if not x.case], [x for x in modes if x.case]) for modes in (solid, beam)]
     (sv, sb), (bv, bb) = ((tuple(v), tuple(b)) for v, b in lists)
-    return judge(part, named, m, dataclasses.replace(solved, vibration=sv, buckling=sb),
+    solved = dataclasses.replace(solved, vibration=sv, buckling=sb, checks=(*solved.checks, *checks))
+    return judge(part, named, m, solved,
                  dataclasses.replace(lines, vibration=bv, buckling=bb))
 
 
@@ -207,7 +209,16 @@ def test_a_limit_on_the_buckling_factor_goes_by_the_least_positive_one() -> None
     assert (verdict.verdict, verdict.found, verdict.case) == ("met", 4.0, "pressed")
     negative = _verdict(Limit("b", "buckling_factor", 3.0), modes[:1])
     assert (negative.verdict, negative.found) == ("not established", None)
-    assert "ask for more modes" in negative.reason
+    assert "none of its 1 factors is positive" in negative.reason and "more modes" not in negative.reason
+
+
+@pytest.mark.parametrize(("limit", "word", "said"), [(120.0, "met", ""), (121.0, "not established", "beyond 120")])
+def test_where_no_factor_is_positive_the_reach_of_the_search_decides(limit: float, word: str, said: str) -> None:
+    looked = Check(none_of_other_sign("pressed"), 0.0, 0.0, True)
+    modes = [bending(-1.2, case="pressed")]
+    (verdict,) = judged(modes, modes, [Limit("b", "buckling_factor", limit)], [looked]).limits
+    assert (verdict.verdict, verdict.found) == (word, None)
+    assert said in verdict.reason and "up to 120" in verdict.place
 
 
 @pytest.mark.parametrize(("factor", "said"), [
