@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import subprocess
 import sys
+from collections.abc import Callable, Iterator
 from pathlib import Path
 
 import numpy as np
@@ -126,3 +127,63 @@ def test_without_any_folder_kernels_run_uncached(monkeypatch: pytest.MonkeyPatch
     thrice = kernel(lambda x: 3.0 * x)
     assert thrice(2.0) == 6.0
     assert thrice._cache.cache_path is None
+
+
+@pytest.fixture
+def run_kept(monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> Iterator[Callable[[], list[str]]]:
+    """Makes a kernel that is kept in a folder and calls it once; gives what was compiled for that."""
+    monkeypatch.setattr("fem.solid.kernels.jit.folder_of", lambda path: tmp_path)
+    listener = Compiled()
+    event.register("numba:compile", listener)
+
+    def run() -> list[str]:
+        listener.names.clear()
+        assert kernel(_twice)(2.0) == 4.0
+        return listener.names
+
+    yield run
+    event.unregister("numba:compile", listener)
+
+
+@pytest.mark.parametrize("kind", ["nbc", "nbi"])
+def test_a_damaged_file_is_compiled_again(run_kept: Callable[[], list[str]], tmp_path: Path, kind: str) -> None:
+    """A file cut short, empty, of noise, or with one wrong byte in the middle of the machine code."""
+    assert run_kept() == ["_twice"]
+    assert run_kept() == []
+    (path,) = tmp_path.rglob(f"*.{kind}")
+    good = path.read_bytes()
+    middle = len(good) // 2
+    flipped = good[:middle] + bytes([good[middle] ^ 1]) + good[middle + 1 :]
+    for bad in (good[:middle], b"", np.random.default_rng(0).bytes(5000), flipped):
+        path.write_bytes(bad)
+        assert not cache.whole(path)
+        assert run_kept() == ["_twice"]
+        assert cache.whole(path)
+    assert run_kept() == []
+
+
+def test_a_full_disk_ends_no_run(
+    monkeypatch: pytest.MonkeyPatch, run_kept: Callable[[], list[str]], tmp_path: Path
+) -> None:
+    def full(*arguments: object) -> None:
+        raise OSError(28, "No space left on device")
+
+    monkeypatch.setattr("numba.core.caching.IndexDataCacheFile._save_index", full)
+    assert run_kept() == ["_twice"]
+    assert not list(tmp_path.rglob("*.nb?"))
+
+
+def test_a_damaged_file_is_announced(monkeypatch: pytest.MonkeyPatch, tmp_path: Path) -> None:
+    """With it the kernels are not ready, so that a run tells its user that it compiles."""
+    monkeypatch.setattr(cache, "base_folder", lambda: tmp_path)
+    cache.set_warm()
+    assert not cache.is_warm()  # there are no files
+    for source in cache.sources():
+        folder = cache.folder_of(source)
+        assert folder is not None
+        (folder / "below").mkdir(parents=True)
+        (folder / "below" / "f.nbi").write_bytes(cache.sealed(b"index"))
+        (folder / "below" / "f.1.nbc").write_bytes(cache.sealed(b"code"))
+    assert cache.is_warm()
+    (folder / "below" / "f.1.nbc").write_bytes(cache.sealed(b"code")[:-3])
+    assert not cache.is_warm()

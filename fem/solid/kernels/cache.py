@@ -2,7 +2,8 @@
 
 numba looks only at the file of a function to see whether its code is stale, and misses a change in a kernel of another
 file that is built into it. So each file of kernels has a folder of its own, named by the contents of the file and of
-the files of kernels that it imports.
+the files of kernels that it imports. Each kept file ends in a checksum: what a full disk or a loss of power left of one
+would otherwise end every later run, or run as machine code.
 """
 
 from __future__ import annotations
@@ -15,6 +16,7 @@ import shutil
 import sys
 import tempfile
 import time
+import zlib
 from functools import cache
 from importlib.metadata import version
 from pathlib import Path
@@ -35,6 +37,20 @@ def writable(folder: Path) -> bool:
             return True
     except OSError:
         return False
+
+
+def sealed(data: bytes) -> bytes:
+    """What is written for `data`: pickle does not look at what comes after the end of an object."""
+    return data + zlib.crc32(data).to_bytes(4, "little")
+
+
+def whole(path: Path) -> bool:
+    """Whether a file is there and is as it was written."""
+    try:
+        data = path.read_bytes()
+    except OSError:
+        return False
+    return len(data) > 4 and zlib.crc32(memoryview(data)[:-4]).to_bytes(4, "little") == data[-4:]
 
 
 @cache
@@ -81,7 +97,7 @@ def contents(path: Path) -> str:
             continue
         seen.add(here)
         ahead += [SOLID / (name.decode().replace(".", "/") + ".py") for name in IMPORT.findall(sources()[here])]
-    digest = hashlib.sha256()
+    digest = hashlib.sha256(b"kept with a checksum")
     for each in sorted(seen):
         digest.update(str(each.relative_to(SOLID)).encode() + b"\0" + sources()[each])
     return digest.hexdigest()[:16]
@@ -121,12 +137,15 @@ def _stamp() -> Path | None:
 
 
 def is_warm() -> bool:
-    """Whether every kernel is compiled and kept for this machine, so that a run need not wait for it."""
+    """Whether every kernel is compiled and kept whole for this machine, so that a run need not wait for it."""
     stamp = _stamp()
     try:
-        return stamp is not None and stamp.read_text() == _state()
+        if stamp is None or stamp.read_text() != _state():
+            return False
     except OSError:
         return False
+    kept = [list(folder.rglob("*.nb[ci]")) for folder in map(folder_of, sources()) if folder is not None]
+    return all(files and all(map(whole, files)) for files in kept)
 
 
 def set_warm() -> None:
