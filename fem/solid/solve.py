@@ -75,7 +75,7 @@ def solve_solid(
     total = (model.mechanical + model.thermal).reshape(len(cases), 3 * n).T
     system = HeldSystem(model.K, model.constraints, mesh, budget, solver, backend)
     try:
-        solution = system.solve(total)
+        solution = system.solve(total, model.change != 0)
         u = np.ascontiguousarray(solution.u.T.reshape(len(cases), n, 3).transpose(0, 2, 1))
         cutter = Cutter(mesh)
         vibration, buckling = solid_modes(model, system, u, budget, cutter, stage, solver, backend)

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 import scipy.sparse as sp
+from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.factor import GAUGE_ALLOWED, RESIDUAL_ALLOWED, NotPositive, TooLarge
@@ -139,8 +140,10 @@ class HeldSystem:
         self._choice = "cholesky"
         self.solver = self._direct(f"A direct solver, as the iterative one failed: {why}.")
 
-    def _solve(self, rhs: Array, values: Array) -> tuple[Array, Array]:
+    def _solve(self, rhs: Array, values: Array, heated: NDArray[np.bool_] | None = None) -> tuple[Array, Array]:
         try:
+            if isinstance(self.solver, MultigridSolver):
+                return self.solver.solve_bordered(rhs, values, heated)
             return self.solver.solve_bordered(rhs, values)
         except Stalled as error:
             self._fall_back(str(error))
@@ -163,10 +166,11 @@ class HeldSystem:
         """Give memory back; the object is of no use afterwards."""
         self.solver.close()
 
-    def solve(self, loads: Array) -> Solution:
+    def solve(self, loads: Array, heated: NDArray[np.bool_] | None = None) -> Solution:
         """Solve for the columns of loads (3 n, c), N, with the prescribed values of the supports.
 
         One more right-hand side always goes along, K y0 of a known bending field, and the true residual is taken.
+        `heated` (c,) tells which columns have a thermal part and must be solved nearer.
 
         Raises
         ------
@@ -174,21 +178,22 @@ class HeldSystem:
             When the residual or the forward error of the known field is off.
         """
         try:
-            return self._checked(loads)
+            return self._checked(loads, heated)
         except OffGate as error:
             if not isinstance(self.solver, MultigridSolver):
                 raise
             self._fall_back(error.short)
-            return self._checked(loads)
+            return self._checked(loads, heated)
 
-    def _checked(self, loads: Array) -> Solution:
+    def _checked(self, loads: Array, heated: NDArray[np.bool_] | None) -> Solution:
         g, C = self.constraints.g, self.mean_rows
         moved = self.K @ g
         rhs = self.elimination.gather(loads - moved[:, None])
         values = (self.constraints.row_values - self.constraints.rows @ g)[:, None].repeat(rhs.shape[1], axis=1)
         size = np.asarray(self.T.power(2).sum(axis=0)).ravel()
         y0 = self.elimination.gather(bending_field(self._nodes).T.ravel()) / size
-        both, m = self._solve(np.column_stack([rhs, self.apply(y0)]), np.column_stack([values, C @ y0]))
+        nearer = None if heated is None else np.append(heated, False)
+        both, m = self._solve(np.column_stack([rhs, self.apply(y0)]), np.column_stack([values, C @ y0]), nearer)
         y, m = both[:, :-1], m[:, :-1]
         gauge = float(np.abs(both[:, -1] - y0).max() / np.abs(y0).max())
         scale = np.maximum(np.linalg.norm(rhs, axis=0), np.abs(moved).max() * np.sqrt(g.size))

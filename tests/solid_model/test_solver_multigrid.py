@@ -222,8 +222,8 @@ def test_a_wrong_iterate_is_refused_and_solved_directly(
 ) -> None:
     honest = multigrid.MultigridSolver._solve_some
 
-    def off(self: multigrid.MultigridSolver, rhs: np.ndarray, values: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-        y, m = honest(self, rhs, values)
+    def off(self: multigrid.MultigridSolver, *system: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        y, m = honest(self, *system)
         return y * factor, m
 
     monkeypatch.setattr(multigrid.MultigridSolver, "_solve_some", off)
@@ -314,8 +314,8 @@ def test_the_gauge_catches_a_system_that_solves_only_its_loads(monkeypatch: pyte
     """A solver that is blind to the known field is refused, and the direct one takes over."""
     honest = multigrid.MultigridSolver._solve_some
 
-    def off(self: multigrid.MultigridSolver, rhs: np.ndarray, values: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-        y, m = honest(self, rhs, values)
+    def off(self: multigrid.MultigridSolver, *system: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        y, m = honest(self, *system)
         y[:, -1] *= 1.001
         return y, m
 

@@ -56,14 +56,14 @@ class Goal:
     Attributes
     ----------
     energy
-        Allowed error in the norm of the energy, over the norm of the solution, as it was `DELAY` iterations ago.
+        (k,) allowed error in the norm of the energy, over the norm of the solution, as it was `DELAY` iterations ago.
     floor
         (k,) energy that counts as nothing: the rounding of a start that is a large rigid motion.
     met
         Whether (k,) the residuals of motions and residuals (3 n, k) are small enough.
     """
 
-    energy: float
+    energy: Array
     floor: Array
     met: Callable[[Array, Array], NDArray[np.bool_]]
 
@@ -127,12 +127,13 @@ def conjugate_gradients(
             active &= ~(met & goal.met(u, r))
         if not active.any():
             return Iterate(u, multipliers, iteration)
-    left = float(np.sqrt((missed / energy)[active].max()))
-    if left <= goal.energy:
+    left = np.where(active, np.sqrt(missed / energy), 0.0)
+    worst = int((left / goal.energy).argmax())
+    if left[worst] <= goal.energy[worst]:
         raise Stalled(f"after {MOST_ITERATIONS} iterations the residual was not yet small enough")
     raise Stalled(
-        f"after {MOST_ITERATIONS} iterations the error in the norm of the energy was still {left:.1e}, "
-        f"{goal.energy:.0e} is wanted"
+        f"after {MOST_ITERATIONS} iterations the error in the norm of the energy was still {left[worst]:.1e}, "
+        f"{goal.energy[worst]:.0e} is wanted"
     )
 
 
