@@ -67,6 +67,7 @@ class Scales:
         self._length = ctx.length
         self._heated(ctx)
         self._travelled(ctx)
+        self._notched(ctx, beam)
 
     def _at_least(self, case: str, quantity: str, size: float) -> None:
         self._largest[case, quantity] = max(self._largest.get((case, quantity), 0.0), size)
@@ -77,7 +78,8 @@ class Scales:
         for case in ctx.part.cases:
             stress = SMALL_STRESS * ctx.part.material.E * free_strain(ctx, case.name)
             force = stress * ctx.size[0] * ctx.size[1]
-            for quantity, size in (("nominal_stress", stress), ("section_force", force), ("reaction_force", force)):
+            for quantity, size in (("nominal_stress", stress), ("notch_stress", stress), ("section_force", force),
+                                   ("reaction_force", force)):
                 if size > 0.0:
                     self._at_least(case.name, quantity, size)
             if stress > 0.0:
@@ -97,6 +99,19 @@ class Scales:
         for case in positions:
             assert case.travel is not None
             self._at_least(case.name, "strain_energy", worst[case.travel.case])
+
+    def _notched(self, ctx: Context, beam: Table) -> None:
+        """A notch at the neutral axis has next to no stress: it is measured against the beam's stress at the outer
+        fibres of the stations next to a cut or step."""
+        nominal = [(key, station_of(ctx, key.place), abs(figure.value)) for key, figure in beam.items()
+                   if key.quantity == "nominal_stress"]
+        stations = {at for _, at, _ in nominal if at is not None}
+        if stations:
+            middles = [0.5 * (zone.start + zone.end) for zone in ctx.cut_zones + ctx.step_zones]
+            near = {min(stations, key=lambda at, x=x: abs(at - x)) for x in middles}  # type: ignore[misc]
+            for key, at, size in nominal:
+                if at in near:
+                    self._at_least(key.case, "notch_stress", size)
 
     def __call__(self, key: FigureKey) -> float:
         own = self._largest.get((key.case, key.quantity), 0.0)

@@ -33,6 +33,7 @@ OPEN_SHAPES = ("I", "channel", "angle", "tee", "outline")
 class CaseFacts:
     """What one case adds to the facts about the part.
 
+    `flat_share`: share of the largest displacement that is along the lesser side of the section.
     `shear_share`: share of the beam's largest deflection that is shear. `twist_share`: displacement that
     the largest twist gives at the section's edge, over the largest displacement (at most 1). `acting`: names
     of the loads with a factor other than 0.
@@ -43,6 +44,23 @@ class CaseFacts:
     open_thin: bool
     thin_walled: bool
     acting: frozenset[str] = frozenset()
+    flat_share: float = 0.0
+
+
+FLAT = 10.0
+"""Width over thickness from which a section held at its face is thought of as a plate (judgement, no source)."""
+
+
+def flat_root(ctx: Context, waves: float = 1.0) -> float:
+    """How much stiffer a wide, thin, massive section is in bending about its thin side where faces that are held point
+    by point or rigidly deny it the curvature across: nu^2, the ratio of a plate's to a beam's stiffness less one
+    (Timoshenko & Woinowsky-Krieger, Theory of Plates and Shells, cylindrical bending; from memory), over half a width
+    from the face, which has 1.5 b / L of a cantilever's give (a strip 200 x 80 x 2 is 4.3 % stiffer)."""
+    if max(ctx.size) < FLAT * min(ctx.size):
+        return 0.0
+    gripped = sum(support.coupling != "average" for support in ctx.part.supports)
+    nu = ctx.part.material.nu
+    return nu**2 * min(1.0, 1.5 * gripped * waves / ctx.slenderness)
 
 
 def mesh_error(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
@@ -132,6 +150,12 @@ def local_loads(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
                 yield Share(f"wall bending under load {load.name}", 0.15 / ctx.slenderness)
 
 
+def flat_strip(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
+    size = 0.0 if facts.thin_walled else flat_root(ctx) * facts.flat_share
+    if size > 0.0:
+        yield Share("a wide, thin section held at its face bends as a plate there", size)
+
+
 def heat(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
     # A region held point by point cannot grow sideways; over about half a depth the part next to it is strained
     # by the expansion that it is denied (Saint-Venant), of which Poisson's ratio goes into length.
@@ -142,7 +166,7 @@ def heat(ctx: Context, facts: CaseFacts) -> Iterator[Share]:
 
 
 DISPLACEMENT: tuple[Callable[[Context, CaseFacts], Iterator[Share]], ...] = (
-    mesh_error, end_effects, shear_definition, cuts, cut_flanges, taper, steps, torsion, local_loads, heat,
+    mesh_error, end_effects, shear_definition, cuts, cut_flanges, taper, steps, torsion, local_loads, flat_strip, heat,
 )
 
 

@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from fem.mode import Mode
 from geometry.part import RemotePoint
-from studies.judge.bands import CaseFacts, Share, cuts, steps, taper
+from studies.judge.bands import CaseFacts, Share, cuts, flat_root, steps, taper
 from studies.judge.context import Context
 
 Array = NDArray[np.float64]
@@ -33,6 +33,7 @@ class ModeFacts:
 
     `waves`: half waves along the member, at least 1. `twist`: share of the motion (0 to 1) that is torsion.
     `study`: whose value it is. `acting`: names of the loads of a buckling case.
+    `flat`: share of the motion (0 to 1) that is along the lesser side of the section.
     """
 
     study: Literal["vibration", "buckling"]
@@ -41,6 +42,7 @@ class ModeFacts:
     thin_walled: bool
     open_thin: bool
     acting: frozenset[str] = frozenset()
+    flat: float = 0.0
 
 
 def motions(ctx: Context, mode: Mode) -> Array:
@@ -70,6 +72,12 @@ def twist_of(motion: Array) -> float:
     return float(sums[3] / sums.sum()) if sums.sum() > 0.0 else 0.0
 
 
+def flat_of(ctx: Context, motion: Array) -> float:
+    """Share of what is along the section's lesser side in the square of the motion of the line."""
+    sums = np.square(motion[:, :4]).sum(axis=0)
+    return float(sums[1 + int(np.argmin(ctx.size))] / sums.sum()) if sums.sum() > 0.0 else 0.0
+
+
 def mode_reasons(ctx: Context, facts: ModeFacts) -> tuple[Share, ...]:
     """Reasons that widen the band of one pair of modes, as fractions of its value."""
     vibrates = facts.study == "vibration"
@@ -91,6 +99,9 @@ def _stiffness(ctx: Context, facts: ModeFacts) -> Iterator[Share]:
         yield from _held_ends(ctx, facts)
     yield Share("definition of the shear area", 0.10 * shear_share(ctx, facts) * (1.0 - facts.twist))
     yield from _section_shape(ctx, facts)
+    flat = 0.0 if facts.thin_walled or _free(ctx, facts) else flat_root(ctx, facts.waves) * facts.flat
+    if flat > 0.0:
+        yield Share("a wide, thin section held at its face bends as a plate there", flat)
     # The curvature where a cut or step is may be twice that of the mean.
     yield from (Share(s.text, 2.0 * s.fraction) for s in cuts(ctx, still))
     yield from taper(ctx, still)

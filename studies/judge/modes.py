@@ -24,7 +24,7 @@ from studies.check.studied import ModePair
 from studies.check.words import JudgementWord
 from studies.judge.bands import CaseFacts
 from studies.judge.context import Context
-from studies.judge.mode_bands import WARPING_HELD, ModeFacts, mode_reasons, motions, twist_of, waves_of
+from studies.judge.mode_bands import WARPING_HELD, ModeFacts, flat_of, mode_reasons, motions, twist_of, waves_of
 from studies.judge.mode_pairs import Match, match
 
 Study = Literal["vibration", "buckling"]
@@ -90,7 +90,7 @@ class _Lists:
         for found in match(moves[0], moves[1], values[0], values[1]):
             shapes = [moves[k][index] for k, index in enumerate((found.solid, found.beam)) if index is not None]
             facts = ModeFacts(self.study, min(map(waves_of, shapes)), min(map(twist_of, shapes)), *self.thin,
-                              self.acting)
+                              self.acting, min(flat_of(self.ctx, shape) for shape in shapes))
             yield self._one(found, facts)
 
     def _predicted(self, number: int | None) -> list[Predicted]:

@@ -9,7 +9,7 @@ import numpy as np
 
 from fem.beam import BeamResult
 from fem.beam.slices import sections_at
-from fem.figure import FigureKey
+from fem.figure import FigureKey, Quantity
 from fem.solid import PeakPlace as SolidPeak
 from fem.solid import SolidResult
 from geometry.named_solid import NamedSolid
@@ -78,20 +78,29 @@ def case_facts(ctx: Context, named: NamedSolid, beam: BeamResult, models: Sequen
         open_thin=thin and ctx.member.section.shape in OPEN_SHAPES,
         thin_walled=thin,
         acting=frozenset(name for c in ctx.part.cases if c.name == case for name, f in c.factors.items() if f),
+        flat_share=min(_flat_share(ctx, figures, case) for figures in models),
     )
+
+
+def _flat_share(ctx: Context, figures: Table, case: str) -> float:
+    """Largest displacement along the section's lesser side over the largest displacement."""
+    moved = np.array(_vectors(figures, case, "displacement")).reshape(-1, 3) @ ctx.axes.T
+    largest = float(np.linalg.norm(moved, axis=1).max(initial=0.0))
+    across = moved[:, 1 + int(np.argmin(ctx.size))]
+    return float(np.abs(across).max(initial=0.0)) / largest if largest > 0 else 0.0
 
 
 def _twist_share(ctx: Context, figures: Table, case: str) -> float:
     moved = [f.value for k, f in figures.items() if k.case == case and k.quantity == "displacement"]
-    turned = [abs(float(np.dot(v, ctx.x_axis))) for v in _rotations(figures, case)]
+    turned = [abs(float(np.dot(v, ctx.x_axis))) for v in _vectors(figures, case, "rotation")]
     largest = max(map(abs, moved), default=0.0)
     twist = 0.5 * max(ctx.size) * max(turned, default=0.0)
     return min(twist / largest, 1.0) if largest > 0 else 0.0
 
 
-def _rotations(figures: Table, case: str) -> list[np.ndarray]:
-    places = {k.place for k in figures if k.case == case and k.quantity == "rotation"}
-    keys = ([FigureKey(case, p, "rotation", c) for c in "xyz"] for p in places)
+def _vectors(figures: Table, case: str, quantity: Quantity) -> list[np.ndarray]:
+    places = {k.place for k in figures if k.case == case and k.quantity == quantity}
+    keys = ([FigureKey(case, p, quantity, c) for c in "xyz"] for p in places)
     return [np.array([figures[k].value for k in row]) for row in keys]
 
 

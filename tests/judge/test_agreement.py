@@ -8,7 +8,7 @@ import pytest
 from bar import LENGTH, TIP, WALL, bar, mesh, sound
 
 from fem.figure import Figure, FigureKey
-from geometry.part import Case, Support, TemperatureLoad
+from geometry.part import Case, Cut, Support, TemperatureLoad
 from studies.check.result import Cause
 from studies.judge.agreement import pair_figures, table
 from studies.judge.context import Context
@@ -117,3 +117,19 @@ def test_a_heated_face_that_is_gripped_bulges_the_part() -> None:
 
     assert [judged("hot", bulge), judged("hot", 10.0 * bulge), judged("cold", bulge)] == \
         ["agrees", "suspicious", "suspicious"]
+
+
+def test_a_notch_at_the_neutral_axis_is_measured_against_the_outer_fibre_beside_it() -> None:
+    part = bar()
+    hole = Cut("hole1", "hole", "hole", "z", "all", 203.0, 0.0, 4.0, 4.0)
+    part = dataclasses.replace(part, members=(dataclasses.replace(part.members[0], cuts=(hole,)),))
+    key = FigureKey("lifting", "arm.hole1", "notch_stress", "xx@upper")
+    beam = [Figure(key, 0.0, "MPa")]
+    beam += [Figure(FigureKey("lifting", place, "nominal_stress", "xx@top"), size, "MPa")
+             for place, size in (("arm@200", 60.0), ("arm@20", 6000.0))]
+
+    def judged(size: float) -> str:
+        solid = [Figure(key, size, "MPa")]
+        return pair_figures(Context(part, mesh()), table(solid), table(beam), {}, {})[0].judgement
+
+    assert (judged(-0.75), judged(-15.0)) == ("agrees", "suspicious")

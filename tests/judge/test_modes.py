@@ -9,12 +9,15 @@ from collections.abc import Sequence
 import numpy as np
 import pytest
 from bar import LENGTH, bar, mesh, sound
+from solid_help import box_mesh, box_part
 
+from fem.figure import FigureKey
 from fem.mode import SHAPE_STATIONS, Mode, none_of_other_sign
 from fem.solid import Check
-from geometry.part import Buckling, Case, Limit, Part, RegionLoad, RemotePoint, Vibration
+from geometry.part import Buckling, Case, Limit, Part, RegionLoad, RemotePoint, Support, Vibration
 from studies.check.result import LimitVerdict
 from studies.judge import Judgement, judge
+from studies.judge.bands import CaseFacts, reasons
 from studies.judge.context import Context
 from studies.judge.mode_bands import ModeFacts, mode_reasons, motions, twist_of, waves_of
 from studies.judge.mode_pairs import Match, correlations, match
@@ -246,6 +249,22 @@ def test_a_column_of_both_models_is_told_apart_by_a_fault() -> None:
 def _column() -> Part:
     return dataclasses.replace(bar(loads=(PUSH,), cases=(Case("pressed", {"push": 1.0}),)),
                                buckling=(Buckling("pressed"),))
+
+
+def test_a_wide_thin_strip_held_at_its_face_is_given_the_stiffness_of_a_plate_where_it_bends_flat() -> None:
+    """200 x 80 x 2: both models' factors were 1716 and 1478 for the third mode, deflections 0.1205 and 0.1257 mm."""
+    wall = Support("wall", "arm.start", {"x": 0.0, "y": 0.0, "z": 0.0})
+    mean = Support("wall", "arm.start", dict.fromkeys(("x", "y", "z", "rx", "ry", "rz"), 0.0), coupling="average")
+
+    def size(support: Support, thick: float, flat: float) -> tuple[float, float]:
+        ctx = Context(box_part(200.0, 80.0, thick, [support], [PUSH]), box_mesh(200.0, 80.0, thick, (4, 2, 1)))
+        modes = mode_reasons(ctx, ModeFacts("buckling", 3, 0.0, False, False, flat=flat))
+        key = FigureKey("all", "arm.end", "displacement", "z")
+        still = reasons(ctx, CaseFacts(0.0, 0.0, False, False, flat_share=flat), key)
+        return tuple(sum(s.fraction for s in found if "plate" in s.text) for found in (modes, still))
+
+    assert size(wall, 2.0, 1.0) == pytest.approx((0.09, 0.09 * 1.5 * 0.4))
+    assert size(mean, 2.0, 1.0) == size(wall, 20.0, 1.0) == size(wall, 2.0, 0.0) == (0.0, 0.0)
 
 
 def test_a_carried_mass_widens_the_band_where_it_is_fixed() -> None:
