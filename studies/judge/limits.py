@@ -109,7 +109,9 @@ def _verdict(evidence: Evidence, limit: Limit) -> LimitVerdict:
         word, reason = "not established", doubts[0].doubt
     basis = f" ({limit.basis} basis)" if limit.quantity in ("stress", "yield_factor") else ""
     value = worst.value if np.isfinite(worst.value) else None
-    return LimitVerdict(limit.name, limit.quantity + basis, limit.value, value, unit, worst.case, worst.place, word,
+    # Positions of a travelling load that mirror each other are equal but for rounding: the first is named.
+    named = next(f for f in found if f"{f.value:.3e}" == f"{worst.value:.3e}")
+    return LimitVerdict(limit.name, limit.quantity + basis, limit.value, value, unit, named.case, named.place, word,
                         reason)
 
 

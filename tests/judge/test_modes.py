@@ -215,6 +215,12 @@ def test_a_limit_on_the_buckling_factor_goes_by_the_least_positive_one() -> None
     assert "none of its 1 factors is positive" in negative.reason and "more modes" not in negative.reason
 
 
+def test_of_equal_values_but_for_rounding_the_first_is_named_and_the_worst_decides() -> None:
+    modes = [bending(100.0 + 1e-9), bending(100.0 - 1e-9, turn=math.pi / 2)]
+    verdict = _verdict(Limit("f", "frequency", 100.0), modes)
+    assert (verdict.place, verdict.verdict) == ("mode 1, bending about y", "missed")
+
+
 @pytest.mark.parametrize(("limit", "word", "said"), [(120.0, "met", ""), (121.0, "not established", "beyond 120")])
 def test_where_no_factor_is_positive_the_reach_of_the_search_decides(limit: float, word: str, said: str) -> None:
     looked = Check(none_of_other_sign("pressed"), 0.0, 0.0, True)
