@@ -1,7 +1,7 @@
 """How fast the solid model is, beside general libraries and beside what the machine's memory allows.
 
     python tests/benchmarks/solver_time.py                       # the table: under ten minutes on two quiet cores
-    python tests/benchmarks/solver_time.py --quick               # one small bar, under a minute: does it run at all?
+    python tests/benchmarks/solver_time.py --quick               # one small bar, about a minute: does it run at all?
     python tests/benchmarks/solver_time.py --shapes box --sizes small medium --rivals none
     python tests/benchmarks/solver_time.py --keep FOLDER         # meshes are kept there and used again
     python tests/benchmarks/solver_time.py --from FILE --write-readme     # the table of an earlier run, into README.md
@@ -160,7 +160,7 @@ def arguments() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         description=(__doc__ or "").split("\n\n")[0], epilog="See the head of this file for examples."
     )
-    parser.add_argument("--quick", action="store_true", help="a tiny bar with every rival, under a minute")
+    parser.add_argument("--quick", action="store_true", help="a tiny bar with every rival, about a minute")
     parser.add_argument("--shapes", nargs="+", choices=SHAPES, default=list(SHAPES))
     parser.add_argument("--sizes", nargs="+", choices=SIZES, default=["small", "medium", "large"])
     parser.add_argument("--rivals", nargs="+", choices=[*NAMES, "none"], default=list(NAMES))
