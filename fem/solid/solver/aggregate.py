@@ -17,10 +17,11 @@ from fem.solid.block_matrix import BlockMatrix
 from fem.solid.factor import Cholesky
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run
+from fem.solid.kernels.pattern import find
 from fem.solid.shape import Array
 from fem.solid.solver.cycle import Cycle, largest
 from fem.solid.solver.elimination import Elimination
-from fem.solid.solver.smoother import BlockJacobi
+from fem.solid.solver.smoother import SAFETY, BlockJacobi, ritz_values
 from fem.solid.support import rigid_map
 from geometry.budget import Budget
 
@@ -124,12 +125,8 @@ class AggregateSolver:
             alphas.append(alpha)
             betas.append(beta)
             before = rz
-        a, b = np.array(alphas), np.array(betas)
-        diagonal = 1 / a
-        diagonal[1:] += b[1:] / a[:-1]
-        off = np.sqrt(b[1:]) / a[:-1]
-        values = np.linalg.eigvalsh(np.diag(diagonal) + np.diag(off, 1) + np.diag(off, -1))
-        return float(values[0]), 1.05 * float(values[-1])
+        values = ritz_values(alphas, betas)
+        return float(values[0]), SAFETY * float(values[-1])
 
     def solve(self, rhs: Array) -> Array:
         """(f, k) of right-hand sides (f, k): `STEPS` steps of Chebyshev iteration on the interval of the spectrum."""
@@ -224,13 +221,7 @@ def _square(indptr, indices, blocks, group, motions, starts, columns, out):  # t
         for k in range(indptr[i], indptr[i + 1]):
             j = indices[k]
             row, column = group[i], group[j]
-            low, high = starts[min(row, column)], starts[min(row, column) + 1] - 1
-            while low < high:
-                middle = (low + high) // 2
-                if columns[middle] < max(row, column):
-                    low = middle + 1
-                else:
-                    high = middle
+            place = find(starts, columns, min(row, column), max(row, column))
             for a in range(3):
                 for m in range(6):
                     B[a, m] = 0.0
@@ -242,6 +233,6 @@ def _square(indptr, indices, blocks, group, motions, starts, columns, out):  # t
                     for a in range(3):
                         total += motions[i, a, p] * B[a, m]
                     if row <= column:
-                        out[low, p, m] += total
+                        out[place, p, m] += total
                     if row > column or (row == column and i != j):
-                        out[low, m, p] += total
+                        out[place, m, p] += total

@@ -16,12 +16,14 @@ from fem.solid.block_matrix import BlockMatrix, SingleBlockMatrix
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.lanes import load, minus, store, times, times_plus
 from fem.solid.kernels.parallel import ranges, run
+from fem.solid.shape import Array
 from fem.solid.shape import inverse as inverse_of
 from fem.solid.solver.elimination import Elimination
 
 Single = NDArray[np.float32]
 _LANCZOS = 12
-_SAFETY = 1.05
+SAFETY = 1.05
+"""What the estimate of the largest eigenvalue, which is from below, is raised by (set by trial)."""
 
 
 class BlockJacobi:
@@ -96,11 +98,17 @@ class BlockJacobi:
             alphas.append(alpha)
             betas.append(beta)
             rz = new
-        a, b = np.array(alphas), np.array(betas)
-        diagonal = 1 / a
-        diagonal[1:] += b[1:] / a[:-1]
-        off = np.sqrt(b[1:]) / a[:-1]
-        return _SAFETY * float(np.linalg.eigvalsh(np.diag(diagonal) + np.diag(off, 1) + np.diag(off, -1))[-1])
+        return SAFETY * float(ritz_values(alphas, betas)[-1])
+
+
+def ritz_values(alphas: list[float], betas: list[float]) -> Array:
+    """Rising eigenvalues of the tridiagonal matrix of Lanczos' method, from the coefficients of conjugate gradients
+    (Y. Saad, Iterative Methods for Sparse Linear Systems, 2nd ed. 2003, 6.7.3; from memory)."""
+    a, b = np.array(alphas), np.array(betas)
+    diagonal = 1 / a
+    diagonal[1:] += b[1:] / a[:-1]
+    off = np.sqrt(b[1:]) / a[:-1]
+    return np.asarray(np.linalg.eigvalsh(np.diag(diagonal) + np.diag(off, 1) + np.diag(off, -1)), dtype=float)
 
 
 def _by_lanes(width: int) -> Callable[..., None]:

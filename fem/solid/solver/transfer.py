@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run, weighted_ranges
+from fem.solid.kernels.pattern import find
 from fem.solid.shape import TET_EDGES, Array
 from fem.solid.solver.elimination import Elimination
 
@@ -166,18 +167,12 @@ def _galerkin(first, last, indptr, indices, blocks, parents, starts, columns, ou
                     row, column = parents[i, p], parents[j, q]
                     if i == j and row > column:
                         continue
-                    low, high = starts[min(row, column)], starts[min(row, column) + 1] - 1
-                    while low < high:
-                        middle = (low + high) // 2
-                        if columns[middle] < max(row, column):
-                            low = middle + 1
-                        else:
-                            high = middle
+                    place = find(starts, columns, min(row, column), max(row, column))
                     if row <= column:
                         for c in range(3):
                             for d in range(3):
-                                out[low, c, d] += w * blocks[k, c, d]
+                                out[place, c, d] += w * blocks[k, c, d]
                     if row > column or (row == column and i != j):
                         for c in range(3):
                             for d in range(3):
-                                out[low, c, d] += w * blocks[k, d, c]
+                                out[place, c, d] += w * blocks[k, d, c]
