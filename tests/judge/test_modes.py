@@ -116,9 +116,14 @@ def test_equal_frequencies_are_compared_as_a_pair(turn: float) -> None:
 
 
 def test_one_good_pair_is_not_given_up_for_two_poor_ones() -> None:
-    mixed = dataclasses.replace(bending(300.0), displacement=0.75 * shape(ROOTS[0])[0] + 0.7 * shape(ROOTS[1])[0],
-                                rotation=0.75 * shape(ROOTS[0])[1] + 0.7 * shape(ROOTS[1])[1])
-    found = paired([bending(100.0), mixed], [bending(100.0), torsion(900.0)])
+    """The second shape of each model is more like the other's first than like the other's second."""
+
+    def mixed(root: float) -> Mode:
+        (u, turn), (v, twist) = shape(ROOTS[0]), shape(root)
+        return dataclasses.replace(bending(300.0), displacement=0.78 * u + 0.62 * v,
+                                   rotation=0.78 * turn + 0.62 * twist)
+
+    found = paired([bending(100.0), mixed(ROOTS[1])], [bending(100.0), mixed(ROOTS[2])])
     assert (found[0].solid, found[0].beam) == (0, 0)
 
 
