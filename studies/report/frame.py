@@ -60,8 +60,8 @@ def page_height(canvas: Canvas, width: float, extra: float) -> float:
     return float(np.clip(width * (top - bottom) / (right - left) + extra, 3.0, 10.0))
 
 
-def triad(axes: Any, camera: Camera, right: bool = False) -> None:
-    """Global axes in the lower left (or right) corner of the axes."""
+def triad(axes: Any, camera: Camera, right: bool = False, size: float = 1.0) -> None:
+    """Global axes in the lower left (or right) corner of the axes; `size` makes them larger in a small picture."""
     (left, right_), (bottom, top) = axes.get_xlim(), axes.get_ylim()
     if right_ - left < 0.6 * (top - bottom):
         # An upright part leaves no room inside: the triad stands beside the picture, in inches.
@@ -71,7 +71,8 @@ def triad(axes: Any, camera: Camera, right: bool = False) -> None:
                            bbox_to_anchor=(1.0 if right else 0.0, 0.0), bbox_transform=axes.transAxes)
         inset.set_zorder(5)
     else:
-        inset = axes.inset_axes([0.89 if right else 0.0, -0.04, 0.11, 0.24], zorder=5)
+        wide, high = 0.11 * size, 0.24 * size
+        inset = axes.inset_axes([1.0 - wide if right else 0.0, -0.04, wide, high], zorder=5)
     inset.set_axis_off()
     inset.set_aspect("equal")
     inset.set_xlim(-1.5, 1.5)

@@ -60,7 +60,7 @@ def mode_picture(path: Path, part: Part, mesh: NamedMesh, title: str, modes: Seq
         if rows * columns > len(drawn):
             _axes_cross(panels.flat[len(drawn)], camera)
         else:
-            frame.triad(panels.flat[0], camera)
+            frame.triad(panels.flat[0], camera, size=2.0)
         more = f", the first {MOST} of {len(modes)}" if len(modes) > MOST else ""
         figure.suptitle(f"{part.title}: {title}{more}", fontsize=12)
         frame.colour_bar(figure, list(panels.flat), 0.0, 1.0, "", "viridis")
