@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 import scipy.sparse as sp
 from numpy.typing import NDArray
 
 from fem.solid.kernels import scalar
-from fem.solid.kernels.product import product
+from fem.solid.kernels.parallel import ranges, run
+from fem.solid.kernels.product import Part, divide, product
 from fem.solid.shape import Array
 
 Single = NDArray[np.float32]
@@ -36,6 +37,7 @@ class BlockMatrix:
     indices: NDArray[np.int32]
     blocks: Array
     threads: int = 1
+    _parts: list[Part] = field(default_factory=list, repr=False, compare=False)
 
     @property
     def shape(self) -> tuple[int, int]:
@@ -50,12 +52,19 @@ class BlockMatrix:
         """out = A x of x (3 n,) or (3 n, k), written to the contiguous double array `out`, which is returned."""
         _check(self.shape[0], x, out, np.float64)
         x = np.ascontiguousarray(x, dtype=np.float64)
-        product(self.indptr, self.indices, self.blocks, x, out, self.threads if threads is None else threads)
+        threads = self.threads if threads is None else threads
+        product(self.indptr, self.indices, self.blocks, x, out, threads, _divided(self))
         return out
 
     def single(self) -> SingleBlockMatrix:
         """The same matrix in single precision, for a smoother or a preconditioner."""
-        return SingleBlockMatrix(self.indptr, self.indices, self.blocks.astype(np.float32), self.threads)
+        blocks = np.empty(self.blocks.shape, dtype=np.float32)
+
+        def copy(first: int, last: int) -> None:
+            blocks[first:last] = self.blocks[first:last]
+
+        run(copy, ranges(self.indices.size), self.threads)
+        return SingleBlockMatrix(self.indptr, self.indices, blocks, self.threads, self._parts)
 
     def diagonal(self) -> Array:
         """(3 n,) diagonal."""
@@ -103,6 +112,7 @@ class SingleBlockMatrix:
     indices: NDArray[np.int32]
     blocks: Single
     threads: int = 1
+    _parts: list[Part] = field(default_factory=list, repr=False, compare=False)
 
     @property
     def shape(self) -> tuple[int, int]:
@@ -117,8 +127,16 @@ class SingleBlockMatrix:
         """out = A x, written to the contiguous single-precision array `out`, which is returned."""
         _check(self.shape[0], x, out, np.float32)
         x = np.ascontiguousarray(x, dtype=np.float32)
-        product(self.indptr, self.indices, self.blocks, x, out, self.threads if threads is None else threads)
+        threads = self.threads if threads is None else threads
+        product(self.indptr, self.indices, self.blocks, x, out, threads, _divided(self))
         return out
+
+
+def _divided(matrix: BlockMatrix | SingleBlockMatrix) -> list[Part]:
+    """The ranges of rows of a product, found once."""
+    if not matrix._parts:
+        matrix._parts.extend(divide(matrix.indptr, matrix.indices))
+    return matrix._parts
 
 
 def _check(size: int, x: NDArray[np.floating], out: NDArray[np.floating], kind: type) -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
 from typing import Any, cast
 
 import numpy as np
@@ -15,6 +16,8 @@ from fem.solid.kernels.parallel import ranges, run, weighted_ranges
 Int = NDArray[np.int32]
 _PARTS = 4
 """Ranges of rows, each with its own sum: fixed, so that the order of all sums is."""
+_FEW = 4000
+"""Rows of such sums up to which adding them up is not worth a second thread."""
 
 
 @kernel
@@ -106,8 +109,38 @@ def padded(columns: int) -> int:
     return columns if columns <= 2 else -(-columns // 4) * 4
 
 
-def product(indptr: Int, indices: Int, blocks: NDArray[Any], x: NDArray[Any], out: NDArray[Any], threads: int) -> None:
-    """out = A x of x (3 n,) or (3 n, k), both contiguous and of the blocks' type."""
+@dataclass(frozen=True, slots=True)
+class Part:
+    """A range of rows and what it writes: rows first to last to the result itself as far as `split`, all else, from
+    row `split` to row `top`, to a sum of its own, since other ranges write there too."""
+
+    first: int
+    last: int
+    split: int
+    top: int
+
+
+def divide(indptr: Int, indices: Int) -> list[Part]:
+    """Ranges of rows with about equal numbers of blocks. Where neighbours have near numbers, their sums are short."""
+    farthest = indices[indptr[1:] - 1]  # of each row: its blocks stand in rising order
+    found = []
+    for first, last in weighted_ranges(indptr, _PARTS):
+        beyond = farthest[first:last] >= last
+        split = first + int(beyond.argmax()) if beyond.any() else last
+        found.append(Part(first, last, split, int(farthest[split:last].max(initial=split - 1)) + 1))
+    return found
+
+
+def product(
+    indptr: Int,
+    indices: Int,
+    blocks: NDArray[Any],
+    x: NDArray[Any],
+    out: NDArray[Any],
+    threads: int,
+    parts: list[Part] | None = None,
+) -> None:
+    """out = A x of x (3 n,) or (3 n, k), both contiguous and of the blocks' type; `parts` of `divide`, if at hand."""
     columns = 1 if x.ndim == 1 else x.shape[1]
     if columns == 0:
         return
@@ -115,29 +148,40 @@ def product(indptr: Int, indices: Int, blocks: NDArray[Any], x: NDArray[Any], ou
         wide = np.zeros((x.shape[0], padded(columns)), dtype=x.dtype)
         wide[:, :columns] = x
         result = np.empty_like(wide)
-        product(indptr, indices, blocks, wide, result, threads)
+        product(indptr, indices, blocks, wide, result, threads, parts)
         out[...] = result[:, :columns]
         return
-    parts = weighted_ranges(indptr, _PARTS)
+    parts = divide(indptr, indices) if parts is None else parts
+    width = 3 * columns
     flat_x, flat_out, flat_blocks = x.reshape(-1), out.reshape(-1), blocks.reshape(-1)
-    sums: dict[int, NDArray[Any]] = {}
 
-    def work(first: int, last: int) -> None:
-        sums[first] = y = flat_out if first == 0 else np.empty(flat_x.size - 3 * columns * first, dtype=x.dtype)
-        y[...] = 0
+    def rows(first: int, last: int, y: NDArray[Any]) -> None:
+        """Adds rows first to last to y, which begins at row `first`."""
         if columns == 1:
             _product(first, last, indptr, indices, flat_blocks, flat_x, y)
         for column in range(0, columns if columns > 1 else 0, 8):
             multiply = _MULTIPLY[min(8, columns - column)]
             multiply(first, last, indptr, indices, flat_blocks, flat_x, y, column, columns)
 
-    def add(start: int, stop: int) -> None:
-        for first, _ in parts[1:]:
-            offset = 3 * columns * first
-            begin = max(start, offset)
-            if begin < stop:
-                flat_out[begin:stop] += sums[first][begin - offset : stop - offset]
+    def work(k: int, _: int) -> NDArray[Any]:
+        part = parts[k]
+        flat_out[width * part.first : width * part.last] = 0
+        if part.split > part.first:
+            rows(part.first, part.split, flat_out[width * part.first :])
+        own = np.zeros(width * (part.top - part.split), dtype=x.dtype)
+        if part.last > part.split:
+            rows(part.split, part.last, own)
+        return own
 
-    run(work, parts, threads)
-    if len(parts) > 1:
-        run(add, ranges(flat_x.size, _PARTS), threads)
+    sums = run(work, [(k, k + 1) for k in range(len(parts))], threads)
+
+    def add(start: int, stop: int) -> None:
+        for part, own in zip(parts, sums, strict=True):
+            begin, end = max(start, width * part.split), min(stop, width * part.top)
+            if begin < end:
+                flat_out[begin:end] += own[begin - width * part.split : end - width * part.split]
+
+    overlap = sum(part.top - part.split for part in parts)
+    if overlap:
+        everything = overlap > _FEW
+        run(add, ranges(flat_x.size, _PARTS if everything else 1), threads)

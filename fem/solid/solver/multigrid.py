@@ -21,6 +21,7 @@ from fem.solid.solver.cycle import Cycle
 from fem.solid.solver.elimination import Elimination
 from fem.solid.solver.estimate import AT_ONCE, FACTORED, refuse_multigrid
 from fem.solid.solver.gauge import rounding_of_product
+from fem.solid.solver.ordering import Ordering
 from fem.solid.solver.smoother import BlockJacobi
 from fem.solid.solver.transfer import Transfer
 from geometry.budget import Budget
@@ -70,7 +71,12 @@ class MultigridSolver:
         reason: str = "",
     ) -> None:
         self.reason, self.iterations = reason, 0
-        self._K, self._held, self._threads = K, held, budget.threads
+        self._threads = budget.threads
+        self._order = order = Ordering(nodes, held.first, held.count, held.T.shape[1])
+        K, single = order.matrix(K, budget.threads)
+        held, mean_rows = Elimination(order.motions(held.T)), order.columns(mean_rows)
+        tets, nodes = order.number[tets], nodes[:, order.nodes]
+        self._K, self._held = K, held
         self._transfer = transfer = Transfer(tets, held, budget.threads)
         refuse_multigrid(K, transfer.coarse.T.shape[1], budget)
         count = mean_rows.shape[0]
@@ -86,7 +92,7 @@ class MultigridSolver:
         else:
             self._coarse = self._factored(transfer.coarse.square(coarse), coarse_rows, springs, budget, backend)
         jacobi = BlockJacobi(K, held, budget.threads)
-        self._smooth_and_correct = Cycle(K.single(), jacobi, transfer, self._coarse.solve, DEGREE, budget.seed)
+        self._smooth_and_correct = Cycle(single, jacobi, transfer, self._coarse.solve, DEGREE, budget.seed)
         self._rows: MeanRows | None = None
         if count:
             C = mean_rows.toarray()
@@ -115,11 +121,12 @@ class MultigridSolver:
         `heated` (k,): which columns have a thermal part.
         """
         tighter = np.ones(rhs.shape[1]) if heated is None else np.where(heated, HEATED, 1.0)
+        rhs = rhs[self._order.unknowns]
         turns = [slice(a, a + AT_ONCE) for a in range(0, rhs.shape[1], AT_ONCE)]
         found = [self._solve_some(rhs[:, some], values[:, some], tighter[some]) for some in turns]
-        if len(found) == 1:
-            return found[0]
-        return np.hstack([y for y, _ in found]), np.hstack([m for _, m in found])
+        y = np.empty_like(rhs)
+        y[self._order.unknowns] = np.hstack([some for some, _ in found])
+        return y, np.hstack([m for _, m in found])
 
     def _solve_some(self, rhs: Array, values: Array, tighter: Array) -> tuple[Array, Array]:
         loads, allowed = self._held.lift(rhs), RESIDUAL * tighter
@@ -149,12 +156,14 @@ class MultigridSolver:
 
     def precondition(self, residual: Array) -> Array:
         """(f, k): one cycle, with mean rows its projection onto C y = 0."""
-        r = self._held.lift(residual)
+        r = self._held.lift(residual[self._order.unknowns])
         z = np.empty_like(r)
         self._cycle(r, z)
         if self._rows:
             z -= self._rows.W @ (self._rows.inverse @ (self._rows.C @ z))
-        return self._held.reduce(z)
+        y = np.empty_like(residual)
+        y[self._order.unknowns] = self._held.reduce(z)
+        return y
 
     def close(self) -> None:
         """Give memory back."""

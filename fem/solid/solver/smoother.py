@@ -43,7 +43,7 @@ class BlockJacobi:
         s, i = np.nonzero(unused)
         inner[s, i, i] = 1.0
         inverse[held.special] = Q @ np.linalg.inv(inner) @ Q.transpose(0, 2, 1)
-        self.blocks = inverse.astype(np.float32)
+        self.blocks = inverse.astype(np.float32, order="C")
         self._rows = np.flatnonzero(np.diff(held.rigid.indptr))
         self._rigid = held.rigid[self._rows].toarray()
         if self._rows.size:
