@@ -21,7 +21,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from geometry.endings import ended_from_outside, signal_name, told_from_outside
-from geometry.process import Job, Template, TemplateFailure, shared_template
+from geometry.process import Job, LentTemplate, Template, TemplateFailure, shared_template
 
 Ending = Literal["refused", "time", "memory", "crash", "killed", "stopped"]
 
@@ -58,7 +58,7 @@ class ChildResult:
     peak_memory: float
 
 
-def mesh_template() -> Template:
+def mesh_template() -> Template | LentTemplate:
     """The process that has the mesh kernel loaded; `Template.start` begins to load it without waiting."""
     return shared_template("mesher._worker")
 
@@ -69,7 +69,7 @@ def run_child(
     memory: float,
     files: Mapping[str, bytes] | None = None,
     stop: threading.Event | None = None,
-    template: Template | None = None,
+    template: Template | LentTemplate | None = None,
 ) -> ChildResult:
     """Run one job of `mesher._worker` and wait for it.
 

@@ -29,11 +29,13 @@ class Job:
         Process id.
     data
         Stream socket to the job; at its end the job is over or has closed it.
+    seconds
+        Processor time that it took, known after its end (0 where it ended with its template).
     """
 
     def __init__(self, pid: int, data: socket.socket, status: int, kill: Callable[[], None],
                  template_ended: Callable[[], int | None]) -> None:
-        self.pid, self.data = pid, data
+        self.pid, self.data, self.seconds = pid, data, 0.0
         self._status, self._kill, self._template_ended = status, kill, template_ended
         self._code: int | None = None
 
@@ -46,9 +48,12 @@ class Job:
     def wait(self, seconds: float) -> int | None:
         """Exit status (-signal when ended by one), or None when the job is still at work after `seconds`."""
         if self._code is None and select.select([self._status], [], [], max(seconds, 0.0))[0]:
-            told = os.read(self._status, NUMBER)
-            # The template is gone and has taken the job along.
-            self._code = int.from_bytes(told, "big", signed=True) if len(told) == NUMBER else self._with_template()
+            told = os.read(self._status, 2 * NUMBER)
+            if len(told) == 2 * NUMBER:
+                self._code = int.from_bytes(told[:NUMBER], "big", signed=True)
+                self.seconds = 1e-6 * int.from_bytes(told[NUMBER:], "big")
+            else:  # the template is gone and has taken the job along
+                self._code = self._with_template()
         return self._code
 
     def _with_template(self) -> int:

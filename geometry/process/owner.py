@@ -3,35 +3,35 @@
 from __future__ import annotations
 
 import atexit
-import json
 import os
-import select
 import socket
 import subprocess
 import sys
 import threading
-import time
 from collections.abc import Callable, Mapping
-from contextlib import suppress
 from itertools import count
 from pathlib import Path
 from typing import Any
 
-from geometry.process.job import Job, TemplateFailure
-from geometry.process.template import LONGEST_MESSAGE, NUMBER
-
-SLOWEST_START = 300.0
-"""Seconds for a template to load its kernel, on a busy machine with cold disks."""
+from geometry.process.job import Job
+from geometry.process.lent import LentTemplate
+from geometry.process.submit import kill_client, submit
 
 
 class Template:
     """A process that has loaded `module` (see `geometry.process.template`) and copies itself for every job.
 
     Any thread may use it, and jobs may run side by side. It ends with this process, with `close`, and never by itself.
+
+    Parameters
+    ----------
+    folder
+        This process's own, with what its jobs leave behind: removed by the template when this process has ended without
+        doing so.
     """
 
-    def __init__(self, module: str) -> None:
-        self.module = module
+    def __init__(self, module: str, folder: str | Path = "") -> None:
+        self.module, self._folder = module, str(folder)
         self._lock = threading.Lock()
         self._process: subprocess.Popen[bytes] | None = None
         self._control: socket.socket | None = None
@@ -59,14 +59,14 @@ class Template:
         single = dict.fromkeys(("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS"), "1")
         with theirs:
             self._process = subprocess.Popen(
-                [sys.executable, "-P", "-m", "geometry.process.template", self.module],
+                [sys.executable, "-P", "-m", "geometry.process.template", self.module, self._folder],
                 stdin=theirs.fileno(), stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL,
                 env={**os.environ, **single, "PYTHONPATH": path}, start_new_session=True,
             )
         self._control = ours
         return ours, self._process
 
-    def submit(self, job: Mapping[str, Any], cancelled: Callable[[], bool] = lambda: False) -> Job:
+    def submit(self, job: Mapping[str, Any], cancelled: Callable[[], bool] = lambda: False, client: str = "") -> Job:
         """Start a job and wait until its process is there, or until `cancelled`.
 
         Raises
@@ -74,35 +74,26 @@ class Template:
         TemplateFailure
             The template ended or did not answer (the next call starts it anew), or the call was cancelled.
         """
-        number = next(self._numbers)
-        message = json.dumps({"do": "start", "number": number, "job": dict(job)}).encode()
-        if len(message) > LONGEST_MESSAGE:
-            raise ValueError(f"a job's order has {len(message)} bytes, at most {LONGEST_MESSAGE}: send it as data")
-        data, theirs = socket.socketpair(socket.AF_UNIX, socket.SOCK_STREAM)
-        status, told = os.pipe()
-        control = None
-        try:
-            with theirs:
-                try:
-                    with self._lock:
-                        control, process = self._start()
-                        socket.send_fds(control, [message], [theirs.fileno(), told])
-                finally:
-                    os.close(told)
-            pid = _pid(status, process, cancelled)
-        except BaseException as error:
-            if control is not None:
-                self._kill(control, number)  # it may be started yet
-            data.close()
-            os.close(status)
-            if isinstance(error, OSError):
-                raise TemplateFailure(f"the process for {self.module} could not be used ({error})", None) from error
-            raise
-        return Job(pid, data, status, lambda: self._kill(control, number), process.poll)
+        return submit(self.module, client, next(self._numbers), job, self._send, cancelled)
 
-    def _kill(self, control: socket.socket, number: int) -> None:
-        with suppress(OSError):  # gone, and the job with it
-            control.send(json.dumps({"do": "kill", "number": number}).encode())
+    def _send(self, message: bytes, handles: list[int]) -> tuple[socket.socket, Callable[[], int | None]]:
+        with self._lock:
+            control, process = self._start()
+            socket.send_fds(control, [message], handles)
+        return control, process.poll
+
+    def lend(self) -> tuple[socket.socket, Callable[[], int | None]]:
+        """A copy of this end of the socket for a process of one's own (see `LentTemplate`), and how the template that
+        it leads to has ended, None while it lives. Starts the template when it is not there."""
+        with self._lock:
+            control, process = self._start()
+            return control.dup(), process.poll
+
+    def kill_client(self, client: str) -> None:
+        """End every job of a client."""
+        with self._lock:
+            if self._control is not None:
+                kill_client(self._control, client)
 
     def close(self) -> None:
         """End the template and its jobs; the next job starts it anew."""
@@ -125,31 +116,25 @@ class Template:
         self._control = self._process = None
 
 
-def _pid(status: int, process: subprocess.Popen[bytes], cancelled: Callable[[], bool]) -> int:
-    deadline = time.monotonic() + SLOWEST_START
-    while not select.select([status], [], [], 0.05)[0]:
-        if cancelled():
-            raise TemplateFailure("cancelled", None)
-        if time.monotonic() > deadline:
-            raise TemplateFailure(f"a kernel was not loaded within {SLOWEST_START:g} s", None)
-    told = os.read(status, NUMBER)
-    if len(told) < NUMBER:
-        with suppress(subprocess.TimeoutExpired):
-            process.wait(5.0)
-        raise TemplateFailure("the process that loads a kernel has ended", process.returncode)
-    return int.from_bytes(told, "big", signed=True)
-
-
 _shared: dict[str, Template] = {}
+_lent: dict[str, LentTemplate] = {}
 _sharing = threading.Lock()
 
 
-def shared_template(module: str) -> Template:
+def shared_template(module: str) -> Template | LentTemplate:
     """This process's template for `module`, so that a sweep loads each kernel once."""
     with _sharing:
+        if module in _lent:
+            return _lent[module]
         if module not in _shared:
             _shared[module] = Template(module)
         return _shared[module]
+
+
+def share_lent(template: LentTemplate) -> None:
+    """Let this process, which is a job itself, use a template that was lent to it as its own for that module."""
+    with _sharing:
+        _lent[template.module] = template
 
 
 @atexit.register

@@ -22,14 +22,14 @@ from geometry.endings import ended_from_outside, signal_name, told_from_outside
 from geometry.named_solid import NamedSolid
 from geometry.part import Part
 from geometry.problem import HaunchError, SolidError
-from geometry.process import Job, Template, TemplateFailure, shared_template
+from geometry.process import Job, LentTemplate, Template, TemplateFailure, shared_template
 
 ADDRESS_SPACE_MARGIN = 6144
 """MiB of address space above the memory limit: the CAD kernel's libraries map far more than they touch."""
 LEAST_SECONDS = 60.0
 
 
-def cad_template() -> Template:
+def cad_template() -> Template | LentTemplate:
     """The process that has the CAD kernel loaded; `Template.start` begins to load it without waiting."""
     return shared_template("studies.check.solid_child")
 
@@ -37,7 +37,7 @@ def cad_template() -> Template:
 class SolidChild:
     """A solid being built. Use as a context manager: leaving it ends the child in any case."""
 
-    def __init__(self, part: Part, budget: Budget, template: Template | None = None) -> None:
+    def __init__(self, part: Part, budget: Budget, template: Template | LentTemplate | None = None) -> None:
         self._budget = budget
         self._seconds = max(budget.seconds, LEAST_SECONDS)
         self._template = template or cad_template()
