@@ -18,7 +18,7 @@ from fem.solid.model import SolidModel, build_model
 from fem.solid.solver.choose import choose
 from fem.solid.solver.elimination import Elimination
 from fem.solid.solver.estimate import multigrid_memory
-from fem.solid.solver.smoother import BlockJacobi
+from fem.solid.solver.smoother import ADD, BEGIN, CARRY, BlockJacobi
 from fem.solid.solver.transfer import Transfer
 from fem.solid.system import HeldSystem
 from geometry.budget import Budget
@@ -78,6 +78,15 @@ def test_the_linear_level_is_the_linear_elements_stiffness() -> None:
     assert abs(transfer.galerkin(model.K).to_csr() - exact).max() < 1e-12 * abs(exact).max()
 
 
+def test_the_linear_elements_stiffness_is_what_the_levels_make_of_the_quadratic_one() -> None:
+    model = make(bent_mesh())
+    transfer = Transfer(model.mesh.tets, Elimination(model.constraints.T), 1)
+    assert model.K.linear is not None
+    ours, made = model.K.linear(transfer.corners), transfer.galerkin(model.K)
+    assert np.array_equal(ours.indptr, made.indptr) and np.array_equal(ours.indices, made.indices)
+    assert np.abs(ours.blocks - made.blocks).max() < 1e-13 * np.abs(made.blocks).max()
+
+
 @pytest.mark.parametrize("kind", SUPPORTS)
 def test_the_transfer_gives_held_motions_and_its_transpose(kind: str) -> None:
     model = make(bent_mesh(), SUPPORTS[kind])
@@ -103,18 +112,19 @@ def test_a_step_of_the_smoother_is_that_of_dense_algebra(columns: int) -> None:
     left, change, d, z = np.random.default_rng(5).normal(size=(4, n, columns)).astype(np.float32)
     d = d * np.float32(np.abs(inverse).max())
     z = z * np.float32(np.abs(inverse).max())
-    for taken, old in ((None, 0.0), (change, 0.0), (change, 0.3)):
+    for taken, old, mode in ((None, 0.0, BEGIN), (change, 0.0, CARRY), (change, 0.3, ADD)):
         there = left.astype(float) - (0.0 if taken is None else taken)
         step = old * d + 0.7 * (inverse @ there)
-        end = z + 1.3 * step
-        jacobi.step(left, taken, d, z, old, 0.7, 1.3)
+        end = {BEGIN: 0.0, ADD: z, CARRY: z.astype(float) + d}[mode] + 1.3 * step
+        source, left = left, left if taken is None else np.full_like(left, np.nan)
+        jacobi.step(source, taken, left, d, z, old, 0.7, 1.3, mode)
         assert gap(left, there) < 1e-6
         assert gap(d, step) < 1e-6
         assert gap(z, end) < 1e-6
     again = [a.copy() for a in (left, d, z)]
-    jacobi.step(left, change, d, z, 0.3, 0.7, 1.3)
+    jacobi.step(left, change, left, d, z, 0.3, 0.7, 1.3, ADD)
     jacobi.threads = 3
-    jacobi.step(again[0], change, again[1], again[2], 0.3, 0.7, 1.3)
+    jacobi.step(again[0], change, *again, 0.3, 0.7, 1.3, ADD)
     assert all(np.array_equal(a, b) for a, b in zip(again, (left, d, z), strict=True))
 
 

@@ -30,6 +30,9 @@ STRONG = 0.05
 DEGREE, STEPS = 2, 3
 _DEPENDENT = 1e-6
 _LANCZOS = 10
+_FEW = 4
+"""Ranges of rows of a vector: it is short."""
+Single = NDArray[np.float32]
 
 
 class Aggregates:
@@ -63,19 +66,20 @@ class Aggregates:
         self.dropped = np.flatnonzero(~kept.ravel())
         vectors *= np.where(kept, 1 / np.sqrt(np.where(kept, weight, 1.0)), 0.0)[:, None, :]
         self.motions = motion @ vectors[self.group]
+        self._light = self.motions.astype(np.float32)
         order = np.argsort(self.group, kind="stable").astype(np.int32)
         self._members = np.concatenate([[0], np.cumsum(size)]).astype(np.int32), order
 
-    def restrict(self, r: NDArray[Any]) -> Array:
+    def restrict(self, r: Single) -> Array:
         """(6 g, k) of (3 n, k)."""
         y = np.zeros((6 * self.count, r.shape[1]))
-        run(lambda a, b: _restrict(a, b, *self._members, self.motions, r, y), ranges(self.count), self._threads)
+        run(lambda a, b: _restrict(a, b, *self._members, self._light, r, y), ranges(self.count), self._threads)
         return y
 
-    def prolong(self, y: Array, z: NDArray[Any]) -> None:
-        """z (3 n, k) += P y of y (6 g, k)."""
+    def prolong(self, y: Array, z: Single) -> None:
+        """z (3 n, k) = P y of y (6 g, k)."""
         parts = ranges(self.group.size)
-        run(lambda a, b: _prolong(a, b, self.group, self.motions, y, z), parts, self._threads)
+        run(lambda a, b: _prolong(a, b, self.group, self._light, y.astype(z.dtype), z), parts, self._threads)
 
     def square(self, K: BlockMatrix) -> sp.csr_matrix:
         """Upper triangle of P^T K P (6 g, 6 g), with ones for the motions that a group does not have."""
@@ -106,7 +110,11 @@ class AggregateSolver:
         groups = Aggregates(K, held, nodes, budget.threads)
         self._factor = Cholesky(groups.square(K), budget, backend, upper=True)
         jacobi = BlockJacobi(K, held, budget.threads)
-        self._cycle = Cycle(self._single, jacobi, groups, self._factor.solve, DEGREE, budget.seed)
+
+        def coarse(r: Single, d: Single) -> None:
+            groups.prolong(self._factor.solve(groups.restrict(r)), d)
+
+        self._cycle = Cycle(self._single, jacobi, coarse, DEGREE, budget.seed)
         self._low, self._high = self._spectrum(K, budget.seed)
 
     def _spectrum(self, K: BlockMatrix, seed: int) -> tuple[float, float]:
@@ -129,26 +137,52 @@ class AggregateSolver:
         return float(values[0]), SAFETY * float(values[-1])
 
     def solve(self, rhs: Array) -> Array:
-        """(f, k) of right-hand sides (f, k): `STEPS` steps of Chebyshev iteration on the interval of the spectrum."""
-        centre, half = (self._high + self._low) / 2, (self._high - self._low) / 2
+        """(f, k) of right-hand sides (f, k)."""
         r = self._held.lift(rhs)
-        x, z, w = np.zeros_like(r), np.empty_like(r), np.empty(r.shape, np.float32)
-        p, alpha = np.zeros_like(r), 0.0
+        scale = largest(r, self._threads)
+        scale = np.where(scale > 0, scale, 1.0)
+        return self._held.reduce(self.correct((r / scale).astype(np.float32)) * scale)
+
+    def correct(self, r: Single) -> Single:
+        """Motions (3 n, k) for forces (3 n, k) on the nodes, which are spent on it.
+
+        `STEPS` steps of Chebyshev iteration on the interval of the spectrum.
+        """
+        centre, half = (self._high + self._low) / 2, (self._high - self._low) / 2
+        x, z, p, w = (np.empty_like(r) for _ in range(4))
+        alpha, rows = 0.0, ranges(r.shape[0], _FEW)
         for k in range(STEPS):
-            self._cycle(r, z)
+            self._cycle.correct(r, z)
             beta = 0.0 if k == 0 else (half * alpha) ** 2 / (2 if k == 1 else 4)
             alpha = 1 / (centre - (beta / alpha if k else 0.0))
-            p = z + beta * p
-            x += alpha * p
+            factors = np.float32(alpha), np.float32(beta)
+            run(lambda a, b, factors=factors, k=k: _go(a, b, z, *factors, k == 0, p, x), rows, self._threads)
             if k + 1 < STEPS:
-                scale = np.maximum(largest(p, self._threads), 1e-300)
-                r -= alpha * scale * self._single.product((p / scale).astype(np.float32), w, self._threads)
-        return self._held.reduce(x)
+                self._single.product(p, w, self._threads)
+                run(lambda a, b, alpha=factors[0]: _take(a, b, alpha, w, r), rows, self._threads)
+        return x
 
     def close(self) -> None:
         """Give memory back."""
         self._factor.close()
         self._cycle.close()
+
+
+@kernel
+def _go(first, last, z, alpha, beta, begin, p, x):  # type: ignore[no-untyped-def]
+    """p = z + beta p;  x += alpha p, or from nothing."""
+    for i in range(first, last):
+        for c in range(z.shape[1]):
+            p[i, c] = z[i, c] if begin else z[i, c] + beta * p[i, c]
+            x[i, c] = alpha * p[i, c] if begin else x[i, c] + alpha * p[i, c]
+
+
+@kernel
+def _take(first, last, alpha, w, r):  # type: ignore[no-untyped-def]
+    """r -= alpha w."""
+    for i in range(first, last):
+        for c in range(r.shape[1]):
+            r[i, c] -= alpha * w[i, c]
 
 
 def _groups(K: BlockMatrix) -> NDArray[np.int32]:
@@ -208,10 +242,10 @@ def _prolong(first, last, group, motions, y, z):  # type: ignore[no-untyped-def]
         g = 6 * group[i]
         for d in range(3):
             for c in range(z.shape[1]):
-                total = 0.0
+                total = z.dtype.type(0.0)
                 for m in range(6):
                     total += motions[i, d, m] * y[g + m, c]
-                z[3 * i + d, c] += z.dtype.type(total)
+                z[3 * i + d, c] = total
 
 
 @kernel

@@ -26,6 +26,7 @@ from fem.solid.solver.smoother import BlockJacobi
 from fem.solid.solver.transfer import Transfer
 from geometry.budget import Budget
 
+Single = NDArray[np.float32]
 DEGREE = 3
 ENERGY = 1e-6
 """Allowed error in the norm of the energy, as it was two iterations before the last: what remains is about a tenth, and
@@ -73,14 +74,18 @@ class MultigridSolver:
         self.reason, self.iterations = reason, 0
         self._threads = budget.threads
         self._order = order = Ordering(nodes, held.first, held.count, held.T.shape[1])
+        given = K
         K, single = order.matrix(K, budget.threads)
         held, mean_rows = Elimination(order.motions(held.T)), order.columns(mean_rows)
-        tets, nodes = order.number[tets], nodes[:, order.nodes]
+        tets, nodes = order.number[tets].astype(np.int64), nodes[:, order.nodes]
         self._K, self._held = K, held
         self._transfer = transfer = Transfer(tets, held, budget.threads)
         refuse_multigrid(K, transfer.coarse.T.shape[1], budget)
         count = mean_rows.shape[0]
-        coarse = transfer.galerkin(K)
+        if given.linear:
+            coarse = given.linear(order.nodes[transfer.corners])
+        else:
+            coarse = transfer.galerkin(K)
         coarse_rows = sp.csr_matrix((count, transfer.coarse.T.shape[1]))
         springs = np.zeros(0, dtype=np.int64)
         if count:
@@ -92,7 +97,7 @@ class MultigridSolver:
         else:
             self._coarse = self._factored(transfer.coarse.square(coarse), coarse_rows, springs, budget, backend)
         jacobi = BlockJacobi(K, held, budget.threads)
-        self._smooth_and_correct = Cycle(single, jacobi, transfer, self._coarse.solve, DEGREE, budget.seed)
+        self._smooth_and_correct = Cycle(single, jacobi, self._correct, DEGREE, budget.seed)
         self._rows: MeanRows | None = None
         if count:
             C = mean_rows.toarray()
@@ -173,6 +178,13 @@ class MultigridSolver:
     def _cycle(self, residual: Array, out: Array) -> None:
         self._smooth_and_correct(residual, out)
         self._held.project(out)  # single precision keeps a rigid region rigid to seven digits only
+
+    def _correct(self, residual: Single, out: Single) -> None:
+        """The linear level's part of a cycle."""
+        if isinstance(self._coarse, AggregateSolver):  # there are no rigid regions then
+            self._transfer.prolong_nodes(self._coarse.correct(self._transfer.restrict_nodes(residual)), out)
+        else:
+            self._transfer.prolong(self._coarse.solve(self._transfer.restrict(residual)), out)
 
     def _product(self, x: Array, out: Array) -> None:
         self._K.product(x, out, self._threads)

@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix, SingleBlockMatrix
 from fem.solid.kernels.jit import kernel
-from fem.solid.kernels.lanes import load, minus, store, times, times_plus
+from fem.solid.kernels.lanes import load, minus, plus, store, times, times_plus
 from fem.solid.kernels.parallel import ranges, run
 from fem.solid.shape import Array
 from fem.solid.shape import inverse as inverse_of
@@ -51,26 +51,37 @@ class BlockJacobi:
             self._inner = np.linalg.inv(R.T @ (K @ R))
 
     def step(
-        self, left: Single, change: Single | None, d: Single, z: Single, old: float, new: float, gain: float
+        self,
+        source: Single,
+        change: Single | None,
+        left: Single,
+        d: Single,
+        z: Single,
+        old: float,
+        new: float,
+        gain: float,
+        mode: int,
     ) -> None:
-        """left -= change;  d = old d + new D^-1 left;  z += gain d. All (3 n, k) and contiguous; `change` may be none.
+        """left = source - change;  d = old d + new D^-1 left;  and z by `mode` (`BEGIN`, `ADD`, `CARRY`).
 
-        With `old` zero d is not read.
+        All (3 n, k) and contiguous; without `change` the source is taken as it is and `left` is not written. With
+        `old` zero d is not read, but to carry it.
         """
         shared = None
         if self._rows.size:
-            there = left[self._rows] if change is None else left[self._rows] - change[self._rows]
+            there = source[self._rows] if change is None else source[self._rows] - change[self._rows]
             shared = (self._rigid @ (self._inner @ (self._rigid.T @ there.astype(float)))).astype(np.float32)
             shared *= np.float32(new)
         factors = np.float32(old), np.float32(new), np.float32(gain)
-        columns = left.shape[1]
-        fields = [a.reshape(-1) for a in (self.blocks, left, left if change is None else change, d, z)]
+        columns = source.shape[1]
+        given = (self.blocks, source, source if change is None else change, left, d, z)
+        fields = [a.reshape(-1) for a in given]
 
         def part(first: int, last: int) -> None:
             column = 0
             for width, step in _STEP.items():
                 while columns - column >= width:
-                    step(first, last, *fields, change is not None, *factors, column, columns)
+                    step(first, last, *fields, change is not None, *factors, mode, column, columns)
                     column += width
 
         run(part, ranges(self.blocks.shape[0]), self.threads)
@@ -85,8 +96,7 @@ class BlockJacobi:
         z, p, q = np.zeros_like(r), np.zeros_like(r), np.zeros_like(r)
         alphas, betas, rz = [], [], 0.0
         for k in range(_LANCZOS):
-            z[:] = 0
-            self.step(r, None, q, z, 0.0, 1.0, 1.0)
+            self.step(r, None, r, q, z, 0.0, 1.0, 1.0, BEGIN)
             new = float(np.vdot(r, z))
             if not new > 0:
                 break
@@ -111,17 +121,21 @@ def ritz_values(alphas: list[float], betas: list[float]) -> Array:
     return np.asarray(np.linalg.eigvalsh(np.diag(diagonal) + np.diag(off, 1) + np.diag(off, -1)), dtype=float)
 
 
+BEGIN, ADD, CARRY = 0, 1, 2
+"""z = gain d;  z += gain d;  z += d as it was + gain d."""
+
+
 def _by_lanes(width: int) -> Callable[..., None]:
     """One step of `width` columns side by side, which begin at `column` of rows that are `stride` long."""
 
     @kernel
     def step(  # type: ignore[no-untyped-def]
-        first, last, blocks, left, change, d, z, changes, old, new, gain, column, stride
+        first, last, blocks, source, change, left, d, z, changes, old, new, gain, mode, column, stride
     ):
         one = np.uint64(stride)
         for i in range(first, last):
             at = np.uint64(3 * i) * one + np.uint64(column)
-            u, v, w = load(left, at, width), load(left, at + one, width), load(left, at + one + one, width)
+            u, v, w = load(source, at, width), load(source, at + one, width), load(source, at + one + one, width)
             if changes:
                 u = minus(u, load(change, at, width))
                 v = minus(v, load(change, at + one, width))
@@ -137,8 +151,13 @@ def _by_lanes(width: int) -> Callable[..., None]:
                 )
                 if old != 0:
                     g = times_plus(old, load(d, at, width), g)
+                if mode == 0:
+                    store(z, at, times(gain, g))
+                elif mode == 1:
+                    store(z, at, times_plus(gain, g, load(z, at, width)))
+                else:
+                    store(z, at, times_plus(gain, g, plus(load(d, at, width), load(z, at, width))))
                 store(d, at, g)
-                store(z, at, times_plus(gain, g, load(z, at, width)))
                 at += one
 
     return cast(Callable[..., None], step)

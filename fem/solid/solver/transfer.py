@@ -57,11 +57,13 @@ class Transfer:
         used[T.indices] = True
         used[fine.own :] = True
         self.coarse = Elimination(T[:, used])
+        self._fine, self._shared = fine, fine.rigid.shape[1] > 0
         self._plain = np.ones(n, dtype=np.bool_)
-        self._plain[fine.special] = False
+        self._plain[fine.special] = not self._shared
         self._rows = (3 * fine.special[:, None] + np.arange(3)).ravel()
-        self._special = self._special_rows(fine)
-        self._special_back = self._special.T.tocsr()
+        if self._shared:
+            self._special = self._special_rows(fine)
+            self._special_back = self._special.T.tocsr()
         plain = np.flatnonzero(self._plain)
         child = sp.csr_matrix(
             (
@@ -89,22 +91,33 @@ class Transfer:
         return sp.csr_matrix(rows)
 
     def prolong(self, y: Array, z: NDArray[Any]) -> None:
-        """z (3 n, k) += P y of y (f', k)."""
-        x = self.coarse.expand(y).astype(z.dtype)
-        parts = ranges(self._plain.size)
-        run(lambda a, b: _prolong(a, b, self.parents, self._plain, x, z), parts, self._threads)
-        if self._rows.size:
-            z[self._rows] += (self._special @ y).astype(z.dtype)
+        """z (3 n, k) = P y of y (f', k)."""
+        self.prolong_nodes(self.coarse.expand(y).astype(z.dtype), z)
+        if self._shared:
+            z[self._rows] = self._special @ y
 
     def restrict(self, r: NDArray[Any]) -> Array:
-        """P^T r: (3 n, k) to (f', k)."""
-        x = np.empty((3 * self.corners.size, r.shape[1]))
-        parts = ranges(self.corners.size)
-        run(lambda a, b: _restrict(a, b, *self._children, r, x), parts, self._threads)
-        y = self.coarse.gather(x)
-        if self._rows.size:
+        """P^T r: (3 n, k) to (f', k). What of r presses against the supports is taken off it."""
+        y = self.coarse.gather(self.restrict_nodes(r).astype(float))
+        if self._shared:
             y += self._special_back @ r[self._rows].astype(float)
         return y
+
+    def prolong_nodes(self, x: NDArray[Any], z: NDArray[Any]) -> None:
+        """`prolong` of the held motions x (3 n', k) of the corners themselves, but for the rigid regions."""
+        parts = ranges(self._plain.size)
+        run(lambda a, b: _prolong(a, b, self.parents, self._plain, x, z), parts, self._threads)
+        if not self._shared:
+            self._fine.project(z)
+
+    def restrict_nodes(self, r: NDArray[Any]) -> NDArray[Any]:
+        """`restrict` to forces (3 n', k) on the corners themselves, in the type of r, but for the rigid regions."""
+        if not self._shared:
+            self._fine.project(r)
+        x = np.empty((3 * self.corners.size, r.shape[1]), dtype=r.dtype)
+        parts = ranges(self.corners.size)
+        run(lambda a, b: _restrict(a, b, *self._children, r, x), parts, self._threads)
+        return x
 
     def galerkin(self, K: BlockMatrix) -> BlockMatrix:
         """E^T K E on the corner nodes, E the mean without regard to what is held.
@@ -139,7 +152,7 @@ def _prolong(first, last, parents, plain, x, z):  # type: ignore[no-untyped-def]
             a, b = 3 * parents[i, 0], 3 * parents[i, 1]
             for d in range(3):
                 for c in range(z.shape[1]):
-                    z[3 * i + d, c] += half * (x[a + d, c] + x[b + d, c])
+                    z[3 * i + d, c] = half * (x[a + d, c] + x[b + d, c])
 
 
 @kernel
@@ -147,7 +160,7 @@ def _restrict(first, last, starts, children, weights, r, x):  # type: ignore[no-
     for i in range(first, last):
         for d in range(3):
             for c in range(r.shape[1]):
-                total = 0.0
+                total = x.dtype.type(0.0)
                 for k in range(starts[i], starts[i + 1]):
                     total += weights[k] * r[3 * children[k] + d, c]
                 x[3 * i + d, c] = total

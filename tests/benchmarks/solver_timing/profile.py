@@ -33,10 +33,13 @@ INSIDE: Mapping[str, Sequence[str]] = {
     "smoother's step": [f"{_SOLVER}.smoother:BlockJacobi.step"],
     "smoother's set-up": [f"{_SOLVER}.smoother:BlockJacobi", f"{_SOLVER}.cycle:Cycle"],
     "single copy": ["fem.solid.block_matrix:BlockMatrix.single"],
+    "order": [f"{_SOLVER}.ordering:Ordering", f"{_SOLVER}.ordering:Ordering.matrix"],
     "linear level's matrix": [f"{_SOLVER}.transfer:Transfer", f"{_SOLVER}.transfer:Transfer.galerkin"],
     "linear level's set-up": [f"{_SOLVER}.aggregate:AggregateSolver"],
-    "linear level": [f"{_SOLVER}.aggregate:AggregateSolver.solve", f"{_SOLVER}.cholesky:CholeskySolver.solve"],
-    "transfer": [f"{_SOLVER}.transfer:Transfer.prolong", f"{_SOLVER}.transfer:Transfer.restrict"],
+    "linear level": [f"{_SOLVER}.aggregate:AggregateSolver.correct", f"{_SOLVER}.cholesky:CholeskySolver.solve"],
+    "transfer": [
+        f"{_SOLVER}.transfer:Transfer.{name}" for name in ("prolong", "restrict", "prolong_nodes", "restrict_nodes")
+    ],
     "cycle": [f"{_SOLVER}.cycle:Cycle.__call__"],
     "vectors": [*(f"{_SOLVER}.conjugate:{name}" for name in ("dot", "advance", "move")), f"{_SOLVER}.cycle:largest"],
 }
