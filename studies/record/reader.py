@@ -197,6 +197,11 @@ class Record:
         """Keys of the failed variants of all studies in the record."""
         return {row[0] for row in self._rows("SELECT key FROM variants WHERE status = 'failed'")}
 
+    def words(self) -> dict[str, str]:
+        """Key -> judgement, or ``failed``, of the variants of all studies in the record."""
+        return {key: judgement if status == "finished" else "failed"
+                for key, status, judgement in self._rows("SELECT key, status, judgement FROM variants")}
+
     def failed(self) -> list[tuple[Point, Outcome]]:
         """The points of this study that failed, in order."""
         return [(point, outcome) for point, outcome in self.outcomes() if outcome.status == "failed"]
