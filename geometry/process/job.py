@@ -9,6 +9,7 @@ import time
 from collections.abc import Callable
 from contextlib import suppress
 
+from geometry.endings import ended_from_outside
 from geometry.process.template import NUMBER
 
 
@@ -38,6 +39,7 @@ class Job:
         self.pid, self.data, self.seconds = pid, data, 0.0
         self._status, self._kill, self._template_ended = status, kill, template_ended
         self._code: int | None = None
+        self._closed_early = False
 
     def __enter__(self) -> Job:
         return self
@@ -62,6 +64,10 @@ class Job:
             time.sleep(0.01)
         return code if code is not None and code != 0 else -9
 
+    def ended_by(self) -> str:
+        """The signal by which it was ended from outside, not by `close`; empty where it was not."""
+        return "" if self._code is None or self._closed_early else ended_from_outside(self._code)
+
     def resident(self) -> float:
         """Resident memory of the job, MiB; 0 where the system does not tell."""
         try:
@@ -76,7 +82,8 @@ class Job:
             return
         with suppress(OSError):
             self.data.close()
-        if self._code is None:
+        if self.wait(0.0) is None:
+            self._closed_early = True
             self._kill()
             self.wait(10.0)
         os.close(self._status)

@@ -1,0 +1,121 @@
+"""What runs in the template of both models (`geometry.process.template`), and in each copy of it.
+
+A job is lent the host's CAD and mesh templates over its data socket, reads its orders, and answers with the stage it is
+at, the processes it has started, and an outcome for each order in turn. When a process that it needs is ended from
+outside it says so and ends: nothing is known about the variant then.
+"""
+
+from __future__ import annotations
+
+import os
+import socket
+import sys
+import tempfile
+import threading
+from collections.abc import Callable, Mapping
+from typing import Any
+
+from geometry.process import Job, LentTemplate, share_lent
+from studies.vary.work import frames
+
+CAD, MESH = "studies.check.solid_child", "mesher._worker"
+"""Modules of the other two templates, in the order in which they are lent."""
+ADDRESS_SPACE_MARGIN = 2048
+"""MiB of address space above what the template has and the memory limit: a second line, behind the host's watch."""
+
+
+class EndedOutside(BaseException):
+    """A process that this job needs was ended from outside. Nothing on the way may take it for a fault."""
+
+
+class _Told(LentTemplate):
+    """Tells the host of each process, and stops this job where one was ended from outside."""
+
+    def __init__(self, module: str, control: socket.socket, client: str, tell: Callable[[Any], None]) -> None:
+        super().__init__(module, control, client)
+        self._tell = tell
+
+    def submit(self, job: Mapping[str, Any], cancelled: Callable[[], bool] = lambda: False) -> Job:
+        if self.ended():  # by no fault of the job: another attempt would give another mesh
+            raise EndedOutside
+        started = super().submit(job, cancelled)
+        self._tell({"process": started.pid})
+        return started
+
+    def ended(self) -> str:
+        """The signal by which one of its processes was ended from outside, ``lost`` where the template has gone."""
+        if self.lost:
+            return "lost"
+        return next((name for job in self.jobs if (name := job.ended_by())), "")
+
+
+def prepare() -> None:
+    """Load both models, the judge and the solver's kernels, and solve a tiny part: what is set up at first use is then
+    there for every job."""
+    import gc
+
+    from fem.solid.factor import pardiso_available
+    from fem.solid.kernels.warm import warm_up
+    from studies.check.run import versions
+    from studies.vary.work import evaluate
+
+    assert evaluate is not None
+    pardiso_available()
+    warm_up(lambda text: None)
+    versions()
+    gc.collect()
+    gc.freeze()  # or each job copies the pages of what it only looks at
+
+
+def serve(order: dict[str, Any], data: socket.socket) -> int:
+    """In the job's process: evaluate the orders that come over the socket."""
+    lock = threading.Lock()
+
+    def tell(message: Any) -> None:
+        with lock:
+            frames.send(data, message)
+
+    _, handles, _, _ = socket.recv_fds(data, 1, 2)
+    lent = [_Told(module, socket.socket(fileno=handle), order["client"], tell)
+            for module, handle in zip((CAD, MESH), handles, strict=True)]
+    for template in lent:
+        share_lent(template)
+    asked = frames.receive(data)
+    _limit(asked["memory"])
+    os.environ["TMPDIR"] = tempfile.tempdir = asked["folder"]
+    try:
+        _evaluate(asked["orders"], lent[0], lent[1], tell)
+    except EndedOutside:
+        pass
+    return 0
+
+
+def _evaluate(orders: list[dict[str, Any]], cad: _Told, mesh: _Told, tell: Callable[[Any], None]) -> None:
+    from studies.check.threads import dense_products_in_one_thread
+    from studies.vary.work.evaluate import Workshop, evaluate
+    from studies.vary.work.order import Order
+
+    workshop = Workshop(cad, mesh, lambda stage: tell({"stage": stage}))
+    with dense_products_in_one_thread():
+        for plain in orders:
+            try:
+                outcome = evaluate(Order.from_json(plain), workshop)
+            finally:
+                for template in (cad, mesh):
+                    if signal := template.ended():
+                        tell({"ended": signal, "module": template.module})
+                        raise EndedOutside
+            tell({"outcome": outcome.to_json()})
+
+
+def _limit(memory: int) -> None:
+    import resource
+
+    resource.setrlimit(resource.RLIMIT_CORE, (0, 0))
+    if sys.platform != "linux":
+        return
+    with open("/proc/self/statm", encoding="ascii") as statm:
+        used = int(statm.read().split()[0]) * os.sysconf("SC_PAGE_SIZE")
+    size = used + (memory + ADDRESS_SPACE_MARGIN) * 2**20
+    resource.setrlimit(resource.RLIMIT_AS, (size, size))
+
