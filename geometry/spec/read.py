@@ -29,6 +29,11 @@ LARGEST_FILE = 1_000_000  # bytes: a spec is a page or two of text
 def read_part(path: str | Path) -> Part:
     """The part that a TOML file describes; raise `SpecError` with every mistake found."""
     file = Path(path)
+    return part_from_text(text_of_file(file), file.name)
+
+
+def text_of_file(file: Path) -> str:
+    """Text of a TOML file of ordinary size; raise `SpecError` when there is none, or it cannot be read."""
     try:
         size = file.stat().st_size
         if file.is_dir():
@@ -45,12 +50,11 @@ def read_part(path: str | Path) -> Part:
         reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
         raise _file_problem(file, reason, "a file that can be read") from None
     try:
-        text = data.decode("utf-8-sig")
+        return data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
         line = data[: error.start].count(b"\n") + 1
         given = f"a byte on line {line} that is not UTF-8"
         raise _file_problem(file, given, "UTF-8 text", "Save it as UTF-8") from None
-    return part_from_text(text, file.name)
 
 
 def part_from_text(text: str, name: str = "part.toml") -> Part:
@@ -80,7 +84,7 @@ def data_from_text(text: str, name: str) -> dict[str, Any]:
 
 def part_from_data(data: Mapping[str, Any], text: str = "") -> Part:
     """The part that plain data (the tables of a TOML file) describes; raise `SpecError` with every mistake."""
-    _check_depth(data)
+    check_depth(data)
     try:
         spec = PartSpec.model_validate(data)
     except ValidationError:
@@ -92,7 +96,7 @@ def part_from_data(data: Mapping[str, Any], text: str = "") -> Part:
     return spec.resolve(text)
 
 
-def _check_depth(data: Mapping[str, Any]) -> None:
+def check_depth(data: Mapping[str, Any]) -> None:
     """Refuse tables nested more deeply than any spec: dotted keys nest without end, and what copies them recurses."""
     waiting: list[tuple[Any, int, str]] = [(data, 0, "")]
     while waiting:
