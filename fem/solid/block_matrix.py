@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -31,12 +32,16 @@ class BlockMatrix:
         block (j, i) is its transpose.
     threads
         For products and conversions; the result does not depend on it, not even in its last bit.
+    linear
+        Makes of the numbers of the mesh's corners (n',) the stiffness with linear displacements, corners in that order;
+        None where it is not known. It must be E^T A E, E the mean of an edge's ends for the node between them.
     """
 
     indptr: NDArray[np.int32]
     indices: NDArray[np.int32]
     blocks: Array
     threads: int = 1
+    linear: Callable[[NDArray[np.integer]], BlockMatrix] | None = field(default=None, repr=False, compare=False)
     _parts: list[Part] = field(default_factory=list, repr=False, compare=False)
 
     @property

@@ -7,9 +7,10 @@ from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.kernels.jacobian import shape_integrals
+from fem.solid.kernels.linear import add_straight_integrals
 from fem.solid.kernels.nodal import add_masses
 from fem.solid.shape import Array, tet_quadrature, tet_values
-from fem.solid.stiffness import ElementGroup, mesh_arrays, point_slopes
+from fem.solid.stiffness import ElementGroup, KernelMesh, curved_elements, mesh_arrays, point_slopes
 
 MASS_ORDER = 6
 """Of curved elements: products of shape functions have degree 4, and the determinant of the map up to 3."""
@@ -36,13 +37,18 @@ def mass_matrix(groups: list[ElementGroup], density: float, like: BlockMatrix) -
     return BlockMatrix(like.indptr, like.indices, blocks, like.threads)
 
 
-def node_integrals(groups: list[ElementGroup], threads: int = 1) -> Array:
-    """(n, 4) int N_a dV, mm^3, and int dN_a/dx_i dV, mm^2, of every node."""
+def node_integrals(groups: list[ElementGroup], threads: int = 1, shared: KernelMesh | None = None) -> Array:
+    """(n, 4) int N_a dV, mm^3, and int dN_a/dx_i dV, mm^2, of every node; `shared` where it is made already."""
     out = np.zeros((groups[0].nodes.shape[1], 4))
-    points, tets = mesh_arrays(groups[0].nodes, groups[0].tets)
+    shared = shared or KernelMesh(groups[0].nodes, groups[0].tets, threads)
     for group in groups:
-        rule = np.ascontiguousarray(tet_values(group.points).T), point_slopes(group.points), group.rule
-        shape_integrals(points, tets, group.elements.astype(np.int32), group.curved, rule, out, threads)
+        if group.curved:
+            rule = np.ascontiguousarray(tet_values(group.points).T), point_slopes(group.points), group.rule
+            elements = group.elements.astype(np.int32)
+            shape_integrals(shared.points, shared.tets, elements, rule, out, threads)
+        else:
+            curved = curved_elements(groups, shared.tets.shape[0])
+            add_straight_integrals(shared.gradients, curved, shared.incident, out, threads)
     return out
 
 

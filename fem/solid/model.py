@@ -12,7 +12,7 @@ from fem.solid.block_matrix import BlockMatrix
 from fem.solid.load import SolidLoad, solid_loads, surface_vector
 from fem.solid.mass import node_integrals, node_volumes
 from fem.solid.shape import Array
-from fem.solid.stiffness import ElementGroup, element_groups, lame, stiffness_matrix
+from fem.solid.stiffness import ElementGroup, KernelMesh, element_groups, lame, stiffness_matrix
 from fem.solid.support import Constraints, build_constraints
 from geometry.part import Part
 from geometry.problem import SolveError
@@ -104,11 +104,12 @@ def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
     """Assemble stiffness, constraints and load vectors."""
     check_mesh(mesh)
     material = part.material
-    groups = element_groups(mesh.nodes, mesh.tets, threads)
-    K = stiffness_matrix(mesh.nodes, mesh.tets, groups, material.E, material.nu, threads)
+    shared = KernelMesh(mesh.nodes, mesh.tets, threads)
+    groups = element_groups(mesh.nodes, mesh.tets, threads, shared)
+    K = stiffness_matrix(mesh.nodes, mesh.tets, groups, material.E, material.nu, threads, shared)
     constraints = build_constraints(part, mesh)
     loads = solid_loads(part, mesh)
-    integrals = node_integrals(groups, threads)
+    integrals = node_integrals(groups, threads, shared)
     volume, first = node_volumes(integrals[:, 0], mesh.nodes)
     vectors = np.zeros((len(loads), mesh.nodes.shape[1], 3))
     for k, load in enumerate(loads.values()):

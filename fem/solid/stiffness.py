@@ -10,13 +10,15 @@ on whole meshes is done in `fem.solid.kernels`; the functions on element arrays 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix
-from fem.solid.kernels.elastic import add_curved, straight_blocks
+from fem.solid.kernels.elastic import add_curved, straight_blocks, straight_gradients
 from fem.solid.kernels.jacobian import classify
+from fem.solid.kernels.linear import add_curved_linear, linear_blocks
 from fem.solid.kernels.pattern import incidence, upper_pattern
 from fem.solid.kernels.recovery import point_stress
 from fem.solid.shape import CURVED_TOLERANCE, NODE_BARY, Array, inverse, tet_gradients, tet_quadrature
@@ -86,8 +88,10 @@ def element_gradients(nodes: Array, tets: NDArray[np.int64], L: Array) -> tuple[
     return g, det
 
 
-def element_groups(nodes: Array, tets: NDArray[np.int64], threads: int = 1) -> list[ElementGroup]:
-    """Straight and curved elements.
+def element_groups(
+    nodes: Array, tets: NDArray[np.int64], threads: int = 1, shared: KernelMesh | None = None
+) -> list[ElementGroup]:
+    """Straight and curved elements; `shared` where it is made already.
 
     Raises
     ------
@@ -96,7 +100,8 @@ def element_groups(nodes: Array, tets: NDArray[np.int64], threads: int = 1) -> l
     """
     L, _ = tet_quadrature(CURVED_ORDER)
     slopes = point_slopes(np.hstack([L, NODE_BARY]))
-    curved, least = classify(*mesh_arrays(nodes, tets), slopes, CURVED_TOLERANCE, threads)
+    shared = shared or KernelMesh(nodes, tets, threads)
+    curved, least = classify(shared.points, shared.tets, slopes, CURVED_TOLERANCE, threads)
     if not (least > 0).all():
         raise SolveError(_no_volume(nodes, tets, np.flatnonzero(~(least > 0))))
     groups = []
@@ -125,6 +130,40 @@ def point_slopes(L: Array) -> Array:
     return np.ascontiguousarray(tet_gradients(L).transpose(2, 0, 1))
 
 
+class KernelMesh:
+    """A mesh in the form that the kernels take, with what several of them need: made once, in the order of the need.
+
+    Attributes
+    ----------
+    points, tets
+        (n, 3), and (m, 10) int32.
+    gradients
+        (m, 16) of the straight elements; see `fem.solid.kernels.elastic.straight_gradients`. 128 bytes an element.
+    incident
+        Where each node occurs in the elements; see `fem.solid.kernels.pattern.incidence`.
+    """
+
+    def __init__(self, nodes: Array, tets: NDArray[np.int64], threads: int = 1) -> None:
+        self.points, self.tets = mesh_arrays(nodes, tets)
+        self._threads = threads
+
+    @cached_property
+    def gradients(self) -> Array:
+        return straight_gradients(self.points, self.tets, self._threads)
+
+    @cached_property
+    def incident(self) -> tuple[NDArray[np.int32], NDArray[np.int32]]:
+        return incidence(self.tets, self.points.shape[0])
+
+
+def curved_elements(groups: list[ElementGroup], count: int) -> NDArray[np.bool_]:
+    """(count,) which elements are curved."""
+    curved = np.zeros(count, dtype=np.bool_)
+    for group in groups:
+        curved[group.elements] = group.curved
+    return curved
+
+
 def stiffness_matrix(
     nodes: Array,
     tets: NDArray[np.int64],
@@ -132,23 +171,47 @@ def stiffness_matrix(
     E: float,
     nu: float,
     threads: int = 1,
+    shared: KernelMesh | None = None,
 ) -> BlockMatrix:
     """Stiffness matrix (3 n, 3 n), N/mm, of nodes (3, n) and tets (10, m), unknown 3 node + direction.
 
-    Straight elements are exact, curved ones integrated with the rule of their group.
+    Straight elements are exact, curved ones integrated with the rule of their group. `shared` where it is made already.
     """
     lam, mu = lame(E, nu)
-    points, elements = mesh_arrays(nodes, tets)
-    incident = incidence(elements, points.shape[0])
+    shared = shared or KernelMesh(nodes, tets, threads)
+    points, elements, incident = shared.points, shared.tets, shared.incident
     pattern = upper_pattern(elements, *incident, threads)
-    curved = np.zeros(elements.shape[0], dtype=np.bool_)
-    for group in groups:
-        curved[group.elements] = group.curved
-    blocks = straight_blocks(points, elements, curved, incident, pattern, lam, mu, threads)
+    curved = curved_elements(groups, elements.shape[0])
+    blocks = straight_blocks(shared.gradients, elements, curved, incident, pattern, lam, mu, threads)
     for group in groups:
         if group.curved:
             rule = point_slopes(group.points), group.rule
             add_curved(blocks, points, elements, group.elements.astype(np.int32), rule, pattern, lam, mu, threads)
+    return BlockMatrix(*pattern, blocks, threads, lambda corners: linear_stiffness(corners, groups, E, nu, threads))
+
+
+def linear_stiffness(
+    corner_nodes: NDArray[np.integer], groups: list[ElementGroup], E: float, nu: float, threads: int = 1
+) -> BlockMatrix:
+    """Stiffness (3 n', 3 n'), N/mm, of the same mesh with displacements linear in each element's coordinates.
+
+    corner_nodes (n',) all the mesh's corners, in the order that they shall have. It is E^T K E of the quadratic
+    stiffness K, E the mean of an edge's ends for the node between them, on curved elements too.
+    """
+    lam, mu = lame(E, nu)
+    points, elements = mesh_arrays(groups[0].nodes, groups[0].tets)
+    number = np.empty(points.shape[0], dtype=np.int32)
+    number[corner_nodes] = np.arange(corner_nodes.size, dtype=np.int32)
+    corners = number[elements[:, :4]]
+    incident = incidence(corners, corner_nodes.size)
+    pattern = upper_pattern(corners, *incident, threads)
+    curved = curved_elements(groups, corners.shape[0])
+    gradients = straight_gradients(points, elements, threads)
+    blocks = linear_blocks(gradients, corners, curved, incident, pattern, lam, mu, threads)
+    for group in groups:
+        if group.curved:
+            which, rule = group.elements.astype(np.int32), (point_slopes(group.points), group.rule)
+            add_curved_linear(blocks, points, elements, corners, which, rule, pattern, lam, mu, threads)
     return BlockMatrix(*pattern, blocks, threads)
 
 

@@ -7,14 +7,14 @@ from dataclasses import replace
 import numpy as np
 import pytest
 from kernel_help import MESHES, NU, E, Plain, straight
-from skfem import BilinearForm, LinearForm
+from skfem import Basis, BilinearForm, ElementTetP1, ElementVector, LinearForm, MeshTet2
 from skfem.helpers import dot, eye, grad, sym_grad, trace
 from skfem.models.elasticity import lame_parameters, linear_elasticity
 
 from fem.solid.geometric import geometric_stiffness
 from fem.solid.mass import mass_matrix
 from fem.solid.model import check_mesh, mass_vector, thermal_vector
-from fem.solid.stiffness import CURVED_ORDER, element_groups, group_stresses, stiffness_matrix
+from fem.solid.stiffness import CURVED_ORDER, element_groups, group_stresses, linear_stiffness, stiffness_matrix
 from geometry.problem import SolveError
 from mesher.named_mesh import NamedMesh
 
@@ -36,6 +36,26 @@ def test_stiffness(kind: str) -> None:
     mesh = MESHES[kind]()
     K = stiffness_matrix(mesh.nodes, mesh.tets, element_groups(mesh.nodes, mesh.tets), E, NU).to_csr()
     assert gap(K, Plain(mesh, CURVED_ORDER).matrix(linear_elasticity(*lame_parameters(E, NU)))) < 1e-14
+
+
+@KINDS
+def test_stiffness_of_linear_displacements(kind: str) -> None:
+    """Against scikit-fem's linear elements on the curved mesh, the corners in any order; and it is what the stiffness
+    itself makes."""
+    mesh = MESHES[kind]()
+    groups = element_groups(mesh.nodes, mesh.tets)
+    corners = np.random.default_rng(3).permutation(np.unique(mesh.tets[:4]))
+    ours = linear_stiffness(corners, groups, E, NU)
+    basis = Basis(MeshTet2(mesh.nodes, mesh.tets[:4]), ElementVector(ElementTetP1()), intorder=CURVED_ORDER)
+    place = np.empty((mesh.nodes.shape[1], 3), dtype=int)
+    place[mesh.tets[:4]] = basis.element_dofs.reshape(4, 3, -1).transpose(0, 2, 1)
+    place = place[corners].ravel()
+    plain = linear_elasticity(*lame_parameters(E, NU)).assemble(basis).tocsr()[place][:, place]
+    assert gap(ours.to_csr(), plain) < 1e-14
+    K = stiffness_matrix(mesh.nodes, mesh.tets, groups, E, NU)
+    assert K.linear is not None and np.array_equal(K.linear(corners).blocks, ours.blocks)
+    for threads in (2, 3):
+        assert np.array_equal(linear_stiffness(corners, groups, E, NU, threads).blocks, ours.blocks)
 
 
 @KINDS

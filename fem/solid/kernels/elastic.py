@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from fem.solid.kernels.jacobian import barycentric_gradients, inverse_jacobian
 from fem.solid.kernels.jit import kernel
+from fem.solid.kernels.lanes import load, store, times, times_plus
 from fem.solid.kernels.parallel import ranges, run
 from fem.solid.kernels.pattern import find
 from fem.solid.shape import TET_EDGES, Array
@@ -46,56 +47,72 @@ CARRIERS, FACTORS = _straight_tables()
 
 @kernel
 def _straight_gradients(first, last, points, tets, out):  # type: ignore[no-untyped-def]
-    """Gradients of L_0 to L_3, and a fifth of the volume in out[e, 4, 0]."""
+    """Gradients of L_0 to L_3, four numbers apart, and a fifth of the volume in out[e, 3]."""
+    g = np.empty((4, 3))
     for e in range(first, last):
-        out[e, 4, 0] = barycentric_gradients(points, tets, e, out[e]) / 30.0
+        fifth = barycentric_gradients(points, tets, e, g) / 30.0
+        for k in range(4):
+            for c in range(3):
+                out[e, 4 * k + c] = g[k, c]
+            out[e, 4 * k + 3] = 0.0
+        out[e, 3] = fifth
+
+
+@kernel
+def isotropic(P, at, lam, mu, blocks, k):  # type: ignore[no-untyped-def]
+    """blocks[k] = lambda P + mu P^T + mu tr(P) 1 of the block whose rows stand in P, four numbers apart, from `at`."""
+    one, two, four = np.uint64(1), np.uint64(2), np.uint64(4)
+    xx, xy, xz = P[at], P[at + one], P[at + two]
+    at += four
+    yx, yy, yz = P[at], P[at + one], P[at + two]
+    zx, zy, zz = P[at + four], P[at + four + one], P[at + four + two]
+    trace, both = mu * (xx + yy + zz), lam + mu
+    blocks[k, 0, 0], blocks[k, 1, 1], blocks[k, 2, 2] = both * xx + trace, both * yy + trace, both * zz + trace
+    blocks[k, 0, 1], blocks[k, 1, 0] = lam * xy + mu * yx, lam * yx + mu * xy
+    blocks[k, 0, 2], blocks[k, 2, 0] = lam * xz + mu * zx, lam * zx + mu * xz
+    blocks[k, 1, 2], blocks[k, 2, 1] = lam * yz + mu * zy, lam * zy + mu * yz
 
 
 @kernel
 def _straight_rows(  # type: ignore[no-untyped-def]
-    first, last, tets, curved, gradients, carriers, factors, starts, places, indptr, indices, slot, blocks, lam, mu
+    first, last, tets, curved, gradients, carriers, factors, starts, places, indptr, indices, slot, P, blocks, lam, mu
 ):
-    """Block rows first to last: sums of P over the straight elements, then the isotropic combination of it."""
+    """Block rows first to last: sums of P over the straight elements, then the isotropic combination of it.
+
+    A row of P has a fourth number that nobody reads, so that it fills a register.
+    """
+    one, two, three, four = np.uint64(1), np.uint64(2), np.uint64(3), np.uint64(4)
     for i in range(first, last):
-        for k in range(indptr[i], indptr[i + 1]):
-            slot[indices[k]] = k
+        begin, count = indptr[i], indptr[i + 1] - indptr[i]
+        for k in range(count):
+            slot[indices[begin + k]] = 12 * k
+        P[: 12 * count] = 0.0
         for s in range(starts[i], starts[i + 1]):
             e = places[s] // 10
             if curved[e]:
                 continue
-            a = places[s] - 10 * e
-            p, q = carriers[a, 0], carriers[a, 1]
-            V = gradients[e, 4, 0]
-            px, py, pz = V * gradients[e, p, 0], V * gradients[e, p, 1], V * gradients[e, p, 2]
-            qx, qy, qz = V * gradients[e, q, 0], V * gradients[e, q, 1], V * gradients[e, q, 2]
+            a = np.uint64(places[s] - 10 * e)
+            own = np.uint64(16 * np.int64(e))
+            V = gradients[own + three]
+            p, q = own + four * np.uint64(carriers[a, 0]), own + four * np.uint64(carriers[a, 1])
+            px, py, pz = V * gradients[p], V * gradients[p + one], V * gradients[p + two]
+            qx, qy, qz = V * gradients[q], V * gradients[q + one], V * gradients[q + two]
             for b in range(10):
                 j = tets[e, b]
                 if j < i:
                     continue
-                r, t = carriers[b, 0], carriers[b, 1]
-                rx, ry, rz = gradients[e, r, 0], gradients[e, r, 1], gradients[e, r, 2]
-                tx, ty, tz = gradients[e, t, 0], gradients[e, t, 1], gradients[e, t, 2]
-                f, g, h, o = factors[a, b, 0, 0], factors[a, b, 0, 1], factors[a, b, 1, 0], factors[a, b, 1, 1]
-                vx, vy, vz = f * rx + g * tx, f * ry + g * ty, f * rz + g * tz
-                wx, wy, wz = h * rx + o * tx, h * ry + o * ty, h * rz + o * tz
-                k = slot[j]
-                blocks[k, 0, 0] += px * vx + qx * wx
-                blocks[k, 0, 1] += px * vy + qx * wy
-                blocks[k, 0, 2] += px * vz + qx * wz
-                blocks[k, 1, 0] += py * vx + qy * wx
-                blocks[k, 1, 1] += py * vy + qy * wy
-                blocks[k, 1, 2] += py * vz + qy * wz
-                blocks[k, 2, 0] += pz * vx + qz * wx
-                blocks[k, 2, 1] += pz * vy + qz * wy
-                blocks[k, 2, 2] += pz * vz + qz * wz
-        for k in range(indptr[i], indptr[i + 1]):
-            trace = mu * (blocks[k, 0, 0] + blocks[k, 1, 1] + blocks[k, 2, 2])
-            for c in range(3):
-                blocks[k, c, c] = (lam + mu) * blocks[k, c, c] + trace
-                for d in range(c):
-                    lower, upper = blocks[k, c, d], blocks[k, d, c]
-                    blocks[k, c, d] = lam * lower + mu * upper
-                    blocks[k, d, c] = lam * upper + mu * lower
+                r = load(gradients, own + four * np.uint64(carriers[b, 0]), 4)
+                t = load(gradients, own + four * np.uint64(carriers[b, 1]), 4)
+                v = times_plus(factors[a, b, 0, 0], r, times(factors[a, b, 0, 1], t))
+                w = times_plus(factors[a, b, 1, 0], r, times(factors[a, b, 1, 1], t))
+                k = np.uint64(slot[j])
+                store(P, k, times_plus(px, v, times_plus(qx, w, load(P, k, 4))))
+                k += four
+                store(P, k, times_plus(py, v, times_plus(qy, w, load(P, k, 4))))
+                k += four
+                store(P, k, times_plus(pz, v, times_plus(qz, w, load(P, k, 4))))
+        for k in range(count):
+            isotropic(P, np.uint64(12 * k), lam, mu, blocks, begin + k)
 
 
 @kernel
@@ -128,12 +145,13 @@ def _curved_elements(first, last, elements, points, tets, slopes, weights, lam, 
 
 
 @kernel
-def _add_elements(first, last, elements, tets, matrices, indptr, indices, blocks):  # type: ignore[no-untyped-def]
-    """Add the upper blocks of element matrices (30, 30) to the block rows first to last."""
+def add_elements(first, last, elements, tets, matrices, indptr, indices, blocks):  # type: ignore[no-untyped-def]
+    """Add the upper blocks of element matrices (30, 30), or (12, 12), to the block rows first to last."""
+    width = tets.shape[1]
     for n in range(elements.size):
         e = elements[n]
-        for a in range(10):
-            for b in range(a, 10):
+        for a in range(width):
+            for b in range(a, width):
                 i, j = tets[e, a], tets[e, b]
                 row, column = min(i, j), max(i, j)
                 if row < first or row >= last:
@@ -149,8 +167,16 @@ def _add_elements(first, last, elements, tets, matrices, indptr, indices, blocks
                             blocks[low, c, d] += matrices[n, 3 * a + d, 3 * b + c]
 
 
+def straight_gradients(points: Array, tets: Int, threads: int) -> Array:
+    """(m, 16): of every element, taken as straight, the gradients of the barycentric coordinates in columns 4 k to
+    4 k + 2, 1/mm, and in column 3 a fifth of its volume, mm^3."""
+    out = np.empty((tets.shape[0], 16))
+    run(lambda a, b: _straight_gradients(a, b, points, tets, out), ranges(tets.shape[0]), threads)
+    return out
+
+
 def straight_blocks(
-    points: Array,
+    gradients: Array,
     tets: Int,
     curved: NDArray[np.bool_],
     incident: tuple[Int, Int],
@@ -159,18 +185,19 @@ def straight_blocks(
     mu: float,
     threads: int,
 ) -> Array:
-    """(b, 3, 3) blocks of the straight elements' stiffness in `pattern`; points (n, 3), tets (m, 10), curved (m,)."""
-    gradients = np.empty((tets.shape[0], 5, 3))
-    run(lambda a, b: _straight_gradients(a, b, points, tets, gradients), ranges(tets.shape[0]), threads)
-    blocks = np.zeros((pattern[1].size, 3, 3))
+    """(b, 3, 3) blocks of the straight elements' stiffness in `pattern`; gradients (m, 16) as of `straight_gradients`,
+    tets (m, 10), curved (m,)."""
+    blocks = np.empty((pattern[1].size, 3, 3))
+    nodes, widest = pattern[0].size - 1, int(np.diff(pattern[0]).max(initial=0))
+    flat = gradients.reshape(-1)
 
     def rows(first: int, last: int) -> None:
-        slot = np.empty(points.shape[0], dtype=np.int32)
+        slot, P = np.empty(nodes, dtype=np.int32), np.empty(12 * widest)
         _straight_rows(
-            first, last, tets, curved, gradients, CARRIERS, FACTORS, *incident, *pattern, slot, blocks, lam, mu
+            first, last, tets, curved, flat, CARRIERS, FACTORS, *incident, *pattern, slot, P, blocks, lam, mu
         )
 
-    run(rows, ranges(points.shape[0]), threads)
+    run(rows, ranges(nodes), threads)
     return blocks
 
 
@@ -194,4 +221,4 @@ def add_curved(
         run(lambda a, b, args=args: _curved_elements(a, b, *args), ranges(some.size), threads)  # type: ignore[misc]
         more = (some, tets, out, *pattern, blocks)
         parts = ranges(points.shape[0], max(threads, 1))  # whatever the ranges, a block's sum has one order
-        run(lambda a, b, more=more: _add_elements(a, b, *more), parts, threads)  # type: ignore[misc]
+        run(lambda a, b, more=more: add_elements(a, b, *more), parts, threads)  # type: ignore[misc]

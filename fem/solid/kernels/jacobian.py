@@ -85,17 +85,14 @@ def _classify(first, last, points, tets, edges, slopes, tolerance, curved, least
 
 
 @kernel
-def _integrals(first, last, elements, curved, points, tets, values, slopes, weights, out):  # type: ignore[no-untyped-def]
+def _integrals(first, last, elements, points, tets, values, slopes, weights, out):  # type: ignore[no-untyped-def]
     """int N_a dV and int dN_a/dx_i dV of each element: out (k, 10, 4)."""
     J, C = np.empty((3, 3)), np.empty((3, 3))
     for n in range(first, last):
         e = np.int64(elements[n])
         out[n] = 0.0
-        det = 0.0
         for q in range(weights.size):
-            if q == 0 or curved:
-                det = inverse_jacobian(points, tets, e, slopes[q], J, C)
-            w = weights[q] * det
+            w = weights[q] * inverse_jacobian(points, tets, e, slopes[q], J, C)
             for a in range(10):
                 out[n, a, 0] += w * values[q, a]
                 u, v, t = w * slopes[q, a, 0], w * slopes[q, a, 1], w * slopes[q, a, 2]
@@ -122,13 +119,13 @@ def classify(
 
 
 def shape_integrals(
-    points: Array, tets: Int, elements: Int, curved: bool, rule: tuple[Array, Array, Array], out: Array, threads: int
+    points: Array, tets: Int, elements: Int, rule: tuple[Array, Array, Array], out: Array, threads: int
 ) -> None:
-    """Add int N_a dV and int dN_a/dx_i dV of `elements` to the nodes: out (n, 4). rule: values (q, 10), slopes
+    """Add int N_a dV and int dN_a/dx_i dV of curved `elements` to the nodes: out (n, 4). rule: values (q, 10), slopes
     (q, 10, 3), weights (q,)."""
     for begin in range(0, elements.size, _AT_ONCE):
         some = elements[begin : begin + _AT_ONCE]
         values = np.empty((some.size, 10, 4))
-        args = (some, curved, points, tets, *rule, values)
+        args = (some, points, tets, *rule, values)
         run(lambda a, b, args=args: _integrals(a, b, *args), ranges(some.size), threads)  # type: ignore[misc]
         _add_to_nodes(some, tets, values, out)

@@ -33,12 +33,13 @@ def _incidence(tets, starts, places):  # type: ignore[no-untyped-def]
 @kernel
 def _upper_rows(first, last, tets, starts, places, mark, columns, counts):  # type: ignore[no-untyped-def]
     """Sorted columns >= row of the rows first to last, one after the other; gives how many there are."""
+    width = tets.shape[1]
     filled = 0
     for i in range(first, last):
         begin = filled
         for s in range(starts[i], starts[i + 1]):
-            e = places[s] // 10
-            for b in range(10):
+            e = places[s] // width
+            for b in range(width):
                 j = tets[e, b]
                 if j >= i and mark[j] != i:
                     mark[j] = i
@@ -74,13 +75,13 @@ def incidence(tets: Int, node_count: int) -> tuple[Int, Int]:
 
 
 def upper_pattern(tets: Int, starts: Int, places: Int, threads: int = 1) -> tuple[Int, Int]:
-    """indptr (n + 1,) and indices of the nodes j >= i that share an element (m, 10) with node i, rising."""
+    """indptr (n + 1,) and indices of the nodes j >= i that share an element (m, w) with node i, rising."""
     n = starts.size - 1
     counts = np.zeros(n + 1, dtype=np.int32)
 
     def rows(first: int, last: int) -> Int:
         mark = np.full(n, -1, dtype=np.int32)
-        columns = np.empty(10 * int(starts[last] - starts[first]), dtype=np.int32)
+        columns = np.empty(tets.shape[1] * int(starts[last] - starts[first]), dtype=np.int32)
         filled = _upper_rows(first, last, tets, starts, places, mark, columns, counts[1:])
         return columns[:filled].copy()
 
