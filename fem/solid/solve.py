@@ -13,7 +13,9 @@ from fem.solid.denting import denting
 from fem.solid.edge_stress import nominal_figures, notch_figures
 from fem.solid.eigen import solid_modes
 from fem.solid.figures import displacement_figures, reaction_figures, scalar_figures, section_force_figures
+from fem.solid.kept import KeptSystem
 from fem.solid.model import build_model
+from fem.solid.node_order import as_given, in_order
 from fem.solid.peak import case_stresses, node_sizes, peak_places, singular_nodes, singular_places
 from fem.solid.reaction import reactions
 from fem.solid.result import SolidResult
@@ -35,6 +37,7 @@ def solve_solid(
     backend: str = "auto",
     sharp_edges: Sequence[tuple[str, Array]] = (),
     solver: Choice = "auto",
+    kept: KeptSystem | None = None,
 ) -> SolidResult:
     """Solve every case of the part on its mesh.
 
@@ -48,6 +51,8 @@ def solve_solid(
         (label, points (k, 3) in mm) of re-entrant edges without a radius: peaks near them are marked.
     solver
         ``auto`` chooses by size and shape; ``cholesky`` or ``multigrid`` is taken as told.
+    kept
+        Keeps the factor for the next call, and gives that of the call before where the equations are the same.
 
     Raises
     ------
@@ -68,19 +73,24 @@ def solve_solid(
             progress(name)
 
     stage("assemble")
+    given, (mesh, number) = mesh, in_order(mesh)
     model = build_model(part, mesh, budget.threads)
     cases = tuple(case.name for case in part.cases)
     stage("factor and solve")
     n = mesh.nodes.shape[1]
     total = (model.mechanical + model.thermal).reshape(len(cases), 3 * n).T
-    system = HeldSystem(model.K, model.constraints, mesh, budget, solver, backend)
+    if kept is None:
+        system = HeldSystem(model.K, model.constraints, mesh, budget, solver, backend)
+    else:
+        system = kept.system(model, budget, solver, backend)
     try:
         solution = system.solve(total, model.change != 0)
         u = np.ascontiguousarray(solution.u.T.reshape(len(cases), n, 3).transpose(0, 2, 1))
         cutter = Cutter(mesh)
         vibration, buckling = solid_modes(model, system, u, budget, cutter, stage, solver, backend)
     finally:
-        system.close()
+        if kept is None:
+            system.close()
     stage("reactions and balance")
     reacting = reactions(model, solution.u, solution.mean_forces)
     energy, thermal_part = strain_energies(model, u, cutter, budget.threads)
@@ -133,5 +143,6 @@ def solve_solid(
         vibration_shapes=vibration.shapes,
         buckling_shapes=buckling.shapes,
     )
+    result = as_given(result, given, number)
     stage("")
     return result
