@@ -13,6 +13,7 @@ from pathlib import Path
 from fem.beam import solve_beam
 from fem.figure import FigureKey
 from fem.solid import solve_solid
+from fem.solid.kept import KeptSystem
 from geometry.budget import Budget
 from geometry.named_solid import NamedSolid
 from geometry.part import LineLoad, Part
@@ -57,6 +58,8 @@ class Workshop:
     """Processor seconds by stage, of this process and of the jobs that it started."""
     stage: str = "spec"
     made: Made | None = None
+    kept: KeptSystem | None = None
+    """The factor, where there is more than one variant."""
 
     @contextmanager
     def at(self, stage: str) -> Iterator[None]:
@@ -88,12 +91,12 @@ class Made:
 def evaluate(order: Order, workshop: Workshop) -> Outcome:
     """The outcome of one variant; a fault of its own makes it a failed one."""
     workshop.seconds.clear()
-    known = {"key": order.variant.key, "safer_mesh": order.safer}
     try:
         return dataclasses.replace(_evaluate(order, workshop), safer_mesh=order.safer, seconds=dict(workshop.seconds))
     except HaunchError as error:
         stage = error.stage if isinstance(error, RunError) else workshop.stage
-        return Outcome(**known, status="failed", stage=stage, reason=str(error), seconds=dict(workshop.seconds))
+        return Outcome(order.variant.key, "failed", stage=stage, reason=str(error), safer_mesh=order.safer,
+                       seconds=dict(workshop.seconds))
 
 
 def _evaluate(order: Order, workshop: Workshop) -> Outcome:
@@ -110,7 +113,7 @@ def _evaluate(order: Order, workshop: Workshop) -> Outcome:
         beam = solve_beam(part, budget)
     with _timed(clock, workshop, "solve"):
         sharp = [(edge.label, edge.points) for edge in named.sharp_edges]
-        solid = solve_solid(part, mesh, budget, sharp_edges=sharp)
+        solid = solve_solid(part, mesh, budget, sharp_edges=sharp, kept=workshop.kept)
     most = None if fullest is None else _masses(fullest, budget, workshop)
     models = Models(part, named, mesh, beam, solid)
     with _timed(clock, workshop, "compare"):

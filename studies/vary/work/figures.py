@@ -47,7 +47,8 @@ SIZES = ("displacement", "rotation", "reaction_force", "reaction_moment")
 SAME = {"deflection": "displacement", "reaction": "reaction_force"}
 SOLID_ONLY = ("stress", "yield_factor", "denting")
 SCALARS = ("nominal_stress", "notch_stress", "strain_energy")
-_NAME = re.compile(r"(?P<what>[a-z_]+?)(?:_(?P<part>[0-9]+|[xyzNT]|Vy|Vz|My|Mz))?(?:@(?P<at>.+?))?(?: in (?P<case>.+))?")
+_NAME = re.compile(r"(?P<what>[a-z_]+?)(?:_(?P<part>[0-9]+|[xyzNT]|Vy|Vz|My|Mz))?(?:@(?P<at>.+?))?"
+                   r"(?: in (?P<case>.+))?")
 _WORST_FIRST: tuple[JudgementWord, ...] = ("suspicious", "explained", "agrees", "load check", "no beam value")
 
 
@@ -91,7 +92,7 @@ def headline(part: Part) -> tuple[str, ...]:
 
 def not_there(part: Part, names: Sequence[str]) -> list[tuple[str, str]]:
     """Names of figures that the part does not have, each with what it may be instead."""
-    places = {part.members[0].name: ""} | {name: "" for name in _places(part)}
+    places = set(_places(part))
     cases = {c.travel.case if c.travel else c.name for c in part.cases}
     wrong = []
     for name in names:

@@ -51,7 +51,6 @@ class Host:
         self._free = threading.BoundedSemaphore(workers)
         self._closing = threading.Event()
         self._clients = count(1)
-        self._under_way: set[threading.Thread] = set()
         self._idle = threading.Condition()
         self._running = 0
         self._room: Room | None = None
@@ -72,11 +71,11 @@ class Host:
         self._closing.set()
         if self._room is None:
             return
+        with self._idle:
+            self._idle.wait_for(lambda: not self._running, 30.0)
+            room, self._room = self._room, None
         for template in (self._models, self._cad, self._mesh):
             template.close()
-        with self._idle:
-            self._idle.wait_for(lambda: not self._running, 10.0)
-        room, self._room = self._room, None
         if room is not None:
             room.close()
 
@@ -233,7 +232,8 @@ class _Watch:
             if name == "lost":
                 code = _ended_soon(endings[module])
                 if code is not None and not ended_from_outside(code):
-                    return self._complete(self._fault(f"the process that loads the {KERNELS[module]} kernel {_how(code)}"))
+                    reason = f"crash: the process that loads the {KERNELS[module]} kernel {_how(code)}"
+                    return self._complete(self._fault(reason))
                 name = signal_name(code) if code else "SIGKILL"
             return Ended(self.order.variant.key, name, f"the {KERNELS[module]} process")
         return None
@@ -251,8 +251,8 @@ class _Watch:
         resident = job.resident() + sum(_resident(pid) for pid in self.processes)
         self.peak = max(self.peak, resident)
         if resident > self.memory:
-            return (f"memory limit: the variant's processes held {resident:.0f} MiB, and {self.memory} MiB are allowed. "
-                    "Allow more, or ask for less accuracy")
+            return (f"memory limit: the variant's processes held {resident:.0f} MiB of the {self.memory} MiB that are "
+                    "allowed. Allow more, or ask for less accuracy")
         if time.monotonic() - self.began > self.order.seconds:
             return (f"time limit: {self.order.seconds:g} s were over. Allow more, or look for a very small radius or a "
                     "cut that only grazes the part")
@@ -261,10 +261,10 @@ class _Watch:
     def _died(self, job: Job) -> Iterator[Outcome | Ended]:
         """The job has ended, or closed its socket, without a word."""
         code = job.wait(5.0)
-        if code is not None and (name := ended_from_outside(code)):
-            yield from self._ended(Ended("", name, "the solver process"))
-        elif self.host.closing:
+        if self.host.closing:
             yield from self._ended(Ended("", "closed"))
+        elif code is not None and (name := ended_from_outside(code)):
+            yield from self._ended(Ended("", name, "the solver process"))
         else:
             yield from self._failed(f"crash: the process of the variant {_how(code)}. Run it alone to see more")
 

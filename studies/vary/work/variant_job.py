@@ -7,6 +7,7 @@ outside it says so and ends: nothing is known about the variant then.
 
 from __future__ import annotations
 
+import contextlib
 import os
 import socket
 import sys
@@ -49,6 +50,16 @@ class _Told(LentTemplate):
         return next((name for job in self.jobs if (name := job.ended_by())), "")
 
 
+_PLAIN = {
+    "title": "plain", "material": {"name": "S235"},
+    "members": {"bar": {"start": ["0 mm", "0 mm", "0 mm"], "end": ["100 mm", "0 mm", "0 mm"], "up": [0, 0, 1],
+                        "section": {"shape": "rectangle", "depth": "20 mm", "width": "10 mm"}}},
+    "supports": {"wall": {"on": "bar.start", "hold": "all"}},
+    "loads": {"tip": {"on": "bar.end", "force": ["0 N", "0 N", "-10 N"]}},
+    "cases": {"only": ["tip"]},
+}
+
+
 def prepare() -> None:
     """Load both models, the judge and the solver's kernels, and solve a tiny part: what is set up at first use is then
     there for every job."""
@@ -56,10 +67,12 @@ def prepare() -> None:
 
     from fem.solid.factor import pardiso_available
     from fem.solid.kernels.warm import warm_up
+    from geometry.spec.read import part_from_data
     from studies.check.run import versions
     from studies.vary.work import evaluate
 
     assert evaluate is not None
+    part_from_data(_PLAIN)
     pardiso_available()
     warm_up(lambda text: None)
     versions()
@@ -83,19 +96,18 @@ def serve(order: dict[str, Any], data: socket.socket) -> int:
     asked = frames.receive(data)
     _limit(asked["memory"])
     os.environ["TMPDIR"] = tempfile.tempdir = asked["folder"]
-    try:
+    with contextlib.suppress(EndedOutside):
         _evaluate(asked["orders"], lent[0], lent[1], tell)
-    except EndedOutside:
-        pass
     return 0
 
 
 def _evaluate(orders: list[dict[str, Any]], cad: _Told, mesh: _Told, tell: Callable[[Any], None]) -> None:
+    from fem.solid.kept import KeptSystem
     from studies.check.threads import dense_products_in_one_thread
     from studies.vary.work.evaluate import Workshop, evaluate
     from studies.vary.work.order import Order
 
-    workshop = Workshop(cad, mesh, lambda stage: tell({"stage": stage}))
+    workshop = Workshop(cad, mesh, lambda stage: tell({"stage": stage}), kept=KeptSystem() if orders[1:] else None)
     with dense_products_in_one_thread():
         for plain in orders:
             try:

@@ -12,7 +12,7 @@ def suspicions(result: CheckResult) -> tuple[str, ...]:
     """One sentence for each suspicious pair, envelope and failed check: what and where first, then after a colon the
     values."""
     pairs = [p for p in result.pairs if p.judgement == "suspicious"]
-    found = [f"check {c.name}: {c.text or f'{c.value:.4g}, allowed {c.allowed:.4g}'}" for c in result.checks if not c.ok]
+    found = [f"check {c.name}: {c.value:.4g}, allowed {c.allowed:.4g}" for c in result.checks if not c.ok]
     found += [f"{_what(p)}: solid {_shown(p.solid)}, beam {_shown(p.beam)} {p.unit}" for p in sorted(pairs, key=_share)]
     left = len(found) - MOST
     return (*found[:MOST], *((f"and {left} more: not listed",) if left > 0 else ()))
