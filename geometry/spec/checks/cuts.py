@@ -6,7 +6,7 @@ import math
 from collections.abc import Iterator
 
 from geometry.part import Cut, Member
-from geometry.spec.checks.profile import Profile, dims_at, length_of, profile_of
+from geometry.spec.checks.profile import Profile, length_of, profile_of
 from geometry.spec.resolve.values import Values
 
 Interval = tuple[float, float]
@@ -116,8 +116,8 @@ def _check_place(values: Values, path: str, profile: Profile, cut: Cut) -> bool:
                        f"a cut that stays between the ends, 0 and {length:.6g} mm")  # fmt: skip
         return False
     for x, s in points:
-        for before in (True, False):
-            for wall, stretches in walls_of(profile, cut, dims_at(profile.member, x, before)):
+        for before in profile.sides(x):
+            for wall, stretches in walls_of(profile, cut, profile.dims(x, before)):
                 near = min(stretches, key=lambda t: abs(cut.offset - (t[0] + t[1]) / 2.0))
                 if not near[0] < s < near[1]:
                     _misplaced(values, path, profile, cut, wall, near, x)
@@ -138,7 +138,7 @@ def _misplaced(values: Values, path: str, profile: Profile, cut: Cut, wall: str,
         values.problem(f"{path}.{name}", f"{size:.6g} mm", f"less than {max(room[1] - room[0], 0.0):.6g} mm",
                        f"It must lie within {where}")  # fmt: skip
     else:
-        walls = dict(walls_of(profile, cut, dims_at(profile.member, cut.at)))
+        walls = dict(walls_of(profile, cut, profile.dims(cut.at)))
         a, b = min(walls.get(wall, [room]), key=lambda t: abs(cut.offset - (t[0] + t[1]) / 2.0))
         values.problem(f"{path}.offset", f"{cut.offset:.6g} mm",
                        f"more than {low:.6g} mm and less than {high:.6g} mm, which keeps the cut within the {wall}, "
@@ -150,8 +150,8 @@ def _offsets(profile: Profile, cut: Cut, wall: str) -> Interval:
     """Between which offsets the whole rim lies in a wall (or, without a name, in all), mm; its taper included."""
     low, high = -math.inf, math.inf
     for x, s in rim(cut):
-        for before in (True, False):
-            for name, stretches in walls_of(profile, cut, dims_at(profile.member, x, before)):
+        for before in profile.sides(x):
+            for name, stretches in walls_of(profile, cut, profile.dims(x, before)):
                 if wall in ("", name):
                     a, b = min(stretches, key=lambda t: abs(cut.offset - (t[0] + t[1]) / 2.0))
                     low, high = max(low, a - (s - cut.offset)), min(high, b - (s - cut.offset))
@@ -161,8 +161,8 @@ def _offsets(profile: Profile, cut: Cut, wall: str) -> Interval:
 def _side_depth(profile: Profile, cut: Cut, x: float) -> float:
     """Size of the section in the direction of a notch, mm."""
     sizes = []
-    for before in (True, False):
-        low_y, high_y, low_z, high_z = profile.box(dims_at(profile.member, x, before))
+    for before in profile.sides(x):
+        low_y, high_y, low_z, high_z = profile.box(profile.dims(x, before))
         sizes.append(high_z - low_z if cut.axis == "y" else high_y - low_y)
     return min(sizes)
 
@@ -249,7 +249,7 @@ def _check_station(
     values: Values, paths: dict[str, str], profile: Profile, cuts: list[Cut], axis: str, x: float
 ) -> bool:
     """Whether the cuts at a station keep apart and leave some of the section."""
-    low_y, high_y, low_z, high_z = profile.box(dims_at(profile.member, x))
+    low_y, high_y, low_z, high_z = profile.box(profile.dims(x))
     low, high = (low_z, high_z) if axis == "y" else (low_y, high_y)
     removed = []
     for cut in cuts:

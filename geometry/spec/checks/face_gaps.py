@@ -6,7 +6,7 @@ import math
 
 from geometry.part import Cut, LineLoad, Member, Part
 from geometry.spec.checks.cuts import Interval, rim, span_at
-from geometry.spec.checks.profile import Profile, dims_at, length_of, profile_of
+from geometry.spec.checks.profile import Profile, length_of, profile_of
 from geometry.spec.checks.regions import faces_of
 from geometry.spec.checks.shoulders import fillets
 from geometry.spec.resolve.values import Values
@@ -77,7 +77,7 @@ def _leaves_nothing(profile: Profile, face: str, cut: Cut) -> bool:
     """Whether a cut takes the whole width of a face at its middle."""
     if cut.kind == "notch" and cut.edge == face:
         return True
-    box = profile.box(dims := dims_at(profile.member, cut.at))
+    box = profile.box(dims := profile.dims(cut.at))
     if face in ("top", "bottom"):
         if cut.axis != "z" or cut.through not in TOP_BOTTOM:
             return False

@@ -11,7 +11,7 @@ import math
 
 from geometry.part import Cut, Member, Part, Support, Vector
 from geometry.spec.checks.frame import axes_of, cross, plus, scaled
-from geometry.spec.checks.profile import Profile, dims_at, length_of, profile_of
+from geometry.spec.checks.profile import Profile, length_of, profile_of
 from geometry.spec.checks.section import axes_known
 from geometry.spec.resolve.values import Values
 
@@ -81,19 +81,19 @@ def _points(member: Member, region: str) -> tuple[list[Vector], Vector]:
         return [_placed(member, axes, p) for p in local], axes[0]
     if region in ("start", "end"):
         x = 0.0 if region == "start" else length
-        local = [(x, y, z) for y, z in _corners(profile.box(dims_at(member, x, x > 0.0)))]
+        local = [(x, y, z) for y, z in _corners(profile.box(profile.dims(x, x > 0.0)))]
         return [_placed(member, axes, p) for p in local], scaled(axes[0], -1.0 if region == "start" else 1.0)
     face = patch.face if patch else region
     low, high = (patch.start, patch.end) if patch else (0.0, length)
     normal = scaled(axes[1 if face in ("left", "right", "web_left", "web_right") else 2],
                     -1.0 if face in ("left", "web_left", "bottom") else 1.0)  # fmt: skip
     across = patch.across if patch else None
-    local = [(x, y, z) for x in (low, high) for y, z in _side(profile.box(dims_at(member, x)), face, across)]
+    local = [(x, y, z) for x in (low, high) for y, z in _side(profile.box(profile.dims(x)), face, across)]
     return [_placed(member, axes, p) for p in local], normal
 
 
 def _cut_points(profile: Profile, cut: Cut) -> list[Vector]:
-    low_y, high_y, low_z, high_z = profile.box(dims_at(profile.member, cut.at))
+    low_y, high_y, low_z, high_z = profile.box(profile.dims(cut.at))
     r = cut.depth / 2.0
     points = []
     for dx, ds in ((r, 0.0), (-r, 0.0), (0.0, r), (0.0, -r)):

@@ -26,7 +26,11 @@ def dims_at(member: Member, x: float, before: bool = False) -> dict[str, float]:
     return {name: _at(_named(member, name), x, before) for name in member.section.dims}
 
 
-def _named(member: Member, name: str) -> list[tuple[float, float]]:
+Named = list[tuple[float, float]]
+"""Where a dimension has a value of its own, and which, in the order of the spec, mm."""
+
+
+def _named(member: Member, name: str) -> Named:
     """Where a dimension has a value of its own, and which, in the order of the spec.
 
     One that only the second station of a step names keeps its last value up to the step, and jumps there.
@@ -41,7 +45,9 @@ def _named(member: Member, name: str) -> list[tuple[float, float]]:
     return named
 
 
-def _at(named: list[tuple[float, float]], x: float, before: bool) -> float:
+def _at(named: Named, x: float, before: bool) -> float:
+    if len(named) == 1:
+        return named[0][1]
     tol = 1e-9 * (1.0 + abs(x))
     if before:
         after = next((k for k, (at, _) in enumerate(named) if at >= x - tol), len(named))
@@ -160,11 +166,22 @@ def _weighted(pieces: list[tuple[float, float, float]]) -> tuple[float, float]:
 class Profile:
     """A member's sections placed on its line.
 
-    `line` is the point (y, z) of the start section that lies on the line, about the shape's origin.
+    `line` is the point (y, z) of the start section that lies on the line, about the shape's origin. `named`: where each
+    dimension has a value of its own; looked up once, for the checks ask at many places.
     """
 
     member: Member
     line: tuple[float, float]
+    named: dict[str, Named]
+
+    def dims(self, x: float, before: bool = False) -> dict[str, float]:
+        """Dimensions at a distance from the start (mm); at a step those behind it, or `before` it."""
+        return {name: _at(named, x, before) for name, named in self.named.items()}
+
+    def sides(self, x: float) -> tuple[bool, ...]:
+        """Both sides, `before` first, where a dimension may jump; elsewhere they are one."""
+        tol = 2e-9 * (1.0 + abs(x))
+        return (True, False) if any(abs(s.at - x) <= tol for s in self.member.stations) else (False,)
 
     def origin(self, dims: dict[str, float]) -> tuple[float, float]:
         """The shape's origin from the line (y, z), for the dimensions at a station."""
@@ -186,19 +203,20 @@ def _depth(dims: dict[str, float]) -> float:
 
 def profile_of(member: Member) -> Profile:
     """The member's sections placed on its line, by `line_at`."""
+    return Profile(member, _line(member), {name: _named(member, name) for name in member.section.dims})
+
+
+def _line(member: Member) -> tuple[float, float]:
     section = member.section
-    if section.shape != "outline" or section.outline is not None:
-        y, z = centroid(section)
-    else:
-        y, z = math.nan, math.nan
     if member.line_at == "centroid":
-        return Profile(member, (y, z))
+        drawn = section.shape != "outline" or section.outline is not None
+        return centroid(section) if drawn else (math.nan, math.nan)
     if member.line_at == "origin":
-        return Profile(member, (0.0, 0.0))
+        return 0.0, 0.0
     left, right, low, high = bounds(section, dict(section.dims))
     if member.line_at == "web":
-        return Profile(member, (section.dims.get("web", 0.0) / 2.0 if section.shape == "channel" else 0.0, 0.0))
+        return section.dims.get("web", 0.0) / 2.0 if section.shape == "channel" else 0.0, 0.0
     words = member.line_at.split()
     y = left if "left" in words else right if "right" in words else 0.0
     z = high if "top" in words else low if "bottom" in words else 0.0
-    return Profile(member, (y, z))
+    return y, z

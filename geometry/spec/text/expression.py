@@ -64,7 +64,7 @@ def evaluate_as(text: str, kind: Kind, scope: Mapping[str, Quantity]) -> float:
 class _Reader:
     """Reads tokens left to right and evaluates as it goes."""
 
-    def __init__(self, tokens: list[Token], scope: Mapping[str, Quantity]) -> None:
+    def __init__(self, tokens: tuple[Token, ...], scope: Mapping[str, Quantity]) -> None:
         self.tokens = tokens
         self.scope = scope
         self.at = 0

@@ -10,6 +10,7 @@ import difflib
 import math
 import re
 from collections.abc import Iterable, Mapping
+from functools import lru_cache
 from typing import NamedTuple
 
 from geometry.spec.text.units import UNITS, Quantity
@@ -81,7 +82,8 @@ def nearest(word: str, known: Mapping[str, object] | tuple[str, ...] | list[str]
     return found[0] if found else ""
 
 
-def tokens_of(text: str) -> list[Token]:
+@lru_cache(maxsize=4096)  # a study reads the same texts again and again
+def tokens_of(text: str) -> tuple[Token, ...]:
     """Split `text` into tokens; raise `ExpressionError` where that cannot be done."""
     if len(text) > LONGEST:
         raise ExpressionError(f"at most {LONGEST} characters", "Split it over several parameters")
@@ -110,8 +112,7 @@ def tokens_of(text: str) -> list[Token]:
             raise ExpressionError(
                 "numbers with units, parameters, + - * / ^ and parentheses", f"Remove the character {text[at]!r}"
             )
-    tokens.append(Token("end", "the end"))
-    return tokens
+    return (*tokens, Token("end", "the end"))
 
 
 def _number(text: str, found: re.Match[str]) -> tuple[Token, int]:
