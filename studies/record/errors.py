@@ -57,7 +57,9 @@ def told(path: Path) -> Iterator[None]:
 
 
 def in_words(path: Path, error: sqlite3.Error) -> RecordError:
-    """What SQLite's error means for the record `path`."""
+    """What SQLite's error means for the record `path`. A mistake in Haunch itself is raised as it is."""
+    if isinstance(error, sqlite3.ProgrammingError | sqlite3.InterfaceError):
+        raise error
     name = getattr(error, "sqlite_errorname", None) or ""
     if name.startswith(("SQLITE_FULL", "SQLITE_IOERR_WRITE", "SQLITE_IOERR_SHMSIZE", "SQLITE_IOERR_FSYNC",
                         "SQLITE_IOERR_TRUNCATE")):

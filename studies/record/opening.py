@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import os
 import sqlite3
+from contextlib import suppress
 from pathlib import Path
 
-from studies.record.errors import RecordError, damaged, told
-from studies.record.schema import APPLICATION, VERSION
+from studies.record.errors import RecordError, damaged, in_words, told
+from studies.record.place import is_network, kind_of
+from studies.record.schema import APPLICATION, VERSION, upgrade
 
 BUSY_SECONDS = 30.0
 
@@ -30,19 +32,6 @@ def connect(path: Path, mode: str, more: str = "") -> sqlite3.Connection:
     return db
 
 
-def connect_reader(path: Path) -> sqlite3.Connection:
-    """Connect to the record `path` for reading, while it is written or not.
-
-    Where the file may be written, so that the last one to close it can tidy up the files beside it; SQLite itself
-    refuses every change by this connection.
-    """
-    if os.access(path, os.W_OK) and os.access(path.parent, os.W_OK | os.X_OK):
-        db = connect(path, "rw")
-        db.execute("PRAGMA query_only = ON")
-        return db
-    return connect(path, "ro")
-
-
 def refuse_foreign(db: sqlite3.Connection, path: Path) -> None:
     """Raise `RecordError` when the file is no record, or one of a newer version."""
     with told(path):
@@ -55,3 +44,81 @@ def refuse_foreign(db: sqlite3.Connection, path: Path) -> None:
                           f"{VERSION}): use that one, or give another --record")
     if version < 1:
         raise damaged(path, f"its layout has the number {version}")
+
+
+def open_reader(path: Path) -> sqlite3.Connection:
+    """Connect to the record `path` for reading, while it is written or not; in today's layout.
+
+    Where it may be written, it is opened so, and the last one to close it tidies up the files beside it; SQLite itself
+    refuses every change by this connection. Raises `RecordError`.
+    """
+    kind = kind_of(path)
+    if is_network(kind):
+        db = _resting(path, f"it lies on a network drive ({kind})")
+    else:
+        try:
+            db = _try(path, "rw")
+            db.execute("PRAGMA query_only = ON")
+        except sqlite3.OperationalError as error:
+            if not _refused(error):
+                raise in_words(path, error) from error
+            db = _unwritable(path)
+        except sqlite3.Error as error:
+            raise in_words(path, error) from error
+    try:
+        refuse_foreign(db, path)
+        return _todays(db, path)
+    except BaseException:
+        db.close()
+        raise
+
+
+def _try(path: Path, mode: str, more: str = "") -> sqlite3.Connection:
+    db = connect(path, mode, more)
+    try:
+        db.execute("SELECT count(*) FROM sqlite_master").fetchone()
+    except BaseException:
+        db.close()
+        raise
+    return db
+
+
+def _refused(error: sqlite3.Error) -> bool:
+    """Is it for want of a right, or of room for the files beside the record?"""
+    return getattr(error, "sqlite_errorname", "").startswith(("SQLITE_CANTOPEN", "SQLITE_READONLY", "SQLITE_PERM",
+                                                              "SQLITE_FULL", "SQLITE_IOERR_SHM", "SQLITE_IOERR_WRITE"))
+
+
+def _unwritable(path: Path) -> sqlite3.Connection:
+    """A record in a place where nothing may be written; perhaps somebody who may is writing it."""
+    with suppress(sqlite3.OperationalError):
+        return _try(path, "ro")
+    return _resting(path, "its folder may not be written in")
+
+
+def _resting(path: Path, why: str) -> sqlite3.Connection:
+    """A record that nobody writes and that has no open log needs no files beside it."""
+    log = log_of(path)
+    if log.exists() and log.stat().st_size:
+        raise RecordError(f"the record {path} was not closed by its driver, or is being written, and cannot be read "
+                          f"where it is: {why}. Copy it to a folder of your own together with {log.name}, and read the "
+                          "copy; or go on with the study, which closes it")
+    with told(path):
+        return _try(path, "ro", "&immutable=1")
+
+
+def log_of(path: Path) -> Path:
+    """SQLite's write-ahead log of the record `path`."""
+    return path.with_name(path.name + "-wal")
+
+
+def _todays(db: sqlite3.Connection, path: Path) -> sqlite3.Connection:
+    """The same record in today's layout; one of an older layout is read in memory, and its file left as it is."""
+    with told(path):
+        if db.execute("PRAGMA user_version").fetchone()[0] == VERSION:
+            return db
+        memory = sqlite3.connect(":memory:", isolation_level=None, check_same_thread=False)
+        db.backup(memory)
+        db.close()
+        upgrade(memory)
+        return memory

@@ -20,6 +20,13 @@ def seal(*rows: Sequence[Any]) -> bytes:
     return hashlib.blake2b(json.dumps(plain, separators=(",", ":")).encode("ascii"), digest_size=BYTES).digest()
 
 
+def choice(given: Any, found: float | None) -> float | str | None:
+    """What the table shows of a chosen value: its number in base units, else itself; a list as JSON."""
+    if found is not None or given is None:
+        return found
+    return text(given) if isinstance(given, str) else json.dumps(given, separators=(",", ":"))
+
+
 def number(value: float | None) -> float | None:
     """A number as SQLite gives it back: it has no NaN and no negative zero."""
     return None if value is None or value != value else float(value) + 0.0
