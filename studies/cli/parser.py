@@ -5,6 +5,8 @@ from __future__ import annotations
 import argparse
 
 from geometry.budget import available_threads
+from studies.cli import again, export, vary
+from studies.cli.arguments import Commands, command, whole
 
 DESCRIPTION = """\
 Check a beam-like part twice: as a solid model (second-order tetrahedra) and as a beam model of the same spec.
@@ -17,6 +19,11 @@ exit status
   2    the spec or the command line is wrong; every mistake is listed
   3    the run failed; nothing was written
   130  stopped by Ctrl-C; nothing was written
+  of a study (vary), which writes each variant as it is finished:
+  0    every variant is finished, and at least one has nothing suspicious and meets every limit
+  1    every variant is done, but some failed, or none is such a one
+  3    the study had to stop; what was finished is kept, and the same command goes on
+  130  stopped by Ctrl-C, SIGTERM or SIGHUP; likewise
 
 cautions
   Linear elastic material, small displacements, perfect geometry. No yielding, no fatigue, no contact; buckling only
@@ -45,50 +52,31 @@ def make_parser() -> argparse.ArgumentParser:
     parser.add_argument("--version", action=_Version, nargs=0, help="print the version and stop")
     commands = parser.add_subparsers(title="commands", metavar="COMMAND", required=True)
     _add_check(commands)
-    show = _command(commands, "show", "print the tables of a finished run", _show)
+    show = command(commands, "show", "print the tables of a finished run", _show)
     show.add_argument("folder", metavar="RUN_FOLDER", help="folder that `haunch check` wrote")
-    _command(commands, "schema", "print the JSON Schema of a spec, for editors that complete and check TOML", _schema)
-    _command(commands, "reference", "print every word of a spec with its meaning (Markdown)", _reference)
-    _command(commands, "materials", "print the table of materials with its sources", _materials)
+    for study_command in (vary, again, export):
+        study_command.register(commands)
+    command(commands, "schema", "print the JSON Schema of a spec, for editors that complete and check TOML", _schema)
+    command(commands, "reference", "print every word of a spec with its meaning (Markdown)", _reference)
+    command(commands, "materials", "print the table of materials with its sources", _materials)
     return parser
 
 
-def _command(commands: argparse._SubParsersAction[argparse.ArgumentParser], name: str, text: str,
-             run: object) -> argparse.ArgumentParser:
-    command = commands.add_parser(name, help=text, description=text[0].upper() + text[1:] + ".", allow_abbrev=False,
-                                  formatter_class=argparse.RawDescriptionHelpFormatter)
-    command.set_defaults(run=run)
-    return command
-
-
-def _add_check(commands: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
-    check = _command(commands, "check", "build both models of a part, compare and judge them, write a run folder",
+def _add_check(commands: Commands[argparse.ArgumentParser]) -> None:
+    check = command(commands, "check", "build both models of a part, compare and judge them, write a run folder",
                      _check)
     check.epilog = EPILOG
     check.add_argument("part", metavar="PART.toml", help="the spec (see `haunch reference`)")
     check.add_argument("--out", metavar="DIR", help="run folder to write; PART.run in the current folder if left out")
     check.add_argument("--replace", action="store_true", help="overwrite a finished run of that name")
     check.add_argument("--no-pictures", dest="pictures", action="store_false", help="draw no PNG pictures")
-    check.add_argument("--threads", metavar="N", type=_whole(1, 1024), default=available_threads(),
+    check.add_argument("--threads", metavar="N", type=whole(1, 1024), default=available_threads(),
                        help="threads to use (one for each core that this process may use: %(default)s)")
-    check.add_argument("--memory", metavar="MiB", type=_whole(256, 10**8), default=4096,
+    check.add_argument("--memory", metavar="MiB", type=whole(256, 10**8), default=4096,
                        help="memory that meshing and solving may take (4096)")
     check.add_argument("--solver", choices=("auto", "cholesky", "multigrid"), default="auto",
                        help="of the solid model's equations: auto goes by size and shape of the part, and the result "
                             "says what was chosen and why (auto)")
-
-
-def _whole(least: int, most: int):  # type: ignore[no-untyped-def]
-    def read(text: str) -> int:
-        try:
-            value = int(text)
-        except ValueError:
-            value = least - 1
-        if not least <= value <= most:
-            raise argparse.ArgumentTypeError(f"given {text!r}; allowed: a whole number from {least} to {most}")
-        return value
-
-    return read
 
 
 def _check(options: argparse.Namespace) -> int:
