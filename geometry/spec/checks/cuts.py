@@ -115,6 +115,8 @@ def _check_place(values: Values, path: str, profile: Profile, cut: Cut) -> bool:
         values.problem(f"{path}.at", f"{cut.at:.6g} mm: it reaches from {low:.6g} to {high:.6g} mm",
                        f"a cut that stays between the ends, 0 and {length:.6g} mm")  # fmt: skip
         return False
+    if _box_fits(profile, cut, low, high, [s for _, s in points]):
+        return True
     for x, s in points:
         for before in profile.sides(x):
             for wall, stretches in walls_of(profile, cut, profile.dims(x, before)):
@@ -122,6 +124,23 @@ def _check_place(values: Values, path: str, profile: Profile, cut: Cut) -> bool:
                 if not near[0] < s < near[1]:
                     _misplaced(values, path, profile, cut, wall, near, x)
                     return False
+    return True
+
+
+def _box_fits(profile: Profile, cut: Cut, low: float, high: float, across: list[float]) -> bool:
+    """Whether the rectangle about the rim lies in the walls at both its ends, with no station between them.
+
+    Then so does every point of the rim, for the bounds of a wall vary linearly. The other way round nothing follows.
+    """
+    if any(low <= station.at <= high for station in profile.member.stations):
+        return False
+    least, greatest = min(across), max(across)
+    margin = 1e-9 * (1.0 + abs(least) + abs(greatest))
+    for x in (low, high):
+        for _, stretches in walls_of(profile, cut, profile.dims(x)):
+            a, b = min(stretches, key=lambda t: abs(cut.offset - (t[0] + t[1]) / 2.0))
+            if not a + margin < least <= greatest < b - margin:
+                return False
     return True
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator
 from dataclasses import replace
+from functools import cache
 from typing import Any
 
 from pydantic import BaseModel
@@ -60,6 +61,7 @@ WALLS: dict[str, tuple[str, ...]] = {
 """What a cut may pass, by shape."""
 
 
+@cache
 def mark_of(model: type[BaseModel], name: str) -> OfKind:
     """The quantity that a field of `model` holds."""
 

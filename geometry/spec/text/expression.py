@@ -17,6 +17,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
+from functools import lru_cache
 
 from geometry.spec.text.tokens import FUNCTIONS, NUMBER_TEXT, ExpressionError, Token, nearest, tokens_of, with_article
 from geometry.spec.text.units import ANGLE, NUMBER, UNITS, Dimension, Kind, Quantity, name_of
@@ -25,6 +26,7 @@ DEEPEST = 24
 GREATEST_POWER = 4
 
 
+@lru_cache(maxsize=4096)
 def names_in(text: str) -> tuple[str, ...]:
     """Names of the parameters that `text` uses."""
     return tuple(dict.fromkeys(t.text for t in tokens_of(text) if t.sort == "name" and t.text not in FUNCTIONS))
@@ -39,6 +41,21 @@ def evaluate(text: str, scope: Mapping[str, Quantity]) -> Quantity:
         For anything that is not a quantity: unknown units and names, dimensions that do not fit, results
         that are not finite.
     """
+    return _constant(text) if _is_constant(text) else _evaluated(text, scope)
+
+
+@lru_cache(maxsize=4096)
+def _is_constant(text: str) -> bool:
+    """Whether no parameter can matter: there is no name, and no unit with a slash (see `_Reader._not_ambiguous`)."""
+    return not any(t.sort == "name" or "/" in t.unit for t in tokens_of(text))
+
+
+@lru_cache(maxsize=4096)  # a study reads the same texts again and again
+def _constant(text: str) -> Quantity:
+    return _evaluated(text, {})
+
+
+def _evaluated(text: str, scope: Mapping[str, Quantity]) -> Quantity:
     reader = _Reader(tokens_of(text), scope)
     value = reader.sum(0)
     if reader.now.sort != "end":

@@ -34,37 +34,43 @@ def _fields(kind: type) -> tuple[str, ...]:
 
 def content(value: Any) -> Any:
     """Dataclasses of numbers and text as plain lists, each with the name of its class."""
-    if isinstance(value, str | float | int) or value is None:
+    kind: type = type(value)
+    if kind in _PLAIN:
         return value
-    if dataclasses.is_dataclass(value):
-        kind: type = type(value)
-        return [kind.__name__, *(content(getattr(value, name)) for name in _fields(kind))]
+    if kind is tuple or kind is list:
+        return [item if type(item) in _PLAIN else content(item) for item in value]
+    if dataclasses.is_dataclass(kind):
+        return [kind.__name__, *[content(getattr(value, name)) for name in _fields(kind)]]
     if isinstance(value, Mapping):
         return {str(name): content(item) for name, item in value.items()}
-    return [content(item) for item in value]
+    raise TypeError(f"{kind.__name__} is nothing that a part is made of")
+
+
+_PLAIN = frozenset({float, str, int, bool, type(None)})
+_encoded = json.JSONEncoder(sort_keys=True, separators=(",", ":"), ensure_ascii=False).encode
 
 
 def digest(*plain: Any) -> str:
     """SHA-256 of plain data, as 64 hexadecimal digits."""
-    text = json.dumps(plain, sort_keys=True, separators=(",", ":"), ensure_ascii=False)
-    return hashlib.sha256(text.encode()).hexdigest()
+    return hashlib.sha256(_encoded(plain).encode()).hexdigest()
 
 
-def _whole(part: Part) -> dict[str, Any]:
-    skip = ("title", "parameters", "source_text")
-    return {name: content(getattr(part, name)) for name in _fields(Part) if name not in skip}
+def keys_of(part: Part, fullest: Part | None = None, kept: Sequence[str] = ()) -> tuple[str, str]:
+    """Key and shape key of a variant.
 
-
-def part_key(part: Part, fullest: Part | None = None, kept: Sequence[str] = ()) -> str:
-    """Key of a variant: its part, the versions that matter and, where there are any, the part at most material and
-    figures that are kept beside the usual ones."""
-    return digest(_versions(), _whole(part), _whole(fullest) if fullest else None, sorted(kept))
-
-
-def shape_key(part: Part) -> str:
-    """Key of what the solid and its mesh depend on: members, stretches of line loads (drawn on the faces), accuracy.
-
-    Loads, supports, materials, cases and limits do not count: every face is a region of the mesh, held or not.
+    The key: the part, the versions that matter and, where there are any, the part at most material and figures that are
+    kept beside the usual ones. The shape key: what the solid and its mesh depend on, that is members, stretches of line
+    loads (drawn on the faces) and accuracy. Loads, supports, materials, cases and limits do not count there, for every
+    face is a region of the mesh, held or not.
     """
+    members = _encoded(content(part.members))
     stretches = [[load.name, load.on, load.start, load.end] for load in part.loads if isinstance(load, LineLoad)]
-    return digest(_versions(), content(part.members), stretches, part.accuracy)
+    full = _rest(fullest) + [_encoded(content(fullest.members))] if fullest else None
+    whole = digest(_versions(), members, _rest(part), full, sorted(kept))
+    return whole, digest(_versions(), members, stretches, part.accuracy)
+
+
+def _rest(part: Part) -> list[Any]:
+    """A part's content without its members, and without what no number depends on."""
+    skip = ("title", "parameters", "source_text", "members")
+    return [content(getattr(part, name)) for name in _fields(Part) if name not in skip]

@@ -7,8 +7,11 @@ from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
 
+from pydantic import ValidationError
+
 from geometry.part import Part
 from geometry.problem import Problem, SpecError
+from geometry.spec.model import PartSpec
 from geometry.spec.read import part_from_data
 from geometry.spec.resolve.values import Values, shown
 from geometry.spec.text.tokens import ExpressionError
@@ -17,7 +20,7 @@ from studies.vary.plan import sampling as points_of
 from studies.vary.plan.aim import Aim
 from studies.vary.plan.constraints import Constraint
 from studies.vary.plan.kept import Keep
-from studies.vary.plan.key import part_key, shape_key
+from studies.vary.plan.key import keys_of
 from studies.vary.plan.place import with_value
 from studies.vary.plan.sampling import Point, Sampling
 from studies.vary.plan.varied import Varied
@@ -141,12 +144,11 @@ class Plan:
         if broken := self._broken_constraint(data, quantities):
             return LeftOut(number, point, *broken)
         try:
-            part = part_from_data(data)
+            part = resolved(data)
         except SpecError as error:
             return LeftOut(number, point, error.problems[0].path, str(error.problems[0]))
         numbers = {name: quantity.value for name, quantity in quantities.items()}
-        return Variant(number, point, numbers, data, part_key(part, None, self.keep.extra),
-                       shape_key(part))  # fmt: skip
+        return Variant(number, point, numbers, data, *keys_of(part, None, self.keep.extra))
 
     def _broken_constraint(self, data: Mapping[str, Any], quantities: Mapping[str, Quantity]) -> tuple[str, str] | None:
         """Rule and reason of the first constraint that does not hold, or None."""
@@ -169,3 +171,13 @@ class Plan:
     @cached_property
     def _scope(self) -> dict[str, Quantity]:
         return Values(self.part_data.get("parameters", {})).scope
+
+
+def resolved(data: Mapping[str, Any]) -> Part:
+    """The part of these tables, as `part_from_data` gives it, without its look at their depth: they are those of a part
+    that was read, with values of the plan in them."""
+    try:
+        spec = PartSpec.model_validate(data)
+    except ValidationError:
+        return part_from_data(data)
+    return spec.resolve()

@@ -120,11 +120,11 @@ def _quantities(
         values, listed = _range(reading, where, table, mark, draft), False
     if len(reading.problems) > before or not values:
         return None
-    texts, numbers = tuple(v for v, _ in values), tuple(n for _, n in values)
+    texts: tuple[Any, ...] = tuple(v for v, _ in values)
+    numbers: tuple[float, ...] = tuple(n for _, n in values)
+    low, high = min(numbers), max(numbers)
     if not listed and table.steps is None and table.step is None:
-        texts, numbers, low, high = (), (), numbers[0], numbers[-1]
-    else:
-        low, high = min(numbers), max(numbers)
+        texts, numbers = (), ()
     return Varied(**{**vars(draft), "values": texts, "numbers": numbers, "low": low, "high": high, "listed": listed})
 
 
