@@ -29,8 +29,9 @@ def plain_json(plain: Any) -> str:
 
 def put_event(db: sqlite3.Connection, study: int, what: str) -> None:
     """Write an event with its time."""
-    row = (study, now(), text(what))
-    db.execute("INSERT INTO events (study, time, what, seal) VALUES (?, ?, ?, ?)", (*row, seal(row)))
+    ((number,),) = db.execute("SELECT coalesce(max(id), 0) + 1 FROM events").fetchall()
+    row = (number, study, now(), text(what))
+    db.execute("INSERT INTO events VALUES (?, ?, ?, ?, ?)", (*row, seal(row)))
 
 
 def point_row(study: int, names: list[str], variant: Variant) -> Row:

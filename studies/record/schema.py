@@ -121,11 +121,13 @@ def quoted(name: str) -> str:
 def make_tables(db: sqlite3.Connection) -> None:
     """Make the tables of an empty record."""
     db.execute("PRAGMA auto_vacuum = 0")
+    db.execute("BEGIN")
     db.execute(f"PRAGMA application_id = {APPLICATION}")
     db.execute(f"PRAGMA user_version = {VERSION}")
     for sql in TABLES.values():
         db.execute(sql)
     db.execute(results_view([]))
+    db.execute("COMMIT")
 
 
 def upgrade(db: sqlite3.Connection, version: int = VERSION,
