@@ -1,0 +1,214 @@
+"""The page of a study: one HTML file with everything in it, for a browser without a network."""
+
+from __future__ import annotations
+
+import base64
+import hashlib
+import json
+from collections.abc import Mapping
+from functools import cache
+from importlib.resources import files
+from typing import Any
+
+import numpy as np
+
+from studies.report.study.answer import Answer, aim_text, answer, governs_text
+from studies.report.study.counts import count
+from studies.report.study.data import Row, StudyData
+from studies.report.study.effects import Effects, effects
+from studies.report.study.pack import figure_units, pack
+from studies.report.study.ranking import Ranking, finished, governing, level, levels, rank
+from studies.report.study.readings import method, reading
+from studies.report.study.words import capital, clock, counted, factor_of, figure_words, percent, value_text
+from studies.report.summary import CONVENTIONS, SCOPE
+from studies.report.tables import MARKS, marked, number, readable, shown_unit
+
+SCRIPTS = ("base.js", "ranking.js", "variant.js", "tradeoff.js", "effects.js", "parallel.js", "start.js")
+ROWS = 25
+"""Rows of the ranking on one sheet of it."""
+NEAREST = 10
+
+
+def study_page(data: StudyData, pictures: Mapping[str, bytes] | None = None) -> str:
+    """HTML of the whole page.
+
+    Parameters
+    ----------
+    data
+        The study.
+    pictures
+        Caption -> PNG of the variant that the page speaks of first; they are kept inside the page.
+    """
+    ranking = rank(data)
+    counts = count(data)
+    top = answer(data, ranking, counts)
+    found = all_effects(data)
+    packed = pack(data, ranking)
+    units = figure_units(data)
+    packed["effects"] = [_packed_effects(effect, factor_of(units.get(name, data.aim_unit)))
+                         for name, effect in found.items()]
+    packed["rows"] = ROWS
+    own = "\n".join(_file(name) for name in SCRIPTS)
+    plotly = _plotly()
+    return _environment().get_template("page.html.jinja").render(
+        data=data, ranking=ranking, counts=counts, top=top, top_values=_values(data, top.row),
+        top_figures=_figures(top.row), pictures=_inline(pictures or {}),
+        ranked=[_ranked(data, row) for row in ranking.meeting[:ROWS]], nearest=_nearest(data, ranking),
+        head=_head(data), effects=_effect_rows(data, found), method=_method(data, found), scope=SCOPE,
+        conventions=CONVENTIONS, json=_safe_json(packed), plotly=plotly, script=own, style=_file("page.css"),
+        hashes=" ".join(f"'sha256-{_sha(text)}'" for text in (plotly, own)), compact=len(_head(data)) > 13,
+    )
+
+
+def top_of(data: StudyData) -> Answer:
+    """What the page says first."""
+    return answer(data, rank(data), count(data))
+
+
+def all_effects(data: StudyData) -> dict[str, Effects]:
+    """Effects on every kept figure; on the aim too, where it is a formula."""
+    rows = finished(data.rows)
+    columns, ordered = [], []
+    for axis in data.axes:
+        if axis.numeric:
+            columns.append(np.array([row.numbers.get(axis.name, np.nan) for row in rows], dtype=float))
+        else:
+            order = {text: i for i, text in enumerate(levels(data, axis.name))}
+            columns.append(np.array([order[level(row, axis.name)] for row in rows], dtype=float))
+        ordered.append(axis.numeric)
+    units = figure_units(data)
+    figures = {name: [_solid(row, name) for row in rows] for name in units}
+    if data.aim not in units and rows:
+        figures = {"aim": [row.aim for row in rows], **figures}
+    return {name: effects(columns, ordered, np.array([np.nan if v is None else v for v in values], dtype=float),
+                          data.sampling) for name, values in figures.items()}
+
+
+def _solid(row: Row, name: str) -> float | None:
+    kept = row.outcome.figures.get(name) if row.outcome is not None else None
+    return kept.solid if kept is not None else None
+
+
+def _packed_effects(found: Effects, factor: float) -> dict[str, Any]:
+    return {"kind": found.kind, "factor": factor, "each": [
+        {"share": e.share, "rank": e.rank, "at": e.centres, "mean": e.means, "low": e.lows, "high": e.highs}
+        for e in found.each]}
+
+
+def _effect_rows(data: StudyData, found: Mapping[str, Effects]) -> list[dict[str, Any]]:
+    units = figure_units(data)
+    rows = []
+    for name, effect in found.items():
+        unit = units.get(name, data.aim_unit)
+        cells = []
+        for each in effect.each:
+            share = each.share
+            text = percent(share) if share is not None else "-" if each.rank is None else f"{each.rank:+.2f}"
+            cells.append({"text": text, "give": percent(each.give) if each.give else "",
+                          "bar": round(100 * min(1.0, share if share is not None else abs(each.rank or 0.0)))})
+        rows.append({"name": "aim" if name == "aim" else figure_words(name), "unit": shown_unit(unit), "cells": cells,
+                     "together": percent(effect.together) if effect.together is not None else "-",
+                     "reading": reading(data, name, unit, effect)})
+    return rows
+
+
+def _method(data: StudyData, found: Mapping[str, Effects]) -> str:
+    return method(data, [effect.kind for effect in found.values()],
+                  max((effect.count for effect in found.values()), default=0))
+
+
+def _head(data: StudyData) -> list[dict[str, Any]]:
+    """Columns of the ranking: key for the script, words, unit, and whether it holds numbers."""
+    units = figure_units(data)
+
+    def column(key: str, words: str, unit: str = "", number: bool = False) -> dict[str, Any]:
+        return {"key": key, "words": words, "unit": unit, "number": number}
+
+    aim = [] if data.aim in units else [column("aim", "aim", shown_unit(data.aim_unit), True)]
+    return [
+        column("number", "variant"),
+        *(column(f"axis:{axis.name}", axis.name, axis.unit * axis.numeric, axis.numeric) for axis in data.axes),
+        *aim, *(column(f"figure:{name}", figure_words(name), shown_unit(unit), True) for name, unit in units.items()),
+        column("left", "least left", "%", True), column("governs", "limit that governs"), column("verdict", "limits"),
+        column("word", "judgement"),
+    ]
+
+
+def _ranked(data: StudyData, row: Row) -> list[dict[str, Any]]:
+    """One row of the ranking, as the script writes it too."""
+    outcome = row.outcome
+    assert outcome is not None
+    units = figure_units(data)
+    cells = [str(row.number)]
+    cells += [value_text(axis, row).removesuffix(f" {axis.unit}") if axis.numeric else value_text(axis, row)
+              for axis in data.axes]
+    if data.aim not in units:
+        cells.append(number(row.aim, data.aim_unit))
+    cells += [number(_solid(row, name), unit) for name, unit in units.items()]
+    held = governing(outcome)
+    left = "-" if held is None or held.margin is None else number(100 * held.margin, "")
+    word = "suspicious" if outcome.suspicions else outcome.judgement or "agrees"
+    cells += [left, held.name if held is not None else "-", marked("met") if outcome.limits else "none set",
+              marked(word)]
+    return [{"text": text, "number": column["number"]} for text, column in zip(cells, _head(data), strict=True)]
+
+
+def _nearest(data: StudyData, ranking: Ranking) -> list[dict[str, str]]:
+    if ranking.meeting:
+        return []
+    return [{"number": str(row.number), "values": ", ".join(_value_pairs(data, row)), "aim": aim_text(data, row),
+             "limit": governs_text(row.outcome), "word": marked(row.outcome.judgement)}
+            for row in ranking.misses[:NEAREST] if row.outcome is not None and row.outcome.judgement]
+
+
+def _value_pairs(data: StudyData, row: Row) -> list[str]:
+    return [f"{axis.name} {value_text(axis, row)}" for axis in data.axes]
+
+
+def _values(data: StudyData, row: Row | None) -> list[tuple[str, str]]:
+    return [(axis.name, value_text(axis, row)) for axis in data.axes] if row is not None else []
+
+
+def _figures(row: Row | None) -> list[tuple[str, str, str, str]]:
+    if row is None or row.outcome is None:
+        return []
+    return [(figure_words(name), readable(kept.solid, kept.unit), readable(kept.beam, kept.unit),
+             marked(kept.judgement)) for name, kept in row.outcome.figures.items()]
+
+
+def _inline(pictures: Mapping[str, bytes]) -> list[tuple[str, str]]:
+    return [(caption, f"data:image/png;base64,{base64.b64encode(png).decode()}") for caption, png in pictures.items()]
+
+
+def _safe_json(packed: Mapping[str, Any]) -> str:
+    """JSON that cannot end its own script element, whatever the texts hold."""
+    text = json.dumps(packed, ensure_ascii=False, separators=(",", ":"), allow_nan=False)
+    for sign in "<>&\u2028\u2029":
+        text = text.replace(sign, f"\\u{ord(sign):04x}")
+    return text
+
+
+def _sha(text: str) -> str:
+    return base64.b64encode(hashlib.sha256(text.encode()).digest()).decode()
+
+
+@cache
+def _plotly() -> str:
+    from plotly.offline import get_plotlyjs
+
+    # Line ends as a browser reads them: the hash in the page's policy is over those.
+    return str(get_plotlyjs()).replace("\r\n", "\n").replace("\r", "\n")
+
+
+def _file(name: str) -> str:
+    return files("studies.report.study").joinpath("page", name).read_text(encoding="utf-8")
+
+
+def _environment() -> Any:
+    from jinja2 import Environment, FunctionLoader, StrictUndefined
+
+    environment = Environment(autoescape=True, undefined=StrictUndefined, loader=FunctionLoader(_file),
+                              trim_blocks=True, lstrip_blocks=True)
+    environment.filters |= {"clock": clock, "figure": figure_words, "capital": capital}
+    environment.globals |= {"marked": marked, "marks": MARKS, "counted": counted, "factor": factor_of}
+    return environment

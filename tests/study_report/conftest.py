@@ -1,0 +1,26 @@
+"""Makes `samples` importable by the tests of this folder alone."""
+
+from __future__ import annotations
+
+import importlib.util
+import sys
+from pathlib import Path
+from types import ModuleType
+
+import pytest
+
+
+def _load() -> ModuleType:
+    name = "study_report_samples"
+    if name not in sys.modules:
+        spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name("samples.py"))
+        assert spec is not None and spec.loader is not None
+        sys.modules[name] = module = importlib.util.module_from_spec(spec)
+        spec.loader.exec_module(module)
+    return sys.modules[name]
+
+
+@pytest.fixture(scope="session")
+def samples() -> ModuleType:
+    """The fabricated parts and results of ``samples.py``."""
+    return _load()
