@@ -54,6 +54,8 @@ def told(path: Path) -> Iterator[None]:
         yield
     except sqlite3.Error as error:
         raise in_words(path, error) from error
+    except UnicodeDecodeError as error:  # SQLite's own message names a damaged table
+        raise damaged(path, "a name in it is no text") from error
 
 
 def in_words(path: Path, error: sqlite3.Error) -> RecordError:

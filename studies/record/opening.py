@@ -7,7 +7,7 @@ import sqlite3
 from contextlib import suppress
 from pathlib import Path
 
-from studies.record.errors import RecordError, damaged, in_words, told
+from studies.record.errors import RecordError, damaged, told
 from studies.record.place import is_network, kind_of
 from studies.record.schema import APPLICATION, VERSION, upgrade
 
@@ -56,15 +56,14 @@ def open_reader(path: Path) -> sqlite3.Connection:
     if is_network(kind):
         db = _resting(path, f"it lies on a network drive ({kind})")
     else:
-        try:
-            db = _try(path, "rw")
-            db.execute("PRAGMA query_only = ON")
-        except sqlite3.OperationalError as error:
-            if not _refused(error):
-                raise in_words(path, error) from error
-            db = _unwritable(path)
-        except sqlite3.Error as error:
-            raise in_words(path, error) from error
+        with told(path):
+            try:
+                db = _try(path, "rw")
+                db.execute("PRAGMA query_only = ON")
+            except sqlite3.OperationalError as error:
+                if not _refused(error):
+                    raise
+                db = _unwritable(path)
     try:
         refuse_foreign(db, path)
         return _todays(db, path)

@@ -78,7 +78,7 @@ def _fetched(old: sqlite3.Connection, sql: str, *given: Any) -> list[Row] | None
     """The rows, or None where the file is damaged."""
     try:
         return old.execute(sql, given).fetchall()
-    except (sqlite3.Error, OverflowError):
+    except (sqlite3.Error, OverflowError, UnicodeDecodeError):
         return None
 
 

@@ -61,7 +61,7 @@ def test_changed_bytes_are_refused_or_harmless(tmp_path: Path, study: SimpleName
         except RecordError as error:
             assert "--record" in str(error)
             refused += 1
-    assert 200 < refused < 300  # some bytes are in use by nothing
+    assert 150 < refused < 300  # many bytes are in use by nothing, or were zero before
 
 
 def test_a_damaged_record_is_refused_with_the_way_out(tmp_path: Path, study: SimpleNamespace) -> None:
