@@ -12,10 +12,12 @@ from geometry.spec.resolve.values import shown
 from geometry.spec.text.expression import evaluate, names_in
 from geometry.spec.text.tokens import ExpressionError, nearest
 from geometry.spec.text.units import Quantity
-from studies.vary.plan.kept import KeptFigure, read_figure, usual_figures
+from studies.vary.plan.kept import KeptFigure, is_figure, read_figure, usual_figures
 from studies.vary.plan.reading import Reading, unit_of
 
-_PLACED = re.compile(r"[A-Za-z_][A-Za-z0-9_]*@[A-Za-z0-9_.-]*[A-Za-z0-9_]")
+_PLACED = re.compile(r"[A-Za-z_][A-Za-z0-9_]*@[A-Za-z0-9_.@-]*[A-Za-z0-9_](?: in [A-Za-z_][A-Za-z0-9_-]*)?"
+                     r"|[A-Za-z_][A-Za-z0-9_]* in [A-Za-z_][A-Za-z0-9_-]*")
+"""A figure's name that is no plain word, within arithmetic."""
 
 
 @dataclass(frozen=True)
@@ -84,6 +86,8 @@ def read_aim(reading: Reading, text: str, sense: Literal["least", "most"], scope
         reading.problem(where, shown(text), error.allowed, error.fix)
         return None
     usual = {figure.name: figure for figure in usual_figures(reading.part)}
+    plain = {name for name in names if name not in stand_ins and name not in scope and name not in usual}
+    stand_ins.update((name, name) for name in plain if is_figure(name))
     clash = [name for name in names if name in usual and name in scope]
     if clash:
         reading.problem(where, shown(text), "names that are either figures or dimensions",

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from pathlib import Path
 from typing import Any
 
@@ -19,9 +20,12 @@ from studies.vary.plan.plan import LeftOut, Plan, Run
 from studies.vary.plan.ranges import read_varied
 from studies.vary.plan.reading import Reading
 from studies.vary.plan.sampling import Sampling
+from studies.vary.plan.sampling import points as points_of
+from studies.vary.plan.shop import read_shop
 from studies.vary.plan.stock import BUILT_IN, Stock
+from studies.vary.plan.tolerances import Tolerance, extremes, read_tolerance, spread
 from studies.vary.plan.varied import Varied
-from studies.vary.plan.words import PlanSpec, SamplingSpec
+from studies.vary.plan.words import PlanSpec, VariedSpec
 
 SECONDS_EACH = 2.0
 """What a variant may be reckoned to take on one core."""
@@ -32,10 +36,13 @@ ENOUGH_TRIED = 500
 def build(spec: PlanSpec, folder: Path, name: str, text: str, most: int | None) -> tuple[Plan | None, list[Problem]]:
     """The plan as far as it can be made, and the mistakes. `most`: points that are not too many."""
     reading, part_name, part_text = _read_part(spec, folder)
-    stocks = {**BUILT_IN, **{key: Stock(tuple(sizes), f"the plan {name}") for key, sizes in spec.stock.items()}}
-    varied = _varied(reading, spec, stocks)
-    sampling = _sampling(reading, spec.sampling, varied)
+    varied = _varied(reading, spec)
+    tolerances = _tolerances(reading, spec, varied)
+    sampling = _sampling(reading, spec, varied)
+    if sampling.method == "as made":
+        varied = spread(reading.data, reading.scope, tolerances)
     scope = _scope(reading, varied)
+    shop = read_shop(reading, spec.shop)
     constraints = [read_constraint(reading, key, one, scope) for key, one in spec.constraints.items()]
     keep = _keep(reading, spec)
     aim = _aim(reading, spec, scope)
@@ -47,11 +54,13 @@ def build(spec: PlanSpec, folder: Path, name: str, text: str, most: int | None) 
     plan = Plan(
         title=spec.title or reading.part.title or Path(name).stem, name=name, text=text, part_name=part_name,
         part_text=part_text, part_data=reading.data, part=reading.part, varied=varied, sampling=sampling,
-        constraints=tuple(c for c in constraints if c), aim=aim, keep=keep, run=run, notes=(), key="",
+        constraints=tuple(c for c in constraints if c), shop=shop, tolerances=tolerances,
+        aim=aim, keep=keep, run=run, notes=(), key="",
     )  # fmt: skip
     _check_count(reading, plan, most)
     if not reading.problems:
         _check_any(reading, plan)
+        _tell_twins(reading, plan)
     return _finished(plan, reading, spec), reading.problems
 
 
@@ -97,7 +106,11 @@ def _prefixed(name: str, problem: Problem) -> Problem:
     return Problem(path, problem.given, problem.allowed, problem.fix)
 
 
-def _varied(reading: Reading, spec: PlanSpec, stocks: dict[str, Stock]) -> dict[str, Varied]:
+def _varied(reading: Reading, spec: PlanSpec) -> dict[str, Varied]:
+    stocks = {**BUILT_IN, **{key: Stock(tuple(sizes), "") for key, sizes in spec.stock.items()}}
+    used = dict.fromkeys(one.stock for one in spec.vary.values() if isinstance(one, VariedSpec) and one.stock)
+    reading.notes += [f"stock list {name}: {stocks[name].source}"
+                      for name in used if name in stocks and stocks[name].source]  # fmt: skip
     if not spec.vary and spec.sampling.method != "as made":
         reading.problem("vary", "nothing", "at least one parameter or path", 'root_depth = ["48 mm", "60 mm"]')
     found: dict[str, Varied] = {}
@@ -117,7 +130,24 @@ def _overlap(a: tuple[str | int, ...], b: tuple[str | int, ...]) -> bool:
     return a[: len(b)] == b[: len(a)]
 
 
-def _sampling(reading: Reading, spec: SamplingSpec, varied: dict[str, Varied]) -> Sampling:
+def _tolerances(reading: Reading, spec: PlanSpec, varied: dict[str, Varied]) -> tuple[Tolerance, ...]:
+    found = [read_tolerance(reading, name, one, varied) for name, one in spec.tolerances.items()]
+    tolerances = tuple(one for one in found if one)
+    if spec.sampling.method == "as made":
+        if not spec.tolerances:
+            reading.problem("tolerances", "nothing", "the tolerances within which parts are made")
+        if spec.vary:
+            reading.problem("vary", ", ".join(spec.vary), "nothing, for as made: one part is made many times",
+                            "Put the dimensions as drawn under [base]")  # fmt: skip
+    elif tolerances:
+        idle = extremes(reading.data, reading.scope, tolerances).idle
+        reading.notes += [f"tolerances.{name}: it changes no material, so it stays as drawn; as made would vary it"
+                          for name in idle]  # fmt: skip
+    return tolerances
+
+
+def _sampling(reading: Reading, plan: PlanSpec, varied: dict[str, Varied]) -> Sampling:
+    spec = plan.sampling
     listed = spec.method in ("grid", "one at a time")
     if listed and spec.points is not None:
         reading.problem("sampling.points", str(spec.points), f"nothing, for {spec.method}",
@@ -135,6 +165,10 @@ def _sampling(reading: Reading, spec: SamplingSpec, varied: dict[str, Varied]) -
         if spec.method == "one at a time" and one.base is None:
             reading.problem(f"vary.{one.name}", "a field that the part leaves out", "a value to start from",
                             "Give it in the part, or under [base]")  # fmt: skip
+    if spec.method == "sobol" and spec.points and spec.points & (spec.points - 1):
+        less = 1 << (spec.points.bit_length() - 1)
+        reading.notes.append(f"sampling.points: a Sobol sequence is most even with a power of two: {less} or "
+                             f"{2 * less}, rather than {spec.points}")  # fmt: skip
     return Sampling(spec.method, spec.points, spec.seed)
 
 
@@ -217,6 +251,16 @@ def _check_any(reading: Reading, plan: Plan) -> None:
     for rule, (count, first) in sorted(reasons.items(), key=lambda item: -item[1][0]):
         reading.problem(rule, f"a plan in which it leaves out {count} of all {tried} points",
                         "a plan that leaves at least one variant", f"The first: {first}")  # fmt: skip
+
+
+def _tell_twins(reading: Reading, plan: Plan) -> None:
+    """Tell how many sampled points are the same as an earlier one."""
+    if plan.sampling.method in ("grid", "one at a time") or not all(one.values for one in plan.varied.values()):
+        return
+    different = len({json.dumps(list(point.values())) for point in points_of(plan.varied, plan.sampling)})
+    if different < plan.count():
+        reading.notes.append(f"sampling: {plan.count() - different} of the {plan.count()} points fall on values that "
+                             "an earlier one has; they are in the table, and computed once")  # fmt: skip
 
 
 def _finished(plan: Plan, reading: Reading, spec: PlanSpec) -> Plan:

@@ -23,6 +23,8 @@ from studies.vary.plan.kept import Keep
 from studies.vary.plan.key import keys_of
 from studies.vary.plan.place import with_value
 from studies.vary.plan.sampling import Point, Sampling
+from studies.vary.plan.shop import Shop
+from studies.vary.plan.tolerances import Tolerance, extremes
 from studies.vary.plan.varied import Varied
 from studies.vary.variant import Variant
 
@@ -84,6 +86,8 @@ class Plan:
     varied: Mapping[str, Varied]
     sampling: Sampling
     constraints: tuple[Constraint, ...]
+    shop: Shop
+    tolerances: tuple[Tolerance, ...]
     aim: Aim
     keep: Keep
     run: Run
@@ -145,10 +149,22 @@ class Plan:
             return LeftOut(number, point, *broken)
         try:
             part = resolved(data)
+            if broken := self.shop.broken(part):
+                return LeftOut(number, point, *broken)
+            data, part, most, fullest = self._toleranced(data, part)
         except SpecError as error:
             return LeftOut(number, point, error.problems[0].path, str(error.problems[0]))
         numbers = {name: quantity.value for name, quantity in quantities.items()}
-        return Variant(number, point, numbers, data, *keys_of(part, None, self.keep.extra))
+        return Variant(number, point, numbers, data, *keys_of(part, fullest, self.keep.extra), most)
+
+    def _toleranced(
+        self, data: Mapping[str, Any], part: Part
+    ) -> tuple[Mapping[str, Any], Part, Mapping[str, Any] | None, Part | None]:
+        """Tables and part at least material, and both at most material, where there are tolerances."""
+        if not self.tolerances or self.sampling.method == "as made":
+            return data, part, None, None
+        sides = extremes(data, Values(data.get("parameters", {})).scope, self.tolerances)
+        return sides.least, resolved(sides.least), sides.most, resolved(sides.most)
 
     def _broken_constraint(self, data: Mapping[str, Any], quantities: Mapping[str, Quantity]) -> tuple[str, str] | None:
         """Rule and reason of the first constraint that does not hold, or None."""

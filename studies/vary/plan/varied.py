@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 import re
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -47,6 +47,8 @@ class Varied:
         Only its `values` may be taken; otherwise any number from `low` to `high`, of which `values` are the steps.
     whole
         It is a count: values are whole numbers.
+    deviation
+        Of a dimension as made: the place within its tolerance, 0 to 1, below which a share of the parts lies.
     """
 
     name: str
@@ -62,6 +64,7 @@ class Varied:
     base_number: float | None
     listed: bool
     whole: bool = False
+    deviation: Callable[[float], float] | None = None
 
     @property
     def numeric(self) -> bool:
@@ -120,6 +123,7 @@ class Varied:
         if self.values:
             return self.values[min(int(share * len(self.values)), len(self.values) - 1)]
         assert self.low is not None and self.high is not None
+        share = self.deviation(share) if self.deviation else share
         size = UNITS[self.written_in].value if self.written_in else 1.0
         low, high = self.low / size, self.high / size
         digits = 5 - math.floor(math.log10(high - low))
