@@ -15,6 +15,7 @@ import numpy as np
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.kernels.elastic import CARRIERS
 from fem.solid.kernels.nodal import add_geometric
+from fem.solid.scalar_matrix import ScalarMatrix
 from fem.solid.shape import TET_EDGES, Array, tet_quadrature
 from fem.solid.stiffness import STRAIGHT_ORDER, ElementGroup, mesh_arrays, point_slopes
 
@@ -35,7 +36,7 @@ def _straight_factors() -> Array:
     return np.ascontiguousarray(np.einsum("q,sq,acq,bdq->sabcd", 6 * w, stress, c, c, optimize=True))
 
 
-def geometric_stiffness(groups: list[ElementGroup], stress: Sequence[Array], like: BlockMatrix) -> BlockMatrix:
+def geometric_stiffness(groups: list[ElementGroup], stress: Sequence[Array], like: BlockMatrix) -> ScalarMatrix:
     """Geometric stiffness (3 n, 3 n), N/mm.
 
     Parameters
@@ -46,10 +47,10 @@ def geometric_stiffness(groups: list[ElementGroup], stress: Sequence[Array], lik
     like
         Stiffness of the same mesh, whose pattern and number of threads are taken over.
     """
-    blocks = np.zeros_like(like.blocks)
+    values = np.zeros(like.indices.size)
     points, tets = mesh_arrays(groups[0].nodes, groups[0].tets)
     for group, s in zip(groups, stress, strict=True):
         rule = (point_slopes(group.points), group.rule) if group.curved else _straight_factors()
         pattern = like.indptr, like.indices
-        add_geometric(blocks, points, tets, group.elements.astype(np.int32), rule, s, pattern, like.threads)
-    return BlockMatrix(like.indptr, like.indices, blocks, like.threads)
+        add_geometric(values, points, tets, group.elements.astype(np.int32), rule, s, pattern, like.threads)
+    return ScalarMatrix(like.indptr, like.indices, values, like.threads)

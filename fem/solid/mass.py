@@ -9,6 +9,7 @@ from fem.solid.block_matrix import BlockMatrix
 from fem.solid.kernels.jacobian import shape_integrals
 from fem.solid.kernels.linear import add_straight_integrals
 from fem.solid.kernels.nodal import add_masses
+from fem.solid.scalar_matrix import ScalarMatrix
 from fem.solid.shape import Array, tet_quadrature, tet_values
 from fem.solid.stiffness import ElementGroup, KernelMesh, curved_elements, mesh_arrays, point_slopes
 
@@ -17,13 +18,13 @@ MASS_ORDER = 6
 _EXACT_ORDER = 4
 
 
-def mass_matrix(groups: list[ElementGroup], density: float, like: BlockMatrix) -> BlockMatrix:
+def mass_matrix(groups: list[ElementGroup], density: float, like: BlockMatrix) -> ScalarMatrix:
     """Consistent mass (3 n, 3 n), t, of a density in t/mm^3; exact for straight elements.
 
-    `like` is the stiffness of the same mesh, whose pattern and number of threads are taken over: the blocks of the two
-    matrices stand at the same places. Every block is a number times the identity.
+    `like` is the stiffness of the same mesh, whose pattern and number of threads are taken over: the numbers of the one
+    and the blocks of the other stand at the same places.
     """
-    blocks = np.zeros_like(like.blocks)
+    values = np.zeros(like.indices.size)
     points, tets = mesh_arrays(groups[0].nodes, groups[0].tets)
     for group in groups:
         L, w = tet_quadrature(MASS_ORDER if group.curved else _EXACT_ORDER)
@@ -33,8 +34,8 @@ def mass_matrix(groups: list[ElementGroup], density: float, like: BlockMatrix) -
             products, slopes, w = np.tensordot(w, products, axes=1)[None], slopes[:1], np.ones(1)
         rule = np.ascontiguousarray(density * products), slopes, w
         pattern = like.indptr, like.indices
-        add_masses(blocks, points, tets, group.elements.astype(np.int32), rule, pattern, like.threads)
-    return BlockMatrix(like.indptr, like.indices, blocks, like.threads)
+        add_masses(values, points, tets, group.elements.astype(np.int32), rule, pattern, like.threads)
+    return ScalarMatrix(like.indptr, like.indices, values, like.threads)
 
 
 def node_integrals(groups: list[ElementGroup], threads: int = 1, shared: KernelMesh | None = None) -> Array:

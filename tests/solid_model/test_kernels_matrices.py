@@ -104,7 +104,7 @@ def test_tension_stiffens_and_leaves_translation_free() -> None:
     w = np.zeros((n, 3))
     w[:, 2] = mesh.nodes[0] / 40.0  # turned by 1/40: the work is N L times half the square of the slope
     assert w.ravel() @ (G @ w.ravel()) == pytest.approx(100.0 * mesh.volume / 40.0**2, rel=1e-12)
-    assert np.abs(G @ np.ones(3 * n)).max() < 1e-12 * np.abs(G.blocks).max()
+    assert np.abs(G @ np.ones(3 * n)).max() < 1e-12 * np.abs(G.values).max()
 
 
 @KINDS
@@ -138,7 +138,7 @@ def test_any_number_of_threads_gives_the_same_bits(kind: str) -> None:
         K = stiffness_matrix(mesh.nodes, mesh.tets, groups, E, NU, threads)
         s = group_stresses(groups, smooth_field(mesh)[None], E, NU, np.zeros(1), threads)
         G = geometric_stiffness(groups, [each[0] for each in s], K)
-        return [K.indptr, K.indices, K.blocks, mass_matrix(groups, 1.0, K).blocks, G.blocks]
+        return [K.indptr, K.indices, K.blocks, mass_matrix(groups, 1.0, K).values, G.values]
 
     one = everything(1)
     for threads in (2, 3):

@@ -21,7 +21,9 @@ from fem.solid.eigen.describe import buckling_kind, section_shapes, section_shar
 from fem.solid.eigen.eigenmodes import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes, NotSettled
 from fem.solid.eigen.motions import Motions, Operator, held_motions
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, lost, second_search, space_room
-from fem.solid.eigen.start import start_unknowns
+from fem.solid.eigen.sounding import COLUMNS, LEAST_OF_INVERSE, sound, told
+from fem.solid.eigen.space import by_turns
+from fem.solid.eigen.start import held_fields
 from fem.solid.eigen.stress_stiffness import StressStiffness, stress_stiffnesses
 from fem.solid.factor import TooLarge
 from fem.solid.mass import mass_matrix
@@ -70,8 +72,7 @@ def solid_buckling(
         pairs = found.solve()
         checks += found.checks
         if pairs.mu.size:
-            field = motions.elimination.expand(pairs.x)
-            more, shape = describe.modes(field, pairs, study.case)
+            more, shape = describe.modes(pairs, study.case)
             modes += more
             shapes.append(shape)
     n = model.mesh.nodes.shape[1]
@@ -101,36 +102,33 @@ class _Study:
         self.study, self.budget = study, budget
         self.largest = varying.largest if varying else 0.0
         self.allowed = RESIDUAL_ALLOWED[motions.direct]
+        self.left = 1.0  # least part of the stiffness that the fixed loads leave
         self.checks: list[Check] = []
 
     def _check(self, what: str, value: float, allowed: float, note: str) -> None:
         self.checks.append(Check(f"buckling of {self.study.case}: {what}", value, allowed, value <= allowed, note))
 
-    def _reduced(self, matrix: StressStiffness) -> Operator:
-        eliminate = self.motions.elimination
-        return lambda y: eliminate.gather(matrix @ eliminate.expand(y))
-
     def _stiffness(self) -> Operator:
         if self.fixed is None:
             return self.motions.stiffness
-        K, G = self.motions.stiffness, self._reduced(self.fixed)
-        return lambda y: K(y) + G(y)
+        K, G = self.motions.stiffness, self.fixed
+        return lambda u: K(u) + G @ u
 
     def _start(self, B: Operator, count: int, seed: int) -> Array:
-        fields = start_unknowns(self.motions.elimination, self.model.mesh.nodes, count, seed)
-        first = self.motions.precondition(B(fields))
+        fields = held_fields(self.motions.elimination, self.model.mesh.nodes, count, seed)
+        first = by_turns(lambda u: self.motions.precondition(B(u)), fields)
         return first if np.abs(first).max() > 0 else fields
 
     def solve(self) -> Pairs:
         """The pairs, the least factor first; none when nothing buckles."""
-        none = Pairs(np.zeros(0), np.zeros((self.motions.free, 0)), np.zeros(0), 0)
+        none = Pairs(np.zeros(0), np.zeros((self.model.K.shape[0], 0)), np.zeros(0), 0)
         if self.fixed is not None and not self._fixed_loads_hold(self.fixed):
             return none
         if self.varying is None:
             self._check("stress of the loads that grow", 0.0, 0.0, "there is none, so there is no factor")
             return none
-        B = self._reduced(self.varying)
-        pencil = Pencil(self._stiffness(), B, self.motions.precondition)
+        B = self.varying.__matmul__
+        pencil = Pencil(self._stiffness(), B, self.motions.precondition, self.motions.threads)
         pairs = self._least(pencil, B)
         sensible = np.abs(pairs.mu) > 1.0 / self.largest
         pairs = Pairs(pairs.mu[sensible], pairs.x[:, sensible], pairs.residual[sensible], pairs.rounds)
@@ -147,11 +145,12 @@ class _Study:
 
     def _fixed_loads_hold(self, fixed: StressStiffness) -> bool:
         """Whether K + G_fixed is positive definite: the least positive factor of the fixed loads is above one."""
-        B = self._reduced(fixed)
-        pencil = Pencil(self.motions.stiffness, B, self.motions.precondition)
+        B = fixed.__matmul__
+        pencil = Pencil(self.motions.stiffness, B, self.motions.precondition, self.motions.threads)
         start = self._start(B, 6, self.budget.seed)
         found = extreme_pairs(pencil, start, np.array([GUARD_ALLOWED]), choose=_of_sign(-1.0))
         factor = -1.0 / found.mu[0] if found.mu[0] < 0 else np.inf
+        self.left = 1.0 - 1.0 / factor
         note = "the fixed loads alone buckle the part" if factor <= 1.0 else ""
         self._check("fixed loads over those that buckle the part alone", float(1.0 / factor), 1.0, note)
         return bool(factor > 1.0)
@@ -159,7 +158,7 @@ class _Study:
     def _least(self, pencil: Pencil, B: Operator) -> Pairs:
         """The factors of least size, counted."""
         modes, guards = min(self.study.modes, self.motions.free - self.motions.rows.shape[0]), GUARDS
-        start, reason = np.zeros((self.motions.free, 0)), too_large(self.motions)
+        start, reason = np.zeros((self.model.K.shape[0], 0)), too_large(self.motions)
         room = space_room(self.motions.free, self.budget)
         for attempt in range(3):
             fresh = self._start(B, modes + guards + 4, self.budget.seed + attempt)
@@ -178,7 +177,10 @@ class _Study:
                     counts = [self._missing(found, modes, sign, attempt == 2) for sign in (1.0, -1.0)]
             except TooLarge as error:
                 reason = f"not counted: {error}"
-            if reason:
+            sounded = self._sounded(pencil, found, modes, attempt, reason) if reason else None
+            if sounded is not None:
+                counts = [sounded]
+            elif reason:
                 fresh = self._start(B, 2 * GUARDS, self.budget.seed + 100 + attempt)
                 again = second_search(pencil, found, tolerance, fresh, room)
                 missed = lost(found, again, modes)
@@ -186,7 +188,7 @@ class _Study:
                 counts = [(missed, f"{reason}; a second search from other vectors found {word} that was missed")]
             if all(c is not None and c[0] <= 0 for c in counts):
                 break
-            guards, start = guards + 4, (again if reason else found).x
+            guards, start = guards + 4, (again if reason and sounded is None else found).x
         known = [c for c in counts if c is not None]
         missing = sum(abs(c[0]) for c in known)
         note = "; ".join(c[1] for c in known if c[1])
@@ -198,25 +200,29 @@ class _Study:
             )
         return Pairs(found.mu[:modes], found.x[:, :modes], found.residual[:modes], found.rounds)
 
-    def _missing(self, found: Pairs, modes: int, sign: float, last: bool) -> tuple[int, str] | None:
-        """How many factors of one sign are missing among those reported, and what was counted; None: not to be told
-        because the next one is not known to stand apart."""
+    def _place(self, found: Pairs, modes: int, sign: float) -> tuple[int, tuple[int, float] | None]:
+        """How many factors of one sign are among those reported, and where to count them (see `separated`)."""
         factors = -1.0 / np.where(found.mu != 0, found.mu, np.nan)
         mine = np.flatnonzero((factors * sign > 0) & (np.abs(factors) < self.largest))
         reported = int((mine < modes).sum())
         if not reported:
-            return 0, ""
+            return 0, None
         values = np.abs(factors[mine])
         # the next one of this sign is at least as far as the last one found of any
         farthest = float(np.abs(factors[-1]))
         if farthest > values[-1]:
             values = np.r_[values, farthest]
-        split = separated(values, reported)
+        return reported, separated(values, reported) or (reported, -float(values[reported - 1]))
+
+    def _missing(self, found: Pairs, modes: int, sign: float, last: bool) -> tuple[int, str] | None:
+        """How many factors of one sign are missing among those reported, and what was counted; None: not to be told
+        because the next one is not known to stand apart."""
+        _, split = self._place(found, modes, sign)
         if split is None:
-            if not last:
-                return None
-            split = reported, float(values[reported - 1])
-        above, shift = split
+            return 0, ""
+        if split[1] < 0 and not last:
+            return None
+        above, shift = split[0], abs(split[1])
         try:
             count = self._count(sign * shift)
         except TooLarge:
@@ -225,14 +231,35 @@ class _Study:
             return 0, f"not counted: {error}"
         return count - above, f"{count} between 0 and {sign * shift:.5g} by the inertia of K + G"
 
+    def _sounded(self, pencil: Pencil, found: Pairs, modes: int, attempt: int, reason: str) -> tuple[int, str] | None:
+        """The same by random vectors, of both signs; None where they do not decide."""
+        assert self.varying is not None
+        missing, notes = 0, []
+        for sign in (1.0, -1.0):
+            _, split = self._place(found, modes, sign)
+            if split is None or found.space is None:
+                continue
+            if split[1] < 0:
+                return None
+            above, shift = split
+            rough = self.varying.rough(COLUMNS, self.budget.seed + attempt)
+            least = LEAST_OF_INVERSE[self.motions.direct] * self.left
+            sounding = sound(pencil, found.space, sign * shift, rough, least)
+            if not (sounding.clear or sounding.found):
+                return None
+            missing += sounding.known - above + int(sounding.found)
+            notes.append(told(sounding, f"{above} between 0 and {sign * shift:.5g}"))
+        return missing, "; ".join([reason, *notes])
+
     def _count(self, shift: float) -> int:
         """Negative directions of K + G_fixed + shift G_varying."""
         assert self.varying is not None
         K, eliminate = self.model.K, self.motions.elimination
-        blocks = K.blocks + shift * self.varying.part.blocks
+        blocks = K.blocks.copy()
+        self.varying.part.add_to(blocks, shift)
         weights, levers = [shift * self.varying.weights], [self.varying.levers]
         if self.fixed is not None:
-            blocks += self.fixed.part.blocks
+            self.fixed.part.add_to(blocks, 1.0)
             weights.append(self.fixed.weights)
             levers.append(self.fixed.levers)
         matrix = eliminate.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
@@ -276,13 +303,13 @@ class _Describer:
         self.model, self.cutter = model, cutter
         self.made: tuple = ()  # type: ignore[type-arg]
 
-    def modes(self, field: Array, pairs: Pairs, case: str) -> tuple[Sequence[Mode], Array]:
-        """Modes and shapes (k, 3, n) of fields (3 n, k)."""
+    def modes(self, pairs: Pairs, case: str) -> tuple[Sequence[Mode], Array]:
+        """Modes and shapes (k, 3, n)."""
         if not self.made:
             self.made = shape_sections(self.model, self.cutter), mass_matrix(self.model.groups, 1.0, self.model.K)
         sections, volume = self.made
         n, count = self.model.mesh.nodes.shape[1], pairs.mu.size
-        shapes = field.reshape(n, 3, count).transpose(2, 1, 0)
+        shapes = pairs.x.reshape(n, 3, count).transpose(2, 1, 0)
         shapes = np.ascontiguousarray(shapes / np.linalg.norm(shapes, axis=1).max(axis=1)[:, None, None])
         mean, turn = section_shapes(sections, self.model, shapes)
         explained = section_shares(sections, self.model, volume, shapes, mean, turn)

@@ -13,11 +13,6 @@ from fem.solid.factor import SymmetricFactor, TooLarge
 from fem.solid.shape import Array
 from geometry.budget import Budget
 
-COUNT_LIMIT = 150_000
-"""Unknowns up to which modes are counted where the solver is iterative: beyond, the factor would take several times
-as long as everything else."""
-
-
 APART = 2e-3
 """Least relative gap behind which eigenvalues are counted."""
 
@@ -115,6 +110,6 @@ def separated(values: Array, wanted: int) -> tuple[int, float] | None:
 
 def too_large(motions: Motions) -> str:
     """Why the modes are not counted; empty when they are."""
-    if motions.direct or motions.free <= COUNT_LIMIT:
+    if motions.direct:
         return ""
-    return f"not counted: {motions.free} unknowns are too many for a factor beside the {motions.solver} solver"
+    return f"not counted by a factor, which would take several times as long as the {motions.solver} solver's search"

@@ -7,11 +7,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from fem.mode import SHAPE_STATIONS
-from fem.solid.block_matrix import BlockMatrix
 from fem.solid.cut import Cut, Cutter, section_means
 from fem.solid.frame import Frame, member_frame
 from fem.solid.model import SolidModel
 from fem.solid.region import inertia
+from fem.solid.scalar_matrix import ScalarMatrix
 from fem.solid.sections import member_elements
 from fem.solid.shape import Array
 from geometry.problem import SolveError
@@ -83,7 +83,7 @@ def rigid_section_field(sections: ShapeSections, model: SolidModel, mean: Array,
 
 
 def section_shares(
-    sections: ShapeSections, model: SolidModel, mass: BlockMatrix, u: Array, mean: Array, turn: Array
+    sections: ShapeSections, model: SolidModel, mass: ScalarMatrix, u: Array, mean: Array, turn: Array
 ) -> Array:
     """(modes,) mass-weighted share of the shapes' square that rigid sections explain."""
     k, _, n = u.shape

@@ -9,7 +9,7 @@ from itertools import combinations
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.solid.block_matrix import BlockMatrix
+from fem.solid.kernels.tall import combine, gram
 from fem.solid.model import SolidModel
 from fem.solid.shape import Array
 from fem.solid.solver import Choice
@@ -21,12 +21,15 @@ from geometry.budget import Budget
 
 NO_SPRINGS = np.zeros(0, dtype=np.int64)
 Operator = Callable[[Array], Array]
-"""(f, k) of (f, k)."""
+"""(3 n, k) of (3 n, k)."""
 
 
 @dataclass(frozen=True, slots=True)
 class Motions:
     """u = T y, (3 n, f), with C y = 0.
+
+    Eigenvectors are sought among the u themselves: of forces (3 n,) only the work on such motions counts, so that what
+    the supports take needs no removing.
 
     Attributes
     ----------
@@ -35,8 +38,10 @@ class Motions:
     rows
         (r, f) C, dense: the rows of mean values that are held.
     stiffness, precondition
-        T^T K T y, and a symmetric positive definite approximation of its inverse on the motions with C y = 0 (and,
-        of a free part, with no rigid motion).
+        K u, and a symmetric positive semidefinite approximation of its inverse on the motions u = T y with C y = 0
+        (and, of a free part, with no rigid motion), which are what it gives.
+    threads
+        For products of tall arrays.
     solver
         Name of the solver behind it; `direct`: its approximation is the inverse. `close` gives memory back that was
         taken for these motions alone.
@@ -51,6 +56,7 @@ class Motions:
     solver: str
     close: Callable[[], None]
     springs: NDArray[np.int64]
+    threads: int = 1
 
     @property
     def free(self) -> int:
@@ -59,10 +65,6 @@ class Motions:
     @property
     def direct(self) -> bool:
         return is_direct(self.solver)
-
-    def reduced(self, matrix: BlockMatrix) -> Operator:
-        """y -> T^T matrix T y."""
-        return lambda y: self.elimination.gather(matrix @ self.elimination.expand(y))
 
 
 def is_direct(solver: str) -> bool:
@@ -74,9 +76,14 @@ def held_motions(system: HeldSystem, nodes: Array) -> Motions:
     """What the supports leave."""
     rows = system.mean_rows.toarray()
     springs = spring_unknowns(nodes, system.T) if rows.shape[0] else NO_SPRINGS
+    K, eliminate = system.K, system.elimination
+
+    def precondition(r: Array) -> Array:
+        return eliminate.expand(system.precondition(eliminate.gather(r)))
+
     return Motions(
-        system.elimination, rows, system.apply, system.precondition, system.solver.name, lambda: None, springs
-    )
+        eliminate, rows, K.__matmul__, precondition, system.solver.name, lambda: None, springs, K.threads
+    )  # fmt: skip
 
 
 def free_part_constraints(model: SolidModel) -> Constraints:
@@ -128,24 +135,23 @@ def free_motions(
     constraints, elimination
         Of the part without its supports.
     mass
-        y -> M y.
+        u -> M u.
     R
-        (f, 6) rigid motions with R^T M R = 1: every vector is kept M-orthogonal to them.
+        (3 n, 6) rigid motions with R^T M R = 1: every vector is kept M-orthogonal to them.
     choice, backend
         Of the solver, as for `HeldSystem`.
     """
-    pinned, kept = held_at_points(model.mesh.nodes, constraints)
+    pinned, _ = held_at_points(model.mesh.nodes, constraints)
     system = HeldSystem(model.K, pinned, model.mesh, budget, choice, backend)
-    heavy = mass(R)
+    heavy, threads = mass(R), model.K.threads
+    held = held_motions(system, model.mesh.nodes)
 
     def precondition(r: Array) -> Array:
-        balanced = r - heavy @ (R.T @ r)
-        y = np.zeros_like(r)
-        y[kept] = system.precondition(balanced[kept])
-        return np.asarray(y - R @ (heavy.T @ y))
-
-    def stiffness(y: Array) -> Array:
-        return elimination.gather(model.K @ elimination.expand(y))
+        balanced = combine(heavy, 6, -gram(R, 6, r, threads), r.copy(), threads, 1.0)
+        y = held.precondition(balanced)
+        return combine(R, 6, -gram(heavy, 6, y, threads), y, threads, 1.0)
 
     rows = np.zeros((0, elimination.T.shape[1]))
-    return Motions(elimination, rows, stiffness, precondition, system.solver.name, system.close, NO_SPRINGS)
+    return Motions(
+        elimination, rows, model.K.__matmul__, precondition, system.solver.name, system.close, NO_SPRINGS, threads
+    )

@@ -33,7 +33,7 @@ def start_fields(nodes: Array, count: int, seed: int) -> Array:
     return out.reshape(-1, count)
 
 
-def start_unknowns(elimination: Elimination, nodes: Array, count: int, seed: int) -> Array:
-    """(f, count) the fields on the unknowns of u = T y."""
+def held_fields(elimination: Elimination, nodes: Array, count: int, seed: int) -> Array:
+    """(3 n, count) the fields as motions u = T y."""
     size = np.asarray(elimination.T.power(2).sum(axis=0)).ravel()
-    return np.asarray(elimination.gather(start_fields(nodes, count, seed)) / size[:, None])
+    return elimination.expand(elimination.gather(start_fields(nodes, count, seed)) / size[:, None])

@@ -7,11 +7,11 @@ from dataclasses import dataclass
 import numpy as np
 import scipy.sparse as sp
 
-from fem.solid.block_matrix import BlockMatrix
 from fem.solid.eigen.remote import form_rows, lever_form, rigid_form, turn_rows
 from fem.solid.geometric import geometric_stiffness
 from fem.solid.model import SolidModel, thermal_vector
 from fem.solid.region import surface_region
+from fem.solid.scalar_matrix import ScalarMatrix
 from fem.solid.shape import Array
 from fem.solid.stiffness import group_stresses
 from fem.solid.support import rigid_regions
@@ -29,13 +29,25 @@ class StressStiffness:
     """Geometric stiffness of the part, and weights and rows (r, 3 n) of the levers of remote forces and rigid regions;
     `largest` is the factor beyond which nothing is looked for."""
 
-    part: BlockMatrix
+    part: ScalarMatrix
     weights: Array
     levers: sp.csr_matrix
     largest: float
 
     def __matmul__(self, u: Array) -> Array:
-        return np.asarray(self.part @ u + self.levers.T @ (self.weights[:, None] * (self.levers @ u)))
+        out = self.part @ u
+        if self.weights.size:
+            out += self.levers.T @ (self.weights[:, None] * (self.levers @ u))
+        return out
+
+    def rough(self, count: int, seed: int) -> Array:
+        """(3 n, count) random vectors whose covariance is at least this matrix, and at least what it is less than."""
+        rng, n = np.random.default_rng(seed), self.part.shape[0] // 3
+        out = np.sqrt(np.repeat(self.part.sizes(), 3))[:, None] * rng.standard_normal((3 * n, count))
+        if self.weights.size:
+            size = np.sqrt(np.abs(self.weights))[:, None]
+            out += self.levers.T @ (size * rng.standard_normal((self.weights.size, count)))
+        return out
 
 
 def stress_stiffnesses(

@@ -13,15 +13,18 @@ from fem.solid.cut import Cutter
 from fem.solid.eigen.count import APART, LowRank, negative_count, separated, too_large
 from fem.solid.eigen.describe import section_shapes, section_shares, shape_sections, vibration_kind
 from fem.solid.eigen.eigenmodes import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes, NotSettled
-from fem.solid.eigen.motions import Motions, Operator, free_motions, free_part_constraints, held_motions
+from fem.solid.eigen.motions import Motions, free_motions, free_part_constraints, held_motions
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, lost, second_search, space_room
 from fem.solid.eigen.remote import remote_mass_rows
 from fem.solid.eigen.rigid import orthonormal, rigid_motions
-from fem.solid.eigen.start import start_unknowns
+from fem.solid.eigen.sounding import COLUMNS, LEAST_OF_INVERSE, sound, told
+from fem.solid.eigen.space import by_turns
+from fem.solid.eigen.start import start_fields
 from fem.solid.factor import TooLarge
 from fem.solid.mass import mass_matrix
 from fem.solid.model import SolidModel
 from fem.solid.result import Check
+from fem.solid.scalar_matrix import ScalarMatrix
 from fem.solid.shape import Array
 from fem.solid.solver import Choice
 from fem.solid.solver.elimination import Elimination
@@ -38,11 +41,22 @@ RIGID_ALLOWED = 1e-9
 class _Mass:
     """Consistent mass of the part and rows B (r, 3 n) of the remote masses, M + B^T B, t."""
 
-    part: BlockMatrix
+    part: ScalarMatrix
     remote: sp.csr_matrix
 
     def __matmul__(self, u: Array) -> Array:
-        return np.asarray(self.part @ u + self.remote.T @ (self.remote @ u))
+        out = self.part @ u
+        if self.remote.shape[0]:
+            out += self.remote.T @ (self.remote @ u)
+        return out
+
+    def rough(self, count: int, seed: int) -> Array:
+        """(3 n, count) random vectors whose covariance is at least this matrix."""
+        rng, n = np.random.default_rng(seed), self.part.shape[0] // 3
+        out = np.sqrt(np.repeat(self.part.sizes(), 3))[:, None] * rng.standard_normal((3 * n, count))
+        if self.remote.shape[0]:
+            out += self.remote.T @ rng.standard_normal((self.remote.shape[0], count))
+        return out
 
 
 def solid_vibration(
@@ -80,53 +94,48 @@ def solid_vibration(
         elimination = Elimination(constraints.T)
         R, cost = _rigid_unknowns(model, elimination, mass)
         checks.append(Check("free part: energy of its rigid motions", cost, RIGID_ALLOWED, cost <= RIGID_ALLOWED))
-        apply = _reduced_mass(elimination, mass)
-        motions = free_motions(model, constraints, elimination, apply, R, budget, choice, backend)
+        motions = free_motions(model, constraints, elimination, mass.__matmul__, R, budget, choice, backend)
     elif system is None:
         raise SolveError("Natural frequencies of a held part need its held system.")
     else:
         motions = held_motions(system, model.mesh.nodes)
-        apply = _reduced_mass(motions.elimination, mass)
     try:
-        pairs, counted = _solve(model, motions, apply, mass, wanted.modes, 6 if wanted.free else 0, budget)
+        pairs, counted = _solve(model, motions, mass, wanted.modes, 6 if wanted.free else 0, budget)
     finally:
         motions.close()
     checks.append(counted)
     return _modes(model, motions, mass, pairs, checks, cutter)
 
 
-def _reduced_mass(elimination: Elimination, mass: _Mass) -> Operator:
-    return lambda y: elimination.gather(mass @ elimination.expand(y))
-
-
 def _rigid_unknowns(model: SolidModel, elimination: Elimination, mass: _Mass) -> tuple[Array, float]:
-    """(f, 6) rigid motions of a free part, orthonormal in the mass, and the largest relative energy of one."""
+    """(3 n, 6) rigid motions of a free part, orthonormal in the mass, and the largest relative energy of one."""
     R = rigid_motions(model.mesh.nodes, model.centre_of_mass)
     size = np.asarray(elimination.T.power(2).sum(axis=0)).ravel()
     Y = elimination.gather(R) / size[:, None]
-    gap = np.abs(elimination.expand(Y) - R).max(axis=0) / np.abs(R).max(axis=0)
+    held = elimination.expand(Y)
+    gap = np.abs(held - R).max(axis=0) / np.abs(R).max(axis=0)
     if gap.max() > 1e-8:
         raise SolveError("The free part's unknowns do not hold its rigid motions.")
     energy = np.einsum("ik,ik->k", R, model.K @ R)
     terms = np.einsum("ik,i->k", R**2, model.K.diagonal())
-    return orthonormal(Y, elimination.gather(mass @ R)), float((np.abs(energy) / terms).max())
+    return orthonormal(held, mass @ held), float((np.abs(energy) / terms).max())
 
 
 def _solve(
-    model: SolidModel, motions: Motions, apply: Operator, mass: _Mass, modes: int, below: int, budget: Budget
+    model: SolidModel, motions: Motions, mass: _Mass, modes: int, below: int, budget: Budget
 ) -> tuple[Pairs, Check]:
     """The lowest `modes` pairs, counted; `below`: rigid motions that the count finds as well."""
     available = motions.free - motions.rows.shape[0] - below
     if modes > available:
         raise SolveError(f"{modes} natural frequencies are asked for and the mesh has {available} free motions.")
-    pencil = Pencil(motions.stiffness, apply, motions.precondition)
+    pencil = Pencil(motions.stiffness, mass.__matmul__, motions.precondition, motions.threads)
     allowed = RESIDUAL_ALLOWED[motions.direct]
     reason = too_large(motions)
-    guards, start, room = GUARDS, np.zeros((motions.free, 0)), space_room(motions.free, budget)
+    guards, start, room = GUARDS, np.zeros((model.K.shape[0], 0)), space_room(motions.free, budget)
     note, missing = reason, 0
     for attempt in range(3):
         guards = min(guards, available - modes)
-        fresh = motions.precondition(apply(_fields(model, motions, modes + guards + 2, budget.seed + attempt)))
+        fresh = _start(model, motions, mass, modes + guards + 2, budget.seed + attempt)
         tolerance = np.r_[np.full(modes, allowed), np.full(guards, GUARD_ALLOWED)]
         found = extreme_pairs(pencil, np.hstack([start, fresh]), tolerance, room)
         if not (found.residual.size == modes + guards and (found.residual <= tolerance).all()):
@@ -154,7 +163,17 @@ def _solve(
         except SolveError as error:
             missing, note = 0, f"not counted: {error}"
             break
-        fresh = motions.precondition(apply(_fields(model, motions, 2 * GUARDS, budget.seed + 100 + attempt)))
+        if found.space is not None:
+            rough = mass.rough(COLUMNS, budget.seed + attempt)
+            sounding = sound(pencil, found.space, -shift, rough, LEAST_OF_INVERSE[motions.direct])
+            missing = sounding.known - above + int(sounding.found)
+            note = f"{reason}; {told(sounding, f'{above} at or below {np.sqrt(shift) / 2 / np.pi:.5g} Hz')}"
+            if sounding.found or missing:
+                guards, start = guards + 4, found.x
+                continue
+            if sounding.clear:
+                break
+        fresh = _start(model, motions, mass, 2 * GUARDS, budget.seed + 100 + attempt)
         again = second_search(pencil, found, tolerance, fresh, room)
         missing = lost(found, again, modes)
         note = f"{reason}; a second search from other vectors found {'one' if missing else 'none'} that was missed"
@@ -171,13 +190,13 @@ def _solve(
     return Pairs(found.mu[:modes], found.x[:, :modes], found.residual[:modes], found.rounds), check
 
 
-def _fields(model: SolidModel, motions: Motions, count: int, seed: int) -> Array:
-    return start_unknowns(motions.elimination, model.mesh.nodes, count, seed)
+def _start(model: SolidModel, motions: Motions, mass: _Mass, count: int, seed: int) -> Array:
+    return by_turns(lambda u: motions.precondition(mass @ u), start_fields(model.mesh.nodes, count, seed))
 
 
 def _count(motions: Motions, K: BlockMatrix, mass: _Mass, shift: float, budget: Budget) -> int:
-    T = motions.elimination.T
-    blocks = K.blocks - shift * mass.part.blocks
+    T, blocks = motions.elimination.T, K.blocks.copy()
+    mass.part.add_to(blocks, -shift)
     matrix = motions.elimination.square(BlockMatrix(K.indptr, K.indices, blocks, K.threads))
     rows = (mass.remote @ T).toarray()
     low = LowRank(rows, np.full(rows.shape[0], -shift))
@@ -188,7 +207,7 @@ def _modes(
     model: SolidModel, motions: Motions, mass: _Mass, pairs: Pairs, checks: list[Check], cutter: Cutter | None
 ) -> Eigenmodes:
     n, count = model.mesh.nodes.shape[1], pairs.mu.size
-    u = motions.elimination.expand(pairs.x / np.sqrt(pairs.mu))  # phi^T M phi = 1
+    u = pairs.x / np.sqrt(pairs.mu)  # phi^T M phi = 1
     share = _mass_shares(model, mass, u)
     shapes = u.reshape(n, 3, count).transpose(2, 1, 0)
     shapes = np.ascontiguousarray(shapes / np.linalg.norm(shapes, axis=1).max(axis=1)[:, None, None])

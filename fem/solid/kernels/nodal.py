@@ -77,27 +77,25 @@ def _curved_geometric(first, last, elements, points, tets, slopes, weights, stre
 
 
 @kernel
-def _add_numbers(first, last, elements, tets, values, indptr, indices, blocks):  # type: ignore[no-untyped-def]
-    """Add element values (k, 10, 10), upper half, to the diagonals of the blocks in the block rows first to last."""
+def _add_numbers(first, last, elements, tets, values, indptr, indices, out):  # type: ignore[no-untyped-def]
+    """Add element values (k, 10, 10), upper half, to the numbers in the rows first to last."""
     for n in range(elements.size):
         e = elements[n]
         for a in range(10):
             for b in range(a, 10):
                 row, column = min(tets[e, a], tets[e, b]), max(tets[e, a], tets[e, b])
                 if row >= first and row < last:
-                    k = find(indptr, indices, row, column)
-                    for i in range(3):
-                        blocks[k, i, i] += values[n, a, b]
+                    out[find(indptr, indices, row, column)] += values[n, a, b]
 
 
-def _add(elements: Int, tets: Int, values: Array, pattern: tuple[Int, Int], blocks: Array, threads: int) -> None:
-    args = (elements, tets, values, *pattern, blocks)
-    parts = ranges(pattern[0].size - 1, max(threads, 1))  # whatever the ranges, a block's sum has one order
+def _add(elements: Int, tets: Int, values: Array, pattern: tuple[Int, Int], out: Array, threads: int) -> None:
+    args = (elements, tets, values, *pattern, out)
+    parts = ranges(pattern[0].size - 1, max(threads, 1))  # whatever the ranges, a number's sum has one order
     run(lambda a, b: _add_numbers(a, b, *args), parts, threads)
 
 
 def add_masses(
-    blocks: Array,
+    values: Array,
     points: Array,
     tets: Int,
     elements: Int,
@@ -105,17 +103,20 @@ def add_masses(
     pattern: tuple[Int, Int],
     threads: int,
 ) -> None:
-    """Add int N_a N_b dV of `elements` to `blocks`. rule: products N_a N_b (q, 10, 10), slopes (q, 10, 3), weights."""
+    """Add int N_a N_b dV of `elements` to `values` (b,).
+
+    rule: products N_a N_b (q, 10, 10), slopes (q, 10, 3), weights.
+    """
     for begin in range(0, elements.size, _AT_ONCE):
         some = elements[begin : begin + _AT_ONCE]
         out = np.empty((some.size, 10, 10))
         args = (some, points, tets, *rule, out)
         run(lambda a, b, args=args: _masses(a, b, *args), ranges(some.size), threads)  # type: ignore[misc]
-        _add(some, tets, out, pattern, blocks, threads)
+        _add(some, tets, out, pattern, values, threads)
 
 
 def add_geometric(
-    blocks: Array,
+    values: Array,
     points: Array,
     tets: Int,
     elements: Int,
@@ -124,7 +125,7 @@ def add_geometric(
     pattern: tuple[Int, Int],
     threads: int,
 ) -> None:
-    """Add int s_ij dN_a/dx_i dN_b/dx_j dV of `elements` with stress (k, 6, q) to `blocks`.
+    """Add int s_ij dN_a/dx_i dN_b/dx_j dV of `elements` with stress (k, 6, q) to `values` (b,).
 
     rule: of curved elements slopes (q, 10, 3) and weights (q,); of straight ones the factors (4, 10, 10, 2, 2).
     """
@@ -138,4 +139,4 @@ def add_geometric(
         else:
             more = (some, points, tets, CARRIERS, rule, s, out)
             run(lambda a, b, more=more: _straight_geometric(a, b, *more), ranges(some.size), threads)  # type: ignore[misc]
-        _add(some, tets, out, pattern, blocks, threads)
+        _add(some, tets, out, pattern, values, threads)
