@@ -3,7 +3,10 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Mapping
+import os
+import resource
+import sys
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from types import SimpleNamespace
 
@@ -54,6 +57,36 @@ def outcome(number: int) -> Outcome:
         mesh={"size": [1.0, 2.0]}, seconds={"wall": 1.5, "solve": 1.0}, peak_memory=100.5, worker="1")
 
 
+NOBODY = 65534
+
+
+def in_child(function: Callable[[], object], ordinary: bool = False, largest_file: int = 0) -> str:
+    """What `function` gives in a forked child, as text; of an error its kind and message.
+
+    With `ordinary` root's right to write everywhere is given up; `largest_file` limits the size of files in bytes.
+    """
+    get, put = os.pipe()
+    sys.stdout.flush()
+    if (child := os.fork()) == 0:
+        try:
+            if ordinary and os.getuid() == 0:
+                os.setgroups([])
+                os.setgid(NOBODY)
+                os.setuid(NOBODY)
+            if largest_file:
+                resource.setrlimit(resource.RLIMIT_FSIZE, (largest_file, largest_file))
+            told = str(function())
+        except BaseException as error:  # noqa: BLE001 - all of them go to the parent
+            told = f"{type(error).__name__}: {error}"
+        os.write(put, told.encode()[:60000])
+        os._exit(0)
+    os.close(put)
+    with os.fdopen(get, "rb") as pipe:
+        told = pipe.read().decode()
+    os.waitpid(child, 0)
+    return told
+
+
 @pytest.fixture
 def study() -> SimpleNamespace:
-    return SimpleNamespace(plan=P, variant=variant, outcome=outcome, key_of=key_of)
+    return SimpleNamespace(plan=P, variant=variant, outcome=outcome, key_of=key_of, in_child=in_child)

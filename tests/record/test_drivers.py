@@ -61,6 +61,7 @@ def test_a_forked_child_does_not_keep_the_lock_of_a_killed_driver(tmp_path: Path
         os.waitpid(first.pid, 0)
         with Record.resume(path, study.plan()) as record:
             assert record.add(study.variant(1), study.outcome(1))
+        path.with_suffix(".stop").touch()  # ends the child
 
 
 def test_reading_while_a_driver_writes(tmp_path: Path, study: SimpleNamespace) -> None:

@@ -24,7 +24,9 @@ def main(path: str, first: str, last: str, between: str = "0") -> None:
         print("open", flush=True)
         if last == "0":
             if first == "fork" and os.fork() == 0:
-                time.sleep(20)
+                until = time.monotonic() + 60
+                while time.monotonic() < until and not Path(path).with_suffix(".stop").exists():
+                    time.sleep(0.02)
                 os._exit(0)
             time.sleep(20)
         for number in range(int(first), int(last) + 1):
