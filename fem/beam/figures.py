@@ -84,7 +84,7 @@ def all_figures(s: Solved, line: LineValues) -> tuple[list[Figure], list[str]]:
     from fem.beam.notches import notch_figures
     from fem.beam.stress import nominal_stresses
 
-    figures = [*as_figures(s, line), *nominal_stresses(s), *_mass(s.mesh)]
+    figures = [*as_figures(s, line), *nominal_stresses(s), *mass_figures(s.mesh)]
     notched, notes = notch_figures(s)
     return figures + notched, notes
 
@@ -250,7 +250,8 @@ def _flange_fillets(mesh: BeamMesh, at: float, wide: OutlineIntegrals, narrow: O
             yield float(corner * flange), point
 
 
-def _mass(mesh: BeamMesh) -> Iterator[Figure]:
+def mass_figures(mesh: BeamMesh) -> Iterator[Figure]:
+    """Mass, then the three coordinates of the centre of mass; of exact section integrals alone."""
     h = np.diff(mesh.x)
     # the points at which the stiffness is taken: the net sections there are known
     halves = np.stack([mesh.x[:-1], 0.5 * (mesh.x[:-1] + mesh.x[1:])], axis=1)

@@ -4,18 +4,21 @@ from __future__ import annotations
 
 import dataclasses
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from pathlib import Path
 
 from fem.beam import solve_beam
-from fem.figure import FigureKey
+from fem.beam.figures import mass_figures
+from fem.beam.mesh import BeamMesh
+from fem.beam.section import SectionProperties, sections_properties
 from fem.solid import solve_solid
 from fem.solid.kept import KeptSystem
 from geometry.budget import Budget
 from geometry.named_solid import NamedSolid
+from geometry.outline import Outline
 from geometry.part import LineLoad, Part
 from geometry.problem import HaunchError, RunError
 from geometry.process import LentTemplate
@@ -39,6 +42,24 @@ SAFER = (*CHAIN[4:], *CHAIN[2:4])
 """The attempts for a variant that has failed once: first finer and with the slower algorithms."""
 
 
+class Sections:
+    """Section analyses of the variant before, used again for the very same outlines and Poisson's ratio."""
+
+    def __init__(self) -> None:
+        self._asked: tuple[list[Outline], float] | None = None
+        self._found: list[SectionProperties] = []
+
+    def __call__(self, outlines: Sequence[Outline], nu: float) -> list[SectionProperties]:
+        if self._asked != (list(outlines), nu):
+            self._found = sections_properties(outlines, nu)
+            self._asked = (list(outlines), nu)
+        return self._found
+
+    def any_of(self, outlines: Sequence[Outline], nu: float) -> list[SectionProperties]:
+        """Properties of some section: for what does not depend on them."""
+        return [self._found[0]] * len(outlines)
+
+
 @dataclass
 class Workshop:
     """What a job works with.
@@ -58,6 +79,7 @@ class Workshop:
     """Processor seconds by stage, of this process and of the jobs that it started."""
     stage: str = "spec"
     made: Made | None = None
+    sections: Sections = field(default_factory=Sections)
     kept: KeptSystem | None = None
     """The factor, where there is more than one variant."""
 
@@ -110,7 +132,7 @@ def _evaluate(order: Order, workshop: Workshop) -> Outcome:
         fullest = None if variant.fullest is None else part_from_data(dict(variant.fullest))
     named, mesh = _solid_and_mesh(part, order, budget, workshop, clock)
     with _timed(clock, workshop, "beam"):
-        beam = solve_beam(part, budget)
+        beam = solve_beam(part, budget, section_solver=workshop.sections)
     with _timed(clock, workshop, "solve"):
         sharp = [(edge.label, edge.points) for edge in named.sharp_edges]
         solid = solve_solid(part, mesh, budget, sharp_edges=sharp, kept=workshop.kept)
@@ -164,9 +186,8 @@ def _masses(fullest: Part, budget: Budget, workshop: Workshop) -> tuple[float, f
     """(solid, beam) mass of the part at most material, t: of its CAD solid, and of the beam's own net sections."""
     with workshop.at("solid"), SolidChild(fullest, budget, workshop.cad) as child:
         volume = child.result()[0].volume
-    with workshop.at("beam"):
-        key = FigureKey("", "", "mass", "")
-        beam = next(f.value for f in solve_beam(fullest, budget).figures if f.key == key)
+    with workshop.at("beam"):  # what is not exact integrals has no bearing on the mass, and is taken from the variant
+        beam = next(mass_figures(BeamMesh.of(fullest, workshop.sections.any_of, True))).value
     return volume * fullest.material.density, beam
 
 

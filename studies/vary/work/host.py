@@ -11,6 +11,7 @@ import threading
 import time
 from collections.abc import Callable, Iterator, Sequence
 from itertools import count
+from pathlib import Path
 from typing import Any
 
 from geometry.endings import ended_from_outside, signal_name
@@ -47,6 +48,8 @@ class Host:
     def __init__(self, workers: int = 1, memory: int | None = None, *, models: str = MODELS, cad: str = CAD,
                  mesh: str = MESH) -> None:
         self.workers, self.memory = workers, memory
+        self.templates: tuple[Template, ...] = ()
+        """Of the models, CAD and mesh, while the host is open."""
         self._modules = models, cad, mesh
         self._free = threading.BoundedSemaphore(workers)
         self._closing = threading.Event()
@@ -58,8 +61,8 @@ class Host:
 
     def __enter__(self) -> Host:
         self._room = Room()
-        self._models, self._cad, self._mesh = (Template(module, self._room.path) for module in self._modules)
-        for template in (self._models, self._cad, self._mesh):
+        self.templates = tuple(Template(module, self._room.path) for module in self._modules)
+        for template in self.templates:
             template.start()
         return self
 
@@ -74,10 +77,15 @@ class Host:
         with self._idle:
             self._idle.wait_for(lambda: not self._running, 30.0)
             room, self._room = self._room, None
-        for template in (self._models, self._cad, self._mesh):
+        for template in self.templates:
             template.close()
         if room is not None:
             room.close()
+
+    @property
+    def folder(self) -> Path | None:
+        """With what the jobs keep for a moment; None while the host is not open."""
+        return None if self._room is None else self._room.path
 
     def evaluate(self, order: Order) -> Outcome | Ended:
         """Evaluate one variant and wait for it."""
@@ -119,7 +127,7 @@ class Host:
         try:
             yield from _Watch(self, orders, client, str(folder)).ends()
         finally:
-            for template in (self._cad, self._mesh):
+            for template in self.templates[1:]:
                 template.kill_client(client)
             remove(folder)
             with self._idle:
@@ -131,9 +139,9 @@ class Host:
 
         Raises `TemplateFailure`.
         """
-        job = self._models.submit({"client": client}, self._closing.is_set, client)
+        job = self.templates[0].submit({"client": client}, self._closing.is_set, client)
         try:
-            controls, endings = zip(*(template.lend() for template in (self._cad, self._mesh)), strict=True)
+            controls, endings = zip(*(template.lend() for template in self.templates[1:]), strict=True)
             try:
                 socket.send_fds(job.data, [b"."], [control.fileno() for control in controls])
             finally:
