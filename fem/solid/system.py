@@ -99,7 +99,7 @@ class HeldSystem:
             raise SolveError("The supports do not hold the part: " + "; ".join(motions) + ". Hold these motions.")
         self.K = K if isinstance(K, BlockMatrix) else block_matrix(K)
         self.constraints = constraints
-        self.elimination = Elimination(constraints.T)
+        self.elimination = Elimination(constraints.T, budget.threads)
         self.T = constraints.T
         self.free = self.T.shape[1]
         self.mean_rows = sp.csr_matrix(constraints.rows @ self.T)
@@ -219,12 +219,12 @@ class HeldSystem:
                 f"The equations are not met: residual {residual:.2e} of the load, allowed {allowed:.0e}",
                 f"; correcting it would move the part by {correction:.1e} of its largest displacement, allowed "
                 f"{GAUGE_ALLOWED:.0e}. The part is extremely slender, or the mesh holds a nearly flat element; mesh "
-                "the part again."
+                "the part again.",
             )
         if not gauge <= GAUGE_ALLOWED:
             raise OffGate(
                 f"A known bending field comes back with an error of {gauge:.2e}, allowed {GAUGE_ALLOWED:.0e}",
-                ": the matrix is too badly conditioned. Look for nearly flat elements; mesh the part again."
+                ": the matrix is too badly conditioned. Look for nearly flat elements; mesh the part again.",
             )
 
 

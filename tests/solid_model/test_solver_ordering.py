@@ -18,19 +18,30 @@ from geometry.part import Support
 def test_matrix_motions_and_rows_are_those_in_another_order(kind: str) -> None:
     model = make(bent_mesh(), [*SUPPORTS[kind], Support("side", "arm.left", {"y": 0.0})])
     T, C = model.constraints.T, model.constraints.rows
-    held = Elimination(T)
-    order = Ordering(model.mesh.nodes, held.first, held.count, T.shape[1])
-    assert np.array_equal(np.sort(order.unknowns), np.arange(T.shape[1]))
+    held, order = Elimination(T), Ordering(model.mesh.nodes)
     assert np.array_equal(order.number[order.nodes], np.arange(model.mesh.nodes.shape[1]))
     assert (np.diff(model.mesh.nodes[0, order.nodes]) >= 0).all()
     rows = (3 * order.nodes[:, None] + np.arange(3)).ravel()
     double, single = order.matrix(model.K, 2)
     assert abs(whole(double) - whole(model.K)[rows][:, rows]).max() == 0.0
     assert np.array_equal(single.blocks, double.blocks.astype(np.float32))
-    assert abs(order.motions(T) - T[rows][:, order.unknowns]).max() == 0.0
     if C.shape[0]:
         assert abs(order.columns(C) - C[:, rows]).max() == 0.0
-    Elimination(order.motions(T))  # raises when the unknowns do not follow the nodes
+    moved = held.in_order(order.nodes)
+    assert abs(moved.T - T[rows]).max() == 0.0
+    assert abs(moved.in_order(order.number).T - T).max() == 0.0
+    y, f = np.random.default_rng(6).normal(size=(T.shape[1], 2)), np.random.default_rng(7).normal(size=(T.shape[0], 2))
+    assert np.array_equal(moved.expand(y), held.expand(y)[rows])
+    assert np.array_equal(moved.lift(y), held.lift(y)[rows])
+    assert moved.gather(f[rows]) == pytest.approx(held.gather(f), abs=1e-12)
+    assert moved.reduce(f[rows]) == pytest.approx(held.reduce(f), abs=1e-12)
+    assert held.expand(y) == pytest.approx(T @ y, abs=1e-12)
+    assert held.gather(f) == pytest.approx(T.T @ f, abs=1e-12)
+    for which in (moved, held):
+        u = f.copy()
+        which.project(u)
+        assert which.expand(which.reduce(u)) == pytest.approx(u, abs=1e-12)
+    assert held.reduce(held.expand(y)) == pytest.approx(y, abs=1e-10)
     again = order.matrix(model.K, 1)[0]
     assert np.array_equal(again.indices, double.indices) and np.array_equal(again.blocks, double.blocks)
 
@@ -38,8 +49,7 @@ def test_matrix_motions_and_rows_are_those_in_another_order(kind: str) -> None:
 @pytest.mark.parametrize("columns", [1, 2, 5, 8])
 def test_products_with_short_sums(columns: int) -> None:
     model = make(straight_mesh((40, 2, 2)))
-    held = Elimination(model.constraints.T)
-    K, single = Ordering(model.mesh.nodes, held.first, held.count, held.T.shape[1]).matrix(model.K, 1)
+    K, single = Ordering(model.mesh.nodes).matrix(model.K, 1)
     parts = divide(K.indptr, K.indices)
     assert len(parts) == 4
     assert all(part.split > part.first for part in parts)  # most of each range is its own

@@ -7,8 +7,6 @@ and is cheap to make, and a few steps of Chebyshev iteration make up for the slo
 
 from __future__ import annotations
 
-from typing import Any
-
 import numpy as np
 import scipy.sparse as sp
 from numpy.typing import NDArray
@@ -119,7 +117,7 @@ class AggregateSolver:
 
     def _spectrum(self, K: BlockMatrix, seed: int) -> tuple[float, float]:
         """Least and largest eigenvalue of M A, by the coefficients of conjugate gradients (Lanczos)."""
-        r = self._held.lift(np.random.default_rng(seed).standard_normal((self._held.T.shape[1], 1)))
+        r = self._held.lift(np.random.default_rng(seed).standard_normal((self._held.free, 1)))
         p, z = np.zeros_like(r), np.zeros_like(r)
         alphas, betas, before = [], [], 0.0
         for k in range(_LANCZOS):
@@ -150,16 +148,15 @@ class AggregateSolver:
         """
         centre, half = (self._high + self._low) / 2, (self._high - self._low) / 2
         x, z, p, w = (np.empty_like(r) for _ in range(4))
-        alpha, rows = 0.0, ranges(r.shape[0], _FEW)
+        alpha = 0.0
         for k in range(STEPS):
             self._cycle.correct(r, z)
             beta = 0.0 if k == 0 else (half * alpha) ** 2 / (2 if k == 1 else 4)
             alpha = 1 / (centre - (beta / alpha if k else 0.0))
-            factors = np.float32(alpha), np.float32(beta)
-            run(lambda a, b, factors=factors, k=k: _go(a, b, z, *factors, k == 0, p, x), rows, self._threads)
+            _ahead(z, np.float32(alpha), np.float32(beta), k == 0, p, x, self._threads)
             if k + 1 < STEPS:
                 self._single.product(p, w, self._threads)
-                run(lambda a, b, alpha=factors[0]: _take(a, b, alpha, w, r), rows, self._threads)
+                _less(np.float32(alpha), w, r, self._threads)
         return x
 
     def close(self) -> None:
@@ -168,9 +165,18 @@ class AggregateSolver:
         self._cycle.close()
 
 
+def _ahead(z: Single, alpha: np.float32, beta: np.float32, begin: bool, p: Single, x: Single, threads: int) -> None:
+    """p = z + beta p;  x += alpha p, or both from nothing."""
+    run(lambda a, b: _go(a, b, z, alpha, beta, begin, p, x), ranges(z.shape[0], _FEW), threads)
+
+
+def _less(alpha: np.float32, w: Single, r: Single, threads: int) -> None:
+    """r -= alpha w."""
+    run(lambda a, b: _take(a, b, alpha, w, r), ranges(r.shape[0], _FEW), threads)
+
+
 @kernel
 def _go(first, last, z, alpha, beta, begin, p, x):  # type: ignore[no-untyped-def]
-    """p = z + beta p;  x += alpha p, or from nothing."""
     for i in range(first, last):
         for c in range(z.shape[1]):
             p[i, c] = z[i, c] if begin else z[i, c] + beta * p[i, c]
@@ -179,7 +185,6 @@ def _go(first, last, z, alpha, beta, begin, p, x):  # type: ignore[no-untyped-de
 
 @kernel
 def _take(first, last, alpha, w, r):  # type: ignore[no-untyped-def]
-    """r -= alpha w."""
     for i in range(first, last):
         for c in range(r.shape[1]):
             r[i, c] -= alpha * w[i, c]

@@ -7,8 +7,11 @@ rigid region.
 
 from __future__ import annotations
 
+from copy import copy
+
 import numpy as np
 import scipy.sparse as sp
+from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.kernels.jit import kernel
@@ -21,8 +24,8 @@ class Elimination:
 
     Attributes
     ----------
-    T
-        (3 n, f).
+    free
+        f.
     first, count
         (n,) first unknown of each node and how many it has of its own (0 to 3).
     special, basis
@@ -34,8 +37,9 @@ class Elimination:
         (3 n, r) the columns shared by many nodes, r of them, the last of T.
     """
 
-    def __init__(self, T: sp.csr_matrix) -> None:
-        self.T = T
+    def __init__(self, T: sp.csr_matrix, threads: int = 1) -> None:
+        self._T, self._threads, self._order = T, threads, np.zeros(0, dtype=np.int64)
+        self.free = T.shape[1]
         n = T.shape[0] // 3
         users = np.bincount(T.indices, minlength=T.shape[1])
         node = np.repeat(np.arange(n), T.indptr[3::3] - T.indptr[:-3:3])
@@ -48,20 +52,17 @@ class Elimination:
             raise ValueError("the unknowns must follow the nodes, those of the rigid regions last")
         self.count = np.bincount(lowest[: self.own], minlength=n)
         self.first = (np.cumsum(self.count) - self.count).astype(np.int32)
-        plain = self.count == 3
-        self.kept = (3 * np.flatnonzero(plain)[:, None] + np.arange(3)).ravel()
-        self.place = (self.first[plain][:, None] + np.arange(3)).ravel()
+        self._plain = plain = self.count == 3
+        place = (self.first[plain][:, None] + np.arange(3)).ravel()
         entries = np.diff(T.indptr)
-        one = np.zeros(3 * n, dtype=bool)
-        one[self.kept] = True
+        one = np.repeat(plain, 3)
         at = T.indptr[:-1][one]
-        if not ((entries[one] == 1).all() and (T.data[at] == 1.0).all() and np.array_equal(T.indices[at], self.place)):
+        if not ((entries[one] == 1).all() and (T.data[at] == 1.0).all() and np.array_equal(T.indices[at], place)):
             raise ValueError("a node with three unknowns of its own must have them plain")
         self.special = np.flatnonzero(~plain)
         self.rigid = T[:, self.own :].tocsr()
         rows = (3 * self.special[:, None] + np.arange(3)).ravel()
         self._rows, self._part = rows, T[rows]
-        self._back = self._part.T.tocsr()
         self.basis = np.zeros((self.special.size, 3, 3))
         part = self._part.tocoo(copy=True)
         s, own_column = part.row // 3, part.col < self.own
@@ -75,54 +76,90 @@ class Elimination:
             R = self.rigid[rows].toarray()
             inverse = sp.csr_matrix(R @ np.linalg.inv(R.T @ R))
             self._lift = sp.hstack([self._lift[:, : self.own], inverse]).tocsr()
-        self._down = self._lift.T.tocsr()
-        used = np.unique(self._part.indices)
-        self._project = self._part[:, used], self._down[used]
+        self._used = np.unique(self._part.indices)
+        self._transpose()
+
+    def _transpose(self) -> None:
+        self._back = self._part.T.tocsr()[self._used]
+        self._down = self._lift.T.tocsr()[self._used]
+        self._project = self._part[:, self._used]
+
+    @property
+    def T(self) -> sp.csr_matrix:
+        """(3 n, f)."""
+        return self._T if not self._order.size else self.motions(np.arange(self._order.size))
+
+    def motions(self, nodes: NDArray[np.integer]) -> sp.csr_matrix:
+        """(3 k, f) rows of T of some nodes (k,)."""
+        if self._order.size:
+            nodes = self._order[nodes]
+        return self._T[(3 * nodes[:, None] + np.arange(3)).ravel()]
+
+    def in_order(self, nodes: NDArray[np.integer]) -> Elimination:
+        """The same of the nodes in another order: new node i is the old node ``nodes[i]``. The unknowns stay."""
+        new = copy(self)
+        new._order = self._order[nodes] if self._order.size else np.asarray(nodes, dtype=np.int64)
+        new.first, new.count, new._plain = self.first[nodes], self.count[nodes], self._plain[nodes]
+        new.special = np.flatnonzero(~new._plain)
+        place = np.empty(self._plain.size, dtype=np.int64)
+        place[self.special] = np.arange(self.special.size)
+        s = place[nodes[new.special]]
+        new.basis, new.pseudo = self.basis[s], self.pseudo[s]
+        old = (3 * s[:, None] + np.arange(3)).ravel()
+        new._rows = (3 * new.special[:, None] + np.arange(3)).ravel()
+        new._part, new._lift = self._part[old], self._lift[old]
+        if self.rigid.shape[1]:
+            new.rigid = self.rigid[(3 * nodes[:, None] + np.arange(3)).ravel()]
+        new._transpose()
+        return new
 
     def expand(self, y: Array) -> Array:
         """T y: (f, ...) to (3 n, ...)."""
-        u = np.zeros((self.T.shape[0], *y.shape[1:]))
-        u[self.kept] = y[self.place]
-        if self._rows.size:
-            u[self._rows] = self._part @ y
-        return u
+        return self._spread(y, self._part)
 
     def gather(self, f: Array) -> Array:
         """T^T f: (3 n, ...) to (f, ...)."""
-        y = self._back @ f[self._rows] if self._rows.size else np.zeros((self.T.shape[1], *f.shape[1:]))
-        y[self.place] += f[self.kept]
-        return y
+        return self._collect(f, self._back)
 
     def lift(self, r: Array) -> Array:
         """T (T^T T)^-1 r: forces (3 n, ...) on the nodes whose `gather` is r (f, ...)."""
-        f = np.zeros((self.T.shape[0], *r.shape[1:]))
-        f[self.kept] = r[self.place]
-        if self._rows.size:
-            f[self._rows] = self._lift @ r
-        return f
+        return self._spread(r, self._lift)
 
     def reduce(self, u: Array) -> Array:
         """(T^T T)^-1 T^T u: the unknowns (f, ...) of a held motion u (3 n, ...)."""
-        y = self._down @ u[self._rows] if self._rows.size else np.zeros((self.T.shape[1], *u.shape[1:]))
-        y[self.place] += u[self.kept]
-        return y
+        return self._collect(u, self._down)
+
+    def _spread(self, y: Array, special: sp.csr_matrix) -> Array:
+        flat = np.ascontiguousarray(y).reshape(y.shape[0], -1)
+        u = np.empty((3 * self.count.size, flat.shape[1]), dtype=y.dtype)
+        parts = ranges(self.count.size)
+        run(lambda a, b: _spread(a, b, self.first, self._plain, flat, u), parts, self._threads)
+        u[self._rows] = special @ flat
+        return u.reshape(-1, *y.shape[1:])
+
+    def _collect(self, u: Array, special: sp.csr_matrix) -> Array:
+        flat = np.ascontiguousarray(u).reshape(u.shape[0], -1)
+        y = np.zeros((self.free, flat.shape[1]), dtype=u.dtype)
+        parts = ranges(self.count.size)
+        run(lambda a, b: _collect(a, b, self.first, self._plain, flat, y), parts, self._threads)
+        y[self._used] = special @ flat[self._rows]
+        return y.reshape(-1, *u.shape[1:])
 
     def project(self, u: Array) -> None:
         """Make u (3 n, k) a held motion where rounding has made it leave them; nodes wholly held become still."""
         if self._rows.size:
-            part, down = self._project
-            u[self._rows] = part @ (down @ u[self._rows])
+            u[self._rows] = self._project @ (self._down @ u[self._rows])
 
     def square(self, K: BlockMatrix) -> sp.csr_matrix:
         """Upper triangle, diagonal included, of T^T K T (f, f); columns rise in each row."""
         which = np.full(self.count.size, -1, dtype=np.int32)
         which[self.special] = np.arange(self.special.size, dtype=np.int32)
-        shared = np.zeros((self.T.shape[1], 0))
+        shared = np.zeros((self.free, 0))
         if self.rigid.shape[1]:
             shared = self.gather(K @ self.rigid.toarray())
         counts = self.count.astype(np.int32)
         extra = np.count_nonzero(shared[: self.own], axis=1)
-        indptr = np.zeros(self.T.shape[1] + 1, dtype=np.int64)
+        indptr = np.zeros(self.free + 1, dtype=np.int64)
         nodes = ranges(counts.size)
         run(lambda a, b: _row_lengths(a, b, K.indptr, K.indices, self.first, counts, indptr), nodes, K.threads)
         indptr[1 : self.own + 1] += extra
@@ -140,7 +177,7 @@ class Elimination:
         )
         for k in range(self.rigid.shape[1]):
             row = self.own + k
-            indices[indptr[row] : indptr[row + 1]] = np.arange(row, self.T.shape[1])
+            indices[indptr[row] : indptr[row + 1]] = np.arange(row, self.free)
             data[indptr[row] : indptr[row + 1]] = shared[row, k:]
         if self.rigid.shape[1]:
             rows, columns = np.nonzero(shared[: self.own])
@@ -148,7 +185,27 @@ class Elimination:
             at = indptr[rows + 1] - np.repeat(extra, extra) + rank
             indices[at] = self.own + columns
             data[at] = shared[rows, columns]
-        return sp.csr_matrix((data, indices, indptr.astype(np.int32)), shape=(self.T.shape[1],) * 2)
+        return sp.csr_matrix((data, indices, indptr.astype(np.int32)), shape=(self.free, self.free))
+
+
+@kernel
+def _spread(begin, end, first, plain, y, u):  # type: ignore[no-untyped-def]
+    """Motions of the plain nodes."""
+    for i in range(begin, end):
+        if plain[i]:
+            for d in range(3):
+                for c in range(y.shape[1]):
+                    u[3 * i + d, c] = y[first[i] + d, c]
+
+
+@kernel
+def _collect(begin, end, first, plain, u, y):  # type: ignore[no-untyped-def]
+    """Unknowns of the plain nodes."""
+    for i in range(begin, end):
+        if plain[i]:
+            for d in range(3):
+                for c in range(y.shape[1]):
+                    y[first[i] + d, c] = u[3 * i + d, c]
 
 
 @kernel

@@ -73,26 +73,27 @@ class MultigridSolver:
     ) -> None:
         self.reason, self.iterations = reason, 0
         self._threads = budget.threads
-        self._order = order = Ordering(nodes, held.first, held.count, held.T.shape[1])
-        given = K
+        order = Ordering(nodes)
+        given, self.in_given_order = K, order.given
         K, single = order.matrix(K, budget.threads)
-        held, mean_rows = Elimination(order.motions(held.T)), order.columns(mean_rows)
-        tets, nodes = order.number[tets].astype(np.int64), nodes[:, order.nodes]
+        mean_rows = order.columns(mean_rows)
+        if not order.given:
+            held, tets, nodes = held.in_order(order.nodes), order.number[tets].astype(np.int64), nodes[:, order.nodes]
         self._K, self._held = K, held
         self._transfer = transfer = Transfer(tets, held, budget.threads)
-        refuse_multigrid(K, transfer.coarse.T.shape[1], budget)
+        refuse_multigrid(K, transfer.coarse.free, budget)
         count = mean_rows.shape[0]
         if given.linear:
             coarse = given.linear(order.nodes[transfer.corners])
         else:
             coarse = transfer.galerkin(K)
-        coarse_rows = sp.csr_matrix((count, transfer.coarse.T.shape[1]))
+        coarse_rows = sp.csr_matrix((count, transfer.coarse.free))
         springs = np.zeros(0, dtype=np.int64)
         if count:
             coarse_rows = sp.csr_matrix(np.vstack([transfer.restrict(row.T.toarray()).T for row in mean_rows]))
             springs = spring_unknowns(nodes[:, transfer.corners], transfer.coarse.T)
         self._coarse: CholeskySolver | AggregateSolver
-        if transfer.coarse.T.shape[1] > FACTORED and not count and not held.rigid.shape[1]:
+        if transfer.coarse.free > FACTORED and not count and not held.rigid.shape[1]:
             self._coarse = AggregateSolver(coarse, transfer.coarse, nodes[:, transfer.corners], budget, backend)
         else:
             self._coarse = self._factored(transfer.coarse.square(coarse), coarse_rows, springs, budget, backend)
@@ -126,19 +127,18 @@ class MultigridSolver:
         `heated` (k,): which columns have a thermal part.
         """
         tighter = np.ones(rhs.shape[1]) if heated is None else np.where(heated, HEATED, 1.0)
-        rhs = rhs[self._order.unknowns]
         turns = [slice(a, a + AT_ONCE) for a in range(0, rhs.shape[1], AT_ONCE)]
         found = [self._solve_some(rhs[:, some], values[:, some], tighter[some]) for some in turns]
-        y = np.empty_like(rhs)
-        y[self._order.unknowns] = np.hstack([some for some, _ in found])
-        return y, np.hstack([m for _, m in found])
+        if len(found) == 1:
+            return found[0]
+        return np.hstack([y for y, _ in found]), np.hstack([m for _, m in found])
 
     def _solve_some(self, rhs: Array, values: Array, tighter: Array) -> tuple[Array, Array]:
         loads, allowed = self._held.lift(rhs), RESIDUAL * tighter
         start, force = None, np.linalg.norm(rhs, axis=0)
         floor = np.zeros(rhs.shape[1])
         if values.any() and isinstance(self._coarse, CholeskySolver):
-            nothing = np.zeros((self._transfer.coarse.T.shape[1], rhs.shape[1]))
+            nothing = np.zeros((self._transfer.coarse.free, rhs.shape[1]))
             start = np.zeros((self._K.shape[0], rhs.shape[1]))
             self._transfer.prolong(self._coarse.solve_bordered(nothing, values)[0], start)
             stiff = self._K.diagonal()[:, None] * start
@@ -161,14 +161,20 @@ class MultigridSolver:
 
     def precondition(self, residual: Array) -> Array:
         """(f, k): one cycle, with mean rows its projection onto C y = 0."""
-        r = self._held.lift(residual[self._order.unknowns])
+        r = self._held.lift(residual)
         z = np.empty_like(r)
         self._cycle(r, z)
         if self._rows:
             z -= self._rows.W @ (self._rows.inverse @ (self._rows.C @ z))
-        y = np.empty_like(residual)
-        y[self._order.unknowns] = self._held.reduce(z)
-        return y
+        return self._held.reduce(z)
+
+    def precondition_nodes(self, residual: Array) -> Array:
+        """The same from nodal forces (3 n, k) to nodal motions, of nodes that stand in the solver's order."""
+        z = np.empty(residual.shape)
+        self._cycle(residual, z)
+        if self._rows:
+            z -= self._rows.W @ (self._rows.inverse @ (self._rows.C @ z))
+        return z
 
     def close(self) -> None:
         """Give memory back."""

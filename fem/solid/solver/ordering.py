@@ -9,11 +9,11 @@ from __future__ import annotations
 
 import numpy as np
 import scipy.sparse as sp
-from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix, SingleBlockMatrix
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run, weighted_ranges
+from fem.solid.node_order import along_the_part
 from fem.solid.shape import Array
 
 _PARTS = 4
@@ -21,7 +21,7 @@ _PARTS = 4
 
 
 class Ordering:
-    """A new order of the nodes and with it of the unknowns y.
+    """A new order of the nodes.
 
     Attributes
     ----------
@@ -29,35 +29,27 @@ class Ordering:
         (n,) old number of each new node.
     number
         (n,) int32 new number of each old node.
-    unknowns
-        (f,) old number of each new unknown: those of single nodes follow the nodes, shared ones stay last.
+    given
+        Whether the nodes are in this order already, so that nothing changes.
     """
 
-    def __init__(self, nodes: Array, first: NDArray[np.integer], count: NDArray[np.integer], free: int) -> None:
-        axis = int(np.ptp(nodes, axis=1).argmax())
-        self.nodes = np.argsort(nodes[axis], kind="stable")
+    def __init__(self, nodes: Array) -> None:
+        self.nodes = along_the_part(nodes)
+        self.given = bool((np.diff(self.nodes) == 1).all())
         self.number = np.empty(self.nodes.size, dtype=np.int32)
         self.number[self.nodes] = np.arange(self.nodes.size, dtype=np.int32)
-        many = count[self.nodes]
-        start = np.cumsum(many) - many
-        own = np.repeat(first[self.nodes] - start, many) + np.arange(int(many.sum()))
-        self.unknowns = np.concatenate([own, np.arange(own.size, free)])
-
-    def motions(self, T: sp.csr_matrix) -> sp.csr_matrix:
-        """T (3 n, f) in the new order of rows and columns."""
-        rows = (3 * self.nodes[:, None] + np.arange(3)).ravel()
-        column = np.empty(T.shape[1], dtype=T.indices.dtype)
-        column[self.unknowns] = np.arange(T.shape[1])
-        T = T[rows]
-        return sp.csr_matrix((T.data, column[T.indices], T.indptr), shape=T.shape).sorted_indices()
 
     def columns(self, C: sp.csr_matrix) -> sp.csr_matrix:
         """C (rows, 3 n) in the new order of its columns."""
+        if self.given:
+            return C
         node, direction = np.divmod(C.indices, 3)
         return sp.csr_matrix((C.data, 3 * self.number[node] + direction, C.indptr), shape=C.shape).sorted_indices()
 
     def matrix(self, K: BlockMatrix, threads: int) -> tuple[BlockMatrix, SingleBlockMatrix]:
         """K in the new order, in double and in single precision."""
+        if self.given:
+            return K, K.single()
         n, parts = K.indptr.size - 1, weighted_ranges(K.indptr, _PARTS)
         place = np.zeros((len(parts), n), dtype=np.int32)
         which = {first: k for k, (first, _) in enumerate(parts)}

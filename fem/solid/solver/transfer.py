@@ -51,12 +51,7 @@ class Transfer:
         for k, (a, b) in enumerate(TET_EDGES, start=4):
             self.parents[tets[k], 0] = number[tets[a]]
             self.parents[tets[k], 1] = number[tets[b]]
-        rows = (3 * self.corners[:, None] + np.arange(3)).ravel()
-        T = fine.T[rows]
-        used = np.zeros(T.shape[1], dtype=bool)
-        used[T.indices] = True
-        used[fine.own :] = True
-        self.coarse = Elimination(T[:, used])
+        self.coarse = Elimination(self._coarse_motions(fine))
         self._fine, self._shared = fine, fine.rigid.shape[1] > 0
         self._plain = np.ones(n, dtype=np.bool_)
         self._plain[fine.special] = not self._shared
@@ -75,6 +70,17 @@ class Transfer:
         child.sum_duplicates()
         self._children = (child.indptr, child.indices, child.data)
 
+    def _coarse_motions(self, fine: Elimination) -> sp.csr_matrix:
+        """(3 n', f') rows of T of the corners: unknowns of their own in their order, then the shared ones."""
+        count = fine.count[self.corners]
+        start = np.cumsum(count) - count
+        own = np.repeat(fine.first[self.corners] - start, count) + np.arange(int(count.sum()))
+        kept = np.concatenate([own, np.arange(fine.own, fine.free)])
+        T = fine.motions(self.corners)
+        column = np.empty(fine.free, dtype=T.indices.dtype)
+        column[kept] = np.arange(kept.size)
+        return sp.csr_matrix((T.data, column[T.indices], T.indptr), shape=(T.shape[0], kept.size)).sorted_indices()
+
     def _special_rows(self, fine: Elimination) -> sp.csr_matrix:
         """(3 s, f') rows of P of the nodes that are not plain."""
         s = fine.special.size
@@ -92,13 +98,13 @@ class Transfer:
 
     def prolong(self, y: Array, z: NDArray[Any]) -> None:
         """z (3 n, k) = P y of y (f', k)."""
-        self.prolong_nodes(self.coarse.expand(y).astype(z.dtype), z)
+        self.prolong_nodes(self.coarse.expand(y.astype(z.dtype)), z)
         if self._shared:
             z[self._rows] = self._special @ y
 
     def restrict(self, r: NDArray[Any]) -> Array:
         """P^T r: (3 n, k) to (f', k). What of r presses against the supports is taken off it."""
-        y = self.coarse.gather(self.restrict_nodes(r).astype(float))
+        y = self.coarse.gather(self.restrict_nodes(r)).astype(float)
         if self._shared:
             y += self._special_back @ r[self._rows].astype(float)
         return y
