@@ -26,7 +26,7 @@ HERE = Path(__file__).parent
 def driver(path: Path, *words: object) -> Iterator[subprocess.Popen[str]]:
     """A driver that has opened the record."""
     command = [sys.executable, str(HERE / "writing.py"), str(path), *map(str, words)]
-    with subprocess.Popen(command, stdout=subprocess.PIPE, text=True, env={**os.environ, "PYTHONUNBUFFERED": "1"}) as run:
+    with subprocess.Popen(command, stdout=subprocess.PIPE, text=True) as run:
         try:
             assert run.stdout.readline() == "open\n"
             yield run
@@ -38,7 +38,7 @@ def test_the_second_driver_is_told_who_the_first_is(tmp_path: Path, study: Simpl
     path = tmp_path / "arm.study"
     with driver(path, "hold", 0) as first:
         for way in (lambda: Record.resume(path, study.plan()), lambda: Record.create(path, study.plan())):
-            with pytest.raises(RecordHeldError, match=rf"another driver \(process {first.pid} on \S+, since 20") as error:
+            with pytest.raises(RecordHeldError, match=rf"driver \(process {first.pid} on \S+, since 20") as error:
                 way()
             assert "--record" in str(error.value)
         Record.open(path).close()  # a reader may

@@ -21,7 +21,7 @@ def test_a_full_record_takes_the_variant_when_there_is_room_again(tmp_path: Path
         (pages,) = record._db.execute("PRAGMA page_count").fetchone()
         record._db.execute(f"PRAGMA max_page_count = {pages + 8}")
         with pytest.raises(RecordFullError, match="Make room in"):
-            for number in range(1, 1000):  # noqa: B007 - where it ends is looked at
+            for number in range(1, 1000):
                 record.add(study.variant(number), study.outcome(number))
         assert 3 < number < 999
         assert len(record.words()) == number - 1

@@ -26,6 +26,11 @@ def open_folder() -> Iterator[Path]:
     shutil.rmtree(folder)
 
 
+def reads(path: Path, study: SimpleNamespace) -> bool:
+    with Record.open(path) as record:
+        return record.outcome(study.key_of(1)) == study.outcome(1)
+
+
 MOUNTS = r"""22 27 0:21 / /proc rw,relatime - proc proc rw
 27 1 254:0 / / rw,relatime shared:1 - ext4 /dev/vda rw,discard
 40 27 0:40 / /home rw,relatime shared:5 master:2 - nfs4 server:/export/home rw,vers=4.2,addr=10.0.0.1
@@ -165,7 +170,7 @@ def test_a_read_only_file(open_folder: Path, study: SimpleNamespace) -> None:
     before = path.read_bytes()
     told = study.in_child(lambda: Record.resume(path, study.plan()), ordinary=True)
     assert told.startswith("RecordError") and "read-only" in told and "--record" in told
-    assert study.in_child(lambda: Record.open(path).outcome(study.key_of(1)) == study.outcome(1), ordinary=True) == "True"
+    assert study.in_child(lambda: reads(path, study), ordinary=True) == "True"
     assert path.read_bytes() == before
 
 
@@ -178,7 +183,7 @@ def test_a_read_only_folder(open_folder: Path, study: SimpleNamespace) -> None:
         open_folder.chmod(0o555)
         for file in open_folder.iterdir():
             file.chmod(0o444)
-        assert study.in_child(lambda: Record.open(path).outcome(study.key_of(1)) == study.outcome(1), ordinary=True) == "True"
+        assert study.in_child(lambda: reads(path, study), ordinary=True) == "True"
         open_folder.chmod(0o755)
         for file in open_folder.iterdir():
             file.chmod(0o644)
@@ -186,7 +191,7 @@ def test_a_read_only_folder(open_folder: Path, study: SimpleNamespace) -> None:
     for way in (lambda: Record.resume(path, study.plan()), lambda: Record.create(open_folder / "new", study.plan())):
         told = study.in_child(way, ordinary=True)
         assert told.startswith("RecordError") and "may not be written in" in told and "--record" in told
-    assert study.in_child(lambda: Record.open(path).outcome(study.key_of(1)) == study.outcome(1), ordinary=True) == "True"
+    assert study.in_child(lambda: reads(path, study), ordinary=True) == "True"
     # left open by a killed driver
     open_folder.chmod(0o755)
     path.write_bytes(base)
