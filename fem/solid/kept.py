@@ -14,7 +14,7 @@ from geometry.budget import Budget
 class KeptSystem:
     """Keeps the last held system with its factor, for `fem.solid.solve_solid`.
 
-    It is used again only where the very same equations would be set up: one mesh (the same object), the same stiffness
+    It is used again only where the very same equations would be set up: the same mesh, the same stiffness
     and constraint matrices bit by bit, the same budget and choice of solver; so the solution is the same bit by bit.
     Prescribed values of the supports may differ. A system that has changed its solver on the way is not used again.
     """
@@ -44,7 +44,8 @@ class KeptSystem:
         return (
             before is not None
             and system.solver is self._solver
-            and before.mesh is model.mesh
+            and np.array_equal(before.mesh.nodes, model.mesh.nodes)
+            and np.array_equal(before.mesh.tets, model.mesh.tets)
             and np.array_equal(before.K.indices, model.K.indices)
             and np.array_equal(before.K.blocks, model.K.blocks)
             and _equal(before.constraints.T, model.constraints.T)

@@ -105,12 +105,12 @@ def _straight_rows(  # type: ignore[no-untyped-def]
                 t = load(gradients, own + four * np.uint64(carriers[b, 1]), 4)
                 v = times_plus(factors[a, b, 0, 0], r, times(factors[a, b, 0, 1], t))
                 w = times_plus(factors[a, b, 1, 0], r, times(factors[a, b, 1, 1], t))
-                k = np.uint64(slot[j])
-                store(P, k, times_plus(px, v, times_plus(qx, w, load(P, k, 4))))
-                k += four
-                store(P, k, times_plus(py, v, times_plus(qy, w, load(P, k, 4))))
-                k += four
-                store(P, k, times_plus(pz, v, times_plus(qz, w, load(P, k, 4))))
+                at = np.uint64(slot[j])
+                store(P, at, times_plus(px, v, times_plus(qx, w, load(P, at, 4))))
+                at += four
+                store(P, at, times_plus(py, v, times_plus(qy, w, load(P, at, 4))))
+                at += four
+                store(P, at, times_plus(pz, v, times_plus(qz, w, load(P, at, 4))))
         for k in range(count):
             isotropic(P, np.uint64(12 * k), lam, mu, blocks, begin + k)
 

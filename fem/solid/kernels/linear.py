@@ -46,12 +46,12 @@ def _linear_rows(  # type: ignore[no-untyped-def]
                 if j < i:
                     continue
                 g = load(gradients, own + four * np.uint64(b), 4)
-                k = np.uint64(slot[j])
-                store(P, k, times_plus(x, g, load(P, k, 4)))
-                k += four
-                store(P, k, times_plus(y, g, load(P, k, 4)))
-                k += four
-                store(P, k, times_plus(z, g, load(P, k, 4)))
+                at = np.uint64(slot[j])
+                store(P, at, times_plus(x, g, load(P, at, 4)))
+                at += four
+                store(P, at, times_plus(y, g, load(P, at, 4)))
+                at += four
+                store(P, at, times_plus(z, g, load(P, at, 4)))
         for k in range(count):
             isotropic(P, np.uint64(12 * k), lam, mu, blocks, begin + k)
 

@@ -80,11 +80,12 @@ def _one_case(part: Any) -> Any:
 
 def _warm_up(budget: Any, modes: int) -> None:
     from fem.solid.model import build_model
+    from fem.solid.node_order import in_order
     from fem.solid.solve import solve_solid
     from fem.solid.system import HeldSystem
 
     part = meshes.part_of(SHAPES["box"])
-    mesh = meshes.structured(part, WARM)
+    mesh, _ = in_order(meshes.structured(part, WARM))
     model = build_model(part, mesh, budget.threads)
     for choice in ("cholesky", "multigrid"):
         system = HeldSystem(model.K, model.constraints, mesh, budget, choice)
@@ -104,15 +105,18 @@ def _loads(model: Any) -> Any:
 def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, modes: int) -> None:
     """Mesh arrays to displacements: one right-hand side, then all six on the same set-up, then natural modes."""
     from fem.solid.model import build_model
+    from fem.solid.node_order import in_order
     from fem.solid.system import HeldSystem
 
     memory, clock = PeakMemory(), Clock()
     with Watch(STAGES) as watch:
-        building, model = clocked(lambda: build_model(part, mesh, budget.threads))
+        ordering, (ordered, number) = clocked(lambda: in_order(mesh))
+        building, model = clocked(lambda: build_model(part, ordered, budget.threads))
+        building += ordering
     loads = _loads(model)
     first = np.ascontiguousarray(loads[:, [case.name for case in part.cases].index(FIRST_CASE)][:, None])
     with Watch(INSIDE, MOVED, WHOLE) as inside:
-        setting_up, system = clocked(lambda: HeldSystem(model.K, model.constraints, mesh, budget, choice))
+        setting_up, system = clocked(lambda: HeldSystem(model.K, model.constraints, ordered, budget, choice))
         in_set_up = dict(inside.seconds)
         solving, solution = clocked(lambda: system.solve(first))
     try:
@@ -137,7 +141,7 @@ def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, m
             iterations=system.solver.iterations,
             residual=solution.residual,
             gauge=solution.gauge,
-            **answer(solution.u.reshape(-1, 3).T, end),
+            **answer(solution.u.reshape(-1, 3).T[:, number], end),
         )
         six, _ = clocked(lambda: system.solve(np.ascontiguousarray(loads)))
         tell(solve_six=six, six_over_one=six / solving, six_iterations=system.solver.iterations)
@@ -150,14 +154,17 @@ def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, m
 def _other(part: Any, mesh: Any, budget: Any, tell: Tell) -> None:
     """Set-up and solution of one case by either solver: whether the right one was chosen."""
     from fem.solid.model import build_model
+    from fem.solid.node_order import in_order
     from fem.solid.system import HeldSystem
 
+    end = np.unique(mesh.facets["bar.end"])
+    mesh, number = in_order(mesh)
     model = build_model(_one_case(part), mesh, budget.threads)
     for choice in ("multigrid", "cholesky"):
         seconds, system = clocked(lambda name=choice: HeldSystem(model.K, model.constraints, mesh, budget, name))
         try:
             solving, solution = clocked(lambda held=system: held.solve(np.ascontiguousarray(_loads(model))))
-            found = answer(solution.u.reshape(-1, 3).T, np.unique(mesh.facets["bar.end"]))
+            found = answer(solution.u.reshape(-1, 3).T[:, number], end)
             tell(**{choice: {"seconds": seconds + solving, "name": system.solver.name, **found}})
         finally:
             system.close()

@@ -8,6 +8,7 @@ from typing import Any
 from solver_timing.watch import Bytes
 
 STAGES: Mapping[str, Sequence[str]] = {
+    "order": ["fem.solid.node_order:in_order"],
     "checks": ["fem.solid.model:check_mesh"],
     "pattern": ["fem.solid.kernels.pattern:incidence", "fem.solid.kernels.pattern:upper_pattern"],
     "assembly": ["fem.solid.stiffness:stiffness_matrix"],
