@@ -1,7 +1,7 @@
 """Keys: what a variant is known by.
 
 The key of a variant holds the content of its resolved part, not its text: ``"5 cm"`` and ``"50 mm"`` are one. A
-title, a comment, the order of tables that are looked up by name, or a parameter that nothing uses do not count.
+title, a comment, or a parameter that nothing uses do not count.
 """
 
 from __future__ import annotations

@@ -177,7 +177,8 @@ def _range(reading: Reading, where: str, table: VariedSpec, mark: OfKind, draft:
         reading.problem(where, f"{steps} steps", "steps that fall on whole numbers")
         return []
     texts = [draft.written(low + (high - low) * k / steps) for k in range(steps + 1)]
-    texts[0], texts[-1] = table.low, table.high
+    texts[0], texts[-1] = (end if isinstance(end, str) else text
+                           for end, text in ((table.low, texts[0]), (table.high, texts[-1])))  # fmt: skip
     numbers = [reading.number(where, text, mark) for text in texts]
     return [(text, number) for text, number in zip(texts, numbers, strict=True) if number is not None]
 
