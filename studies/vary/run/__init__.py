@@ -7,8 +7,10 @@ disk).
 """
 
 from studies.vary.run.backend import Backend, BackendLost, Hear
+from studies.vary.run.keeping import kept_run, runs_folder
 from studies.vary.run.progress import Happening, Progress
 from studies.vary.run.study import StudyStopped, vary
 from studies.vary.run.summary import Ranked, Summary
 
-__all__ = ["Backend", "BackendLost", "Happening", "Hear", "Progress", "Ranked", "StudyStopped", "Summary", "vary"]
+__all__ = ["Backend", "BackendLost", "Happening", "Hear", "Progress", "Ranked", "StudyStopped", "Summary", "kept_run", "runs_folder",
+           "vary"]
