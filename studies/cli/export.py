@@ -29,7 +29,7 @@ def _export(options: argparse.Namespace) -> int:
     if file.exists() and not options.replace:
         raise HaunchError(f"{file} exists already; choose another name, or give --replace")
     with Record.open(options.record, options.study) as record:
-        writers[file.suffix](record, file)
+        writers[file.suffix](record, file, options.replace)
         progress = record.progress()
     print(f"{progress.finished + progress.failed} of {progress.points} points are in {file}")
     return 0

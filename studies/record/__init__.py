@@ -10,7 +10,9 @@ from studies.record.errors import (
     RecordFullError,
     RecordHeldError,
 )
+from studies.record.export import export_csv, export_parquet
 from studies.record.reader import LeftOut, Point, Progress, Record, Study
+from studies.record.rescue import Rescued, rescue
 from studies.record.writer import Writer
 
 __all__ = [
@@ -23,6 +25,10 @@ __all__ = [
     "RecordError",
     "RecordFullError",
     "RecordHeldError",
+    "Rescued",
     "Study",
     "Writer",
+    "export_csv",
+    "export_parquet",
+    "rescue",
 ]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import shlex
 import sqlite3
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -32,11 +33,12 @@ class RecordBusyError(RecordError):
 
 def damaged(path: Path, what: str) -> RecordDamagedError:
     """The error for a record in which `what` was found."""
+    new = shlex.quote(str(rescued_name(path)))
     return RecordDamagedError(
         f"the record {path} is damaged: {what}. It is refused, for a wrong figure is worse than none.\n"
         f"  1. a copy of the file from before (with its {path.name}-wal, if there is one): put it in its place\n"
-        f"  2. keep what is whole: haunch rescue {path} {rescued_name(path)}, then give --record "
-        f"{rescued_name(path)}; what was lost is computed again")
+        f"  2. keep what is whole: haunch rescue {shlex.quote(str(path))} {new}, then give --record {new}; what "
+        "was lost is computed again")
 
 
 def rescued_name(path: Path) -> Path:

@@ -24,6 +24,10 @@ if TYPE_CHECKING:
     from studies.record.writer import Writer
 
 
+MOST_AT_ONCE = 500
+"""Outcomes held at a time while all of them are gone through."""
+
+
 class Varied(NamedTuple):
     """What a study varies: its name in the plan, how to call it, and the unit to show it in."""
 
@@ -191,9 +195,12 @@ class Record:
 
     def outcomes(self) -> Iterator[tuple[Point, Outcome]]:
         """Each point of the study that has an outcome, in order."""
-        for point in self.points():
-            if (outcome := self.outcome(point.key)) is not None:
-                yield point, outcome
+        names, last = [varied.name for varied in self.study().varied], -1
+        while rows := self._rows(
+                "SELECT p.number, p.key, p.given, p.numbers, v.outcome FROM points p JOIN variants v ON v.key = p.key "
+                "WHERE p.study = ? AND p.number > ? ORDER BY p.number LIMIT ?", self._study, last, MOST_AT_ONCE):
+            yield from ((_point(names, *row), unpacked(outcome)) for *row, outcome in rows)
+            last = rows[-1][0]
 
     def spec(self, key: str) -> dict[str, Any] | None:
         """The tables of the spec of a variant that has an outcome."""
@@ -215,7 +222,10 @@ class Record:
 
     def failed(self) -> list[tuple[Point, Outcome]]:
         """The points of this study that failed, in order."""
-        return [(point, outcome) for point, outcome in self.outcomes() if outcome.status == "failed"]
+        names = [varied.name for varied in self.study().varied]
+        return [(_point(names, *row), unpacked(outcome)) for *row, outcome in self._rows(
+            "SELECT p.number, p.key, p.given, p.numbers, v.outcome FROM points p JOIN variants v ON v.key = p.key "
+            "WHERE p.study = ? AND v.status = 'failed' ORDER BY p.number", self._study)]
 
     def events(self) -> list[tuple[str, str]]:
         """What happened to this study, and when."""

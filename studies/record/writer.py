@@ -18,7 +18,7 @@ from studies.record.reader import Record
 from studies.record.rows import columns_of, plain_json, point_row, put_columns, put_event, put_point, put_variant
 from studies.record.schema import make_tables, upgrade
 from studies.record.seal import seal, text
-from studies.record.whole import refuse_damaged
+from studies.record.whole import Row, refuse_damaged
 from studies.vary.outcome import Outcome
 from studies.vary.variant import Variant
 
@@ -154,10 +154,9 @@ class Writer(Record):
     def set_points(self, variants: Iterable[Variant]) -> None:
         """Write the points of the plan; those that are there are kept, with their new keys where those changed."""
         with self._change() as db:
-            there = dict(db.execute("SELECT number, seal FROM points WHERE study = ?", (self._study,)).fetchall())
             for variant in variants:
                 row = point_row(self._study, self._names, variant)
-                if there.get(variant.number) != row[-1]:
+                if _seal_there(db, row) != row[-1]:
                     put_point(db, self._names, row)
 
     def set_left_out(self, entries: Iterable[tuple[int, Mapping[str, Any], str]]) -> None:
@@ -191,10 +190,10 @@ class Writer(Record):
 
     def _add_point(self, db: sqlite3.Connection, variant: Variant) -> None:
         row = point_row(self._study, self._names, variant)
-        there = db.execute("SELECT seal FROM points WHERE study = ? AND number = ?", row[:2]).fetchone()
+        there = _seal_there(db, row)
         if there is None:
             put_point(db, self._names, row)
-        elif there[0] != row[-1]:
+        elif there != row[-1]:
             raise RecordError(f"point {variant.number} of the study {self.title!r} in the record {self.path} has other "
                               "values or was made by other versions: nothing was written; give the same command again")
 
@@ -207,3 +206,9 @@ class Writer(Record):
         """Write an event of this study with its time."""
         with self._change() as db:
             put_event(db, self._study, what)
+
+
+def _seal_there(db: sqlite3.Connection, row: Row) -> bytes | None:
+    """The seal of the point that is in the record with the number of `row`."""
+    found = db.execute("SELECT seal FROM points WHERE study = ? AND number = ?", row[:2]).fetchone()
+    return found[0] if found else None
