@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.solid.frame import member_frame
+from fem.solid.kernels.mesh_graph import add_facets
 from fem.solid.line_traction import line_traction
 from fem.solid.piece import SurfacePiece, piece_forces
 from fem.solid.region import Region, surface_region
@@ -257,8 +258,8 @@ def _size(mesh: NamedMesh, region: Region) -> float:
     return float(np.linalg.norm(np.ptp(mesh.nodes[:, region.nodes], axis=1)))
 
 
-def surface_vector(mesh: NamedMesh, piece: SurfacePiece) -> Array:
-    """(n, 3) consistent nodal forces of a traction, N."""
-    forces, nodes = piece_forces(mesh.nodes, piece), piece.facets.ravel()
-    n = mesh.nodes.shape[1]
-    return np.stack([np.bincount(nodes, weights=forces[:, i].ravel(), minlength=n) for i in range(3)], axis=1)
+def surface_vector(mesh: NamedMesh, piece: SurfacePiece, out: Array | None = None) -> Array:
+    """(n, 3) consistent nodal forces of a traction, N; added to `out` where it is given."""
+    out = np.zeros((mesh.nodes.shape[1], 3)) if out is None else out
+    add_facets(piece.facets, piece_forces(mesh.nodes, piece), out)
+    return out

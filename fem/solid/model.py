@@ -5,10 +5,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-import scipy.sparse as sp
-from scipy.sparse.csgraph import connected_components
 
 from fem.solid.block_matrix import BlockMatrix
+from fem.solid.kernels.mesh_graph import pieces
 from fem.solid.load import SolidLoad, solid_loads, surface_vector
 from fem.solid.mass import node_integrals, node_volumes
 from fem.solid.shape import Array
@@ -71,19 +70,13 @@ def check_mesh(mesh: NamedMesh) -> None:
             f"The mesh has {idle.size} unused nodes, the first one at "
             f"{np.round(mesh.nodes[:, idle[0]], 3).tolist()} mm. Mesh the part again."
         )
-    corners = np.zeros(n, dtype=np.int32)
-    corners[mesh.tets[:4]] = 1
-    number = np.cumsum(corners, dtype=np.int32) - 1  # of each corner node: the others need not be looked at
-    m, count = mesh.tets.shape[1], int(number[-1]) + 1
-    first, others = np.tile(number[mesh.tets[0]], 3), number[mesh.tets[1:4]].ravel()
-    graph = sp.coo_matrix((np.ones(3 * m, dtype=np.int8), (first, others)), shape=(count, count))
-    pieces, label = connected_components(graph, directed=False)
-    if pieces > 1:
-        of_node = np.empty(n, dtype=np.int32)
-        of_node[mesh.tets] = label[number[mesh.tets[0]]]
-        sizes = np.sort(np.bincount(of_node))[::-1]
+    piece = pieces(mesh.tets[:4], n)
+    if (piece[mesh.tets[0]] != piece[mesh.tets[0, 0]]).any():
+        of_node = np.empty(n, dtype=np.int64)
+        of_node[mesh.tets] = piece[mesh.tets[0]]
+        sizes = np.sort(np.unique(of_node, return_counts=True)[1])[::-1]
         raise SolveError(
-            f"The mesh is in {pieces} pieces that do not touch (nodes in each: "
+            f"The mesh is in {sizes.size} pieces that do not touch (nodes in each: "
             f"{', '.join(map(str, sizes[:5]))}). The members do not meet."
         )
 
@@ -113,9 +106,10 @@ def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
     volume, first = node_volumes(integrals[:, 0], mesh.nodes)
     vectors = np.zeros((len(loads), mesh.nodes.shape[1], 3))
     for k, load in enumerate(loads.values()):
-        vectors[k] = material.density * integrals[:, :1] * load.force_per_mass
+        if load.force_per_mass.any():
+            np.multiply(material.density * integrals[:, :1], load.force_per_mass, out=vectors[k])
         for piece in load.pieces:
-            vectors[k] += surface_vector(mesh, piece)
+            surface_vector(mesh, piece, vectors[k])
     factors = np.array([[case.factors.get(name, 0.0) for name in loads] for case in part.cases]).reshape(
         len(part.cases), len(loads)
     )

@@ -7,11 +7,14 @@ from dataclasses import replace
 import numpy as np
 import pytest
 from kernel_help import MESHES, NU, E, Plain, straight
+from scipy.sparse import coo_matrix
+from scipy.sparse.csgraph import connected_components
 from skfem import Basis, BilinearForm, ElementTetP1, ElementVector, LinearForm, MeshTet2
 from skfem.helpers import dot, eye, grad, sym_grad, trace
 from skfem.models.elasticity import lame_parameters, linear_elasticity
 
 from fem.solid.geometric import geometric_stiffness
+from fem.solid.kernels.mesh_graph import add_facets, pieces
 from fem.solid.mass import mass_matrix
 from fem.solid.model import check_mesh, mass_vector, thermal_vector
 from fem.solid.stiffness import CURVED_ORDER, element_groups, group_stresses, linear_stiffness, stiffness_matrix
@@ -174,3 +177,23 @@ def test_unused_nodes_and_detached_pieces_are_refused() -> None:
     both = replace(mesh, nodes=np.hstack([mesh.nodes, mesh.nodes + 99.0]), tets=np.hstack([mesh.tets, mesh.tets + n]))
     with pytest.raises(SolveError, match=f"2 pieces that do not touch .*{n}, {n}"):
         check_mesh(both)
+
+
+def test_pieces_are_those_of_the_graph() -> None:
+    rng = np.random.default_rng(8)
+    for _ in range(20):
+        elements = rng.integers(0, 60, size=(4, 12))
+        rows, columns = np.repeat(elements[:1], 3, axis=0).ravel(), elements[1:].ravel()
+        graph = coo_matrix((np.ones(rows.size), (rows, columns)), shape=(60, 60))
+        count, label = connected_components(graph, directed=False)
+        found = pieces(elements, 60)
+        assert np.unique(found).size == count
+        assert all(np.unique(found[label == k]).tolist() == [np.flatnonzero(label == k)[0]] for k in range(count))
+
+
+def test_forces_on_facets_add_up_at_their_nodes() -> None:
+    rng = np.random.default_rng(9)
+    facets, forces, out = rng.integers(0, 30, size=(6, 40)), rng.normal(size=(6, 3, 40)), rng.normal(size=(30, 3))
+    exact = out + np.array([np.bincount(facets.ravel(), forces[:, i].ravel(), 30) for i in range(3)]).T
+    add_facets(facets, forces, out)
+    assert gap(out, exact) < 1e-15
