@@ -8,7 +8,7 @@ from typing import Any, Literal
 
 from studies.vary.outcome import Outcome
 
-Sampling = Literal["grid", "one at a time", "latin hypercube", "sobol", "as made"]
+Sampling = Literal["grid", "one at a time", "latin hypercube", "sobol", "as made", "searched"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -80,6 +80,8 @@ class StudyData:
     ----------
     aim
         What is made least, or with `most` greatest, as the plan writes it: a kept figure, or a formula.
+    sampling
+        How the points were laid out; ``searched``: a search chose some of them, where it was promising.
     aim_unit
         Base unit of `Row.aim`; ``1`` for a formula.
     rows

@@ -7,10 +7,14 @@ Three measures, by how the points were laid out:
   share is what the sum of squares grows by when the levels are added last (type II), so that no value is credited
   with what it only shares with another; the rest is told as such.
 - ``one at a time``: the swing about the base. There is no variance to share out: the values never vary together.
-- sampled plans: first-order Sobol indices by the random balance design (RBD-FAST), which needs no sample of its own
-  design: S. Tarantola, D. Gatelli, T. Mara, Reliability Engineering and System Safety 91 (2006) 717-727; bias removed
-  after J.-Y. Tissot, C. Prieur, same journal 107 (2012) 205-213; SALib's code. A value with few levels, or without an
-  order, has its correlation ratio with the bias removed (T. L. Kelley's epsilon squared) in its place.
+- sampled plans: where the additive model with a cubic curve for each value leaves less than `ADDITIVE` of the variance
+  unexplained (adjusted for its number of constants), the variance of each curve over the sum of all and what is left:
+  the first-order Sobol indices of independent values, free of the chance by which a sample's values go together (the
+  way of polynomial chaos: B. Sudret, Reliability Engineering and System Safety 93 (2008) 964-979). Otherwise first-order
+  Sobol indices without any model, by the random balance design (RBD-FAST), which needs no sample of its own design:
+  S. Tarantola, D. Gatelli, T. Mara, Reliability Engineering and System Safety 91 (2006) 717-727; bias removed after
+  J.-Y. Tissot, C. Prieur, same journal 107 (2012) 205-213; SALib's code. There a value with few levels, or without an
+  order, has its correlation ratio with the bias removed (T. L. Kelley's epsilon squared).
 
 Sobol's own estimator needs Saltelli's sample and is not used.
 """
@@ -26,11 +30,16 @@ import numpy.typing as npt
 
 Floats = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]
-Kind = Literal["variance", "swing", "sampled", "correlation", "none"]
+Kind = Literal["variance", "swing", "curves", "sampled", "correlation", "none"]
 
 LEAST_SAMPLED = 32
 """Points below which a sampled plan gets rank correlations only: the indices scatter by more than 0.15 (set by trial
 on three functions with known indices)."""
+ADDITIVE = 0.1
+"""Share of the variance that the additive curves may leave over."""
+ROWS_A_CONSTANT = 3
+"""Points that the additive curves need for each of their constants (common practice, no source)."""
+RESAMPLES = 60
 FEW = 9
 """Values with fewer levels than this are taken by level."""
 MOST_ANALYSED = 4000
@@ -114,14 +123,28 @@ def effects(columns: Sequence[Floats], ordered: Sequence[bool], figure: Floats, 
 
 
 def _grid(xs: Sequence[Floats], ordered: Sequence[bool], y: Floats) -> Effects:
-    blocks = [_indicators(x) for x in xs]
-    total = float(((y - y.mean()) ** 2).sum())
-    unexplained = _residual(blocks, y)
-    shares = [(_residual(blocks[:i] + blocks[i + 1:], y) - unexplained) / total for i in range(len(blocks))]
-    together = unexplained / total
+    *shares, together = _additive([_indicators(x) for x in xs], y)
     shared = 1.0 - together - sum(shares)
     each = tuple(_along(x, y, _clean(s), 0.0, o) for x, s, o in zip(xs, shares, ordered, strict=True))
     return Effects("variance", int(y.size), each, _clean(together), shared if abs(shared) > 1e-9 else 0.0)
+
+
+def _additive(blocks: Sequence[Floats], y: Floats) -> list[float]:
+    """Share of the sum of squares that each block adds when it comes last, then what all leave over."""
+    total = float(((y - y.mean()) ** 2).sum())
+    if total == 0:
+        return [0.0] * (len(blocks) + 1)
+    left = _residual(blocks, y)
+    return [*((_residual([*blocks[:i], *blocks[i + 1:]], y) - left) / total for i in range(len(blocks))), left / total]
+
+
+def _curve(x: Floats, ordered: bool) -> Floats:
+    """(n, 3 or fewer) columns of a cubic without its constant; of a value without an order its levels."""
+    levels = np.unique(x).size
+    if not ordered:
+        return _indicators(x)
+    scaled = 2.0 * (x - x.min()) / (np.ptp(x) or 1.0) - 1.0
+    return np.polynomial.legendre.legvander(scaled, min(3, levels - 1))[:, 1:]
 
 
 def _indicators(x: Floats) -> Floats:
@@ -160,10 +183,15 @@ def _commonest(x: Floats) -> float:
 
 
 def _sampled(xs: Sequence[Floats], ordered: Sequence[bool], y: Floats) -> Effects:
+    some = np.linspace(0, y.size - 1, min(y.size, MOST_ANALYSED)).round().astype(np.int64)
+    curves = _curves([x[some] for x in xs], ordered, y[some])
+    if curves is not None:
+        shares, give, left = curves
+        each = [_along(x, y, _clean(s), g, o) for x, s, g, o in zip(xs, shares, give, ordered, strict=True)]
+        return Effects("curves", int(y.size), tuple(each), _clean(left))
     if y.size < LEAST_SAMPLED:
         return Effects("correlation", int(y.size),
                        tuple(_along(x, y, None, 0.0, o) for x, o in zip(xs, ordered, strict=True)))
-    some = np.linspace(0, y.size - 1, min(y.size, MOST_ANALYSED)).round().astype(np.int64)
     each = []
     for x, o in zip(xs, ordered, strict=True):
         few = np.unique(x).size < FEW
@@ -173,6 +201,33 @@ def _sampled(xs: Sequence[Floats], ordered: Sequence[bool], y: Floats) -> Effect
     return Effects("sampled", int(y.size), tuple(each), together=max(0.0, 1.0 - total))
 
 
+def _curves(xs: Sequence[Floats], ordered: Sequence[bool], y: Floats) -> tuple[list[float], list[float], float] | None:
+    """Shares from additive curves, half widths of their 95 % intervals, and the share left over; None where the curves
+    do not explain enough, or there are too few points."""
+    blocks = [_curve(x, o) for x, o in zip(xs, ordered, strict=True)]
+    constants = 1 + sum(block.shape[1] for block in blocks)
+    if y.size < ROWS_A_CONSTANT * constants:
+        return None
+    *shares, left = _curve_shares(blocks, y)
+    if left > ADDITIVE:
+        return None
+    rng = np.random.default_rng(1)
+    again = [rng.integers(y.size, size=y.size) for _ in range(RESAMPLES)]
+    spread = np.std([_curve_shares([block[i] for block in blocks], y[i])[:-1] for i in again], axis=0)
+    return shares, [1.96 * float(s) for s in spread], left
+
+
+def _curve_shares(blocks: Sequence[Floats], y: Floats) -> list[float]:
+    """Variance of each curve, then of what all leave over, as shares of their sum."""
+    matrix = np.column_stack([np.ones(y.size), *blocks])
+    solution = np.linalg.lstsq(matrix, y, rcond=None)[0]
+    left = float(((y - matrix @ solution) ** 2).sum()) / (y.size - matrix.shape[1])
+    ends = np.cumsum([1, *(block.shape[1] for block in blocks)])
+    found = [float(np.var(block @ solution[a:b])) for block, a, b in zip(blocks, ends, ends[1:], strict=False)]
+    total = sum(found) + left
+    return [*(one / total for one in found), left / total] if total > 0 else [0.0] * (len(found) + 1)
+
+
 def _random_balance(x: Floats, y: Floats) -> tuple[float, float]:
     """First-order index and the half width of its 95 % interval."""
     from SALib.analyze import rbd_fast
@@ -180,15 +235,16 @@ def _random_balance(x: Floats, y: Floats) -> tuple[float, float]:
     if np.ptp(x) == 0:
         return 0.0, 0.0
     problem: dict[str, Any] = {"num_vars": 1, "names": ["x"], "bounds": [[float(x.min()), float(x.max())]]}
-    found = rbd_fast.analyze(problem, x[:, None], y, M=4 if y.size < 200 else 6, num_resamples=60, seed=1)
-    return float(found["S1"][0]), float(found["S1_conf"][0])
+    found = rbd_fast.analyze(problem, x[:, None], y, M=4 if y.size < 200 else 6, num_resamples=RESAMPLES, seed=1)
+    # SALib draws half as many points each time: its interval is wider by the root of two.
+    return float(found["S1"][0]), float(found["S1_conf"][0]) / 2**0.5
 
 
 def _by_level(x: Floats, y: Floats) -> tuple[float, float]:
     """Epsilon squared of the levels, and the half width of its 95 % interval by resampling."""
     _, places = np.unique(x, return_inverse=True)
     rng = np.random.default_rng(1)
-    again = [rng.integers(y.size, size=y.size) for _ in range(60)]
+    again = [rng.integers(y.size, size=y.size) for _ in range(RESAMPLES)]
     spread = float(np.std([_epsilon(places[i], y[i]) for i in again]))
     return _epsilon(places, y), 1.96 * spread
 

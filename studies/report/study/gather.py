@@ -144,7 +144,7 @@ def _left_out(record: Record) -> tuple[LeftOut, ...]:
 
 def _sampling(plan: Plan | None, points: list[Point], axes: tuple[Axis, ...]) -> Sampling:
     if plan is not None:
-        return plan.sampling.method
+        return plan.sampling.method if all(point.number <= plan.count() for point in points) else "searched"
     counts = [len({str(point.values.get(axis.name)) for point in points}) for axis in axes]
     return "grid" if math.prod(counts) <= 2 * len(points) else "latin hypercube"
 

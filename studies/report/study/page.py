@@ -48,15 +48,16 @@ def study_page(data: StudyData, pictures: Mapping[str, bytes] | None = None) -> 
     packed["effects"] = [_packed_effects(effect, factor_of(units.get(name, data.aim_unit)))
                          for name, effect in found.items()]
     packed["rows"] = ROWS
+    head = _head(data)
     own = "\n".join(_file(name) for name in SCRIPTS)
     plotly = _plotly()
     return _environment().get_template("page.html.jinja").render(
         data=data, ranking=ranking, counts=counts, top=top, top_values=_values(data, top.row),
         top_figures=_figures(top.row), pictures=_inline(pictures or {}),
-        ranked=[_ranked(data, row) for row in ranking.meeting[:ROWS]], nearest=_nearest(data, ranking),
-        head=_head(data), effects=_effect_rows(data, found), method=_method(data, found), scope=SCOPE,
+        ranked=[_ranked(data, row, head) for row in ranking.meeting[:ROWS]], nearest=_nearest(data, ranking),
+        head=head, effects=_effect_rows(data, found), method=_method(data, found), scope=SCOPE,
         conventions=CONVENTIONS, json=_safe_json(packed), plotly=plotly, script=own, style=_file("page.css"),
-        hashes=" ".join(f"'sha256-{_sha(text)}'" for text in (plotly, own)), compact=len(_head(data)) > 13,
+        hashes=" ".join(f"'sha256-{_sha(text)}'" for text in (plotly, own)), compact=len(head) > 13,
     )
 
 
@@ -134,29 +135,34 @@ def _head(data: StudyData) -> list[dict[str, Any]]:
     ]
 
 
-def _ranked(data: StudyData, row: Row) -> list[dict[str, Any]]:
+def _ranked(data: StudyData, row: Row, head: list[dict[str, Any]]) -> list[dict[str, Any]]:
     """One row of the ranking, as the script writes it too."""
     outcome = row.outcome
     assert outcome is not None
-    units = figure_units(data)
-    cells = [str(row.number)]
-    cells += [value_text(axis, row).removesuffix(f" {axis.unit}") if axis.numeric else value_text(axis, row)
-              for axis in data.axes]
-    if data.aim not in units:
-        cells.append(number(row.aim, data.aim_unit))
-    cells += [number(_solid(row, name), unit) for name, unit in units.items()]
+    axes = {axis.name: axis for axis in data.axes}
+    cells = []
+    for column in head[:-4]:
+        kind, _, name = column["key"].partition(":")
+        if kind == "axis":
+            text = value_text(axes[name], row)
+            cells.append(text.removesuffix(f" {axes[name].unit}") if axes[name].numeric else text)
+        elif kind == "figure":
+            kept = outcome.figures.get(name)
+            cells.append("-" if kept is None else number(kept.solid, kept.unit))
+        else:
+            cells.append(str(row.number) if kind == "number" else number(row.aim, data.aim_unit))
     held = governing(outcome)
     left = "-" if held is None or held.margin is None else number(100 * held.margin, "")
     word = "suspicious" if outcome.suspicions else outcome.judgement or "agrees"
     cells += [left, held.name if held is not None else "-", marked("met") if outcome.limits else "none set",
               marked(word)]
-    return [{"text": text, "number": column["number"]} for text, column in zip(cells, _head(data), strict=True)]
+    return [{"text": text, "number": column["number"]} for text, column in zip(cells, head, strict=True)]
 
 
 def _nearest(data: StudyData, ranking: Ranking) -> list[dict[str, str]]:
     if ranking.meeting:
         return []
-    return [{"number": str(row.number), "values": ", ".join(_value_pairs(data, row)), "aim": aim_text(data, row),
+    return [{"number": str(row.number), "point": ", ".join(_value_pairs(data, row)), "aim": aim_text(data, row),
              "limit": governs_text(row.outcome), "word": marked(row.outcome.judgement)}
             for row in ranking.misses[:NEAREST] if row.outcome is not None and row.outcome.judgement]
 

@@ -78,7 +78,7 @@ def _value(data: StudyData, axis: Axis, effect: Effect, place: int) -> str:
 def _rest(found: Effects) -> list[str]:
     rest = []
     if found.together is not None and found.together >= HARDLY:
-        about = "About " if found.kind == "sampled" else ""
+        about = "About " if found.kind in ("sampled", "curves") else ""
         rest.append(f"{about}{percent(found.together)} comes from values together, from none by itself.")
     if found.shared is not None and abs(found.shared) >= NOT_CREDITED:
         rest.append(f"{percent(abs(found.shared))} cannot be credited to one value: points are missing, and the values "
@@ -90,13 +90,20 @@ def method(data: StudyData, kinds: Sequence[str], count: int) -> str:
     """How the measures were made, for the paragraph above them."""
     unsure = " Variants that failed have no figures and are left out; suspicious ones are in."
     left = " Points left out by constraints make the values depend on each other, which blurs the shares." \
-        if data.left_out and "sampled" in kinds else ""
+        if data.left_out and {"sampled", "curves"} & set(kinds) else ""
     if "variance" in kinds:
         text = "Shares of the variance over the grid, by an additive model with one constant a level (in a full grid " \
                "the first-order Sobol indices of the levels tried)."
     elif "swing" in kinds:
         text = "Largest less least of the figure while one value changes and all others stay at the base, as a share " \
                "of the figure at the base. Effects of values together cannot be seen in such a plan."
+    elif "curves" in kinds and "sampled" in kinds:
+        text = "Shares of the variance by an additive model with a cubic curve for each value, for figures of which " \
+               "it explains nine tenths; for the others first-order Sobol indices from the points as they are " \
+               "(random balance design, bias removed). Give or take: 95 % interval by resampling."
+    elif "curves" in kinds:
+        text = "Shares of the variance by an additive model with a cubic curve for each value; give or take: 95 % " \
+               "interval by resampling."
     elif "sampled" in kinds:
         text = "First-order Sobol indices from the points as they are (random balance design, bias removed; for " \
                "values of few levels the correlation ratio). Give or take: 95 % interval by resampling."
@@ -105,4 +112,6 @@ def method(data: StudyData, kinds: Sequence[str], count: int) -> str:
                f"({LEAST_SAMPLED} are needed)."
     else:
         text = "Fewer than two variants to compare, or figures that are all equal."
-    return text + left + unsure
+    chosen = " A search chose the points, most of them where they promised to be best: the shares are of those points." \
+        if data.sampling == "searched" else ""
+    return text + chosen + left + unsure

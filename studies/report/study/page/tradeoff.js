@@ -3,8 +3,9 @@ const SHAPES = {agrees: "circle", explained: "square", suspicious: "triangle-up"
 
 function markerOf(word, verdict) {
   const good = verdict === "met" || verdict === "";
-  if (good) return {symbol: SHAPES[word], size: 10, color: word === "suspicious" ? "#fbe3d3" : "#a9cfe6", line: {width: 1.6, color: word === "suspicious" ? RED : BLUE}};
-  return {symbol: SHAPES[word] + "-open" + (verdict === "not established" ? "-dot" : ""), size: 8, color: word === "suspicious" ? "#e59a66" : "#8a8a8a", line: {width: 1.1}};
+  const size = count > 2000 ? 5 : count > 400 ? 7 : 10;  // so that they can be told apart
+  if (good) return {symbol: SHAPES[word], size, color: word === "suspicious" ? "#fbe3d3" : "#a9cfe6", line: {width: size > 5 ? 1.6 : 0.7, color: word === "suspicious" ? RED : BLUE}};
+  return {symbol: SHAPES[word] + "-open" + (verdict === "not established" ? "-dot" : ""), size: 0.8 * size, color: word === "suspicious" ? "#e59a66" : "#8a8a8a", line: {width: size > 5 ? 1.1 : 0.6}};
 }
 
 // Not suspicious, and every limit met but those on the two figures drawn, which stand in the picture as lines.
@@ -47,7 +48,7 @@ function drawTradeoff() {
       name: `${plain(marked(word))}${verdict ? ", limits " + verdict : ""} (${places.length})`});
   }
   if (front.length > 1) traces.push({type: "scatter", mode: "lines", x: front.map((p) => across.values[p]), y: front.map((p) => up.values[p]),
-    line: {color: INK, width: 1.6}, hoverinfo: "skip", name: "best front"});
+    line: {color: INK, width: 2}, hoverinfo: "skip", name: "best front"});
   if (study.chosen >= 0 && known(study.chosen)) traces.push({type: "scatter", mode: "markers", x: [across.values[study.chosen]], y: [up.values[study.chosen]],
     customdata: [study.chosen], text: [summaryOf(study.chosen)], hoverinfo: "text", marker: {symbol: "circle-open", size: 22, color: INK, line: {width: 2}}, name: `variant ${study.number[study.chosen]}, at the top of this page`});
   const lines = [...limitLines(across, "x"), ...limitLines(up, "y")];
