@@ -51,12 +51,12 @@ class _Told(LentTemplate):
 
 
 _PLAIN = {
-    "title": "plain", "material": {"name": "S235"},
-    "members": {"bar": {"start": ["0 mm", "0 mm", "0 mm"], "end": ["100 mm", "0 mm", "0 mm"], "up": [0, 0, 1],
+    "title": "plain", "material": "S235",
+    "members": {"bar": {"from": ["0 mm", "0 mm", "0 mm"], "to": ["100 mm", "0 mm", "0 mm"],
                         "section": {"shape": "rectangle", "depth": "20 mm", "width": "10 mm"}}},
     "supports": {"wall": {"on": "bar.start", "hold": "all"}},
     "loads": {"tip": {"on": "bar.end", "force": ["0 N", "0 N", "-10 N"]}},
-    "cases": {"only": ["tip"]},
+    "cases": {"only": {"tip": 1.0}},
 }
 
 
