@@ -11,7 +11,7 @@ def register(commands: Commands[argparse.ArgumentParser]) -> None:
     """Add the command."""
     rescue = command(commands, "rescue", "save what is whole in a damaged record into a new one", _rescue)
     rescue.add_argument("record", metavar="RECORD", help="the damaged file; it is left as it is")
-    rescue.add_argument("new", metavar="NEW", help="file to write; `haunch vary PLAN.toml --record NEW` goes on with it")
+    rescue.add_argument("new", metavar="NEW", help="file to write; `haunch vary PLAN --record NEW` goes on with it")
 
 
 def _rescue(options: argparse.Namespace) -> int:

@@ -27,7 +27,7 @@ class Vfs(ctypes.Structure):
                 ("open", ctypes.c_void_p), ("delete", ctypes.c_void_p)]
 
 
-OPEN = ctypes.CFUNCTYPE(ctypes.c_int, ctypes.c_void_p, ctypes.c_char_p, ctypes.c_void_p, ctypes.c_int, ctypes.c_void_p)
+OPEN = ctypes.CFUNCTYPE(ctypes.c_int, ctypes.c_void_p, ctypes.c_void_p, ctypes.c_void_p, ctypes.c_int, ctypes.c_void_p)
 DELETE = ctypes.CFUNCTYPE(ctypes.c_int, ctypes.c_void_p, ctypes.c_char_p, ctypes.c_int)
 WRITES = ctypes.CFUNCTYPE(ctypes.c_int, ctypes.c_void_p, ctypes.c_void_p, ctypes.c_int, ctypes.c_int64)
 TRUNCATE = ctypes.CFUNCTYPE(ctypes.c_int, ctypes.c_void_p, ctypes.c_int64)
@@ -52,10 +52,10 @@ def listen(log: list[list[Any]]) -> None:
     vfs = library().sqlite3_vfs_find(None).contents
     opens, deletes = OPEN(vfs.open), DELETE(vfs.delete)
 
-    def opened(at: int, name: bytes | None, file: int, flags: int, out: int) -> int:
-        code = opens(at, name, file, flags, out)
+    def opened(at: int, name: int | None, file: int, flags: int, out: int) -> int:
+        code = opens(at, name, file, flags, out)  # it keeps the address of the name, so no copy will do
         if code == 0 and name:
-            _listen_to(log, Path(name.decode()).name, file)
+            _listen_to(log, Path(ctypes.string_at(name).decode()).name, file)
         return code
 
     def deleted(at: int, name: bytes, sync: int) -> int:
@@ -137,14 +137,15 @@ def _apply(files: dict[str, bytearray], lines: list[list[Any]], rng: random.Rand
 def main(path: str, count: int, synchronous: str) -> None:
     """Write a study of `count` variants, with a checkpoint every few of them, closed and resumed half-way."""
     sys.path.insert(0, str(Path(__file__).parent))
-    from conftest import P, outcome, variant
+    from small_study import P, outcome, variant
 
     from studies.record import Record
 
     log: list[list[Any]] = []
-    Record.create(path, P()).close()
-    start = Path(path).read_bytes()
     listen(log)
+    Record.create(path, P()).close()
+    start, making = Path(path).read_bytes(), log.copy()
+    log.clear()
     for part in (range(1, count // 2), range(count // 2, count + 1)):
         with Record.resume(path, P()) as record:
             record._db.execute("PRAGMA wal_autocheckpoint = 25")
@@ -154,7 +155,7 @@ def main(path: str, count: int, synchronous: str) -> None:
             for number in part:
                 record.add(variant(number), outcome(number))
                 log.append(["done", number])
-    json.dump({"start": base64.b64encode(start).decode(), "log": log}, sys.stdout)
+    json.dump({"start": base64.b64encode(start).decode(), "making": making, "log": log}, sys.stdout)
 
 
 if __name__ == "__main__":

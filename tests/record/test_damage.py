@@ -53,7 +53,7 @@ def test_changed_bytes_are_refused_or_harmless(tmp_path: Path, study: SimpleName
     whole, rng, refused = written(path, study), random.Random(5), 0
     with Record.open(path) as record:
         right = content(record)
-    for _ in range(300):
+    for _ in range(200):
         path.write_bytes(_changed(whole, rng))
         try:
             with Record.open(path) as record:
@@ -61,7 +61,7 @@ def test_changed_bytes_are_refused_or_harmless(tmp_path: Path, study: SimpleName
         except RecordError as error:
             assert "--record" in str(error)
             refused += 1
-    assert 150 < refused < 300  # many bytes are in use by nothing, or were zero before
+    assert 100 < refused < 200  # many bytes are in use by nothing, or were zero before
 
 
 def test_a_damaged_record_is_refused_with_the_way_out(tmp_path: Path, study: SimpleNamespace) -> None:
@@ -90,7 +90,7 @@ def test_a_damaged_record_is_refused_with_the_way_out(tmp_path: Path, study: Sim
 def test_whatever_was_damaged_what_is_saved_is_right(tmp_path: Path, study: SimpleNamespace) -> None:
     path, rng, best, saves = tmp_path / "arm.study", random.Random(6), 0, 0
     whole = written(path, study)
-    for k in range(60):
+    for k in range(30):
         path.write_bytes(_changed(_changed(whole, rng), rng))
         new = tmp_path / f"new-{k}.study"
         try:
@@ -106,7 +106,7 @@ def test_whatever_was_damaged_what_is_saved_is_right(tmp_path: Path, study: Simp
                 if study.key_of(number) in there:
                     assert record.outcome(study.key_of(number)) == study.outcome(number)
             best += saved.variants
-    assert saves > 40 and best > 0.8 * saves * COUNT  # a damaged page costs its own rows
+    assert saves > 20 and best > 0.8 * saves * COUNT  # a damaged page costs its own rows
 
 
 def test_a_shortened_file_is_refused(tmp_path: Path, study: SimpleNamespace) -> None:

@@ -57,7 +57,7 @@ def test_a_limit_on_the_size_of_files(tmp_path: Path, study: SimpleNamespace) ->
 FULL = """
 import sys, pathlib, shutil
 sys.path.insert(0, sys.argv[1])
-import conftest as study
+import small_study as study
 from studies.record import Record, RecordFullError
 folder, aside = pathlib.Path(sys.argv[2]), pathlib.Path(sys.argv[3])
 path, done = folder / "arm.study", 0

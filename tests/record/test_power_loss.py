@@ -31,11 +31,13 @@ reachable = pytest.mark.skipif(disk.library() is None or not hasattr(disk.librar
                                reason="the SQLite of this Python cannot be listened to")
 
 
-def written(tmp_path: Path, count: int, synchronous: str = "FULL") -> tuple[list[list[Any]], dict[str, bytes]]:
+def written(tmp_path: Path, count: int, synchronous: str = "FULL", which: str = "log"
+            ) -> tuple[list[list[Any]], dict[str, bytes]]:
+    """What the program of `disk` did to its files, and the new record."""
     run = subprocess.run([sys.executable, str(HERE / "disk.py"), str(tmp_path / "arm.study"), str(count), synchronous],
                          capture_output=True, text=True, timeout=120, check=True)
     told = json.loads(run.stdout)
-    return told["log"], {"arm.study": base64.b64decode(told["start"])}
+    return told[which], {"arm.study": base64.b64decode(told["start"])}
 
 
 def lost(log: list[list[Any]], start: dict[str, bytes], cut: int, seed: int, folder: Path,
@@ -84,6 +86,13 @@ def test_the_simulated_disk_does_lose_what_was_not_synced(tmp_path: Path, study:
     losses = [lost(log, start, cut, k, tmp_path / str(k), study)
               for k, cut in enumerate(_cuts(log, 20, random.Random(1)))]
     assert any(losses)
+
+
+@reachable
+def test_a_new_record_is_on_the_disk_before_it_has_its_name(tmp_path: Path) -> None:
+    log, _ = written(tmp_path, 1, which="making")
+    mine = [what for what, name, *_ in log if name == ".arm.study.new"]
+    assert mine.count("write") > 5 and mine[-1] == "sync"
 
 
 def test_rubbish_behind_the_last_commit_changes_nothing(tmp_path: Path, study: SimpleNamespace) -> None:

@@ -15,7 +15,7 @@ sys.path.insert(0, str(Path(__file__).parent))
 
 
 def main(path: str, first: str, last: str, between: str = "0") -> None:
-    from conftest import P, outcome, variant
+    from small_study import P, outcome, variant
 
     from studies.record import Record
 
