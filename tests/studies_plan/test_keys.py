@@ -81,10 +81,10 @@ def test_keys_do_not_depend_on_the_process():
     code = ("import sys; from geometry.spec import read_part; from studies.vary.plan.key import keys_of; "
             "print(*keys_of(read_part(sys.argv[1])))")
     path = str(Path(__file__).parents[2] / "studies" / "examples" / "camera_arm.toml")
-    for seed in ("1", "2"):
-        done = subprocess.run([sys.executable, "-c", code, path], capture_output=True, text=True, timeout=60, check=True,
-                              env={"PYTHONHASHSEED": seed, "PYTHONPATH": str(Path(__file__).parents[2])})
-        assert tuple(done.stdout.split()) == keys()
+    surroundings = {"PYTHONHASHSEED": "4711", "PYTHONPATH": str(Path(__file__).parents[2])}
+    done = subprocess.run([sys.executable, "-c", code, path], capture_output=True, text=True, timeout=60, check=True,
+                          env=surroundings)
+    assert tuple(done.stdout.split()) == keys()
 
 
 def test_the_way_variants_are_made_gives_the_part_and_key_of_a_spec_written_out(plan):
@@ -94,7 +94,8 @@ def test_the_way_variants_are_made_gives_the_part_and_key_of_a_spec_written_out(
         text = ARM.replace('root_depth = "60 mm"', f'root_depth = "{variant.values["root_depth"]}"')
         text = text.replace('bore       = "14 mm"', f'bore = "{variant.values["bore"]}"')
         text = text.replace('web = "6 mm"', f'web = "{variant.values["members.arm.section.web"]}"')
-        assert (variant.key, variant.shape_key) == keys_of(part_from_text(text)) == keys_of(part_from_data(variant.data))
+        assert (variant.key, variant.shape_key) == keys_of(part_from_text(text))
+        assert (variant.key, variant.shape_key) == keys_of(part_from_data(variant.data))
 
 
 def test_the_key_of_a_study_holds_what_is_varied_and_not_the_aim_or_the_bounds(plan):
@@ -103,7 +104,8 @@ def test_the_key_of_a_study_holds_what_is_varied_and_not_the_aim_or_the_bounds(p
     same = (vary + '[aim]\nleast = "deflection"', vary + "[run]\nmemory = 4096", vary + "[keep]\nruns = { best = 1 }",
             'title = "Another"\n' + vary)
     other = ('[vary]\nbore = ["9 mm", "15 mm"]\n', vary + '[sampling]\nmethod = "one at a time"',
-             vary + '[limits]\nmass = "2 kg"', vary + '[tolerances]\nbore = "0.1 mm"', '[base]\nreach = "350 mm"\n' + vary,
+             vary + '[limits]\nmass = "2 kg"', vary + '[tolerances]\nbore = "0.1 mm"',
+             '[base]\nreach = "350 mm"\n' + vary,
              vary + '[constraints]\na = "bore < 20 mm"', vary + '[shop]\nleast_wall = "2 mm"')
     assert {plan(text).key for text in same} == {base}
     assert len({plan(text).key for text in other} | {base}) == len(other) + 1

@@ -10,6 +10,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from geometry.spec.model import PartSpec
+from geometry.spec.resolve.member import DIMS
 from geometry.spec.text.tokens import nearest
 from geometry.spec.words.structure import Path, at_path, below, model_of, words_of
 
@@ -66,6 +67,9 @@ def _is_word(parent: Path, data: Mapping[str, Any], step: str) -> bool:
     value: Any = data
     for above in parent:
         value = below(value, above)
+    if parent[-1:] == ("taper",) or parent[-2:-1] == ("stations",):
+        if step in DIMS.get(str(value_at(data, (*parent[:2], "section", "shape"))), ()):
+            return True
     model = model_of(at_path(PartSpec, data, parent) if parent else PartSpec, value)
     return model is not None and step in words_of(model)
 
