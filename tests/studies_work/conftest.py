@@ -34,7 +34,7 @@ def host(planted_path: None) -> Iterator[Host]:
         yield host
 
 
-@pytest.fixture
+@pytest.fixture(scope="session")
 def toys(planted_path: None) -> Iterator[Host]:
     """A host of two workers without kernels."""
     with Host(2, models="toy_models", cad="toy_kernel", mesh="toy_kernel") as host:

@@ -25,7 +25,7 @@ from geometry.process import LentTemplate
 from mesher.attempts import CHAIN
 from mesher.named_mesh import NamedMesh
 from mesher.solid_mesher import mesh_solid
-from studies.check.folder import refuse_existing, run_folder
+from studies.check.folder import refuse_existing, remove_stale, run_folder
 from studies.check.record import make_result
 from studies.check.result import CheckResult
 from studies.check.run import Models, write_run
@@ -210,6 +210,7 @@ def _outcome(order: Order, models: Models, verdict: Judgement, result: CheckResu
 def _write(out: Path, result: CheckResult, models: Models, clock: Clock, pictures: bool) -> None:
     out.parent.mkdir(parents=True, exist_ok=True)
     refuse_existing(out, True)
+    remove_stale(out)
     with run_folder(out, True) as room:
         write_run(room, result, models, clock, pictures)
 

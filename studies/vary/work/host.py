@@ -117,15 +117,18 @@ class Host:
     def _job(self, orders: Sequence[Order]) -> Iterator[Outcome | Ended]:
         """One job; gives at least one end, and none for the orders that a new job has to take up."""
         with self._idle:
-            room = self._room
-            if room is None or self._closing.is_set():
-                yield from (Ended(order.variant.key, "closed") for order in orders)
-                return
-            self._running += 1
+            room = None if self._closing.is_set() else self._room
+            self._running += room is not None
+        if room is None:
+            yield from (Ended(order.variant.key, "closed") for order in orders)
+            return
         client = f"{os.getpid()}-{next(self._clients)}"
-        folder = room.folder()
+        folder = room.path / client
         try:
-            yield from _Watch(self, orders, client, str(folder)).ends()
+            if fault := _made(folder):
+                yield from (Ended(order.variant.key, fault, "the temporary files") for order in orders)
+            else:
+                yield from _Watch(self, orders, client, str(folder)).ends()
         finally:
             for template in self.templates[1:]:
                 template.kill_client(client)
@@ -237,6 +240,8 @@ class _Watch:
             return self._complete(outcome)
         elif "ended" in message:
             name, module = message["ended"], message["module"]
+            if not module:
+                return Ended(self.order.variant.key, name, "the temporary files")
             if name == "lost":
                 code = _ended_soon(endings[module])
                 if code is not None and not ended_from_outside(code):
@@ -280,7 +285,9 @@ class _Watch:
         code = failure.code
         if self.host.closing:
             yield from self._ended(Ended("", "closed"))
-        elif code is not None and (name := ended_from_outside(code)):
+        elif code is None:  # short of processes or memory, or far too slow
+            yield from self._ended(Ended("", "not started", str(failure)))
+        elif name := ended_from_outside(code):
             yield from self._ended(Ended("", name, "the process that loads the solver"))
         else:
             yield from self._failed(f"crash: {failure} ({_how(code)})")
@@ -300,6 +307,15 @@ class _Watch:
 
     def _fault(self, reason: str) -> Outcome:
         return Outcome(self.order.variant.key, "failed", stage=self.stage, reason=reason, safer_mesh=self.order.safer)
+
+
+def _made(folder: Path) -> str:
+    """Make a folder; why it could not be made."""
+    try:
+        folder.mkdir()
+    except OSError as error:
+        return error.strerror or str(error)
+    return ""
 
 
 def _ended_soon(ended: Callable[[], int | None]) -> int | None:

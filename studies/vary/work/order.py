@@ -67,9 +67,10 @@ class Ended:
     key
         Of the variant.
     signal
-        ``SIGKILL`` and the like; ``closed`` when the host was closed.
+        ``SIGKILL`` and the like; ``closed`` when the host was closed; ``disk full``; ``not started`` where the system
+        gave no process.
     what
-        Which process it was.
+        Which process it was, or what else.
     """
 
     key: str

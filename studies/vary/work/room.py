@@ -8,35 +8,43 @@ import shutil
 import tempfile
 import time
 from contextlib import suppress
-from itertools import count
 from pathlib import Path
 
+from geometry.problem import RunError
+
 PREFIX, MARK = "haunch-study-", "in-use"
+LEAST_FREE = 1 << 20
+"""Bytes; a disk with less is called full."""
 _YOUNG = 60.0
 """Seconds in which a folder may still be without its mark."""
 
 
 class Room:
-    """A folder with one folder in it for each job."""
+    """A folder with one in it for each job."""
 
     def __init__(self) -> None:
         remove_stale()
-        self.path = Path(tempfile.mkdtemp(prefix=PREFIX))
-        self._mark = os.open(self.path / MARK, os.O_WRONLY | os.O_CREAT, 0o600)
+        try:
+            self.path = Path(tempfile.mkdtemp(prefix=PREFIX))
+            self._mark = os.open(self.path / MARK, os.O_WRONLY | os.O_CREAT, 0o600)
+        except OSError as error:
+            raise RunError("write", f"no temporary files can be written in {tempfile.gettempdir()} ({error.strerror}): "
+                                    "free some space, or name another folder in TMPDIR") from error
         with suppress(OSError):  # a file system without locks
             fcntl.flock(self._mark, fcntl.LOCK_EX | fcntl.LOCK_NB)
-        self._numbers = count(1)
-
-    def folder(self) -> Path:
-        """A new folder for a job."""
-        path = self.path / f"job-{next(self._numbers)}"
-        path.mkdir()
-        return path
 
     def close(self) -> None:
         """Remove everything."""
         remove(self.path)
         os.close(self._mark)
+
+
+def is_full(path: Path | str) -> bool:
+    """Whether the disk of a folder is full."""
+    try:
+        return shutil.disk_usage(path).free < LEAST_FREE
+    except OSError:
+        return False
 
 
 def remove(path: Path) -> None:

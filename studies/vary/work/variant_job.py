@@ -18,6 +18,7 @@ from typing import Any
 
 from geometry.process import Job, LentTemplate, share_lent
 from studies.vary.work import frames
+from studies.vary.work.room import is_full
 
 CAD, MESH = "studies.check.solid_child", "mesher._worker"
 """Modules of the other two templates, in the order in which they are lent."""
@@ -117,7 +118,15 @@ def _evaluate(orders: list[dict[str, Any]], cad: _Told, mesh: _Told, tell: Calla
                     if signal := template.ended():
                         tell({"ended": signal, "module": template.module})
                         raise EndedOutside
+            if outcome.status == "failed" and outcome.stage != "write" and _no_space(outcome.reason):
+                tell({"ended": "disk full", "module": ""})
+                raise EndedOutside
             tell({"outcome": outcome.to_json()})
+
+
+def _no_space(reason: str) -> bool:
+    """Whether the disk of the temporary files was full: no fault of the variant."""
+    return "No space left" in reason or "quota exceeded" in reason or is_full(tempfile.gettempdir())
 
 
 def _limit(memory: int) -> None:

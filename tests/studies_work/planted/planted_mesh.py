@@ -1,5 +1,6 @@
 """The real mesh template; the length of a part plants a fault."""
 
+import errno
 import os
 import signal
 import time
@@ -7,9 +8,9 @@ import time
 import mesher._worker as real
 from mesher._worker import prepare, serve
 
-__all__ = ["CRASHES", "CRASHES_ONCE", "WAITS", "prepare", "serve"]
-CRASHES, CRASHES_ONCE, WAITS = 61.0, 62.0, 63.0
-"""Lengths, mm: every attempt crashes; the first attempt crashes; never ends."""
+__all__ = ["CRASHES", "CRASHES_ONCE", "FULL", "WAITS", "prepare", "serve"]
+CRASHES, CRASHES_ONCE, WAITS, FULL = 61.0, 62.0, 63.0, 64.0
+"""Lengths, mm: every attempt crashes; the first attempt crashes; never ends; finds the disk full."""
 _HXT = 10
 _do = real._do
 
@@ -21,6 +22,8 @@ def _planted(job, room):
         os.kill(os.getpid(), signal.SIGSEGV)
     if length == WAITS:
         time.sleep(600)
+    if length == FULL:
+        raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
     return _do(job, room)
 
 
