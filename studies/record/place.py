@@ -44,7 +44,7 @@ def kind_of(path: Path, mounts: str | None = None) -> str:
 
 def is_network(kind: str) -> bool:
     """Is a file system of this kind shared by several machines?"""
-    return kind.removeprefix("fuse.") in NETWORK or kind.startswith(("nfs", "smb"))
+    return kind.removeprefix("fuse.") in NETWORK
 
 
 def refuse_network(path: Path, mounts: str | None = None) -> None:

@@ -135,7 +135,10 @@ def _apply(files: dict[str, bytearray], lines: list[list[Any]], rng: random.Rand
 
 
 def main(path: str, count: int, synchronous: str) -> None:
-    """Write a study of `count` variants, with a checkpoint every few of them, closed and resumed half-way."""
+    """Write a study of `count` variants, with a checkpoint every few of them, closed and resumed half-way.
+
+    `synchronous` is empty, or what to use in place of the writer's own setting.
+    """
     sys.path.insert(0, str(Path(__file__).parent))
     from small_study import P, outcome, variant
 
@@ -149,7 +152,8 @@ def main(path: str, count: int, synchronous: str) -> None:
     for part in (range(1, count // 2), range(count // 2, count + 1)):
         with Record.resume(path, P()) as record:
             record._db.execute("PRAGMA wal_autocheckpoint = 25")
-            record._db.execute(f"PRAGMA synchronous = {synchronous}")
+            if synchronous:
+                record._db.execute(f"PRAGMA synchronous = {synchronous}")
             if part.start == 1:
                 record.set_points(map(variant, range(1, count + 1)))
             for number in part:

@@ -31,7 +31,7 @@ reachable = pytest.mark.skipif(disk.library() is None or not hasattr(disk.librar
                                reason="the SQLite of this Python cannot be listened to")
 
 
-def written(tmp_path: Path, count: int, synchronous: str = "FULL", which: str = "log"
+def written(tmp_path: Path, count: int, synchronous: str = "", which: str = "log"
             ) -> tuple[list[list[Any]], dict[str, bytes]]:
     """What the program of `disk` did to its files, and the new record."""
     run = subprocess.run([sys.executable, str(HERE / "disk.py"), str(tmp_path / "arm.study"), str(count), synchronous],

@@ -34,6 +34,15 @@ def test_what_was_added_is_read_back(tmp_path: Path, study) -> None:
         told = record.progress()
         assert (told.points, told.finished, told.failed, told.waiting, told.left_out, told.fine) == (10, 2, 1, 7, 1, 2)
         assert record.study().plan_text == study.plan().text
+        wanted = [(study.key_of(3), 1.5, 100.5, "1", 1, 60003, 0)]
+        assert record._rows("SELECT key, seconds, peak_memory, worker, attempts, unknowns, safer_mesh FROM variants "
+                            "WHERE key = ?", study.key_of(3)) == wanted
+        assert record._rows("SELECT name, solid, beam, unit, judgement FROM figures f JOIN variants v ON "
+                            "v.id = f.variant WHERE key = ?", study.key_of(3)) == [
+            (name, *kept) for name, kept in sorted(study.outcome(3).figures.items())]
+        assert record._rows("SELECT l.name, quantity, given, found, unit, verdict, margin, l.reason FROM limits l JOIN "
+                            "variants v ON v.id = l.variant WHERE key = ?", study.key_of(3)) == [
+            tuple(held) for held in study.outcome(3).limits]
     assert [p.name for p in tmp_path.iterdir()] == ["arm.study"]  # nothing is left beside it
 
 
