@@ -37,7 +37,7 @@ def test_what_was_added_is_read_back(tmp_path: Path, study) -> None:
         wanted = [(study.key_of(3), 1.5, 100.5, "1", 1, 60003, 0)]
         assert record._rows("SELECT key, seconds, peak_memory, worker, attempts, unknowns, safer_mesh FROM variants "
                             "WHERE key = ?", study.key_of(3)) == wanted
-        assert record._rows("SELECT name, solid, beam, unit, judgement FROM figures f JOIN variants v ON "
+        assert record._rows("SELECT name, solid, beam, unit, f.judgement FROM figures f JOIN variants v ON "
                             "v.id = f.variant WHERE key = ?", study.key_of(3)) == [
             (name, *kept) for name, kept in sorted(study.outcome(3).figures.items())]
         assert record._rows("SELECT l.name, quantity, given, found, unit, verdict, margin, l.reason FROM limits l JOIN "
