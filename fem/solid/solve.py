@@ -80,7 +80,8 @@ def solve_solid(
     n = mesh.nodes.shape[1]
     total = (model.mechanical + model.thermal).reshape(len(cases), 3 * n).T
     if kept is None:
-        system = HeldSystem(model.K, model.constraints, mesh, budget, solver, backend)
+        count = None if part.vibration or part.buckling else len(cases)
+        system = HeldSystem(model.K, model.constraints, mesh, budget, solver, backend, count)
     else:
         system = kept.system(model, budget, solver, backend)
     try:

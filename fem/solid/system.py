@@ -68,6 +68,8 @@ class HeldSystem:
         ``auto``, or the solver that is wanted.
     backend
         Of the direct solver: ``auto`` (PARDISO where it is installed), ``pardiso`` or ``lu``.
+    cases
+        Right-hand sides, where they are all that the system will be asked for.
 
     Attributes
     ----------
@@ -93,6 +95,7 @@ class HeldSystem:
         budget: Budget,
         choice: Choice = "auto",
         backend: str = "auto",
+        cases: int | None = None,
     ) -> None:
         motions = free_motions(mesh, constraints)
         if motions:
@@ -105,8 +108,11 @@ class HeldSystem:
         self.mean_rows = sp.csr_matrix(constraints.rows @ self.T)
         self._nodes = mesh.nodes
         self._tets, self._budget, self._backend, self._choice = mesh.tets, budget, backend, choice
-        surface = np.unique(mesh.boundary).size
-        which, reason = choose(self.free, mesh.nodes.shape[1], surface, choice)
+        on_surface = np.zeros(mesh.nodes.shape[1], dtype=bool)
+        on_surface[mesh.boundary] = True
+        extents = np.sort(np.ptp(mesh.nodes, axis=1))
+        slender = float(extents[2] / extents[1])
+        which, reason = choose(self.free, on_surface.size, int(on_surface.sum()), choice, cases, slender)
         self.solver: Solver = self._direct(reason) if which == "cholesky" else self._iterative(reason)
 
     def _direct(self, reason: str) -> Solver:

@@ -279,6 +279,13 @@ def test_the_choice_and_its_reason() -> None:
     assert name == "multigrid"
     assert "7.0 nodes" in reason and "400000 unknowns" in reason
     assert choose(400_000, 140_000, 20_000, "cholesky")[0] == "cholesky"
+    name, reason = choose(50_000, 17_000, 11_000, "auto", 1, 6.0)  # thin, but a factor would serve one case
+    assert name == "multigrid" and "few load cases (1)" in reason and "6.0 times as long as broad" in reason
+    assert choose(50_000, 17_000, 11_000, "auto", 6, 6.0)[0] == "cholesky"
+    assert choose(50_000, 17_000, 11_000, "auto", None, 6.0)[0] == "cholesky"
+    assert choose(50_000, 17_000, 11_000, "auto", 1, 85.0)[0] == "cholesky"
+    assert choose(400_000, 140_000, 100_000, "auto", 1, 6.0)[0] == "cholesky"
+    assert choose(25_000, 8_500, 6_000, "auto", 1, 6.0)[0] == "cholesky"
     assert choose(10, 3, 3, "multigrid")[0] == "multigrid"
 
 
