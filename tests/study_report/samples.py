@@ -99,3 +99,25 @@ def ishigami(a: float, b: float, c: float) -> dict[str, float]:
     """T. Ishigami, T. Homma (1990) with 7 and 0.1: first-order indices 0.3139, 0.4424, 0."""
     x, y, z = (math.pi * (2 * t - 1) for t in ((a - 48) / 24, (b - 26) / 12, (c - 4) / 4))
     return {"mass": math.sin(x) + 7 * math.sin(y) ** 2 + 0.1 * z**4 * math.sin(x), "deflection": 1.0}
+
+
+def hostile() -> StudyData:
+    """Names, values and reasons that would do harm if a page took them for its own; an aim that is a formula."""
+    evil = "<script>document.body.dataset.harmed='yes'</script>"
+    axes = (Axis("web"), Axis(f"hold {evil}", numeric=False), Axis("a \"b' & `${1}` {{ 7 * 7 }}", "mm"))
+    words = ["all", ["x", "y"], f"{evil}", "</script><img src=x onerror=document.body.dataset.harmed=1>"]
+    rows = []
+    for number in range(1, 17):
+        values = {"web": number % 4 + 1.0, axes[2].name: float(number)}
+        found = {"mass": 1e-3 * number, "deflection": 1.0 / number, f"displacement_z@{evil}": -0.1 * number}
+        more: dict[str, Any] = {} if number % 5 else {"judgement": "suspicious",
+                                                      "suspicions": (f"{evil}: solid 1, beam 2",)}
+        result = outcome(str(number), found, {"deflection": 0.4}, cautions=(f"mind {evil}",), **more)
+        if number == 11:
+            result = Outcome("11", "failed", stage=evil, reason=f"{evil} \u2028 </script> ]]> -->")
+        rows.append(Row(number, {**values, axes[1].name: words[number % 4]}, values, result,
+                        result.figures["mass"].solid and 2.5 * number if result.figures else None,
+                        run="javascript:document.body.dataset.harmed=1//" if number == 3 else ""))
+    return StudyData(f"{evil} & co", f"{evil}.toml", "it's \"here\".study", "grid", axes, tuple(rows),
+                     aim=f"2.5 * mass / (1 kg) + {evil}", aim_unit="1", left_out=(LeftOut(evil, 2, (17,)),),
+                     tolerances={evil: evil}, notes=(evil,))

@@ -10,11 +10,11 @@ Three measures, by how the points were laid out:
 - sampled plans: where the additive model with a cubic curve for each value leaves less than `ADDITIVE` of the variance
   unexplained (adjusted for its number of constants), the variance of each curve over the sum of all and what is left:
   the first-order Sobol indices of independent values, free of the chance by which a sample's values go together (the
-  way of polynomial chaos: B. Sudret, Reliability Engineering and System Safety 93 (2008) 964-979). Otherwise first-order
-  Sobol indices without any model, by the random balance design (RBD-FAST), which needs no sample of its own design:
-  S. Tarantola, D. Gatelli, T. Mara, Reliability Engineering and System Safety 91 (2006) 717-727; bias removed after
-  J.-Y. Tissot, C. Prieur, same journal 107 (2012) 205-213; SALib's code. There a value with few levels, or without an
-  order, has its correlation ratio with the bias removed (T. L. Kelley's epsilon squared).
+  way of polynomial chaos: B. Sudret, Reliability Engineering and System Safety 93 (2008) 964-979). Otherwise
+  first-order Sobol indices without any model, by the random balance design (RBD-FAST), which needs no sample of its own
+  design: S. Tarantola, D. Gatelli, T. Mara, Reliability Engineering and System Safety 91 (2006) 717-727; bias removed
+  after J.-Y. Tissot, C. Prieur, same journal 107 (2012) 205-213; SALib's code. There a value with few levels, or
+  without an order, has its correlation ratio with the bias removed (T. L. Kelley's epsilon squared).
 
 Sobol's own estimator needs Saltelli's sample and is not used.
 """

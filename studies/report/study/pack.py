@@ -28,6 +28,10 @@ WORDS = ("agrees", "explained", "suspicious", "load check", "no beam value", "fa
 VERDICTS = ("met", "missed", "not established", "")
 
 
+DIGITS = 7
+"""Of the numbers that the page holds; it shows four."""
+
+
 class Texts:
     """Each text once; columns hold its number."""
 
@@ -68,7 +72,7 @@ def default_pair(data: StudyData, ranking: Ranking) -> tuple[str, str]:
 
 
 def pack(data: StudyData, ranking: Ranking) -> dict[str, Any]:
-    """Plain data, as the script reads them: one list a column, numbers in the units shown, six digits."""
+    """Plain data, as the script reads them: one list a column, numbers in the units shown, `DIGITS` digits."""
     texts = Texts()
     units = figure_units(data)
     outcomes = [row.outcome for row in data.rows]
@@ -171,10 +175,10 @@ def _seconds(outcome: Outcome) -> float:
 
 
 def _short(value: float) -> float | int | None:
-    """Six digits; None for what JSON has no number for."""
+    """Few digits; None for what JSON has no number for."""
     if not math.isfinite(value):
         return None
-    short = float(f"{value:.6g}")
+    short = float(f"{value:.{DIGITS}g}")
     return int(short) if short == int(short) and abs(short) < 1e15 else short
 
 

@@ -16,12 +16,12 @@ from studies.report.study.answer import Answer, aim_text, answer, governs_text
 from studies.report.study.counts import count
 from studies.report.study.data import Row, StudyData
 from studies.report.study.effects import Effects, effects
-from studies.report.study.pack import figure_units, pack
+from studies.report.study.pack import DIGITS, figure_units, pack
 from studies.report.study.ranking import Ranking, finished, governing, level, levels, rank
 from studies.report.study.readings import method, reading
 from studies.report.study.words import capital, clock, counted, factor_of, figure_words, percent, value_text
 from studies.report.summary import CONVENTIONS, SCOPE
-from studies.report.tables import MARKS, marked, number, readable, shown_unit
+from studies.report.tables import MARKS, digits, marked, readable, shown_unit
 
 SCRIPTS = ("base.js", "ranking.js", "variant.js", "tradeoff.js", "effects.js", "parallel.js", "start.js")
 ROWS = 25
@@ -148,15 +148,20 @@ def _ranked(data: StudyData, row: Row, head: list[dict[str, Any]]) -> list[dict[
             cells.append(text.removesuffix(f" {axes[name].unit}") if axes[name].numeric else text)
         elif kind == "figure":
             kept = outcome.figures.get(name)
-            cells.append("-" if kept is None else number(kept.solid, kept.unit))
+            cells.append(_cell(None if kept is None else kept.solid, kept.unit if kept is not None else ""))
         else:
-            cells.append(str(row.number) if kind == "number" else number(row.aim, data.aim_unit))
+            cells.append(str(row.number) if kind == "number" else _cell(row.aim, data.aim_unit))
     held = governing(outcome)
-    left = "-" if held is None or held.margin is None else number(100 * held.margin, "")
+    left = _cell(None if held is None or held.margin is None else 100 * held.margin, "")
     word = "suspicious" if outcome.suspicions else outcome.judgement or "agrees"
     cells += [left, held.name if held is not None else "-", marked("met") if outcome.limits else "none set",
               marked(word)]
     return [{"text": text, "number": column["number"]} for text, column in zip(cells, head, strict=True)]
+
+
+def _cell(value: float | None, unit: str) -> str:
+    """As the script writes it, from the digits that it is given."""
+    return "-" if value is None else digits(float(f"{factor_of(unit) * value:.{DIGITS}g}"))
 
 
 def _nearest(data: StudyData, ranking: Ranking) -> list[dict[str, str]]:

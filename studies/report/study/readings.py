@@ -112,6 +112,6 @@ def method(data: StudyData, kinds: Sequence[str], count: int) -> str:
                f"({LEAST_SAMPLED} are needed)."
     else:
         text = "Fewer than two variants to compare, or figures that are all equal."
-    chosen = " A search chose the points, most of them where they promised to be best: the shares are of those points." \
+    chosen = " A search chose the points, most of them where they promised to be best: shares are of those points." \
         if data.sampling == "searched" else ""
     return text + chosen + left + unsure

@@ -8,14 +8,18 @@ const placeOf = new Map(study.number.map((number, place) => [number, place]));
 // Four significant digits; whole numbers below ten million without a power of ten: as the tables of a run.
 function digits(value) {
   if (value === 0) return "0";
-  const size = Number(Math.abs(value).toExponential(3).split("e")[1]);
-  if (size >= 4) {
-    if (Math.abs(value) < 1e7) return String(Number(value.toPrecision(4)));
-    return tidy(value.toExponential(3));
-  }
-  if (size < -4) return tidy(value.toExponential(3));
-  const text = value.toPrecision(4);
-  return text.includes(".") ? text.replace(/\.?0+$/, "") : text;
+  const rounded = halfToEven(value);
+  const [front, power] = rounded.toExponential(3).split("e");
+  if (Number(power) < -4 || Math.abs(value) >= 1e7 && Number(power) >= 4) return tidy(`${front}e${power}`);
+  return String(rounded);
+}
+
+// A value half-way between two of four digits goes to the even one.
+function halfToEven(value) {
+  const [front, power] = value.toExponential(60).split("e");
+  const [, head, last, rest] = front.match(/^(-?\d\.\d\d)(\d)(\d*)$/);
+  if (!/^50*$/.test(rest) || Number(last) % 2) return Number(value.toPrecision(4));
+  return Number(`${head}${last}e${power}`);
 }
 
 function tidy(text) {
