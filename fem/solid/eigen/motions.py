@@ -15,6 +15,7 @@ from fem.solid.shape import Array
 from fem.solid.solver import Choice
 from fem.solid.solver.cholesky import spring_unknowns
 from fem.solid.solver.elimination import Elimination
+from fem.solid.solver.multigrid import MultigridSolver
 from fem.solid.support import Block, Constraints, build_constraints, rigid_map
 from fem.solid.system import HeldSystem
 from geometry.budget import Budget
@@ -79,6 +80,8 @@ def held_motions(system: HeldSystem, nodes: Array) -> Motions:
     K, eliminate = system.K, system.elimination
 
     def precondition(r: Array) -> Array:
+        if isinstance(system.solver, MultigridSolver) and system.solver.in_given_order:
+            return system.solver.precondition_nodes(r)
         return eliminate.expand(system.precondition(eliminate.gather(r)))
 
     return Motions(
