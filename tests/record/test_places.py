@@ -33,12 +33,12 @@ def reads(path: Path, study: SimpleNamespace) -> bool:
 
 MOUNTS = r"""22 27 0:21 / /proc rw,relatime - proc proc rw
 27 1 254:0 / / rw,relatime shared:1 - ext4 /dev/vda rw,discard
-40 27 0:40 / /home rw,relatime shared:5 master:2 - nfs4 server:/export/home rw,vers=4.2,addr=10.0.0.1
+40 27 0:40 / /data rw,relatime shared:5 master:2 - nfs4 server:/export/home rw,vers=4.2,addr=10.0.0.1
 41 27 0:41 / /srv/My\040Data rw - cifs //server/data rw,vers=3.1.1
 42 27 0:42 / /mnt/far rw,nosuid - fuse.sshfs me@host:/data rw,user_id=0
 43 27 0:43 / /mnt rw - tmpfs tmpfs rw
 44 27 0:44 / /mnt/shared rw - 9p share rw,trans=virtio
-45 40 254:1 / /home/me/scratch rw - xfs /dev/vdb rw
+45 40 254:1 / /data/me/scratch rw - xfs /dev/vdb rw
 46 27 0:46 / /over rw - nfs server:/x rw
 47 46 254:2 / /over rw - ext4 /dev/vdc rw
 48 27 0:48 / /pool rw - lustre mds@tcp:/pool rw
@@ -50,9 +50,9 @@ MOUNTS = r"""22 27 0:21 / /proc rw,relatime - proc proc rw
 
 @pytest.mark.parametrize(("path", "kind", "network"), [
     ("/var/tmp/a.study", "ext4", False),
-    ("/home/me/a.study", "nfs4", True),
-    ("/home/me/scratch/a.study", "xfs", False),
-    ("/homes/a.study", "ext4", False),
+    ("/data/me/a.study", "nfs4", True),
+    ("/data/me/scratch/a.study", "xfs", False),
+    ("/datas/a.study", "ext4", False),
     ("/srv/My Data/a.study", "cifs", True),
     ("/mnt/a.study", "tmpfs", False),
     ("/mnt/far/deep/er/a.study", "fuse.sshfs", True),
