@@ -146,10 +146,12 @@ class HeldSystem:
         self._choice = "cholesky"
         self.solver = self._direct(f"A direct solver, as the iterative one failed: {why}.")
 
-    def _solve(self, rhs: Array, values: Array, heated: NDArray[np.bool_] | None = None) -> tuple[Array, Array]:
+    def _solve(
+        self, rhs: Array, values: Array, heated: NDArray[np.bool_] | None = None, known: Array | None = None
+    ) -> tuple[Array, Array]:
         try:
             if isinstance(self.solver, MultigridSolver):
-                return self.solver.solve_bordered(rhs, values, heated)
+                return self.solver.solve_bordered(rhs, values, heated, known)
             return self.solver.solve_bordered(rhs, values)
         except Stalled as error:
             self._fall_back(str(error))
@@ -193,13 +195,13 @@ class HeldSystem:
 
     def _checked(self, loads: Array, heated: NDArray[np.bool_] | None) -> Solution:
         g, C = self.constraints.g, self.mean_rows
-        moved = self.K @ g
+        moved = self.K @ g if g.any() else np.zeros(g.size)
         rhs = self.elimination.gather(loads - moved[:, None])
         values = (self.constraints.row_values - self.constraints.rows @ g)[:, None].repeat(rhs.shape[1], axis=1)
-        size = np.asarray(self.T.power(2).sum(axis=0)).ravel()
+        size = np.bincount(self.T.indices, weights=self.T.data**2, minlength=self.free)
         y0 = self.elimination.gather(bending_field(self._nodes).T.ravel()) / size
         nearer = None if heated is None else np.append(heated, False)
-        both, m = self._solve(np.column_stack([rhs, self.apply(y0)]), np.column_stack([values, C @ y0]), nearer)
+        both, m = self._solve(np.column_stack([rhs, self.apply(y0)]), np.column_stack([values, C @ y0]), nearer, y0)
         y, m = both[:, :-1], m[:, :-1]
         gauge = float(np.abs(both[:, -1] - y0).max() / np.abs(y0).max())
         scale = np.maximum(np.linalg.norm(rhs, axis=0), np.abs(moved).max() * np.sqrt(g.size))

@@ -343,6 +343,41 @@ def test_the_gauge_catches_a_system_that_solves_only_its_loads(monkeypatch: pyte
     assert "bending field" in result.reason
 
 
+def test_the_known_field_leaves_when_its_own_error_is_small(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Products are then of fewer columns, and the loads' answer is what it is without."""
+    honest, widths = multigrid.MultigridSolver._product, []
+
+    def counted(self: multigrid.MultigridSolver, x: np.ndarray, out: np.ndarray) -> None:
+        widths.append(x.shape[1])
+        honest(self, x, out)
+
+    monkeypatch.setattr(multigrid.MultigridSolver, "_product", counted)
+    model = make(bent_mesh())
+    system = system_of(model)
+    early = system.solve(right_hand_sides(model))
+    assert widths[0] == 2 and widths[-1] == 1 and sorted(widths, reverse=True) == widths
+    assert 0 < early.gauge <= multigrid.KNOWN
+    monkeypatch.setattr(multigrid, "KNOWN", 0.0)
+    widths.clear()
+    late = system.solve(right_hand_sides(model))
+    assert late.gauge < early.gauge  # it stays until its energy and its residual are small
+    assert gap(early.u, late.u) < 1e-8
+    system.close()
+
+
+def test_columns_that_are_done_leave_the_others_alone() -> None:
+    model = make(bent_mesh())
+    system = system_of(model)
+    rhs = np.random.default_rng(8).normal(size=(system.free, 8))
+    rhs[:, ::3] = 0.0  # done at once
+    rhs[:, 1] = system.apply(system.precondition(rhs[:, 4:5]))[:, 0]  # done sooner than random forces
+    together = system.inverse(rhs)
+    assert not together[:, ::3].any()
+    for k in (1, 2, 4, 5, 7):
+        assert gap(together[:, k], system.inverse(rhs[:, k])[:, 0]) < 1e-6
+    system.close()
+
+
 def test_a_sliver_is_refused_before_anything_is_solved() -> None:
     mesh = straight_mesh()
     with pytest.raises(SolveError, match="quality"):

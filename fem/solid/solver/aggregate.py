@@ -25,7 +25,7 @@ from geometry.budget import Budget
 
 STRONG = 0.05
 """Blocks above this part of the geometric mean of their two diagonal blocks couple nodes strongly."""
-DEGREE, STEPS = 2, 3
+DEGREE, STEPS = 2, 2
 _DEPENDENT = 1e-6
 _LANCZOS = 10
 _FEW = 4

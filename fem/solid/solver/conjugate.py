@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.parallel import ranges, run
+from fem.solid.kernels.product import padded
 from fem.solid.shape import Array
 
 DELAY = 2
@@ -51,7 +52,7 @@ class MeanRows:
 
 @dataclass(frozen=True, slots=True)
 class Goal:
-    """When to stop: both must be met.
+    """When to stop: energy and `met`, both.
 
     Attributes
     ----------
@@ -60,12 +61,16 @@ class Goal:
     floor
         (k,) energy that counts as nothing: the rounding of a start that is a large rigid motion.
     met
-        Whether (k,) the residuals of motions and residuals (3 n, k) are small enough.
+        Whether (j,) motions and residuals (3 n, j) of the columns with these numbers (j,) are near enough.
+    known
+        Solution (3 n,) of the last column and the largest error, over its largest value, with which that one is done
+        before its time: this error is measured.
     """
 
     energy: Array
     floor: Array
-    met: Callable[[Array, Array], NDArray[np.bool_]]
+    met: Callable[[Array, Array, NDArray[np.intp]], NDArray[np.bool_]]
+    known: tuple[Array, float] | None = None
 
 
 def conjugate_gradients(
@@ -84,57 +89,127 @@ def conjugate_gradients(
     Stalled
         After `MOST_ITERATIONS`, or when an inner product that a positive definite system has positive is not.
     """
-    columns = loads.shape[1]
-    r = loads.copy()
-    u = np.zeros_like(loads)
-    z, p, q = np.empty_like(loads), np.zeros_like(loads), np.empty_like(loads)
-    multipliers = np.zeros((rows.C.shape[0] if rows else 0, columns))
-    energy = goal.floor.copy()
-    if start is not None:
-        u += start
-        product(u, q)
-        r -= q
-        energy += (u * q).sum(axis=0)
-    steps: list[Array] = []
-    active = np.ones(columns, dtype=bool)
-    before = np.ones(columns)
+    state = _State(product, loads, start, rows, goal)
     for iteration in range(1, MOST_ITERATIONS + 1):
+        if not state.step(product, precondition, rows, threads):
+            return state.ended(iteration - 1)
+        if not state.active.any():
+            return state.ended(iteration)
+        state.narrow()
+    raise Stalled(state.why())
+
+
+class _State:
+    """The columns that are still iterated, side by side; one that is done is put away when the rest is cheaper alone.
+
+    A product takes 1, 2 or a multiple of 4 columns (`padded`).
+    """
+
+    def __init__(self, product: Operator, loads: Array, start: Array | None, rows: MeanRows | None, goal: Goal) -> None:
+        columns = loads.shape[1]
+        self.goal, self.number = goal, np.arange(columns)
+        self.found = Iterate(np.zeros_like(loads), np.zeros((rows.C.shape[0] if rows else 0, columns)), 0)
+        self.r, self.u, self.multipliers = loads.copy(), np.zeros_like(loads), self.found.multipliers.copy()
+        self.z, self.p, self.q = np.empty_like(loads), np.zeros_like(loads), np.empty_like(loads)
+        self.energy = goal.floor.copy()
+        if start is not None:
+            self.u += start
+            product(self.u, self.q)
+            self.r -= self.q
+            self.energy += (self.u * self.q).sum(axis=0)
+        self.steps: list[Array] = []
+        self.active = np.ones(columns, dtype=bool)
+        self.before = np.ones(columns)
+
+    def step(self, product: Operator, precondition: Operator, rows: MeanRows | None, threads: int) -> bool:
+        """One iteration; false when there was nothing left to do."""
+        r, z, p, q = self.r, self.z, self.p, self.q
         precondition(r, z)
         if rows:
             m = rows.inverse @ (rows.C @ z)
             z -= rows.W @ m
             r -= rows.C.T @ m
-            multipliers += m
+            self.multipliers += m
         rz = dot(r, z, threads)
-        active &= rz != 0
+        self.active &= rz != 0
+        active = self.active
         if not active.any():
-            return Iterate(u, multipliers, iteration - 1)
+            return False
         if not (rz[active] > 0).all():
             raise Stalled(f"the preconditioner was not positive (r.z = {rz[active].min():.2g})")
-        advance(z, p, rz / before if iteration > 1 else np.zeros(columns), threads)
+        advance(z, p, rz / self.before if self.steps else np.zeros(rz.size), threads)
         product(p, q)
         pq = dot(p, q, threads)
         if not (pq[active] > 0).all():
             raise Stalled(f"the stiffness was not positive (p.Ap = {pq[active].min():.2g})")
         alpha = np.where(active, rz / np.where(active, pq, 1.0), 0.0)
-        move(u, r, p, q, alpha, threads)
-        steps.append(alpha * rz)
-        energy += steps[-1]
-        before = np.where(active, rz, 1.0)
-        missed = np.sum(steps[-DELAY:], axis=0)
-        met = (missed <= goal.energy**2 * energy) & (len(steps) >= DELAY)
-        if (met & active).any():
-            active &= ~(met & goal.met(u, r))
-        if not active.any():
-            return Iterate(u, multipliers, iteration)
-    left = np.where(active, np.sqrt(missed / energy), 0.0)
-    worst = int((left / goal.energy).argmax())
-    if left[worst] <= goal.energy[worst]:
-        raise Stalled(f"after {MOST_ITERATIONS} iterations the residual was not yet small enough")
-    raise Stalled(
-        f"after {MOST_ITERATIONS} iterations the error in the norm of the energy was still {left[worst]:.1e}, "
-        f"{goal.energy[worst]:.0e} is wanted"
-    )
+        move(self.u, r, p, q, alpha, threads)
+        self.steps.append(alpha * rz)
+        self.energy += self.steps[-1]
+        self.before = np.where(active, rz, 1.0)
+        self._look(threads)
+        return True
+
+    def _look(self, threads: int) -> None:
+        """Which columns are done."""
+        goal = self.goal
+        met = (self.missed() <= goal.energy[self.number] ** 2 * self.energy) & (len(self.steps) >= DELAY)
+        if goal.known is not None:
+            field, allowed = goal.known
+            known = self.number == goal.energy.size - 1
+            if (known & self.active).any():
+                off = farthest(self.u, int(known.argmax()), field, threads)
+                self.active &= ~(known & (off <= allowed * float(np.abs(field).max())))
+        if (met & self.active).any():
+            self.active &= ~(met & goal.met(self.u, self.r, self.number))
+
+    def missed(self) -> Array:
+        """(j,) energy that the iterate `DELAY` iterations ago had missed."""
+        return np.asarray(np.sum(self.steps[-DELAY:], axis=0))
+
+    def narrow(self) -> None:
+        """Put columns away that are done, if the product of the rest then takes fewer."""
+        kept = self.active
+        if padded(int(kept.sum())) >= padded(kept.size):
+            return
+        self._put_away(~kept)
+        self.number, self.active = self.number[kept], self.active[kept]
+        self.r, self.u, self.p = (np.ascontiguousarray(a[:, kept]) for a in (self.r, self.u, self.p))
+        self.z, self.q = np.empty_like(self.r), np.empty_like(self.r)
+        self.multipliers, self.energy, self.before = self.multipliers[:, kept], self.energy[kept], self.before[kept]
+        self.steps = [step[kept] for step in self.steps]
+
+    def _put_away(self, which: NDArray[np.bool_]) -> None:
+        self.found.u[:, self.number[which]] = self.u[:, which]
+        self.found.multipliers[:, self.number[which]] = self.multipliers[:, which]
+
+    def ended(self, iterations: int) -> Iterate:
+        """The solution of all columns."""
+        if self.number.size == self.found.u.shape[1]:
+            return Iterate(self.u, self.multipliers, iterations)
+        self._put_away(np.ones(self.number.size, dtype=bool))
+        return Iterate(self.found.u, self.found.multipliers, iterations)
+
+    def why(self) -> str:
+        """Why it did not come to an end."""
+        allowed = self.goal.energy[self.number]
+        left = np.where(self.active, np.sqrt(self.missed() / self.energy), 0.0)
+        worst = int((left / allowed).argmax())
+        if left[worst] <= allowed[worst]:
+            return f"after {MOST_ITERATIONS} iterations the residual was not yet small enough"
+        return (
+            f"after {MOST_ITERATIONS} iterations the error in the norm of the energy was still {left[worst]:.1e}, "
+            f"{allowed[worst]:.0e} is wanted"
+        )
+
+
+def farthest(u: Array, column: int, field: Array, threads: int) -> float:
+    """Largest difference of a column of u (n, k) from a field (n,)."""
+
+    def part(first: int, last: int) -> float:
+        return float(np.abs(u[first:last, column] - field[first:last]).max())
+
+    return max(run(part, ranges(u.shape[0]), threads))
 
 
 def dot(a: Array, b: Array, threads: int) -> Array:

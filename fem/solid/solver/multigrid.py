@@ -12,7 +12,7 @@ import scipy.sparse as sp
 from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix
-from fem.solid.factor import NotPositive
+from fem.solid.factor import GAUGE_ALLOWED, NotPositive
 from fem.solid.shape import Array
 from fem.solid.solver.aggregate import AggregateSolver
 from fem.solid.solver.cholesky import CholeskySolver, spring_unknowns
@@ -38,6 +38,9 @@ HEATED = 1e-3
 """What both are tightened by for a case with a change of temperature: the energy and the nodal forces of an expansion
 that nothing hinders are as large as those of one that is fully hindered, so that the stress that is left, which may be
 none, is lost in an error that is small beside them."""
+KNOWN = GAUGE_ALLOWED / 10
+"""Largest error of the known field, over its largest value, with which it leaves the iteration: a tenth of what the
+gate lets pass, and measured, not estimated."""
 PATIENCE = 4
 """Iterations that meet the goal of the energy and not that of the residual, after which rounding is looked at."""
 ROUNDING = 1e-13
@@ -121,19 +124,25 @@ class MultigridSolver:
         count = self._rows.C.shape[0] if self._rows else 0
         return self.solve_bordered(rhs, np.zeros((count, rhs.shape[1])))[0]
 
-    def solve_bordered(self, rhs: Array, values: Array, heated: NDArray[np.bool_] | None = None) -> tuple[Array, Array]:
+    def solve_bordered(
+        self, rhs: Array, values: Array, heated: NDArray[np.bool_] | None = None, known: Array | None = None
+    ) -> tuple[Array, Array]:
         """y (f, k) with C y = values (rows, k), and the multipliers m (rows, k). Raises `Stalled`.
 
-        `heated` (k,): which columns have a thermal part.
+        `heated` (k,): which columns have a thermal part. `known` (f,): solution of the last column, which is done when
+        it is met to `KNOWN` of its largest value.
         """
         tighter = np.ones(rhs.shape[1]) if heated is None else np.where(heated, HEATED, 1.0)
         turns = [slice(a, a + AT_ONCE) for a in range(0, rhs.shape[1], AT_ONCE)]
-        found = [self._solve_some(rhs[:, some], values[:, some], tighter[some]) for some in turns]
+        found = [
+            self._solve_some(rhs[:, some], values[:, some], tighter[some], known if some is turns[-1] else None)
+            for some in turns
+        ]
         if len(found) == 1:
             return found[0]
         return np.hstack([y for y, _ in found]), np.hstack([m for _, m in found])
 
-    def _solve_some(self, rhs: Array, values: Array, tighter: Array) -> tuple[Array, Array]:
+    def _solve_some(self, rhs: Array, values: Array, tighter: Array, known: Array | None = None) -> tuple[Array, Array]:
         loads, allowed = self._held.lift(rhs), RESIDUAL * tighter
         start, force = None, np.linalg.norm(rhs, axis=0)
         floor = np.zeros(rhs.shape[1])
@@ -147,14 +156,15 @@ class MultigridSolver:
 
         looks = 0
 
-        def met(u: Array, r: Array) -> NDArray[np.bool_]:
+        def met(u: Array, r: Array, columns: NDArray[np.intp]) -> NDArray[np.bool_]:
             nonlocal looks, force
             looks += 1
             if looks == PATIENCE:  # is it that rounding does not let it go lower?
-                force = np.maximum(force, rounding_of_product(self._K, u) / allowed)
-            return np.asarray(np.linalg.norm(self._held.gather(r), axis=0) <= allowed * force)
+                force[columns] = np.maximum(force[columns], rounding_of_product(self._K, u) / allowed[columns])
+            return np.asarray(np.linalg.norm(self._held.gather(r), axis=0) <= allowed[columns] * force[columns])
 
-        goal = Goal(ENERGY * tighter, floor, met)
+        field = None if known is None else (self._held.expand(known), KNOWN)
+        goal = Goal(ENERGY * tighter, floor, met, field)
         found = conjugate_gradients(self._product, self._cycle, loads, start, self._rows, goal, self._threads)
         self.iterations = found.iterations
         return self._held.reduce(found.u), found.multipliers

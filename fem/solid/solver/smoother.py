@@ -21,8 +21,8 @@ from fem.solid.shape import inverse as inverse_of
 from fem.solid.solver.elimination import Elimination
 
 Single = NDArray[np.float32]
-_LANCZOS = 12
-SAFETY = 1.05
+_LANCZOS = 8
+SAFETY = 1.08
 """What the estimate of the largest eigenvalue, which is from below, is raised by (set by trial)."""
 
 
