@@ -53,7 +53,7 @@ def test_changed_bytes_are_refused_or_harmless(tmp_path: Path, study: SimpleName
     whole, rng, refused = written(path, study), random.Random(5), 0
     with Record.open(path) as record:
         right = content(record)
-    for _ in range(200):
+    for _ in range(150):
         path.write_bytes(_changed(whole, rng))
         try:
             with Record.open(path) as record:
@@ -61,7 +61,7 @@ def test_changed_bytes_are_refused_or_harmless(tmp_path: Path, study: SimpleName
         except RecordError as error:
             assert "--record" in str(error)
             refused += 1
-    assert 100 < refused < 200  # many bytes are in use by nothing, or were zero before
+    assert 75 < refused < 150  # many bytes are in use by nothing, or were zero before
 
 
 def test_a_damaged_record_is_refused_with_the_way_out(tmp_path: Path, study: SimpleNamespace) -> None:

@@ -65,7 +65,7 @@ def _cuts(log: list[list[Any]], count: int, rng: random.Random) -> list[int]:
 def test_a_cut_at_any_moment_loses_nothing_that_was_recorded(tmp_path: Path, study: SimpleNamespace) -> None:
     log, start = written(tmp_path, 24)
     assert sum(line[0] == "sync" and line[1] == "arm.study" for line in log) >= 3  # checkpoints are among it
-    for k, cut in enumerate(_cuts(log, 60, random.Random(1))):
+    for k, cut in enumerate(_cuts(log, 40, random.Random(1))):
         assert lost(log, start, cut, k, tmp_path / str(k), study) == set(), f"cut after line {cut}, seed {k}"
 
 

@@ -7,6 +7,7 @@ from pathlib import Path
 import pytest
 
 from studies.record import Record, RecordError
+from studies.record.writer import make
 
 
 def test_what_was_added_is_read_back(tmp_path: Path, study) -> None:
@@ -65,3 +66,18 @@ def test_making_one_twice_is_refused(tmp_path: Path, study) -> None:
     with pytest.raises(RecordError, match="exists already"):
         Record.create(path, study.plan())
     assert path.read_bytes() == before
+
+
+def test_a_record_whose_driver_was_killed_while_making_it(tmp_path: Path, study) -> None:
+    path = tmp_path / "arm.study"
+    (tmp_path / ".arm.study.new").write_bytes(b"half of a rec")
+    Record.create(path, study.plan()).close()
+    assert [p.name for p in tmp_path.iterdir()] == ["arm.study"]
+    path.unlink()
+    make(path)  # it has its name, and no study yet
+    with pytest.raises(RecordError, match="no study yet"):
+        Record.open(path)
+    with Record.resume(path, study.plan()) as record:
+        assert record.add(study.variant(1), study.outcome(1))
+    with Record.open(path) as record:
+        assert record.title == study.plan().title
