@@ -35,7 +35,11 @@ INSIDE: Mapping[str, Sequence[str]] = {
     "smoother's set-up": [f"{_SOLVER}.smoother:BlockJacobi", f"{_SOLVER}.cycle:Cycle"],
     "single copy": ["fem.solid.block_matrix:BlockMatrix.single"],
     "order": [f"{_SOLVER}.ordering:Ordering", f"{_SOLVER}.ordering:Ordering.matrix"],
-    "linear level's matrix": [f"{_SOLVER}.transfer:Transfer", f"{_SOLVER}.transfer:Transfer.galerkin"],
+    "linear level's matrix": [
+        f"{_SOLVER}.transfer:Transfer",
+        f"{_SOLVER}.transfer:Transfer.galerkin",
+        "fem.solid.stiffness:linear_stiffness",
+    ],
     "linear level's set-up": [f"{_SOLVER}.aggregate:AggregateSolver"],
     "linear level": [f"{_SOLVER}.aggregate:AggregateSolver.correct", f"{_SOLVER}.cholesky:CholeskySolver.solve"],
     "transfer": [
