@@ -141,6 +141,19 @@ def test_a_reader_in_the_writers_process_gives_no_lock_up(tmp_path: Path, study:
         assert len(record.words()) == 2
 
 
+def test_a_forked_child_that_closes_the_record_harms_nothing(tmp_path: Path, study: SimpleNamespace) -> None:
+    path = tmp_path / "arm.study"
+    with Record.create(path, study.plan()) as record:
+        record.add(study.variant(1), study.outcome(1))
+        assert study.in_child(record.close) == "None"
+        assert path.with_name("arm.study-wal").exists() and path.with_name("arm.study.lock").exists()
+        assert record.add(study.variant(2), study.outcome(2))
+        with pytest.raises(RecordHeldError):
+            Record.resume(path, study.plan())
+    with Record.open(path) as record:
+        assert len(record.words()) == 2
+
+
 def killed_again_and_again(path: Path, study: SimpleNamespace, kills: int) -> None:
     """SIGKILL a driver in the middle of its commits; what it had told must be there, each once, and right."""
     rng, number = random.Random(7), 1
