@@ -96,14 +96,38 @@ def _unwritable(path: Path) -> sqlite3.Connection:
 
 
 def _resting(path: Path, why: str) -> sqlite3.Connection:
-    """A record that nobody writes and that has no open log needs no files beside it."""
+    """A record that nobody writes and that has no open log, as a copy: SQLite cannot lock it where it is.
+
+    That no log was there, neither before nor after, says that the copy is of one state.
+    """
+    _refuse_log(path, why)
+    with told(path):
+        db = _try(path, "ro", "&immutable=1")
+        refuse_foreign(db, path)
+        copy = _copy(db)
+    _refuse_log(path, why)
+    return copy
+
+
+def _refuse_log(path: Path, why: str) -> None:
     log = log_of(path)
     if log.exists() and log.stat().st_size:
         raise RecordError(f"the record {path} was not closed by its driver, or is being written, and cannot be read "
                           f"where it is: {why}. Copy it to a folder of your own together with {log.name}, and read the "
                           "copy; or go on with the study, which closes it")
-    with told(path):
-        return _try(path, "ro", "&immutable=1")
+
+
+def _copy(db: sqlite3.Connection) -> sqlite3.Connection:
+    """A private copy in a temporary file without a name; closes the original."""
+    copy = sqlite3.connect("", isolation_level=None, check_same_thread=False)
+    try:
+        db.backup(copy)
+    except BaseException:
+        copy.close()
+        raise
+    finally:
+        db.close()
+    return copy
 
 
 def log_of(path: Path) -> Path:
@@ -112,12 +136,10 @@ def log_of(path: Path) -> Path:
 
 
 def _todays(db: sqlite3.Connection, path: Path) -> sqlite3.Connection:
-    """The same record in today's layout; one of an older layout is read in memory, and its file left as it is."""
+    """The same record in today's layout; one of an older layout is read in a copy, and its file left as it is."""
     with told(path):
         if db.execute("PRAGMA user_version").fetchone()[0] == VERSION:
             return db
-        memory = sqlite3.connect(":memory:", isolation_level=None, check_same_thread=False)
-        db.backup(memory)
-        db.close()
-        upgrade(memory)
-        return memory
+        copy = _copy(db)
+        upgrade(copy)
+        return copy

@@ -117,7 +117,7 @@ class Record:
     def open(path: str | Path, title: str | None = None, check: bool = True) -> Record:
         """Open for reading, also while the study runs. Of several studies the one with this `title`, else the last one.
 
-        The whole file is checked first (about a second for 10 000 variants), unless `check` is false.
+        The whole file is checked first (about two seconds for 10 000 variants), unless `check` is false.
         """
         path = absolute(path)
         refuse_folder(path)
