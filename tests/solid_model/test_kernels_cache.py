@@ -5,6 +5,7 @@ from __future__ import annotations
 import subprocess
 import sys
 from collections.abc import Callable, Iterator
+from dataclasses import replace
 from pathlib import Path
 
 import numba
@@ -21,7 +22,7 @@ from fem.solid.kernels.warm import warm_up
 from fem.solid.mass import mass_matrix
 from fem.solid.stiffness import element_groups, group_stresses, stiffness_matrix
 from geometry.budget import Budget
-from geometry.part import BodyLoad, RegionLoad, Support
+from geometry.part import BodyLoad, Buckling, RegionLoad, Support, Vibration
 
 
 class Compiled(event.Listener):
@@ -49,7 +50,9 @@ def test_a_warm_process_compiles_nothing() -> None:
         loads = [RegionLoad("tip", "arm.end", (10.0, 20.0, -30.0)), BodyLoad("weight", (0.0, 0.0, -9810.0))]
         mesh = box_mesh(100.0, 10.0, 20.0, (6, 2, 2))
         for solver in ("cholesky", "multigrid"):
-            solve_solid(box_part(100.0, 10.0, 20.0, [wall], loads), mesh, Budget(threads=2), solver=solver)
+            part = box_part(100.0, 10.0, 20.0, [wall], loads)
+            part = replace(part, vibration=Vibration(3), buckling=(Buckling("all", modes=1),))
+            solve_solid(part, mesh, Budget(threads=2), solver=solver)
         groups = element_groups(mesh.nodes, mesh.tets)
         K = stiffness_matrix(mesh.nodes, mesh.tets, groups, 210000.0, 0.3)
         mass_matrix(groups, 1.0, K)

@@ -50,14 +50,17 @@ def warm_up(tell: Callable[[str], None]) -> None:
 def _matrices(mesh: NamedMesh) -> None:
     """What no solution above is bound to need: mass, geometric stiffness and the scalar forms of a matrix."""
     from fem.solid.geometric import geometric_stiffness
+    from fem.solid.kernels.tall import combine, gram
     from fem.solid.mass import mass_matrix
     from fem.solid.stiffness import element_groups, group_stresses, stiffness_matrix
 
     groups = element_groups(mesh.nodes, mesh.tets)
     K = stiffness_matrix(mesh.nodes, mesh.tets, groups, 1.0, 0.3)
-    mass_matrix(groups, 1.0, K)
+    M = mass_matrix(groups, 1.0, K)
     stress = group_stresses(groups, np.zeros((1, *mesh.nodes.shape)), 1.0, 0.3, np.zeros(1))
     geometric_stiffness(groups, [s[0] for s in stress], K)
+    wide = np.zeros((K.shape[0], 15))  # columns are taken by eight, four, two and one
+    combine(M @ wide, 15, gram(wide, 15, wide, 1), wide, 1)
     K.to_csr()
     K.upper_csr()
     for columns in ((), (2,), (4,), (8,)):
