@@ -20,7 +20,8 @@ FEW, FEW_UNKNOWNS, STOCKY = 2, (30_000, 100_000), 10.0
 """Load cases, unknowns and length over breadth within which a thin part is iterated nevertheless: a factor costs more
 than the few solutions that it would serve. Measured, seconds of processor for one case, direct against iterative: an
 arm with a slotted plate of 49 248 unknowns 1.37 and 0.70 (21 iterations), a channel of 74 000 2.10 and 1.30 (22), a
-plate 1.95 and 1.35 (27), an I-beam with holes 1.68 and 1.3 (25); but a strip 85 times as long as broad 1.07 and 2.11.
+plate 1.95 and 1.35 (27), an I-beam with holes 1.68 and 1.83 (25, the first
+solution of its process, so no gain is shown there); but a strip 85 times as long as broad 1.07 and 2.11.
 Six cases take the direct one 1.1 times as long as one, the iterative one 2 to 3 times."""
 
 Solvers = Literal["cholesky", "multigrid"]
