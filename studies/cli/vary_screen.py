@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import contextlib
+import os
+import sys
 import time
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
@@ -17,7 +20,7 @@ from rich.table import Table
 
 from studies.cli.screen import make_console
 from studies.report.tables import MARKS, marked, number, shown_unit
-from studies.vary.run.progress import Happening, Progress, duration, in_words
+from studies.vary.run.progress import Happening, Progress, duration, in_words, several
 from studies.vary.run.summary import Failure, Ranked, Summary
 
 if TYPE_CHECKING:
@@ -52,9 +55,17 @@ class StudyView:
             self._bar.stop()
 
     def __call__(self, what: Happening | Progress) -> None:
-        """Show it."""
+        """Show it. Where nobody listens any more (`haunch vary ... | head`) the study goes on in silence."""
         if self._quiet:
             return
+        try:
+            self._show(what)
+        except (OSError, SystemExit):  # rich ends the program when a pipe is broken
+            self._quiet = True
+            with contextlib.suppress(OSError, ValueError):
+                os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+
+    def _show(self, what: Happening | Progress) -> None:
         if isinstance(what, Happening):
             if what.kind != "finished":
                 self._console.print(escape(what.text), soft_wrap=True)
@@ -72,7 +83,7 @@ def print_summary(plan: Plan, summary: Summary, record: Path, plan_path: str) ->
     def say(text: str) -> None:
         console.print(escape(text), soft_wrap=True)
 
-    say(f"{summary.evaluated} variants in {duration(summary.seconds)}" + (
+    say(f"{several(summary.evaluated, 'variant')} in {duration(summary.seconds)}" + (
         f", {summary.reused} of {summary.points} points from before" if summary.reused else ""))
     if summary.best:
         console.print(_best_table(plan, summary.best))
@@ -93,7 +104,7 @@ def print_summary(plan: Plan, summary: Summary, record: Path, plan_path: str) ->
     if summary.safer:
         say(f"{summary.safer} on a safer mesh, for the first attempt failed")
     if summary.left_out:
-        say(f"- {sum(summary.left_out.values())} points left out:")
+        say(f"- {several(sum(summary.left_out.values()), 'point')} left out:")
         for reason, count in _commonest(summary.left_out):
             say(f"    {count:5d}  {reason}")
     for path in summary.kept:
@@ -130,8 +141,12 @@ def _none_fine(summary: Summary) -> Iterable[str]:
     row = summary.nearest
     if row is not None and row.margin is not None:
         values = ", ".join(f"{name} = {value}" for name, value in row.values.items())
-        yield (f"The nearest is variant {row.number} ({values}): {row.judgement}, its closest limit has "
-               f"{100 * row.margin:.3g} % left")
+        yield (f"The nearest is variant {row.number} ({values}): {row.judgement}, its closest limit "
+               f"{_margin(row.margin)}")
+
+
+def _margin(share: float) -> str:
+    return f"is missed by {-100 * share:.3g} %" if share < 0 else f"has {100 * share:.3g} % left"
 
 
 def _failures(rows: Sequence[Failure]) -> Iterable[str]:

@@ -6,11 +6,13 @@ and how; `started` gets a line for each start (driver, key, number, safer).
 
 from __future__ import annotations
 
+import contextlib
 import json
 import os
 import queue
 import signal
 import subprocess
+import sys
 import tempfile
 import threading
 import time
@@ -140,8 +142,8 @@ def started(room: Path) -> list[tuple[int, str, int, bool]]:
 class Driver:
     """A driver in a process of its own, a copy of this one; like `subprocess.Popen`."""
 
-    def __init__(self, room: Path, seconds: float = 0.05, steps: int = 9, prepare: Callable[[], object] | None = None
-                 ) -> None:
+    def __init__(self, room: Path, seconds: float = 0.05, steps: int = 9, prepare: Callable[[], object] | None = None,
+                 work: Callable[[], tuple[str, int]] | None = None) -> None:
         handle, self._said = tempfile.mkstemp(dir=room)
         self.returncode: int | None = None
         self.pid = os.fork()
@@ -152,11 +154,14 @@ class Driver:
                     prepare()
                 os.dup2(handle, 1)
                 os.dup2(handle, 2)
-                text, code = drive(room, seconds, steps)
-                os.write(1, text.encode())
+                sys.stdout, sys.stderr = (open(k, "w", closefd=False) for k in (1, 2))  # noqa: SIM115
+                text, code = drive(room, seconds, steps) if work is None else work()
+                print(text, end="", flush=True)
             except BaseException:  # noqa: BLE001 - nothing may return into the test
                 os.write(2, traceback.format_exc().encode())
             finally:
+                with contextlib.suppress(OSError):
+                    sys.stderr.flush()
                 os._exit(code)
         os.close(handle)
 

@@ -12,5 +12,5 @@ from studies.vary.run.progress import Happening, Progress
 from studies.vary.run.study import StudyStopped, vary
 from studies.vary.run.summary import Ranked, Summary
 
-__all__ = ["Backend", "BackendLost", "Happening", "Hear", "Progress", "Ranked", "StudyStopped", "Summary", "kept_run", "runs_folder",
-           "vary"]
+__all__ = ["Backend", "BackendLost", "Happening", "Hear", "Progress", "Ranked", "StudyStopped", "Summary", "kept_run",
+           "runs_folder", "vary"]

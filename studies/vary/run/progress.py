@@ -11,7 +11,7 @@ from pathlib import Path
 from types import TracebackType
 from typing import Literal
 
-from studies.report.tables import MARKS
+from studies.report.tables import MARKS, digits
 
 FAILED = "failed"
 SHOWN = {word: MARKS.get(word, "x")
@@ -79,6 +79,11 @@ def duration(seconds: float) -> str:
     return f"{whole // 60} min {whole % 60:02d} s" if whole >= 60 else f"{whole} s"
 
 
+def several(count: int, what: str) -> str:
+    """``1 variant``, ``3 variants``."""
+    return f"{count} {what}{'' if count == 1 else 's'}"
+
+
 def in_words(progress: Progress) -> str:
     """Counts, rate and time left in one line, each judgement with its mark."""
     total = f"{progress.points}" if progress.exact else f"about {progress.points}"
@@ -86,7 +91,7 @@ def in_words(progress: Progress) -> str:
     parts += [f"{mark} {count} {word}" for word, mark in SHOWN.items() if (count := progress.words.get(word, 0))]
     parts += [f"{progress.left_out} left out"] if progress.left_out else []
     parts += [f"{progress.reused} reused"] if progress.reused else []
-    parts += [f"{progress.rate:.3g} a minute"] if progress.rate is not None else []
+    parts += [f"{digits(progress.rate)} a minute"] if progress.rate is not None else []
     if progress.left is not None and progress.done < progress.points:
         parts.append(f"{duration(progress.left)} left")
     return ", ".join(parts)

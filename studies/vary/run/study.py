@@ -16,7 +16,7 @@ from studies.vary.run.attempts import Ticket
 from studies.vary.run.backend import Backend, BackendLost
 from studies.vary.run.driver import Driver
 from studies.vary.run.keeping import kept_run, new_run
-from studies.vary.run.progress import Happening, Listener, Log, in_words
+from studies.vary.run.progress import Happening, Listener, Log, in_words, several
 from studies.vary.run.signals import heard
 from studies.vary.run.summary import MOST_SHOWN, Findings, Summary, to_keep
 
@@ -82,7 +82,7 @@ def vary(plan: Plan, record: str | Path, *, workers: int = 0, on: str | None = N
     with Log(Path(log) if log else None, listener) as tell:
         new = not path.exists()
         with Record.create(path, plan) if new else Record.resume(path, plan, share) as writer:
-            tell(Happening("start", f"{plan.title}: {plan.count()} points; "
+            tell(Happening("start", f"{plan.title}: {several(plan.count(), 'point')}; "
                                     f"{'a new record' if new else 'going on with the record'} {path}"))
             for text in plan.notes:
                 tell(Happening("note", text))
@@ -124,8 +124,9 @@ def _run(driver: Driver, plan: Plan, writer: Writer, tell: Listener, started: fl
             driver.keep(_tickets(plan, writer, findings, tell))
     except (RecordError, BackendLost) as error:
         done = driver.tally.done
-        raise StudyStopped(f"{str(error).rstrip('.')}. {done} finished points are in {writer.path}; the same command "
-                           "goes on where this one stopped") from error
+        points = f"{several(done, 'point')} {'is' if done == 1 else 'are'} done"
+        raise StudyStopped(f"{str(error).rstrip('.')}. {points} and in {writer.path}; the same command goes "
+                           "on where this one stopped") from error
     finally:
         driver.close()
     progress = driver.tally.progress(0)
@@ -163,6 +164,5 @@ def _tickets(plan: Plan, writer: Writer, findings: Findings, tell: Listener) -> 
         first = outcome if outcome is not None and outcome.safer_mesh else None
         tickets.append(Ticket(variant, str(new_run(writer.path, variant)), recorded=True, first=first))
     if tickets:
-        tell(Happening("note", f"keeping the runs of {len(tickets)} variants: each is evaluated once more, for its "
-                               "files"))
+        tell(Happening("note", f"keeping {several(len(tickets), 'whole run')}: evaluated once more, for the files"))
     return tickets
