@@ -91,7 +91,7 @@ def column(page: Any, key: str) -> list[str]:
 def test_it_fits_1280_pixels_without_errors(grid: Opened) -> None:
     assert grid.complaints == []
     assert grid.page.evaluate("document.documentElement.scrollWidth") <= 1280
-    assert grid.page.locator(".js-plotly-plot").count() == 5  # trade-off, three figures' effects, all at once
+    assert grid.page.locator("#tradeoff-plot.js-plotly-plot, #lines-plot.js-plotly-plot").count() == 2
     assert grid.page.evaluate("getComputedStyle(document.body).fontSize") == "14px"
 
 
@@ -193,6 +193,17 @@ def test_judgement_is_told_by_shape_and_word(grid: Opened) -> None:
     assert shapes["! suspicious, limits met"] == "triangle-up"
 
 
+def test_effects_are_drawn_when_they_are_looked_at(grid: Opened) -> None:
+    """The value that moves the figure most comes first; tip_depth does nothing to the stress and is not drawn."""
+    page = grid.page
+    page.locator(".effect-plot").last.scroll_into_view_if_needed()
+    page.wait_for_selector(".effect-plot:nth-of-type(1).js-plotly-plot")
+    page.wait_for_timeout(300)
+    titles = page.locator(".effect-plot").last.evaluate("""(plot) => [plot.layout.xaxis, plot.layout.xaxis2,
+        plot.layout.xaxis3].map((axis) => axis ? axis.title.text : null)""")
+    assert titles == ["root_depth (mm)", "web (mm)", None]
+
+
 def test_one_variant_on_demand(grid: Opened) -> None:
     page = grid.page
     page.fill("#wanted", "7")
@@ -231,6 +242,7 @@ def test_numbers_are_written_as_in_the_tables_of_a_run(grid: Opened) -> None:
 def test_printed(grid: Opened, tmp_path: Path) -> None:
     """A4 across, every section on it, no control that paper cannot work."""
     pdf = grid.page.pdf(prefer_css_page_size=True)
+    assert grid.page.locator(".effect-plot.js-plotly-plot").count() == 3
     assert pdf.startswith(b"%PDF")
     boxes = {tuple(map(float, box.split())) for box in re.findall(rb"/MediaBox\s*\[([^\]]+)\]", pdf)}
     assert all(math.isclose(b[2], 842, abs_tol=2) and math.isclose(b[3], 595, abs_tol=2) for b in boxes) and boxes

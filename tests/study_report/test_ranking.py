@@ -86,7 +86,7 @@ def test_none_meets(samples: ModuleType) -> None:
     top = top_of(data)
     assert top.headline == "None of the 58 variants that ran meets every limit."
     assert top.row is not None and top.row.number == found.misses[0].number
-    assert "is missed: " in top.reasons[0] and "missed by" in top.reasons[0]
+    assert "). Deflection is missed: " in top.reasons[0] and "missed by" in top.reasons[0]
 
 
 def test_not_established_is_not_met_and_comes_after_near_misses(samples: ModuleType) -> None:

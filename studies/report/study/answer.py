@@ -53,6 +53,7 @@ class Answer:
     steps: tuple[Step, ...] = ()
     steps_text: str = ""
     command: str = ""
+    title: str = "Variant"
     warnings: tuple[str, ...] = field(default=())
 
 
@@ -131,7 +132,7 @@ def _chosen(data: StudyData, ranking: Ranking, row: Row, warnings: tuple[str, ..
                    "alone and read its run folder:")
     steps = _steps(data, row)
     return Answer(f"Variant {row.number} is {of}: {aim_text(data, row)}.", row, tuple(filter(None, reasons)), steps,
-                  _steps_text(data, row), again_command(data, row.number), warnings)
+                  _steps_text(data, row), again_command(data, row.number), warnings=warnings)
 
 
 def again_command(data: StudyData, number: int) -> str:
@@ -213,13 +214,14 @@ def _none_meets(data: StudyData, ranking: Ranking, counts: Counts, warnings: tup
     ran = "The one variant that ran does not meet" if counts.finished == 1 else \
         f"None of the {counted(counts.finished, 'variant')} that ran meets"
     unknown = [held for held in outcome.limits if held.verdict == "not established"]
-    reasons = [f"Nearest is variant {nearest.number}, {aim_text(data, nearest)}: {governs_text(outcome)}".rstrip(": ")]
+    reasons = [f"Nearest is variant {nearest.number} ({aim_text(data, nearest)}). {governs_text(outcome)}".rstrip()]
     reasons += [f"Its limit {held.name} is not established: {held.reason}." for held in unknown]
     worst = max(counts.by_limit, key=lambda limit: limit.missed + limit.unknown)
     reasons.append(f"Most often in the way: {worst.name}, missed by {worst.missed} and not established for "
                    f"{worst.unknown} of {counts.finished}.")
     reasons.append(_edge_text(data, nearest).replace("Better ones", "Variants that meet every limit"))
-    return Answer(f"{ran} every limit.", nearest, tuple(filter(None, reasons)), warnings=warnings)
+    return Answer(f"{ran} every limit.", nearest, tuple(filter(None, reasons)), warnings=warnings,
+                  title="The nearest: variant")
 
 
 def _as_made(data: StudyData, ranking: Ranking, counts: Counts, warnings: tuple[str, ...]) -> Answer:
@@ -237,7 +239,7 @@ def _as_made(data: StudyData, ranking: Ranking, counts: Counts, warnings: tuple[
     assert outcome is not None
     reasons.append(f"The worst is variant {worst.number}. {governs_text(outcome)}".rstrip())
     return Answer(f"{good} of {counted(total, 'part')} as made meet every limit.", worst, tuple(reasons),
-                  warnings=warnings)
+                  warnings=warnings, title="The worst: variant")
 
 
 def _least_margin(row: Row) -> float:

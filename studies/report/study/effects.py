@@ -23,7 +23,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import Any, Literal, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -59,7 +59,8 @@ class Effect:
     give
         Half width of the 95 % interval of `share`; nought for grids, which have no scatter.
     centres, means, lows, highs
-        Levels (or middles of classes of a sampled value), mean, least and largest figure there. A value without an
+        Levels (or middles of classes of a sampled value), mean (of the fitted curve where there is one), least and
+        largest figure there. A value without an
         order has its levels counted from nought.
     rank
         Spearman's rank correlation; None for a value without an order.
@@ -186,9 +187,10 @@ def _sampled(xs: Sequence[Floats], ordered: Sequence[bool], y: Floats) -> Effect
     some = np.linspace(0, y.size - 1, min(y.size, MOST_ANALYSED)).round().astype(np.int64)
     curves = _curves([x[some] for x in xs], ordered, y[some])
     if curves is not None:
-        shares, give, left = curves
-        each = [_along(x, y, _clean(s), g, o) for x, s, g, o in zip(xs, shares, give, ordered, strict=True)]
-        return Effects("curves", int(y.size), tuple(each), _clean(left))
+        fitted = _fitted(xs, ordered, curves.constants, float(y.mean()))
+        each = [_along(x, y, _clean(s), g, o, shown) for x, s, g, o, shown
+                in zip(xs, curves.shares, curves.give, ordered, fitted, strict=True)]
+        return Effects("curves", int(y.size), tuple(each), _clean(curves.left))
     if y.size < LEAST_SAMPLED:
         return Effects("correlation", int(y.size),
                        tuple(_along(x, y, None, 0.0, o) for x, o in zip(xs, ordered, strict=True)))
@@ -201,31 +203,52 @@ def _sampled(xs: Sequence[Floats], ordered: Sequence[bool], y: Floats) -> Effect
     return Effects("sampled", int(y.size), tuple(each), together=max(0.0, 1.0 - total))
 
 
-def _curves(xs: Sequence[Floats], ordered: Sequence[bool], y: Floats) -> tuple[list[float], list[float], float] | None:
-    """Shares from additive curves, half widths of their 95 % intervals, and the share left over; None where the curves
-    do not explain enough, or there are too few points."""
+class Curves(NamedTuple):
+    """Shares from additive curves, half widths of their 95 % intervals, the share left over, and the constants of the
+    curves (the first one stands alone)."""
+
+    shares: list[float]
+    give: list[float]
+    left: float
+    constants: Floats
+
+
+def _curves(xs: Sequence[Floats], ordered: Sequence[bool], y: Floats) -> Curves | None:
+    """None where the curves do not explain enough, or there are too few points."""
     blocks = [_curve(x, o) for x, o in zip(xs, ordered, strict=True)]
     constants = 1 + sum(block.shape[1] for block in blocks)
     if y.size < ROWS_A_CONSTANT * constants:
         return None
-    *shares, left = _curve_shares(blocks, y)
+    (*shares, left), solution = _curve_shares(blocks, y)
     if left > ADDITIVE:
         return None
     rng = np.random.default_rng(1)
     again = [rng.integers(y.size, size=y.size) for _ in range(RESAMPLES)]
-    spread = np.std([_curve_shares([block[i] for block in blocks], y[i])[:-1] for i in again], axis=0)
-    return shares, [1.96 * float(s) for s in spread], left
+    spread = np.std([_curve_shares([block[i] for block in blocks], y[i])[0][:-1] for i in again], axis=0)
+    return Curves(shares, [1.96 * float(s) for s in spread], left, solution)
 
 
-def _curve_shares(blocks: Sequence[Floats], y: Floats) -> list[float]:
-    """Variance of each curve, then of what all leave over, as shares of their sum."""
+def _fitted(xs: Sequence[Floats], ordered: Sequence[bool], solution: Floats, mean: float) -> list[Floats]:
+    """Each curve at its points (n,), about the mean of the figure: what one value does while the others are even."""
+    found, at = [], 1
+    for x, o in zip(xs, ordered, strict=True):
+        block = _curve(x, o)
+        curve = block @ solution[at:at + block.shape[1]]
+        found.append(mean + curve - curve.mean())
+        at += block.shape[1]
+    return found
+
+
+def _curve_shares(blocks: Sequence[Floats], y: Floats) -> tuple[list[float], Floats]:
+    """Variance of each curve, then of what all leave over, as shares of their sum; and the constants."""
     matrix = np.column_stack([np.ones(y.size), *blocks])
-    solution = np.linalg.lstsq(matrix, y, rcond=None)[0]
+    solution: Floats = np.linalg.lstsq(matrix, y, rcond=None)[0].astype(np.float64)
     left = float(((y - matrix @ solution) ** 2).sum()) / (y.size - matrix.shape[1])
     ends = np.cumsum([1, *(block.shape[1] for block in blocks)])
     found = [float(np.var(block @ solution[a:b])) for block, a, b in zip(blocks, ends, ends[1:], strict=False)]
     total = sum(found) + left
-    return [*(one / total for one in found), left / total] if total > 0 else [0.0] * (len(found) + 1)
+    shares = [*(one / total for one in found), left / total] if total > 0 else [0.0] * (len(found) + 1)
+    return shares, solution
 
 
 def _random_balance(x: Floats, y: Floats) -> tuple[float, float]:
@@ -261,8 +284,10 @@ def _epsilon(places: Ints, y: Floats) -> float:
     return (between - (int(there.sum()) - 1) * (total - between) / free) / total
 
 
-def _along(x: Floats, y: Floats, share: float | None, give: float, ordered: bool) -> Effect:
-    """Means along one value: at each level, or in classes of equal count when there are many levels."""
+def _along(x: Floats, y: Floats, share: float | None, give: float, ordered: bool, shown: Floats | None = None
+           ) -> Effect:
+    """Means along one value: at each level, or in classes of equal count when there are many levels. They are of
+    `shown` where that is given, a fitted curve."""
     if x.size == 0:
         return Effect(share, give, (), (), (), ())
     values, places = np.unique(x, return_inverse=True)
@@ -271,7 +296,8 @@ def _along(x: Floats, y: Floats, share: float | None, give: float, ordered: bool
         places = (np.argsort(np.argsort(x, kind="stable"), kind="stable") * classes) // x.size
         values = np.array([x[places == k].mean() for k in range(classes)])
     groups = [y[places == k] for k in range(values.size)]
-    return Effect(share, give, tuple(map(float, values)), tuple(float(g.mean()) for g in groups),
+    means = groups if shown is None else [shown[places == k] for k in range(values.size)]
+    return Effect(share, give, tuple(map(float, values)), tuple(float(g.mean()) for g in means),
                   tuple(float(g.min()) for g in groups), tuple(float(g.max()) for g in groups),
                   _spearman(x, y) if ordered else None)
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 
 from studies.report.study.data import Axis, StudyData
 from studies.report.study.effects import LEAST_SAMPLED, Effect, Effects
@@ -115,3 +115,13 @@ def method(data: StudyData, kinds: Sequence[str], count: int) -> str:
     chosen = " A search chose the points, most of them where they promised to be best: shares are of those points." \
         if data.sampling == "searched" else ""
     return text + chosen + left + unsure
+
+
+def picture_key(kinds: Iterable[str]) -> str:
+    """What circles and bars are in the pictures below the measures."""
+    found = set(kinds)
+    line = "the figure while this value alone changes" if "swing" in found else \
+        "the fitted curve of this value, the others being even" if "curves" in found else "the mean at that value"
+    bars = "" if "swing" in found else " Upright bars: from the least to the largest of all variants there."
+    return "In the pictures, the value that moves the figure most comes first, and values that hardly move it are " \
+           f"not drawn. Circles and line: {line}.{bars}"

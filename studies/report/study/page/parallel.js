@@ -19,6 +19,16 @@ function uprights() {
   });
 }
 
+// At most three lines of about so many letters, broken after dots, underscores and blanks.
+function wrapped(text, most) {
+  const lines = [""];
+  for (const piece of text.split(/(?<=[._ @])/)) {
+    if (lines[lines.length - 1] && (lines[lines.length - 1] + piece).length > most) lines.push("");
+    lines[lines.length - 1] += piece;
+  }
+  return (lines.length > 3 ? ["…", ...lines.slice(-2)] : lines).map((line) => plain(short(line, most + 4))).join("<br>");
+}
+
 function polyline(axes, places) {
   const x = [], y = [], who = [];
   for (const place of places) {
@@ -40,17 +50,17 @@ function drawParallel() {
   ].filter((set) => set[0].length);
   const traces = sets.map(([places, name, line]) => Object.assign({type: "scatter", mode: "lines+markers", line, marker: {size: 5, color: line.color},
     hoverinfo: "none", connectgaps: false, name: `${plain(name)} (${places.length})`}, polyline(axes, spread(places, MOST_LINES))));
-  const mark = study.chosen >= 0 ? [study.chosen] : [];
+  const mark = study.top >= 0 ? [study.top] : [];
   traces.push(Object.assign({type: "scatter", mode: "lines+markers", line: {color: INK, width: 3}, marker: {size: 9, color: INK}, hoverinfo: "none",
     showlegend: mark.length > 0, name: mark.length ? `variant ${study.number[mark[0]]}, at the top of this page` : ""}, polyline(axes, mark)));
   traces.push({type: "scatter", mode: "lines+markers", x: [], y: [], line: {color: INK, width: 2.5, dash: "dash"}, marker: {size: 8, color: INK}, hoverinfo: "skip", showlegend: false});
   const label = (axis, value) => axis.choice.levels ? short(axis.choice.levels[value] ?? "-", 18) : digits(value);
-  Plotly.newPlot("lines-plot", traces, layout(pageWidth(), 480, {
-    showlegend: true, legend: {orientation: "h", x: 0, y: -0.1, font: {size: 11.5}}, margin: {l: 60, r: 60, t: 56, b: 60},
+  Plotly.newPlot("lines-plot", traces, layout(pageWidth(), 500, {
+    showlegend: true, legend: {orientation: "h", x: 0, y: -0.1, font: {size: 11.5}}, margin: {l: 60, r: 60, t: 80, b: 60},
     xaxis: {visible: false, range: [-0.35, axes.length - 0.65], fixedrange: true}, yaxis: {visible: false, range: [-0.08, 1.08], fixedrange: true},
     shapes: axes.map((_, i) => ({type: "line", x0: i, x1: i, y0: 0, y1: 1, line: {color: INK, width: 1}, layer: "below"})),
     annotations: axes.flatMap((axis, i) => [
-      {x: i, yref: "paper", y: 1.04, text: plain(short(axis.choice.words, 22)) + (axis.choice.unit ? `<br>${plain(axis.choice.unit)}` : "<br> "), showarrow: false, font: {size: 11.5}, yanchor: "bottom"},
+      {x: i, yref: "paper", y: 1.04, text: wrapped(axis.choice.words, axes.length > 8 ? 12 : 22) + "<br>" + (plain(axis.choice.unit) || " "), showarrow: false, font: {size: 11.5}, yanchor: "bottom"},
       {x: i, yref: "y", y: 1.02, text: plain(label(axis, axis.most)), showarrow: false, font: {size: 11, color: QUIET}, yanchor: "bottom"},
       {x: i, y: -0.02, text: plain(label(axis, axis.least)), showarrow: false, font: {size: 11, color: QUIET}, yanchor: "top"}]),
   }), Object.assign({}, settings, {displayModeBar: false})).then((plot) => follow(plot, axes));

@@ -48,7 +48,7 @@ function drawSheet() {
   const table = document.getElementById("table");
   const heads = [...table.tHead.rows[0].cells];
   const rows = ranking.list.slice(ranking.sheet * study.rows, (ranking.sheet + 1) * study.rows).map((place) => {
-    const row = element("tr", place === study.chosen ? {class: "chosen"} : {});
+    const row = element("tr", place === study.top ? {class: "chosen"} : {});
     for (const head of heads) {
       const text = cellOf(head.dataset.key, place)[1];
       if (head.dataset.key === "number") row.append(element("td", {}, element("button", {type: "button", class: "look", "data-number": text}, text)));

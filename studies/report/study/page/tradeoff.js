@@ -49,8 +49,8 @@ function drawTradeoff() {
   }
   if (front.length > 1) traces.push({type: "scatter", mode: "lines", x: front.map((p) => across.values[p]), y: front.map((p) => up.values[p]),
     line: {color: INK, width: 2}, hoverinfo: "skip", name: "best front"});
-  if (study.chosen >= 0 && known(study.chosen)) traces.push({type: "scatter", mode: "markers", x: [across.values[study.chosen]], y: [up.values[study.chosen]],
-    customdata: [study.chosen], text: [summaryOf(study.chosen)], hoverinfo: "text", marker: {symbol: "circle-open", size: 22, color: INK, line: {width: 2}}, name: `variant ${study.number[study.chosen]}, at the top of this page`});
+  if (study.top >= 0 && known(study.top)) traces.push({type: "scatter", mode: "markers", x: [across.values[study.top]], y: [up.values[study.top]],
+    customdata: [study.top], text: [summaryOf(study.top)], hoverinfo: "text", marker: {symbol: "circle-open", size: 22, color: INK, line: {width: 2}}, name: `variant ${study.number[study.top]}, at the top of this page`});
   const lines = [...limitLines(across, "x"), ...limitLines(up, "y")];
   Plotly.react("tradeoff-plot", traces, layout(pageWidth(), 560, {
     showlegend: true, legend: {orientation: "v", x: 1.01, y: 1, xanchor: "left", font: {size: 11.5}},

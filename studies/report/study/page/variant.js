@@ -90,6 +90,6 @@ function startVariant() {
     const text = document.getElementById("wanted").value.trim();
     showVariant(/^\d+$/.test(text) ? Number(text) : text, false);
   });
-  const first = study.chosen >= 0 ? study.chosen : study.misses.length ? study.misses[0] : study.ranking.length ? study.ranking[0] : 0;
+  const first = study.top >= 0 ? study.top : study.misses.length ? study.misses[0] : study.ranking.length ? study.ranking[0] : 0;
   if (count) showVariant(study.number[first], false);
 }
