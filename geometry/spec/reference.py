@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from typing import Any, Literal, get_args, get_origin
 
 from pydantic import BaseModel
@@ -93,11 +93,11 @@ def json_schema() -> dict[str, Any]:
     for _, model in TABLES:
         table = schema if model is PartSpec else schema.get("$defs", {}).get(model.__name__)
         if table is not None:
-            _describe_fields(table, model)
+            describe_fields(table, model)
     return schema
 
 
-def _describe_fields(table: dict[str, Any], model: type[BaseModel]) -> None:
+def describe_fields(table: dict[str, Any], model: type[BaseModel]) -> None:
     """Put the kind, the range and an example of each quantity into its description."""
     for name, info in model.model_fields.items():
         entry = table.get("properties", {}).get(info.alias or name)
@@ -112,8 +112,9 @@ def _describe_fields(table: dict[str, Any], model: type[BaseModel]) -> None:
 
 def spec_reference() -> str:
     """The reference of the spec, as Markdown: every table and word, with unit, range, default and meaning."""
-    parts = [_introduction(), *(_table(title, model) for title, model in TABLES), _free_tables(), _loads(), _names()]
-    return "\n".join([*parts, _units(), _materials()]).rstrip() + "\n"
+    tables = (table_of_words(title, model) for title, model in TABLES)
+    parts = [_introduction(), *tables, _free_tables(), _loads(), _names(), _units(), _materials()]
+    return "\n".join(parts).rstrip() + "\n"
 
 
 def _introduction() -> str:
@@ -134,13 +135,16 @@ One TOML file describes one part. This page is made from the model that reads th
 """
 
 
-def _table(title: str, model: type[BaseModel]) -> str:
-    words = title.startswith(("[", "section", "travels"))
+def table_of_words(title: str, model: type[BaseModel], holds: Mapping[str, str] | None = None) -> str:
+    """One table of the reference: its words with what they hold (or what is said of it instead), default, meaning."""
+    words = title.startswith(("[", "section", "travels")) or "=" in title
     lines = [f"## `{title}`" if words else f"## {title[:1].upper()}{title[1:]}", ""]
     lines += [(model.__doc__ or "").strip().split("\n\n")[0].replace("``", "`"), ""]
     lines += ["| word | holds | default | meaning |", "|---|---|---|---|"]
     for name, info in model.model_fields.items():
-        lines.append(f"| `{info.alias or name}` | {_holds(model, name)} | {_default(info)} | {info.description} |")
+        word = info.alias or name
+        held = (holds or {}).get(word) or _holds(model, name)
+        lines.append(f"| `{word}` | {held} | {_default(info)} | {info.description} |")
     return "\n".join([*lines, ""])
 
 

@@ -56,8 +56,13 @@ def make_parser() -> argparse.ArgumentParser:
     show.add_argument("folder", metavar="RUN_FOLDER", help="folder that `haunch check` wrote")
     for study_command in (vary, report, again, export, rescue):
         study_command.register(commands)
-    command(commands, "schema", "print the JSON Schema of a spec, for editors that complete and check TOML", _schema)
-    command(commands, "reference", "print every word of a spec with its meaning (Markdown)", _reference)
+    schema = command(commands, "schema", "print the JSON Schema of a spec or plan, for editors that complete and check "
+                     "TOML", _schema)
+    reference = command(commands, "reference", "print every word of a spec or plan with its meaning (Markdown)",
+                        _reference)
+    for of_words in (schema, reference):
+        of_words.add_argument("of", metavar="part|plan", nargs="?", choices=("part", "plan"), default="part",
+                              help="of a part (as when left out) or of the plan of a study")
     command(commands, "materials", "print the table of materials with its sources", _materials)
     return parser
 
@@ -92,19 +97,23 @@ def _show(options: argparse.Namespace) -> int:
     return run_show(options.folder)
 
 
-def _schema(_: argparse.Namespace) -> int:
+def _schema(options: argparse.Namespace) -> int:
     import json
 
-    from geometry.spec import json_schema
-
-    print(json.dumps(json_schema(), indent=2))
+    if options.of == "plan":
+        from studies.vary.plan import plan_schema as schema
+    else:
+        from geometry.spec import json_schema as schema
+    print(json.dumps(schema(), indent=2))
     return 0
 
 
-def _reference(_: argparse.Namespace) -> int:
-    from geometry.spec import spec_reference
-
-    print(spec_reference())
+def _reference(options: argparse.Namespace) -> int:
+    if options.of == "plan":
+        from studies.vary.plan import plan_reference as reference
+    else:
+        from geometry.spec import spec_reference as reference
+    print(reference())
     return 0
 
 

@@ -22,7 +22,8 @@ from geometry.spec.text.expression import evaluate
 from geometry.spec.text.tokens import ExpressionError
 from geometry.spec.text.units import LENGTH, UNITS, Quantity
 
-EXAMPLES = sorted((Path(__file__).parents[2] / "studies" / "examples").glob("*.toml"))
+FOLDER = Path(__file__).parents[2] / "studies" / "examples"
+EXAMPLES = sorted(path for path in FOLDER.glob("*.toml") if not path.stem.endswith("_plan"))
 BASES = [tomllib.loads(path.read_text(encoding="utf-8")) for path in EXAMPLES]
 TEXTS = [path.read_text(encoding="utf-8") for path in EXAMPLES]
 

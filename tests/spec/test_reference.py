@@ -12,8 +12,9 @@ from geometry.spec import json_schema, spec_reference
 from geometry.spec.reference import TABLES
 from geometry.spec.words.structure import words_of
 
+FOLDER = Path(__file__).parents[2] / "studies" / "examples"
 EXAMPLES = [
-    *sorted((Path(__file__).parents[2] / "studies" / "examples").glob("*.toml")),
+    *sorted(path for path in FOLDER.glob("*.toml") if not path.stem.endswith("_plan")),
     Path(__file__).with_name("camera_arm.toml"),
 ]
 VALIDATOR = jsonschema.Draft202012Validator(json_schema())

@@ -82,8 +82,8 @@ def test_a_dimension_that_follows_from_parameters_has_its_tolerance_about_its_va
 
 
 def test_a_part_that_cannot_be_at_one_side_is_left_out(plan):
-    made = plan('[vary]\nbore = ["12 mm", "13.9 mm"]\n[base]\nbore = "10 mm"\nroot_depth = "54 mm"\ntip_depth = "30 mm"\n'
-                '[tolerances]\nbore = "0.2 mm"')
+    made = plan('[vary]\nbore = ["12 mm", "13.9 mm"]\n[base]\nbore = "10 mm"\nroot_depth = "54 mm"\n'
+                'tip_depth = "30 mm"\n[tolerances]\nbore = "0.2 mm"')
     assert [v.values["bore"] for v in made.variants()] == ["12 mm"]
     assert "holes[1]" in made.left_out()[0].rule
 

@@ -137,4 +137,4 @@ def _described_type(option: Any) -> str:
         return f"a table of {', '.join(get_args(key))} = value" if get_origin(key) is Literal else "a table"
     if isinstance(option, type) and issubclass(option, BaseModel):
         return "a table of " + ", ".join(words_of(option))
-    return {str: "text", float: "a number", int: "a whole number"}.get(option, "")
+    return {str: "text", float: "a number", int: "a whole number", bool: "true or false"}.get(option, "")

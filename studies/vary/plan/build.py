@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from collections.abc import Collection
 from pathlib import Path
 from typing import Any
 
@@ -33,10 +34,15 @@ ENOUGH_TRIED = 500
 """Points that are tried for a first variant before a plan is believed to have one."""
 
 
-def build(spec: PlanSpec, folder: Path, name: str, text: str, most: int | None) -> tuple[Plan | None, list[Problem]]:
-    """The plan as far as it can be made, and the mistakes. `most`: points that are not too many."""
+def build(
+    spec: PlanSpec, folder: Path, name: str, text: str, most: int | None, lost: Collection[str]
+) -> tuple[Plan | None, list[Problem]]:
+    """The plan as far as it can be made, and the mistakes.
+
+    `most`: points that are not too many. `lost`: tables of which something could not be read.
+    """
     reading, part_name, part_text = _read_part(spec, folder)
-    varied = _varied(reading, spec)
+    varied = _varied(reading, spec, lost)
     tolerances = _tolerances(reading, spec, varied)
     sampling = _sampling(reading, spec, varied)
     if sampling.method == "as made":
@@ -81,7 +87,8 @@ def _read_part(spec: PlanSpec, folder: Path) -> tuple[Reading, str, str]:
     reading = Reading(data, part_from_data(data), Values(data.get("parameters", {})).scope, problems)
     for key, value in spec.base.items():
         path = reading.place(f"base.{key}", key)
-        if path is not None:
+        mark = reading.mark(path) if path else None
+        if path and (mark is None or _fits(reading, f"base.{key}", value, mark)):
             data = with_value(data, path, value)
     given = spec.limits.model_dump(by_alias=True, exclude_unset=True)
     if given:
@@ -89,6 +96,14 @@ def _read_part(spec: PlanSpec, folder: Path) -> tuple[Reading, str, str]:
     if spec.base or given:
         reading = _changed(reading, data, problems)
     return reading, name, text
+
+
+def _fits(reading: Reading, where: str, value: Any, mark: OfKind) -> bool:
+    """Whether a value may stand where such a quantity stands; keeps a problem otherwise."""
+    values = Values(reading.data.get("parameters", {}))
+    values.number(where, value, mark)
+    reading.problems += values.problems
+    return not values.problems
 
 
 def _changed(reading: Reading, data: dict[str, Any], problems: list[Problem]) -> Reading:
@@ -106,12 +121,12 @@ def _prefixed(name: str, problem: Problem) -> Problem:
     return Problem(path, problem.given, problem.allowed, problem.fix)
 
 
-def _varied(reading: Reading, spec: PlanSpec) -> dict[str, Varied]:
+def _varied(reading: Reading, spec: PlanSpec, lost: Collection[str]) -> dict[str, Varied]:
     stocks = {**BUILT_IN, **{key: Stock(tuple(sizes), "") for key, sizes in spec.stock.items()}}
     used = dict.fromkeys(one.stock for one in spec.vary.values() if isinstance(one, VariedSpec) and one.stock)
     reading.notes += [f"stock list {name}: {stocks[name].source}"
                       for name in used if name in stocks and stocks[name].source]  # fmt: skip
-    if not spec.vary and spec.sampling.method != "as made":
+    if not spec.vary and "vary" not in lost and spec.sampling.method != "as made":
         reading.problem("vary", "nothing", "at least one parameter or path", 'root_depth = ["48 mm", "60 mm"]')
     found: dict[str, Varied] = {}
     for name, one in spec.vary.items():

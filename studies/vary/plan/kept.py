@@ -15,6 +15,7 @@ from dataclasses import dataclass
 from typing import NamedTuple
 
 from geometry.part import Part
+from geometry.spec.checks.profile import length_of
 from geometry.spec.resolve.values import shown
 from geometry.spec.text.units import KINDS, Kind
 from studies.vary.plan.reading import Reading
@@ -22,7 +23,8 @@ from studies.vary.plan.reading import Reading
 
 class Sort(NamedTuple):
     """A sort of figure: its kind, its meaning, the components it may have ("" is the size), and where it may be:
-    ``station`` (ends, named places, stations), ``support``, ``cut``, or nowhere in particular (empty)."""
+    ``place`` (ends, named places, stations), ``station`` (one of the 21 along the member, ``arm@120``), ``support``,
+    ``cut``, or nowhere in particular (empty)."""
 
     kind: str
     meaning: str
@@ -33,14 +35,14 @@ class Sort(NamedTuple):
 _SIZE_XYZ = ("", "x", "y", "z")
 SORTS: dict[str, Sort] = {
     "mass": Sort("mass", "mass of the part; where the plan has tolerances, at most material"),
-    "deflection": Sort("length", "largest size of a section's mean displacement", at="station"),
-    "rotation": Sort("angle", "rotation of a section", _SIZE_XYZ, "station"),
+    "deflection": Sort("length", "largest size of a section's mean displacement", at="place"),
+    "rotation": Sort("angle", "rotation of a section", _SIZE_XYZ, "place"),
     "stress": Sort("stress", "highest established stress of the solid; with a place that of a notch", at="cut"),
     "yield_factor": Sort("number", "least factor against first yield"),
     "reaction": Sort("force", "size of the force at a support", at="support"),
     "frequency": Sort("frequency", "lowest natural frequency; frequency_2, frequency_3 ... the next ones"),
     "buckling_factor": Sort("number", "least positive buckling factor"),
-    "displacement": Sort("length", "mean displacement of a section", _SIZE_XYZ, "station"),
+    "displacement": Sort("length", "mean displacement of a section", _SIZE_XYZ, "place"),
     "reaction_force": Sort("force", "force that a support exerts on the part", _SIZE_XYZ, "support"),
     "reaction_moment": Sort("moment", "moment that a support exerts on the part", _SIZE_XYZ, "support"),
     "section_force": Sort("force", "section force, member axes", ("N", "Vy", "Vz"), "station"),
@@ -54,6 +56,9 @@ SORTS: dict[str, Sort] = {
 
 USUAL = ("mass", "deflection", "rotation", "stress", "yield_factor", "reaction", "frequency", "buckling_factor")
 """Names of the figures that are always kept where the part has them."""
+
+STATIONS = 20
+"""Steps from station to station along a member."""
 
 NO_CASE = ("mass", "frequency")
 """Figures that belong to no case."""
@@ -118,8 +123,9 @@ def places_of(part: Part, at: str) -> list[str]:
         return [support.name for support in part.supports]
     if at == "cut":
         return [cut.name for member in part.members for cut in member.cuts]
+    stations = [f"{m.name}@{length_of(m) * k / STATIONS:.6g}" for m in part.members for k in range(STATIONS + 1)]
     ends = [f"{member.name}.{end}" for member in part.members for end in ("start", "end")]
-    return [*ends, *(place.name for place in part.places)] if at else []
+    return [*ends, *(place.name for place in part.places)] if at == "place" else stations if at else []
 
 
 def is_figure(name: str) -> bool:
@@ -163,14 +169,14 @@ def _check_component(reading: Reading, where: str, name: str, quantity: str, com
 def _check_place(reading: Reading, where: str, name: str, place: str, at: str) -> bool:
     known = places_of(reading.part, at)
     member = reading.part.members[0].name
-    station = at == "station" and re.fullmatch(rf"{re.escape(member)}@[0-9.]+", place)
+    station = at in ("place", "station") and re.fullmatch(rf"{re.escape(member)}@[0-9.]+", place)
     step = at == "cut" and re.fullmatch(rf"(?:{re.escape(member)}\.)?step@[0-9.]+", place)
     if not place or place in known or place.removeprefix(f"{member}.") in known or station or step:
         return True
     if not at:
         reading.problem(where, shown(name), f"{name.partition('@')[0]} without a place")
     else:
-        reading.unknown(where, place, known, f"a {at if at != 'station' else 'place'} of the part")
+        reading.unknown(where, place, known, f"a {at} of the part")
     return False
 
 

@@ -11,12 +11,13 @@ from pydantic import ValidationError
 from geometry.spec.model import PartSpec
 from geometry.spec.resolve.values import shown
 from geometry.spec.text.tokens import with_article
+from geometry.spec.text.units import Dimension, name_of
 from geometry.spec.words.fields import OfKind
 from geometry.spec.words.structure import Path, alternatives, at_path, described, model_of
 from studies.vary.plan.place import value_at, with_value
 from studies.vary.plan.reading import Reading, usual_unit
 from studies.vary.plan.stock import Stock
-from studies.vary.plan.varied import IDENTIFIER, SAME, Varied, unit_in
+from studies.vary.plan.varied import IDENTIFIER, SAME, Varied, quantity_of, unit_in
 from studies.vary.plan.words import VariedSpec
 
 MOST_VALUES = 100_000
@@ -148,6 +149,11 @@ def _from_stock(
     if table.stock not in stocks:
         reading.unknown(f"{where}.stock", table.stock, stocks, "a stock list")
         return []
+    kinds = {quantity.dimension for size in stocks[table.stock].sizes if (quantity := quantity_of(size, {}))}
+    if len(kinds) == 1 and mark.kind.dimension not in kinds:
+        reading.problem(f"{where}.stock", f"{table.stock}, a list of sizes that are each {_named(kinds)}",
+                        f"a list in which each is {with_article(mark.word)}")  # fmt: skip
+        return []
     sizes = _numbers(reading, f"stock.{table.stock}", list(stocks[table.stock].sizes), mark)
     low = reading.number(f"{where}.from", table.low, mark) if table.low is not None else -math.inf
     high = reading.number(f"{where}.to", table.high, mark) if table.high is not None else math.inf
@@ -158,6 +164,10 @@ def _from_stock(
         reach = f"{shown(sizes[0][0])} to {shown(sizes[-1][0])}"
         reading.problem(where, "no size in the range", f"sizes of the stock list {table.stock}, {reach}")
     return inside
+
+
+def _named(kinds: set[Dimension]) -> str:
+    return with_article(name_of(next(iter(kinds))))
 
 
 def _range(reading: Reading, where: str, table: VariedSpec, mark: OfKind, draft: Varied) -> list[tuple[Any, float]]:

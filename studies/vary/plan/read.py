@@ -38,7 +38,8 @@ def plan_from_data(
     spec, problems = read_structure(data)
     if spec is None:
         raise SpecError(problems)
-    plan, more = build(spec, Path(folder), name, text, MOST_POINTS if not allow_many else None)
+    lost = {problem.path.partition(".")[0] for problem in problems}
+    plan, more = build(spec, Path(folder), name, text, MOST_POINTS if not allow_many else None, lost)
     problems += [p for p in more if p not in problems]
     if problems or plan is None:
         raise SpecError(problems)

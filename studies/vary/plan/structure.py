@@ -10,6 +10,7 @@ from pydantic import ValidationError
 from pydantic_core import ErrorDetails
 
 from geometry.problem import Problem, SpecError
+from geometry.spec.model import LimitsSpec, PartSpec
 from geometry.spec.read import check_depth
 from geometry.spec.resolve.values import listed, shown
 from geometry.spec.text.tokens import nearest
@@ -66,7 +67,10 @@ def _problem(path: Path, errors: list[ErrorDetails], data: Any) -> Problem:
     if "extra_forbidden" in kinds:
         return _unknown_word(path, data)
     fix, mark = "", mark_in(annotation)
-    if path[0] == "vary" and len(path) == 2:
+    if path[0] == "limits" and len(path) == 2 and not isinstance(given, Mapping):
+        near = nearest(str(path[1]), words_of(LimitsSpec))
+        fix = f'Did you mean "{near}"?' if near and near != path[1] else ""
+    elif path[0] == "vary" and len(path) == 2:
         fix = "One value for all variants stands under [base]" if not isinstance(given, Mapping) else ""
     elif isinstance(given, str):
         choices = [word.strip('"') for word in described(annotation).removeprefix("one of ").split(", ")]
@@ -89,9 +93,9 @@ def _unknown_word(path: Path, data: Any) -> Problem:
     model = model_of(at_path(PlanSpec, data, path[:-1]), parent) if len(path) > 1 else PlanSpec
     words = words_of(model) if model else ()
     if path[0] == "vary" and len(path) == 3:
-        near = nearest(str(path[-1]), words)
-        inside = isinstance(below(parent, path[-1]), Mapping | list)
-        fix = f'Put a path in quotes: "{written(path[1:])} ..." = ...' if inside and not near else ""
+        inside = isinstance(below(parent, path[-1]), Mapping | list) and path[1] in words_of(PartSpec)
+        near = "" if inside else nearest(str(path[-1]), words)
+        fix = f'Put the whole path in quotes: "{written(path[1:])}..." = ...' if inside else ""
     else:
         near, fix = nearest(str(path[-1]), words), ""
     return Problem(written(path), str(path[-1]), f"one of {listed(words)}", f'Did you mean "{near}"?' if near else fix)

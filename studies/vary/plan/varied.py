@@ -144,6 +144,9 @@ def quantity_of(value: Any, scope: Mapping[str, Quantity]) -> Quantity | None:
 
 def unit_in(text: Any, default: str) -> str:
     """The unit that a text ends in, or the default one where it is arithmetic or has none."""
-    tokens = tokens_of(text) if isinstance(text, str) else ()
+    try:
+        tokens = tokens_of(text) if isinstance(text, str) else ()
+    except ExpressionError:
+        return default
     found = [t.unit for t in tokens if t.unit]
     return found[0] if len(found) == 1 and len(tokens) <= 3 else default  # a sign, the number, the end
