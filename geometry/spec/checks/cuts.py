@@ -13,6 +13,9 @@ Interval = tuple[float, float]
 MOST_CUTS = 400
 ROUND = 32  # points on a rim; the chord falls short of a circle by 0.5 % of its radius, so it is widened
 
+_ANGLES = [2.0 * math.pi * (k + 0.5) / ROUND for k in range(ROUND)]
+_CIRCLE = [(math.cos(angle), math.sin(angle)) for angle in _ANGLES]
+
 
 def check_cuts(values: Values, member: Member, paths: dict[str, str]) -> None:
     """Keep what is wrong with the cuts; `paths` holds the path of each group."""
@@ -56,8 +59,7 @@ def rim(cut: Cut) -> list[tuple[float, float]]:
     if cut.kind in ("hole", "slot"):
         r, half = cut.depth / 2.0, (cut.length - cut.depth) / 2.0
         wide = r / math.cos(math.pi / ROUND)
-        angles = [2.0 * math.pi * (k + 0.5) / ROUND for k in range(ROUND)]
-        own = [(math.copysign(half, math.cos(a)) + wide * math.cos(a), wide * math.sin(a)) for a in angles]
+        own = [(math.copysign(half, cosine) + wide * cosine, wide * sine) for cosine, sine in _CIRCLE]
     else:
         a, b = cut.length / 2.0, cut.depth / 2.0
         own = [(-a, -b), (0.0, -b), (a, -b), (a, 0.0), (a, b), (0.0, b), (-a, b), (-a, 0.0)]

@@ -139,8 +139,8 @@ def _eliminate(rows: list[Row], columns: int) -> tuple[list[Row], list[int]]:
         rows[done], rows[pivot] = rows[pivot], rows[done]
         rows[done] = [a / rows[done][column] for a in rows[done]]
         for r in range(len(rows)):
-            if r != done:
-                factor = rows[r][column]
+            factor = rows[r][column]
+            if r != done and factor:
                 rows[r] = [a - factor * b for a, b in zip(rows[r], rows[done], strict=True)]
         pivots.append(column)
     return rows, pivots

@@ -41,7 +41,16 @@ def evaluate(text: str, scope: Mapping[str, Quantity]) -> Quantity:
         For anything that is not a quantity: unknown units and names, dimensions that do not fit, results
         that are not finite.
     """
-    return _constant(text) if _is_constant(text) else _evaluated(text, scope)
+    if _is_constant(text):
+        return _constant(text)
+    return scope.get(_only_name(text)) or _evaluated(text, scope)
+
+
+@lru_cache(maxsize=4096)
+def _only_name(text: str) -> str:
+    """The name of which the text consists, or an empty text."""
+    tokens = tokens_of(text)
+    return tokens[0].text if len(tokens) == 2 and tokens[0].sort == "name" else ""
 
 
 @lru_cache(maxsize=4096)
