@@ -261,7 +261,8 @@ class _Watch:
 
     def _over(self, job: Job) -> str:
         """Why the job has to be ended now; empty where it may go on."""
-        resident = job.resident() + sum(_resident(pid) for pid in self.processes)
+        templates = [template.pid for template in self.host.templates]
+        resident = job.resident() + sum(_resident(pid, templates) for pid in self.processes)
         self.peak = max(self.peak, resident)
         if resident > self.memory:
             return (f"memory limit: the variant's processes held {resident:.0f} MiB of the {self.memory} MiB that are "
@@ -331,10 +332,12 @@ def _how(code: int | None) -> str:
     return f"ended by {signal_name(code)}" if code < 0 else f"ended with exit status {code}"
 
 
-def _resident(pid: int) -> float:
-    """Resident memory of a process, MiB; 0 where it has gone."""
+def _resident(pid: int, parents: Sequence[int | None]) -> float:
+    """Resident memory of a process, MiB; 0 where it has gone, or its number is another's by now."""
     try:
-        with open(f"/proc/{pid}/statm", encoding="ascii") as stat:
-            return int(stat.read().split()[1]) * os.sysconf("SC_PAGE_SIZE") / 2**20
+        with open(f"/proc/{pid}/stat", encoding="utf-8", errors="replace") as stat:
+            fields = stat.read().rpartition(")")[2].split()
+        own = int(fields[1]) in parents
+        return int(fields[21]) * os.sysconf("SC_PAGE_SIZE") / 2**20 if own else 0.0
     except (OSError, IndexError, ValueError):
         return 0.0
