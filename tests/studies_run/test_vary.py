@@ -154,8 +154,10 @@ def test_again_replaces_what_is_there(small, tmp_path):
     assert summary.failed == 1 and summary.evaluated == 2 and summary.reused == 10
     assert sorted(numbers_started(small, tmp_path)[begun:]) == [3, 5, 5]
     begun = len(small.started(tmp_path))
+    small.faults(tmp_path, n12="fails")
     summary = run(small, tmp_path, again=[1, 12])
-    assert sorted(numbers_started(small, tmp_path)[begun:]) == [1, 12] and summary.done == 12
+    assert sorted(numbers_started(small, tmp_path)[begun:]) == [1, 12, 12] and summary.done == 12
+    assert [failure.number for failure in summary.failures] == [5, 12]  # a finished one has given way
     with pytest.raises(SpecError, match="numbers of points from 1 to 12"):
         run(small, tmp_path, again=[13])
     with pytest.raises(SpecError, match="allowed: failed"):
@@ -172,13 +174,15 @@ def test_points_left_out_are_counted_with_their_rule(small, tmp_path):
 
 
 def test_runs_are_kept_once(small, tmp_path):
-    plan = small.make_plan(tmp_path, keep={"runs": {"best": 2, "worst": 1, "suspicious": 3, "every": 5}})
+    bars = {"depth": {"from": "36 mm", "to": "46 mm", "steps": 5}, "width": ["22 mm", "18 mm"]}
+    plan = small.make_plan(tmp_path, bars, keep={"runs": {"best": 2, "worst": 1, "suspicious": 3, "every": 6}})
     summary = run(small, tmp_path, plan)
     of = {variant.number: variant for variant in plan.variants()}
     best = [row.number for row in summary.best[:2]]
     odd = next(v.number for v in of.values() if v.values == {"depth": "46 mm", "width": "22 mm"})
     worst = next(v.number for v in of.values() if v.values == {"depth": "36 mm", "width": "18 mm"})
-    wanted = {1, 6, 11, *best, odd, worst}
+    wanted = {1, 7, *best, odd, worst}
+    assert len(wanted) == 6  # nobody is chosen for two reasons
     assert {path.name for path in (tmp_path / "bars.runs").iterdir()} == {
         f"{number:04d}-{of[number].key[:12]}" for number in wanted}
     assert sorted(summary.kept) == sorted((tmp_path / "bars.runs").iterdir())
