@@ -91,15 +91,16 @@ class Host:
         """Evaluate one variant and wait for it."""
         return next(iter(self.evaluate_group([order])))
 
-    def evaluate_group(self, orders: Sequence[Order]) -> Iterator[Outcome | Ended]:
+    def evaluate_group(self, orders: Sequence[Order], cancelled: Callable[[], bool] = lambda: False
+                       ) -> Iterator[Outcome | Ended]:
         """Evaluate variants one after the other in one worker; gives what became of each, in their order, as it comes.
 
         Those that follow one another with one shape share the solid and the mesh, those with one matrix its factor.
         The numbers are those of single evaluations. A variant that takes its process down is failed by itself; the
-        others go on in a new one.
+        others go on in a new one. Once `cancelled` says so, the rest is `Ended` as if the host had been closed.
         """
         while not self._free.acquire(timeout=POLL):
-            if self._closing.is_set():
+            if self._closing.is_set() or cancelled():
                 yield from (Ended(order.variant.key, "closed") for order in orders)
                 return
         try:
@@ -107,17 +108,17 @@ class Host:
             while left:
                 size = next((k for k, order in enumerate(left) if not order.shares_with(left[0])), len(left))
                 done = 0
-                for end in self._job(left[:size]):
+                for end in self._job(left[:size], cancelled):
                     done += 1
                     yield end
                 left = left[done:]
         finally:
             self._free.release()
 
-    def _job(self, orders: Sequence[Order]) -> Iterator[Outcome | Ended]:
+    def _job(self, orders: Sequence[Order], cancelled: Callable[[], bool]) -> Iterator[Outcome | Ended]:
         """One job; gives at least one end, and none for the orders that a new job has to take up."""
         with self._idle:
-            room = None if self._closing.is_set() else self._room
+            room = None if self._closing.is_set() or cancelled() else self._room
             self._running += room is not None
         if room is None:
             yield from (Ended(order.variant.key, "closed") for order in orders)
@@ -128,7 +129,7 @@ class Host:
             if fault := _made(folder):
                 yield from (Ended(order.variant.key, fault, "the temporary files") for order in orders)
             else:
-                yield from _Watch(self, orders, client, str(folder)).ends()
+                yield from _Watch(self, orders, client, str(folder), cancelled).ends()
         finally:
             for template in self.templates[1:]:
                 template.kill_client(client)
@@ -171,6 +172,7 @@ class _Watch:
     orders: Sequence[Order]
     client: str
     folder: str
+    cancelled: Callable[[], bool]
     stage: str = "spec"
     done: int = 0
     peak: float = 0.0
@@ -209,7 +211,7 @@ class _Watch:
                     elif end is not None:
                         yield from self._ended(end)
                         return
-                over = "closed" if self.host.closing else self._over(job)
+                over = "closed" if self.host.closing or self.cancelled() else self._over(job)
                 if closed and not over:
                     break
             if over == "closed":
