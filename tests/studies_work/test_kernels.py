@@ -66,6 +66,7 @@ def test_figures_are_those_of_the_cantilever(plain: Outcome) -> None:
     assert limits["yield_factor"].found is not None
     assert limits["yield_factor"].margin == pytest.approx(limits["yield_factor"].found / 1.2 - 1.0)
     assert set(plain.seconds) == {"spec", "solid", "mesh", "beam", "solve", "compare", "wall"}
+    assert plain.seconds["solid"] > 0.02 and plain.seconds["mesh"] > 0.05, "the kernels' own seconds count"
     assert 100.0 < plain.peak_memory < 2000.0 and plain.unknowns == 3 * plain.mesh["nodes"]
 
 

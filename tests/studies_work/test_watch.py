@@ -185,3 +185,20 @@ def test_folders_of_hosts_that_have_gone_are_removed(tmp_path: Path, monkeypatch
     assert sorted(p.name for p in tmp_path.iterdir()) == sorted([living.path.name, foreign.name])
     living.close()
     assert [p.name for p in tmp_path.iterdir()] == [foreign.name]
+
+
+def test_nothing_piles_up_over_many_variants(toys: Host) -> None:
+    """Open files and children of the host and of its templates are as many after thirty variants as after three."""
+    def held() -> list[int]:
+        pids = [os.getpid(), *(template.pid or 0 for template in toys.templates)]
+        return [len(os.listdir(f"/proc/{pid}/fd")) for pid in pids] + [len(children(pid)) for pid in pids[1:]]
+
+    def run(count: int) -> None:
+        ends = [toys.evaluate(toy(k, ("fine", "crash", "hang")[k % 3], seconds=0.1)) for k in range(count)]
+        assert all(isinstance(end, Outcome) for end in ends)
+        assert until(lambda: not jobs(toys))
+
+    run(3)
+    before = held()
+    run(30)
+    assert held() == before and _left(toys) == []
