@@ -146,6 +146,20 @@ def test_any_values_within_the_ranges_make_a_variant(plan):
     assert made.variant({"root_depth": "6.0 cm", "bore": 14.0}).key == list(made.variants())[3].key
 
 
+@pytest.mark.parametrize("text", [
+    f'[vary]\n{DEPTHS}bore = ["12 mm", "13 mm"]\n[sampling]\nmethod = "one at a time"',
+    '[vary]\n"supports.wall.hold" = [["x", "y", "z"]]\n"members.arm.roll" = ["10 deg"]\n[sampling]\n'
+    'method = "one at a time"',
+    '[vary]\nroot_depth = { from = "56 mm", to = "72 mm" }\n[sampling]\nmethod = "sobol"\npoints = 8',
+    '[sampling]\nmethod = "as made"\npoints = 8\n[tolerances]\nbore = "0.1 mm"',
+])
+def test_a_variant_is_made_again_from_its_values(plan, text):
+    made = plan(text)
+    for variant in made.variants():
+        assert made.variant(variant.values, variant.number) == variant
+        assert made.variant({**variant.values, **variant.numbers}, variant.number) == variant
+
+
 @pytest.mark.parametrize(("values", "path", "allowed"), [
     ({"root_depth": "80 mm"}, "root_depth", "from 56 mm to 72 mm"),
     ({"root_depth": "60 N"}, "root_depth", "a length"),
@@ -178,3 +192,11 @@ def test_a_plan_made_of_plain_data_is_the_plan_of_the_text(plan, examples):
     assert made.key == text.key
     inline = plan_from_data({**data, "part": text.part_data}, examples)
     assert inline.key == text.key
+
+
+def test_limits_of_the_plan_are_added_to_those_of_the_part_or_take_their_place(plan):
+    made = plan('[vary]\nbore = ["12 mm"]\n[limits]\ndeflection = "0.2 mm"\n[limits.tip]\nquantity = "displacement"\n'
+                'at = "arm.end"\ncomponent = "z"\nmax = "0.3 mm"')
+    part = part_from_data(next(made.variants()).data)
+    assert {limit.name: (limit.quantity, limit.value) for limit in part.limits} == {
+        "deflection": ("deflection", 0.2), "yield_factor": ("yield_factor", 1.5), "tip": ("displacement", 0.3)}

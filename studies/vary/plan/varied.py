@@ -97,7 +97,12 @@ class Varied:
         return {value: Quantity(n, dimension) for value, n in zip(self.values, self.numbers, strict=False)}
 
     def accepted(self, value: Any) -> Any:
-        """A value (written, or a number in base units) as written; raise `ValueError` with what may stand there."""
+        """A value (written, or a number in base units) as written; raise `ValueError` with what may stand there.
+
+        The part's own value may always stand there.
+        """
+        if value == self.base and not isinstance(value, bool):
+            return value
         if not self.numeric:
             if value not in self.values:
                 raise ValueError("one of " + ", ".join(map(str, self.values)))
@@ -111,6 +116,8 @@ class Varied:
         near = next((v for v, n in zip(self.values, self.numbers, strict=True) if math.isclose(n, number)), None)
         if near is not None:
             return near
+        if self.base_number is not None and math.isclose(number, self.base_number, rel_tol=SAME):
+            return self.base
         if self.listed:
             raise ValueError("one of " + ", ".join(map(str, self.values)))
         if not self.low * (1 - SAME) <= number <= self.high * (1 + SAME):
