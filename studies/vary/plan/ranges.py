@@ -110,7 +110,7 @@ def _quantities(
     before = len(reading.problems)
     kind, written = mark.kind, unit_in(table.values[0] if table.values else table.low, "")
     whole = int in alternatives(at_path(PartSpec, reading.data, path)) and path[0] != "parameters"
-    base = reading.quantity_at(path)
+    base = quantity_of(_base(reading, path), reading.scope)
     draft = Varied(name, path, kind.word, kind.unit, written or usual_unit(mark.word), (), (), None, None,
                    _base(reading, path), base.value if base else None, listed=True, whole=whole)  # fmt: skip
     if table.values:

@@ -15,7 +15,7 @@ from geometry.spec.text.tokens import ExpressionError, nearest, with_article
 from geometry.spec.text.units import KINDS, NUMBER, UNITS, Dimension, Quantity, name_of
 from geometry.spec.words.fields import OfKind
 from geometry.spec.words.structure import Path, at_path, mark_in
-from studies.vary.plan.place import NoPlaceError, place_of, value_at
+from studies.vary.plan.place import NoPlaceError, place_of
 
 
 @dataclass
@@ -78,12 +78,6 @@ class Reading:
         value = values.number(where, text, mark)
         self.problems += [p for p in values.problems if p not in self.problems]
         return None if values.problems else value
-
-    def quantity_at(self, path: Path) -> Quantity | None:
-        """Value of the part at a place, evaluated."""
-        from studies.vary.plan.varied import quantity_of
-
-        return quantity_of(value_at(self.data, path), self.scope)
 
 
 def mark_of_dimension(dimension: Dimension) -> OfKind | None:
