@@ -13,6 +13,7 @@ from studies.report.study.ranking import (
     at_the_edge,
     figure_of,
     governing,
+    is_suspicious,
     limits_word,
     meets_all,
     neighbours,
@@ -127,7 +128,7 @@ def _chosen(data: StudyData, ranking: Ranking, row: Row, warnings: tuple[str, ..
     else:
         of = f"{_best(data)} of {counted(len(ranking.meeting), 'variant')}; no limits were set"
         reasons = ["No limits were set, so nothing says whether it is strong or stiff enough."]
-    reasons += [_edge_text(data, row), _over_text(data, ranking)]
+    reasons += [_edge_text(data, row), _over_text(data, ranking), _next_text(data, ranking, row)]
     reasons.append(f"Judgement of its two models: {marked(outcome.judgement or 'agrees')}. Before it is made, check it "
                    "alone and read its run folder:")
     steps = _steps(data, row)
@@ -159,6 +160,24 @@ def _over_text(data: StudyData, ranking: Ranking) -> str:
            f"{_aim_noun(data)}, but {be} suspicious."
 
 
+def _next_text(data: StudyData, ranking: Ranking, row: Row) -> str:
+    """The next in the ranking, where there are no steps to speak of."""
+    after = next((other for other in ranking.meeting[ranking.meeting.index(row) + 1:] if other.aim is not None
+                  and other.outcome is not None and not is_suspicious(other.outcome)), None)
+    if neighbours(data, row) or after is None or after.outcome is None:
+        return ""
+    text = f"Next comes variant {after.number}: {aim_text(data, after)}{_difference(row, after)}"
+    held = governing(after.outcome)
+    return f"{text}, {margin_text(held)} of {figure_words(figure_of(held))}." if held is not None else f"{text}."
+
+
+def _difference(row: Row, other: Row) -> str:
+    """`` (+2.7 %)``; empty where there is nothing to compare with."""
+    if other.aim is None or not row.aim:
+        return ""
+    return f" ({'+' if other.aim >= row.aim else '−'}{percent(abs(other.aim / row.aim - 1.0))})"
+
+
 def _aim_noun(data: StudyData) -> str:
     return figure_words(data.aim) if "*" not in data.aim and " " not in data.aim else f"aim ({data.aim})"
 
@@ -179,8 +198,7 @@ def _steps(data: StudyData, row: Row) -> tuple[Step, ...]:
             word = "not run yet" if outcome is None else "failed"
             found.append(Step(other.number, change, "-", "-", "-", word))
             continue
-        difference = "-" if other.aim is None or not row.aim else \
-            f"{'+' if other.aim >= row.aim else '−'}{percent(abs(other.aim / row.aim - 1.0))}"
+        difference = _difference(row, other).strip(" ()") or "-"
         held = governing(outcome)
         limit = f"{figure_words(figure_of(held))} {margin_text(held)}" if held is not None else "-"
         word = "! suspicious" if outcome.judgement == "suspicious" else \

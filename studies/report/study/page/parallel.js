@@ -60,7 +60,7 @@ function drawParallel() {
     xaxis: {visible: false, range: [-0.35, axes.length - 0.65], fixedrange: true}, yaxis: {visible: false, range: [-0.08, 1.08], fixedrange: true},
     shapes: axes.map((_, i) => ({type: "line", x0: i, x1: i, y0: 0, y1: 1, line: {color: INK, width: 1}, layer: "below"})),
     annotations: axes.flatMap((axis, i) => [
-      {x: i, yref: "paper", y: 1.04, text: wrapped(axis.choice.words, axes.length > 8 ? 12 : 22) + "<br>" + (plain(axis.choice.unit) || " "), showarrow: false, font: {size: 11.5}, yanchor: "bottom"},
+      {x: i, yref: "paper", y: 1.04, text: wrapped(axis.choice.words, axes.length > 8 ? 10 : 22) + "<br>" + (plain(axis.choice.unit) || " "), showarrow: false, font: {size: 11.5}, yanchor: "bottom"},
       {x: i, yref: "y", y: 1.02, text: plain(label(axis, axis.most)), showarrow: false, font: {size: 11, color: QUIET}, yanchor: "bottom"},
       {x: i, y: -0.02, text: plain(label(axis, axis.least)), showarrow: false, font: {size: 11, color: QUIET}, yanchor: "top"}]),
   }), Object.assign({}, settings, {displayModeBar: false})).then((plot) => follow(plot, axes));
