@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 import scipy.sparse as sp
+import scipy.sparse.linalg as spla
 from solid_help import box_mesh, box_part
 from solver_help import ALL, BUDGET, SIX, TIP, WALL, B, H, L, bent_mesh, gap, right_hand_sides, straight_mesh
 
@@ -18,7 +19,7 @@ from fem.solid.model import SolidModel, build_model
 from fem.solid.solver.choose import choose
 from fem.solid.solver.elimination import Elimination
 from fem.solid.solver.estimate import multigrid_memory
-from fem.solid.solver.smoother import ADD, BEGIN, CARRY, BlockJacobi
+from fem.solid.solver.smoother import ADD, BEGIN, CARRY, BlockJacobi, highest
 from fem.solid.solver.transfer import Transfer
 from fem.solid.system import HeldSystem
 from geometry.budget import Budget
@@ -126,6 +127,31 @@ def test_a_step_of_the_smoother_is_that_of_dense_algebra(columns: int) -> None:
     jacobi.threads = 3
     jacobi.step(again[0], change, *again, 0.3, 0.7, 1.3, ADD)
     assert all(np.array_equal(a, b) for a, b in zip(again, (left, d, z), strict=True))
+
+
+@pytest.mark.parametrize("kind", ["straight", "bent"])
+def test_the_bound_of_the_smoother_lies_above_the_greatest_eigenvalue_and_near_it(kind: str) -> None:
+    model = make(straight_mesh() if kind == "straight" else bent_mesh())
+    jacobi, single = BlockJacobi(model.K, Elimination(model.constraints.T), 2), model.K.single()
+    K, D = model.K.to_csr(), sp.block_diag(list(jacobi.blocks.astype(float)), format="csr")
+    greatest = float(np.abs(spla.eigs(D @ K, k=1, which="LM", return_eigenvectors=False, tol=1e-5)[0]))
+    for seed in range(5):
+        assert greatest * 0.995 < jacobi.largest(single, seed) < 1.25 * greatest
+
+
+def test_a_bound_from_an_exhausted_space_is_the_eigenvalue() -> None:
+    # conjugate gradients on diag(1, 4) from (1, 1): the second step ends in the solution
+    A, r = np.diag([1.0, 4.0]), np.ones(2)
+    p, alphas, betas, before = np.zeros(2), [], [], 0.0
+    for k in range(2):
+        betas.append(float(r @ r) / before if k else 0.0)
+        p = r + betas[-1] * p
+        before = float(r @ r)
+        alphas.append(before / float(p @ A @ p))
+        r = r - alphas[-1] * (A @ p)
+    assert highest(alphas, betas) == pytest.approx(4.0, rel=1e-12)
+    # cut short, the rest is added: at least the greatest one here, as the start has a part of it
+    assert highest(alphas[:1], betas) >= 4.0 * (1 - 1e-12)
 
 
 def test_iterations_do_not_grow_with_the_mesh(monkeypatch: pytest.MonkeyPatch) -> None:

@@ -13,6 +13,11 @@ from fem.solid.factor import SymmetricFactor, TooLarge
 from fem.solid.shape import Array
 from geometry.budget import Budget
 
+COUNT_LIMIT = 100_000
+"""Unknowns up to which modes are counted by a factor where the solver is iterative. Beyond, the factor would take
+several times as long as everything else, and random vectors look for a missed one instead (`sounding`), which is sure
+but for a stated chance."""
+
 APART = 2e-3
 """Least relative gap behind which eigenvalues are counted."""
 
@@ -110,6 +115,6 @@ def separated(values: Array, wanted: int) -> tuple[int, float] | None:
 
 def too_large(motions: Motions) -> str:
     """Why the modes are not counted; empty when they are."""
-    if motions.direct:
+    if motions.direct or motions.free <= COUNT_LIMIT:
         return ""
     return f"not counted by a factor, which would take several times as long as the {motions.solver} solver's search"

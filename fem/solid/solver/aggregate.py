@@ -19,7 +19,7 @@ from fem.solid.kernels.pattern import find
 from fem.solid.shape import Array
 from fem.solid.solver.cycle import Cycle, largest
 from fem.solid.solver.elimination import Elimination
-from fem.solid.solver.smoother import SAFETY, BlockJacobi, ritz_values
+from fem.solid.solver.smoother import BlockJacobi, highest, ritz_values
 from fem.solid.support import rigid_map
 from geometry.budget import Budget
 
@@ -120,19 +120,18 @@ class AggregateSolver:
         r = self._held.lift(np.random.default_rng(seed).standard_normal((self._held.free, 1)))
         p, z = np.zeros_like(r), np.zeros_like(r)
         alphas, betas, before = [], [], 0.0
-        for k in range(_LANCZOS):
+        for k in range(_LANCZOS + 1):
             self._cycle(r, z)
             rz = float(np.vdot(r, z))
-            beta = rz / before if k else 0.0
-            p = z + beta * p
+            betas.append(rz / before if k else 0.0)
+            if k == _LANCZOS:
+                break
+            p = z + betas[-1] * p
             q = K @ p
-            alpha = rz / float(np.vdot(p, q))
-            r -= alpha * q
-            alphas.append(alpha)
-            betas.append(beta)
+            alphas.append(rz / float(np.vdot(p, q)))
+            r -= alphas[-1] * q
             before = rz
-        values = ritz_values(alphas, betas)
-        return float(values[0]), SAFETY * float(values[-1])
+        return float(ritz_values(alphas, betas)[0]), highest(alphas, betas)
 
     def solve(self, rhs: Array) -> Array:
         """(f, k) of right-hand sides (f, k)."""
