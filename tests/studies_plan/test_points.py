@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import itertools
+import tomllib
 from collections import Counter
 
 import pytest
 
 from geometry.problem import SpecError
 from geometry.spec.read import part_from_data
-from studies.vary.plan import LeftOut, plan_from_data
+from studies.vary.plan import LeftOut, plan_from_data, plan_from_text
 
 DEPTHS = 'root_depth = { from = "56 mm", to = "72 mm", steps = 4 }\n'
 
@@ -192,6 +193,9 @@ def test_a_plan_made_of_plain_data_is_the_plan_of_the_text(plan, examples):
     assert made.key == text.key
     inline = plan_from_data({**data, "part": text.part_data}, examples)
     assert inline.key == text.key
+    assert plan_from_text(made.text, examples).key == text.key
+    again = plan_from_data({**tomllib.loads(inline.text), "part": tomllib.loads(inline.part_text)}, examples)
+    assert again.key == text.key
 
 
 def test_limits_of_the_plan_are_added_to_those_of_the_part_or_take_their_place(plan):

@@ -97,13 +97,13 @@ def test_parts_as_made_follow_their_distribution(plan, distribution, exact):
     web = Tolerance("web", ("web",), "length", "mm", "mm", 0.5, 0.2, distribution)
     shares = np.linspace(0.001, 0.999, 97)
     assert [web.deviation(s) for s in shares] == pytest.approx(exact.ppf(shares), abs=1e-9)
-    made = plan('[sampling]\nmethod = "as made"\npoints = 400\n[tolerances]\n"members.arm.section.web" = '
+    made = plan('[sampling]\nmethod = "as made"\npoints = 200\n[tolerances]\n"members.arm.section.web" = '
                 f'{{ minus = "0.5 mm", plus = "0.2 mm", distribution = "{distribution}" }}\nbore = "0.2 mm"')
     off = np.array([v.numbers["members.arm.section.web"] - 6.0 for v in made.variants()])
-    assert len(off) == made.count() == 400
+    assert len(off) == made.count() == 200
     assert off.min() >= -0.5 - 1e-9 and off.max() <= 0.2 + 1e-9
-    # Latin hypercube: one part in each of 400 slices of equal probability.
-    assert np.array_equal(np.sort(np.minimum((exact.cdf(off) * 400 + 1e-4).astype(int), 399)), np.arange(400))
+    # Latin hypercube: one part in each of 200 slices of equal probability.
+    assert np.array_equal(np.sort(np.minimum((exact.cdf(off) * 200 + 1e-4).astype(int), 199)), np.arange(200))
     assert all(v.fullest is None for v in itertools.islice(made.variants(), 3))
 
 
@@ -155,7 +155,7 @@ force = ["0 N", "0 N", "-10 N"]
     assert volume_of(made.members[0]) == pytest.approx(prismoid - math.pi * 25 * 40, rel=1e-12)
 
 
-@pytest.mark.parametrize("name", ["camera_arm", "gripper_finger", "sensor_mast", "vent_channel", "watering_rail"])
+@pytest.mark.parametrize("name", ["camera_arm", "gripper_finger", "vent_channel"])
 def test_the_mass_of_the_examples_is_near_enough(name):
     """Within 2 %: rims, edge radii and cuts in tapering walls are not exact, and need not be."""
     from fem.beam import solve_beam

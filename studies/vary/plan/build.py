@@ -82,7 +82,7 @@ def _read_part(spec: PlanSpec, folder: Path) -> tuple[Reading, str, str]:
         except SpecError as error:
             raise SpecError(_prefixed(name, problem) for problem in error.problems) from None
     else:
-        name, text, data = "part", "", spec.part
+        name, text, data = "part.toml", "", spec.part
     problems: list[Problem] = []
     reading = Reading(data, part_from_data(data), Values(data.get("parameters", {})).scope, problems)
     for key, value in spec.base.items():

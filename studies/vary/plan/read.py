@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -34,7 +35,10 @@ def plan_from_data(
     data: Mapping[str, Any], folder: str | Path = ".", name: str = "plan.toml", *, text: str = "",
     allow_many: bool = False,
 ) -> Plan:  # fmt: skip
-    """The plan that plain data (the tables of a TOML file) describes. `part` may be the tables of a part too."""
+    """The plan that plain data (the tables of a TOML file) describes. `part` may be the tables of a part too.
+
+    Without a `text`, `Plan.text` and `Plan.part_text` are written from the tables, for the record.
+    """
     spec, problems = read_structure(data)
     if spec is None:
         raise SpecError(problems)
@@ -43,6 +47,16 @@ def plan_from_data(
     problems += [p for p in more if p not in problems]
     if problems or plan is None:
         raise SpecError(problems)
-    return plan
+    return plan if text else _with_texts(plan, data)
+
+
+def _with_texts(plan: Plan, data: Mapping[str, Any]) -> Plan:
+    """The plan with its text, and that of a part that came as tables."""
+    from studies.vary.work.toml import dumps
+
+    part = data["part"]
+    if isinstance(part, str):
+        return replace(plan, text=dumps(data))
+    return replace(plan, text=dumps({**data, "part": plan.part_name}), part_text=dumps(part))
 
 
