@@ -73,8 +73,8 @@ class Varied:
 
     @property
     def label(self) -> str:
-        """Its name with the base unit, for tables and axes: ``root_depth, mm``."""
-        return f"{self.name}, {self.unit}" if self.unit else self.name
+        """What it is called in tables and pictures, its unit beside it: of a path without a name the last two words."""
+        return self.name if self.path[0] == "parameters" else ".".join(self.name.split(".")[-2:])
 
     def written(self, number: float) -> Any:
         """A number in base units as it is written in the spec: ``"62.5 mm"``; a plain number without a unit."""
