@@ -13,11 +13,17 @@ from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
 import pytest
-from work_helpers import PLANTED, alive, children, gone, jobs, toy, until
+from work_helpers import PLANTED, alive, bar, children, gone, jobs, toy, until
 
+from geometry.budget import Budget
+from geometry.problem import SolidError
+from geometry.process import Template, TemplateFailure
+from geometry.spec.read import part_from_data
+from studies.check.solid_child import SolidChild
 from studies.vary.outcome import Outcome
 from studies.vary.work import Ended, Host
 from studies.vary.work.room import MARK, PREFIX, Room
+from studies.vary.work.variant_job import _Told
 
 pytestmark = pytest.mark.skipif(sys.platform != "linux", reason="looks into /proc")
 
@@ -127,6 +133,27 @@ def test_closing_ends_all_work_at_once(planted_path: None) -> None:
         assert time.monotonic() - began < 5.0
         assert gone(everything) and folder is not None and not folder.exists()
         assert host.evaluate(toy(3, "fine")) == Ended("key-3", "closed"), "a closed host starts nothing"
+
+
+def test_a_lent_template_that_has_gone_starts_nothing_and_keeps_nobody_waiting(planted_path: None, tmp_path: Path
+                                                                                ) -> None:
+    template = Template("toy_kernel")
+    control, _ = template.lend()
+    lent = _Told("toy_kernel", control, "client", lambda message: None)
+    order = {"folder": str(tmp_path), "done": True}
+    with lent.submit(order) as job:
+        assert job.wait(20.0) == 0 and lent.ended() == ""
+    assert template.pid is not None
+    os.kill(template.pid, signal.SIGKILL)
+    assert until(lambda: lent.ended() == "lost")
+    with pytest.raises(TemplateFailure):
+        lent.submit(order)
+    began = time.monotonic()
+    with SolidChild(part_from_data(bar()), Budget(), lent) as child, pytest.raises(SolidError, match="from outside"):
+        child.result()
+    assert time.monotonic() - began < 2.0
+    control.close()
+    template.close()
 
 
 def test_no_more_jobs_than_workers(toys: Host) -> None:

@@ -7,8 +7,8 @@ outside it says so and ends: nothing is known about the variant then.
 
 from __future__ import annotations
 
-import contextlib
 import os
+import signal
 import socket
 import sys
 import tempfile
@@ -16,7 +16,7 @@ import threading
 from collections.abc import Callable, Mapping
 from typing import Any
 
-from geometry.process import Job, LentTemplate, share_lent
+from geometry.process import Job, LentTemplate, TemplateFailure, share_lent
 from studies.vary.work import frames
 from studies.vary.work.room import is_full
 
@@ -26,12 +26,8 @@ ADDRESS_SPACE_MARGIN = 2048
 """MiB of address space above what the template has and the memory limit: a second line, behind the host's watch."""
 
 
-class EndedOutside(BaseException):
-    """A process that this job needs was ended from outside. Nothing on the way may take it for a fault."""
-
-
 class _Told(LentTemplate):
-    """Tells the host of each process, and stops this job where one was ended from outside."""
+    """Tells the host of each process, and starts none after one was ended from outside."""
 
     def __init__(self, module: str, control: socket.socket, client: str, tell: Callable[[Any], None]) -> None:
         super().__init__(module, control, client)
@@ -39,7 +35,7 @@ class _Told(LentTemplate):
 
     def submit(self, job: Mapping[str, Any], cancelled: Callable[[], bool] = lambda: False) -> Job:
         if self.ended():  # by no fault of the job: another attempt would give another mesh
-            raise EndedOutside
+            raise TemplateFailure("a process was ended from outside before", -signal.SIGKILL)
         started = super().submit(job, cancelled)
         self._tell({"process": started.pid})
         return started
@@ -97,8 +93,7 @@ def serve(order: dict[str, Any], data: socket.socket) -> int:
     asked = frames.receive(data)
     _limit(asked["memory"])
     os.environ["TMPDIR"] = tempfile.tempdir = asked["folder"]
-    with contextlib.suppress(EndedOutside):
-        _evaluate(asked["orders"], lent[0], lent[1], tell)
+    _evaluate(asked["orders"], lent[0], lent[1], tell)
     return 0
 
 
@@ -111,16 +106,14 @@ def _evaluate(orders: list[dict[str, Any]], cad: _Told, mesh: _Told, tell: Calla
     workshop = Workshop(cad, mesh, lambda stage: tell({"stage": stage}), kept=KeptSystem() if orders[1:] else None)
     with dense_products_in_one_thread():
         for plain in orders:
-            try:
-                outcome = evaluate(Order.from_json(plain), workshop)
-            finally:
-                for template in (cad, mesh):
-                    if signal := template.ended():
-                        tell({"ended": signal, "module": template.module})
-                        raise EndedOutside
+            outcome = evaluate(Order.from_json(plain), workshop)
+            for template in (cad, mesh):
+                if ended := template.ended():
+                    tell({"ended": ended, "module": template.module})
+                    return
             if outcome.status == "failed" and outcome.stage != "write" and _no_space(outcome.reason):
                 tell({"ended": "disk full", "module": ""})
-                raise EndedOutside
+                return
             tell({"outcome": outcome.to_json()})
 
 
