@@ -31,7 +31,10 @@ from studies.vary.plan.words import PlanSpec, VariedSpec
 SECONDS_EACH = 2.0
 """What a variant may be reckoned to take on one core."""
 ENOUGH_TRIED = 500
-"""Points that are tried for a first variant before a plan is believed to have one."""
+"""Points that are tried for a first variant before a plan is believed to have one (the quick ones, that a constraint
+leaves out, do not count)."""
+MOST_TRIED = 100_000
+"""Points that are tried at the most."""
 
 
 def build(
@@ -261,8 +264,9 @@ def _check_any(reading: Reading, plan: Plan) -> None:
         tried += 1
         count, first = reasons.get(point.rule, (0, point.reason))
         reasons[point.rule] = (count + 1, first)
-        if tried - sum(n for rule, (n, _) in reasons.items() if rule.startswith("constraints.")) >= ENOUGH_TRIED:
-            return
+        by_constraints = sum(n for rule, (n, _) in reasons.items() if rule.startswith("constraints."))
+        if tried - by_constraints >= ENOUGH_TRIED or tried >= MOST_TRIED:
+            return  # the study itself will tell
     for rule, (count, first) in sorted(reasons.items(), key=lambda item: -item[1][0]):
         reading.problem(rule, f"a plan in which it leaves out {count} of all {tried} points",
                         "a plan that leaves at least one variant", f"The first: {first}")  # fmt: skip
