@@ -43,6 +43,8 @@ def test_a_value_is_not_credited_with_what_another_does() -> None:
     assert found.each[1].share == pytest.approx(0.0, abs=1e-12)
     assert found.each[0].share > 0.3
     assert found.shared == pytest.approx(1.0 - found.each[0].share)
+    turned = effects([b[there], a[there]], [True, True], a[there] ** 2, "grid")
+    assert [e.share for e in turned.each] == pytest.approx([0.0, found.each[0].share], abs=1e-12)
 
 
 def test_words_have_effects_too() -> None:
@@ -98,6 +100,15 @@ def test_words_in_a_sample(samples: ModuleType) -> None:
     assert found.kind == "sampled"
     assert found.each[0].share == pytest.approx(0.49 / 0.99, abs=0.05)
     assert found.each[1].share < 0.01
+
+
+def test_idle_words_of_many_levels_get_no_share() -> None:
+    """Left as it is, the correlation ratio of a word of twelve levels would be 11/300 = 3.7 % by chance alone."""
+    rng = np.random.default_rng(2)
+    idle = [rng.integers(0, 12, 300).astype(float) for _ in range(8)]
+    found = effects([*idle, rng.random(300)], [False] * 8 + [True], np.sin(50 * rng.random(300)), "sobol")
+    assert found.kind == "sampled"
+    assert np.mean([e.share for e in found.each[:8]]) < 0.012
 
 
 def test_one_at_a_time_swings_about_the_base() -> None:
