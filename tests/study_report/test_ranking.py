@@ -137,7 +137,7 @@ def test_unfinished_studies_say_that_the_answer_may_change(samples: ModuleType) 
     data = samples.grid()
     rows = tuple(dataclasses.replace(row, outcome=None, aim=None) if row.number > 40 else row for row in data.rows)
     assert top_of(dataclasses.replace(data, rows=rows)).warnings == (
-        "20 of 60 points have not run: the study was stopped. What is said here may change.",)
+        "20 of 60 points have not run yet. What is said here may change.",)
 
 
 def test_parts_as_made_are_counted(samples: ModuleType) -> None:

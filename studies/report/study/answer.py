@@ -60,7 +60,7 @@ class Answer:
 
 def answer(data: StudyData, ranking: Ranking, counts: Counts) -> Answer:
     """What a person should read first."""
-    warnings = _warnings(data, counts)
+    warnings = _warnings(counts)
     if not counts.finished:
         return Answer(_nothing(counts), warnings=warnings)
     if data.sampling == "as made":
@@ -85,11 +85,11 @@ def _nothing(counts: Counts) -> str:
     return f"{which} failed: there is nothing to choose from{rest}. The reasons are below."
 
 
-def _warnings(data: StudyData, counts: Counts) -> tuple[str, ...]:
+def _warnings(counts: Counts) -> tuple[str, ...]:
     found = []
     if counts.waiting and counts.finished + counts.failed:
-        state = "are still to run" if data.running else "have not run: the study was stopped"
-        found.append(f"{counts.waiting} of {counts.points} points {state}. What is said here may change.")
+        verb = "has" if counts.waiting == 1 else "have"
+        found.append(f"{counts.waiting} of {counts.points} points {verb} not run yet. What is said here may change.")
     if counts.failed and counts.finished and counts.failed > 0.1 * counts.points:
         found.append(f"{counts.failed} of {counts.points} variants failed, and a better one may be among them.")
     return tuple(found)

@@ -107,8 +107,6 @@ class StudyData:
     written: str = ""
     seconds: float = 0.0
     """Time on the clock of all variants, added up over the workers."""
-    running: bool = False
-    """A driver is at work on it."""
     versions: Mapping[str, str] = field(default_factory=dict)
     notes: tuple[str, ...] = ()
     """What happened to the study as a whole: interruptions, variants run again."""
