@@ -5,6 +5,7 @@ Needs a Chromium and the package playwright, which drives it; without them these
 
 from __future__ import annotations
 
+import base64
 import dataclasses
 import math
 import re
@@ -25,6 +26,7 @@ CHROMIUM = next(filter(None, map(shutil.which, ("chromium", "chromium-browser", 
 playwright = pytest.importorskip("playwright.sync_api", reason="the package playwright is not installed")
 pytestmark = pytest.mark.skipif(CHROMIUM is None, reason="no Chromium on this machine (apt-get install chromium)")
 
+PIXEL = "iVBORw0KGgoAAAANSUhEUgAAAAEAAAABCAQAAAC1HAwCAAAAC0lEQVR42mNkYAAAAAYAAjCB0C8AAAAASUVORK5CYII="
 FLAGS = ("--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run", "--disable-background-networking",
          "--disable-component-update", "--disable-sync")
 
@@ -59,10 +61,15 @@ def opened(browser: Any, folder: Path, data: Any, name: str = "page") -> Opened:
 
 @pytest.fixture(scope="module")
 def grid(browser: Any, samples: ModuleType, tmp_path_factory: pytest.TempPathFactory) -> Iterator[Any]:
-    found = opened(browser, tmp_path_factory.mktemp("grid"), samples.grid())
+    folder, data = tmp_path_factory.mktemp("grid"), samples.grid()
+    (folder / "kept run").mkdir()
+    (folder / "kept run" / "part.png").write_bytes(base64.b64decode(PIXEL))
+    rows = [dataclasses.replace(row, run="kept%20run/", pictures=("kept%20run/part.png",)) if row.number == 53 else row
+            for row in data.rows]
+    found = opened(browser, folder, dataclasses.replace(data, rows=tuple(rows)))
     yield found
     assert found.complaints == []
-    assert len(found.asked) == 1, "something was fetched"
+    assert [url.rpartition("/")[2] for url in found.asked] in (["page.html"], ["page.html", "part.png"])
     found.page.close()
 
 
@@ -141,15 +148,17 @@ def test_choosing_what_is_listed_and_turning_sheets(grid: Opened) -> None:
 def test_pointing_at_a_mark_tells_its_variant(grid: Opened) -> None:
     page = grid.page
     page.locator("#tradeoff").scroll_into_view_if_needed()
-    spot = page.evaluate(SPOT, ["tradeoff-plot", "variant 37", 0])
+    at = page.evaluate("""document.getElementById("tradeoff-plot").data
+        .find((one) => one.name.startsWith("~ explained, limits met")).customdata.indexOf(placeOf.get(60))""")
+    spot = page.evaluate(SPOT, ["tradeoff-plot", "~ explained, limits met", at])
     page.mouse.move(spot[0] - 40, spot[1] + 40)
     page.mouse.move(*spot)
     page.wait_for_selector("#tradeoff-plot .hoverlayer .hovertext", timeout=10_000)
     told = page.locator("#tradeoff-plot .hoverlayer").text_content()
-    for text in ("variant 37", "root_depth 66 mm", "mass 0.4316 kg", "deflection 0.1942 mm", "~ explained", "= met"):
+    for text in ("variant 60", "root_depth 72 mm", "mass 0.6415 kg", "deflection 0.118 mm", "~ explained", "= met"):
         assert text in told, told
     page.mouse.click(*spot)
-    comes(page, "#detail h3", "Variant 37:")
+    comes(page, "#detail h3", "Variant 60:")
 
 
 def drawn(page: Any, name: str) -> list[list[float]]:
@@ -223,6 +232,20 @@ def test_one_variant_on_demand(grid: Opened) -> None:
     assert page.locator("#detail").inner_text().startswith("Variant 37: ~ explained, limits = met")
 
 
+def test_a_kept_run_is_linked_with_its_pictures(grid: Opened) -> None:
+    page = grid.page
+    page.fill("#wanted", "53")
+    page.click("#ask button")
+    links = page.locator("#detail a").evaluate_all("links => links.map(a => a.getAttribute('href'))")
+    assert links == ["kept%20run/", "kept%20run/summary.md", "kept%20run/part.png"]
+    page.locator("#detail img").scroll_into_view_if_needed()
+    for _ in range(100):
+        if page.locator("#detail img").evaluate("image => image.complete && image.naturalWidth"):
+            break
+        page.wait_for_timeout(50)
+    assert page.locator("#detail img").evaluate("image => image.naturalWidth") == 1
+
+
 def test_the_line_under_the_pointer_is_followed(grid: Opened) -> None:
     page = grid.page
     page.locator("#lines").scroll_into_view_if_needed()
@@ -242,7 +265,6 @@ def test_numbers_are_written_as_in_the_tables_of_a_run(grid: Opened) -> None:
 def test_printed(grid: Opened, tmp_path: Path) -> None:
     """A4 across, every section on it, no control that paper cannot work."""
     pdf = grid.page.pdf(prefer_css_page_size=True)
-    assert grid.page.locator(".effect-plot.js-plotly-plot").count() == 3
     assert pdf.startswith(b"%PDF")
     boxes = {tuple(map(float, box.split())) for box in re.findall(rb"/MediaBox\s*\[([^\]]+)\]", pdf)}
     assert all(math.isclose(b[2], 842, abs_tol=2) and math.isclose(b[3], 595, abs_tol=2) for b in boxes) and boxes
@@ -262,6 +284,9 @@ def test_printed(grid: Opened, tmp_path: Path) -> None:
 def test_nothing_in_a_name_runs(browser: Any, samples: ModuleType, tmp_path: Path) -> None:
     found = opened(browser, tmp_path, samples.hostile())
     page = found.page
+    assert page.locator(".effect-plot").count() == 4 and page.locator(".effect-plot.js-plotly-plot").count() == 0
+    page.pdf()
+    assert page.locator(".effect-plot.js-plotly-plot").count() == 4, "what was not looked at is not on paper"
     for number in (3, 5, 11):
         page.fill("#wanted", str(number))
         page.click("#ask button")
