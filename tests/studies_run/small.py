@@ -53,7 +53,7 @@ class SmallBackend:
     def __init__(self, room: Path, slots: int = 2, seconds: float = 0.0) -> None:
         self.slots, self._room, self._seconds = slots, room, seconds
         self._waiting: queue.SimpleQueue[tuple[Sequence[Order], Hear] | None] = queue.SimpleQueue()
-        self._closed = False
+        self.closed = False
         self.groups: list[list[int]] = []
         self._children: set[subprocess.Popen[bytes]] = set()
         for _ in range(slots):
@@ -67,8 +67,11 @@ class SmallBackend:
         while (item := self._waiting.get()) is not None:
             orders, hear = item
             for place, order in enumerate(orders):
-                end = self._evaluate(order)
-                if self._closed:
+                try:
+                    end: Any = self._evaluate(order)
+                except Exception as error:  # noqa: BLE001 - the driver raises it
+                    end = error
+                if self.closed:
                     return
                 hear(place, end)
 
@@ -96,7 +99,7 @@ class SmallBackend:
         return _outcome(variant.key, depth * width * 1e-6, 4e6 / (width * depth**3))
 
     def close(self) -> None:
-        self._closed = True
+        self.closed = True
         for _ in range(self.slots):
             self._waiting.put(None)
         for child in list(self._children):

@@ -11,6 +11,8 @@ from collections import Counter
 from pathlib import Path
 from typing import Any
 
+import pytest
+
 from studies.record import Record, RecordError
 
 
@@ -108,13 +110,14 @@ def killed_often(small: Any, room: Path, kills: int, seed: int, steps: int) -> C
     return done
 
 
-def test_random_kills_lose_nothing(small, tmp_path):
-    """The short form of the test in ``test_kills.py``: small processes in place of the real work."""
-    done = killed_often(small, tmp_path, 12, 1, 19)
-    assert done.total() == 12 and len(done) == 2
+@pytest.mark.parametrize(("kills", "steps"), [(12, 19), pytest.param(100, 149, marks=pytest.mark.heavy)])
+def test_random_kills_lose_nothing(small, tmp_path, kills, steps):
+    """As in ``test_kills.py``, with small processes in place of the real work."""
+    done = killed_often(small, tmp_path, kills, 1, steps)
+    assert done.total() == kills and len(done) == 2
     finished = [line.split("variant ")[1].split()[0] for line in (tmp_path / "log").read_text().splitlines()
                 if " deflection " in line or "every limit met" in line]
-    assert len(finished) >= 38 and max(Counter(finished).values()) == 1
+    assert len(finished) >= 2 * steps and max(Counter(finished).values()) == 1
     (tmp_path / "whole").mkdir()
-    small.Driver(tmp_path / "whole", 0.0, 19).said()
-    assert rows(tmp_path) == rows(tmp_path / "whole") and len(rows(tmp_path)) == 40
+    small.Driver(tmp_path / "whole", 0.0, steps).said()
+    assert rows(tmp_path) == rows(tmp_path / "whole") and len(rows(tmp_path)) == 2 * steps + 2

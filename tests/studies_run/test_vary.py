@@ -191,6 +191,20 @@ def test_runs_are_kept_once(small, tmp_path):
     assert run(small, tmp_path, plan).kept == () and len(small.started(tmp_path)) == begun
 
 
+def test_runs_are_kept_here_when_another_machine_evaluates(small, tmp_path):
+    made = []
+
+    def elsewhere_then_here():
+        made.append(small.SmallBackend(tmp_path))
+        made[-1].writes_here = len(made) > 1
+        return made[-1]
+
+    plan = small.make_plan(tmp_path, keep={"runs": {"best": 1, "worst": 0, "suspicious": 0, "every": 3}})
+    summary = vary(plan, tmp_path / "bars.study", backend=elsewhere_then_here)
+    assert len(made) == 2 and made[0].closed and len(summary.kept) == 1
+    assert [path.name[:4] for path in (tmp_path / "bars.runs").iterdir()] == [f"{summary.best[0].number:04d}"]
+
+
 def test_fault_of_what_evaluates_stops_the_study_and_it_goes_on_later(small, tmp_path):
     small.faults(tmp_path, n6="scheduler gone")
     with pytest.raises(StudyStopped, match=r"the scheduler is gone\. \d+ points? (is|are) done .*; the same"):

@@ -107,8 +107,13 @@ class Driver:
             self._closing = True
             reader.join()
 
-    def keep(self, tickets: Iterable[Ticket]) -> None:
-        """Evaluate variants once more, for their run folders; the record is left as it is."""
+    def keep(self, tickets: Iterable[Ticket], make_backend: Callable[[], Backend]) -> None:
+        """Evaluate variants once more, for their run folders; the record is left as it is. `make_backend` is for those
+        that write on this machine, where the present one does not."""
+        if self._backend is not None and not self._backend.writes_here:
+            self._backend.close()
+            self._backend = None
+        self._make_backend = make_backend
         for ticket in tickets:
             self._pool.put(ticket)
         self._work()

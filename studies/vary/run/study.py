@@ -19,16 +19,20 @@ from studies.vary.run.keeping import kept_run, new_run
 from studies.vary.run.progress import Happening, Listener, Log, in_words, several
 from studies.vary.run.signals import heard
 from studies.vary.run.summary import MOST_SHOWN, Findings, Summary, to_keep
+from studies.vary.variant import Variant
 
 if TYPE_CHECKING:
+    from studies.vary.cluster import Tls
     from studies.vary.plan import Plan
+
 
 class StudyStopped(HaunchError):
     """The study had to stop before its end. What was finished is in the record, and the same call goes on."""
 
 
-def vary(plan: Plan, record: str | Path, *, workers: int = 0, on: str | None = None, share: bool = False,
-         again: Iterable[str | int] = (), memory: int | None = None, log: str | Path | None = None,
+def vary(plan: Plan, record: str | Path, *, workers: int = 0, on: str | None = None, tls: Tls | None = None,
+         share: bool = False, again: Iterable[str | int] = (), memory: int | None = None,
+         log: str | Path | None = None,
          listener: Listener | None = None, stop: threading.Event | None = None,
          backend: Callable[[], Backend] | None = None) -> Summary:
     """Evaluate every variant of a plan that the record does not hold yet.
@@ -42,7 +46,9 @@ def vary(plan: Plan, record: str | Path, *, workers: int = 0, on: str | None = N
     workers
         Variants evaluated at a time, each on one core; 0: as many as this process has cores.
     on
-        Address of a cluster's scheduler, ``tcp://...`` or ``tls://...``; None: this machine.
+        Address of a cluster's scheduler, ``tcp://...`` or ``tls://...``; None: this machine (`studies.vary.cluster`).
+    tls
+        Files for TLS; None: Dask's own configuration.
     share
         The record may hold other studies too; their finished variants are used again.
     again
@@ -67,7 +73,7 @@ def vary(plan: Plan, record: str | Path, *, workers: int = 0, on: str | None = N
     Raises
     ------
     SpecError
-        `again` names what the plan does not have.
+        `again` names what the plan does not have, or the address of the cluster is wrong.
     RecordError
         The record cannot be used.
     StudyStopped
@@ -77,6 +83,7 @@ def vary(plan: Plan, record: str | Path, *, workers: int = 0, on: str | None = N
         plan = dataclasses.replace(plan, run=dataclasses.replace(plan.run, memory=memory))
     words, numbers = _again(again, plan.count())
     path, started = Path(record), time.monotonic()
+    cluster = None if on is None else _cluster(plan, on, tls, workers)
 
     stop = stop or threading.Event()
     with Log(Path(log) if log else None, listener) as tell:
@@ -87,9 +94,11 @@ def vary(plan: Plan, record: str | Path, *, workers: int = 0, on: str | None = N
             for text in plan.notes:
                 tell(Happening("note", text))
             redo = {point.key for point, _ in writer.failed()} if "failed" in words else set()
-            driver = Driver(plan, writer, backend or _backend(plan, workers, on), tell, stop, redo, numbers)
+            make = backend or (_backend(plan, workers) if cluster is None else cluster(tell))
+            driver = Driver(plan, writer, make, tell, stop, redo, numbers)
+            here = backend or _backend(plan, workers)
             with heard(driver.ask_to_stop):
-                return _run(driver, plan, writer, tell, started)
+                return _run(driver, plan, writer, tell, started, here)
 
 
 def _again(again: Iterable[str | int], count: int) -> tuple[set[str], set[int]]:
@@ -102,12 +111,8 @@ def _again(again: Iterable[str | int], count: int) -> tuple[set[str], set[int]]:
     return words, numbers
 
 
-def _backend(plan: Plan, workers: int, on: str | None) -> Callable[[], Backend]:
+def _backend(plan: Plan, workers: int) -> Callable[[], Backend]:
     def make() -> Backend:
-        if on is not None:
-            from studies.vary.cluster import ClusterBackend
-
-            return ClusterBackend(on, plan.run.memory)
         from studies.vary.run.local import LocalBackend
 
         return LocalBackend(workers or available_threads(), plan.run.memory)
@@ -115,13 +120,22 @@ def _backend(plan: Plan, workers: int, on: str | None) -> Callable[[], Backend]:
     return make
 
 
-def _run(driver: Driver, plan: Plan, writer: Writer, tell: Listener, started: float) -> Summary:
+def _cluster(plan: Plan, on: str, tls: Tls | None, workers: int) -> Callable[[Listener], Callable[[], Backend]]:
+    """Looks at the address now, before there is a record; what it gives makes the backend."""
+    from studies.vary.cluster import cluster
+
+    make = cluster(on, tls, workers=workers, memory=plan.run.memory)
+    return lambda tell: lambda: make(lambda text: tell(Happening("note", text)))
+
+
+def _run(driver: Driver, plan: Plan, writer: Writer, tell: Listener, started: float,
+         here: Callable[[], Backend]) -> Summary:
     try:
         driver.run()
         findings = Findings(plan.aim, plan.keep.best, plan.keep.worst, plan.keep.suspicious)
         if not driver.stopped_by:
             _look_through(writer, findings)
-            driver.keep(_tickets(plan, writer, findings, tell))
+            driver.keep(_tickets(plan, writer, findings, tell), here)
     except (RecordError, BackendLost) as error:
         done = driver.tally.done
         points = f"{several(done, 'point')} {'is' if done == 1 else 'are'} done"
@@ -133,11 +147,10 @@ def _run(driver: Driver, plan: Plan, writer: Writer, tell: Listener, started: fl
     tell(progress)
     summary = Summary(
         record=writer.path, points=progress.points, counts=progress.words, fine=findings.fine,
-        left_out=driver.left_out, reused=progress.reused,
-        evaluated=driver.tally.evaluated, seconds=time.monotonic() - started, interrupted=driver.stopped_by,
-    best=tuple(findings.best[:MOST_SHOWN]), nearest=findings.nearest,
-        suspicions=dict(findings.suspicions.most_common()), failures=tuple(findings.failures),
-        safer=findings.safer, kept=tuple(driver.kept))
+        left_out=driver.left_out, reused=progress.reused, evaluated=driver.tally.evaluated,
+        seconds=time.monotonic() - started, interrupted=driver.stopped_by, best=tuple(findings.best[:MOST_SHOWN]),
+        nearest=findings.nearest, suspicions=dict(findings.suspicions.most_common()),
+        failures=tuple(findings.failures), safer=findings.safer, kept=tuple(driver.kept))
     if summary.interrupted:
         tell(Happening("stop", f"stopped ({summary.interrupted}); {in_words(progress)}"))
     else:
@@ -156,10 +169,7 @@ def _tickets(plan: Plan, writer: Writer, findings: Findings, tell: Listener) -> 
     for row in to_keep(findings, plan.keep.best):
         if kept_run(writer.path, row.key) is not None:
             continue
-        variant = plan.variant(row.values, row.number)
-        if variant.key != row.key:
-            raise RecordError(f"variant {row.number} of the record is not that of the plan: another version of Haunch "
-                              "wrote it; give this study a --record of its own")
+        variant = Variant(row.number, row.values, row.numbers, writer.spec(row.key) or {}, row.key, row.key)
         outcome = writer.outcome(row.key)
         first = outcome if outcome is not None and outcome.safer_mesh else None
         tickets.append(Ticket(variant, str(new_run(writer.path, variant)), recorded=True, first=first))

@@ -33,6 +33,7 @@ class Ranked:
     number: int
     key: str
     values: Mapping[str, Any]
+    numbers: Mapping[str, float]
     aim: float
     cost: float
     margin: float | None
@@ -117,7 +118,7 @@ def ranked(point: Point, outcome: Outcome, aim: AimLike) -> Ranked:
     figures = {name: kept.beam if kept.solid is None else kept.solid for name, kept in outcome.figures.items()}
     cost = aim.cost(figures, point.numbers)
     margins = [held.margin for held in outcome.limits if held.margin is not None]
-    return Ranked(point.number, point.key, point.values, aim.value(figures, point.numbers),
+    return Ranked(point.number, point.key, point.values, point.numbers, aim.value(figures, point.numbers),
                   math.inf if math.isnan(cost) else cost, min(margins, default=None), outcome.judgement, outcome.fine,
                   outcome.figures)
 
