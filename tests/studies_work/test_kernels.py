@@ -174,7 +174,9 @@ def _family() -> list[Order]:
     """A shape with another load, then with another support and material, and modes; another shape under its key."""
     held = {"wall": {"on": "bar.start", "hold": "all", "coupling": "average"}}
     tables = [bar(), bar(tip=250), bar(supports=held, vibration={"modes": 1}, material="EN AW-6061 T6")]
-    return [order_of(k, data, "one") for k, data in enumerate([*tables, bar(length=70)], 1)]
+    other = bar(length=70)
+    other["members"]["bar"]["section"]["depth"] = "14 mm"
+    return [order_of(k, data, "one") for k, data in enumerate([*tables, other], 1)]
 
 
 @pytest.fixture(scope="module")
