@@ -91,6 +91,7 @@ class Sections:
         self._integrals: dict[float, OutlineIntegrals] = {}
         self._shear: dict[float, tuple[Array, Array]] = {}
         self._net: dict[Hashable, OutlineIntegrals] = {}
+        self._net_at: dict[tuple[bytes, str], LineProperties] = {}
         cuts = sorted({0.0, length, *(s.at for s in member.stations if 0.0 < s.at < length)})
         spans = list(zip(cuts[:-1], cuts[1:], strict=True))
         constant = [not any(dims_slope(member, 0.5 * (a + b)).values()) for a, b in spans]
@@ -210,10 +211,14 @@ class Sections:
 
     def net(self, x: Array, side: str = "after") -> LineProperties:
         """Properties with cuts taken off at points x (m,)."""
-        p = self.gross(x, side)
         x = np.atleast_1d(np.asarray(x, dtype=float))
-        for effect in self.effects:
-            here = np.flatnonzero((x > effect.start) & (x < effect.end))
-            if len(here):
-                p = effect.apply(p, x, here, self.both_integrals)
-        return p
+        key = x.tobytes(), side  # the same points are asked for again by every model of this member
+        if key not in self._net_at:
+            p = self.gross(x, side)
+            for effect in self.effects:
+                here = np.flatnonzero((x > effect.start) & (x < effect.end))
+                if len(here):
+                    p = effect.apply(p, x, here, self.both_integrals)
+            self._net_at[key] = p
+        p = self._net_at[key]
+        return replace(p, shear=p.shear.copy())  # callers change it

@@ -7,6 +7,7 @@ loads and restrained warping included.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 
 import numpy as np
@@ -59,15 +60,22 @@ def exponentials(A: Array) -> Array:
     """(m, n, n) exponentials of many small matrices at once: Taylor series of order 18 with scaling and squaring.
 
     All share one scaling, chosen so that the largest 1-norm is at most 1/2; the rest of the series is then below
-    rounding error.
+    rounding error. The series is summed in three blocks of six powers: seven products instead of seventeen (M. S.
+    Paterson and L. J. Stockmeyer, SIAM J. Comput. 2 (1973) 60-66).
     """
     size = float(np.abs(A).sum(axis=1).max())
     halvings = max(0, int(np.ceil(np.log2(size / 0.5)))) if size > 0.0 else 0
-    B = A / 2.0**halvings
-    eye = np.eye(A.shape[-1])
-    M = eye + B / 18.0
-    for k in range(17, 0, -1):
-        M = eye + B @ M / k
+    powers = [A / 2.0**halvings]
+    for k in range(1, 6):
+        powers.append(powers[k // 2] @ powers[k - 1 - k // 2])
+    inner = np.arange(A.shape[-1])
+    M = powers[5] / math.factorial(18)
+    for first in (12, 6, 0):
+        for k, power in enumerate(powers[:5], first + 1):
+            M += power / math.factorial(k)
+        M[:, inner, inner] += 1.0 / math.factorial(first)
+        if first:
+            M = M @ powers[5]
     for _ in range(halvings):
         M = M @ M
     return M

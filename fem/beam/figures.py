@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Literal, NamedTuple
 
 import numpy as np
@@ -24,7 +25,7 @@ XYZ = ("x", "y", "z")
 STATIONS = 20
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Solved:
     """Everything that the figures are made from; loads and temperature changes by case (last axis)."""
 
@@ -35,6 +36,11 @@ class Solved:
     lengths: Array
     change: Array
     states: States
+
+    @cached_property
+    def energies(self) -> Array:
+        """(2, cases) see `energies`."""
+        return _energies(self)
 
 
 def station_values(mesh: BeamMesh) -> Array:
@@ -180,6 +186,10 @@ def _section_forces(s: Solved) -> Iterator[Block]:
 
 def energies(s: Solved) -> Array:
     """(2, cases) elastic energy without shear, and of shear, N mm (Simpson's rule on each length)."""
+    return s.energies
+
+
+def _energies(s: Solved) -> Array:
     mesh, material = s.mesh, s.mesh.part.material
     E, G = material.E, material.E / (2.0 * (1.0 + material.nu))
     x = mesh.x
@@ -190,9 +200,9 @@ def energies(s: Solved) -> Array:
                           (x[1:] - inset, s.states.end, 1.0)):
         p = mesh.stiffness(at)
         f = states[:, 7:13]
-        whole = np.einsum("mic,mij,mjc->mc", f, section_flexibility(p, E, G), f)
+        whole = (f * (section_flexibility(p, E, G) @ f)).sum(axis=1)
         p.shear[:] = 0.0
-        bending = np.einsum("mic,mij,mjc->mc", f, section_flexibility(p, E, G), f)
+        bending = (f * (section_flexibility(p, E, G) @ f)).sum(axis=1)
         torque = np.einsum("mi,mic->mc", torque_row(p), f)
         chi, B = states[:, 6], states[:, 13]
         free = torque**2 / (G * p.J)[:, None]

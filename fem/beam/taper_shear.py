@@ -60,8 +60,9 @@ def above(edges: Array, levels: Array) -> tuple[Array, Array, Array]:
     s, e = np.maximum(b1, levels), np.maximum(b2, levels)
     # int a db and int a b db along what is above the level, a = a1 + slope (b - b1)
     base = a1 - slope * b1
-    area = base * (e - s) + slope * (e**2 - s**2) / 2.0
-    first = base * (e**2 - s**2) / 2.0 + slope * (e**3 - s**3) / 3.0
+    s2, e2 = s * s, e * e
+    area = base * (e - s) + slope * (e2 - s2) / 2.0
+    first = base * (e2 - s2) / 2.0 + slope * (e2 * e - s2 * s) / 3.0
     crossing = ((b1 < levels) != (b2 < levels)) * np.sign(b2 - b1)
     width = (crossing * (base + slope * levels)).sum(axis=0)
     return area.sum(axis=0), first.sum(axis=0), width

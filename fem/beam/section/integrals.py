@@ -123,26 +123,38 @@ def extreme_points(outlines: Sequence[Outline]) -> NDArray[np.float64]:
 
 
 def _extremes(edges: Sequence[SweptEdge]) -> NDArray[np.float64]:
-    size = max(abs(v) for e, _ in edges for p in (e.start, e.end) for v in p) or 1.0
-    return np.array([_extreme(edges, axis, sign, 1e-9 * size) for axis, sign in ((1, 1), (1, -1), (0, -1), (0, 1))])
+    corners = [p for e, _ in edges for p in (e.start, e.end)]
+    values = [p[0] for p in corners], [p[1] for p in corners]
+    size = max(abs(v) for some in values for v in (min(some), max(some))) or 1.0
+    return np.array([_extreme(edges, corners, values[axis], axis, sign, 1e-9 * size)
+                     for axis, sign in ((1, 1), (1, -1), (0, -1), (0, 1))])
 
 
-def _extreme(edges: Sequence[SweptEdge], axis: int, sign: int, tol: float) -> Point:
-    """Farthest point along +-axis; the middle of the side when flat; of several the upper one, then the left one."""
+def _extreme(edges: Sequence[SweptEdge], corners: Sequence[Point], values: Sequence[float], axis: int, sign: int,
+             tol: float) -> Point:
+    """Farthest point along +-axis; the middle of the side when flat; of several the upper one, then the left one.
+
+    `values` are the coordinates of the `corners` along the axis.
+    """
+    far = max(values) if sign > 0 else -min(values)
+    rounds = _foremost_of_arcs(edges, axis, sign)
+    far = max([far, *(sign * p[axis] for p in rounds)])
+    level = [p for p, v in zip(corners, values, strict=True) if sign * v >= far - tol]
+    level += [p for p in rounds if sign * p[axis] >= far - tol]
+    flat = [((e.start[0] + e.end[0]) / 2, (e.start[1] + e.end[1]) / 2) for e, arc in edges
+            if arc is None and sign * e.start[axis] >= far - 2 * tol and abs(e.start[axis] - e.end[axis]) <= tol]
+    level = [p for p in flat if sign * p[axis] >= far - tol] or level
+    return max(level, key=lambda p: (round(p[1] / tol), -p[0]))
+
+
+def _foremost_of_arcs(edges: Sequence[SweptEdge], axis: int, sign: int) -> list[Point]:
+    """The points of arcs, within their sweep, that are farthest along +-axis."""
     direction = (math.pi / 2 if axis else 0.0) + (0.0 if sign > 0 else math.pi)
-    spots: list[tuple[Point, bool]] = []
+    found: list[Point] = []
     for e, arc in edges:
-        spots += [(e.start, False), (e.end, False)]
         if isinstance(e, Arc) and arc is not None:
             radius, first, turn = arc
             ahead = (direction - first) % (2 * math.pi) if turn > 0 else -((first - direction) % (2 * math.pi))
             if abs(ahead) <= abs(turn):
-                spots.append(((e.centre[0] + radius * math.cos(direction), e.centre[1] + radius * math.sin(direction)),
-                              False))
-        elif abs(e.start[axis] - e.end[axis]) <= tol:
-            spots.append((((e.start[0] + e.end[0]) / 2, (e.start[1] + e.end[1]) / 2), True))
-    far = max(sign * p[axis] for p, _ in spots)
-    level = [(p, flat) for p, flat in spots if sign * p[axis] >= far - tol]
-    if any(flat for _, flat in level):
-        level = [(p, flat) for p, flat in level if flat]
-    return max((p for p, _ in level), key=lambda p: (round(p[1] / tol), -p[0]))
+                found.append((e.centre[0] + radius * math.cos(direction), e.centre[1] + radius * math.sin(direction)))
+    return found

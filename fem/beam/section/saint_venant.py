@@ -27,10 +27,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 from scipy.sparse.linalg import splu
-from skfem import Basis, ElementTriP2, ElementTriP3, LinearForm, MeshTri2
-from skfem.helpers import dot, grad
-from skfem.models.poisson import laplace
+from skfem import Basis, MeshTri2
 
+from fem.beam.section.space import Points, Space, element_of, nodes_of, quadrature
 from geometry.problem import SolveError
 
 Array = NDArray[np.float64]
@@ -46,12 +45,14 @@ class SaintVenant:
     ----------
     mesh
         Curved triangles, shifted so that the centroid is the origin, mm.
+    space
+        The functions on it that the fields are taken from.
     nu
         Poisson's ratio.
     centroid
         (2,) in the outline's coordinates, mm.
     omega
-        Warping function about the centroid at the unknowns of `basis`, zero mean, mm^2.
+        Warping function about the centroid at the unknowns of `space`, zero mean, mm^2.
     flexure
         (2, n) potentials phi for unit Vy and unit Vz.
     rates
@@ -67,7 +68,7 @@ class SaintVenant:
     """
 
     mesh: MeshTri2
-    basis: Basis
+    space: Space
     nu: float
     centroid: Array
     omega: Array
@@ -78,6 +79,11 @@ class SaintVenant:
     Iw: float
     shear_centre: Array
     compliance: Array
+
+    @property
+    def basis(self) -> Basis:
+        """scikit-fem's basis of the same space, for its own forms and interpolations."""
+        return Basis(self.mesh, element_of(self.space.order), intorder=2 * self.space.order)
 
     def shear_at(self, basis: Basis) -> Array:
         """(3, 2, ...) shear stress (tau_xy, tau_xz), 1/mm^2 and 1/mm^3, at the points of a basis of the same space.
@@ -94,8 +100,15 @@ class SaintVenant:
 
     def nodal_shear(self) -> tuple[Array, Array]:
         """Points (2, m, 6) at corners and mid-sides of each triangle, from the centroid, and (3, 2, m, 6) stresses."""
-        nodes = Basis(self.mesh, self.basis.elem, quadrature=(_REFERENCE_NODES, np.full(6, 1.0 / 12.0)))
-        return np.asarray(nodes.global_coordinates()), self.shear_at(nodes)
+        points = self.space.at(_REFERENCE_NODES)
+        return points.x, self._shear(points)
+
+    def _shear(self, points: Points) -> Array:
+        twist, *slopes = self.space.gradient(np.vstack([self.omega[None], self.flexure]), points)
+        twist = twist + _rigid(points.x)
+        fields = [g - _poisson(a, points.x, self.nu) + c * twist
+                  for g, a, c in zip(slopes, self.rates, self.coupling, strict=True)]
+        return np.stack([*fields, twist / self.J])
 
 
 def saint_venant(mesh: MeshTri2, nu: float, order: int = 3) -> SaintVenant:
@@ -115,30 +128,33 @@ def about_centroid(mesh: MeshTri2) -> tuple[MeshTri2, Array]:
 
 def solved_about(mesh: MeshTri2, centroid: Array, nu: float, order: int) -> SaintVenant:
     """`saint_venant` on a mesh that `about_centroid` has made; two orders on one mesh share it."""
-    basis = Basis(mesh, ElementTriP3() if order == 3 else ElementTriP2(), intorder=2 * order)
-    x, dA = np.asarray(basis.global_coordinates()), basis.dx
+    space = Space(mesh, order)
+    points = space.points
+    x, dA = points.x, points.dx
     inertia = np.einsum("ieq,jeq,eq->ij", x, x, dA)
     rates = np.linalg.inv(inertia)
-    loads = [_torsion_load.assemble(basis), *(_flexure_load.assemble(basis, ay=ay, az=az, nu=nu) for ay, az in rates)]
+    poisson = np.array([_poisson(a, x, nu) for a in rates])
+    loads = space.loads(np.concatenate([-_rigid(x)[None], poisson]),
+                        np.concatenate([np.zeros((1, *dA.shape)), np.einsum("ki,ieq->keq", rates, x)]))
     # a circle does not warp: its torsion load is rounding error, to be measured against what it is made of
     natural = np.sqrt(np.trace(inertia) / mesh.nelements)
-    omega, *flexure = _solve_neumann(basis, np.array(loads), np.array([natural, 0.0, 0.0]))
+    found = _solve_neumann(space, loads, np.array([natural, 0.0, 0.0]))
+    omega, flexure = found[0], found[1:]
 
-    twist = np.asarray(basis.interpolate(omega).grad) + _rigid(x)
+    slopes = space.gradient(found, points)
+    twist = slopes[0] + _rigid(x)
     J = float(np.einsum("ieq,ieq,eq->", twist, twist, dA))
-    poisson = np.array([_poisson(a, x, nu) for a in rates])
     coupling = np.einsum("kieq,ieq,eq->k", poisson, twist, dA) / J
-    tau = np.array([np.asarray(basis.interpolate(phi).grad) for phi in flexure]) - poisson
-    tau += coupling[:, None, None, None] * twist
+    tau = slopes[1:] - poisson + coupling[:, None, None, None] * twist
     compliance = np.einsum("kieq,lieq,eq->kl", tau, tau, dA)
 
     # torque of each uncoupled field about the centroid: T = -int f omega, and T = ys Vz - zs Vy
-    warp = np.asarray(basis.interpolate(omega))
+    warp = space.interpolate(omega[None], points)[0]
     torque = -np.einsum("ki,ieq,eq,eq->k", rates, x, warp, dA)
     centre = np.array([torque[1], -torque[0]])
     about_centre = warp - centre[1] * x[0] + centre[0] * x[1]
     Iw = float(np.einsum("eq,eq,eq->", about_centre, about_centre, dA))
-    return SaintVenant(mesh, basis, nu, centroid, omega, np.array(flexure), rates, coupling, J, Iw, centre, compliance)
+    return SaintVenant(mesh, space, nu, centroid, omega, flexure, rates, coupling, J, Iw, centre, compliance)
 
 
 def _rigid(x: Array) -> Array:
@@ -152,28 +168,13 @@ def _poisson(a: Sequence[float] | Array, x: Array, nu: float) -> Array:
     return nu / (2 * (1 + nu)) * np.stack([a[0] * half + a[1] * cross, a[0] * cross - a[1] * half])
 
 
-@LinearForm
-def _torsion_load(v, w):  # type: ignore[no-untyped-def]
-    return -dot(_rigid(w.x), grad(v))
-
-
-@LinearForm
-def _flexure_load(v, w):  # type: ignore[no-untyped-def]
-    return (w.ay * w.x[0] + w.az * w.x[1]) * v + dot(_poisson((w.ay, w.az), w.x, w.nu), grad(v))
-
-
-@LinearForm
-def _unit(v, w):  # type: ignore[no-untyped-def]
-    return 1.0 * v
-
-
-def _solve_neumann(basis: Basis, loads: Array, natural: Array) -> Array:
+def _solve_neumann(space: Space, loads: Array, natural: Array) -> Array:
     """(k, n) solutions of the Neumann problem with zero mean, for (k, n) loads that sum to zero.
 
     One unknown is held to make the matrix regular; the loads balance, so holding it costs nothing. The residual
     is judged against each load, or against its `natural` (k,) size where that is larger.
     """
-    K = laplace.assemble(basis).tocsc()
+    K = space.stiffness()
     try:
         lu = splu(K[1:, 1:], permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True}, diag_pivot_thresh=0.0)
     except RuntimeError as singular:
@@ -185,14 +186,13 @@ def _solve_neumann(basis: Basis, loads: Array, natural: Array) -> Array:
     if not residual < 1e-8:
         raise SolveError(f"the section's equations were solved to a residual of {residual:.1e} only: "
                          "is the outline in one piece and the mesh sound?")
-    mean = _unit.assemble(basis)
+    mean = space.loads(np.zeros((1, 2, *space.points.dx.shape)), np.ones((1, *space.points.dx.shape)))[0]
     return solution - (solution @ mean / mean.sum())[:, None]
 
 
 def _centroid(mesh: MeshTri2) -> Array:
-    basis = Basis(mesh, ElementTriP2(), intorder=6)
-    x, dA = np.asarray(basis.global_coordinates()), basis.dx
-    return np.einsum("ieq,eq->i", x, dA) / dA.sum()
+    points = Points(nodes_of(mesh), 2, *quadrature(6))
+    return np.asarray(np.einsum("ieq,eq->i", points.x, points.dx) / points.dx.sum())
 
 
 def sorted_mesh(mesh: MeshTri2, origin: Array) -> MeshTri2:
