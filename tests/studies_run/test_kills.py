@@ -25,7 +25,7 @@ def test_hundred_random_kills_lose_nothing(tmp_path):
     killer = night.Killer(room, seed=1)
     assert not killer.work(100), f"the study was over after {killer.killed}"
     killer.end()
-    assert killer.killed.total() == 100 and min(killer.killed.values()) >= 10
+    assert killer.killed.total() == 100 and min(killer.killed.values()) >= 5
     assert not killer.lost and not killer.orphans
     assert len(killer.safe) == 200 and max(night.finished_lines(room).values()) == 1
     undisturbed = night.start(whole)
