@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
-from functools import lru_cache
+from dataclasses import dataclass, field
+from functools import cached_property, lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,13 +20,11 @@ SweptEdge = tuple[Edge, tuple[float, float, float] | None]
 """An edge, with the radius and the angles of an arc (see `sweep`)."""
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class OutlineIntegrals:
     """Exact integrals over an outline (or several), mm.
 
     ``Iyy`` = int z^2 dA, ``Izz`` = int y^2 dA, ``Iyz`` = int y z dA, all about the centroid.
-    `extremes`: (4, 2) the points top, bottom, left, right; the moduli are Iyy / |z - zc| at the first two
-    and Izz / |y - yc| at the last two, mm^3.
     """
 
     area: float
@@ -38,11 +36,35 @@ class OutlineIntegrals:
     I1: float
     I2: float
     principal_angle: float
-    extremes: NDArray[np.float64]
-    W_top: float
-    W_bottom: float
-    W_left: float
-    W_right: float
+    edges: Sequence[SweptEdge] = field(repr=False, compare=False)
+
+    @cached_property
+    def extremes(self) -> NDArray[np.float64]:
+        """(4, 2) the points top, bottom, left, right. Found when asked for: most sections along a member never are."""
+        points = _extremes(self.edges)
+        points.flags.writeable = False
+        return points
+
+    @property
+    def W_top(self) -> float:
+        """Iyy / |z - zc| at the top, mm^3; the others likewise, with Izz and y at the left and right."""
+        return self.Iyy / self._reach(0)
+
+    @property
+    def W_bottom(self) -> float:
+        return self.Iyy / self._reach(1)
+
+    @property
+    def W_left(self) -> float:
+        return self.Izz / self._reach(2)
+
+    @property
+    def W_right(self) -> float:
+        return self.Izz / self._reach(3)
+
+    def _reach(self, which: int) -> float:
+        axis = 1 if which < 2 else 0
+        return float(abs(self.extremes[which, axis] - (self.yc, self.zc)[axis]))
 
 
 def outline_integrals(outline: Outline | Sequence[Outline]) -> OutlineIntegrals:
@@ -67,11 +89,7 @@ def _integrals(outlines: tuple[Outline, ...]) -> OutlineIntegrals:
     Izz, Iyz, Iyy = syy - area * y * y, syz - area * y * z, szz - area * z * z
     yc, zc = y + origin[0], z + origin[1]
     I1, I2, angle = principal_moments(Iyy, Izz, Iyz)
-    points = _extremes(edges)
-    points.flags.writeable = False
-    reach = [float(abs(v)) for v in (points[0, 1] - zc, points[1, 1] - zc, points[2, 0] - yc, points[3, 0] - yc)]
-    return OutlineIntegrals(area, yc, zc, Iyy, Izz, Iyz, I1, I2, angle, points,
-                            Iyy / reach[0], Iyy / reach[1], Izz / reach[2], Izz / reach[3])
+    return OutlineIntegrals(area, yc, zc, Iyy, Izz, Iyz, I1, I2, angle, edges)
 
 
 def principal_moments(Iyy: float, Izz: float, Iyz: float) -> tuple[float, float, float]:
