@@ -9,13 +9,15 @@ import numpy as np
 
 from fem.solid.cut import Cutter
 from fem.solid.factor import GAUGE_ALLOWED, RESIDUAL_ALLOWED
-from fem.solid.kernels.interface import elastic_energy, rules
-from fem.solid.kernels.parallel import ranges, run
+from fem.solid.kernels.energy import elastic_energy
+from fem.solid.kernels.interface import rules
 from fem.solid.model import LEAST_QUALITY, SolidModel
+from fem.solid.nodal_forces import turns
 from fem.solid.reaction import Reactions
 from fem.solid.result import Check
 from fem.solid.shape import Array
 from fem.solid.stiffness import CURVED_ORDER, STRAIGHT_ORDER, lame
+from fem.solid.support import rigid_map
 from fem.solid.system import Solution
 from geometry.part import RemotePoint
 
@@ -38,14 +40,18 @@ def strain_energies(
     lam, mu = lame(material.E, material.nu)
     expansion = material.expansion * model.change
     free = (3 * lam + 2 * mu) * expansion
-    constants = (material.E, material.nu, lam, mu, free, *rules(STRAIGHT_ORDER, CURVED_ORDER))
-
-    def some(first: int, last: int) -> Array:
-        out = np.zeros((u.shape[0], 2))
-        elastic_energy(first, last, cutter.tets, cutter.curved, cutter.points, u, *constants, out)
-        return out
-
-    energy, trace = np.sum(run(some, ranges(cutter.tets.shape[0]), threads), axis=0).T
+    constants, quadrature = (material.E, material.nu, lam, mu), rules(STRAIGHT_ORDER, CURVED_ORDER)
+    c, _, n = u.shape
+    energy, trace = np.empty(c), np.empty(c)
+    for some in turns(c):
+        count = some.stop - some.start
+        wide = 1 << (count - 1).bit_length()  # lanes are 1, 2, 4 or 8
+        motion, off = np.zeros((n, 3, wide)), np.zeros(wide)
+        motion[:, :, :count], off[:count] = u[some].transpose(2, 1, 0), free[some]
+        found = elastic_energy(
+            cutter.tets, cutter.curved, cutter.points, motion.reshape(3 * n, wide), constants, off, quadrature, threads
+        )
+        energy[some], trace[some] = found[0][:count], found[1][:count]
     return energy, expansion * trace
 
 
@@ -58,8 +64,10 @@ def _moment(x: Array, forces: Array) -> Array:
 def load_checks(model: SolidModel) -> Iterator[Check]:
     """Resultant force and moment of each load vector against the declared one."""
     x = model.mesh.nodes.T
-    for load, vector in zip(model.loads.values(), model.load_vectors, strict=True):
-        force, moment = vector.sum(axis=0), _moment(x, vector)
+    resultants = np.asarray(model.load_vectors @ rigid_map(model.mesh.nodes, np.zeros(3)).reshape(-1, 6))
+    sizes = np.asarray(abs(model.load_vectors).sum(axis=1)).ravel()
+    for load, resultant, size in zip(model.loads.values(), resultants, sizes, strict=True):
+        force, moment = resultant[:3], resultant[3:]
         about: Array | None
         if load.force_per_mass.any():
             remote = [p for p in model.part.loads if isinstance(p, RemotePoint)]
@@ -74,7 +82,7 @@ def load_checks(model: SolidModel) -> Iterator[Check]:
             declared, about, arm = load.force, load.moment, load.arm
         scale = float(max(np.linalg.norm(declared), np.linalg.norm(about) / arm if about is not None else 0.0,
                           load.push))  # fmt: skip
-        scale = scale if scale > 0 else max(float(np.abs(vector).sum()), 1e-300)
+        scale = scale if scale > 0 else max(float(size), 1e-300)
         yield _check(f"load {load.name}: force", np.linalg.norm(force - declared) / scale, load.force_allowed)
         if about is not None:
             yield _check(f"load {load.name}: moment", np.linalg.norm(moment - about) / (scale * arm), load.allowed)
@@ -87,8 +95,8 @@ def balance_checks(
     x = model.mesh.nodes.T - model.mesh.nodes.mean(axis=1)
     length, diagonal = float(np.ptp(x, axis=0).max()), model.K.diagonal()
     for k, case in enumerate(model.part.cases):
-        applied = model.mechanical[k]
-        push = np.abs(applied).sum() + np.abs(reactions.nodal[k]).sum() + np.abs(model.thermal[k]).sum()
+        applied, heat = model.mechanical[k], model.thermal[k]
+        push = np.abs(applied).sum() + np.abs(reactions.nodal[k]).sum() + np.abs(heat).sum()
         stiff, rigid = 0.0, 0.0
         if not applied.any():
             # without loads a motion may be rigid: the forces are then rounding of stiffness times motion
@@ -114,7 +122,7 @@ def balance_checks(
             2 * energy[k],
             abs(work),
             abs(thermal[k]),
-            abs(float((model.thermal[k] * u[k].T).sum())),
+            abs(float((heat * u[k].T).sum())),
             1e-6 * rigid,
             1e-300,
         )

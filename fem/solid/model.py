@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
+import scipy.sparse as sp
+from numpy.typing import NDArray
 
 from fem.solid.block_matrix import BlockMatrix
 from fem.solid.kernels.mesh_graph import pieces
 from fem.solid.load import SolidLoad, solid_loads, surface_vector
 from fem.solid.mass import node_integrals, node_volumes
+from fem.solid.nodal_forces import NodalForces, rows_of
 from fem.solid.shape import Array
 from fem.solid.stiffness import ElementGroup, KernelMesh, element_groups, lame, stiffness_matrix
 from fem.solid.support import Constraints, build_constraints
@@ -25,8 +29,10 @@ LEAST_QUALITY = 1e-3
 class SolidModel:
     """Everything that belongs to the part and its mesh before the solution.
 
+    load_vectors
+        (loads, 3 n) nodal forces of each load with factor 1, N.
     mechanical, thermal
-        (c, n, 3) nodal forces of the cases, N: loads, and int B^T D alpha dT dV.
+        Nodal forces of the cases: loads, and int B^T D alpha dT dV.
     factors
         (c, loads) factor of each load in each case, in the order of `loads`.
     change
@@ -41,14 +47,21 @@ class SolidModel:
     K: BlockMatrix
     constraints: Constraints
     loads: dict[str, SolidLoad]
-    load_vectors: Array
+    load_vectors: sp.csr_matrix
     factors: Array
-    mechanical: Array
-    thermal: Array
+    mechanical: NodalForces
+    thermal: NodalForces
     change: Array
     mass: float
     centre_of_mass: Array
     threads: int = 1
+
+    def forces(self, cases: slice = slice(None)) -> Array:
+        """(3 n, k) all nodal forces of some cases, N."""
+        out = self.mechanical.columns(cases)
+        if self.change[cases].any():
+            out += self.thermal.columns(cases)
+        return out
 
 
 def check_mesh(mesh: NamedMesh) -> None:
@@ -93,6 +106,23 @@ def thermal_vector(mesh: NamedMesh, groups: list[ElementGroup], E: float, nu: fl
     return (3 * lam + 2 * mu) * node_integrals(groups)[:, 1:]
 
 
+def _load_vectors(
+    mesh: NamedMesh, loads: dict[str, SolidLoad], masses: Array
+) -> Iterator[tuple[NDArray[np.int64], Array]]:
+    """Nodes that each load touches and its forces there; masses (n, 1) of the nodes, t."""
+    out = np.zeros((mesh.nodes.shape[1], 3))
+    for load in loads.values():
+        heavy = bool(load.force_per_mass.any())
+        if heavy:
+            np.multiply(masses, load.force_per_mass, out=out)
+        for piece in load.pieces:
+            surface_vector(mesh, piece, out)
+        facets = [np.zeros(0, dtype=np.int64), *(piece.facets.ravel() for piece in load.pieces)]
+        nodes = np.arange(out.shape[0]) if heavy else np.unique(np.concatenate(facets))
+        yield nodes, out[nodes]
+        out[nodes] = 0.0
+
+
 def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
     """Assemble stiffness, constraints and load vectors."""
     check_mesh(mesh)
@@ -104,21 +134,16 @@ def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
     loads = solid_loads(part, mesh)
     integrals = node_integrals(groups, threads, shared)
     volume, first = node_volumes(integrals[:, 0], mesh.nodes)
-    vectors = np.zeros((len(loads), mesh.nodes.shape[1], 3))
-    for k, load in enumerate(loads.values()):
-        if load.force_per_mass.any():
-            np.multiply(material.density * integrals[:, :1], load.force_per_mass, out=vectors[k])
-        for piece in load.pieces:
-            surface_vector(mesh, piece, vectors[k])
+    vectors = rows_of(_load_vectors(mesh, loads, material.density * integrals[:, :1]), mesh.nodes.shape[1])
     factors = np.array([[case.factors.get(name, 0.0) for name in loads] for case in part.cases]).reshape(
         len(part.cases), len(loads)
     )
     change = factors @ np.array([load.change for load in loads.values()]) if loads else np.zeros(len(part.cases))
-    thermal = np.zeros((len(part.cases), *vectors.shape[1:]))
+    thermal = NodalForces(sp.csr_matrix((1, vectors.shape[1])), change[:, None])
     if change.any():
         lam, mu = lame(material.E, material.nu)
         unit = (3 * lam + 2 * mu) * material.expansion * integrals[:, 1:]
-        thermal = change[:, None, None] * unit
+        thermal = NodalForces(sp.csr_matrix(unit.reshape(1, -1)), change[:, None])
     return SolidModel(
         part,
         mesh,
@@ -128,7 +153,7 @@ def build_model(part: Part, mesh: NamedMesh, threads: int = 1) -> SolidModel:
         loads,
         vectors,
         factors,
-        np.tensordot(factors, vectors, axes=1),
+        NodalForces(vectors, factors),
         thermal,
         change,
         material.density * volume,

@@ -40,11 +40,12 @@ def in_order(mesh: NamedMesh) -> tuple[NamedMesh, NDArray[np.int64]]:
 
 
 def as_given(result: SolidResult, mesh: NamedMesh, number: NDArray[np.int64]) -> SolidResult:
-    """A result on the nodes in order as one on the mesh that was given."""
+    """A result on the nodes in order as one on the mesh that was given. Its arrays are used up."""
     nodes = np.empty_like(number)
     nodes[number] = np.arange(number.size)
-    fields = ("u", "stress", "stress_error", "von_mises", "tresca", "principal", "vibration_shapes", "buckling_shapes")
-    found: dict[str, Array] = {name: getattr(result, name) for name in fields}
-    back = {name: values[..., number] if values.size else values for name, values in found.items()}
+    for name in ("u", "stress", "stress_error", "von_mises", "vibration_shapes", "buckling_shapes"):
+        values: Array = getattr(result, name)
+        for k in range(values.shape[0]):  # one after the other, in its place: they may be many
+            values[k] = values[k][..., number]
     peaks = tuple(replace(peak, node=int(nodes[peak.node])) for peak in result.peaks)
-    return replace(result, mesh=mesh, peaks=peaks, **back)  # type: ignore[arg-type]
+    return replace(result, mesh=mesh, peaks=peaks)

@@ -16,6 +16,7 @@ from fem.solid.kernels.parallel import ranges, run
 from fem.solid.model import SolidModel
 from fem.solid.result import CaseStress, PeakPlace
 from fem.solid.shape import Array
+from fem.solid.stress import principal_stresses
 from mesher.named_mesh import NamedMesh
 
 COUNT = 8
@@ -136,7 +137,7 @@ def local_maxima(surface: Surface, values: Array, near: NDArray[np.int64]) -> li
 def peak_places(
     model: SolidModel,
     von_mises: Array,
-    principal: Array,
+    stress: Array,
     places: list[tuple[str, Array]],
     near: NDArray[np.int64],
     threads: int = 1,
@@ -155,8 +156,7 @@ def peak_places(
     peaks = run(chosen, ranges(c, c), threads)
     where = _whereabouts(mesh, sorted({node for nodes in peaks for node in nodes}))
     for k, (case, nodes) in enumerate(zip(model.part.cases, peaks, strict=True)):
-        for node in nodes:
-            p = principal[k, :, node]
+        for node, p in zip(nodes, principal_stresses(stress[k : k + 1, :, nodes])[0].T, strict=True):
             regions, faces = where[node]
             x, y, z = map(float, mesh.nodes[:, node])
             yield PeakPlace(

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from fem.solid.model import SolidModel
+from fem.solid.nodal_forces import turns
 from fem.solid.region import surface_region
 from fem.solid.shape import Array
 from fem.solid.support import rigid_map
@@ -26,12 +27,15 @@ class Reactions:
 def reactions(model: SolidModel, u: Array, mean_forces: Array) -> Reactions:
     """Share the constraint forces among the supports.
 
-    u (3 n, c); mean_forces (rows, c). Where several supports hold one node or one rigid region, its force is shared
+    u (c, 3, n); mean_forces (rows, c). Where several supports hold one node or one rigid region, its force is shared
     by the rows that hold it (least squares, so an exact copy of a row gets an equal share).
     """
     constraints, mesh = model.constraints, model.mesh
-    c, n = u.shape[1], mesh.nodes.shape[1]
-    nodal = (model.K @ u).T.reshape(c, n, 3) - model.mechanical - model.thermal
+    c, n = u.shape[0], mesh.nodes.shape[1]
+    nodal = np.empty((c, n, 3))
+    for some in turns(c):
+        motion = np.ascontiguousarray(u[some].transpose(2, 1, 0)).reshape(3 * n, -1)
+        np.subtract((model.K @ motion).T, model.forces(some).T, out=nodal[some].reshape(-1, 3 * n))
     centre = {
         s.name: constraints.regions[s.on].centroid
         if s.on in constraints.regions

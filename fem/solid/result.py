@@ -98,10 +98,8 @@ class SolidResult:
     energy_error
         (c,) energy of that spread over the strain energy: an estimate of the relative error of the energy, and of the
         displacement under the loads (Zienkiewicz and Zhu 1987; low near places of unbounded stress).
-    von_mises, tresca
+    von_mises
         (c, n) MPa.
-    principal
-        (c, 3, n) MPa, greatest first.
     figures
         Every figure that the beam model can give too.
     peaks
@@ -140,8 +138,6 @@ class SolidResult:
     stress_error: Array
     energy_error: Array
     von_mises: Array
-    tresca: Array
-    principal: Array
     figures: tuple[Figure, ...]
     peaks: tuple[PeakPlace, ...]
     case_stress: tuple[CaseStress, ...]
@@ -159,3 +155,16 @@ class SolidResult:
     buckling: tuple[Mode, ...] = ()
     vibration_shapes: Array = field(default_factory=lambda: np.zeros((0, 3, 0)))
     buckling_shapes: Array = field(default_factory=lambda: np.zeros((0, 3, 0)))
+
+    @property
+    def principal(self) -> Array:
+        """(c, 3, n) principal stresses, MPa, greatest first; worked out at every call."""
+        from fem.solid.stress import principal_stresses  # it needs the model, which needs the checks of this file
+
+        return principal_stresses(self.stress)
+
+    @property
+    def tresca(self) -> Array:
+        """(c, n) greatest less least principal stress, MPa; worked out at every call."""
+        principal = self.principal
+        return np.asarray(principal[:, 0] - principal[:, 2])

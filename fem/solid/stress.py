@@ -13,6 +13,7 @@ import numpy as np
 from fem.solid.kernels import recovery
 from fem.solid.kernels.pattern import incidence
 from fem.solid.model import SolidModel
+from fem.solid.nodal_forces import turns
 from fem.solid.shape import NODE_BARY, Array, inverse, tet_gradients
 from fem.solid.stiffness import isotropic_stress, lame, mesh_arrays, point_slopes
 
@@ -23,17 +24,17 @@ def nodal_stress(model: SolidModel, u: Array) -> tuple[Array, Array, Array]:
     mesh, material = model.mesh, model.part.material
     lam, mu = lame(material.E, material.nu)
     points, tets = mesh_arrays(mesh.nodes, mesh.tets)
-    mean, spread, energy = recovery.nodal_stress(
-        points,
-        tets,
-        incidence(tets, points.shape[0]),
-        point_slopes(NODE_BARY),
-        np.ascontiguousarray(u.transpose(2, 0, 1)),
-        (lam, mu, material.E, material.nu),
-        (3 * lam + 2 * mu) * material.expansion * model.change,
-        model.threads,
-    )
-    return np.ascontiguousarray(mean.transpose(1, 2, 0)), np.ascontiguousarray(spread.T), energy
+    incident, slopes = incidence(tets, points.shape[0]), point_slopes(NODE_BARY)
+    free = (3 * lam + 2 * mu) * material.expansion * model.change
+    c, n = u.shape[0], points.shape[0]
+    mean, spread, energy = np.empty((c, 6, n)), np.empty((c, n)), np.empty(c)
+    for some in turns(c):
+        motions = np.ascontiguousarray(u[some].transpose(2, 0, 1))
+        stress, off, energy[some] = recovery.nodal_stress(
+            points, tets, incident, slopes, motions, (lam, mu, material.E, material.nu), free[some], model.threads
+        )
+        mean[some], spread[some] = stress.transpose(1, 2, 0), off.T
+    return mean, spread, energy
 
 
 def von_mises(s: Array, axis: int = 0) -> Array:

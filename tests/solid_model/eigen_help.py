@@ -76,7 +76,7 @@ def buckling(part: Part, mesh: NamedMesh, *studies: Buckling) -> Eigenmodes:
     model = build_model(replace(part, buckling=studies), mesh)
     n, cases = mesh.nodes.shape[1], len(part.cases)
     system = HeldSystem(model.K, model.constraints, mesh, BUDGET)
-    solution = system.solve((model.mechanical + model.thermal).reshape(cases, 3 * n).T)
+    solution = system.solve(model.forces())
     u = np.ascontiguousarray(solution.u.T.reshape(cases, n, 3).transpose(0, 2, 1))
     result = solid_buckling(model, system, u, BUDGET)
     assert not [c for c in result.checks if "not counted" in c.note]

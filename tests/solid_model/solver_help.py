@@ -38,7 +38,7 @@ def bent_mesh(cells: tuple[int, int, int] = (6, 2, 3)) -> NamedMesh:
 
 
 def right_hand_sides(model: SolidModel) -> np.ndarray:
-    return (model.mechanical + model.thermal).reshape(len(model.part.cases), -1).T
+    return model.forces()
 
 
 def solution(model: SolidModel, choice: Choice, backend: str = "auto", budget: Budget = BUDGET) -> Solution:

@@ -16,6 +16,8 @@ from solid_help import STEEL, box_mesh, box_part, named_mesh
 from fem.solid.balance import strain_energies
 from fem.solid.cut import Cutter, section_means
 from fem.solid.frame import Frame
+from fem.solid.kernels.energy import elastic_energy
+from fem.solid.kernels.interface import rules
 from fem.solid.load import SolidLoad, pressure_piece, surface_vector
 from fem.solid.model import build_model
 from fem.solid.peak import COUNT, SADDLE, local_maxima, node_sizes, region_rim, surface_graph
@@ -254,6 +256,36 @@ def test_energy_is_scikit_fems(kind: str) -> None:
     straining = 0.5 * u[1].T.ravel() @ (K @ u[1].T.ravel())  # type: ignore[operator]
     # energy of the elastic strain eps - e 1: that of eps, less b tr eps, and 3 e b / 2 for a volume
     assert energy[1] == pytest.approx(straining - b * grown + 1.5 * strain * b * volume, rel=1e-11)
+
+
+@KINDS
+def test_energies_of_cases_side_by_side_are_those_of_each(kind: str) -> None:
+    mesh = MESHES[kind]()
+    rng = np.random.default_rng(6)
+    u = np.einsum("kf,fin->kin", rng.standard_normal((11, 2)), fields(mesh))
+    model = plain_model(mesh)
+    model.change = 25.0 * rng.standard_normal(11)
+    every = strain_energies(model, u)
+    for count in (1, 2, 3, 5, 8):
+        model.change, changes = model.change[:count], model.change
+        some = strain_energies(model, u[:count])
+        for a, b in zip(some, every, strict=True):
+            assert a == pytest.approx(b[:count], rel=1e-12)
+        model.change = changes
+    plain = Plain(mesh, 4)
+    K = plain.matrix(elasticity)
+    model.change = np.zeros(11)
+    energy, thermal = strain_energies(model, u)
+    straining = [0.5 * v.T.ravel() @ (K @ v.T.ravel()) for v in u]  # type: ignore[operator]
+    assert energy == pytest.approx(straining, rel=1e-12) and not thermal.any()
+    cutter, constants = Cutter(mesh), (E, NU, *lame(E, NU))
+    wide, off = np.random.default_rng(7).standard_normal((mesh.nodes.size, 16)), np.arange(16.0)
+    both = [elastic_energy(cutter.tets, cutter.curved, cutter.points, wide[:, some], constants, off[some],
+                           rules(2, 4), 1) for some in (slice(0, 8), slice(8, 16), slice(0, 16))]  # fmt: skip
+    for first, last, together in zip(*both, strict=True):
+        assert np.array_equal(np.r_[first, last], together)
+    with pytest.raises(ValueError, match="3 cases"):
+        elastic_energy(*[np.zeros(0)] * 3, np.zeros((3, 3)), (1.0,) * 4, np.zeros(3), rules(2, 4), 1)  # type: ignore[arg-type]
 
 
 def test_threads_give_the_same_sections() -> None:

@@ -210,6 +210,6 @@ def test_a_pressure_all_round_is_judged_by_what_it_presses_not_by_its_resultant(
     assert load.push == pytest.approx(3.7 * 2 * (10.0 + 20.0) * 100.0)
     # the check still sees a pressure that is lost on one element
     model = build_model(part, mesh)
-    vectors = np.array(model.load_vectors)
-    vectors[0][np.argmax(np.abs(vectors[0]).sum(axis=1))] *= 0.99
+    vectors = model.load_vectors.copy()
+    vectors.data[np.abs(vectors.data).argmax()] *= 0.99
     assert any(not c.ok for c in load_checks(replace(model, load_vectors=vectors)))

@@ -71,7 +71,7 @@ def stress_stiffnesses(
     u_fixed, change, f_fixed = np.zeros((3, n)), 0.0, np.zeros((n, 3))
     if held.any():
         change = float(held @ np.array([load.change for load in model.loads.values()]))
-        f_fixed = np.tensordot(held, model.load_vectors, axes=1)
+        f_fixed = np.asarray(model.load_vectors.T @ held).reshape(n, 3)
         if change:
             m = part.material
             f_fixed = f_fixed + change * m.expansion * thermal_vector(model.mesh, model.groups, m.E, m.nu)

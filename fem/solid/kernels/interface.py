@@ -1,4 +1,4 @@
-"""What the elements at a section's ragged interface exert, the material between it and the plane, elastic energy.
+"""What the elements at a section's ragged interface exert, the material between it and the plane.
 
 All of them sum over elements in the order of the mesh: the result of one call is the same in any thread.
 """
@@ -120,35 +120,6 @@ def interface_forces(  # type: ignore[no-untyped-def]
                 F[5] -= R[0] * body[c, 1] - R[1] * body[c, 0]
                 for i in range(6):
                     out[c, i] += w * F[i]
-
-
-@kernel
-def elastic_energy(first, last, tets, curved, points, u, E, nu, lam, mu, free, L1, w1, L2, w2, out):  # type: ignore[no-untyped-def]
-    """Add to out (c, 2) the elastic energy of elements first to last, and int of the trace of the stress."""
-    count = u.shape[0]
-    most = max(w1.size, w2.size)
-    ue, L, g, dV = np.empty((10, 3)), np.empty(4), np.empty((most, 10, 3)), np.empty(most)
-    J, slopes, H, S = np.empty((3, 3)), np.empty((4, 3)), np.empty((3, 3)), np.empty((3, 3))
-    for e in range(first, last):
-        weights, at = (w2, L2) if curved[e] else (w1, L1)
-        det = 0.0
-        for q in range(weights.size):
-            L[:] = at[q]
-            if curved[e] or q == 0:
-                det = barycentric_slopes(points, tets, e, L, curved[e], J, slopes)
-            dV[q] = weights[q] * det
-            node_slopes(L, slopes, g[q])
-        for c in range(count):
-            for a in range(10):
-                for i in range(3):
-                    ue[a, i] = u[c, i, tets[e, a]]
-            for q in range(weights.size):
-                _stress(lam, mu, free[c], ue, g[q], H, S)
-                trace = S[0, 0] + S[1, 1] + S[2, 2]
-                squares = S[0, 0] ** 2 + S[1, 1] ** 2 + S[2, 2] ** 2
-                squares += 2.0 * (S[0, 1] ** 2 + S[1, 2] ** 2 + S[0, 2] ** 2)
-                out[c, 0] += dV[q] * ((1.0 + nu) * squares - nu * trace**2) / (2.0 * E)
-                out[c, 1] += dV[q] * trace
 
 
 @kernel

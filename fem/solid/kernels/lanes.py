@@ -93,6 +93,16 @@ def plus(typing: Any, lanes: Any, more: Any) -> Any:
 
 
 @intrinsic(prefer_literal=True)
+def product(typing: Any, lanes: Any, more: Any) -> Any:
+    """lanes more, entry by entry."""
+
+    def build(context: Any, builder: Any, signature: Any, args: Any) -> Any:
+        return builder.fmul(args[0], args[1])
+
+    return lanes(lanes, lanes), build
+
+
+@intrinsic(prefer_literal=True)
 def minus(typing: Any, lanes: Any, less: Any) -> Any:
     """lanes - less."""
 

@@ -49,7 +49,10 @@ def warm_up(tell: Callable[[str], None]) -> None:
 
 def _matrices(mesh: NamedMesh) -> None:
     """What no solution above is bound to need: mass, geometric stiffness and the scalar forms of a matrix."""
+    from fem.solid.cut import Cutter
     from fem.solid.geometric import geometric_stiffness
+    from fem.solid.kernels.energy import elastic_energy
+    from fem.solid.kernels.interface import rules
     from fem.solid.kernels.tall import combine, gram
     from fem.solid.mass import mass_matrix
     from fem.solid.stiffness import element_groups, group_stresses, stiffness_matrix
@@ -61,6 +64,10 @@ def _matrices(mesh: NamedMesh) -> None:
     geometric_stiffness(groups, [s[0] for s in stress], K)
     wide = np.zeros((K.shape[0], 15))  # columns are taken by eight, four, two and one
     combine(M @ wide, 15, gram(wide, 15, wide, 1), wide, 1)
+    cutter = Cutter(mesh)
+    for cases in (1, 2, 4, 8):
+        u, free = np.zeros((K.shape[0], cases)), np.zeros(cases)
+        elastic_energy(cutter.tets, cutter.curved, cutter.points, u, (1.0, 0.3, 1.0, 1.0), free, rules(2, 4), 1)
     K.to_csr()
     K.upper_csr()
     for columns in ((), (2,), (4,), (8,)):

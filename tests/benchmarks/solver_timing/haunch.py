@@ -99,7 +99,7 @@ def _warm_up(budget: Any, modes: int) -> None:
 
 def _loads(model: Any) -> Any:
     """(3 n, c) nodal forces of every case."""
-    return (model.mechanical + model.thermal).reshape(len(model.part.cases), -1).T
+    return model.forces()
 
 
 def _displacements(part: Any, mesh: Any, budget: Any, choice: str, tell: Tell, modes: int) -> None:
