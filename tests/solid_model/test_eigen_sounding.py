@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from test_eigen_pairs import dense, pencil
 
-from fem.solid.eigen.sounding import COLUMNS, STEPS, contradicts, sound, told
+from fem.solid.eigen.sounding import COLUMNS, STEPS, assumed, contradicts, sound, told
 from fem.solid.eigen.space import Pencil, Space
 from fem.solid.shape import Array
 
@@ -95,3 +95,9 @@ def test_the_bound_holds_for_lanczos_values(least: float) -> None:
 def test_without_a_negative_direction_it_contradicts_early() -> None:
     assert contradicts(np.array([0.2]), np.array([1.0]), np.array([1e9]), 20).all()
     assert not contradicts(np.array([0.2]), np.array([1.0]), np.array([1e9]), 8).any()
+
+
+def test_what_is_taken_for_granted_is_told() -> None:
+    assert "no motion is more than 100 times softer than the solver's approximation" in assumed(0.01)
+    assert "softer" not in assumed(1.0)
+    assert "at least 91% of the greatest" in assumed(1.0) and "at least 91% of the greatest" in assumed(0.01)

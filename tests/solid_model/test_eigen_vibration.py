@@ -28,11 +28,13 @@ from solid_help import STEEL, box_mesh, box_part
 
 from fem.mode import SHAPE_STATIONS
 from fem.solid import solve_solid
-from fem.solid.eigen import Eigenmodes, sounding
+from fem.solid.eigen import Eigenmodes, modes, sounding
 from fem.solid.eigen import vibration as module
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs
 from fem.solid.eigen.space import Space
+from fem.solid.factor import TooLarge
 from fem.solid.shape import Array
+from fem.solid.system import HeldSystem
 from geometry.part import Buckling, Member, Part, RegionLoad, RemotePoint, Section, Support, Vibration
 from geometry.problem import SolveError
 
@@ -239,7 +241,7 @@ def test_where_nothing_is_counted_what_was_missed_is_found(monkeypatch: pytest.M
     note = next(c.note for c in result.checks if "missed" in c.name)
     if decided:
         assert note.startswith("nothing counted; 3 at or below ")
-        assert note.endswith("steps from random vectors leave a chance below 1e-06 that there is one more")
+        assert "steps from random vectors leave a chance below 1e-06 that there is one more; " in note
     else:
         assert note == "nothing counted; a second search from other vectors found none that was missed"
 
@@ -302,6 +304,25 @@ def test_modes_that_do_not_settle_iteratively_are_sought_directly(monkeypatch: p
     note = next(c.note for c in result.checks if c.name == "natural frequencies: largest residual")
     assert "as the iterative one failed: The natural frequencies do not converge" in note
     assert len(result.vibration) == 2
+
+
+def test_modes_that_neither_settle_nor_fit_a_direct_solver_are_refused_with_both_reasons(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    part = replace(box_part(200.0, 50.0, 60.0, [WALL]), vibration=Vibration(2))
+    mesh = box_mesh(200.0, 50.0, 60.0, (8, 2, 2))
+
+    def none(pencil: Pencil, start: Array, tolerance: Array, *rest: Any) -> Pairs:
+        return extreme_pairs(pencil, start, tolerance, *rest, rounds=1)
+
+    def too_large(*given: Any) -> HeldSystem:
+        assert given[4] == "cholesky"
+        raise TooLarge("The factor needs about 9000 MiB and the budget is 4096 MiB. Raise the memory.")
+
+    monkeypatch.setattr(module, "extreme_pairs", none)
+    monkeypatch.setattr(modes, "HeldSystem", too_large)
+    with pytest.raises(TooLarge, match="do not converge: residual .* allowed 1e-03. The direct .* 9000 MiB .* Raise"):
+        solve_solid(part, mesh, BUDGET, solver="multigrid")
 
 
 def test_same_modes_again() -> None:

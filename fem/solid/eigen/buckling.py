@@ -21,7 +21,7 @@ from fem.solid.eigen.describe import buckling_kind, section_shapes, section_shar
 from fem.solid.eigen.eigenmodes import GUARD_ALLOWED, GUARDS, RESIDUAL_ALLOWED, Eigenmodes, NotSettled
 from fem.solid.eigen.motions import Motions, Operator, held_motions
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, lost, second_search, space_room
-from fem.solid.eigen.sounding import COLUMNS, LEAST_OF_INVERSE, sound, told
+from fem.solid.eigen.sounding import COLUMNS, LEAST_OF_INVERSE, assumed, sound, told
 from fem.solid.eigen.space import by_turns
 from fem.solid.eigen.start import held_fields
 from fem.solid.eigen.stress_stiffness import StressStiffness, stress_stiffnesses
@@ -168,8 +168,7 @@ class _Study:
             if not (found.residual <= tolerance[: found.mu.size])[real].all():
                 raise NotSettled(
                     f"The buckling factors of the case {self.study.case!r} do not converge: residual "
-                    f"{found.residual[real].max():.1e} after {found.rounds} rounds, allowed {self.allowed:.0e}. Ask "
-                    "for fewer modes, or mesh the part again."
+                    f"{found.residual[real].max():.1e} after {found.rounds} rounds, allowed {self.allowed:.0e}."
                 )
             counts: list[tuple[int, str] | None] = []
             try:
@@ -234,7 +233,7 @@ class _Study:
     def _sounded(self, pencil: Pencil, found: Pairs, modes: int, attempt: int, reason: str) -> tuple[int, str] | None:
         """The same by random vectors, of both signs; None where they do not decide."""
         assert self.varying is not None
-        missing, notes = 0, []
+        missing, notes, least = 0, [], LEAST_OF_INVERSE[self.motions.direct] * self.left
         for sign in (1.0, -1.0):
             _, split = self._place(found, modes, sign)
             if split is None or found.space is None:
@@ -243,12 +242,13 @@ class _Study:
                 return None
             above, shift = split
             rough = self.varying.rough(COLUMNS, self.budget.seed + attempt)
-            least = LEAST_OF_INVERSE[self.motions.direct] * self.left
             sounding = sound(pencil, found.space, sign * shift, rough, least)
             if not (sounding.clear or sounding.found):
                 return None
             missing += sounding.known - above + int(sounding.found)
             notes.append(told(sounding, f"{above} between 0 and {sign * shift:.5g}"))
+        if notes and not missing:
+            notes.append(assumed(least))
         return missing, "; ".join([reason, *notes])
 
     def _count(self, shift: float) -> int:

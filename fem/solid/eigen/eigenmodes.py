@@ -20,7 +20,11 @@ GUARDS = 2
 
 
 class NotSettled(SolveError):
-    """Eigenvalues that do not converge."""
+    """Eigenvalues that do not converge; `short` says which and how far they came."""
+
+    def __init__(self, short: str) -> None:
+        self.short = short
+        super().__init__(f"{short} Ask for fewer modes, or mesh the part again.")
 
 
 @dataclass(frozen=True, slots=True)

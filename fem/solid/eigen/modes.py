@@ -10,6 +10,7 @@ from fem.solid.eigen.buckling import solid_buckling
 from fem.solid.eigen.eigenmodes import Eigenmodes, NotSettled, no_modes
 from fem.solid.eigen.motions import is_direct
 from fem.solid.eigen.vibration import solid_vibration
+from fem.solid.factor import TooLarge
 from fem.solid.model import SolidModel
 from fem.solid.shape import Array
 from fem.solid.solver import Choice
@@ -42,8 +43,11 @@ def solid_modes(
         except NotSettled as error:
             if is_direct(system.solver.name):
                 raise
-            why = str(error)
-        direct = HeldSystem(model.K, model.constraints, model.mesh, budget, "cholesky", backend)
+            why = error.short
+        try:
+            direct = HeldSystem(model.K, model.constraints, model.mesh, budget, "cholesky", backend)
+        except TooLarge as error:
+            raise TooLarge(f"{why} The direct solver that would find them does not fit: {error}") from error
         try:
             found = solve(direct, "cholesky")
         finally:

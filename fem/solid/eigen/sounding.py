@@ -38,7 +38,7 @@ LEAST_OF_INVERSE = {True: 1.0, False: 0.01}
 """Least eigenvalue of P A, by whether the solver is direct. For an iterative one it is assumed: with one below it,
 conjugate gradients would take more steps than the 60 after which that solver gives way (2 sqrt(1 / a) ln(1e6) / 4)."""
 _ABOVE = 1.1
-"""What the largest value seen is raised by for a bound of the greatest one."""
+"""What the largest value seen is raised by for a bound of the greatest one: an assumption, too."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -117,6 +117,17 @@ def told(sounding: Sounding, where: str) -> str:
         return f"more than {where}: {sounding.steps} steps from random vectors found another one"
     return (
         f"{where}: {sounding.steps} steps from random vectors leave a chance below {CHANCE:.0e} that there is one more"
+    )
+
+
+def assumed(least: float) -> str:
+    """The sentence on what a sounding takes for granted, with `least` as it was given to it."""
+    within = f"the largest value that they met is at least {1.0 / _ABOVE:.0%} of the greatest there is"
+    if least == 1.0:
+        return f"this takes for granted that {within}"
+    return (
+        f"this takes for granted that no motion is more than {1.0 / least:.3g} times softer than the solver's "
+        f"approximation has it, and that {within}"
     )
 
 

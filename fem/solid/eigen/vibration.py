@@ -17,7 +17,7 @@ from fem.solid.eigen.motions import Motions, free_motions, free_part_constraints
 from fem.solid.eigen.pairs import Pairs, Pencil, extreme_pairs, lost, second_search, space_room
 from fem.solid.eigen.remote import remote_mass_rows
 from fem.solid.eigen.rigid import orthonormal, rigid_motions
-from fem.solid.eigen.sounding import COLUMNS, LEAST_OF_INVERSE, sound, told
+from fem.solid.eigen.sounding import COLUMNS, LEAST_OF_INVERSE, assumed, sound, told
 from fem.solid.eigen.space import by_turns
 from fem.solid.eigen.start import start_fields
 from fem.solid.factor import TooLarge
@@ -142,7 +142,7 @@ def _solve(
             worst = float(found.residual[:modes].max(initial=0.0))
             raise NotSettled(
                 f"The natural frequencies do not converge: residual {worst:.1e} after {found.rounds} rounds, allowed "
-                f"{allowed:.0e}. Ask for fewer modes, or mesh the part again."
+                f"{allowed:.0e}."
             )
         squares = 1.0 / found.mu
         split = separated(squares, modes)
@@ -165,13 +165,15 @@ def _solve(
             break
         if found.space is not None:
             rough = mass.rough(COLUMNS, budget.seed + attempt)
-            sounding = sound(pencil, found.space, -shift, rough, LEAST_OF_INVERSE[motions.direct])
+            least = LEAST_OF_INVERSE[motions.direct]
+            sounding = sound(pencil, found.space, -shift, rough, least)
             missing = sounding.known - above + int(sounding.found)
             note = f"{reason}; {told(sounding, f'{above} at or below {np.sqrt(shift) / 2 / np.pi:.5g} Hz')}"
             if sounding.found or missing:
                 guards, start = guards + 4, found.x
                 continue
             if sounding.clear:
+                note = f"{note}; {assumed(least)}"
                 break
         fresh = _start(model, motions, mass, 2 * GUARDS, budget.seed + 100 + attempt)
         again = second_search(pencil, found, tolerance, fresh, room)
