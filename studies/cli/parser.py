@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 
 from geometry.budget import available_threads
-from studies.cli import again, export, report, rescue, vary
+from studies.cli import again, export, lightest, report, rescue, vary
 from studies.cli.arguments import Commands, command, whole
 
 DESCRIPTION = """\
@@ -54,7 +54,7 @@ def make_parser() -> argparse.ArgumentParser:
     _add_check(commands)
     show = command(commands, "show", "print the tables of a finished run", _show)
     show.add_argument("folder", metavar="RUN_FOLDER", help="folder that `haunch check` wrote")
-    for study_command in (vary, report, again, export, rescue):
+    for study_command in (vary, lightest, report, again, export, rescue):
         study_command.register(commands)
     schema = command(commands, "schema", "print the JSON Schema of a spec or plan, for editors that complete and check "
                      "TOML", _schema)

@@ -1,6 +1,6 @@
 """The lightest variant under the limits, with far fewer solves than a grid.
 
-`search` works on any `Evaluator`; `lightest` is the same on a plan, with every solve in a record.
+`search` works on any `Evaluator`; `studies.lightest.study.lightest` is the same on a plan, every solve in a record.
 """
 
 from studies.lightest.evaluator import Evaluator, Solved
