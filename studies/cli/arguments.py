@@ -4,6 +4,10 @@ from __future__ import annotations
 
 import argparse
 from collections.abc import Callable
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from studies.vary.cluster import Tls
 
 Commands = argparse._SubParsersAction  # of argparse.ArgumentParser; not generic at run time
 
@@ -29,3 +33,22 @@ def whole(least: int, most: int) -> Callable[[str], int]:
         return value
 
     return read
+
+
+def on_a_cluster(parser: argparse.ArgumentParser) -> None:
+    """Words of a command that can evaluate on a cluster."""
+    parser.add_argument("--on", metavar="ADDRESS",
+                        help="evaluate on a cluster: tcp://HOST:PORT of its scheduler, or tls://HOST:PORT")
+    for name, text in (("ca", "certificates of those who may sign"), ("cert", "certificate of this side"),
+                       ("key", "its private key, where that is not in the file of the certificate")):
+        parser.add_argument(f"--tls-{name}", metavar="FILE", default="",
+                            help=f"with --on tls://: {text} (PEM); Dask's own configuration if left out")
+
+
+def tls_of(options: argparse.Namespace) -> Tls | None:
+    """The files for TLS that were given."""
+    if options.tls_ca or options.tls_cert or options.tls_key:
+        from studies.vary.cluster import Tls
+
+        return Tls(options.tls_ca, options.tls_cert, options.tls_key)
+    return None

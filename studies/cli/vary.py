@@ -10,7 +10,7 @@ from pathlib import Path
 
 from geometry.budget import available_threads
 from geometry.problem import SpecError
-from studies.cli.arguments import Commands, command, whole
+from studies.cli.arguments import Commands, command, on_a_cluster, tls_of, whole
 
 EPILOG = """\
 exit status
@@ -42,7 +42,7 @@ def register(commands: Commands[argparse.ArgumentParser]) -> None:
                            f"{available_threads()})")
     vary.add_argument("--memory", metavar="MiB", type=whole(256, 10**8),
                       help="memory that one variant may take, in place of the plan's")
-    vary.add_argument("--on", metavar="ADDRESS", help="evaluate on a cluster: tcp://HOST:PORT of its scheduler")
+    on_a_cluster(vary)
     vary.add_argument("--share", action="store_true",
                       help="the record may hold other studies; variants that they have finished are used again")
     vary.add_argument("--again", metavar="failed|NUMBER", nargs="+", type=_failed_or_number, default=[],
@@ -72,8 +72,9 @@ def _vary(options: argparse.Namespace) -> int:
     view = StudyView(options.quiet)
     try:
         with view:
-            summary = vary(plan, record, workers=options.workers, on=options.on, share=options.share,
-                           again=options.again, memory=options.memory, log=options.log, listener=view)
+            summary = vary(plan, record, workers=options.workers, on=options.on, tls=tls_of(options),
+                           share=options.share, again=options.again, memory=options.memory, log=options.log,
+                           listener=view)
     except SpecError as error:
         options.part = "the command line"
         raise error
