@@ -117,15 +117,16 @@ def _best_table(plan: Plan, rows: Sequence[Ranked]) -> Table:
     table = Table(title=escape(title), title_justify="left", title_style="bold", box=SIMPLE_HEAD, pad_edge=False)
     table.add_column("variant", justify="right")
     for name in plan.varied:
-        table.add_column(escape(name))
+        table.add_column(escape(_broken(name)))
     unit = shown_unit(plan.aim.unit)
     table.add_column(escape(f"{plan.aim.text} {f'({unit})' if unit else ''}".strip()), justify="right")
     names = [name for name in rows[0].figures if name != plan.aim.text][:MOST_COLUMNS]
     for name in names:
         unit = shown_unit(rows[0].figures[name].unit)
-        table.add_column(escape(f"{name} ({unit})" if unit else name), justify="right")
-    table.add_column("closest limit", justify="right")
-    table.add_column("judgement")
+        head = f"{_broken(name)} ({unit})" if unit else _broken(name)
+        table.add_column(escape(head), justify="right", min_width=max(map(len, head.split())))
+    table.add_column("closest limit", justify="right", no_wrap=True)
+    table.add_column("judgement", no_wrap=True)
     for row in rows:
         kept = [row.figures.get(name) for name in names]
         table.add_row(
@@ -134,6 +135,11 @@ def _best_table(plan: Plan, rows: Sequence[Ranked]) -> Table:
             *("-" if k is None else number(k.beam if k.solid is None else k.solid, k.unit) for k in kept),
             "-" if row.margin is None else f"{100 * row.margin:.3g} % left", escape(marked(row.judgement)))
     return table
+
+
+def _broken(name: str) -> str:
+    """A name with spaces for its underscores, so that it can stand in lines as the head of a narrow column."""
+    return name.replace("_", " ")
 
 
 def _none_fine(summary: Summary) -> Iterable[str]:
