@@ -10,10 +10,12 @@ from __future__ import annotations
 
 import math
 import warnings
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
 from scipy.linalg import cho_solve
+from scipy.optimize import minimize
 from sklearn.exceptions import ConvergenceWarning
 from sklearn.gaussian_process import GaussianProcessRegressor
 from sklearn.gaussian_process.kernels import ConstantKernel, DotProduct, Kernel, Matern, WhiteKernel
@@ -61,25 +63,31 @@ class Surrogate:
 def fit(seen: np.ndarray, values: np.ndarray, theta: np.ndarray | None = None) -> Surrogate:
     """A surrogate of values (points,) at what is seen of the points (points, columns).
 
-    `theta`: parameters of the kernel from the fit before, from which the search for the best ones starts too.
+    `theta`: parameters of the kernel from the fit before, from which the search for the best ones starts.
     """
     middle, size = float(values.mean()), float(values.std())
     size = size if size > 1e-12 * max(1.0, abs(middle)) else 1.0
     scaled = (values - middle) / size
     kernel = _kernel(seen.shape[1])
-    fitted = [_fitted(seen, scaled, kernel)]
-    if theta is not None:
-        fitted.append(_fitted(seen, scaled, kernel.clone_with_theta(theta)))
-    model = max(fitted, key=lambda one: one.log_marginal_likelihood_value_)
+    model = _fitted(seen, scaled, kernel if theta is None else kernel.clone_with_theta(theta))
     missed, widened = _left_out(model, scaled)
     return Surrogate(model, middle, size, size * missed, widened)
 
 
 def _fitted(seen: np.ndarray, scaled: np.ndarray, kernel: Kernel) -> GaussianProcessRegressor:
-    model = GaussianProcessRegressor(kernel, alpha=1e-12, random_state=0)
+    model = GaussianProcessRegressor(kernel, alpha=1e-12, optimizer=_likeliest)
     with warnings.catch_warnings():
         warnings.simplefilter("ignore", ConvergenceWarning)  # a parameter at its bound is no fault
         return model.fit(seen, scaled)
+
+
+def _likeliest(cost: Callable[[np.ndarray], tuple[float, np.ndarray]], start: np.ndarray, bounds: np.ndarray
+               ) -> tuple[np.ndarray, float]:
+    """Parameters of least `cost` (negative logarithm of the likelihood) from a start; near enough is good enough, for
+    they are sought again after the next solve."""
+    inside = np.clip(start, bounds[:, 0], bounds[:, 1])
+    found = minimize(cost, inside, jac=True, method="L-BFGS-B", bounds=bounds, options={"maxiter": 40, "ftol": 1e-5})
+    return found.x, float(found.fun)
 
 
 def with_more(of: Surrogate, seen: np.ndarray, values: np.ndarray) -> Surrogate:
