@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from studies.lightest.slopes import Slope
 from studies.lightest.study import Lightest
@@ -16,6 +16,9 @@ if TYPE_CHECKING:
 
 NOTHING = 5e-4
 """Share of a limit below which a change is not told."""
+
+EXACT = 0.005
+"""Share of a change below which its error is not told."""
 
 
 def told(plan: Plan, made: Lightest) -> Iterator[str]:
@@ -84,10 +87,10 @@ def _errors(made: Lightest) -> Iterator[str]:
 
 
 def sentence(plan: Plan, slope: Slope) -> str:
-    """``1 mm more web buys 4.1 % of the deflection limit and costs 35 g (5 to 6 mm, solved)``."""
+    """``1 mm more web buys 4.1 % of the deflection limit, and costs 35 g (5 to 6 mm, solved)``."""
     varied = plan.varied[slope.name]
     if not varied.numeric:
-        start, end = (varied.values[int(place)] for place in (slope.start, slope.end))
+        start, end = (_choice(varied.values[int(place)]) for place in (slope.start, slope.end))
         step, head = 1.0, f"{slope.name} {end} instead of {start}"
         source = "solved" if slope.solved else "by the surrogates"
     else:
@@ -100,11 +103,15 @@ def sentence(plan: Plan, slope: Slope) -> str:
     takes: list[str] = []
     for name, (change, error) in slope.limits.items():
         if abs(change * step) >= NOTHING:
-            plus = "" if error is None else f" ± {100 * abs(error) * step:.2g}"
-            (buys if change < 0.0 else takes).append(f"{100 * abs(change) * step:.2g}{plus} % of {name}")
+            plus = "" if error is None or error < EXACT * abs(change) else f" ± {100 * error * step:.2g}"
+            (buys if change < 0.0 else takes).append(f"{100 * abs(change) * step:.2g}{plus} % of the {name} limit")
     parts = ([f"buys {_listed(buys)}"] if buys else []) + ([f"takes {_listed(takes)}"] if takes else [])
     parts = parts or ["changes no limit"]
-    return f"{head} {', '.join(parts)} and {_aim(plan, slope, step)} ({source})"
+    return f"{head} {', '.join(parts)}, and {_aim(plan, slope, step)} ({source})"
+
+
+def _choice(value: Any) -> str:
+    return ", ".join(map(str, value)) if isinstance(value, list) else str(value)
 
 
 def step_size(gap: float) -> float:
@@ -121,7 +128,7 @@ def _aim(plan: Plan, slope: Slope, step: float) -> str:
         return f"does not change {text}"
     most = plan.aim.sense == "most"
     word = ("loses" if change > 0.0 else "gains") if most else ("costs" if change > 0.0 else "saves")
-    plus = f" ± {_small(error * step, plan.aim.unit)}" if error else ""
+    plus = f" ± {_small(error * step, plan.aim.unit)}" if error and error > EXACT * abs(change) else ""
     of = "" if plan.aim.text == "mass" else f" of {text}"
     return f"{word} {_small(size, plan.aim.unit)}{plus}{of}"
 

@@ -1,4 +1,4 @@
-"""What a search may not do: count doubtful variants, leave a better neighbour, go over its budget, differ from itself."""
+"""No search may count doubtful variants, leave a better neighbour, go over its budget, or differ from itself."""
 
 from __future__ import annotations
 
@@ -46,10 +46,13 @@ def test_doubtful_variants_do_not_count(problems):
 
 
 @pytest.mark.parametrize("name", ["bars", "taper"])
-def test_no_neighbour_is_better(problems, name):
-    problem = bars(problems) if name == "bars" else problems.tapered()
-    evaluator = problem.evaluator()
-    found = search(problem.space, evaluator, 60, 2)
+def test_no_neighbour_is_better(problems, searched, name):
+    if name == "bars":
+        problem = bars(problems)
+        evaluator = problem.evaluator()
+        found = search(problem.space, evaluator, 60, 2)
+    else:
+        problem, evaluator, found = searched(name, 1)
     assert found.best is not None and not found.unchecked
     beside = [evaluator.at(point) for _, point in problem.space.beside(found.best.point)]
     assert beside and not [one for one in beside if one.meets and one.aim < found.best.aim]
@@ -101,10 +104,9 @@ def test_points_left_out_are_not_solved(problems):
     assert found.best is not None and found.best.aim <= 1.01 * best.aim
 
 
-def test_slopes_are_the_derivatives(problems):
+def test_slopes_are_the_derivatives(searched):
     """At the winner of the taper: change of the deflection's share for 1 mm, against the closed form."""
-    problem = problems.tapered()
-    found = search(problem.space, problem.evaluator(), 60, 1)
+    problem, _, found = searched("taper", 1)
 
     @dataclasses.dataclass
     class Varied:

@@ -11,18 +11,11 @@ import numpy as np
 import pytest
 from scipy.integrate import quad
 
-from studies.lightest import Found, search
+from studies.lightest import Found
 
 NAMES = ("taper", "stock I", "box post")
-BUDGET = 60
+QUICK = {"taper": 1, "stock I": 1, "box post": 3}
 WITHIN, FEWER = 0.01, 5
-
-
-def run(problem: Any, seed: int, **more: Any) -> tuple[Found, int]:
-    evaluator = problem.evaluator(**more)
-    found = search(problem.space, evaluator, BUDGET, seed)
-    assert len(evaluator.solves) == len(found.solved) <= BUDGET
-    return found, len(evaluator.solves)
 
 
 def over(found: Found, problem: Any) -> float:
@@ -41,22 +34,24 @@ def test_best_taper_is_that_of_quadrature_and_of_a_fine_look(problems):
 
 
 @pytest.mark.parametrize("name", NAMES)
-def test_one_seed(problems, name):
-    problem = problems.PROBLEMS[name]()
-    found, solves = run(problem, 1)
+def test_one_seed(searched, name):
+    """The box post with a seed that ends in the wrong region when surrogates are believed without their error."""
+    problem, evaluator, found = searched(name, QUICK[name])
+    solves = len(evaluator.solves)
     assert over(found, problem) <= WITHIN and FEWER * solves <= problem.grid
-    assert found.best.aim < problem.sobol(solves, 1)
+    assert found.best.aim < problem.sobol(solves, QUICK[name])
 
 
 @pytest.mark.heavy
 @pytest.mark.parametrize("name", NAMES)
-def test_median_of_ten_seeds(problems, name):
-    problem = problems.PROBLEMS[name]()
-    runs = [run(problem, seed) for seed in range(1, 11)]
-    overs = [over(found, problem) for found, _ in runs]
-    solves = [count for _, count in runs]
+def test_median_of_ten_seeds(searched, name):
+    runs = [searched(name, seed) for seed in range(1, 11)]
+    problem = runs[0][0]
+    overs = [over(found, problem) for _, _, found in runs]
+    solves = [len(evaluator.solves) for _, evaluator, _ in runs]
     sobol = [problem.sobol(count, seed) / problem.best - 1.0 for seed, count in enumerate(solves, 1)]
     print(f"\n{name}: grid {problem.grid}, solves {median(solves):g} ({min(solves)} to {max(solves)}), over the best "
           f"{100 * median(overs):.3f} % (at most {100 * max(overs):.3f} %), Sobol {100 * median(sobol):.2f} %")
     assert median(overs) <= WITHIN and FEWER * median(solves) <= problem.grid
+    assert max(overs) <= WITHIN  # more than is asked; without the error of the surrogates a seed ends 25 % above
     assert median(overs) < median(sobol)

@@ -39,7 +39,7 @@ def small() -> ModuleType:
 
 
 def run(small: Any, room: Path, plan: Any, **more: Any) -> Lightest:
-    return lightest(plan, room / "bars.study", backend=lambda: small.SmallBackend(room), **{"budget": 40, **more})
+    return lightest(plan, room / "bars.study", backend=lambda: small.SmallBackend(room), **{"budget": 24, **more})
 
 
 def test_lightest_bar(small, tmp_path):
@@ -56,7 +56,8 @@ def test_lightest_bar(small, tmp_path):
         assert record.title == "Bars: lightest" and record.progress().finished == made.evaluated
         assert any("lightest: variant" in what for _, what in record.events())
     lines = "\n".join(told(plan, made))
-    assert "1 mm more depth buys" in lines and "1 mm more width buys" in lines and " of deflection and costs" in lines
+    assert "1 mm more depth buys" in lines and "1 mm more width buys" in lines
+    assert " of the deflection limit, and costs" in lines
     assert "NOT confirmed" in lines
 
 
@@ -131,8 +132,13 @@ def test_words(small, tmp_path):
     plan = small.make_plan(tmp_path, {"width": ["18 mm", "20 mm"]})
     slope = Slope("width", 20.0, 18.0, "mm", 1.0, (35e-6, None), {"deflection": (-0.04, None), "stress": (-0.02, 0.003),
                                                                    "mass": (0.01, None)}, True)
-    assert sentence(plan, slope) == ("1 mm more width buys 4 % of deflection and 2 ± 0.3 % of stress, takes 1 % of mass "
-                                     "and costs 35 g (18 to 20 mm, solved)")
+    assert sentence(plan, slope) == ("1 mm more width buys 4 % of the deflection limit and 2 ± 0.3 % of the stress "
+                                     "limit, takes 1 % of the mass limit, and costs 35 g (18 to 20 mm, solved)")
+    hold = {"width": ["18 mm"], "supports.wall.hold": ["all", ["x", "y", "z", "rx"]]}
+    plan = small.make_plan(tmp_path, hold)
+    slope = Slope("supports.wall.hold", 0.0, 1.0, "", 1.0, (0.0, None), {"deflection": (0.5, 0.1)}, False)
+    assert sentence(plan, slope) == ("supports.wall.hold x, y, z, rx instead of all takes 50 ± 10 % of the deflection "
+                                     "limit, and does not change mass (by the surrogates)")
 
 
 @pytest.mark.heavy
