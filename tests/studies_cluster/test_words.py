@@ -114,9 +114,26 @@ def mute() -> Iterator[str]:
 
 @pytest.mark.heavy
 def test_what_listens_is_no_scheduler(mute, capfd):
+    import distributed  # noqa: F401 - loading it is not what is timed
+
     said = told(lambda: cluster(mute)(lambda text: None))
     assert said.startswith(f"something listens at {mute}, but it does not answer as a Dask scheduler does")
     assert capfd.readouterr() == ("", "")
+
+
+@pytest.mark.heavy
+def test_nothing_of_dask_on_the_terminal():
+    """Whatever its parts log, after `be_quiet`; before, the same is shown."""
+    log = ("import logging, sys, distributed\n"
+           "from studies.vary.cluster.quiet import be_quiet\n"
+           "def log(text):\n"
+           "    for name in ('distributed.client', 'distributed.comm.tcp', 'distributed', 'tornado.application',\n"
+           "                 'asyncio'):\n"
+           "        logging.getLogger(name).error('%s of %s', text, name)\n"
+           "log('loud')\nbe_quiet()\nlog('quiet')")
+    done = subprocess.run([sys.executable, "-c", log], env={**os.environ, "PYTHONPATH": str(ROOT)}, timeout=60,
+                          capture_output=True, text=True)
+    assert done.returncode == 0 and done.stderr.count("loud of") == 5 and "quiet" not in done.stderr + done.stdout
 
 
 def _certificates(room: Path, name: str) -> Tls:
