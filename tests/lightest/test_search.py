@@ -33,7 +33,7 @@ def test_best_taper_is_that_of_quadrature_and_of_a_fine_look(problems):
     assert mass < problems.grid_of_tapers() < 1.03 * mass
 
 
-@pytest.mark.parametrize("name", NAMES)
+@pytest.mark.parametrize("name", ["taper", pytest.param("stock I", marks=pytest.mark.heavy), "box post"])
 def test_one_seed(searched, name):
     """The box post with a seed that ends in the wrong region when surrogates are believed without their error."""
     problem, evaluator, found = searched(name, QUICK[name])
