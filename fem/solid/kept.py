@@ -22,20 +22,22 @@ class KeptSystem:
     def __init__(self) -> None:
         self._system: HeldSystem | None = None
         self._model: SolidModel | None = None
-        self._settings: tuple[Budget, Choice, str] | None = None
+        self._settings: tuple[Budget, Choice, str, int | None] | None = None
         self._solver: object = None
         self.reused = 0
         """How often one was used again."""
 
-    def system(self, model: SolidModel, budget: Budget, choice: Choice, backend: str) -> HeldSystem:
-        """The system of a model. It stays this object's: do not close it."""
-        settings = (budget, choice, backend)
+    def system(self, model: SolidModel, budget: Budget, choice: Choice, backend: str, cases: int | None) -> HeldSystem:
+        """The system of a model, with the solver that it would have by itself for so many `cases` (see `choose`): the
+        numbers of a variant must not depend on what it is solved together with. It stays this object's: do not close
+        it."""
+        settings = (budget, choice, backend, cases)
         if self._system is not None and self._settings == settings and self._same(model, self._system):
             self.reused += 1
             self._system.constraints = model.constraints
             return self._system
         self.close()
-        self._system = HeldSystem(model.K, model.constraints, model.mesh, budget, choice, backend)
+        self._system = HeldSystem(model.K, model.constraints, model.mesh, budget, choice, backend, cases)
         self._model, self._settings, self._solver = model, settings, self._system.solver
         return self._system
 

@@ -81,11 +81,11 @@ def solve_solid(
     model = build_model(part, mesh, budget.threads)
     cases = tuple(case.name for case in part.cases)
     stage("factor and solve")
+    count = None if part.vibration or part.buckling else len(cases)
     if kept is None:
-        count = None if part.vibration or part.buckling else len(cases)
         system = HeldSystem(model.K, model.constraints, mesh, budget, solver, backend, count)
     else:
-        system = kept.system(model, budget, solver, backend)
+        system = kept.system(model, budget, solver, backend, count)
     try:
         u, solution = _displacements(model, system)
         cutter = Cutter(mesh)

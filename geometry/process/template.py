@@ -13,6 +13,7 @@ from __future__ import annotations
 
 import contextlib
 import ctypes
+import gc
 import json
 import os
 import select
@@ -74,6 +75,8 @@ def main(name: str, folder: str = "") -> int:
     module = import_module(name)
     with contextlib.suppress(Exception):  # a job will meet the same fault again, and tell it
         module.prepare()
+    gc.collect()
+    gc.freeze()  # or the first collection in a job would write to, and so copy, every page of what is loaded
     woken, wake = os.pipe()
     for end in (woken, wake):
         os.set_blocking(end, False)
