@@ -70,10 +70,6 @@ class Step:
     doing: str
 
 
-class Stopped(Exception):
-    """Raised by an evaluator or a listener to end the search where it is; what is solved stays with the evaluator."""
-
-
 def first_count(space: Space, budget: int) -> int:
     """How many points the even start has."""
     columns = space.seen([space.at([0.0] * len(space.dimensions))]).shape[1]
