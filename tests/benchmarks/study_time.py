@@ -97,6 +97,8 @@ class Measured:
             summary = vary(plan, record, backend=lambda: self._backend,
                            listener=lambda said: ends.append(time.perf_counter()) if _is_end(said) else None)
             seconds = time.perf_counter() - began
+            if summary.interrupted:
+                raise SystemExit(f"stopped ({summary.interrupted}): half a study says nothing")
             time.sleep(0.5)  # the templates count the time of a job once it has ended
             cpu = self._cpu() - cpu
         finally:
