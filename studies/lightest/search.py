@@ -205,6 +205,8 @@ class _Search:
 
     def _first_allowed(self, belief: Belief, candidates: list[Point], least: float, but: Sequence[Point]
                        ) -> tuple[Point, float, float] | None:
+        if not candidates:
+            return None
         rough, chances = belief.gain(candidates, least)
         order = np.lexsort((-chances, -rough))
         asked = 0
@@ -237,6 +239,8 @@ class _Search:
                 found += [p for _, p in self.space.beside(one.point)]
             for reach in REACHES:
                 found = [p for p in dict.fromkeys(found) if self._open(p)]
+                if not found:
+                    break
                 gains, chances = belief.gain(found, least)
                 top = [found[k] for k in np.lexsort((-chances, -gains))[:6]]
                 for point in top:

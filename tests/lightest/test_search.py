@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 from scipy.integrate import quad
 
-from studies.lightest import Found
+from studies.lightest import Dimension, Found, Space, search
 
 NAMES = ("taper", "stock I", "box post")
 QUICK = {"taper": 1, "stock I": 1, "box post": 3}
@@ -55,3 +55,12 @@ def test_median_of_ten_seeds(searched, name):
     assert median(overs) <= WITHIN and FEWER * median(solves) <= problem.grid
     assert max(overs) <= WITHIN  # more than is asked; without the error of the surrogates a seed ends 25 % above
     assert median(overs) < median(sobol)
+
+
+@pytest.mark.parametrize("values", [(20.0,), (10.0, 20.0), (10.0, 20.0, 30.0)])
+@pytest.mark.parametrize("cheap", [True, False])
+def test_a_plan_with_fewer_variants_than_the_budget_is_solved_whole(problems, values, cheap):
+    space = Space((Dimension("depth", values),))
+    evaluator = problems.Closed(space, lambda of: (of["depth"], {"deflection": 15.0 / of["depth"]}), cheap)
+    found = search(space, evaluator, budget=5, seed=1)
+    assert found.best is not None and found.best.aim == 20.0
