@@ -40,6 +40,12 @@ def pipe() -> NamedMesh:
 MESHES: dict[str, Callable[[], NamedMesh]] = {"straight": straight, "ball": ball, "pipe": pipe}
 
 
+def close(found: NDArray[np.float64], want: NDArray[np.float64], rel: float = 0.0, abs: float = 0.0) -> bool:
+    """What ``found == pytest.approx(want, rel, abs)`` says of large arrays, which takes them one by one, at once."""
+    assert found.shape == want.shape
+    return bool((np.abs(found - want) <= np.maximum(rel * np.abs(want), abs)).all())
+
+
 class Plain:
     """scikit-fem's basis on the same mesh. `place` (3 n,) is its unknown of our unknown 3 node + direction."""
 
