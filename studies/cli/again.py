@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import argparse
 import dataclasses
+import tomllib
+from collections.abc import Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -34,13 +36,17 @@ def register(commands: Commands[argparse.ArgumentParser]) -> None:
 
 
 def _again(options: argparse.Namespace) -> int:
-    point, data = _variant(options.record, options.study, options.number)
+    point, data, made = _variant(options.record, options.study, options.number)
     from geometry.spec.read import part_from_data
     from studies.cli.check import checked_run
+    from studies.cli.screen import make_console
     from studies.vary.work.toml import dumps
 
     values = ", ".join(f"{name} = {value}" for name, value in point.values.items())
-    text = f"# Variant {point.number} of {Path(options.record).name}: {values}\n{dumps(data)}"
+    head = [f"# Variant {point.number} of {Path(options.record).name}: {values}", *([f"# {made}"] if made else [])]
+    text = "\n".join([*head, dumps(data)])
+    if made:
+        make_console().print(made, soft_wrap=True, markup=False)
     if options.spec is not None:
         _write_spec(Path(options.spec), text, options.replace)
     part = dataclasses.replace(part_from_data(data), source_text=text)
@@ -48,7 +54,8 @@ def _again(options: argparse.Namespace) -> int:
     return checked_run(part, out, options.replace, options.pictures, options.threads, options.memory)
 
 
-def _variant(path: str, study: str | None, number: int) -> tuple[Point, dict[str, Any]]:
+def _variant(path: str, study: str | None, number: int) -> tuple[Point, dict[str, Any], str]:
+    """The point, the tables of its spec, and what of it is not as drawn."""
     from studies.record import Record
 
     with Record.open(path, study) as record:
@@ -61,7 +68,18 @@ def _variant(path: str, study: str | None, number: int) -> tuple[Point, dict[str
         data = record.spec(points[number].key)
         if data is None:
             raise HaunchError(f"variant {number} waits to be evaluated: `haunch vary` goes on with the study")
-        return points[number], data
+        return points[number], data, _made(record.study().plan_text, data)
+
+
+def _made(plan_text: str, data: Mapping[str, Any]) -> str:
+    """Where the plan has tolerances: that this is the part at least material, and which dimensions that means."""
+    plan = tomllib.loads(plan_text)
+    names = plan.get("tolerances", {})
+    if not names or plan.get("sampling", {}).get("method") == "as made":
+        return ""
+    found = ", ".join(f"{name} = {data['parameters'][name]}" for name in names if name in data.get("parameters", {}))
+    return ("The plan has tolerances: this is the part at least material"
+            f"{f' ({found})' if found else ''}; the mass in the study is that at most material")
 
 
 def _write_spec(file: Path, text: str, replace: bool) -> None:

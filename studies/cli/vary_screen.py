@@ -13,6 +13,7 @@ from types import TracebackType
 from typing import TYPE_CHECKING
 
 from rich.box import SIMPLE_HEAD
+from rich.console import Console
 from rich.markup import escape
 from rich.progress import BarColumn, TextColumn
 from rich.progress import Progress as Bar
@@ -86,7 +87,7 @@ def print_summary(plan: Plan, summary: Summary, record: Path, plan_path: str) ->
     say(f"{several(summary.evaluated, 'variant')} in {duration(summary.seconds)}" + (
         f", {summary.reused} of {summary.points} points from before" if summary.reused else ""))
     if summary.best:
-        console.print(_best_table(plan, summary.best))
+        console.print(_best_table(plan, summary.best, console))
     else:
         for text in _none_fine(summary):
             say(text)
@@ -112,28 +113,40 @@ def print_summary(plan: Plan, summary: Summary, record: Path, plan_path: str) ->
     say(f"The report: haunch report {record}")
 
 
-def _best_table(plan: Plan, rows: Sequence[Ranked]) -> Table:
+def _best_table(plan: Plan, rows: Sequence[Ranked], console: Console) -> Table:
+    """As many kept figures as the screen is wide enough for; the varied values, the aim and the judgement always."""
+    names = [name for name in rows[0].figures if name != plan.aim.text][:MOST_COLUMNS]
+    while True:
+        table = _table(plan, rows, names)
+        if not names or console.measure(table).minimum <= console.width:
+            return table
+        names.pop()
+
+
+def _table(plan: Plan, rows: Sequence[Ranked], names: Sequence[str]) -> Table:
     title = f"the best that meet every limit: {plan.aim.sense} {plan.aim.text}"
     table = Table(title=escape(title), title_justify="left", title_style="bold", box=SIMPLE_HEAD, pad_edge=False)
-    table.add_column("variant", justify="right")
-    for name in plan.varied:
-        table.add_column(escape(_broken(name)))
-    unit = shown_unit(plan.aim.unit)
-    table.add_column(escape(f"{plan.aim.text} {f'({unit})' if unit else ''}".strip()), justify="right")
-    names = [name for name in rows[0].figures if name != plan.aim.text][:MOST_COLUMNS]
+
+    def column(head: str, cells: Sequence[str], right: bool = True) -> Sequence[str]:
+        least = max(map(len, [*head.split(), *cells]))
+        table.add_column(escape(head), justify="right" if right else "left", min_width=least)
+        return [escape(cell) for cell in cells]
+
+    def with_unit(head: str, unit: str) -> str:
+        return f"{head} ({shown_unit(unit)})" if shown_unit(unit) else head
+
+    columns = [column("variant", [str(row.number) for row in rows])]
+    columns += [column(_broken(name), [str(row.values.get(name) or "as it is") for row in rows], right=False)
+                for name in plan.varied]
+    columns.append(column(with_unit(plan.aim.text, plan.aim.unit), [number(row.aim, plan.aim.unit) for row in rows]))
     for name in names:
-        unit = shown_unit(rows[0].figures[name].unit)
-        head = f"{_broken(name)} ({unit})" if unit else _broken(name)
-        table.add_column(escape(head), justify="right", min_width=max(map(len, head.split())))
-    table.add_column("closest limit", justify="right", no_wrap=True)
-    table.add_column("judgement", no_wrap=True)
-    for row in rows:
-        kept = [row.figures.get(name) for name in names]
-        table.add_row(
-            str(row.number), *(escape(str(row.values.get(name) or "as it is")) for name in plan.varied),
-            number(row.aim, plan.aim.unit),
-            *("-" if k is None else number(k.beam if k.solid is None else k.solid, k.unit) for k in kept),
-            "-" if row.margin is None else f"{100 * row.margin:.3g} % left", escape(marked(row.judgement)))
+        kept = [row.figures.get(name) for row in rows]
+        columns.append(column(with_unit(_broken(name), rows[0].figures[name].unit), [
+            "-" if k is None else number(k.beam if k.solid is None else k.solid, k.unit) for k in kept]))
+    columns.append(column("limit left", ["-" if row.margin is None else f"{100 * row.margin:.3g} %" for row in rows]))
+    columns.append(column("judgement", [marked(row.judgement) for row in rows], right=False))
+    for cells in zip(*columns, strict=True):
+        table.add_row(*cells)
     return table
 
 

@@ -132,7 +132,7 @@ def lightest(plan: Plan, record: str | Path, *, budget: int = 60, seed: int = 1,
     path = Path(record)
     with Log(Path(log) if log else None, listener) as hear:
         with Record.resume(path, plan, share) if path.exists() else Record.create(path, plan) as writer:
-            work = _Work(plan, writer, hear, stop or threading.Event(), backend or _backend(plan, workers))
+            work = _Work(plan, writer, hear, stop or threading.Event(), backend or _backend(plan, workers, hear))
             hear(Happening("start", f"{plan.title}: at most {budget} solves, seed {seed}"))
             try:
                 with heard(work.ask_to_stop):
@@ -155,11 +155,12 @@ def _refuse(plan: Plan) -> None:
         raise SpecError(problems)
 
 
-def _backend(plan: Plan, workers: int) -> Callable[[], Backend]:
+def _backend(plan: Plan, workers: int, hear: Listener) -> Callable[[], Backend]:
     def make() -> Backend:
         from geometry.budget import available_threads
-        from studies.vary.run.local import LocalBackend
+        from studies.vary.run.local import LocalBackend, compile_kernels
 
+        compile_kernels(lambda text: hear(Happening("note", text)))
         return LocalBackend(workers or available_threads(), plan.run.memory)
 
     return make

@@ -40,6 +40,11 @@ class PlanLike(Protocol):
     def varied(self) -> Mapping[str, VariedLike]: ...
 
 
+def _shared(changed: bool) -> str:
+    return ("the points of the plan as it was give way to those of the plan as it is; for both give one another title"
+            if changed else "both studies are then in this file")
+
+
 def join(db: sqlite3.Connection, path: Path, plan: PlanLike, share: bool) -> None:
     """Find the study of `plan` in the record, or write it."""
     titles = dict(db.execute("SELECT title, key FROM study").fetchall())
@@ -51,7 +56,7 @@ def join(db: sqlite3.Connection, path: Path, plan: PlanLike, share: bool) -> Non
                 else "another study: " + ", ".join(map(repr, titles)))
         raise RecordError(f"the record {path} is that of {what}.\n"
                           f"  1. keep them apart: --record {path.with_name(path.stem + '-2' + path.suffix)}\n"
-                          "  2. write both into this one, and use its finished variants again: --share")
+                          f"  2. use its finished variants again: --share ({_shared(title in titles)})")
     varied = [Varied(text(name), text(v.label), text(v.unit)) for name, v in plan.varied.items()]
     db.execute("BEGIN IMMEDIATE")
     if title in titles:

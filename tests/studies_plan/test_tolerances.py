@@ -163,3 +163,14 @@ def test_the_mass_of_the_examples_is_near_enough(name):
     part = read_part(EXAMPLES / f"{name}.toml")
     mass = next(f.value for f in solve_beam(part).figures if f.key.quantity == "mass")
     assert volume_of(part.members[0]) * part.material.density == pytest.approx(mass, rel=0.02)
+
+
+def test_a_tolerance_of_a_length_leaves_the_part_as_drawn_for_strength(plan):
+    """A shorter arm has less material, but is the stiffer one."""
+    made = plan('[vary]\nroot_depth = ["60 mm"]\n[tolerances]\nreach = "10 mm"\nroot_depth = "0.5 mm"\n')
+    (variant,) = made.variants()
+    least, most = part_from_data(variant.data).members[0], part_from_data(variant.fullest).members[0]
+    assert least.end[0] == pytest.approx(360.0)
+    assert most.end[0] == pytest.approx(370.0)  # mass at most
+    assert least.section.dims["depth"] == pytest.approx(59.5)
+    assert [note.split(":")[0] for note in made.notes if "stays as drawn" in note] == ["tolerances.reach"]

@@ -155,9 +155,11 @@ def test_again_replaces_what_is_there(small, tmp_path):
     assert sorted(numbers_started(small, tmp_path)[begun:]) == [3, 5, 5]
     begun = len(small.started(tmp_path))
     small.faults(tmp_path, n12="fails")
-    summary = run(small, tmp_path, again=[1, 12])
+    heard = []
+    summary = run(small, tmp_path, again=[1, 12], listener=heard.append)
     assert sorted(numbers_started(small, tmp_path)[begun:]) == [1, 12, 12] and summary.done == 12
-    assert [failure.number for failure in summary.failures] == [5, 12]  # a finished one has given way
+    assert [failure.number for failure in summary.failures] == [5]  # what had finished is not lost to a later failure
+    assert any("variant 12 failed this time" in getattr(what, "text", "") for what in heard)
     with pytest.raises(SpecError, match="numbers of points from 1 to 12"):
         run(small, tmp_path, again=[13])
     with pytest.raises(SpecError, match="allowed: failed"):

@@ -55,7 +55,7 @@ def test_a_suspicious_variant_is_passed_over_and_told(samples: ModuleType) -> No
 
 def test_the_headline_names_variant_mass_limit_and_margin(samples: ModuleType) -> None:
     top = top_of(samples.grid())
-    assert top.headline == "Variant 37 is the lightest of the 32 variants that meet every limit: 0.4316 kg."
+    assert top.headline == "Variant 37 is the lightest of the 31 variants that meet every limit: 0.4316 kg."
     assert top.reasons[0] == "Deflection governs: 0.1942 mm, at most 0.21 mm allowed, 7.5 % left."
     assert "tip_depth 26 mm the least and web 4 mm the least" in top.reasons[1]
     assert top.command == "haunch again camera_arm_plan.study 37"

@@ -120,13 +120,14 @@ def governs_text(outcome: Outcome) -> str:
 def _chosen(data: StudyData, ranking: Ranking, row: Row, warnings: tuple[str, ...]) -> Answer:
     outcome = row.outcome
     assert outcome is not None
+    sound = sum(r.outcome is not None and r.outcome.judgement != "suspicious" for r in ranking.meeting)
     if outcome.limits:
-        only = len(ranking.meeting) == 1
+        only = sound == 1
         of = "the only one that meets every limit" if only else \
-            f"{_best(data)} of the {counted(len(ranking.meeting), 'variant')} that meet every limit"
+            f"{_best(data)} of the {counted(sound, 'variant')} that meet every limit"
         reasons = [governs_text(outcome)]
     else:
-        of = f"{_best(data)} of {counted(len(ranking.meeting), 'variant')}; no limits were set"
+        of = f"{_best(data)} of {counted(sound, 'variant')}; no limits were set"
         reasons = ["No limits were set, so nothing says whether it is strong or stiff enough."]
     reasons += [_edge_text(data, row), _over_text(data, ranking), _next_text(data, ranking, row)]
     reasons.append(f"Judgement of its two models: {marked(outcome.judgement or 'agrees')}. Before it is made, check it "

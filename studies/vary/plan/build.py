@@ -158,9 +158,12 @@ def _tolerances(reading: Reading, spec: PlanSpec, varied: dict[str, Varied]) -> 
             reading.problem("vary", ", ".join(spec.vary), "nothing, for as made: one part is made many times",
                             "Put the dimensions as drawn under [base]")  # fmt: skip
     elif tolerances:
-        idle = extremes(reading.data, reading.scope, tolerances).idle
+        sides = extremes(reading.data, reading.scope, tolerances)
         reading.notes += [f"tolerances.{name}: it changes no material, so it stays as drawn; as made would vary it"
-                          for name in idle]  # fmt: skip
+                          for name in sides.idle]  # fmt: skip
+        reading.notes += [f"tolerances.{name}: it changes the length of the part, and the shorter one is not the "
+                          "weaker one, so for strength it stays as drawn; vary it, or take as made"
+                          for name in sides.reaching]  # fmt: skip
     return tolerances
 
 

@@ -34,6 +34,14 @@ def mass_of_tables(data: Mapping[str, Any]) -> float:
     return volume
 
 
+def longer(a: Mapping[str, Any], b: Mapping[str, Any]) -> bool:
+    """Whether two parts differ in the length of a member."""
+    specs = PartSpec.model_validate(a), PartSpec.model_validate(b)
+    members = [[resolve_member(Values(s.parameters), name, m) for name, m in s.members.items()] for s in specs]
+    return any(not math.isclose(length_of(one), length_of(other), rel_tol=1e-9)
+               for one, other in zip(*members, strict=True))
+
+
 def volume_of(member: Member) -> float:
     """Volume of a member, mm^3."""
     profile = profile_of(member)

@@ -14,7 +14,7 @@ from typing import Any
 from geometry.spec.resolve.values import shown
 from geometry.spec.text.units import UNITS, Quantity
 from geometry.spec.words.structure import Path, written
-from studies.vary.plan.material import mass_of_tables
+from studies.vary.plan.material import longer, mass_of_tables
 from studies.vary.plan.place import value_at, with_value
 from studies.vary.plan.reading import Reading, usual_unit
 from studies.vary.plan.varied import Varied, quantity_of, unit_in
@@ -107,28 +107,35 @@ def read_tolerance(
 
 @dataclass(frozen=True)
 class Extremes:
-    """Tables of a part at least and at most material; `idle`: tolerances that change no material, left as drawn."""
+    """Tables of a part at least and at most material; `idle`: tolerances that change no material, left as drawn;
+    `reaching`: those that change the length of a member. A shorter arm has less material and is the stiffer one, so
+    for strength they stay as drawn."""
 
     least: Mapping[str, Any]
     most: Mapping[str, Any]
     idle: tuple[str, ...]
+    reaching: tuple[str, ...]
 
 
 def extremes(
     data: Mapping[str, Any], scope: Mapping[str, Quantity], tolerances: Sequence[Tolerance]
 ) -> Extremes:
     """The part at least and at most material; whether both can be is seen when they are resolved."""
-    least, most, idle = data, data, []
+    least, most, idle, reaching = data, data, [], []
     for tolerance, nominal in nominals(data, scope, tolerances):
         sides = [tolerance.off(nominal, deviation) for deviation in (-tolerance.minus, tolerance.plus)]
-        masses = [mass_of_tables(with_value(data, tolerance.path, side)) for side in sides]
+        made = [with_value(data, tolerance.path, side) for side in sides]
+        masses = [mass_of_tables(one) for one in made]
         if math.isclose(*masses, rel_tol=SAME_MASS):
             idle.append(tolerance.name)
             continue
         light = 0 if masses[0] < masses[1] else 1
-        least = with_value(least, tolerance.path, sides[light])
+        if longer(*made):
+            reaching.append(tolerance.name)
+        else:
+            least = with_value(least, tolerance.path, sides[light])
         most = with_value(most, tolerance.path, sides[1 - light])
-    return Extremes(least, most, tuple(idle))
+    return Extremes(least, most, tuple(idle), tuple(reaching))
 
 
 def nominals(

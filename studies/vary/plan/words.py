@@ -82,7 +82,9 @@ class RunsSpec(Words):
     """Variants of which the whole run folder is kept: tables, fields, pictures."""
 
     best: Annotated[Whole, OfKind("number", least=0.0)] = Field(3, description="how many of the best by the aim")
-    worst: Annotated[Whole, OfKind("number", least=0.0)] = Field(1, description="how many of the worst by the aim")
+    worst: Annotated[Whole, OfKind("number", least=0.0)] = Field(
+        1, description="how many of those that miss a limit by most, or have least left"
+    )
     suspicious: Annotated[Whole, OfKind("number", least=0.0)] = Field(5, description="how many suspicious ones at most")
     every: Annotated[Whole, OfKind("number", least=0.0)] = Field(0, description="every n-th variant; 0: none")
 

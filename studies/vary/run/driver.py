@@ -248,6 +248,12 @@ class Driver:
 
     def _take_outcome(self, ticket: Ticket, outcome: Outcome) -> None:
         variant, key = ticket.variant, ticket.variant.key
+        before = self._record.outcome(key) if outcome.status == "failed" and key in self._redo else None
+        if before is not None and before.status == "finished":
+            self.tally.outcome(key, before.judgement or FAILED)
+            self._tell(Happening("note", f"variant {variant.number} failed this time ({told(outcome)}); what it had "
+                                         "finished with before stays in the record", variant.number))
+            return
         self._record.add(variant, outcome, replace=key in self._redo)
         self.tally.outcome(key, outcome.judgement or FAILED)
         if ticket.run_folder and outcome.status == "finished":

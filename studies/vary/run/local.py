@@ -2,12 +2,33 @@
 
 from __future__ import annotations
 
+import os
 import queue
+import subprocess
+import sys
 import threading
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
+from contextlib import suppress
+from pathlib import Path
 
 from studies.vary.run.backend import Hear
 from studies.vary.work import Host, Order
+
+
+def compile_kernels(tell: Callable[[str], None]) -> None:
+    """Compile the solver's kernels where that has not been done on this machine, in a process of its own: a minute,
+    once, and told before it begins. Where it fails the first variants compile them."""
+    from fem.solid.kernels.cache import is_warm
+
+    if is_warm():
+        return
+    tell("preparing the solver's kernels: about a minute, once")
+    root = str(Path(__file__).resolve().parents[3])
+    path = os.pathsep.join(p for p in (root, os.environ.get("PYTHONPATH", "")) if p)
+    with suppress(subprocess.TimeoutExpired):
+        subprocess.run([sys.executable, "-c", "from fem.solid.kernels.warm import warm_up; warm_up(lambda text: None)"],
+                       env={**os.environ, "PYTHONPATH": path}, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL,
+                       timeout=600, check=False)
 
 
 class LocalBackend:

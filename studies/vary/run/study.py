@@ -94,9 +94,9 @@ def vary(plan: Plan, record: str | Path, *, workers: int = 0, on: str | None = N
             for text in plan.notes:
                 tell(Happening("note", text))
             redo = {point.key for point, _ in writer.failed()} if "failed" in words else set()
-            make = backend or (_backend(plan, workers) if cluster is None else cluster(tell))
+            make = backend or (_backend(plan, workers, tell) if cluster is None else cluster(tell))
             driver = Driver(plan, writer, make, tell, stop, redo, numbers)
-            here = backend or _backend(plan, workers)
+            here = backend or _backend(plan, workers, tell)
             with heard(driver.ask_to_stop):
                 return _run(driver, plan, writer, tell, started, here)
 
@@ -111,10 +111,11 @@ def _again(again: Iterable[str | int], count: int) -> tuple[set[str], set[int]]:
     return words, numbers
 
 
-def _backend(plan: Plan, workers: int) -> Callable[[], Backend]:
+def _backend(plan: Plan, workers: int, tell: Listener) -> Callable[[], Backend]:
     def make() -> Backend:
-        from studies.vary.run.local import LocalBackend
+        from studies.vary.run.local import LocalBackend, compile_kernels
 
+        compile_kernels(lambda text: tell(Happening("note", text)))
         return LocalBackend(workers or available_threads(), plan.run.memory)
 
     return make

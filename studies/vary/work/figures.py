@@ -128,6 +128,14 @@ def _places(part: Part) -> Iterator[str]:
     yield from (support.name for support in part.supports)
 
 
+def _size(kept: Kept | None) -> Kept | None:
+    """Without the sign: of two rims or fibres that are stressed alike, which one is the larger by a hair changes from
+    variant to variant, and a figure that jumps from tension to compression says nothing over a study."""
+    if kept is None:
+        return None
+    return kept._replace(solid=kept.solid and abs(kept.solid), beam=kept.beam and abs(kept.beam))
+
+
 @dataclass
 class Figures:
     """Both models of one variant, asked for figures by name.
@@ -169,7 +177,9 @@ class Figures:
                 values = [d.value for d in self.solid.denting if self._acts(d.case, name)]
                 return Kept(max(values, key=abs), None, "mm", "no beam value") if values else None
             case "stress" if name.at:
-                return self._largest(name._replace(what="notch_stress"))
+                return _size(self._largest(name._replace(what="notch_stress")))
+            case "notch_stress" | "nominal_stress":
+                return _size(self._largest(name))
             case "stress" | "yield_factor":
                 return self._strength(name)
             case _:
