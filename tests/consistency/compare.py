@@ -11,7 +11,7 @@ from OCP.BRepBuilderAPI import BRepBuilderAPI_Transform
 from OCP.gp import gp_Trsf
 
 from fem.beam import solve_beam
-from fem.beam.figures import _mass
+from fem.beam.figures import mass_figures
 from fem.beam.mesh import BeamMesh
 from fem.beam.section import SectionProperties, outline_integrals
 from fem.beam.slices import sections_at
@@ -97,7 +97,7 @@ def beam_mesh(part: Part) -> BeamMesh:
 
 def mass_gaps(part: Part, solid: NamedSolid, mesh: BeamMesh) -> list[Gap]:
     """Mass and centre of mass of the CAD solid against the beam's figures."""
-    beam = {f.key[2:4]: f.value for f in _mass(mesh)}
+    beam = {f.key[2:4]: f.value for f in mass_figures(mesh)}
     where = np.array([beam["centre_of_mass", c] for c in "xyz"])
     return [
         Gap("mass", abs(beam["mass", ""] / (solid.volume * part.material.density) - 1)),
