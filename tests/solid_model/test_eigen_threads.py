@@ -37,9 +37,9 @@ def solved(mesh: NamedMesh, threads: int, choice: Choice, backend: str, mean: bo
 @pytest.mark.parametrize(
     ("choice", "backend", "mean", "free"),
     [
-        ("multigrid", "lu", False, False),
+        pytest.param("multigrid", "lu", False, False, marks=pytest.mark.heavy),
         ("multigrid", "lu", True, False),
-        ("multigrid", "lu", False, True),
+        pytest.param("multigrid", "lu", False, True, marks=pytest.mark.heavy),
         ("cholesky", "lu", False, False),
     ],
 )
@@ -60,7 +60,7 @@ def test_modes_are_the_same_to_the_last_bit(
         assert one.backend == other.backend
 
 
-@pytest.mark.parametrize("choice", ["multigrid", "cholesky"])
+@pytest.mark.parametrize("choice", ["multigrid", pytest.param("cholesky", marks=pytest.mark.heavy)])
 def test_modes_with_mkl_differ_by_rounding(mesh: NamedMesh, choice: Choice) -> None:
     """Its sums change their order with the threads, so that values that are met to 1e-6 or better move by less."""
     pytest.importorskip("pypardiso")

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cache
 from math import pi
 
 import pytest
@@ -47,9 +48,13 @@ ROWS = (
 )  # fmt: skip
 
 
+_solved = cache(solved)
+"""Two rows are of one bar."""
+
+
 @pytest.mark.parametrize("row", ROWS, ids=lambda row: row.name)
 def test_row(row: Row) -> None:
-    s = solved(row.text, 0.05)
+    s = _solved(row.text, 0.05)
     assert s.beam_result is not None
     pairs = judge(s.part, s.solid, s.mesh, s.solid_result, s.beam_result).pairs
     mine: list[Pair] = [p for p in pairs if p.key.quantity == row.quantity]
