@@ -117,8 +117,8 @@ class Belief:
     def gain(self, points: Sequence[Point], best: float, exactly: bool = False) -> tuple[np.ndarray, np.ndarray]:
         """Expected constrained improvement on `best`, and probability of meeting the limits, each (points,)
         (M. Schonlau, W. J. Welch, D. R. Jones, "Global versus local search in constrained optimization of computer
-        models", IMS Lecture Notes 34 (1998) 11-25). Without a `best` (infinite) the aim counts against the greatest of
-        the points."""
+        models", Inst. Math. Stat. LNMS 34 (1998) 11-25). Without a `best` (infinite) the aim counts against the
+        greatest of the points."""
         seen = self.space.seen(points)
         mean, error = self.aims(points, seen, exactly)
         chance = self.meeting(seen)

@@ -192,3 +192,15 @@ def test_stop_words_hold_the_command(small, room):
     assert one.returncode == 130
     assert re.search(r"haunch: stopped \(SIGTERM\): \d+ of 12 points are done and in bars.study; the same command goes "
                      r"on:\n  haunch vary bars.toml --quiet", said)
+
+
+@pytest.mark.parametrize("warm", [True, False])
+def test_kernels_that_have_to_be_compiled_are_told_before(monkeypatch, warm):
+    from studies.vary.run.local import compile_kernels
+
+    order: list[str] = []
+    monkeypatch.setattr("fem.solid.kernels.cache.is_warm", lambda: warm)
+    monkeypatch.setattr("subprocess.run", lambda command, **_: order.append(
+        "compiled" if "warm_up" in command[-1] else "something else"))
+    compile_kernels(order.append)
+    assert order == ([] if warm else ["preparing the solver's kernels: about a minute, once", "compiled"])

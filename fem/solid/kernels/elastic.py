@@ -116,6 +116,20 @@ def _straight_rows(  # type: ignore[no-untyped-def]
 
 
 @kernel
+def isotropic_matrix(P, lam, mu):  # type: ignore[no-untyped-def]
+    """Turn the upper blocks of P = int grad N_a grad N_b^T dV into those of an element's stiffness, in place."""
+    for a in range(0, P.shape[0], 3):
+        for b in range(a, P.shape[0], 3):
+            trace = mu * (P[a, b] + P[a + 1, b + 1] + P[a + 2, b + 2])
+            for c in range(3):
+                P[a + c, b + c] = (lam + mu) * P[a + c, b + c] + trace
+                for d in range(c):
+                    lower, upper = P[a + c, b + d], P[a + d, b + c]
+                    P[a + c, b + d] = lam * lower + mu * upper
+                    P[a + d, b + c] = lam * upper + mu * lower
+
+
+@kernel
 def _curved_elements(first, last, elements, points, tets, slopes, weights, lam, mu, out):  # type: ignore[no-untyped-def]
     """Element matrices (30, 30) by quadrature, upper blocks; slopes (q, 10, 3), weights (q,)."""
     g, J, C = np.empty(30), np.empty((3, 3)), np.empty((3, 3))
@@ -133,15 +147,7 @@ def _curved_elements(first, last, elements, points, tets, slopes, weights, lam, 
                 factor = weight * g[r]
                 for c in range(r - r % 3, 30):
                     P[r, c] += factor * g[c]
-        for a in range(0, 30, 3):
-            for b in range(a, 30, 3):
-                trace = mu * (P[a, b] + P[a + 1, b + 1] + P[a + 2, b + 2])
-                for c in range(3):
-                    P[a + c, b + c] = (lam + mu) * P[a + c, b + c] + trace
-                    for d in range(c):
-                        lower, upper = P[a + c, b + d], P[a + d, b + c]
-                        P[a + c, b + d] = lam * lower + mu * upper
-                        P[a + d, b + c] = lam * upper + mu * lower
+        isotropic_matrix(P, lam, mu)
 
 
 @kernel

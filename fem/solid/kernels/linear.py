@@ -10,7 +10,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.solid.kernels.elastic import add_elements, isotropic
+from fem.solid.kernels.elastic import add_elements, isotropic, isotropic_matrix
 from fem.solid.kernels.jacobian import inverse_jacobian
 from fem.solid.kernels.jit import kernel
 from fem.solid.kernels.lanes import load, store, times_plus
@@ -73,15 +73,7 @@ def _curved_linear(first, last, elements, points, tets, slopes, weights, lam, mu
                 factor = weight * g[r]
                 for c in range(r - r % 3, 12):
                     P[r, c] += factor * g[c]
-        for a in range(0, 12, 3):
-            for b in range(a, 12, 3):
-                trace = mu * (P[a, b] + P[a + 1, b + 1] + P[a + 2, b + 2])
-                for c in range(3):
-                    P[a + c, b + c] = (lam + mu) * P[a + c, b + c] + trace
-                    for d in range(c):
-                        lower, upper = P[a + c, b + d], P[a + d, b + c]
-                        P[a + c, b + d] = lam * lower + mu * upper
-                        P[a + d, b + c] = lam * upper + mu * lower
+        isotropic_matrix(P, lam, mu)
 
 
 @kernel
